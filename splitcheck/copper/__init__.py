@@ -1,0 +1,1 @@
+"""Files to marks to polygons: everything that reads what a CAD system exported."""

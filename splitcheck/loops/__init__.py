@@ -1,0 +1,1 @@
+"""The way round for the return current and the inductance it adds."""

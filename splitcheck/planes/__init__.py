@@ -1,0 +1,1 @@
+"""Reference copper, the traces over it, and where it breaks beneath them."""

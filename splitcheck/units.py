@@ -1,0 +1,33 @@
+"""Units and constants: mm, ns, nH, ohm, mV, A, GHz throughout; inch only where a file is read.
+
+The set is coherent (1 V = 1 nH A/ns), so textbook formulas are typed as printed.
+"""
+
+from __future__ import annotations
+
+from math import pi
+
+import numpy as np
+from numpy.typing import NDArray
+
+Floats = NDArray[np.float64]
+
+#: Vacuum permeability, nH/mm.
+MU0 = 0.4 * pi
+#: Speed of light, mm/ns.
+C0 = 299.792458
+#: Coordinates are rounded once to this on reading, mm (1 nm: exact for metric 4.6).
+GRID_MM = 1e-6
+#: One inch, mm.
+INCH_MM = 25.4
+
+
+def on_grid(value_mm: float) -> float:
+    """Round a coordinate to the 1 nm grid, so that equal points compare equal.
+
+    Examples
+    --------
+    >>> on_grid(0.1 + 0.2)
+    0.3
+    """
+    return round(value_mm, 6)

@@ -1,0 +1,1 @@
+"""What a crossing means for the net that makes it: findings, levels, scores."""
