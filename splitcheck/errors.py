@@ -17,9 +17,8 @@ class SplitcheckError(Exception):
 
     Examples
     --------
-    >>> print(SplitcheckError("top.gbr:118", "aperture D14 is used but never defined",
-    ...                       "export the file again with its aperture list"))
-    top.gbr:118: aperture D14 is used but never defined; export the file again with its aperture list
+    >>> print(SplitcheckError("top.gbr:118", "aperture D14 is not defined", "export it again"))
+    top.gbr:118: aperture D14 is not defined; export it again
     """
 
     def __init__(self, place: str, wrong: str, do: str) -> None:
