@@ -1,0 +1,62 @@
+"""What a net name says: ground, supply, or neither."""
+
+from __future__ import annotations
+
+import re
+
+_GROUND = re.compile(
+    r"(?:^|[^A-Z])[ADPSCEIHR]?(?:GND|GROUND|EARTH|VSS|CHASSIS|SHIELD)(?:[^A-Z]|$|A|D|P|S|REF|PLANE)"
+)
+_SUPPLY = re.compile(
+    r"^(?:"
+    r"[+\-]?(?:P|V|VCC|VDD)?_?\d+(?:[.,]\d+)?V\d*(?:[_\-./ ].*|[A-Z]{0,4})?"  # +3V3 1V8 5.0V 12V_IN
+    r"|[+\-]?V\d+(?:[PV._]\d+)?(?:[_\-./].*)?"  # V3P3 V1.8 V5
+    r"|(?:[A-Z]{0,3})?(?:VCC|VDD|VEE|VPP|VTT|AVCC|DVCC|AVDD|DVDD)[A-Z0-9]{0,6}(?:[_\-./+ ].*)?"
+    r"|V(?:IN|OUT|BAT|BATT|BUS|SYS|MAIN|USB|CORE|IO|MEM|PLL|REF|RTC|DRV|MOT|SUPPLY|PWR)\d*"
+    r"(?:[_\-./+ ].*)?"
+    r"|(?:PWR|POWER|VPOWER)(?:[_\-./ ]?\w{0,8})?"
+    r")$"
+)
+
+
+def last_part(name: str) -> str:
+    """The name without the path of its sheet, in upper case, overbars dropped.
+
+    Examples
+    --------
+    >>> last_part("/power/+3v3")
+    '+3V3'
+    """
+    return name.rsplit("/", 1)[-1].strip().upper().replace("~{", "").replace("}", "").strip("~")
+
+
+def is_ground(name: str) -> bool:
+    """Whether a net name is a ground by the habits of the trade (common practice, no source).
+
+    Examples
+    --------
+    >>> [is_ground(name) for name in ("GND", "/adc/AGND", "GND_ISO", "GNDA", "TARGND", "VCC")]
+    [True, True, True, True, False, False]
+    """
+    return bool(_GROUND.search(last_part(name)))
+
+
+def is_supply(name: str) -> bool:
+    """Whether a net name is a supply by the habits of the trade (common practice, no source).
+
+    Examples
+    --------
+    >>> [is_supply(name) for name in ("+3V3", "VCC", "/mcu/1V8_CORE", "VBUS", "P5V0", "VDDIO")]
+    [True, True, True, True, True, True]
+    >>> [is_supply(name) for name in ("VSYNC", "SDA", "USB_D+", "GPIO12", "VIDEO1", "5V_EN")]
+    [False, False, False, False, False, False]
+    """
+    name = last_part(name)
+    return bool(_SUPPLY.match(name)) and not _CONTROL.search(name)
+
+
+#: A supply's name followed by one of these is a logic signal about that supply.
+_CONTROL = re.compile(
+    r"[_\-./ ](?:EN|ENA|ENABLE|PG|PGOOD|OK|GOOD|SENSE|SNS|FB|CTRL|ON|OFF|FLT|FAULT|"
+    r"OC|DET|MON|SEL|ALERT|N|LED|INT|RST)\d*$"
+)
