@@ -1,0 +1,403 @@
+"""The way round for the return current: inside islands round their holes, and over bridges."""
+
+from __future__ import annotations
+
+import heapq
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+from math import inf
+from typing import NamedTuple
+
+import networkx as nx
+import numpy as np
+import shapely
+from shapely import LineString, Polygon
+
+from splitcheck.copper.marks import Point
+from splitcheck.loops.bridges import IslandGraph, bridges_between
+from splitcheck.planes.crossings import Crossing
+from splitcheck.planes.islands import Plane
+from splitcheck.units import Floats
+
+#: Corners of gaps are thinned to this, mm, and coarser where there are very many.
+THIN_MM = (0.02, 0.1, 0.4, 1.5)
+#: A way may graze a gap by this much, mm.
+GRAZE_MM = 2e-3
+#: More corners than this in reach: thin the gaps more coarsely.
+MOST_CORNERS = 300
+#: So many pairs of bridges are followed in full; the rest would be longer by their straight length.
+MOST_PAIRS = 24
+
+
+class Way(NamedTuple):
+    """One way for the return current from the entry of a crossing to its exit."""
+
+    length_mm: float
+    path: tuple[Point, ...]
+    bridges: tuple[Point, ...]
+    """Places of the plated holes it goes through; empty if it stays on the plane."""
+    bridge_net: str
+    bridge_layer: int
+    """Layer of the island it borrows; 0 if it stays on the plane."""
+
+
+@dataclass(frozen=True, slots=True)
+class Route:
+    """How the return current gets round a gap."""
+
+    straight_mm: float
+    left: Way | None
+    """Best way that passes the gap on the left of the trace; None if there is none."""
+    right: Way | None
+    joined: bool
+    """Whether copper and plated holes join the two sides at all."""
+
+    @property
+    def best(self) -> Way | None:
+        """The shorter of the two ways."""
+        ways = [way for way in (self.left, self.right) if way is not None]
+        return min(ways, key=lambda way: way.length_mm) if ways else None
+
+    @property
+    def detour_mm(self) -> float | None:
+        """What the best way is longer than the straight one, mm."""
+        best = self.best
+        return None if best is None else max(best.length_mm - self.straight_mm, 0.0)
+
+    def reach_mm(self, way: Way | None) -> float:
+        """How far along the gap a way must go before it can cross, mm; inf for none."""
+        if way is None:
+            return inf
+        return max((way.length_mm - self.straight_mm) / 2, 0.0)
+
+
+@dataclass(slots=True)
+class Terrain:
+    """The gaps of one plane as obstacles: thinned, shrunk by a hair, and their corners."""
+
+    plane: Plane
+    _known: dict[tuple[int, float], tuple[Polygon, Floats]] = field(default_factory=dict)
+
+    def obstacle(self, gap: int, thin_mm: float) -> tuple[Polygon, Floats]:
+        """A gap's shape to be avoided and the corners a taut way may bend at, shape (n, 2)."""
+        key = (gap, thin_mm)
+        if key not in self._known:
+            shape = shapely.orient_polygons(
+                self.plane.gaps[gap].shape.simplify(thin_mm), exterior_cw=False
+            )
+            core = shape.buffer(-GRAZE_MM, join_style="mitre", quad_segs=1)
+            shapely.prepare(core)
+            self._known[key] = (core, _bends(shape))
+        return self._known[key]
+
+    def crossed(self, line: LineString) -> list[int]:
+        """Indexes of the gaps a line runs through."""
+        near = sorted(self.plane.gap_boxes.intersection(line.bounds))
+        return [gap for gap in near if self.obstacle(gap, THIN_MM[0])[0].intersects(line)]
+
+
+def _bends(shape: shapely.Geometry) -> Floats:
+    """Corners where a polygon bulges outward, including those of its holes' rims."""
+    corners = []
+    for polygon in getattr(shape, "geoms", [shape]):
+        for ring in [polygon.exterior, *polygon.interiors]:
+            at = np.asarray(ring.coords)[:-1]
+            ahead, behind = np.roll(at, -1, axis=0) - at, at - np.roll(at, 1, axis=0)
+            turn = behind[:, 0] * ahead[:, 1] - behind[:, 1] * ahead[:, 0]
+            corners.append(at[turn > 0])
+    return np.concatenate(corners) if corners else np.empty((0, 2))
+
+
+def shortest(
+    terrain: Terrain, start: Point, goal: Point, barrier: LineString | None = None
+) -> tuple[float, tuple[Point, ...]] | None:
+    """Shortest way on copper between two points of one island.
+
+    Parameters
+    ----------
+    terrain
+        The plane's gaps as obstacles.
+    start, goal
+        Points on copper, mm.
+    barrier
+        A line that the way must not cross.
+
+    Returns
+    -------
+    Length in mm and the corners of the way, or None if there is no way.
+
+    Notes
+    -----
+    A taut way bends only at corners of gaps. Gaps are taken up one after the other as a way is
+    found to run through them: a way that is shortest among some obstacles and free of all is
+    shortest of all. Corners are first looked for inside an ellipse round the two points; a way no
+    longer than the ellipse's reach cannot be beaten by one that leaves it.
+
+    References
+    ----------
+    Visibility graphs: Lozano-Perez and Wesley, CACM 22 (1979), p. 560 (from memory).
+    """
+    straight = float(np.hypot(goal[0] - start[0], goal[1] - start[1]))
+    x0, y0, x1, y1 = terrain.plane.gaps[0].shape.bounds if terrain.plane.gaps else (0, 0, 0, 0)
+    widest = straight + 4 * (x1 - x0 + y1 - y0) + 1.0
+    limit = 2 * straight + 2.0
+    thin = 0
+    while True:
+        tried = _within(terrain, start, goal, barrier, min(limit, widest), THIN_MM[thin])
+        if tried == "crowded":
+            if thin + 1 == len(THIN_MM):
+                return None
+            thin += 1
+            continue
+        if isinstance(tried, tuple) and (tried[0] <= limit or limit >= widest):
+            return tried
+        if limit >= widest:
+            return None
+        limit *= 2.5
+
+
+def _within(
+    terrain: Terrain,
+    start: Point,
+    goal: Point,
+    barrier: LineString | None,
+    limit: float,
+    thin_mm: float,
+) -> tuple[float, tuple[Point, ...]] | str | None:
+    obstacles: list[int] = []
+    ends = np.array([start, goal], dtype=float)
+    for _ in range(60):
+        corners = [ends]
+        for gap in obstacles:
+            bends = terrain.obstacle(gap, thin_mm)[1]
+            far = np.hypot(*(bends - ends[0]).T) + np.hypot(*(bends - ends[1]).T)
+            corners.append(bends[far <= limit])
+        points = np.concatenate(corners)
+        if len(points) > MOST_CORNERS:
+            return "crowded"
+        blocks = [terrain.obstacle(gap, thin_mm)[0] for gap in obstacles]
+        found = _taut(points, blocks, barrier)
+        if found is None:
+            return None
+        line = LineString(found[1])
+        fresh = [gap for gap in terrain.crossed(line) if gap not in obstacles]
+        if thin_mm > THIN_MM[0]:
+            fresh = [gap for gap in fresh if terrain.obstacle(gap, thin_mm)[0].intersects(line)]
+        if not fresh:
+            return found
+        obstacles.extend(fresh)
+    return None
+
+
+def _taut(
+    points: Floats, blocks: Sequence[Polygon], barrier: LineString | None
+) -> tuple[float, tuple[Point, ...]] | None:
+    """A* over the points, the first being the start and the second the goal."""
+    ahead = np.hypot(*(points - points[1]).T)
+    reached = np.full(len(points), inf)
+    came = np.full(len(points), -1)
+    closed = np.zeros(len(points), dtype=bool)
+    reached[0] = 0.0
+    queue: list[tuple[float, int]] = [(float(ahead[0]), 0)]
+    while queue:
+        _, here = heapq.heappop(queue)
+        if closed[here]:
+            continue
+        if here == 1:
+            return float(reached[1]), _backwards(points, came)
+        closed[here] = True
+        step = np.hypot(*(points - points[here]).T)
+        better = np.flatnonzero(~closed & (reached[here] + step < reached - 1e-12))
+        for other in better[_free(points[here], points[better], blocks, barrier)].tolist():
+            reached[other] = reached[here] + step[other]
+            came[other] = here
+            heapq.heappush(queue, (float(reached[other] + ahead[other]), other))
+    return None
+
+
+def _free(
+    here: Floats, there: Floats, blocks: Sequence[Polygon], barrier: LineString | None
+) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+    pairs = np.stack([np.broadcast_to(here, there.shape), there], axis=1)
+    lines = shapely.linestrings(pairs)
+    free = np.ones(len(there), dtype=np.bool_)
+    if barrier is not None:
+        free &= ~shapely.intersects(barrier, lines)
+    for block in blocks:
+        left = np.flatnonzero(free)
+        if not len(left):
+            break
+        free[left] = ~shapely.intersects(block, lines[left])
+    return free
+
+
+def _backwards(points: Floats, came: np.ndarray[tuple[int], np.dtype[np.intp]]) -> tuple[Point, ...]:
+    at, path = 1, []
+    while at >= 0:
+        path.append((float(points[at, 0]), float(points[at, 1])))
+        at = int(came[at])
+    return tuple(reversed(path))
+
+
+def find_route(
+    crossing: Crossing, planes: dict[int, Plane], terrains: dict[int, Terrain], graph: IslandGraph
+) -> Route:
+    """Find how the return current gets round the gap of a crossing.
+
+    Parameters
+    ----------
+    crossing
+        The crossing.
+    planes, terrains
+        Planes and their obstacles by layer number.
+    graph
+        The island graph.
+
+    Returns
+    -------
+    The best way on either side of the trace, in the plane itself or over bridges to another layer.
+    """
+    plane = planes[crossing.plane]
+    start, goal = crossing.before, crossing.after
+    straight = float(np.hypot(goal[0] - start[0], goal[1] - start[1]))
+    one, other = (plane.islands[i].id for i in crossing.islands)
+    borrowed = _over_bridges(crossing, planes, terrains, graph)
+    sides: list[Way | None] = []
+    for side in (1, -1):
+        ways = [way for way, on_side in borrowed if on_side == side]
+        if one == other:
+            found = shortest(terrains[crossing.plane], start, goal, _wall(crossing, -side))
+            if found is not None:
+                ways.append(Way(found[0], found[1], (), plane.islands[crossing.islands[0]].net_name, 0))
+        sides.append(min(ways, key=lambda way: (way.length_mm, way.path)) if ways else None)
+    joined = one == other or nx.has_path(graph, one, other)
+    if joined and sides == [None, None]:
+        sides[0] = _chain(graph, one, other, start, goal)
+    return Route(straight, sides[0], sides[1], joined)
+
+
+def _heading(crossing: Crossing) -> tuple[float, float]:
+    dx = crossing.after[0] - crossing.before[0]
+    dy = crossing.after[1] - crossing.before[1]
+    length = float(np.hypot(dx, dy)) or 1.0
+    return dx / length, dy / length
+
+
+def _wall(crossing: Crossing, side: int) -> LineString:
+    """A wall from the middle of the run out to one side (1 left, -1 right)."""
+    (dx, dy), (x, y) = _heading(crossing), crossing.at
+    far = 2000.0 * side
+    return LineString([(x, y), (x - dy * far, y + dx * far)])
+
+
+def _over_bridges(
+    crossing: Crossing, planes: dict[int, Plane], terrains: dict[int, Terrain], graph: IslandGraph
+) -> list[tuple[Way, int]]:
+    """Ways through a plated hole, an island of another layer and a plated hole back."""
+    plane = planes[crossing.plane]
+    one, other = (plane.islands[i].id for i in crossing.islands)
+    found: list[tuple[Way, int]] = []
+    shared = sorted(set(graph.adj[one]) & set(graph.adj[other]))
+    best = {1: inf, -1: inf}
+    for middle in shared:
+        for length, a, b in _pairs(crossing, graph, one, middle, other):
+            side = _side(crossing, a, b)
+            if length >= best[side]:
+                continue
+            way = _follow(crossing, planes, terrains, graph, middle, a, b)
+            if way is not None and way.length_mm < best[side]:
+                best[side] = way.length_mm
+                found.append((way, side))
+    return found
+
+
+def _pairs(
+    crossing: Crossing, graph: IslandGraph, one: str, middle: str, other: str
+) -> list[tuple[float, Point, Point]]:
+    """Pairs of bridges down and up by straight length, those whose legs stay on their own side."""
+    down, up = bridges_between(graph, one, middle), bridges_between(graph, middle, other)
+    (dx, dy), (x, y) = _heading(crossing), crossing.at
+    behind = (down[:, 0] - x) * dx + (down[:, 1] - y) * dy
+    beyond = (up[:, 0] - x) * dx + (up[:, 1] - y) * dy
+    if one == other:
+        down, up = down[behind < 0], up[beyond > 0]
+    to_down = np.hypot(*(down - np.asarray(crossing.before)).T)
+    from_up = np.hypot(*(up - np.asarray(crossing.after)).T)
+    down, to_down = _nearest(down, to_down)
+    up, from_up = _nearest(up, from_up)
+    if not len(down) or not len(up):
+        return []
+    between = np.hypot(
+        down[:, None, 0] - up[None, :, 0], down[:, None, 1] - up[None, :, 1]
+    )
+    total = to_down[:, None] + between + from_up[None, :]
+    ranked = np.argsort(total, axis=None, kind="stable")[:MOST_PAIRS]
+    return [
+        (
+            float(total[i, j]),
+            (float(down[i, 0]), float(down[i, 1])),
+            (float(up[j, 0]), float(up[j, 1])),
+        )
+        for i, j in zip(*np.unravel_index(ranked, total.shape), strict=True)
+    ]
+
+
+def _nearest(places: Floats, far: Floats) -> tuple[Floats, Floats]:
+    keep = np.argsort(far, kind="stable")[:200]
+    return places[keep], far[keep]
+
+
+def _side(crossing: Crossing, a: Point, b: Point) -> int:
+    (dx, dy), (x, y) = _heading(crossing), crossing.at
+    middle_x, middle_y = (a[0] + b[0]) / 2, (a[1] + b[1]) / 2
+    return 1 if (middle_y - y) * dx - (middle_x - x) * dy >= 0 else -1
+
+
+def _follow(
+    crossing: Crossing,
+    planes: dict[int, Plane],
+    terrains: dict[int, Terrain],
+    graph: IslandGraph,
+    middle: str,
+    a: Point,
+    b: Point,
+) -> Way | None:
+    """The way over two bridges, each leg inside its island."""
+    island = graph.nodes[middle]["island"]
+    legs = [
+        _leg(terrains[crossing.plane], crossing.before, a),
+        _leg(terrains[island.layer], a, b),
+        _leg(terrains[crossing.plane], b, crossing.after),
+    ]
+    length, path = 0.0, [crossing.before]
+    for leg in legs:
+        if leg is None:
+            return None
+        length += leg[0]
+        path.extend(leg[1][1:])
+    return Way(length, tuple(path), (a, b), island.net_name, island.layer)
+
+
+def _leg(terrain: Terrain, a: Point, b: Point) -> tuple[float, tuple[Point, ...]] | None:
+    """A short leg of a way; a leg that must go more than three times round is no way."""
+    line = LineString([a, b])
+    if not terrain.crossed(line):
+        return line.length, (a, b)
+    found = _within(terrain, a, b, None, 3 * line.length + 1.0, THIN_MM[0])
+    return found if isinstance(found, tuple) else None
+
+
+def _chain(graph: IslandGraph, one: str, other: str, start: Point, goal: Point) -> Way | None:
+    """A way over three or more bridges: island by island, the nearest bridge each time."""
+    ids = nx.shortest_path(graph, one, other)
+    at, length, path = np.asarray(start), 0.0, [start]
+    for here, there in zip(ids, ids[1:], strict=False):
+        places = bridges_between(graph, here, there)
+        far = np.hypot(*(places - at).T)
+        nearest = int(np.argmin(far))
+        length += float(far[nearest])
+        at = places[nearest]
+        path.append((float(at[0]), float(at[1])))
+    length += float(np.hypot(*(np.asarray(goal) - at)))
+    borrowed = graph.nodes[ids[len(ids) // 2]]["island"]
+    return Way(length, (*path, goal), tuple(path[1:]), borrowed.net_name, borrowed.layer)

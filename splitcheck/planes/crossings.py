@@ -1,0 +1,350 @@
+"""Crossings: runs of a trace where the plane that carried its return is missing."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import NamedTuple
+
+import networkx as nx
+import numpy as np
+
+from splitcheck.board.board import Board
+from splitcheck.board.names import is_ground, is_supply
+from splitcheck.copper.marks import Point
+from splitcheck.planes.islands import Plane
+from splitcheck.planes.shadows import Span, Uncovered, common, merged, uncovered
+from splitcheck.planes.tracks import Tracks
+
+#: How far off the rim of a gap the copper is probed, mm.
+PROBE_MM = 5e-3
+
+
+@dataclass(frozen=True, slots=True)
+class Crossing:
+    """One run of a trace over one gap of the plane that carries its return."""
+
+    net: int
+    layer: int
+    plane: int
+    """Layer number of the plane."""
+    gap: int
+    """Index of the gap in the plane."""
+    path: tuple[Point, ...]
+    """Centre line of the run from entry to exit, both on the rim of the gap, mm."""
+    before: Point
+    """A point of the trace on copper just before the run."""
+    after: Point
+    """A point of the trace on copper just after the run."""
+    islands: tuple[int, int]
+    """Indexes of the islands where the run starts and ends."""
+    run_mm: float
+    width_mm: float
+    line: int
+    """Line in the Gerber file of the trace's layer."""
+
+    @property
+    def at(self) -> Point:
+        """Middle of the run, mm."""
+        return middle(self.path)
+
+
+@dataclass(frozen=True, slots=True)
+class BareTrace:
+    """What of one net on one layer has no reference copper above or below at all."""
+
+    net: int
+    layer: int
+    bare_mm: float
+    """Total length, mm."""
+    longest_mm: float
+    at: Point
+    """Middle of the longest piece."""
+    width_mm: float
+    line: int
+    spans: tuple[tuple[Point, Point], ...]
+    """Its straight stretches."""
+
+
+class _Bit(NamedTuple):
+    """A bare stretch of a piece together with what lies at its two ends."""
+
+    piece: int
+    start: float
+    stop: float
+    gap: int
+
+
+def middle(path: Sequence[Point]) -> Point:
+    """The point half way along a path.
+
+    Examples
+    --------
+    >>> middle([(0.0, 0.0), (4.0, 0.0)])
+    (2.0, 0.0)
+    """
+    steps = [float(np.hypot(b[0] - a[0], b[1] - a[1])) for a, b in zip(path, path[1:], strict=False)]
+    left = sum(steps) / 2
+    for (x0, y0), (x1, y1), step in zip(path, path[1:], steps, strict=False):
+        if left <= step and step > 0:
+            return x0 + (x1 - x0) * left / step, y0 + (y1 - y0) * left / step
+        left -= step
+    return path[0]
+
+
+def find_crossings(
+    tracks: Tracks, planes: Sequence[Plane]
+) -> tuple[tuple[Crossing, ...], tuple[BareTrace, ...]]:
+    """Walk the traces of a layer over the planes on either side.
+
+    Parameters
+    ----------
+    tracks
+        The judged traces of one layer.
+    planes
+        Every plane of the board, any order; the one on the traces' own layer is left out.
+
+    Returns
+    -------
+    Crossings, and what is bare of every plane, net by net.
+
+    Notes
+    -----
+    On each side planes are taken from near to far. A plane carries the return where no nearer one
+    does; a run over a gap counts for it only if it starts and ends on that plane with nothing
+    nearer in between.
+    """
+    everything = range(len(tracks.net))
+    crossings: list[Crossing] = []
+    open_spans: list[dict[int, list[Span]]] = []
+    for side in (-1, 1):
+        ranked = sorted(
+            (plane for plane in planes if (plane.layer - tracks.layer) * side > 0),
+            key=lambda plane: abs(plane.layer - tracks.layer),
+        )
+        still: dict[int, list[Span]] = {piece: [(0.0, 1.0)] for piece in everything}
+        for plane in ranked:
+            bare = uncovered(tracks, plane, sorted(still))
+            crossings.extend(_crossings_over(tracks, plane, bare, still))
+            still = _both(still, bare)
+        open_spans.append(still)
+    bare_everywhere = {
+        piece: spans
+        for piece in everything
+        if (spans := common(open_spans[0].get(piece, []), open_spans[1].get(piece, [])))
+    }
+    return tuple(crossings), _bare_traces(tracks, bare_everywhere)
+
+
+def _both(still: dict[int, list[Span]], bare: Uncovered) -> dict[int, list[Span]]:
+    left: dict[int, list[Span]] = {}
+    for piece, bits in bare.items():
+        spans = common(still[piece], merged((bit.start, bit.stop) for bit in bits))
+        if spans:
+            left[piece] = spans
+    return left
+
+
+def _crossings_over(
+    tracks: Tracks, plane: Plane, bare: Uncovered, still: dict[int, list[Span]]
+) -> list[Crossing]:
+    bits = [
+        _Bit(piece, start, stop, bit.gap)
+        for piece, found in bare.items()
+        for bit in found
+        for start, stop in common([(bit.start, bit.stop)], still[piece])
+    ]
+    found = []
+    ends = _Ends(tracks, bare, still)
+    for group in _groups(tracks, bits):
+        crossing = _crossing(tracks, plane, group, ends)
+        if crossing is not None:
+            found.append(crossing)
+    return found
+
+
+def _groups(tracks: Tracks, bits: Sequence[_Bit]) -> list[list[_Bit]]:
+    """Bits over one gap that hang together where pieces of trace meet."""
+    graph: nx.Graph[tuple[str, int, int]] = nx.Graph()
+    for number, bit in enumerate(bits):
+        graph.add_node(("bit", number, 0))
+        for node in _nodes_of(tracks, bit):
+            graph.add_edge(("bit", number, 0), ("node", node, bit.gap))
+    groups = [
+        sorted(bits[number] for kind, number, _ in members if kind == "bit")
+        for members in nx.connected_components(graph)
+    ]
+    return sorted(groups)
+
+
+def _nodes_of(tracks: Tracks, bit: _Bit) -> list[int]:
+    at = []
+    if bit.start <= 0.0:
+        at.append(int(tracks.nodes[bit.piece, 0]))
+    if bit.stop >= 1.0:
+        at.append(int(tracks.nodes[bit.piece, 1]))
+    return at
+
+
+class _Rim(NamedTuple):
+    """An end of a group of bits where the trace is back on the plane."""
+
+    at: Point
+    on: Point
+    """A point of the trace on copper beyond it."""
+    key: tuple[str, int, float]
+    """Its node in the walk graph."""
+
+
+class _Ends:
+    """Where groups of bits end: on the plane's copper, on a nearer plane, or nowhere."""
+
+    def __init__(self, tracks: Tracks, bare: Uncovered, still: dict[int, list[Span]]) -> None:
+        self.tracks = tracks
+        self.bare = bare
+        self.still = still
+
+    def _seen(self, piece: int, at: float) -> bool:
+        """Whether no nearer plane hides this place."""
+        return any(start <= at <= stop for start, stop in self.still.get(piece, ()))
+
+    def _covered(self, piece: int, at: float) -> bool:
+        return not any(bit.start <= at <= bit.stop for bit in self.bare.get(piece, ()))
+
+    def of(self, bit: _Bit) -> list[_Rim]:
+        """The rims of a bit."""
+        rims = []
+        step = PROBE_MM / float(self.tracks.length_mm[bit.piece])
+        for at, sign, end in ((bit.start, -1, 0), (bit.stop, 1, 1)):
+            beyond = at + sign * min(step, at if sign < 0 else 1 - at)
+            if 0.0 < at < 1.0:
+                if self._covered(bit.piece, beyond) and self._seen(bit.piece, beyond):
+                    rims.append(
+                        _Rim(
+                            self.tracks.point(bit.piece, at),
+                            self.tracks.point(bit.piece, beyond),
+                            ("rim", bit.piece, at),
+                        )
+                    )
+                continue
+            rims.extend(self._rims_at_node(int(self.tracks.nodes[bit.piece, end])))
+        return rims
+
+    def _rims_at_node(self, node: int) -> list[_Rim]:
+        rims = []
+        for other in self.tracks.at_node(node):
+            first = int(self.tracks.nodes[other, 0]) == node
+            step = min(PROBE_MM / float(self.tracks.length_mm[other]), 0.5)
+            beyond = step if first else 1.0 - step
+            if self._covered(other, beyond) and self._seen(other, beyond):
+                at = self.tracks.point(other, 0.0 if first else 1.0)
+                rims.append(_Rim(at, self.tracks.point(other, beyond), ("node", node, 0.0)))
+        return rims
+
+
+def _crossing(
+    tracks: Tracks, plane: Plane, group: Sequence[_Bit], ends: _Ends
+) -> Crossing | None:
+    """Make a crossing of a group that starts and ends on the plane; else None."""
+    rims: dict[tuple[str, int, float], _Rim] = {}
+    for bit in group:
+        for rim in ends.of(bit):
+            rims.setdefault(rim.key, rim)
+    if len(rims) < 2:
+        return None
+    graph = _walk(tracks, group)
+    best = _farthest(graph, sorted(rims))
+    if best is None:
+        return None
+    entry, leave, keys, run_mm = best
+    path = tuple(graph.nodes[key]["at"] for key in keys)
+    before, after = rims[entry].on, rims[leave].on
+    islands = plane.island_at(np.array([before[0], after[0]]), np.array([before[1], after[1]]))
+    if islands.min() < 0 or run_mm <= 0:
+        return None
+    first = max(group, key=lambda bit: (bit.stop - bit.start) * float(tracks.length_mm[bit.piece]))
+    return Crossing(
+        net=int(tracks.net[first.piece]),
+        layer=tracks.layer,
+        plane=plane.layer,
+        gap=first.gap,
+        path=path,
+        before=before,
+        after=after,
+        islands=(int(islands[0]), int(islands[1])),
+        run_mm=run_mm,
+        width_mm=float(tracks.width_mm[first.piece]),
+        line=int(tracks.line[first.piece]),
+    )
+
+
+def _walk(tracks: Tracks, group: Sequence[_Bit]) -> nx.Graph[tuple[str, int, float]]:
+    """The bits of a group as a graph of places, edges weighted by length in mm."""
+    graph: nx.Graph[tuple[str, int, float]] = nx.Graph()
+    for bit in group:
+        keys = []
+        for at, end in ((bit.start, 0), (bit.stop, 1)):
+            inside = 0.0 < at < 1.0
+            key = (
+                ("rim", bit.piece, at)
+                if inside
+                else ("node", int(tracks.nodes[bit.piece, end]), 0.0)
+            )
+            graph.add_node(key, at=tracks.point(bit.piece, at))
+            keys.append(key)
+        length = (bit.stop - bit.start) * float(tracks.length_mm[bit.piece])
+        graph.add_edge(keys[0], keys[1], weight=length)
+    return graph
+
+
+def _farthest(
+    graph: nx.Graph[tuple[str, int, float]], rims: Sequence[tuple[str, int, float]]
+) -> tuple[tuple[str, int, float], tuple[str, int, float], list[tuple[str, int, float]], float] | None:
+    """The two rims farthest apart along the run, with the way between them."""
+    best = None
+    for number, one in enumerate(rims[:8]):
+        if one not in graph:
+            continue
+        lengths, paths = nx.single_source_dijkstra(graph, one, weight="weight")
+        for other in rims[number + 1 :]:
+            if other in lengths and (best is None or lengths[other] > best[3]):
+                best = (one, other, paths[other], float(lengths[other]))
+    return best
+
+
+def _bare_traces(tracks: Tracks, bare: dict[int, list[Span]]) -> tuple[BareTrace, ...]:
+    by_net: dict[int, list[tuple[int, Span]]] = defaultdict(list)
+    for piece, spans in sorted(bare.items()):
+        for span in spans:
+            by_net[int(tracks.net[piece])].append((piece, span))
+    traces = []
+    for net, stretches in sorted(by_net.items()):
+        lengths = [(b - a) * float(tracks.length_mm[piece]) for piece, (a, b) in stretches]
+        longest = int(np.argmax(lengths))
+        piece, (a, b) = stretches[longest]
+        traces.append(
+            BareTrace(
+                net,
+                tracks.layer,
+                float(sum(lengths)),
+                lengths[longest],
+                tracks.point(piece, (a + b) / 2),
+                float(tracks.width_mm[piece]),
+                int(tracks.line[piece]),
+                tuple(
+                    (tracks.point(piece, a), tracks.point(piece, b)) for piece, (a, b) in stretches
+                ),
+            )
+        )
+    return tuple(traces)
+
+
+def judged_nets(board: Board, carriers: frozenset[int]) -> frozenset[int]:
+    """Nets whose traces are judged: those that neither carry returns nor are supplies by name."""
+    return frozenset(
+        net.number
+        for net in board.nets
+        if net.number not in carriers
+        and not any(is_ground(name) or is_supply(name) for name in net.name.split("|"))
+    )
