@@ -1,5 +1,5 @@
 """Arguments in, text and exit code out; the only room that prints or exits."""
 
+from splitcheck.cli.entry import main, run
 
-def main() -> None:
-    """Run the command line."""
+__all__ = ["main", "run"]

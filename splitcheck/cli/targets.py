@@ -1,0 +1,112 @@
+"""Where results go besides the terminal: ``--out FORMAT=FILE``, checked before the long work."""
+
+from __future__ import annotations
+
+import os
+import sys
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from splitcheck.cli import streams
+from splitcheck.errors import SplitcheckError
+
+#: What ``--out`` can write.
+FORMATS = ("text", "json")
+#: The file name that means standard output.
+STDOUT = "-"
+
+
+@dataclass(frozen=True, slots=True)
+class Target:
+    """One ``--out``: a format, and the file it goes to."""
+
+    format: str
+    file: str
+
+    @property
+    def is_stdout(self) -> bool:
+        """Whether it goes to standard output."""
+        return self.file == STDOUT
+
+
+def parse(words: Sequence[str], board: Path) -> tuple[Target, ...]:
+    """Read all ``--out`` and make sure that each can be written, long before there is a result.
+
+    Parameters
+    ----------
+    board
+        What is going to be read; a result never goes over it.
+
+    Raises
+    ------
+    SplitcheckError
+        For an unknown format, a file named twice, a folder that is not there, a file that may not
+        be written.
+
+    Examples
+    --------
+    >>> parse(["json=-"], Path("board"))
+    (Target(format='json', file='-'),)
+    >>> parse([], Path("board"))
+    ()
+    """
+    targets = tuple(_target(word) for word in words)
+    seen: set[str] = set()
+    for target in targets:
+        place = f"--out {target.format}={target.file}"
+        name = STDOUT if target.is_stdout else os.path.realpath(target.file)
+        if name in seen:
+            do = "give each --out a file of its own"
+            raise SplitcheckError(place, "another --out goes there already", do)
+        seen.add(name)
+        if not target.is_stdout:
+            _check(Path(target.file), place, board)
+    return targets
+
+
+def _target(word: str) -> Target:
+    name, equals, file = word.partition("=")
+    known = ", ".join(FORMATS)
+    if not equals or not file:
+        do = f"write it as FORMAT=FILE, where FORMAT is one of {known} and FILE may be - for stdout"
+        raise SplitcheckError(f"--out {word}", "the file is missing", do)
+    if name not in FORMATS:
+        raise SplitcheckError(f"--out {word}", f'no format "{name}"', f"use one of {known}")
+    return Target(name, file)
+
+
+def _check(path: Path, place: str, board: Path) -> None:
+    folder = path.parent
+    if path.is_dir():
+        raise SplitcheckError(place, "this is a folder", "name a file in it")
+    if not folder.is_dir():
+        wrong = f'there is no folder "{folder}"'
+        raise SplitcheckError(place, wrong, "make the folder first or name another")
+    if path.exists() and board.is_file() and path.samefile(board):
+        wrong = "this is the very file that is read"
+        raise SplitcheckError(place, wrong, "name another file for the result")
+    if not os.access(path if path.exists() else folder, os.W_OK):
+        raise SplitcheckError(place, "it may not be written", "change its rights or name another")
+
+
+def deliver(target: Target, text: str) -> None:
+    """Write one result; files are UTF-8 with plain line ends on every system.
+
+    Raises
+    ------
+    SplitcheckError
+        If the file cannot be written after all.
+    """
+    if target.is_stdout:
+        streams.put(text, sys.stdout)
+        return
+    try:
+        with Path(target.file).open(
+            "w", encoding="utf-8", errors="backslashreplace", newline="\n"
+        ) as f:
+            f.write(text)
+    except OSError as error:
+        place = f"--out {target.format}={target.file}"
+        wrong = f"cannot be written ({error.strerror})"
+        raise SplitcheckError(place, wrong, "free the space or name another file") from error

@@ -1,0 +1,218 @@
+"""The report as text for people: what was read, what was assumed, what is broken, worst first."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Sequence
+from typing import get_args
+
+from rich.cells import cell_len
+from rich.text import Text
+
+from splitcheck import __version__
+from splitcheck.report import tally
+from splitcheck.report.page import Column, Page
+from splitcheck.report.words import number, plural, shorten, with_error
+from splitcheck.verdict.findings import LEVELS, Finding, Kind, Level, Report
+
+#: How each level is coloured; its word always stands beside it.
+LEVEL_STYLES: dict[Level, str] = {"error": "bold red", "warning": "yellow", "note": "cyan"}
+
+CAUTION = (
+    "Added inductance, noise and detour are screening estimates: they rank places, they do not "
+    "replace measurement or accredited EMC testing. A gap can be there for safety (isolation, "
+    "creepage): never bridge one before the applicable product-safety standard, local code and a "
+    "qualified engineer have been asked."
+)
+
+_COLUMNS = (
+    Column("id"),
+    Column("level"),
+    Column("kind"),
+    Column("net", gives=True),
+    Column("gap\nmm", "right"),
+    Column("detour\nmm", "right"),
+    Column("added\nnH", "right"),
+    Column("noise\nmV", "right"),
+)
+_NET = 3
+_ASSUMPTIONS_SHOWN = 10
+_FACTS_SHOWN = 12
+_REASONS_SHOWN = 5
+_NET_CELLS = 28
+_LONGEST_NAME = 120
+
+
+def render(report: Report, *, top: int, width: int, color: bool) -> str:
+    """Write the report of a board as text.
+
+    Parameters
+    ----------
+    top
+        How many gaps to show, worst first; 0 shows all.
+    width
+        Columns of the terminal.
+    color
+        Whether to colour; nothing is said by colour alone.
+    """
+    page = Page(width, color=color)
+    _read(page, report)
+    _assumed(page, report)
+    _found(page, report, top)
+    _in_all(page, report)
+    page.gap()
+    page.say(CAUTION, indent=0)
+    return str(page)
+
+
+def _read(page: Page, report: Report) -> None:
+    wide, high = report.size_mm
+    page.say(
+        f"splitcheck {__version__}: {shorten(report.board, 40)}, {wide:.2f} x {high:.2f} mm",
+        indent=0,
+        style="bold",
+    )
+    page.heading("Read")
+    layers = ", ".join(
+        f"{layer.number} {shorten(layer.name, _NET_CELLS)} ({layer.role})"
+        for layer in report.layers
+    )
+    kinds = Counter(row.kind for row in report.inputs)
+    files = ", ".join(f"{kinds[kind]} {kind}" for kind in sorted(kinds))
+    broken = sum(net.findings > 0 for net in report.nets)
+    page.say_text(Text(layers or "none"), lead="layers  ")
+    page.say(f"{len(report.nets)}, {broken} of them with findings", lead="nets    ")
+    page.say(f"{len(report.inputs)}: {files}" if files else "0", lead="files   ")
+    for fact in report.facts[:_FACTS_SHOWN]:
+        page.say(fact, lead="- ")
+    _more(page, len(report.facts) - _FACTS_SHOWN, "fact")
+    if report.remarks:
+        page.say(f"{plural(len(report.remarks), 'remark')} on the files: `read` shows them")
+
+
+def _assumed(page: Page, report: Report) -> None:
+    page.heading("Assumed")
+    for place, assumption in enumerate(report.assumptions[:_ASSUMPTIONS_SHOWN], start=1):
+        page.say(assumption, lead=f"{place}. ")
+    _more(page, len(report.assumptions) - _ASSUMPTIONS_SHOWN, "assumption")
+    if not report.assumptions:
+        page.say("Nothing that changes results.")
+
+
+def _more(page: Page, left: int, thing: str) -> None:
+    if left > 0:
+        page.say(f"and {plural(left, 'more ' + thing)}: `read` shows them all")
+
+
+def _found(page: Page, report: Report, top: int) -> None:
+    page.heading("Found, worst first")
+    groups = tally.over_one_gap(report.findings)
+    if not groups:
+        page.say("Nothing: no finding within what was read and assumed above.")
+        return
+    shown = groups[:top] if top else groups
+    rows = [_cells(group[0]) for group in shown]
+    widths = page.widths(_COLUMNS, rows)
+    page.titles(_COLUMNS, widths)
+    for place, (group, row) in enumerate(zip(shown, rows, strict=True)):
+        page.row(_COLUMNS, widths, row, ["", LEVEL_STYLES[group[0].level]])
+        name = shorten(row[_NET], _LONGEST_NAME)
+        if cell_len(name) > widths[_NET]:
+            page.say_text(Text(f"net {name}"), indent=widths[0] + 4)
+        _below(page, group, widths[0] + 4, why=place < _REASONS_SHOWN)
+    hidden = groups[len(shown) :]
+    if hidden:
+        places = sum(len(group) for group in hidden)
+        gaps = plural(len(hidden), "more gap")
+        page.say(f"and {plural(places, 'finding')} over {gaps}: --top 0 shows all of them")
+
+
+def _cells(worst: Finding) -> tuple[str, ...]:
+    """One row of numbers: those of the worst finding over the gap."""
+    return (
+        worst.id,
+        worst.level,
+        worst.kind,
+        worst.net,
+        number(worst.gap_mm),
+        "none" if worst.detour_mm is None else number(worst.detour_mm),
+        _added(worst),
+        "-" if worst.noise_mv is None else number(worst.noise_mv),
+    )
+
+
+def _added(finding: Finding) -> str:
+    if finding.method == "none" or finding.added_nh is None:
+        return "no plane" if finding.kind == "no-plane" else "no way back"
+    return with_error(finding.added_nh, finding.error_nh)
+
+
+def _below(page: Page, group: Sequence[Finding], indent: int, *, why: bool) -> None:
+    """The lines under a row: where it is, which nets share the gap, why it counts."""
+    worst = group[0]
+    page.say_text(Text(_where(worst)), indent=indent)
+    if len(group) > 1:
+        room = 2 * (page.width - indent)
+        page.say_text(Text(_sharers(group, room)), indent=indent)
+    if worst.waived is not None:
+        page.say(f"waived: {worst.waived}", indent=indent)
+    if why and worst.reason:
+        page.say(worst.reason, indent=indent)
+
+
+def _where(finding: Finding) -> str:
+    layer = shorten(finding.layer, _NET_CELLS)
+    over = ""
+    if finding.plane_layer:
+        net = f" ({shorten(finding.plane_net, _NET_CELLS)})" if finding.plane_net else ""
+        over = f" over {shorten(finding.plane_layer, _NET_CELLS)}{net}"
+    x_mm, y_mm = (round(value, 3) + 0.0 for value in finding.at_mm)
+    source = f"{shorten(finding.source.file, 40)}:{finding.source.line}"
+    rise = f", at {number(finding.rise_ns)} ns" if finding.noise_mv is not None else ""
+    return f"{layer}{over}, x {x_mm:.3f} y {y_mm:.3f} mm, {source}{rise}"
+
+
+def _sharers(group: Sequence[Finding], room: int) -> str:
+    """All nets over a gap in at most ``room`` columns, or as many as fit and the count of the rest.
+
+    A gap that one net crosses several times is told as so many places.
+    """
+    nets = tally.nets_of(group)
+    levels = ", ".join(f"{count} {level}" for level, count in tally.by_level(group))
+    places = f" at {len(group)} places" if len(group) > len(nets) else ""
+    start = f"{plural(len(nets), 'net')} over one gap{places} ({levels}): "
+    taken = len(start)
+    shown: list[str] = []
+    for net in nets:
+        name = shorten(net, _NET_CELLS)
+        taken += len(name) + 2
+        if shown and taken > room - len(" and 99999 more"):
+            break
+        shown.append(name)
+    rest = f" and {len(nets) - len(shown)} more" if len(shown) < len(nets) else ""
+    return start + ", ".join(shown) + rest
+
+
+def _in_all(page: Page, report: Report) -> None:
+    page.heading("In all")
+    found = tally.standing(report.findings)
+    kinds = [kind for kind in get_args(Kind) if any(f.kind == kind for f in found)]
+    if kinds:
+        columns = (Column("kind"), *(Column(level, "right") for level in LEVELS))
+        rows = [
+            (
+                kind,
+                *(str(sum(f.kind == kind and f.level == level for f in found)) for level in LEVELS),
+            )
+            for kind in kinds
+        ]
+        total = ("all", *(str(sum(f.level == level for f in found)) for level in LEVELS))
+        page.table(columns, [*rows, total])
+    gaps = plural(len(tally.over_one_gap(found)), "gap")
+    nets = plural(len(tally.nets_of(found)), "net")
+    page.say(f"{plural(len(found), 'finding')} over {gaps} on {nets}")
+    waived = len(report.findings) - len(found)
+    if waived:
+        page.say(f"{plural(waived, 'waived finding')}, not counted above")
+    for count in report.counts:
+        page.say(f"{count.number} {count.what}")
