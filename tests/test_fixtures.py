@@ -52,7 +52,9 @@ def test_maker_writes_the_committed_files(name: str, faulty: bool) -> None:
 def test_maker_writes_both_boards_below_a_folder(tmp_path: Path) -> None:
     """The maker as a program leaves two folders of the same file names."""
     main(tmp_path)
-    faulty, clean = (sorted(p.name for p in (tmp_path / n).iterdir()) for n in ("demo", "demo_clean"))
+    faulty, clean = (
+        sorted(p.name for p in (tmp_path / n).iterdir()) for n in ("demo", "demo_clean")
+    )
     assert faulty == clean
     assert "fixture.toml" in faulty
 
