@@ -15,6 +15,7 @@ from splitcheck.report.words import shorten
 #: Narrower than this no row of numbers fits; a narrower window wraps it by itself.
 NARROWEST = 80
 WIDEST = 140
+_NARROWEST_NAME = 10
 #: A sentence longer than this carries a name that nobody wants to read to its end.
 _LONGEST_SENTENCE = 700
 
@@ -93,10 +94,13 @@ class Page:
             )
             for place, column in enumerate(columns)
         ]
-        spare = self.width - 2 - sum(wide) - 2 * (len(columns) - 1)
         givers = [place for place, column in enumerate(columns) if column.gives]
-        for place in givers:
-            wide[place] = max(wide[place] + min(spare, 0) // len(givers), 10)
+        taken = sum(wide) - sum(wide[place] for place in givers)
+        room = self.width - 2 - taken - 2 * (len(columns) - 1)
+        # The narrowest first: what a short column does not need goes to the long ones.
+        for done, place in enumerate(sorted(givers, key=lambda place: wide[place])):
+            wide[place] = max(min(wide[place], room // (len(givers) - done)), _NARROWEST_NAME)
+            room -= wide[place]
         return wide
 
     def titles(self, columns: Sequence[Column], widths: Sequence[int]) -> None:
