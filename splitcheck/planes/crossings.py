@@ -14,7 +14,14 @@ from splitcheck.board.board import Board
 from splitcheck.board.names import is_ground, is_supply
 from splitcheck.copper.marks import Point
 from splitcheck.planes.islands import Plane
-from splitcheck.planes.shadows import Span, Uncovered, common, merged, uncovered
+from splitcheck.planes.shadows import (
+    Span,
+    Uncovered,
+    common,
+    merged,
+    uncovered,
+    without,
+)
 from splitcheck.planes.tracks import Tracks
 
 #: How far off the rim of a gap the copper is probed, mm.
@@ -52,15 +59,14 @@ class Crossing:
 
 @dataclass(frozen=True, slots=True)
 class BareTrace:
-    """What of one net on one layer has no reference copper above or below at all."""
+    """A connected run of one net on one layer with no reference copper above or below at all."""
 
     net: int
     layer: int
     bare_mm: float
-    """Total length, mm."""
-    longest_mm: float
+    """Its length, mm."""
     at: Point
-    """Middle of the longest piece."""
+    """Middle of its longest straight stretch."""
     width_mm: float
     line: int
     spans: tuple[tuple[Point, Point], ...]
@@ -117,6 +123,7 @@ def find_crossings(
     """
     everything = range(len(tracks.net))
     crossings: list[Crossing] = []
+    crossed: dict[int, list[Span]] = defaultdict(list)
     open_spans: list[dict[int, list[Span]]] = []
     for side in (-1, 1):
         ranked = sorted(
@@ -126,14 +133,18 @@ def find_crossings(
         still: dict[int, list[Span]] = {piece: [(0.0, 1.0)] for piece in everything}
         for plane in ranked:
             bare = uncovered(tracks, plane, sorted(still))
-            crossings.extend(_crossings_over(tracks, plane, bare, still))
+            for crossing, bits in _crossings_over(tracks, plane, bare, still):
+                crossings.append(crossing)
+                for bit in bits:
+                    crossed[bit.piece].append((bit.start, bit.stop))
             still = _both(still, bare)
         open_spans.append(still)
-    bare_everywhere = {
-        piece: spans
+    bare_everywhere = [
+        _Bit(piece, start, stop, 0)
         for piece in everything
-        if (spans := common(open_spans[0].get(piece, []), open_spans[1].get(piece, [])))
-    }
+        for span in common(open_spans[0].get(piece, []), open_spans[1].get(piece, []))
+        for start, stop in without(span, merged(crossed[piece]))
+    ]
     return tuple(crossings), _bare_traces(tracks, bare_everywhere)
 
 
@@ -148,7 +159,7 @@ def _both(still: dict[int, list[Span]], bare: Uncovered) -> dict[int, list[Span]
 
 def _crossings_over(
     tracks: Tracks, plane: Plane, bare: Uncovered, still: dict[int, list[Span]]
-) -> list[Crossing]:
+) -> list[tuple[Crossing, list[_Bit]]]:
     bits = [
         _Bit(piece, start, stop, bit.gap)
         for piece, found in bare.items()
@@ -160,7 +171,7 @@ def _crossings_over(
     for group in _groups(tracks, bits):
         crossing = _crossing(tracks, plane, group, ends)
         if crossing is not None:
-            found.append(crossing)
+            found.append((crossing, group))
     return found
 
 
@@ -313,27 +324,22 @@ def _farthest(
     return best
 
 
-def _bare_traces(tracks: Tracks, bare: dict[int, list[Span]]) -> tuple[BareTrace, ...]:
-    by_net: dict[int, list[tuple[int, Span]]] = defaultdict(list)
-    for piece, spans in sorted(bare.items()):
-        for span in spans:
-            by_net[int(tracks.net[piece])].append((piece, span))
+def _bare_traces(tracks: Tracks, bits: Sequence[_Bit]) -> tuple[BareTrace, ...]:
     traces = []
-    for net, stretches in sorted(by_net.items()):
-        lengths = [(b - a) * float(tracks.length_mm[piece]) for piece, (a, b) in stretches]
-        longest = int(np.argmax(lengths))
-        piece, (a, b) = stretches[longest]
+    for group in _groups(tracks, bits):
+        lengths = [(bit.stop - bit.start) * float(tracks.length_mm[bit.piece]) for bit in group]
+        longest = group[int(np.argmax(lengths))]
         traces.append(
             BareTrace(
-                net,
+                int(tracks.net[longest.piece]),
                 tracks.layer,
                 float(sum(lengths)),
-                lengths[longest],
-                tracks.point(piece, (a + b) / 2),
-                float(tracks.width_mm[piece]),
-                int(tracks.line[piece]),
+                tracks.point(longest.piece, (longest.start + longest.stop) / 2),
+                float(tracks.width_mm[longest.piece]),
+                int(tracks.line[longest.piece]),
                 tuple(
-                    (tracks.point(piece, a), tracks.point(piece, b)) for piece, (a, b) in stretches
+                    (tracks.point(bit.piece, bit.start), tracks.point(bit.piece, bit.stop))
+                    for bit in group
                 ),
             )
         )

@@ -11,6 +11,7 @@ import shapely
 
 from splitcheck.planes.islands import Plane
 from splitcheck.planes.tracks import Tracks
+from splitcheck.units import Floats
 
 #: Stretches of uncovered trace shorter than this are noise of the polygons, mm.
 LEAST_RUN_MM = 2e-3
@@ -115,3 +116,46 @@ def common(one: Sequence[Span], other: Sequence[Span]) -> list[Span]:
     return [
         (max(a, c), min(b, d)) for a, b in one for c, d in other if min(b, d) > max(a, c)
     ]
+
+
+def without(span: Span, taken: Sequence[Span]) -> list[Span]:
+    """What is left of a span when ordered spans are taken away.
+
+    Examples
+    --------
+    >>> without((0.0, 1.0), [(0.25, 0.5)])
+    [(0.0, 0.25), (0.5, 1.0)]
+    """
+    left: list[Span] = []
+    start, stop = span
+    for a, b in taken:
+        if b <= start or a >= stop:
+            continue
+        if a > start:
+            left.append((start, a))
+        start = max(start, b)
+    if start < stop:
+        left.append((start, stop))
+    return left
+
+
+def nearest_cover(
+    planes: Sequence[Plane], layers: Sequence[int], xs: Floats, ys: Floats
+) -> int | None:
+    """The first of some layers whose reference copper covers all of some points.
+
+    Parameters
+    ----------
+    planes
+        All planes.
+    layers
+        Layer numbers, nearest first.
+    xs, ys
+        Points, shape (n,), mm.
+    """
+    by_layer = {plane.layer: plane for plane in planes}
+    for layer in layers:
+        plane = by_layer.get(layer)
+        if plane is not None and bool((plane.island_at(xs, ys) >= 0).all()):
+            return layer
+    return None

@@ -1,0 +1,448 @@
+"""From crossings and bare traces to findings: what counts, what it costs, and why, in words."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, replace
+from hashlib import sha256
+from math import inf
+
+import numpy as np
+import shapely
+
+from splitcheck.board.board import Board
+from splitcheck.loops import estimate
+from splitcheck.loops.bridges import IslandGraph, stitched_near
+from splitcheck.loops.routes import Route, Terrain, Way, find_route
+from splitcheck.planes.crossings import BareTrace, Crossing
+from splitcheck.planes.islands import Gap, Plane
+from splitcheck.planes.shadows import nearest_cover
+from splitcheck.verdict.findings import (
+    BridgeUse,
+    Count,
+    Finding,
+    GapShare,
+    Kind,
+    Source,
+)
+from splitcheck.verdict.score import DEFAULT_DRIVE, Drive, level, noise_mv, worst_first
+
+#: A net's own antipad is at most this much wider than its hole, mm; more is a field of antipads.
+OWN_ANTIPAD_MM = 2.0
+#: Bare trace shorter than this at a net's own pads and vias is not a finding, mm.
+OWN_END_MM = 3.0
+#: A run this long over another plane of the same net, stitched this near, is a change of plane.
+CHANGE_RUN_MM = 5.0
+CHANGE_STITCH_MM = 3.0
+#: From this ratio of length across the trace to length along it a closed gap is a slot.
+SLOT_RATIO = 2.5
+
+
+@dataclass(frozen=True, slots=True)
+class Scene:
+    """What judging a crossing needs to know beyond the crossing."""
+
+    board: Board
+    planes: dict[int, Plane]
+    terrains: dict[int, Terrain]
+    graph: IslandGraph
+    min_nh: float
+    drive: Drive = DEFAULT_DRIVE
+
+
+def judge(
+    scene: Scene, crossings: Sequence[Crossing], bare: Sequence[BareTrace]
+) -> tuple[tuple[Finding, ...], tuple[Count, ...]]:
+    """Turn crossings and bare traces into findings, worst first.
+
+    Returns
+    -------
+    Findings with their ids, and counts of what was seen and is not a finding.
+    """
+    findings: list[Finding] = []
+    dropped: dict[str, int] = defaultdict(int)
+    for crossing in crossings:
+        reason = _exempt(scene, crossing)
+        finding = None if reason else _crossing_finding(scene, crossing)
+        if finding is None:
+            dropped[reason or f"crossings that add less than {scene.min_nh:g} nH"] += 1
+        elif isinstance(finding, str):
+            dropped[finding] += 1
+        else:
+            findings.append(finding)
+    findings.extend(_bare_findings(scene, bare, dropped))
+    counts = tuple(Count(what, number) for what, number in sorted(dropped.items()))
+    return _with_ids(_with_shares(findings)), counts
+
+
+def _with_ids(findings: Iterable[Finding]) -> tuple[Finding, ...]:
+    ranked = sorted(findings, key=worst_first)
+    return tuple(replace(finding, id=f"F{n}") for n, finding in enumerate(ranked, start=1))
+
+
+def _with_shares(findings: Sequence[Finding]) -> list[Finding]:
+    nets: dict[str, set[str]] = defaultdict(set)
+    for finding in findings:
+        if finding.kind not in {"no-plane", "edge-run"}:
+            nets[finding.gap].add(finding.net)
+    return [
+        replace(
+            finding,
+            shares_gap_with=tuple(
+                GapShare(net, None)
+                for net in sorted(nets.get(finding.gap, set()) - {finding.net})
+            ),
+        )
+        for finding in findings
+    ]
+
+
+def _exempt(scene: Scene, crossing: Crossing) -> str | None:
+    """Why a crossing is no finding, or None.
+
+    (1) The gap is the antipad of a plated hole of the net itself.
+    (2) It is too small to add what is asked for, whatever way the return takes.
+    (3) A long run over another plane of the same net with stitching at both ends: the return
+    changes planes there, it does not go round.
+    """
+    plane = scene.planes[crossing.plane]
+    gap = plane.gaps[crossing.gap]
+    if not gap.open and _own_antipad(scene, crossing, gap):
+        return "antipads at a net's own holes"
+    if not gap.open and _ceiling_nh(scene, crossing, gap) < scene.min_nh:
+        return f"crossings that add less than {scene.min_nh:g} nH"
+    if crossing.run_mm >= CHANGE_RUN_MM and _changes_plane(scene, crossing):
+        return "runs over another plane of the same net stitched at both ends (changes of plane)"
+    return None
+
+
+def _own_antipad(scene: Scene, crossing: Crossing, gap: Gap) -> bool:
+    x0, y0, x1, y1 = gap.shape.bounds
+    for hole in scene.board.holes:
+        if hole.net != crossing.net:
+            continue
+        x, y = hole.at
+        if (
+            x0 <= x <= x1
+            and y0 <= y <= y1
+            and max(x1 - x0, y1 - y0) <= hole.hole.diameter_mm + OWN_ANTIPAD_MM
+            and gap.shape.buffer(hole.hole.diameter_mm).contains(shapely.Point(x, y))
+        ):
+            return True
+    return False
+
+
+def _ceiling_nh(scene: Scene, crossing: Crossing, gap: Gap) -> float:
+    """More than a closed gap can add: a slot as long as the gap's own diagonal, crossed midway."""
+    x0, y0, x1, y1 = gap.shape.bounds
+    across = float(np.hypot(x1 - x0, y1 - y0))
+    height = scene.board.stack.height_mm(crossing.layer, crossing.plane)
+    stub = estimate.stub_nh(across / 2, crossing.run_mm, height, crossing.width_mm)
+    along = crossing.run_mm * estimate.beside_edge_nh_mm(-across / 2, height)
+    return 1.3 * max(stub, 0.0 if across / 2 > 3 * height else along)
+
+
+def _changes_plane(scene: Scene, crossing: Crossing) -> bool:
+    plane = scene.planes[crossing.plane]
+    one, other = (plane.islands[i] for i in crossing.islands)
+    if one.net != other.net:
+        return False
+    xs, ys = np.array(crossing.path).T
+    beyond = _layers_beyond(scene, crossing)
+    xs, ys = np.append(xs, crossing.at[0]), np.append(ys, crossing.at[1])
+    layer = nearest_cover(tuple(scene.planes.values()), beyond, xs, ys)
+    if layer is None:
+        return False
+    number = int(scene.planes[layer].island_at(xs[:1], ys[:1])[0])
+    island = scene.planes[layer].islands[number]
+    return (
+        island.net == one.net
+        and stitched_near(scene.graph, one.id, island.id, crossing.before, CHANGE_STITCH_MM)
+        and stitched_near(scene.graph, other.id, island.id, crossing.after, CHANGE_STITCH_MM)
+    )
+
+
+def _layers_beyond(scene: Scene, crossing: Crossing) -> list[int]:
+    step = 1 if crossing.plane > crossing.layer else -1
+    last = len(scene.board.stack.layers)
+    return list(range(crossing.plane + step, last + 1 if step > 0 else 0, step))
+
+
+def _layers_on_other_side(scene: Scene, crossing: Crossing) -> list[int]:
+    step = -1 if crossing.plane > crossing.layer else 1
+    last = len(scene.board.stack.layers)
+    return list(range(crossing.layer + step, last + 1 if step > 0 else 0, step))
+
+
+def share_of(scene: Scene, crossing: Crossing) -> float:
+    """Part of the return that the broken plane carries: 1 - h1/(h1 + h2) between two planes."""
+    points = np.array([crossing.before, crossing.at, crossing.after])
+    other = nearest_cover(
+        tuple(scene.planes.values()),
+        _layers_on_other_side(scene, crossing),
+        points[:, 0],
+        points[:, 1],
+    )
+    if other is None:
+        return 1.0
+    near = scene.board.stack.height_mm(crossing.layer, crossing.plane)
+    far = scene.board.stack.height_mm(crossing.layer, other)
+    return far / (near + far)
+
+
+def beyond_mm(scene: Scene, crossing: Crossing) -> float | None:
+    """Distance from the broken plane to a whole plane beyond it under this part of the gap."""
+    xs, ys = _places_in_gap(scene, crossing)
+    layer = nearest_cover(
+        tuple(scene.planes.values()), _layers_beyond(scene, crossing), xs, ys
+    )
+    return None if layer is None else scene.board.stack.height_mm(crossing.plane, layer)
+
+
+def _places_in_gap(
+    scene: Scene, crossing: Crossing
+) -> tuple[np.ndarray[tuple[int], np.dtype[np.float64]], ...]:
+    """The run itself and places of the gap to its left and right, as far as it matters."""
+    gap = scene.planes[crossing.plane].gaps[crossing.gap].shape
+    dx = crossing.after[0] - crossing.before[0]
+    dy = crossing.after[1] - crossing.before[1]
+    length = float(np.hypot(dx, dy)) or 1.0
+    reach = np.array([-2.0, -1.0, -0.5, 0.0, 0.5, 1.0, 2.0]) * max(crossing.run_mm, 1.0)
+    xs = np.append(crossing.at[0] - dy / length * reach, [p[0] for p in crossing.path])
+    ys = np.append(crossing.at[1] + dx / length * reach, [p[1] for p in crossing.path])
+    inside = shapely.contains_xy(gap, xs, ys) & shapely.contains_xy(
+        scene.board.outline, xs, ys
+    )
+    if not inside.any():
+        return np.array([crossing.at[0]]), np.array([crossing.at[1]])
+    return xs[inside], ys[inside]
+
+
+def _crossing_finding(scene: Scene, crossing: Crossing) -> Finding | str | None:
+    """The finding of a crossing; None if it adds too little."""
+    route = find_route(crossing, scene.planes, scene.terrains, scene.graph)
+    share = share_of(scene, crossing)
+    beyond = beyond_mm(scene, crossing)
+    gap = scene.planes[crossing.plane].gaps[crossing.gap]
+    kind = _kind(crossing, gap, route)
+    value = _estimate(scene, crossing, route, share, beyond)
+    if value is not None and value.added_nh < scene.min_nh:
+        return None
+    if kind == "edge-run":
+        return "runs beyond the rim of a plane (edge runs)"
+    added = None if value is None else value.added_nh
+    noise = None if added is None else noise_mv(added, scene.drive)
+    return _finding(
+        scene, crossing, route, kind, gap, value, noise, _reason(scene, crossing, route, kind, share, beyond)
+    )
+
+
+def _kind(crossing: Crossing, gap: Gap, route: Route) -> Kind:
+    if crossing.islands[0] != crossing.islands[1]:
+        return "split-crossing"
+    across = sum(
+        min(route.reach_mm(way), 1e3) for way in (route.left, route.right)
+    )
+    if gap.open and (route.left is None or route.right is None):
+        best = route.best
+        if best is not None and route.reach_mm(best) < 0.5 * crossing.run_mm:
+            return "edge-run"
+        return "slot-crossing"
+    return "slot-crossing" if across >= SLOT_RATIO * crossing.run_mm else "void-crossing"
+
+
+def _estimate(
+    scene: Scene, crossing: Crossing, route: Route, share: float, beyond: float | None
+) -> estimate.Inductance | None:
+    if not route.joined:
+        return None
+    return estimate.added(
+        (route.reach_mm(route.left), route.reach_mm(route.right)),
+        (_bridge_nh(scene, crossing, route.left), _bridge_nh(scene, crossing, route.right)),
+        crossing.run_mm,
+        scene.board.stack.height_mm(crossing.layer, crossing.plane),
+        crossing.width_mm,
+        beyond_mm=beyond,
+        share=share,
+    )
+
+
+def _bridge_nh(scene: Scene, crossing: Crossing, way: Way | None) -> float:
+    if way is None or not way.bridges or way.bridge_layer in {0, crossing.plane}:
+        return 0.0
+    (x0, y0), (x1, y1) = way.bridges[0], way.bridges[-1]
+    apart = float(np.hypot(x1 - x0, y1 - y0))
+    return estimate.via_pair_nh(
+        apart, 0.3, scene.board.stack.height_mm(crossing.plane, way.bridge_layer)
+    )
+
+
+def _finding(
+    scene: Scene,
+    crossing: Crossing,
+    route: Route,
+    kind: Kind,
+    gap: Gap,
+    value: estimate.Inductance | None,
+    noise: float | None,
+    reason: str,
+) -> Finding:
+    plane = scene.planes[crossing.plane]
+    layers = scene.board.stack.layers
+    islands = [plane.islands[i] for i in crossing.islands]
+    net = scene.board.nets[crossing.net].name
+    best = route.best
+    at = (round(crossing.at[0], 4), round(crossing.at[1], 4))
+    return Finding(
+        id="",
+        kind=kind,
+        level=level(noise, scene.drive),
+        net=net,
+        net_class=scene.drive.name,
+        layer=layers[crossing.layer - 1].name,
+        plane_layer=layers[crossing.plane - 1].name,
+        plane_net=" to ".join(dict.fromkeys(island.net_name for island in islands)),
+        at_mm=at,
+        gap_mm=crossing.run_mm,
+        detour_mm=route.detour_mm if route.joined else None,
+        added_nh=None if value is None else value.added_nh,
+        error_nh=None if value is None else value.error_nh,
+        method="none" if value is None else "estimated",
+        noise_mv=noise,
+        rise_ns=scene.drive.rise_ns,
+        corner_khz=None,
+        stray_db=None,
+        islands=(islands[0].id, islands[1].id),
+        bridges=tuple(
+            BridgeUse("via", (round(x, 4), round(y, 4)), best.bridge_net)
+            for x, y in (best.bridges if best else ())
+        ),
+        gap=gap.id,
+        shares_gap_with=(),
+        pair=None,
+        source=Source(scene.board.layers[crossing.layer - 1].file, crossing.line),
+        waived=None,
+        fingerprint=_fingerprint(kind, net, layers[crossing.layer - 1].name, at),
+        reason=reason,
+    )
+
+
+def _fingerprint(kind: str, net: str, layer: str, at: tuple[float, float]) -> str:
+    """A hash of what, on which net and roughly where (to 1 mm)."""
+    text = f"{kind}|{net}|{layer}|{round(at[0])}|{round(at[1])}"
+    return sha256(text.encode()).hexdigest()[:16]
+
+
+def _reason(
+    scene: Scene, crossing: Crossing, route: Route, kind: Kind, share: float, beyond: float | None
+) -> str:
+    plane = scene.planes[crossing.plane]
+    one, other = (plane.islands[i] for i in crossing.islands)
+    name = scene.board.stack.layers[crossing.plane - 1].name
+    if kind == "split-crossing":
+        start = f"{name} is split here between {one.net_name} ({one.id}) and {other.net_name} ({other.id})"
+    else:
+        start = f"{name} ({one.net_name}) is open for {crossing.run_mm:.2f} mm under the trace"
+    return "; ".join([start, _way_in_words(scene, route), *_extras(share, beyond)])
+
+
+def _way_in_words(scene: Scene, route: Route) -> str:
+    best = route.best
+    if not route.joined or best is None:
+        return "neither copper nor a plated hole joins the two sides: no galvanic way back"
+    detour = route.detour_mm or 0.0
+    if not best.bridges:
+        return f"the return walks {detour:.1f} mm more round the gap"
+    x, y = best.bridges[0]
+    via = f"plated holes from ({x:.2f}, {y:.2f}) over {best.bridge_net}"
+    if best.bridge_layer:
+        via += f" on {scene.board.stack.layers[best.bridge_layer - 1].name}"
+    return f"the return walks {detour:.1f} mm more through {via}"
+
+
+def _extras(share: float, beyond: float | None) -> list[str]:
+    extras = []
+    if share < 1.0:
+        extras.append(f"{100 * share:.0f} % of the return flows on this plane")
+    if beyond is not None:
+        extras.append(f"a whole plane {beyond:.2f} mm beyond shields the gap")
+    return extras
+
+
+def _bare_findings(
+    scene: Scene, bare: Sequence[BareTrace], dropped: dict[str, int]
+) -> list[Finding]:
+    """One finding for each net and layer that runs over no plane at all."""
+    groups: dict[tuple[int, int], list[BareTrace]] = defaultdict(list)
+    for trace in bare:
+        if trace.bare_mm < OWN_END_MM:
+            dropped[f"ends of traces without a plane, shorter than {OWN_END_MM:g} mm"] += 1
+        else:
+            groups[trace.layer, trace.net].append(trace)
+    found = (_bare_finding(scene, traces) for _, traces in sorted(groups.items()))
+    return [finding for finding in found if finding is not None]
+
+
+def _bare_finding(scene: Scene, traces: Sequence[BareTrace]) -> Finding | None:
+    longest = max(traces, key=lambda trace: trace.bare_mm)
+    total = sum(trace.bare_mm for trace in traces)
+    value = _bare_estimate(scene, traces)
+    if value is not None and value.added_nh < scene.min_nh:
+        return None
+    noise = None if value is None else noise_mv(value.added_nh, scene.drive)
+    net = scene.board.nets[longest.net].name
+    layer = scene.board.stack.layers[longest.layer - 1].name
+    at = (round(longest.at[0], 4), round(longest.at[1], 4))
+    where = "" if len(traces) == 1 else f" in {len(traces)} places, the longest {longest.bare_mm:.1f} mm"
+    return Finding(
+        id="",
+        kind="no-plane",
+        level=level(noise, scene.drive),
+        net=net,
+        net_class=scene.drive.name,
+        layer=layer,
+        plane_layer="",
+        plane_net="",
+        at_mm=at,
+        gap_mm=total,
+        detour_mm=None,
+        added_nh=None if value is None else value.added_nh,
+        error_nh=None if value is None else value.error_nh,
+        method="none" if value is None else "estimated",
+        noise_mv=noise,
+        rise_ns=scene.drive.rise_ns,
+        corner_khz=None,
+        stray_db=None,
+        islands=(),
+        bridges=(),
+        gap=f"bare {layer}",
+        shares_gap_with=(),
+        pair=None,
+        source=Source(scene.board.layers[longest.layer - 1].file, longest.line),
+        waived=None,
+        fingerprint=_fingerprint("no-plane", net, layer, at),
+        reason=f"{total:.1f} mm of the trace have no reference copper above or below{where}",
+    )
+
+
+def _bare_estimate(scene: Scene, traces: Sequence[BareTrace]) -> estimate.Inductance | None:
+    """What running past the rim of the nearest plane costs; None if the board has no plane.
+
+    The rim is taken as straight and as far away as the nearest reference copper of any layer.
+    """
+    total = 0.0
+    for trace in traces:
+        for start, stop in trace.spans:
+            line = shapely.LineString([start, stop])
+            best = inf
+            for plane in scene.planes.values():
+                if plane.layer == trace.layer:
+                    continue
+                height = scene.board.stack.height_mm(trace.layer, plane.layer)
+                away = min(island.shape.distance(line) for island in plane.islands)
+                best = min(best, estimate.beside_edge_nh_mm(-away, height))
+            if best == inf:
+                return None
+            total += best * line.length
+    return estimate.Inductance(total, 0.6 * total)
