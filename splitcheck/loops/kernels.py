@@ -1,0 +1,202 @@
+"""Points and outlines in, potentials and source functions out: the closed forms of the field solve.
+
+Everything here is numpy on plain arrays. The letters are those of the docstrings; lengths in mm.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from splitcheck.units import Floats
+
+#: Image terms summed one by one; the rest of each series is added in closed form.
+_TERMS = 6
+#: The image series is tabled up to this many image distances; beyond, its logarithm is exact.
+_TABLED = 3.0
+_STEPS = 1536
+
+
+def outline_potential(x: Floats, y: Floats, edges: Floats) -> Floats:
+    """Potential of a uniform sheet at points in its own plane, per unit density.
+
+    Parameters
+    ----------
+    x, y
+        Points, shape (k, p), mm.
+    edges
+        Outline as edges, shape (k, m, 4) as x1, y1, x2, y2 in mm; the sheet lies to the left, so
+        that holes run clockwise. Edges of no length are allowed and count nothing.
+
+    Returns
+    -------
+    Integral of 1/r over the sheet, shape (k, p), mm.
+
+    Notes
+    -----
+    In polar coordinates about the point the integral over the sheet is the sum over its edges of
+    d ln[(R1 + R2 + l) / (R1 + R2 - l)], with d the distance of the edge's line (positive where the
+    point lies to the left), l its length and R1, R2 the distances of its ends. On the edge itself
+    the logarithm is infinite but d is 0, and the product is 0.
+
+    References
+    ----------
+    Wilton et al., "Potential integrals for uniform and linear source distributions on polygonal
+    and polyhedral domains", IEEE Trans. AP 32(3), 1984, in the limit of a point in the plane
+    (from memory).
+
+    Examples
+    --------
+    The centre of a unit square: 4 ln(1 + sqrt 2).
+
+    >>> corners = [(0, 0), (1, 0), (1, 1), (0, 1)]
+    >>> square = np.array([[[*a, *b] for a, b in zip(corners, corners[1:] + corners[:1])]], float)
+    >>> outline_potential(np.array([[0.5]]), np.array([[0.5]]), square).round(4)
+    array([[3.5255]])
+    """
+    total = np.zeros_like(x)
+    for number in range(edges.shape[1]):
+        x1, y1, x2, y2 = (edges[:, number, axis, None] for axis in range(4))
+        along_x, along_y = x2 - x1, y2 - y1
+        length = np.hypot(along_x, along_y)
+        from_x, from_y = x - x1, y - y1
+        reach = np.sqrt(from_x**2 + from_y**2) + np.sqrt((x - x2) ** 2 + (y - y2) ** 2)
+        ratio = length / np.maximum(reach, 1e-300)
+        ratio = np.minimum(ratio, 1.0 - 1e-15)
+        distance = (along_x * from_y - along_y * from_x) / np.maximum(length, 1e-300)
+        total += 2.0 * distance * np.arctanh(ratio)
+    return total
+
+
+def plate_images(r: Floats, plate_mm: float) -> Floats:
+    """What a solid plane parallel to the sheet adds to 1/r, up to a constant.
+
+    Parameters
+    ----------
+    r
+        Distances in the plane, any shape, mm, >= 0.
+    plate_mm
+        Distance d of the solid plane, mm, > 0.
+
+    Returns
+    -------
+    Sum over n != 0 of 1/sqrt(r^2 + (2 n d)^2), less a constant, shape of `r`, 1/mm. The constant
+    is of no effect where the net flux is zero; it is chosen such that the value tends to
+    -ln(r/2d)/d - 1/r far away.
+
+    Notes
+    -----
+    With x = r/2d and M = N + 1/2 the value is [2 sum_1^N (x^2 + n^2)^-1/2
+    - 2 ln(M + sqrt(M^2 + x^2))]/2d: what lies beyond N is its integral, and the logarithm is
+    finite at x = 0. Far away the images merge into a line charge; what is left of the single
+    images falls as K0(2 pi x), below 1e-8 from x = 3, where the table ends.
+
+    Examples
+    --------
+    >>> plate_images(np.array([0.0, 1.0, 10.0]), 0.5).round(4)
+    array([-0.2318, -0.9963, -4.7052])
+    """
+    x = r / (2.0 * plate_mm)
+    near = x < _TABLED
+    far = -2.0 * np.log(np.maximum(x, 0.5)) - 1.0 / np.maximum(x, 0.5)
+    tabled = np.interp(np.minimum(x, _TABLED), _TABLE_X, _TABLE_G)
+    return np.where(near, tabled, far) / (2.0 * plate_mm)
+
+
+def _tabled_images() -> tuple[Floats, Floats]:
+    """Table the image sum against x = r/2d; see `plate_images`."""
+    x = np.linspace(0.0, _TABLED, _STEPS + 1)
+    n = np.arange(1, 121, dtype=np.float64)
+    near = 2.0 / np.sqrt(x[:, None] ** 2 + n**2)
+    last = 120.5
+    rest = np.log(last + np.sqrt(last**2 + x**2))
+    return x, near.sum(axis=1) - 2.0 * rest
+
+
+_TABLE_X, _TABLE_G = _tabled_images()
+
+
+def rectangle_self(a: Floats, b: Floats) -> Floats:
+    """Mean of 1/r over all pairs of points of an a x b rectangle.
+
+    Parameters
+    ----------
+    a, b
+        Sides, shape (n,), mm, > 0.
+
+    Returns
+    -------
+    Mean of 1/r, shape (n,), 1/mm.
+
+    Notes
+    -----
+    The fourfold integral of 1/r over the rectangle, in the asinh form that is exact for any ratio
+    of the sides: [2 a^2 b asinh(b/a) + 2 a b^2 asinh(a/b) - 2/3 (D^3 - a^3 - b^3)] / (a b)^2 with
+    D^2 = a^2 + b^2.
+
+    Examples
+    --------
+    A unit square: 4 ln(1 + sqrt 2) - 4/3 (sqrt 2 - 1) = 2.9732.
+
+    >>> rectangle_self(np.array([1.0]), np.array([1.0])).round(4)
+    array([2.9732])
+    """
+    d = np.hypot(a, b)
+    corner = 2.0 * a**2 * b * np.arcsinh(b / a) + 2.0 * a * b**2 * np.arcsinh(a / b)
+    return (corner - (d**3 - a**3 - b**3) * (2.0 / 3.0)) / (a * b) ** 2
+
+
+def wall_source(
+    x: Floats, y: Floats, segments: Floats, height_mm: float, above_mm: float | None
+) -> tuple[Floats, Floats]:
+    """Source function of a polyline trace at points of the plane, and the angle it is seen under.
+
+    Parameters
+    ----------
+    x, y
+        Points of the plane, shape (k,), mm.
+    segments
+        Straight stretches of the centre line, shape (s, 4) as x1, y1, x2, y2, mm.
+    height_mm
+        Height h of the trace over the plane, mm, > 0.
+    above_mm
+        Distance H > h of a second solid plane on the trace's side, or None.
+
+    Returns
+    -------
+    f in ampere per ampere, shape (k,), and the angle A from the first to the last point of the
+    trace in rad, as the sum of what each stretch is seen under, shape (k,). Both jump on the
+    centre line: A by 2 pi, f by the share 1 - h/H of this plane (1 without a second plane).
+
+    Notes
+    -----
+    The tangential field on the plane is the gradient of the solid angle of the wall between trace
+    and image, over 4 pi. With y the distance of the point from the line of a stretch and s1, s2
+    its ends measured along it, the wall from z = 0 to z is seen under half of
+    T(z) = atan(s2 z / (y R2)) - atan(s1 z / (y R1)), R^2 = s^2 + y^2 + z^2, so f = T(h)/2 pi.
+    Between two planes the walls repeat every 2H: f = [T(h) + sum_1^N (T(2nH + h) - T(2nH - h))
+    - (h/H) T((2N + 1)H)]/2 pi; the last term is the rest of the series less the current h/H that
+    the upper plane takes over at the ends of the trace.
+    """
+    x1, y1, x2, y2 = segments.T
+    length = np.hypot(x2 - x1, y2 - y1)
+    ux, uy = (x2 - x1) / length, (y2 - y1) / length
+    from_x, from_y = x[:, None] - x1, y[:, None] - y1
+    off = ux * from_y - uy * from_x
+    # a point on the line itself belongs to its left side, in f and in A alike
+    off = np.where(np.abs(off) < 1e-12, 1e-12, off)
+    first = -(ux * from_x + uy * from_y)
+    last = first + length
+    seen = np.arctan2(off * length, first * last + off**2)
+
+    def wall(z: float) -> Floats:
+        flat = off**2 + z * z
+        value: Floats = np.arctan(last * z / (off * np.sqrt(last**2 + flat)))
+        value -= np.arctan(first * z / (off * np.sqrt(first**2 + flat)))
+        return value
+
+    total = wall(height_mm)
+    if above_mm is not None:
+        for n in range(1, _TERMS + 1):
+            total += wall(2 * n * above_mm + height_mm) - wall(2 * n * above_mm - height_mm)
+        total -= height_mm / above_mm * wall((2 * _TERMS + 1) * above_mm)
+    return total.sum(axis=1) / (2.0 * np.pi), seen.sum(axis=1)

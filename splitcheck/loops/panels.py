@@ -1,0 +1,354 @@
+"""Gap outlines in, graded panels out: small pieces of the gaps, each with one flux density."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import shapely
+from numpy.typing import NDArray
+from shapely import LineString, Polygon
+from shapely.affinity import rotate
+
+from splitcheck.units import Floats
+
+Ints = NDArray[np.int64]
+
+#: A panel at the rim is widened by this part of its thickness there. The density rises towards
+#: the rim as one over the root of the distance; for a strip cut into n equal cells of uniform
+#: density this widening gives back the exact capacity (0.1204 for n = 1 and 2, 0.1152 for many).
+_WIDEN = 0.118
+#: Pieces smaller than this part of their cell are dropped.
+_SLIVER = 1e-4
+_MAX_EDGES = 14
+_MAX_DEPTH = 24
+
+
+@dataclass(frozen=True, slots=True)
+class Grading:
+    """How fine the panels are: by the distance from the traces and from where they cross a rim."""
+
+    lines: tuple[LineString, ...]
+    """Centre lines over the gaps."""
+    near_mm: float
+    """Size of a panel at the trace."""
+    slope: float = 0.35
+    """By how much a panel may grow per mm of distance."""
+    stretch: float = 3.0
+    """How much longer than wide a panel at the trace may be, along the trace."""
+
+
+@dataclass(frozen=True, slots=True)
+class Panels:
+    """The panels of all gaps, as arrays with one row a panel."""
+
+    edges: Floats
+    """Outlines as edges, shape (n, m, 4), mm, widened at the rim; unused edges have no length."""
+    area: Floats
+    """mm^2, shape (n,)."""
+    centre: Floats
+    """Centroids, shape (n, 2), mm."""
+    spread: Floats
+    """Second moments per area about the centroid, shape (n, 3) as xx, xy, yy, mm^2."""
+    sides: Floats
+    """Sides of the rectangle of the same second moments, shape (n, 2), mm, longer first."""
+    points: Floats
+    """Four points of equal weight that have the same second moments, shape (n, 4, 2), mm."""
+    radius: Floats
+    """Largest distance of a corner from the centroid, shape (n,), mm."""
+    gap: Ints
+    """Number of the gap each panel belongs to, shape (n,)."""
+
+    def __len__(self) -> int:
+        return len(self.area)
+
+
+def cut(gaps: Sequence[Polygon], grading: Grading) -> Panels:
+    """Cut gaps into graded panels.
+
+    Parameters
+    ----------
+    gaps
+        Valid polygons that do not overlap, mm; holes are copper.
+    grading
+        How fine, and where.
+
+    Returns
+    -------
+    The panels of all gaps, in the order of the gaps.
+
+    Examples
+    --------
+    >>> slot = shapely.box(-0.2, -4, 0.2, 4)
+    >>> panels = cut([slot], Grading((LineString([(-9, 0), (9, 0)]),), near_mm=0.2))
+    >>> bool(panels.area.sum() > slot.area)
+    True
+    """
+    edges: list[Floats] = []
+    rims: list[NDArray[np.bool_]] = []
+    numbers: list[Ints] = []
+    for number, gap in enumerate(gaps):
+        outline, rim = _pieces(gap, grading)
+        edges.append(outline)
+        rims.append(rim)
+        numbers.append(np.full(len(outline), number, dtype=np.int64))
+    widest = max((outline.shape[1] for outline in edges), default=1)
+    if not edges:
+        return _measured(np.zeros((0, 1, 4)), np.zeros((0, 1), dtype=bool), np.zeros(0, np.int64))
+    return _measured(
+        np.concatenate([_padded(outline, widest) for outline in edges]),
+        np.concatenate([np.pad(rim, ((0, 0), (0, widest - rim.shape[1]))) for rim in rims]),
+        np.concatenate(numbers),
+    )
+
+
+def _padded(outline: Floats, widest: int) -> Floats:
+    """Add edges of no length, all at the start of the outline."""
+    room = widest - outline.shape[1]
+    start = np.concatenate([outline[:, :1, :2], outline[:, :1, :2]], axis=2)
+    return np.concatenate([outline, np.repeat(start, room, axis=1)], axis=1)
+
+
+def _pieces(gap: Polygon, grading: Grading) -> tuple[Floats, NDArray[np.bool_]]:
+    """Edges of the panels of one gap, and which of them lie on the rim of the gap."""
+    angle = _frame_angle(gap, grading)
+    turned = rotate(gap, -angle, origin=(0, 0), use_radians=True) if angle else gap
+    lines = _segments(grading.lines, gap, grading)
+    cos, sin = np.cos(angle), np.sin(angle)
+    back = np.array([[cos, -sin], [sin, cos]])
+    local = (lines.reshape(-1, 2) @ back).reshape(-1, 4)
+    outline, rim = _clipped(turned, local, grading)
+    return (outline.reshape(-1, 2) @ back.T).reshape(outline.shape), rim
+
+
+def _frame_angle(gap: Polygon, grading: Grading) -> float:
+    """Direction in which to lay the cells: that of a straight gap, else that of the trace."""
+    outline = shapely.minimum_rotated_rectangle(gap)
+    if isinstance(outline, Polygon) and gap.area > 0.8 * outline.area:
+        (x0, y0), (x1, y1) = outline.exterior.coords[:2]
+        angle = float(np.arctan2(y1 - y0, x1 - x0))
+    else:
+        over = [line.intersection(gap) for line in grading.lines]
+        longest = max(over, key=lambda part: part.length, default=None)
+        angle = 0.0
+        if longest is not None and longest.length > 0:
+            ends = shapely.get_coordinates(longest)
+            angle = float(np.arctan2(*(ends[-1] - ends[0])[::-1]))
+    angle = (angle + np.pi / 4) % (np.pi / 2) - np.pi / 4
+    return 0.0 if abs(angle) < 1e-9 else angle
+
+
+def _segments(lines: Sequence[LineString], gap: Polygon, grading: Grading) -> Floats:
+    """Straight stretches of the traces that matter for the size of panels in this gap."""
+    found: list[Floats] = []
+    for line in lines:
+        points = shapely.get_coordinates(line.simplify(grading.near_mm / 4))
+        found.append(np.concatenate([points[:-1], points[1:]], axis=1))
+    return np.concatenate(found) if found else np.zeros((0, 4))
+
+
+def _wanted(x: Floats, y: Floats, lines: Floats, rim: Floats, grading: Grading) -> Floats:
+    """Largest panel wanted at points, as width along x and along y, shape (k, 2), mm."""
+    wanted = np.full((len(x), 2), np.inf)
+    if not len(lines):
+        return wanted
+    x1, y1, x2, y2 = lines.T
+    dx, dy = x2 - x1, y2 - y1
+    length = np.maximum(np.hypot(dx, dy), 1e-12)
+    ux, uy = dx / length, dy / length
+    along = np.clip((x[:, None] - x1) * ux + (y[:, None] - y1) * uy, 0.0, length)
+    distance = np.hypot(x[:, None] - x1 - along * ux, y[:, None] - y1 - along * uy)
+    across_mm = np.maximum(grading.near_mm, grading.slope * distance)
+    along_mm = np.maximum(across_mm, grading.near_mm * grading.stretch)
+    if len(rim):
+        entry = np.hypot(x[:, None] - rim[:, 0], y[:, None] - rim[:, 1]).min(axis=1)
+        along_mm = np.minimum(
+            along_mm, np.maximum(across_mm, (grading.slope * entry)[:, None])
+        )
+    # a cell axis at an angle to the trace takes the radius of the ellipse in that direction
+    wanted[:, 0] = (1.0 / np.sqrt((ux / along_mm) ** 2 + (uy / across_mm) ** 2)).min(axis=1)
+    wanted[:, 1] = (1.0 / np.sqrt((uy / along_mm) ** 2 + (ux / across_mm) ** 2)).min(axis=1)
+    return wanted
+
+
+def _entries(gap: Polygon, lines: Floats) -> Floats:
+    """Where the traces cross the rim of the gap, shape (k, 2)."""
+    if not len(lines):
+        return np.zeros((0, 2))
+    segments = shapely.linestrings(lines.reshape(-1, 2, 2))
+    return shapely.get_coordinates(shapely.intersection(segments, gap.boundary))
+
+
+def _clipped(gap: Polygon, lines: Floats, grading: Grading) -> tuple[Floats, NDArray[np.bool_]]:
+    """Halve the cells of the bounding box until they are fine enough, and clip them."""
+    shapely.prepare(gap)
+    west, south, east, north = gap.bounds
+    # a hair wider, by odd amounts, so that no cell border falls on a rim
+    hair = 1e-7 * max(east - west, north - south)
+    boxes = np.array([[west - hair, south - 1.7 * hair, east + 2.3 * hair, north + 1.3 * hair]])
+    rim = _entries(gap, lines)
+    least = 2 if len(gap.interiors) == 0 and _is_box(gap) else 3
+    limit = np.array([max(east - west, north - south) / least] * 2)
+    done: list[Floats] = []
+    for _ in range(_MAX_DEPTH):
+        size = boxes[:, 2:] - boxes[:, :2]
+        middle = (boxes[:, :2] + boxes[:, 2:]) / 2
+        wanted = np.minimum(_wanted(middle[:, 0], middle[:, 1], lines, rim, grading), limit)
+        over = size > wanted * 1.2
+        fine = ~over.any(axis=1)
+        done.append(boxes[fine])
+        boxes, over, middle = boxes[~fine], over[~fine], middle[~fine]
+        if not len(boxes):
+            break
+        boxes = _halved(boxes, middle, over)
+        boxes = boxes[shapely.intersects(gap, shapely.box(*boxes.T))]
+    else:
+        done.append(boxes)
+    return _cut_out(gap, np.concatenate(done))
+
+
+def _is_box(gap: Polygon) -> bool:
+    west, south, east, north = gap.bounds
+    return bool(gap.area > 0.98 * (east - west) * (north - south))
+
+
+def _halved(boxes: Floats, middle: Floats, over: NDArray[np.bool_]) -> Floats:
+    """Halve each cell along the axes that are too long, in a fixed order."""
+    for axis in (0, 1):
+        cut_ = over[:, axis]
+        low, high = boxes.copy(), boxes[cut_].copy()
+        low[cut_, 2 + axis] = middle[cut_, axis]
+        high[:, axis] = middle[cut_, axis]
+        boxes = np.concatenate([low, high])
+        middle = np.concatenate([middle, middle[cut_]])
+        over = np.concatenate([over, over[cut_]])
+    return boxes
+
+
+def _cut_out(gap: Polygon, boxes: Floats) -> tuple[Floats, NDArray[np.bool_]]:
+    """Clip cells to the gap; edges of the pieces and which of them lie on the rim."""
+    cells = shapely.box(*boxes.T)
+    whole = shapely.contains_properly(gap, cells)
+    outlines = [_box_edges(boxes[whole])]
+    rims = [np.zeros((int(whole.sum()), 4), dtype=bool)]
+    if not whole.all():
+        pieces, owner = shapely.get_parts(
+            shapely.intersection(gap, cells[~whole]), return_index=True
+        )
+        size = np.prod(boxes[~whole][:, 2:] - boxes[~whole][:, :2], axis=1)[owner]
+        area = shapely.area(pieces)
+        keep = area > _SLIVER * size
+        pieces, owner, area = pieces[keep], owner[keep], area[keep]
+        plain = shapely.simplify(pieces, 0.0)
+        edges = _edges_of(shapely.orient_polygons(_simpler(plain, area)))
+        rims.append(_on_rim(edges, boxes[~whole][owner]))
+        outlines.append(edges)
+    widest = max(outline.shape[1] for outline in outlines)
+    full = [_padded(outline, widest) for outline in outlines if len(outline)]
+    marks = [np.pad(r, ((0, 0), (0, widest - r.shape[1]))) for r in rims if len(r)]
+    return np.concatenate(full), np.concatenate(marks)
+
+
+def _simpler(pieces: NDArray[np.object_], area: Floats) -> NDArray[np.object_]:
+    """Straighten curved rims until no piece has more edges than the arrays hold."""
+    many = shapely.get_num_coordinates(pieces) > 7
+    if many.any():
+        pieces = pieces.copy()
+        pieces[many] = shapely.simplify(pieces[many], 0.03 * np.sqrt(area[many]))
+    return pieces
+
+
+def _box_edges(boxes: Floats) -> Floats:
+    west, south, east, north = boxes.T
+    corners = np.stack(
+        [west, south, east, south, east, north, west, north], axis=1
+    ).reshape(-1, 4, 2)
+    return np.concatenate([corners, np.roll(corners, -1, axis=1)], axis=2)
+
+
+def _edges_of(pieces: NDArray[np.object_]) -> Floats:
+    """Edges of polygons with counter-clockwise shells, holes included, padded to one length."""
+    rings, piece = shapely.get_rings(pieces, return_index=True)
+    points, ring = shapely.get_coordinates(rings, return_index=True)
+    same = ring[1:] == ring[:-1]
+    edges = np.concatenate([points[:-1], points[1:]], axis=1)[same]
+    owner = piece[ring[:-1][same]]
+    counts = np.bincount(owner, minlength=len(pieces))
+    first = np.concatenate([[0], np.cumsum(counts)[:-1]])
+    place = np.arange(len(owner)) - first[owner]
+    start = edges[first][:, [0, 1, 0, 1]]
+    padded: Floats = np.repeat(start[:, None, :], int(counts.max()), axis=1)
+    padded[owner, place] = edges
+    return padded
+
+
+def _on_rim(edges: Floats, boxes: Floats) -> NDArray[np.bool_]:
+    """Which edges do not lie on the border of their cell, and so on the rim of the gap."""
+    slack = 1e-10 * np.ptp(boxes)
+    border = np.zeros(edges.shape[:2], dtype=bool)
+    for axis in (0, 1):
+        for side in (0, 2):
+            level = boxes[:, side + axis, None]
+            border |= (np.abs(edges[:, :, axis] - level) < slack) & (
+                np.abs(edges[:, :, 2 + axis] - level) < slack
+            )
+    length = np.hypot(edges[:, :, 2] - edges[:, :, 0], edges[:, :, 3] - edges[:, :, 1])
+    return ~border & (length > 0)
+
+
+def _measured(edges: Floats, rim: NDArray[np.bool_], gap: Ints) -> Panels:
+    """Widen panels at the rim and measure them."""
+    area, centre, _ = _moments(edges)
+    edges = _widened(edges, rim, area, centre)
+    area, centre, spread = _moments(edges)
+    xx, xy, yy = spread.T
+    half = np.hypot((xx - yy) / 2, xy)
+    mean = (xx + yy) / 2
+    long, short = np.sqrt(mean + half), np.sqrt(np.maximum(mean - half, 1e-6 * mean))
+    turn = 0.5 * np.arctan2(2 * xy, xx - yy)
+    u = np.stack([np.cos(turn), np.sin(turn)], axis=1) * long[:, None]
+    v = np.stack([-np.sin(turn), np.cos(turn)], axis=1) * short[:, None]
+    points = centre[:, None, :] + np.stack([u + v, u - v, v - u, -u - v], axis=1)
+    reach = np.hypot(edges[:, :, 0] - centre[:, None, 0], edges[:, :, 1] - centre[:, None, 1])
+    sides = np.sqrt(12.0) * np.stack([long, short], axis=1)
+    radius = reach.max(axis=1) if len(edges) else np.zeros(0)
+    return Panels(edges, area, centre, spread, sides, points, radius, gap)
+
+
+def _moments(edges: Floats) -> tuple[Floats, Floats, Floats]:
+    """Area, centroid and second moments per area of outlines, by Green's theorem."""
+    origin = edges[:, :1, :2]
+    x1, y1 = np.moveaxis(edges[:, :, :2] - origin, 2, 0)
+    x2, y2 = np.moveaxis(edges[:, :, 2:] - origin, 2, 0)
+    turn = x1 * y2 - x2 * y1
+    area = turn.sum(axis=1) / 2
+    cx = ((x1 + x2) * turn).sum(axis=1) / (6 * area)
+    cy = ((y1 + y2) * turn).sum(axis=1) / (6 * area)
+    xx = ((x1 * x1 + x1 * x2 + x2 * x2) * turn).sum(axis=1) / (12 * area) - cx * cx
+    yy = ((y1 * y1 + y1 * y2 + y2 * y2) * turn).sum(axis=1) / (12 * area) - cy * cy
+    xy = ((x1 * y2 + 2 * x1 * y1 + 2 * x2 * y2 + x2 * y1) * turn).sum(axis=1) / (24 * area)
+    centre = np.stack([cx, cy], axis=1) + origin[:, 0]
+    return area, centre, np.stack([xx, xy - cx * cy, yy], axis=1)
+
+
+def _widened(edges: Floats, rim: NDArray[np.bool_], area: Floats, centre: Floats) -> Floats:
+    """Stretch panels across the rim by `_WIDEN`, away from their inner side."""
+    dx, dy = edges[:, :, 2] - edges[:, :, 0], edges[:, :, 3] - edges[:, :, 1]
+    length = np.where(rim, np.hypot(dx, dy), 0.0)
+    whole = np.maximum(length.sum(axis=1), 1e-300)
+    square = np.maximum(length, 1e-300)
+    nx, ny = dy / square, -dx / square
+    weight = length / whole[:, None]
+    pull = np.stack([(weight * nx * nx).sum(1), (weight * nx * ny).sum(1), (weight * ny * ny).sum(1)])
+    middle = (edges[:, :, :2] + edges[:, :, 2:]) / 2
+    rim_at = (weight[:, :, None] * middle).sum(axis=1)
+    touched = length.sum(axis=1) > 0
+    fixed = np.where(touched[:, None], 2 * centre - rim_at, centre)
+    out = edges.copy()
+    for first in (0, 2):
+        x = edges[:, :, first] - fixed[:, None, 0]
+        y = edges[:, :, first + 1] - fixed[:, None, 1]
+        out[:, :, first] += _WIDEN * (pull[0][:, None] * x + pull[1][:, None] * y)
+        out[:, :, first + 1] += _WIDEN * (pull[1][:, None] * x + pull[2][:, None] * y)
+    return out
