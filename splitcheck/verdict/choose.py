@@ -1,4 +1,4 @@
-"""Which names the user means: exact, or by ``*`` and ``?``; a word that means nothing is an error."""
+"""Words of the user to the names they mean, exact or by ``*`` and ``?``; none is an error."""
 
 from __future__ import annotations
 
@@ -22,7 +22,7 @@ def choose(names: Iterable[str], words: Sequence[str], option: str) -> frozenset
         All there are.
     words
         Each an exact name or a pattern: ``*`` any text, ``?`` any character, ``[ab]`` one of
-        these. A name that equals the word is always meant, so that ``D[0]`` finds the net D[0].
+        these. If a name equals the word, that alone is meant: ``D[0]`` is the net D[0].
     option
         The option the words came with, for the message: ``--net``.
 
@@ -47,7 +47,7 @@ def choose(names: Iterable[str], words: Sequence[str], option: str) -> frozenset
     there = sorted(set(names))
     meant: set[str] = set()
     for word in words:
-        found = [name for name in there if name == word or fnmatchcase(name, word)]
+        found = [word] if word in there else [name for name in there if fnmatchcase(name, word)]
         if not found:
             raise SplitcheckError(f"{option} {word}", "nothing of that name", _advice(there, word))
         meant.update(found)

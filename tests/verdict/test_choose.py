@@ -18,12 +18,13 @@ NETS = ("/mcu/CLK", "DDR_DQ0", "DDR_DQ1", "D[0]", "D0")
         ("DDR_*", {"DDR_DQ0", "DDR_DQ1"}),
         ("DDR_DQ?", {"DDR_DQ0", "DDR_DQ1"}),
         ("*CLK", {"/mcu/CLK"}),
-        ("D[0]", {"D[0]", "D0"}),
+        ("D[0]", {"D[0]"}),
+        ("D[01]", {"D0"}),
         ("*", set(NETS)),
     ],
 )
 def test_words_mean_names(word: str, meant: set[str]) -> None:
-    """Patterns of the shell, and the exact name in any case."""
+    """Patterns of the shell; an exact name is that net alone."""
     assert choose(NETS, [word], "--net") == meant
 
 
