@@ -22,8 +22,6 @@ _FUNCTIONS: dict[str, Kind] = {
 }  # fmt: skip
 _PLACEMENT_ENDINGS = frozenset({"pos", "mnt", "mnb", "pnp", "xy", "cpl"})
 _SIDES: dict[str, naming.Side] = {"top": "top", "inr": "inner", "bot": "bottom"}
-_NON_PLATED_NAME = re.compile(r"(?<![a-z])n(?:on)?[-_ ]?p(?:th|lated)(?![a-z])", re.IGNORECASE)
-_PLATED_NAME = re.compile(r"(?<![a-z])p(?:th|lated)(?![a-z])", re.IGNORECASE)
 _SPAN_NAME = re.compile(r"[-_ ](?:L)?(\d{1,2})[-_](?:L)?(\d{1,2})$", re.IGNORECASE)
 
 
@@ -221,9 +219,8 @@ def _job(reads: Sequence[_Read], wanted: str | None, remarks: list[str]) -> Job 
         raise SplitcheckError(named[1].name, f"there is more than one job file ({names})", do)
     for read in named:
         return jobfile.read(read.text, read.name)
-    for read in reads:
-        if read.language == "job" and naming.ending(read.name) == "json":
-            remarks.append(f"{read.name} looks like a job file but is not named .gbrjob; left out")
+    unnamed = [r.name for r in reads if r.language == "job" and naming.ending(r.name) == "json"]
+    remarks += [f"{n} looks like a job file but is not named .gbrjob; left out" for n in unnamed]
     return None
 
 
@@ -458,11 +455,7 @@ def _drill_function(read: _Read, count: int) -> tuple[bool | None, tuple[int, in
         ends = [int(f) for f in function[1:3] if f.isdecimal() and len(f) <= 3]
         return plated, (min(ends), max(ends)) if len(ends) == 2 else None
     stem = read.name.rsplit("/", 1)[-1].rpartition(".")[0]
-    plated = None
-    if _NON_PLATED_NAME.search(stem):
-        plated = False
-    elif _PLATED_NAME.search(stem):
-        plated = True
+    plated = naming.plating(read.name)
     match = _SPAN_NAME.search(stem)
     if match and 1 <= int(match[1]) < int(match[2]) <= count:
         return plated, (int(match[1]), int(match[2]))

@@ -69,6 +69,8 @@ _OTHER_ENDING = re.compile(r"(gm|gd|gg)\d{1,2}$")
 
 _TOKEN = re.compile(r"[a-z]+\d*|\d+")
 _CAMEL = re.compile(r"(?<=[a-z0-9])(?=[A-Z][a-z])")
+_NON_PLATED = re.compile(r"(?<![a-z])n(?:on)?[-_ ]?p(?:th|lated)(?![a-z])", re.IGNORECASE)
+_PLATED = re.compile(r"(?<![a-z])p(?:th|lated)(?![a-z])", re.IGNORECASE)
 _NUMBERED = re.compile(r"([a-z]+?)(\d{0,3})$")
 
 _OTHER_WORDS: tuple[tuple[Kind, str, tuple[str, ...]], ...] = (
@@ -149,6 +151,20 @@ def layer_words(name: str, start: str) -> str:
 def _stem(name: str) -> str:
     base = name.rsplit("/", 1)[-1]
     return base.rpartition(".")[0] if "." in base[1:] else base
+
+
+def plating(name: str) -> bool | None:
+    """Whether a drill file's name says that its holes are plated; ``None`` if it does not say.
+
+    Examples
+    --------
+    >>> [plating(n) for n in ("a-PTH.drl", "a_npth.drl", "NonPlated.txt", "a.drl")]
+    [True, False, False, None]
+    """
+    words = name.rsplit("/", 1)[-1]
+    if _NON_PLATED.search(words):
+        return False
+    return True if _PLATED.search(words) else None
 
 
 def by_ending(name: str) -> Claim | None:
