@@ -80,11 +80,17 @@ Stack = Annotated[
 ]
 FailLevel = Annotated[
     FailAt,
-    typer.Option("--fail-at", help="Lowest level that makes the exit code 1; never keeps it 0."),
+    typer.Option(
+        "--fail-at",
+        metavar="error|warning|note|never",
+        help="Lowest level that makes the exit code 1; never keeps it 0.",
+    ),
 ]
 Jobs = Annotated[
     int | None,
-    typer.Option("--jobs", metavar="N", min=1, help="Processes that read files.  [default: all]"),
+    typer.Option(
+        "--jobs", metavar="N", min=1, help="Processes that read files; all cores if not given."
+    ),
 ]
 Out = Annotated[
     list[str] | None,
@@ -96,12 +102,13 @@ Out = Annotated[
     ),
 ]
 Quiet = Annotated[
-    bool, typer.Option("--quiet", "-q", help="No progress and no report, only --out and errors.")
+    bool, typer.Option("-q", "--quiet", help="No progress and no report, only --out and errors.")
 ]
 ColorFlag = Annotated[
     streams.Color,
     typer.Option(
         "--color",
+        metavar="auto|always|never",
         help="Colour; auto asks, in this order, NO_COLOR, FORCE_COLOR or CLICOLOR_FORCE, "
         "CLICOLOR=0 or TERM=dumb, then whether it is a terminal.",
     ),
