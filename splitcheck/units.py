@@ -31,3 +31,17 @@ def on_grid(value_mm: float) -> float:
     0.3
     """
     return round(value_mm, 6)
+
+
+def runs(ranked: NDArray[np.intp]) -> list[tuple[int, int]]:
+    """Start and stop of every run of equal values in a sorted array.
+
+    Examples
+    --------
+    >>> runs(np.array([2, 2, 5])), runs(np.array([], dtype=np.intp))
+    ([(0, 2), (2, 3)], [])
+    """
+    if not len(ranked):
+        return []
+    starts = [0, *(np.flatnonzero(np.diff(ranked)) + 1).tolist()]
+    return list(zip(starts, [*starts[1:], len(ranked)], strict=True))

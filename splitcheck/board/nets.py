@@ -11,6 +11,7 @@ import shapely
 
 from splitcheck.board.parts import CopperLayer, Part
 from splitcheck.copper.holes import Hole
+from splitcheck.units import runs
 
 
 @dataclass(frozen=True, slots=True)
@@ -96,9 +97,8 @@ def _touches(barrels: np.ndarray[tuple[int], np.dtype[np.object_]], layer: Coppe
     which, hits = shapely.STRtree(list(layer.pieces)).query(barrels)
     order = np.argsort(hits, kind="stable")
     which, hits = which[order], hits[order]
-    starts = np.flatnonzero(np.diff(hits, prepend=-1))
     pairs: list[tuple[int, int]] = []
-    for start, stop in zip(starts, [*starts[1:], len(hits)], strict=True):
+    for start, stop in runs(hits):
         piece = layer.pieces[hits[start]]
         shapely.prepare(piece)
         meets = shapely.intersects(piece, barrels[which[start:stop]])

@@ -57,7 +57,7 @@ class Stack:
             Layer numbers, 1-based, in either order, different.
         """
         upper, lower = self.layers[min(one, other) - 1], self.layers[max(one, other) - 1]
-        return lower.top_mm - upper.bottom_mm
+        return round(lower.top_mm - upper.bottom_mm, 9)
 
 
 @dataclass(frozen=True, slots=True)

@@ -10,7 +10,7 @@ import shapely
 from shapely import Polygon
 
 from splitcheck.copper.marks import Mark, Point, Stroke
-from splitcheck.units import Floats
+from splitcheck.units import Floats, runs
 
 #: A trace is bare this far beyond its edge, mm; paint is not (narrower clearances are not made).
 BESIDE_MM = 0.02
@@ -143,8 +143,7 @@ def locate(
     points, hits = tree.query(shapely.points(xs, ys))
     order = np.argsort(hits, kind="stable")
     points, hits = points[order], hits[order]
-    starts = np.flatnonzero(np.diff(hits, prepend=-1))
-    for start, stop in zip(starts, [*starts[1:], len(hits)], strict=True):
+    for start, stop in runs(hits):
         polygon, which = pieces[hits[start]], points[start:stop]
         if len(which) > 8:  # preparing costs more than a few plain tests
             shapely.prepare(polygon)
@@ -162,8 +161,7 @@ def _on_piece(
     on = np.zeros(points.shape[:-1], dtype=np.bool_)
     order = np.argsort(piece, kind="stable")
     ranked = piece[order]
-    starts = np.flatnonzero(np.diff(ranked, prepend=-2))
-    for start, stop in zip(starts, [*starts[1:], len(ranked)], strict=True):
+    for start, stop in runs(ranked):
         if ranked[start] < 0:
             continue
         rows = order[start:stop]

@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Sequence
 from dataclasses import dataclass
+from difflib import get_close_matches
+from fnmatch import fnmatchcase
 from typing import NamedTuple
 
 import networkx as nx
@@ -13,6 +15,7 @@ import numpy as np
 from splitcheck.board.board import Board
 from splitcheck.board.names import is_ground, is_supply
 from splitcheck.copper.marks import Point
+from splitcheck.errors import SplitcheckError
 from splitcheck.planes.islands import Plane
 from splitcheck.planes.shadows import (
     Span,
@@ -346,11 +349,42 @@ def _bare_traces(tracks: Tracks, bits: Sequence[_Bit]) -> tuple[BareTrace, ...]:
     return tuple(traces)
 
 
-def judged_nets(board: Board, carriers: frozenset[int]) -> frozenset[int]:
-    """Nets whose traces are judged: those that neither carry returns nor are supplies by name."""
-    return frozenset(
+def judged_nets(
+    board: Board, carriers: frozenset[int], patterns: Sequence[str] = ()
+) -> frozenset[int]:
+    """Nets whose traces are judged: those that neither carry returns nor are supplies by name.
+
+    Parameters
+    ----------
+    board
+        The board.
+    carriers
+        Numbers of the nets that carry returns.
+    patterns
+        Patterns of names, ``*`` and ``?`` standing for any text; empty: all.
+
+    Raises
+    ------
+    SplitcheckError
+        If a pattern matches no net.
+    """
+    signals = frozenset(
         net.number
         for net in board.nets
         if net.number not in carriers
         and not any(is_ground(name) or is_supply(name) for name in net.name.split("|"))
     )
+    if not patterns:
+        return signals
+    wanted: set[int] = set()
+    for pattern in patterns:
+        matched = [net for net in board.nets if fnmatchcase(net.name, pattern)]
+        if not matched:
+            near = get_close_matches(pattern, sorted({net.name for net in board.nets}), 3, 0.5)
+            raise SplitcheckError(
+                f"--net {pattern}",
+                "no net has such a name",
+                f"did you mean {', '.join(near)}" if near else "splitcheck read lists the nets",
+            )
+        wanted.update(net.number for net in matched)
+    return frozenset(wanted & signals)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -11,6 +12,7 @@ from numpy.typing import NDArray
 
 from splitcheck.board.board import Board
 from splitcheck.board.parts import CopperLayer
+from splitcheck.errors import SplitcheckError
 from splitcheck.units import Floats
 
 #: Ends closer than this are one, mm.
@@ -143,3 +145,33 @@ def _nodes(start: Floats, end: Floats, net: Floats) -> Ints:
     keys = np.column_stack([np.round(ends / JOIN_MM), np.concatenate([net, net])]).astype(np.int64)
     _, numbers = np.unique(keys, axis=0, return_inverse=True)
     return numbers.reshape(2, -1).T.astype(np.intp)
+
+
+def lay_all(board: Board, nets: frozenset[int], layers: Sequence[str]) -> tuple[Tracks, ...]:
+    """Lay out the traces of some nets on all layers, or on those named.
+
+    Parameters
+    ----------
+    board
+        The board.
+    nets
+        Numbers of the nets to keep.
+    layers
+        Names of layers; empty: all.
+    """
+    laid = []
+    first_part = 0
+    for layer in board.layers:
+        if not layers or layer.name in layers or layer.file in layers:
+            laid.append(lay(board, layer, first_part, nets))
+        first_part += len(layer.pieces)
+    if layers and len(laid) < len(set(layers)):
+        known = {name for layer in board.layers for name in (layer.name, layer.file)}
+        unknown = sorted(set(layers) - known)
+        if unknown:
+            raise SplitcheckError(
+                f"--layer {unknown[0]}",
+                "there is no such copper layer",
+                f"the layers are {', '.join(layer.name for layer in board.layers)}",
+            )
+    return tuple(laid)

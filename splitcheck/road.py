@@ -1,0 +1,231 @@
+"""The table of contents: from a folder of exported files to a ranked report, one call a stage."""
+
+from __future__ import annotations
+
+import multiprocessing
+import os
+import shutil
+from collections import Counter
+from collections.abc import Callable, Sequence
+from concurrent.futures import ProcessPoolExecutor
+from dataclasses import dataclass, replace
+from pathlib import Path
+from time import perf_counter
+from typing import TypeAlias
+
+from splitcheck.board.assemble import Assembled, assemble
+from splitcheck.board.layers import CopperFile, ReadLayer, read_layer
+from splitcheck.board.stack import read_stack_file
+from splitcheck.copper.intake import Export, open_export
+from splitcheck.errors import SplitcheckError
+from splitcheck.loops.bridges import IslandGraph, join_islands
+from splitcheck.loops.routes import Terrain
+from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
+from splitcheck.planes.islands import Plane, find_planes, reference_nets
+from splitcheck.planes.tracks import Tracks, lay_all
+from splitcheck.verdict.judge import Scene, judge
+from splitcheck.verdict.findings import Count, Finding, Report
+from splitcheck.verdict.summary import Seen, summarise
+
+Progress: TypeAlias = Callable[[str, int, int], None]
+
+#: Less text than this is read faster by one process than by several.
+ALONE_BYTES = 400_000
+
+
+@dataclass(frozen=True, slots=True)
+class Options:
+    """What the user asked for."""
+
+    nets: tuple[str, ...] = ()
+    """Patterns of net names to judge; empty: all."""
+    layers: tuple[str, ...] = ()
+    """Names of layers whose traces are judged; empty: all."""
+    min_nh: float = 0.05
+    """Crossings that add less are counted, not listed."""
+    stack: Path | None = None
+    jobs: int | None = None
+    """Processes that read files; None: one a core."""
+
+
+def rank(path: Path, options: Options, progress: Progress | None = None) -> Report:
+    """Rank the broken return paths of a board, worst first.
+
+    Parameters
+    ----------
+    path
+        Folder, .zip or job file of an export.
+    options
+        What to judge.
+    progress
+        Called with a stage, how much of it is done, and how much there is.
+
+    Raises
+    ------
+    SplitcheckError
+        If the input cannot be read or judged.
+    """
+    return _walk(path, options, progress, judged=True)
+
+
+def read(path: Path, options: Options, progress: Progress | None = None) -> Report:
+    """Say how the files of a board were understood; the report has no findings."""
+    return _walk(path, options, progress, judged=False)
+
+
+def _walk(path: Path, options: Options, progress: Progress | None, *, judged: bool) -> Report:
+    clock = Clock(progress or (lambda stage, done, total: None))
+    export = load(path, options)
+    clock.passed("files")
+    layers = read_copper(export, options.jobs, clock)
+    clock.passed("copper")
+    assembled = build(export, layers, options)
+    clock.passed("board")
+    planes = find_planes(assembled.board)
+    tracks = lay_tracks(assembled, options)
+    clock.passed("planes")
+    findings: tuple[Finding, ...] = ()
+    counts: tuple[Count, ...] = ()
+    if judged:
+        crossings, bare = cross(tracks, planes)
+        clock.passed("crossings")
+        scene = set_scene(assembled, planes, join_islands(assembled.board, planes), options)
+        findings, counts = judge(scene, crossings, bare)
+        clock.passed("loops")
+    return summarise(Seen(export, assembled, planes, tracks), findings, counts, clock.seconds())
+
+
+class Clock:
+    """Wall time of each stage, and the progress told to whoever listens."""
+
+    def __init__(self, tell: Progress) -> None:
+        self.tell = tell
+        self._last = perf_counter()
+        self._stages: list[tuple[str, float]] = []
+
+    def passed(self, stage: str) -> None:
+        """Note that a stage is done."""
+        now = perf_counter()
+        self._stages.append((stage, now - self._last))
+        self._last = now
+        self.tell(stage, 1, 1)
+
+    def seconds(self) -> tuple[tuple[str, float], ...]:
+        """Stages with their seconds."""
+        return tuple(self._stages)
+
+
+def load(path: Path, options: Options) -> Export:
+    """Find out what each file is; a stack file may say which file is which layer."""
+    named = None
+    if options.stack is not None:
+        entries = read_stack_file(_text(options.stack), options.stack.name)
+        files = [(number, entry.file) for number, entry in enumerate(entries, start=1)]
+        named = [(number, file) for number, file in files if file is not None] or None
+    export = open_export(path, layers=named)
+    if len(export.copper()) < 2:
+        only = export.copper()[0].name
+        raise SplitcheckError(
+            str(path),
+            f"holds one copper layer only ({only}), so no trace has a plane over or under it",
+            "export all copper layers",
+        )
+    return export
+
+
+def _text(path: Path) -> str:
+    try:
+        return path.read_text(encoding="utf-8")
+    except (OSError, UnicodeDecodeError) as error:
+        raise SplitcheckError(str(path), f"cannot be read: {error}", "give a text file") from error
+
+
+def read_copper(export: Export, jobs: int | None, clock: Clock) -> tuple[ReadLayer, ...]:
+    """Read the copper layers, several at a time where that is faster; top to bottom."""
+    files = [
+        CopperFile(file.copper_number or 0, file.layer_name, file.name, file.text)
+        for file in export.copper()
+    ]
+    workers = min(jobs or os.cpu_count() or 1, len(files))
+    done: list[ReadLayer] = []
+    if workers < 2 or sum(len(file.text) for file in files) < ALONE_BYTES:
+        for file in files:
+            done.append(read_layer(file))
+            clock.tell("copper", len(done), len(files))
+        return tuple(done)
+    largest_first = sorted(files, key=lambda file: -len(file.text))
+    with ProcessPoolExecutor(workers, mp_context=_processes()) as pool:
+        for result in pool.map(read_layer, largest_first):
+            done.append(result)
+            clock.tell("copper", len(done), len(files))
+    return tuple(sorted(done, key=lambda result: result.layer.number))
+
+
+def _processes() -> multiprocessing.context.BaseContext:
+    """Forked workers start without importing everything again; not every system has them."""
+    forked = "fork" in multiprocessing.get_all_start_methods()
+    return multiprocessing.get_context("fork" if forked else "spawn")
+
+
+def build(export: Export, layers: Sequence[ReadLayer], options: Options) -> Assembled:
+    """Put the board together: stack, outline, holes, nets and their names."""
+    entries = None
+    if options.stack is not None:
+        entries = (options.stack.name, read_stack_file(_text(options.stack), options.stack.name))
+    return assemble(export, layers, entries)
+
+
+def lay_tracks(assembled: Assembled, options: Options) -> tuple[Tracks, ...]:
+    """Lay out the traces that are judged, layer by layer."""
+    carriers = reference_nets(assembled.board)
+    nets = judged_nets(assembled.board, carriers, options.nets)
+    return lay_all(assembled.board, nets, options.layers)
+
+
+def cross(
+    tracks: Sequence[Tracks], planes: Sequence[Plane]
+) -> tuple[tuple[Crossing, ...], tuple[BareTrace, ...]]:
+    """Walk all traces over all planes."""
+    found = [find_crossings(layer, planes) for layer in tracks]
+    return (
+        tuple(crossing for crossings, _ in found for crossing in crossings),
+        tuple(trace for _, bare in found for trace in bare),
+    )
+
+
+def set_scene(
+    assembled: Assembled, planes: Sequence[Plane], graph: IslandGraph, options: Options
+) -> Scene:
+    """Bring together what judging needs."""
+    return Scene(
+        assembled.board,
+        {plane.layer: plane for plane in planes},
+        {plane.layer: Terrain(plane) for plane in planes},
+        graph,
+        options.min_nh,
+    )
+
+
+def write_demo(folder: Path) -> Path:
+    """Copy the demo board to a folder; it must not exist or be empty.
+
+    Returns
+    -------
+    The folder with the board's files.
+    """
+    if folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
+        raise SplitcheckError(str(folder), "exists and is not an empty folder", "name another one")
+    source = fixtures_folder() / "demo"
+    folder.mkdir(parents=True, exist_ok=True)
+    for file in sorted(source.iterdir()):
+        shutil.copyfile(file, folder / file.name)
+    return folder
+
+
+def fixtures_folder() -> Path:
+    """Where the demo boards are: in the installed package, or at the top of a checkout."""
+    package = Path(__file__).resolve().parent
+    for folder in (package / "_data" / "fixtures", package.parent / "fixtures"):
+        if folder.is_dir():
+            return folder
+    raise SplitcheckError("fixtures", "the demo board is not installed", "install splitcheck again")

@@ -1,0 +1,155 @@
+"""The report: findings together with what was read, assumed and counted."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from splitcheck.board.assemble import Assembled
+from splitcheck.board.board import Board
+from splitcheck.board.names import is_ground, is_supply
+from splitcheck.copper.intake import Export
+from splitcheck.planes.islands import Plane, reference_nets
+from splitcheck.planes.tracks import Tracks
+from splitcheck.verdict.findings import (
+    Count,
+    Finding,
+    InputRow,
+    IslandRow,
+    LayerRow,
+    NetRow,
+    Report,
+    Role,
+)
+from splitcheck.verdict.score import DEFAULT_DRIVE, Drive
+
+#: A layer is a plane from this share of the board on, a signal layer below the second, else mixed.
+PLANE_SHARE = 0.6
+SIGNAL_SHARE = 0.25
+
+
+@dataclass(frozen=True, slots=True)
+class Seen:
+    """What the stages before judging have made."""
+
+    export: Export
+    assembled: Assembled
+    planes: tuple[Plane, ...]
+    tracks: tuple[Tracks, ...]
+
+
+def summarise(
+    seen: Seen,
+    findings: tuple[Finding, ...],
+    counts: tuple[Count, ...],
+    seconds: tuple[tuple[str, float], ...],
+) -> Report:
+    """Bring everything into the report."""
+    board = seen.assembled.board
+    x0, y0, x1, y1 = board.outline.bounds
+    return Report(
+        board=board.name,
+        size_mm=(round(x1 - x0, 4), round(y1 - y0, 4)),
+        layers=_layers(board, seen.planes),
+        assumptions=(*seen.assembled.assumptions, _drive_sentence(DEFAULT_DRIVE)),
+        remarks=seen.assembled.remarks,
+        facts=(*_facts(board), *seen.assembled.facts),
+        inputs=tuple(
+            InputRow(file.name, file.kind, file.sha256, file.reason) for file in seen.export.files
+        ),
+        islands=tuple(
+            IslandRow(
+                island.id,
+                board.stack.layers[island.layer - 1].name,
+                island.net_name,
+                round(island.shape.area, 4),
+            )
+            for plane in seen.planes
+            for island in plane.islands
+        ),
+        nets=_nets(board, seen.tracks, findings),
+        findings=findings,
+        counts=(*_exempt(board), *counts),
+        seconds=seconds,
+    )
+
+
+def _drive_sentence(drive: Drive) -> str:
+    return (
+        f"Every net is taken to switch in {drive.rise_ns:g} ns (10 to 90 %) and to launch "
+        f"{drive.wave_mv:g} mV into {drive.line_ohm:g} ohm; an error is {drive.error_mv:g} mV of "
+        f"noise or no way back, a warning {drive.warning_mv:g} mV (common practice, no source)."
+    )
+
+
+def _layers(board: Board, planes: Sequence[Plane]) -> tuple[LayerRow, ...]:
+    area: dict[int, float] = defaultdict(float)
+    for plane in planes:
+        area[plane.layer] = sum(island.shape.area for island in plane.islands)
+    rows = []
+    for layer, copper in zip(board.stack.layers, board.layers, strict=True):
+        share = area[layer.number] / board.outline.area
+        role: Role = "mixed"
+        if share >= PLANE_SHARE:
+            role = "plane" if len(copper.lines) < 0.2 * copper.marks else "mixed"
+        elif share < SIGNAL_SHARE:
+            role = "signal"
+        rows.append(
+            LayerRow(
+                layer.name, copper.file, layer.number, layer.top_mm, layer.copper_um, role
+            )
+        )
+    return tuple(rows)
+
+
+def _facts(board: Board) -> tuple[str, ...]:
+    given = sum(1 for net in board.nets if net.given)
+    marks = sum(layer.marks for layer in board.layers)
+    return (
+        f"{marks} marks on {len(board.layers)} copper layers",
+        f"{len(board.nets)} nets, {given} of them named by the files",
+    )
+
+
+def _exempt(board: Board) -> tuple[Count, ...]:
+    carriers = reference_nets(board)
+    supplies = [
+        net
+        for net in board.nets
+        if net.number not in carriers
+        and any(is_ground(name) or is_supply(name) for name in net.name.split("|"))
+    ]
+    return (
+        Count("nets that carry returns (ground and supply planes), not judged", len(carriers)),
+        Count("nets that are supplies by name, not judged", len(supplies)),
+    )
+
+
+def _nets(
+    board: Board, tracks: Sequence[Tracks], findings: Sequence[Finding]
+) -> tuple[NetRow, ...]:
+    length: dict[str, float] = defaultdict(float)
+    layers: dict[str, set[int]] = defaultdict(set)
+    for layer in tracks:
+        for net, millimetres in zip(layer.net.tolist(), layer.length_mm.tolist(), strict=True):
+            length[board.nets[net].name] += millimetres
+            layers[board.nets[net].name].add(layer.layer)
+    by_net: dict[str, list[Finding]] = defaultdict(list)
+    for finding in findings:
+        by_net[finding.net].append(finding)
+    rows = []
+    for name in sorted(length):
+        found = by_net.get(name, [])
+        added = [finding.added_nh for finding in found if finding.added_nh is not None]
+        rows.append(
+            NetRow(
+                name,
+                DEFAULT_DRIVE.name,
+                round(length[name], 4),
+                tuple(board.stack.layers[n - 1].name for n in sorted(layers[name])),
+                len(found),
+                max(added) if added else None,
+            )
+        )
+    return tuple(rows)
