@@ -1,4 +1,4 @@
-"""Bad input gets one clear message and exit code 2, or a stated assumption; nothing else is lost."""
+"""Bad input gets one clear message and exit code 2, or a stated assumption; the rest is kept."""
 
 from __future__ import annotations
 

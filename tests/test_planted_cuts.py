@@ -1,0 +1,76 @@
+"""Every cut made on purpose under a trace is found, on that net and at that place."""
+
+from __future__ import annotations
+
+import shutil
+from math import dist
+from pathlib import Path
+
+import pytest
+
+from splitcheck.copper.intake import open_export
+from splitcheck.errors import SplitcheckError
+from tests.making.cuts import PlantedCut, choose_cuts, plant
+from tests.making.running import Outcome, rank
+
+CLEAN = Path(__file__).parent.parent / "fixtures" / "demo_clean"
+WANTED = 50
+#: How far the reported place may be from the cut, mm.
+NEAR_MM = 0.5
+
+
+def _missed(outcome: Outcome, cuts: tuple[PlantedCut, ...]) -> list[PlantedCut]:
+    files = {row["name"]: row["file"] for row in outcome.report["board"]["layers"]}
+    return [
+        cut
+        for cut in cuts
+        if not any(
+            cut.net in finding["net"].split("|")
+            and files.get(finding["plane_layer"]) == cut.plane_file
+            and dist(finding["at_mm"], cut.at) <= NEAR_MM
+            for finding in outcome.findings
+        )
+    ]
+
+
+def _planted(folder: Path, tmp_path: Path, seed: int) -> tuple[Path, tuple[PlantedCut, ...]]:
+    cuts = choose_cuts(folder, WANTED, seed)
+    spoiled = tmp_path / f"{folder.name}-{seed}"
+    shutil.copytree(folder, spoiled)
+    plant(spoiled, cuts)
+    return spoiled, cuts
+
+
+@pytest.mark.parametrize("seed", [1, 2])
+def test_every_cut_planted_in_the_clean_twin_is_found(tmp_path: Path, seed: int) -> None:
+    """The demo's twin, which shows nothing, shows each of its cuts and no net besides."""
+    folder, cuts = _planted(CLEAN, tmp_path, seed)
+    assert len(cuts) >= 20
+    outcome = rank(folder)
+    assert _missed(outcome, cuts) == []
+
+
+def _boards_with_names(corpus: Path) -> list[Path]:
+    """Boards of the corpus with at least four copper layers whose traces carry net names."""
+    chosen = []
+    for folder in sorted(path for path in corpus.iterdir() if path.is_dir()):
+        try:
+            copper = open_export(folder).copper()
+        except SplitcheckError:
+            continue
+        if len(copper) >= 4 and "%TO.N," in copper[0].text:
+            chosen.append(folder)
+    return chosen
+
+
+@pytest.mark.slow
+def test_every_cut_planted_in_real_boards_is_found(corpus: Path, tmp_path: Path) -> None:
+    """Fifty cuts each in at least three boards as their makers exported them."""
+    tried = 0
+    for folder in _boards_with_names(corpus):
+        spoiled, cuts = _planted(folder, tmp_path, seed=1)
+        if len(cuts) < WANTED:
+            continue
+        tried += 1
+        assert _missed(rank(spoiled), cuts) == [], folder.name
+    assert tried >= 3
