@@ -207,17 +207,22 @@ def set_scene(
 
 
 def write_demo(folder: Path) -> Path:
-    """Copy the demo board to a folder; it must not exist or be empty.
+    """Copy the demo board to a folder; it must not exist, be empty, or hold the demo already.
 
     Returns
     -------
     The folder with the board's files.
     """
-    if folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
-        raise SplitcheckError(str(folder), "exists and is not an empty folder", "name another one")
-    source = fixtures_folder() / "demo"
+    files = sorted((fixtures_folder() / "demo").iterdir())
+    if folder.exists() and not folder.is_dir():
+        raise SplitcheckError(str(folder), "exists and is not a folder", "name another one")
+    strangers = {file.name for file in folder.iterdir()} if folder.exists() else set()
+    strangers -= {file.name for file in files}
+    if strangers:
+        wrong = f"holds other files already ({min(strangers)})"
+        raise SplitcheckError(str(folder), wrong, "name an empty or a new folder")
     folder.mkdir(parents=True, exist_ok=True)
-    for file in sorted(source.iterdir()):
+    for file in files:
         shutil.copyfile(file, folder / file.name)
     return folder
 
