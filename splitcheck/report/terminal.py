@@ -12,7 +12,7 @@ from rich.text import Text
 from splitcheck import __version__
 from splitcheck.report import tally
 from splitcheck.report.page import Column, Page
-from splitcheck.report.words import number, plural, shorten, with_error
+from splitcheck.report.words import STICKY, number, plural, shorten, with_error
 from splitcheck.verdict.findings import LEVELS, Finding, Kind, Level, Report
 
 #: How each level is coloured; its word always stands beside it.
@@ -74,7 +74,7 @@ def _read(page: Page, report: Report) -> None:
     )
     page.heading("Read")
     layers = ", ".join(
-        f"{layer.number} {shorten(layer.name, _NET_CELLS)} ({layer.role})"
+        f"{layer.number}{STICKY}{shorten(layer.name, _NET_CELLS)}{STICKY}({layer.role})"
         for layer in report.layers
     )
     kinds = Counter(row.kind for row in report.inputs)
@@ -168,8 +168,8 @@ def _where(finding: Finding) -> str:
         over = f" over {shorten(finding.plane_layer, _NET_CELLS)}{net}"
     x_mm, y_mm = (round(value, 3) + 0.0 for value in finding.at_mm)
     source = f"{shorten(finding.source.file, 40)}:{finding.source.line}"
-    rise = f", at {number(finding.rise_ns)} ns" if finding.noise_mv is not None else ""
-    return f"{layer}{over}, x {x_mm:.3f} y {y_mm:.3f} mm, {source}{rise}"
+    place = f"x {x_mm:.3f} y {y_mm:.3f} mm".replace(" ", STICKY)
+    return f"{layer}{over}, {place}, {source}"
 
 
 def _sharers(group: Sequence[Finding], room: int) -> str:
@@ -215,4 +215,5 @@ def _in_all(page: Page, report: Report) -> None:
     if waived:
         page.say(f"{plural(waived, 'waived finding')}, not counted above")
     for count in report.counts:
-        page.say(f"{count.number} {count.what}")
+        if count.number:
+            page.say(f"{count.number} {count.what}")

@@ -12,6 +12,9 @@ _UNSEEN = frozenset({"Cc", "Cf", "Cs", "Co", "Cn", "Zl", "Zp"})
 _RIGHT_TO_LEFT = frozenset({"R", "AL", "AN"})
 #: Ends a stretch written from right to left, so that the numbers after it keep their order.
 _LEFT_TO_RIGHT_MARK = "\N{LEFT-TO-RIGHT MARK}"
+#: A space at which no line ends. It stands for itself only until the page is written: no name can
+#: hold it, for `visible` writes characters of private use as escapes.
+STICKY = "\ue000"
 _DOTS = "..."
 _LONGEST = 2000
 
