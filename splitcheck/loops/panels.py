@@ -64,7 +64,7 @@ class Panels:
         return len(self.area)
 
 
-def cut(gaps: Sequence[Polygon], grading: Grading) -> Panels:
+def cut(gaps: Sequence[Polygon], grading: Grading, least: Sequence[int] = ()) -> Panels:
     """Cut gaps into graded panels.
 
     Parameters
@@ -73,6 +73,8 @@ def cut(gaps: Sequence[Polygon], grading: Grading) -> Panels:
         Valid polygons that do not overlap, mm; holes are copper.
     grading
         How fine, and where.
+    least
+        For each gap, into how many panels to cut its longer side at least; 4 if not given.
 
     Returns
     -------
@@ -89,7 +91,7 @@ def cut(gaps: Sequence[Polygon], grading: Grading) -> Panels:
     rims: list[NDArray[np.bool_]] = []
     numbers: list[Ints] = []
     for number, gap in enumerate(gaps):
-        outline, rim = _pieces(gap, grading)
+        outline, rim = _pieces(gap, grading, least[number] if least else 4)
         edges.append(outline)
         rims.append(rim)
         numbers.append(np.full(len(outline), number, dtype=np.int64))
@@ -110,7 +112,7 @@ def _padded(outline: Floats, widest: int) -> Floats:
     return np.concatenate([outline, np.repeat(start, room, axis=1)], axis=1)
 
 
-def _pieces(gap: Polygon, grading: Grading) -> tuple[Floats, NDArray[np.bool_]]:
+def _pieces(gap: Polygon, grading: Grading, least: int) -> tuple[Floats, NDArray[np.bool_]]:
     """Edges of the panels of one gap, and which of them lie on the rim of the gap."""
     angle = _frame_angle(gap, grading)
     turned = rotate(gap, -angle, origin=(0, 0), use_radians=True) if angle else gap
@@ -118,7 +120,7 @@ def _pieces(gap: Polygon, grading: Grading) -> tuple[Floats, NDArray[np.bool_]]:
     cos, sin = np.cos(angle), np.sin(angle)
     back = np.array([[cos, -sin], [sin, cos]])
     local = (lines.reshape(-1, 2) @ back).reshape(-1, 4)
-    outline, rim = _clipped(turned, local, grading)
+    outline, rim = _clipped(turned, local, grading, least)
     return (outline.reshape(-1, 2) @ back.T).reshape(outline.shape), rim
 
 
@@ -180,7 +182,9 @@ def _entries(gap: Polygon, lines: Floats) -> Floats:
     return shapely.get_coordinates(shapely.intersection(segments, gap.boundary))
 
 
-def _clipped(gap: Polygon, lines: Floats, grading: Grading) -> tuple[Floats, NDArray[np.bool_]]:
+def _clipped(
+    gap: Polygon, lines: Floats, grading: Grading, least: int
+) -> tuple[Floats, NDArray[np.bool_]]:
     """Halve the cells of the bounding box until they are fine enough, and clip them."""
     shapely.prepare(gap)
     west, south, east, north = gap.bounds
@@ -188,14 +192,14 @@ def _clipped(gap: Polygon, lines: Floats, grading: Grading) -> tuple[Floats, NDA
     hair = 1e-7 * max(east - west, north - south)
     boxes = np.array([[west - hair, south - 1.7 * hair, east + 2.3 * hair, north + 1.3 * hair]])
     rim = _entries(gap, lines)
-    least = 2 if len(gap.interiors) == 0 and _is_box(gap) else 3
+    holes = np.array([ring.bounds for ring in gap.interiors]).reshape(-1, 4)
     limit = np.array([max(east - west, north - south) / least] * 2)
     done: list[Floats] = []
     for _ in range(_MAX_DEPTH):
         size = boxes[:, 2:] - boxes[:, :2]
         middle = (boxes[:, :2] + boxes[:, 2:]) / 2
         wanted = np.minimum(_wanted(middle[:, 0], middle[:, 1], lines, rim, grading), limit)
-        over = size > wanted * 1.2
+        over = (size > wanted * 1.2) | _swallows(boxes, holes)[:, None]
         fine = ~over.any(axis=1)
         done.append(boxes[fine])
         boxes, over, middle = boxes[~fine], over[~fine], middle[~fine]
@@ -208,9 +212,14 @@ def _clipped(gap: Polygon, lines: Floats, grading: Grading) -> tuple[Floats, NDA
     return _cut_out(gap, np.concatenate(done))
 
 
-def _is_box(gap: Polygon) -> bool:
-    west, south, east, north = gap.bounds
-    return bool(gap.area > 0.98 * (east - west) * (north - south))
+def _swallows(boxes: Floats, holes: Floats) -> NDArray[np.bool_]:
+    """Which cells hold a whole hole that is not small in them."""
+    inside = (boxes[:, None, :2] < holes[:, :2]) & (boxes[:, None, 2:] > holes[:, 2:])
+    large = (holes[:, 2:] - holes[:, :2]).max(axis=1) > 0.15 * np.min(
+        boxes[:, 2:] - boxes[:, :2], axis=1
+    )[:, None]
+    swallowed: NDArray[np.bool_] = (inside.all(axis=2) & large).any(axis=1)
+    return swallowed
 
 
 def _halved(boxes: Floats, middle: Floats, over: NDArray[np.bool_]) -> Floats:

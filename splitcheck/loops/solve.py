@@ -4,136 +4,477 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from math import isfinite
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 from shapely import LineString, Point, Polygon
 
-from splitcheck.loops.kernels import outline_potential, plate_images, rectangle_self
+from splitcheck.errors import SplitcheckError
+from splitcheck.loops.matrix import interaction
 from splitcheck.loops.panels import Grading, Panels, cut
-from splitcheck.loops.sources import encloses, point_angle, strip_source
+from splitcheck.loops.relevant import Scene, arrange
+from splitcheck.loops.sources import islands, point_angles, strip_source
 from splitcheck.units import MU0, Floats
 
-
-def interaction(panels: Panels, plates_mm: Sequence[float]) -> Floats:
-    """Mean of g_up + g_down between all pairs of panels, shape (n, n), 1/mm."""
-    matrix = _free(panels)
-    matrix *= 2.0
-    if plates_mm:
-        matrix += _images(panels, plates_mm)
-    return matrix
-
-
-def _free(panels: Panels) -> Floats:
-    x, y = panels.centre.T
-    dx, dy = x[:, None] - x, y[:, None] - y
-    square = dx * dx + dy * dy
-    np.fill_diagonal(square, 1.0)
-    inverse = 1.0 / np.sqrt(square)
-    # second moments of both panels: <1/r> = 1/R + (T : grad grad 1/R)/2
-    xx, xy, yy = panels.spread.T
-    bend = (xx[:, None] + xx) * (2 * dx * dx - dy * dy)
-    bend += (yy[:, None] + yy) * (2 * dy * dy - dx * dx)
-    bend += (xy[:, None] + xy) * (6 * dx * dy)
-    reach = panels.radius[:, None] + panels.radius
-    matrix: Floats = inverse + 0.5 * bend * inverse**5
-    first, second = np.nonzero(np.triu(square < (2.0 * reach) ** 2, 1))
-    touching = square[first, second] < (1.05 * reach[first, second]) ** 2
-    i, j = first[~touching], second[~touching]
-    matrix[i, j] = matrix[j, i] = _by_points(panels, i, j)
-    i, j = first[touching], second[touching]
-    matrix[i, j] = matrix[j, i] = _by_outline(panels, i, j)
-    diagonal = np.arange(len(panels))
-    matrix[diagonal, diagonal] = _self(panels)
-    return matrix
+#: Size of a panel at the trace, in heights of the trace over the plane.
+_NEAR = 0.5
+_SLOPE = 0.35
+#: The check solve is coarser by this; its distance from the fine one is part of the error.
+_COARSER = 1.7
+#: More unknowns than this are not solved for: the panels are made coarser instead.
+MAX_PANELS = 2000
+#: What the method itself is off by where mesh and truncation are not: against the independent
+#: field solves of tests/loops/reference.csv, mostly because a real strip crowds its current.
+_METHOD_ERROR = 0.03
 
 
-def _by_points(panels: Panels, i, j) -> Floats:
-    total = np.zeros(len(i))
-    for a in range(4):
-        dx = panels.points[i, a, None, 0] - panels.points[j, :, 0]
-        dy = panels.points[i, a, None, 1] - panels.points[j, :, 1]
-        total += (1.0 / np.sqrt(dx * dx + dy * dy)).sum(axis=1)
-    return total / 16.0
+@dataclass(frozen=True, slots=True)
+class TraceOver:
+    """One trace over a gap."""
+
+    line: LineString
+    """Centre line, mm, with its ends over copper on both sides of the gap."""
+    width_mm: float
 
 
-def _by_outline(panels: Panels, i, j) -> Floats:
-    """Closed form of the larger panel at the points of the smaller."""
-    swap = panels.area[i] > panels.area[j]
-    small, large = np.where(swap, j, i), np.where(swap, i, j)
-    return _potential_at(panels, small, large)
+@dataclass(frozen=True, slots=True)
+class ViaBridge:
+    """A plated hole that joins this plane and the plane beyond."""
+
+    at: Point
+    diameter_mm: float
 
 
-def _potential_at(panels: Panels, target, source) -> Floats:
-    sides = _sides(panels)[source]
-    out = np.zeros(len(target))
-    at = panels.points[target]
-    for low, high in ((0, 4), (4, 6), (6, 10), (10, 10**6)):
-        pick = np.flatnonzero((sides > low) & (sides <= high))
-        if len(pick):
-            width = min(high, panels.edges.shape[1])
-            value = outline_potential(
-                at[pick, :, 0], at[pick, :, 1], panels.edges[source[pick], :width]
-            )
-            out[pick] = value.mean(axis=1)
-    return out / panels.area[source]
+@dataclass(frozen=True, slots=True)
+class Strap:
+    """A two-pad part across the gap, as a short wide trace: capacitor, resistor, link."""
+
+    line: LineString
+    """From pad to pad, mm, both ends over copper."""
+    width_mm: float
+    height_mm: float
+    """Height of its current over the plane."""
+    mounted_nh: float
+    """Inductance of the part as mounted over a whole plane."""
 
 
-def _sides(panels: Panels):
-    e = panels.edges
-    real = (e[:, :, 0] != e[:, :, 2]) | (e[:, :, 1] != e[:, :, 3])
-    return np.where(real.any(1), e.shape[1] - np.argmax(real[:, ::-1], axis=1), 0)
+@dataclass(frozen=True, slots=True)
+class Solution:
+    """Added inductance of all traces over the same gaps, and the flux that makes it."""
+
+    added_nh: Floats
+    """Matrix, shape (n, n): added loop inductance on the diagonal, mutual off it. A trace that is
+    cut off has infinity on the diagonal and 0 elsewhere."""
+    error_nh: Floats
+    """How far each entry may be off, shape (n, n)."""
+    panels: int
+    cut_off: tuple[bool, ...]
+    """For each trace: no way back, neither by copper nor by a bridge."""
+    remarks: tuple[str, ...]
+    """What was done to the input that may change the value, each a full sentence."""
+    mesh: Panels
+    flux_nwb: Floats
+    """Flux through each panel per ampere in each trace, shape (panels, n), nWb/A."""
+    bridge_a: Floats
+    """Current in each bridge per ampere in each trace, shape (bridges, n)."""
+
+    def of(self, trace: int) -> float | None:
+        """Added inductance of one trace in nH, or None where it has no way back."""
+        return None if self.cut_off[trace] else float(self.added_nh[trace, trace])
 
 
-def _self(panels: Panels) -> Floats:
-    own = np.arange(len(panels))
-    rough = _potential_at(panels, own, own)
-    # four points read the mean of a rectangle's own potential a little high: take that out
-    a, b = panels.sides.T
-    return rough * rectangle_self(a, b) / _four_points(a, b)
+def added(
+    gaps: Sequence[Polygon],
+    traces: Sequence[TraceOver],
+    height_mm: float,
+    *,
+    beyond_mm: float | None = None,
+    above_mm: float | None = None,
+    bridges: Sequence[ViaBridge | Strap] = (),
+    outside: Polygon | None = None,
+    fineness: float = 1.0,
+) -> Solution:
+    """Solve for the loop inductance that gaps in a plane add to the traces over them.
 
+    Parameters
+    ----------
+    gaps
+        Where the plane has no copper, mm. Polygons may touch, overlap or be degenerate; their
+        holes are copper.
+    traces
+        Traces over the plane, all at the same height.
+    height_mm
+        Distance from the plane to the traces, > 0.
+    beyond_mm
+        Distance to a whole plane on the other side, or None.
+    above_mm
+        Distance to a whole plane on the traces' side, > `height_mm`, or None. It takes its share
+        of the current, and is taken to be joined to this plane at the ends of the traces.
+    bridges
+        What can carry current from one side of a gap to the other.
+    outside
+        Outline of the plane: all outside it counts as a gap. None: the plane has no end.
+    fineness
+        Panels per length, against the usual, > 0.
 
-def _four_points(a: Floats, b: Floats) -> Floats:
-    zero = np.zeros_like(a)
-    corners = [(zero, zero), (a, zero), (a, b), (zero, b)]
-    edges = np.stack(
-        [np.stack([*corners[k], *corners[(k + 1) % 4]], axis=1) for k in range(4)], axis=1
+    Returns
+    -------
+    The solution; see `Solution`.
+
+    Raises
+    ------
+    SplitcheckError
+        If a height or distance is not a positive number, or a trace has no length.
+
+    Notes
+    -----
+    The unknown is the flux density b normal to the plane in the gaps. It makes the tangential
+    field continuous there: integral of (g_up + g_down) b / (2 pi mu0) = f + c in each gap, with no
+    net flux through any gap, g = 1/r with its images in the planes, and f the source function of
+    the traces over a whole plane. The added inductance is the integral of f b.
+
+    Examples
+    --------
+    A slot of 8 mm by 0.4 mm across a trace 0.2 mm above the plane:
+
+    >>> slot = shapely.box(-0.2, -4, 0.2, 4)
+    >>> trace = TraceOver(LineString([(-15, 0), (15, 0)]), width_mm=0.4)
+    >>> solution = added([slot], [trace], height_mm=0.2)
+    >>> round(float(solution.added_nh[0, 0]), 2)
+    1.1
+    """
+    _check(traces, height_mm, beyond_mm, above_mm, bridges)
+    scene = arrange(
+        gaps,
+        [trace.line for trace in traces],
+        height_mm,
+        outside,
+        [bridge.line for bridge in bridges if isinstance(bridge, Strap)],
     )
-    x = (0.5 - 0.5 / np.sqrt(3.0)) * a
-    y = (0.5 - 0.5 / np.sqrt(3.0)) * b
-    return outline_potential(x[:, None], y[:, None], edges)[:, 0] / (a * b)
+    job = _job(scene, traces, bridges, height_mm, beyond_mm, above_mm)
+    fine = _solved(job, _panels(job, fineness))
+    return _judged(job, fine, _solved(job, _panels(job, fineness / _COARSER)))
 
 
-def _images(panels: Panels, plates_mm: Sequence[float]) -> Floats:
-    x, y = panels.centre.T
-    r = np.hypot(x[:, None] - x, y[:, None] - y)
-    reach = panels.radius[:, None] + panels.radius
-    first, second = np.nonzero(np.triu(r < 2.0 * reach, 1))
-    total = np.zeros_like(r)
-    own = np.arange(len(panels))
-    for plate in plates_mm:
-        part = plate_images(r, plate)
-        value = np.zeros(len(first))
-        for a in range(4):
-            d = panels.points[first, a, None] - panels.points[second]
-            value += plate_images(np.hypot(d[..., 0], d[..., 1]), plate).sum(axis=1)
-        part[first, second] = part[second, first] = value / 16.0
-        part[own, own] = _own_images(panels, plate)
-        far = float(r.max()) if len(r) else 1.0
-        # a constant counts nothing for gaps without net flux; this one keeps the sum positive
-        part += (np.log(max(far / (2 * plate), 1.0)) + 4.0) / plate
-        total += part
-    return total
+def _check(
+    traces: Sequence[TraceOver],
+    height_mm: float,
+    beyond_mm: float | None,
+    above_mm: float | None,
+    bridges: Sequence[ViaBridge | Strap],
+) -> None:
+    """Refuse what has no meaning."""
+    given = {"height_mm": height_mm, "beyond_mm": beyond_mm, "above_mm": above_mm}
+    for name, value in given.items():
+        if value is not None and not (isfinite(value) and value > 0):
+            wrong = f"{value} is not a distance between a trace or plane and a plane"
+            raise SplitcheckError(name, wrong, "give millimetres greater than 0")
+    if above_mm is not None and above_mm <= height_mm:
+        wrong = f"the plane above lies at {above_mm} mm, not above the trace at {height_mm} mm"
+        raise SplitcheckError("above_mm", wrong, "give the distance between the two planes")
+    straps = [bridge for bridge in bridges if isinstance(bridge, Strap)]
+    for strip in (*traces, *straps):
+        if not (isfinite(strip.line.length) and strip.line.length > 0):
+            raise SplitcheckError("line", "a trace or part has no length", "give two points or more")
+        if not (isfinite(strip.width_mm) and strip.width_mm >= 0):
+            wrong = f"{strip.width_mm} is not a width"
+            raise SplitcheckError("width_mm", wrong, "give millimetres, 0 or more")
 
 
-def _own_images(panels: Panels, plate: float) -> Floats:
-    """Mean of the image series over all pairs of points of the equivalent rectangle."""
-    nodes, weights = np.polynomial.legendre.leggauss(6)
-    u, w = (nodes + 1) / 2, weights / 2
-    a, b = panels.sides.T
-    total = np.zeros(len(a))
-    for ui, wi in zip(u, w, strict=True):
-        for vi, wv in zip(u, w, strict=True):
-            weight = 4 * wi * wv * (1 - ui) * (1 - vi)
-            total += weight * plate_images(np.hypot(a * ui, b * vi), plate)
-    return total
+@dataclass(frozen=True, slots=True)
+class _Strip:
+    """A trace or a strap that has both ends over copper."""
+
+    line: Floats
+    width_mm: float
+    height_mm: float
+    above_mm: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class _Job:
+    """What is solved, twice: on fine and on coarse panels."""
+
+    scene: Scene
+    count: int
+    """Number of traces."""
+    traces: tuple[int, ...]
+    """Those of them that lie over copper at both ends."""
+    strips: tuple[_Strip, ...]
+    """These traces, then the straps."""
+    vias: Floats
+    """Places of the vias that count, shape (v, 2)."""
+    bridges: tuple[int, ...]
+    """Which bridges count, straps first."""
+    bridge_count: int
+    own_nh: Floats
+    """Inductance matrix of the bridges over a whole plane."""
+    plates_mm: tuple[float, ...]
+    near_mm: float
+    remarks: tuple[str, ...]
+
+
+def _job(
+    scene: Scene,
+    traces: Sequence[TraceOver],
+    bridges: Sequence[ViaBridge | Strap],
+    height_mm: float,
+    beyond_mm: float | None,
+    above_mm: float | None,
+) -> _Job:
+    """Sort out which traces and bridges count."""
+    remarks: list[str] = []
+    strips: list[_Strip] = []
+    on = [k for k, line in enumerate(scene.lines) if line is not None]
+    for k in on:
+        line = scene.lines[k]
+        assert line is not None
+        strips.append(_Strip(line, traces[k].width_mm, height_mm, above_mm))
+    everywhere = shapely.union_all(list(scene.gaps))
+    shapely.prepare(everywhere)
+    straps, vias = [], []
+    for k, bridge in enumerate(bridges):
+        ends = bridge.at if isinstance(bridge, ViaBridge) else bridge.line.boundary
+        if everywhere.intersects(ends):
+            remarks.append(f"bridge {k + 1} does not stand on copper and is left out")
+        elif isinstance(bridge, Strap):
+            straps.append(k)
+        elif beyond_mm is None:
+            remarks.append(f"bridge {k + 1} leads to a plane that is not there and is left out")
+        else:
+            vias.append(k)
+    for k in straps:
+        strap = bridges[k]
+        assert isinstance(strap, Strap)
+        line = shapely.get_coordinates(strap.line)
+        strips.append(_Strip(line, strap.width_mm, strap.height_mm, above_mm))
+    chosen = [b for b in (bridges[k] for k in vias) if isinstance(b, ViaBridge)]
+    places = np.array([b.at.coords[0][:2] for b in chosen]).reshape(-1, 2)
+    own = np.zeros((len(straps) + len(vias),) * 2)
+    for row, k in enumerate(straps):
+        own[row, row] = getattr(bridges[k], "mounted_nh", 0.0)
+    if beyond_mm is not None and chosen:
+        own[len(straps) :, len(straps) :] = _via_matrix(
+            places, [b.diameter_mm for b in chosen], beyond_mm
+        )
+    for k, short in enumerate(scene.cut_short_mm):
+        if scene.lines[k] is None:
+            remarks.append(f"trace {k + 1} is nowhere over copper of this plane")
+        elif short > 0:
+            remarks.append(f"trace {k + 1} ends in a gap; {short:.3f} mm of it are left out")
+    return _Job(
+        scene=scene,
+        count=len(traces),
+        traces=tuple(on),
+        strips=tuple(strips),
+        vias=places,
+        bridges=(*straps, *vias),
+        bridge_count=len(bridges),
+        own_nh=own,
+        plates_mm=tuple(d for d in (above_mm, beyond_mm) if d is not None),
+        near_mm=_NEAR * height_mm,
+        remarks=tuple(remarks),
+    )
+
+
+def _via_matrix(places: Floats, diameters_mm: Sequence[float], plate_mm: float) -> Floats:
+    """Inductance of vias between two planes, for currents that add up to zero.
+
+    The field between planes a distance d apart is that of line currents: mu0 d/2 pi ln(1/r), with
+    half the diameter for r on the diagonal. One via there and one back give mu0 d/pi ln(2s/D).
+    """
+    apart = np.hypot(*(places[:, None, :] - places).transpose(2, 0, 1))
+    for k, diameter in enumerate(diameters_mm):
+        apart[k, k] = max(diameter, 1e-3) / 2
+    least = min(max(min(diameters_mm), 1e-3) / 2, 1.0)
+    matrix: Floats = -MU0 * plate_mm / (2 * np.pi) * np.log(np.maximum(apart, least))
+    return matrix
+
+
+def _panels(job: _Job, fineness: float) -> Panels:
+    """Cut the gaps, coarser and coarser until there are not too many panels."""
+    lines = tuple(LineString(strip.line) for strip in job.strips)
+    near, slope = job.near_mm / fineness, _SLOPE / fineness
+    least = tuple(2 if coarse else 4 for coarse in job.scene.coarse)
+    for _ in range(12):
+        mesh = cut(job.scene.gaps, Grading(lines, near, slope), least)
+        if len(mesh) <= MAX_PANELS:
+            return mesh
+        near, slope, least = near * 1.5, min(slope * 1.25, 2.0), tuple(2 for _ in least)
+    wrong = f"{len(job.scene.gaps)} gaps need {len(mesh)} panels, more than {MAX_PANELS}"
+    raise SplitcheckError("gaps", wrong, "give fewer or simpler gaps")
+
+
+@dataclass(frozen=True, slots=True)
+class _Raw:
+    """One solve, for the traces that count."""
+
+    added_nh: Floats
+    filament_nh: Floats
+    """The diagonal if the whole current ran on the centre line."""
+    cut_off: NDArray[np.bool_]
+    mesh: Panels
+    flux: Floats
+    bridge_a: Floats
+
+
+def _solved(job: _Job, mesh: Panels) -> _Raw:
+    """Factor once, solve for all traces and bridges, and share the current among the bridges."""
+    sources, centres, rows = _sources(job, mesh)
+    count = len(job.traces)
+    response = _response(job, mesh, np.concatenate([sources, centres], axis=1))
+    energy = sources.T @ response[:, : sources.shape[1]]
+    way, cut_off = _ways(energy, job.own_nh, rows, count, len(job.vias))
+    full = energy.copy()
+    full[count:, count:] += job.own_nh
+    added_nh = way.T @ full @ way
+    line = (centres * response[:, sources.shape[1] :]).sum(axis=0)
+    return _Raw(
+        added_nh=(added_nh + added_nh.T) / 2,
+        filament_nh=line - np.diag(energy)[:count],
+        cut_off=cut_off,
+        mesh=mesh,
+        flux=response[:, : sources.shape[1]] @ way,
+        bridge_a=way[count:],
+    )
+
+
+def _sources(job: _Job, mesh: Panels) -> tuple[Floats, Floats, Floats]:
+    """Source functions of strips and vias; of the traces' centre lines; and island balances.
+
+    Each row of the balances says what current one unit of each source brings into an island.
+    """
+    ends = [strip.line[[0, -1]] for strip in job.strips]
+    points = np.concatenate([*ends, job.vias]) if ends else job.vias
+    held = islands(job.scene.gaps, points)
+    angles = point_angles(mesh, job.scene.gaps, points, held)
+    columns, centres = [], []
+    shares = []
+    for k, strip in enumerate(job.strips):
+        between = angles[2 * k + 1] - angles[2 * k]
+        full, centre = strip_source(
+            mesh, strip.line, strip.width_mm, strip.height_mm, strip.above_mm, between
+        )
+        columns.append(full)
+        shares.append(1.0 if strip.above_mm is None else 1.0 - strip.height_mm / strip.above_mm)
+        if k < len(job.traces):
+            centres.append(centre)
+    columns.extend(angles[2 * len(job.strips) :].mean(axis=2) / (2 * np.pi))
+    rows = np.zeros((len(held), len(columns)))
+    for row, (_, inside) in zip(rows, held, strict=True):
+        strips = len(job.strips)
+        row[:strips] = (inside[1 : 2 * strips : 2] - inside[0 : 2 * strips : 2]) * shares
+        row[strips:] = inside[2 * strips :]
+    return (
+        np.array(columns).reshape(-1, len(mesh)).T,
+        np.array(centres).reshape(-1, len(mesh)).T,
+        rows,
+    )
+
+
+def _response(job: _Job, mesh: Panels, sources: Floats) -> Floats:
+    """Flux through each panel for each source, with no net flux through any closed gap, nWb/A."""
+    if not len(mesh):
+        return np.zeros_like(sources)
+    matrix = interaction(mesh, job.plates_mm)
+    # flux can go out over the open rim of the world, unless planes shut it in
+    closed = [
+        g for g in range(len(job.scene.gaps)) if g != job.scene.endless or job.plates_mm
+    ]
+    nets = (mesh.gap[:, None] == np.array(closed, dtype=np.int64)).astype(np.float64)
+    solved = _cholesky_solve(matrix, np.concatenate([sources, nets], axis=1))
+    flux, unit = solved[:, : sources.shape[1]], solved[:, sources.shape[1] :]
+    if closed:
+        flux = flux - unit @ np.linalg.solve(nets.T @ unit, nets.T @ flux)
+    return 2 * np.pi * MU0 * flux
+
+
+def _cholesky_solve(matrix: Floats, right: Floats) -> Floats:
+    from scipy.linalg import cho_factor, cho_solve  # noqa: PLC0415 (0.25 s, only where needed)
+
+    factor = cho_factor(matrix, lower=True, overwrite_a=True, check_finite=False)
+    solved: Floats = cho_solve(factor, right, check_finite=False)
+    return solved
+
+
+def _ways(
+    energy: Floats, own_nh: Floats, rows: Floats, count: int, vias: int
+) -> tuple[Floats, NDArray[np.bool_]]:
+    """Current in each source per ampere in each trace: what must balance does, the rest is least.
+
+    Returns the currents, shape (sources, traces), and which traces have no way back.
+    """
+    bridges = energy.shape[0] - count
+    balance = rows
+    if vias:
+        # the plane beyond keeps no current
+        onto = np.zeros((1, energy.shape[0]))
+        onto[0, -vias:] = 1.0
+        balance = np.concatenate([rows, onto])
+    need, can = -balance[:, :count], balance[:, count:]
+    forced = np.linalg.pinv(can) @ need if bridges and len(balance) else np.zeros((bridges, count))
+    short = np.abs(can @ forced - need).max(axis=0, initial=0.0) if len(balance) else np.zeros(count)
+    cut_off = short > 1e-6
+    currents = forced
+    free = _free(can, bridges)
+    if free.shape[1]:
+        inner = energy[count:, count:] + own_nh
+        pull = energy[count:, :count] + inner @ forced
+        currents = forced - free @ np.linalg.solve(free.T @ inner @ free, free.T @ pull)
+    way = np.concatenate([np.eye(count), currents])
+    way[:, cut_off] = 0.0
+    return way, cut_off
+
+
+def _free(can: Floats, bridges: int) -> Floats:
+    """Bridge currents that no balance forbids, as columns."""
+    if not bridges or not len(can):
+        return np.eye(bridges)
+    _, values, right = np.linalg.svd(can)
+    rank = int((values > 1e-9 * max(values.max(initial=0.0), 1e-300)).sum())
+    free: Floats = right[rank:].T
+    return free
+
+
+def _judged(job: _Job, fine: _Raw, coarse: _Raw) -> Solution:
+    """Put an error on the fine solve and spread it over all traces that were asked for."""
+    mesh_nh = np.abs(fine.added_nh - coarse.added_nh)
+    own = np.diag(fine.added_nh)
+    scale = np.sqrt(np.maximum(np.outer(own, own), 0.0))
+    left = job.scene.left_out_nh[list(job.traces)]
+    short = np.array([job.scene.cut_short_mm[k] for k in job.traces])
+    alone = left + _short_nh(short, job.near_mm / _NEAR) + 0.2 * np.abs(fine.filament_nh)
+    error = mesh_nh + _METHOD_ERROR * scale + np.sqrt(np.outer(alone, alone))
+    added_nh = np.zeros((job.count, job.count))
+    error_nh = np.zeros_like(added_nh)
+    flux = np.zeros((len(fine.mesh), job.count))
+    bridge_a = np.zeros((job.bridge_count, job.count))
+    cut_off = np.ones(job.count, dtype=bool)
+    on = list(job.traces)
+    added_nh[np.ix_(on, on)] = fine.added_nh
+    error_nh[np.ix_(on, on)] = error
+    flux[:, on] = fine.flux
+    bridge_a[np.ix_(list(job.bridges), on)] = fine.bridge_a
+    cut_off[on] = fine.cut_off
+    lost = np.flatnonzero(cut_off)
+    error_nh[lost] = error_nh[:, lost] = 0.0
+    added_nh[lost, lost] = error_nh[lost, lost] = np.inf
+    return Solution(
+        added_nh=added_nh,
+        error_nh=error_nh,
+        panels=len(fine.mesh),
+        cut_off=tuple(bool(c) for c in cut_off),
+        remarks=job.remarks,
+        mesh=fine.mesh,
+        flux_nwb=flux,
+        bridge_a=bridge_a,
+    )
+
+
+def _short_nh(short_mm: Floats, height_mm: float) -> Floats:
+    """What the end of a trace over a gap may add: no more than a wire far from any plane."""
+    beyond = np.maximum(short_mm - 2 * height_mm, 0.0)
+    value: Floats = MU0 / (2 * np.pi) * beyond * np.log1p(beyond / height_mm)
+    return value

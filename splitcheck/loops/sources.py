@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 import shapely
 from numpy.polynomial.legendre import leggauss
-from shapely import LineString, Point, Polygon
+from shapely import LineString, Polygon
 from shapely.ops import split
 
 from splitcheck.loops.kernels import wall_source
@@ -15,22 +15,25 @@ from splitcheck.loops.panels import Panels
 from splitcheck.units import Floats
 
 _RAYS = 24
+#: Rays and cuts are laid askew by this (rad, or part of their length), so that none runs along a
+#: rim: boards are drawn in multiples of 15 degrees.
+_ASKEW = 0.0123
 
 
 def strip_source(
     panels: Panels,
-    gaps: Sequence[Polygon],
     line: Floats,
     width_mm: float,
     height_mm: float,
     above_mm: float | None,
+    between: Floats,
 ) -> tuple[Floats, Floats]:
     """Source function of a trace of finite width, as its mean over each panel.
 
     Parameters
     ----------
-    panels, gaps
-        The panels, and the gaps they were cut from.
+    panels
+        The panels, shape (n,).
     line
         Centre line, shape (p, 2), mm; both ends over copper.
     width_mm
@@ -39,6 +42,9 @@ def strip_source(
         Height over the plane, mm, > 0.
     above_mm
         Distance of a plane on the trace's side, mm, or None.
+    between
+        Angle between the two ends of the trace seen from the points of the panels, continuous in
+        each gap (`point_angles` of the last point less that of the first), shape (n, 4), rad.
 
     Returns
     -------
@@ -47,30 +53,28 @@ def strip_source(
     Notes
     -----
     The strip is a bundle of filaments that leave from one point and end in one point, so that all
-    of them enclose the same copper. Each filament's f jumps on its own line; inside a gap it is
-    made continuous by the whole number n = (Theta - A)/2 pi, with A the angle that the filament is
-    seen under (it jumps on the same line) and Theta the angle between its ends, followed
-    continuously through the gap.
+    of them enclose the same copper. Each filament's f jumps on its own line by its share s, and so
+    does s A/2 pi, with A the angle that the filament is seen under: the difference is smooth. The
+    angle between the ends, followed continuously through the gap, takes the place of A.
     """
     x, y = panels.points[:, :, 0].ravel(), panels.points[:, :, 1].ravel()
-    theta = point_angle(panels, gaps, line[-1]) - point_angle(panels, gaps, line[0])
     share = 1.0 if above_mm is None else 1.0 - height_mm / above_mm
-    places, weights = _filaments(width_mm, height_mm)
 
     def filament(offset_mm: float) -> Floats:
         path = _beside(line, offset_mm)
         segments = np.concatenate([path[:-1], path[1:]], axis=1)
         value, seen = wall_source(x, y, segments, height_mm, above_mm)
-        number = np.round((theta.ravel() - seen) / (2 * np.pi))
-        mean: Floats = (value + share * number).reshape(-1, 4).mean(axis=1)
+        smooth = value.reshape(-1, 4) + share / (2 * np.pi) * (between - seen.reshape(-1, 4))
+        mean: Floats = smooth.mean(axis=1)
         return mean
 
     centre = filament(0.0)
+    places, weights = _filaments(width_mm, height_mm)
     if not len(places):
         return centre, centre
-    strip = sum(
-        (w * filament(o) for o, w in zip(places, weights, strict=True)), np.zeros_like(centre)
-    )
+    strip = np.zeros_like(centre)
+    for place, weight in zip(places, weights, strict=True):
+        strip += weight * filament(float(place))
     return strip, centre
 
 
@@ -78,8 +82,7 @@ def _filaments(width_mm: float, height_mm: float) -> tuple[Floats, Floats]:
     """Gauss points across the width: more for traces wide against their height."""
     if width_mm < 0.02 * height_mm:
         return np.zeros(0), np.zeros(0)
-    count = int(min(3 + width_mm / height_mm, 9))
-    nodes, weights = leggauss(count)
+    nodes, weights = leggauss(int(min(3 + width_mm / height_mm, 9)))
     return nodes * width_mm / 2, weights / 2
 
 
@@ -93,112 +96,10 @@ def _beside(line: Floats, offset_mm: float) -> Floats:
     before, after = np.concatenate([normal[:1], normal]), np.concatenate([normal, normal[-1:]])
     # mitred corners; a hairpin would throw its corner to infinity, so the mitre is held to 2
     mitre = (before + after) / np.maximum(1 + (before * after).sum(axis=1), 0.5)[:, None]
-    moved = line + offset_mm * mitre
-    return np.concatenate([line[:1], moved, line[-1:]])
+    return np.concatenate([line[:1], line + offset_mm * mitre, line[-1:]])
 
 
-def point_angle(panels: Panels, gaps: Sequence[Polygon], at: Floats) -> Floats:
-    """Angle of the direction from a point to the panels, continuous within each gap.
-
-    Parameters
-    ----------
-    panels, gaps
-        The panels, and the gaps they were cut from.
-    at
-        A point on copper, shape (2,), mm.
-
-    Returns
-    -------
-    Angle at the four points of each panel, shape (n, 4), rad, up to a constant for each gap.
-    Round a gap that surrounds the point the angle cannot come back to itself; it then jumps by
-    2 pi somewhere, which is for the caller to rule out (see `encloses`).
-    """
-    away = panels.centre - at
-    base = np.arctan2(away[:, 1], away[:, 0])
-    for number, gap in enumerate(gaps):
-        mine = np.flatnonzero(panels.gap == number)
-        ray, direction = _clearest_ray(gap, at)
-        angle = direction + np.mod(base[mine] - direction, 2 * np.pi)
-        if ray is not None:
-            angle += 2 * np.pi * _windings(gap, ray, panels.centre[mine])
-        base[mine] = angle
-    turn = panels.points - at
-    cross = away[:, None, 0] * turn[:, :, 1] - away[:, None, 1] * turn[:, :, 0]
-    return base[:, None] + np.arctan2(cross, (away[:, None, :] * turn).sum(axis=2))
-
-
-def _clearest_ray(gap: Polygon, at: Floats) -> tuple[LineString | None, float]:
-    """A direction in which a ray from the point meets the gap least often; None if not at all."""
-    west, south, east, north = gap.bounds
-    far = 2 * float(np.hypot(max(abs(west - at[0]), abs(east - at[0])),
-                             max(abs(south - at[1]), abs(north - at[1])))) + 1.0
-    middle = np.array([(west + east) / 2, (south + north) / 2])
-    # not a multiple of anything that boards are drawn in, so that no ray runs along an edge
-    start = float(np.arctan2(*(at - middle)[::-1])) + 0.01234
-    directions = start + 2 * np.pi / _RAYS * np.arange(_RAYS)
-    ends = at + far * np.stack([np.cos(directions), np.sin(directions)], axis=1)
-    if gap.distance(Point(at)) > 0:
-        first = LineString([at, ends[0]])
-        if not shapely.intersects(gap, first):
-            return None, float(directions[0])
-    rays = shapely.linestrings(np.stack([np.broadcast_to(at, ends.shape), ends], axis=1))
-    met = shapely.get_num_geometries(shapely.intersection(gap, rays))
-    empty = ~shapely.intersects(gap, rays)
-    met = np.where(empty, 0, met)
-    best = int(np.argmin(met))
-    return (None if met[best] == 0 else rays[best]), float(directions[best])
-
-
-def _windings(gap: Polygon, ray: LineString, centres: Floats) -> Floats:
-    """Whole turns to add on each side of a ray so that the angle is continuous in the gap."""
-    pieces = list(split(gap, ray).geoms)
-    if len(pieces) < 2:
-        return np.zeros(len(centres))
-    number = _walked(pieces, _steps(gap, ray, pieces))
-    tree = shapely.STRtree(pieces)
-    nearest = tree.nearest(shapely.points(centres))
-    return number[nearest]
-
-
-def _steps(
-    gap: Polygon, ray: LineString, pieces: Sequence[Polygon]
-) -> list[tuple[int, int]]:
-    """Pairs of pieces that meet on the ray: first the one before it, turning to the left."""
-    (x0, y0), (x1, y1) = ray.coords[0], ray.coords[-1]
-    length = np.hypot(x1 - x0, y1 - y0)
-    normal = np.array([-(y1 - y0), x1 - x0]) / length
-    steps: list[tuple[int, int]] = []
-    tree = shapely.STRtree(pieces)
-    for part in shapely.get_parts(gap.intersection(ray)):
-        if part.length == 0:
-            continue
-        middle = shapely.get_coordinates(part.interpolate(0.5, normalized=True))[0]
-        aside = min(1e-6, part.length / 100) * normal
-        before, after = tree.nearest(shapely.points([middle - aside, middle + aside]))
-        if before != after:
-            steps.append((int(before), int(after)))
-    return steps
-
-
-def _walked(pieces: Sequence[Polygon], steps: Sequence[tuple[int, int]]) -> Floats:
-    """Number the pieces: crossing the ray to its left the angle restarts at 0, one turn short."""
-    number: dict[int, int] = {}
-    for seed in range(len(pieces)):
-        if seed in number:
-            continue
-        number[seed] = 0
-        queue = [seed]
-        while queue:
-            here = queue.pop()
-            for before, after in steps:
-                for near, other, change in ((before, after, 1), (after, before, -1)):
-                    if near == here and other not in number:
-                        number[other] = number[here] + change
-                        queue.append(other)
-    return np.array([number[i] for i in range(len(pieces))], dtype=np.float64)
-
-
-def encloses(gaps: Sequence[Polygon], points: Floats) -> Floats:
+def islands(gaps: Sequence[Polygon], points: Floats) -> list[tuple[int, Floats]]:
     """Which islands, surrounded by a gap, hold which points.
 
     Parameters
@@ -210,12 +111,160 @@ def encloses(gaps: Sequence[Polygon], points: Floats) -> Floats:
 
     Returns
     -------
-    One row for each hole that holds at least one of the points, shape (holes, k), 1 or 0.
+    For each hole that holds at least one of the points: the number of its gap, and which points
+    it holds, shape (k,), 1 or 0.
     """
-    rows = []
-    for gap in gaps:
+    found = []
+    for number, gap in enumerate(gaps):
         for ring in gap.interiors:
             inside = shapely.contains_xy(Polygon(ring), points[:, 0], points[:, 1])
             if inside.any():
-                rows.append(inside.astype(np.float64))
-    return np.array(rows).reshape(-1, len(points))
+                found.append((number, inside.astype(np.float64)))
+    return found
+
+
+def point_angles(
+    panels: Panels, gaps: Sequence[Polygon], points: Floats, held: list[tuple[int, Floats]]
+) -> Floats:
+    """Direction from points on copper to the panels, as angles continuous within each gap.
+
+    Parameters
+    ----------
+    panels, gaps
+        The panels, and the gaps they were cut from.
+    points
+        Points on copper, shape (k, 2), mm.
+    held
+        What `islands` found for these points.
+
+    Returns
+    -------
+    Angles at the four points of each panel, shape (k, n, 4), rad, up to a constant for each gap.
+
+    Notes
+    -----
+    Round a gap that surrounds a point its angle cannot come back to itself. But the currents that
+    enter an island add up to zero, so that only differences between the points on one island
+    count: there, the angle is given relative to the island's first point. Within the gap, an
+    angle is followed from piece to piece over the cuts that a line from the point (to that first
+    point, or else to where it meets the gap least) makes in it.
+    """
+    angles = np.zeros((len(points), len(panels), 4))
+    for number, gap in enumerate(gaps):
+        mine = np.flatnonzero(panels.gap == number)
+        shapely.prepare(gap)
+        for k, at in enumerate(points):
+            base = next(
+                (int(np.argmax(row)) for owner, row in held if owner == number and row[k]), None
+            )
+            if base is None:
+                angles[k, mine] = _from_outside(gap, at, panels, mine)
+            elif base != k:
+                angles[k, mine] = _between(gap, at, points[base], panels, mine)
+    return angles
+
+
+def _seen(first: Floats, second: Floats, r: Floats) -> Floats:
+    """Angle from the first to the second of two points as seen from r, within (-pi, pi]."""
+    a, b = first - r, second - r
+    return np.arctan2(
+        a[..., 0] * b[..., 1] - a[..., 1] * b[..., 0], a[..., 0] * b[..., 0] + a[..., 1] * b[..., 1]
+    )
+
+
+def _followed(gap: Polygon, cut: LineString, angle: Floats, panels: Panels, mine) -> Floats:
+    """Add whole turns to an angle that jumps on a line, and spread it to the panels' points."""
+    if shapely.intersects(gap, cut):
+        return angle + 2 * np.pi * _turns(gap, cut, panels.centre[mine])
+    return angle
+
+
+def _between(gap: Polygon, at: Floats, base: Floats, panels: Panels, mine) -> Floats:
+    """Angle from the base to the point, both on one island."""
+    step = at - base
+    via = (at + base) / 2 + _ASKEW * np.array([-step[1], step[0]])
+    centre = panels.centre[mine]
+    angle = _seen(base, via, centre) + _seen(via, at, centre)
+    angle = _followed(gap, LineString([at, via, base]), angle, panels, mine)
+    spot, middle = panels.points[mine], centre[:, None, :]
+    return angle[:, None] + _turned(at, middle, spot) - _turned(base, middle, spot)
+
+
+def _turned(at: Floats, before: Floats, after: Floats) -> Floats:
+    """By how much the direction from a point turns on a short way."""
+    a, b = before - at, after - at
+    return np.arctan2(
+        a[..., 0] * b[..., 1] - a[..., 1] * b[..., 0], a[..., 0] * b[..., 0] + a[..., 1] * b[..., 1]
+    )
+
+
+def _from_outside(gap: Polygon, at: Floats, panels: Panels, mine) -> Floats:
+    """Angle about a point that the gap does not surround."""
+    ray, direction = _clearest_ray(gap, at)
+    away = panels.centre[mine] - at
+    angle = direction + np.mod(np.arctan2(away[:, 1], away[:, 0]) - direction, 2 * np.pi)
+    if ray is not None:
+        # turning left over the ray the angle falls from a full turn to none
+        angle = angle + 2 * np.pi * _turns(gap, ray, panels.centre[mine])
+    return angle[:, None] + _turned(at, panels.centre[mine][:, None, :], panels.points[mine])
+
+
+def _clearest_ray(gap: Polygon, at: Floats) -> tuple[LineString | None, float]:
+    """A direction in which a ray from the point meets the gap least often; None if not at all."""
+    west, south, east, north = gap.bounds
+    corners = np.array([[west, south], [east, south], [east, north], [west, north]])
+    far = 2.0 * float(np.hypot(*(corners - at).T).max()) + 1.0
+    start = float(np.arctan2(*(at - corners.mean(axis=0))[::-1])) + _ASKEW
+    directions = start + 2 * np.pi / _RAYS * np.arange(_RAYS)
+    ends = at + far * np.stack([np.cos(directions), np.sin(directions)], axis=1)
+    if not shapely.intersects(gap, LineString([at, ends[0]])):
+        return None, float(directions[0])
+    rays = shapely.linestrings(np.stack([np.broadcast_to(at, ends.shape), ends], axis=1))
+    met = shapely.get_num_geometries(shapely.intersection(gap, rays))
+    met = np.where(shapely.intersects(gap, rays), met, 0)
+    best = int(np.argmin(met))
+    return (None if met[best] == 0 else rays[best]), float(directions[best])
+
+
+def _turns(gap: Polygon, cut: LineString, centres: Floats) -> Floats:
+    """Whole turns to add on each side of a cut, where the angle falls by one to its left."""
+    pieces = sorted(split(gap, cut).geoms, key=lambda piece: -piece.area)
+    if len(pieces) < 2:
+        return np.zeros(len(centres))
+    tree = shapely.STRtree(pieces)
+    number = _walked(len(pieces), _steps(gap, cut, tree))
+    return number[tree.nearest(shapely.points(centres))]
+
+
+def _steps(gap: Polygon, cut: LineString, tree: shapely.STRtree) -> list[tuple[int, int]]:
+    """Pairs of pieces that meet on the cut: right of it first, then left."""
+    steps: list[tuple[int, int]] = []
+    stretches = zip(cut.coords[:-1], cut.coords[1:], strict=True)
+    for (x0, y0), (x1, y1) in stretches:
+        normal = np.array([y0 - y1, x1 - x0]) / np.hypot(x1 - x0, y1 - y0)
+        over = shapely.intersection(gap, LineString([(x0, y0), (x1, y1)]))
+        for part in shapely.get_parts(over):
+            if part.length == 0:
+                continue
+            middle = shapely.get_coordinates(part.interpolate(0.5, normalized=True))[0]
+            aside = min(1e-6, part.length / 100) * normal
+            right, left = tree.nearest(shapely.points([middle - aside, middle + aside]))
+            if right != left:
+                steps.append((int(right), int(left)))
+    return steps
+
+
+def _walked(count: int, steps: Sequence[tuple[int, int]]) -> Floats:
+    """Number the pieces, one more for each step to the left; the first piece is number 0."""
+    number: dict[int, int] = {}
+    for seed in range(count):
+        queue = [] if seed in number else [seed]
+        number.setdefault(seed, 0)
+        while queue:
+            here = queue.pop()
+            for right, left in steps:
+                for near, other, change in ((right, left, 1), (left, right, -1)):
+                    if near == here and other not in number:
+                        number[other] = number[here] + change
+                        queue.append(other)
+    return np.array([number[piece] for piece in range(count)], dtype=np.float64)

@@ -1,0 +1,141 @@
+"""Panels in, their interaction out: the mean of the potential of each panel over each other."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+from numpy.polynomial.legendre import leggauss
+
+from splitcheck.loops.kernels import outline_potential, plate_images, rectangle_self
+from splitcheck.loops.panels import Ints, Panels
+from splitcheck.units import Floats
+
+#: Panels this close (distance against the sum of their radii) are integrated in closed form,
+_TOUCHING = 1.05
+#: these by four points each, and all others by their second moments.
+_NEARBY = 2.0
+
+
+def interaction(panels: Panels, plates_mm: Sequence[float]) -> Floats:
+    """Mean of g_up + g_down between all pairs of panels, shape (n, n), 1/mm."""
+    matrix = _free(panels)
+    matrix *= 2.0
+    if plates_mm:
+        matrix += _images(panels, plates_mm)
+    return matrix
+
+
+def _free(panels: Panels) -> Floats:
+    x, y = panels.centre.T
+    dx, dy = x[:, None] - x, y[:, None] - y
+    square = dx * dx + dy * dy
+    np.fill_diagonal(square, 1.0)
+    inverse = 1.0 / np.sqrt(square)
+    # second moments of both panels: <1/r> = 1/R + (T : grad grad 1/R)/2
+    xx, xy, yy = panels.spread.T
+    bend = (xx[:, None] + xx) * (2 * dx * dx - dy * dy)
+    bend += (yy[:, None] + yy) * (2 * dy * dy - dx * dx)
+    bend += (xy[:, None] + xy) * (6 * dx * dy)
+    reach = panels.radius[:, None] + panels.radius
+    matrix: Floats = inverse + 0.5 * bend * inverse**5
+    first, second = np.nonzero(np.triu(square < (_NEARBY * reach) ** 2, 1))
+    touching = square[first, second] < (_TOUCHING * reach[first, second]) ** 2
+    i, j = first[~touching], second[~touching]
+    matrix[i, j] = matrix[j, i] = _by_points(panels, i, j)
+    i, j = first[touching], second[touching]
+    matrix[i, j] = matrix[j, i] = _by_outline(panels, i, j)
+    diagonal = np.arange(len(panels))
+    matrix[diagonal, diagonal] = _self(panels)
+    return matrix
+
+
+def _by_points(panels: Panels, i: Ints, j: Ints) -> Floats:
+    total = np.zeros(len(i))
+    for a in range(4):
+        dx = panels.points[i, a, None, 0] - panels.points[j, :, 0]
+        dy = panels.points[i, a, None, 1] - panels.points[j, :, 1]
+        total += (1.0 / np.sqrt(dx * dx + dy * dy)).sum(axis=1)
+    return total / 16.0
+
+
+def _by_outline(panels: Panels, i: Ints, j: Ints) -> Floats:
+    """Closed form of the larger panel at the points of the smaller."""
+    swap = panels.area[i] > panels.area[j]
+    small, large = np.where(swap, j, i), np.where(swap, i, j)
+    return _potential_at(panels, small, large)
+
+
+def _potential_at(panels: Panels, target: Ints, source: Ints) -> Floats:
+    sides = _sides(panels)[source]
+    out = np.zeros(len(target))
+    at = panels.points[target]
+    for low, high in ((0, 4), (4, 6), (6, 10), (10, 10**6)):
+        pick = np.flatnonzero((sides > low) & (sides <= high))
+        if len(pick):
+            width = min(high, panels.edges.shape[1])
+            value = outline_potential(
+                at[pick, :, 0], at[pick, :, 1], panels.edges[source[pick], :width]
+            )
+            out[pick] = value.mean(axis=1)
+    return out / panels.area[source]
+
+
+def _sides(panels: Panels) -> Ints:
+    e = panels.edges
+    real = (e[:, :, 0] != e[:, :, 2]) | (e[:, :, 1] != e[:, :, 3])
+    return np.where(real.any(1), e.shape[1] - np.argmax(real[:, ::-1], axis=1), 0)
+
+
+def _self(panels: Panels) -> Floats:
+    own = np.arange(len(panels))
+    rough = _potential_at(panels, own, own)
+    # four points read the mean of a rectangle's own potential a little high: take that out
+    a, b = panels.sides.T
+    return rough * rectangle_self(a, b) / _four_points(a, b)
+
+
+def _four_points(a: Floats, b: Floats) -> Floats:
+    zero = np.zeros_like(a)
+    corners = [(zero, zero), (a, zero), (a, b), (zero, b)]
+    edges = np.stack(
+        [np.stack([*corners[k], *corners[(k + 1) % 4]], axis=1) for k in range(4)], axis=1
+    )
+    x = (0.5 - 0.5 / np.sqrt(3.0)) * a
+    y = (0.5 - 0.5 / np.sqrt(3.0)) * b
+    return outline_potential(x[:, None], y[:, None], edges)[:, 0] / (a * b)
+
+
+def _images(panels: Panels, plates_mm: Sequence[float]) -> Floats:
+    x, y = panels.centre.T
+    r = np.hypot(x[:, None] - x, y[:, None] - y)
+    reach = panels.radius[:, None] + panels.radius
+    first, second = np.nonzero(np.triu(r < _NEARBY * reach, 1))
+    total = np.zeros_like(r)
+    own = np.arange(len(panels))
+    for plate in plates_mm:
+        part = plate_images(r, plate)
+        value = np.zeros(len(first))
+        for a in range(4):
+            d = panels.points[first, a, None] - panels.points[second]
+            value += plate_images(np.hypot(d[..., 0], d[..., 1]), plate).sum(axis=1)
+        part[first, second] = part[second, first] = value / 16.0
+        part[own, own] = _own_images(panels, plate)
+        far = float(r.max()) if len(r) else 1.0
+        # a constant counts nothing for gaps without net flux; this one keeps the sum positive
+        part += (np.log(max(far / (2 * plate), 1.0)) + 4.0) / plate
+        total += part
+    return total
+
+
+def _own_images(panels: Panels, plate: float) -> Floats:
+    """Mean of the image series over all pairs of points of the equivalent rectangle."""
+    nodes, weights = leggauss(6)
+    u, w = (nodes + 1) / 2, weights / 2
+    a, b = panels.sides.T
+    total = np.zeros(len(a))
+    for ui, wi in zip(u, w, strict=True):
+        for vi, wv in zip(u, w, strict=True):
+            weight = 4 * wi * wv * (1 - ui) * (1 - vi)
+            total += weight * plate_images(np.hypot(a * ui, b * vi), plate)
+    return total

@@ -1,0 +1,201 @@
+"""Raw gaps and lines in, a clean scene out: the gaps that matter, and line ends over copper."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import shapely
+from numpy.typing import NDArray
+from shapely import LineString, Polygon
+from shapely.ops import substring
+
+from splitcheck.units import MU0, Floats
+
+#: Gaps are snapped to this grid, so that rims that should coincide do, mm.
+_SNAP_MM = 1e-6
+#: The outside of the plane is a gap out to this many times its larger side.
+_REACH = 2.5
+#: Gaps that would add less than this by themselves are left out unless a crossed gap is near, nH.
+_NEGLIGIBLE_NH = 5e-4
+#: At most this many gaps beside those crossed; the rest goes into the error.
+_MOST_GAPS = 80
+
+
+@dataclass(frozen=True, slots=True)
+class Scene:
+    """What is solved for."""
+
+    gaps: tuple[Polygon, ...]
+    """Clean gaps, no two of them touching; the ones that are crossed first."""
+    coarse: tuple[bool, ...]
+    """For each gap: too far from the traces to need many panels."""
+    endless: int | None
+    """Number of the gap that is the outside of the plane."""
+    lines: tuple[Floats | None, ...]
+    """Centre lines with their ends over copper, shape (p, 2); None: nowhere over copper."""
+    cut_short_mm: tuple[float, ...]
+    """How much of each line was taken off because it ended in a gap."""
+    left_out_nh: Floats
+    """What the gaps that were left out may add to each trace, shape (n,)."""
+
+
+def arrange(
+    gaps: Sequence[Polygon],
+    lines: Sequence[LineString],
+    height_mm: float,
+    outside: Polygon | None,
+    kept: Sequence[LineString] = (),
+) -> Scene:
+    """Clean and choose gaps, and pull the ends of lines back onto copper.
+
+    Parameters
+    ----------
+    gaps
+        Any polygons, mm.
+    lines
+        Centre lines of the traces.
+    height_mm
+        Height of the traces over the plane.
+    outside
+        Outline of the plane, or None.
+    kept
+        More lines of which a crossed gap is always kept: the bridges.
+
+    Returns
+    -------
+    The scene.
+    """
+    clean, endless = _merged(gaps, outside)
+    trimmed = [_on_copper(line, clean) for line in lines]
+    near = [line for line, _ in trimmed if line is not None] or list(lines)
+    chosen, coarse, left_out = _chosen(clean, near, [*near, *kept], height_mm, endless)
+    tolerance = height_mm / 50
+    finer = [_plainer(clean[k], tolerance) for k in chosen]
+    return Scene(
+        gaps=tuple(finer),
+        coarse=tuple(coarse),
+        endless=chosen.index(endless) if endless in chosen else None,
+        lines=tuple(None if line is None else shapely.get_coordinates(line) for line, _ in trimmed),
+        cut_short_mm=tuple(short for _, short in trimmed),
+        left_out_nh=np.full(len(lines), left_out),
+    )
+
+
+def _merged(
+    gaps: Sequence[Polygon], outside: Polygon | None
+) -> tuple[list[Polygon], int | None]:
+    """Valid polygons that do not touch, in a fixed order, and which of them is the outside."""
+    shapes = [shapely.make_valid(gap) for gap in gaps if not gap.is_empty]
+    if outside is not None:
+        west, south, east, north = outside.bounds
+        reach = _REACH * max(east - west, north - south)
+        frame = shapely.box(west - reach, south - reach, east + reach, north + reach)
+        shapes.append(frame.difference(shapely.make_valid(outside)))
+    whole = shapely.union_all(shapes, grid_size=_SNAP_MM) if shapes else Polygon()
+    parts = [part for part in shapely.get_parts(whole) if part.geom_type == "Polygon"]
+    parts = [shapely.orient_polygons(part) for part in parts if part.area > 1e-9]
+    parts.sort(key=lambda part: part.bounds)
+    endless = None
+    if outside is not None and parts:
+        endless = max(range(len(parts)), key=lambda k: shapely.box(*parts[k].bounds).area)
+    return parts, endless
+
+
+def _plainer(gap: Polygon, tolerance_mm: float) -> Polygon:
+    """Drop corners that the field does not see."""
+    if len(gap.exterior.coords) < 9 and not gap.interiors:
+        return gap
+    plain = gap.simplify(tolerance_mm)
+    fit = isinstance(plain, Polygon) and plain.is_valid and not plain.is_empty
+    return shapely.orient_polygons(plain) if fit and _same_holes(plain, gap) else gap
+
+
+def _same_holes(plain: Polygon, gap: Polygon) -> bool:
+    return len(plain.interiors) == len(gap.interiors)
+
+
+def _on_copper(line: LineString, gaps: Sequence[Polygon]) -> tuple[LineString | None, float]:
+    """Cut off what the line runs over a gap without reaching copper, at either end."""
+    whole = line.length
+    tree = shapely.STRtree(gaps) if gaps else None
+    for at_end in (False, True):
+        for _ in range(8):
+            end = line.interpolate(1.0 if at_end else 0.0, normalized=True)
+            hit = tree.query(end, predicate="intersects") if tree is not None else ()
+            if not len(hit):
+                break
+            gap = gaps[int(min(hit))]
+            places = [line.project(p) for p in _rim_points(line, gap)]
+            back = [line.length - place if at_end else place for place in places]
+            # a hair further than the rim itself, where inside and outside are for rounding to say
+            beyond = [b + 2e-4 for b in back if _clear(line, b + 2e-4, gap, at_end=at_end)]
+            if not beyond:
+                return None, whole
+            step = min(beyond)
+            line = substring(line, 0 if at_end else step, line.length - (step if at_end else 0))
+    short = whole - line.length
+    return line, (short if short > 1e-6 else 0.0)
+
+
+def _clear(line: LineString, along: float, gap: Polygon, *, at_end: bool) -> bool:
+    if along >= line.length:
+        return False
+    spot = line.interpolate(line.length - along if at_end else along)
+    return not gap.intersects(spot)
+
+
+def _rim_points(line: LineString, gap: Polygon) -> NDArray[np.object_]:
+    met = line.intersection(gap.boundary)
+    return shapely.points(shapely.get_coordinates(met))
+
+
+def _chosen(
+    gaps: Sequence[Polygon],
+    traces: Sequence[LineString],
+    lines: Sequence[LineString],
+    height_mm: float,
+    endless: int | None,
+) -> tuple[list[int], list[bool], float]:
+    """Gaps under a line, then those that matter to them; what the others may add, nH."""
+    if not gaps:
+        return [], [], 0.0
+    shapes = np.array(gaps, dtype=object)
+    swaths = shapely.union_all([line.buffer(3 * height_mm, quad_segs=2) for line in lines])
+    shapely.prepare(swaths)
+    main = [int(k) for k in np.flatnonzero(shapely.intersects(swaths, shapes))]
+    if endless is not None and endless not in main:
+        main.append(endless)
+    others = np.setdiff1d(np.arange(len(gaps)), main)
+    alone = _alone_nh(shapes[others], traces, height_mm)
+    around = shapely.union_all([gaps[k] for k in main if k != endless]) if main else Polygon()
+    if around.is_empty:
+        close = np.zeros(len(others), dtype=bool)
+    else:
+        size = np.sqrt(shapely.area(shapes[others]))
+        close = shapely.distance(shapes[others], around) < 2.5 * size
+    wanted = others[(alone > _NEGLIGIBLE_NH) | close]
+    weight = alone[(alone > _NEGLIGIBLE_NH) | close]
+    order = np.argsort(-weight, kind="stable")[:_MOST_GAPS]
+    more = sorted(int(k) for k in wanted[order])
+    left = float(alone.sum() - weight[order].sum())
+    return [*main, *more], [False] * len(main) + [True] * len(more), left
+
+
+def _alone_nh(gaps: NDArray[np.object_], traces: Sequence[LineString], height_mm: float) -> Floats:
+    """About what a gap beside a trace adds by itself.
+
+    A disc of diameter a in the field h/(pi y^2) of a trace with its image at the distance y:
+    f changes by h a/(pi y^2) over it, and the disc has a polarisability of a^3/3 (from memory:
+    Bethe's small hole), so that it adds about mu0 a^3/3 (h/(pi y^2))^2.
+    """
+    if not len(gaps):
+        return np.zeros(0)
+    bundle = shapely.multilinestrings(list(traces))
+    shapely.prepare(bundle)
+    low, high = shapely.bounds(gaps)[:, :2], shapely.bounds(gaps)[:, 2:]
+    size = np.hypot(*(high - low).T)
+    away = np.maximum(shapely.distance(gaps, bundle), height_mm) + 0.25 * size
+    value: Floats = MU0 * size**3 / 3 * (height_mm / (np.pi * away**2)) ** 2
+    return value
