@@ -9,7 +9,8 @@ import pytest
 
 from splitcheck.cli import run
 from splitcheck.errors import SplitcheckError
-from tests.cli.conftest import Options, Road
+from splitcheck.road import Options
+from tests.cli.conftest import Road
 
 Capture = pytest.CaptureFixture[str]
 
