@@ -1,0 +1,259 @@
+"""From the drawing of the board's edge to the polygon of the board, cut-outs left out."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from typing import NamedTuple
+
+import numpy as np
+import shapely
+from scipy.spatial import cKDTree
+from shapely import LineString, MultiPolygon, Polygon
+
+from splitcheck.copper.marks import Drawing, Fill, Point, Stroke
+
+Bounds = tuple[float, float, float, float]
+
+#: Ends of lines closer than this are joined; tried in this order, mm.
+SNAPS_MM = (0.001, 0.01, 0.03, 0.1)
+#: Most line pieces; an edge with more is no edge.
+PIECES_CAP = 200_000
+#: A loop that holds this share of the copper is the board.
+_HOLDS = 0.95
+_SOME = 0.5
+#: A loop with less than this share of it covered by copper is a cut-out.
+_BARE = 0.02
+_SMALLEST_MM2 = 0.05
+
+
+class Outline(NamedTuple):
+    """The board as drawn."""
+
+    shape: Polygon | MultiPolygon | None
+    """Area of the board, mm; several polygons for several boards, ``None`` if no loop closes."""
+    remarks: tuple[str, ...]
+
+
+def outline(drawing: Drawing, copper_bounds: Bounds, copper: Sequence[Polygon] = ()) -> Outline:
+    """Find the board in a drawing of its edge.
+
+    Parameters
+    ----------
+    drawing
+        The outline file; it may hold other lines, such as a sheet frame, rails or notes.
+    copper_bounds
+        Box round all copper: least x, least y, largest x, largest y, mm.
+    copper
+        The copper, if it is known; tells boards from cut-outs better than the box alone.
+
+    Returns
+    -------
+    The smallest closed loop that holds the copper, without the loops inside it that hold none;
+    all loops with copper if no single one holds it all.
+
+    Notes
+    -----
+    Lines are joined at their ends, first within 1 um, then more generously up to 0.1 mm, until
+    a loop that holds the copper closes.
+    """
+    lines, remarks = _lines(drawing)
+    if not lines:
+        return Outline(None, (*remarks, f"{drawing.name}: draws no line; it gives no outline"))
+    weights = _Copper.of(copper_bounds, copper)
+    found: Outline | None = None
+    for snap_mm in SNAPS_MM:
+        faces = _faces(lines, snap_mm)
+        shape, share = _board(faces, weights)
+        if shape is None:
+            continue
+        said = list(remarks)
+        if snap_mm > SNAPS_MM[0]:
+            said.append(
+                f"{drawing.name}: gaps of up to {snap_mm:g} mm between its lines are closed"
+            )
+        said += _said(drawing.name, shape, share, faces)
+        found = Outline(shape, tuple(said))
+        if share >= _HOLDS:
+            return found
+    if found is not None:
+        return found
+    wrong = f"{drawing.name}: its lines close no loop round the copper; it gives no outline"
+    return Outline(None, (*remarks, wrong))
+
+
+class _Copper(NamedTuple):
+    """Where the copper is: places with weights that sum to 1, and pieces to test loops with."""
+
+    places: shapely.MultiPoint
+    points: Sequence[shapely.Point]
+    weights: Sequence[float]
+    tree: shapely.STRtree | None
+    pieces: Sequence[Polygon]
+    bounds: Bounds
+
+    @classmethod
+    def of(cls, bounds: Bounds, copper: Sequence[Polygon]) -> _Copper:
+        pieces = [piece for piece in copper if piece.area > 0]
+        points = [piece.representative_point() for piece in pieces]
+        total_mm2 = sum(piece.area for piece in pieces)
+        weights = [piece.area / total_mm2 for piece in pieces]
+        tree = shapely.STRtree(pieces) if pieces else None
+        return cls(shapely.MultiPoint(points), points, weights, tree, pieces, bounds)
+
+    def share_in(self, loop: Polygon | MultiPolygon) -> float:
+        """Share of the copper inside a loop, 0 to 1; without copper, of its box."""
+        if not self.pieces:
+            box = shapely.box(*self.bounds)
+            return shapely.box(*loop.bounds).intersection(box).area / max(box.area, 1e-12)
+        shapely.prepare(loop)
+        inside = shapely.contains(loop, np.array(self.points, dtype=object))
+        return float(np.dot(inside.astype(np.float64), np.array(self.weights)))
+
+    def covers(self, loop: Polygon) -> float:
+        """Share of a loop that copper covers on its fullest layer at least, 0 to 1."""
+        if self.tree is None:
+            return 0.0
+        near = [self.pieces[i] for i in self.tree.query(loop, predicate="intersects")]
+        covered_mm2 = max((piece.intersection(loop).area for piece in near), default=0.0)
+        return covered_mm2 / loop.area
+
+
+def _lines(drawing: Drawing) -> tuple[list[list[Point]], list[str]]:
+    """Centre lines of all strokes and contours; flashes and clear marks are no edge."""
+    lines: list[list[Point]] = []
+    flashes = 0
+    for mark in drawing.marks:
+        if isinstance(mark, Stroke) and mark.dark:
+            lines.append(
+                [p for i, p in enumerate(mark.points) if i == 0 or p != mark.points[i - 1]]
+            )
+        elif isinstance(mark, Fill) and mark.dark:
+            lines.append(list(mark.ring))
+        elif mark.dark:
+            flashes += 1
+    kept = [line for line in lines if len(line) > 1]
+    remarks = [f"{drawing.name}: {flashes} flashes in it are no edge"] if flashes else []
+    if sum(len(line) for line in kept) > PIECES_CAP:
+        remarks.append(f"{drawing.name}: has over {PIECES_CAP} line pieces; it is no edge")
+        return [], remarks
+    return kept, remarks
+
+
+def _faces(lines: Sequence[Sequence[Point]], snap_mm: float) -> list[Polygon]:
+    """The closed areas between lines whose ends are joined within ``snap_mm``."""
+    ends = np.array([p for line in lines for p in (line[0], line[-1])])
+    joined = _join(ends, snap_mm)
+    moved = []
+    for i, line in enumerate(lines):
+        points = [joined[2 * i], *line[1:-1], joined[2 * i + 1]]
+        if len(points) > 2 or points[0] != points[1]:
+            moved.append(LineString(points))
+    # A line that ends just short of the middle of another is drawn on to it.
+    network = shapely.unary_union(moved)
+    if snap_mm > SNAPS_MM[0]:
+        network = shapely.unary_union(shapely.set_precision(network, snap_mm / 2))
+    faces = [face for face in shapely.polygonize([network]).geoms if isinstance(face, Polygon)]
+    return [face for face in faces if face.area > _SMALLEST_MM2]
+
+
+def _join(ends: np.ndarray[tuple[int, int], np.dtype[np.float64]], snap_mm: float) -> list[Point]:
+    """Ends moved onto the first end within reach, so that they meet."""
+    first = list(range(len(ends)))
+    for a, b in sorted(cKDTree(ends).query_pairs(snap_mm)):
+        low, high = sorted((_root(first, a), _root(first, b)))
+        first[high] = low
+    places = [ends[_root(first, i)] for i in range(len(ends))]
+    return [(float(x), float(y)) for x, y in places]
+
+
+def _root(first: list[int], i: int) -> int:
+    while first[i] != i:
+        first[i] = first[first[i]]
+        i = first[i]
+    return i
+
+
+def _board(
+    faces: Sequence[Polygon], copper: _Copper
+) -> tuple[Polygon | MultiPolygon | None, float]:
+    """The smallest loop that holds the copper, or all loops that hold some."""
+    loops = _loops(faces)
+    best: tuple[float, Polygon] | None = None
+    for loop in loops:
+        share = copper.share_in(loop)
+        if share >= _HOLDS:
+            return _without_cutouts(loop, faces, copper), share
+        if best is None or share > best[0]:
+            best = share, loop
+    several = _several(loops, copper)
+    if several is not None:
+        share = copper.share_in(several)
+        if share >= _HOLDS or (best and share > best[0] + 0.1):
+            parts = [_without_cutouts(part, faces, copper) for part in several.geoms]
+            return MultiPolygon(parts), share
+    if best is not None and best[0] >= _SOME:
+        return _without_cutouts(best[1], faces, copper), best[0]
+    return None, 0.0
+
+
+def _loops(faces: Sequence[Polygon]) -> list[Polygon]:
+    """Closed loops, smallest first: round each face, and round all faces that hang together."""
+    filled = [Polygon(face.exterior) for face in faces]
+    whole = shapely.unary_union(filled)
+    hulls = [Polygon(part.exterior) for part in _parts(whole)]
+    keyed = {(round(loop.area, 6), loop.bounds): loop for loop in [*filled, *hulls]}
+    return [loop for _, loop in sorted(keyed.items(), key=lambda item: item[0])]
+
+
+def _several(loops: Sequence[Polygon], copper: _Copper) -> MultiPolygon | None:
+    """The loops that each hold some copper and lie in no other such loop."""
+    holding = [loop for loop in loops if copper.pieces and copper.share_in(loop) >= 0.02]
+    if not copper.pieces:
+        holding = [loop for loop in loops if loop.intersects(shapely.box(*copper.bounds))]
+    outer = [
+        loop
+        for i, loop in enumerate(holding)
+        if not any(other.covers(loop) for j, other in enumerate(holding) if j > i)
+    ]
+    outer.sort(key=lambda loop: loop.bounds)
+    return MultiPolygon(outer) if len(outer) > 1 else None
+
+
+def _without_cutouts(loop: Polygon, faces: Sequence[Polygon], copper: _Copper) -> Polygon:
+    """The loop less what is cut out of it: loops free of its edge with no copper in them."""
+    inner = []
+    for face in faces:
+        hole = Polygon(face.exterior)
+        free = hole.area < 0.9 * loop.area and loop.contains(hole)
+        if free and not hole.touches(loop.exterior) and copper.covers(hole) < _BARE:
+            inner.append(hole)
+    cut = loop.difference(shapely.unary_union(inner)) if inner else loop
+    parts = _parts(cut)
+    return max(parts, key=lambda part: part.area) if parts else loop
+
+
+def _parts(shape: shapely.Geometry) -> list[Polygon]:
+    return [part for part in shapely.get_parts(shape).tolist() if isinstance(part, Polygon)]
+
+
+def _said(
+    name: str, shape: Polygon | MultiPolygon, share: float, faces: Iterable[Polygon]
+) -> list[str]:
+    said = []
+    boards = len(_parts(shape))
+    if boards > 1:
+        said.append(f"{name}: shows {boards} boards")
+    if share < _HOLDS:
+        said.append(f"{name}: {1 - share:.0%} of the copper lies outside the outline")
+    left_out = [face for face in faces if not shape.buffer(1e-3).covers(face)]
+    outside = [face for face in left_out if not Polygon(face.exterior).within(_filled(shape))]
+    if outside:
+        said.append(f"{name}: {len(outside)} closed loops beside the board are ignored")
+    cuts = sum(len(part.interiors) for part in _parts(shape))
+    if cuts:
+        said.append(f"{name}: {cuts} cut-outs inside the board")
+    return said
+
+
+def _filled(shape: Polygon | MultiPolygon) -> shapely.Geometry:
+    return shapely.unary_union([Polygon(p.exterior) for p in _parts(shape)]).buffer(1e-3)
