@@ -163,9 +163,9 @@ def wall_source(
 
     Returns
     -------
-    f in ampere per ampere, shape (k,), and the angle A from the first to the last point of the
-    trace in rad, as the sum of what each stretch is seen under, shape (k,). Both jump on the
-    centre line: A by 2 pi, f by the share 1 - h/H of this plane (1 without a second plane).
+    What each stretch adds to f in ampere per ampere, shape (k, s), and the angle A in rad that it
+    is seen under, positive from the left, shape (k, s). Both jump on the centre line: A by 2 pi, f
+    by the share 1 - h/H of this plane (1 without a second plane).
 
     Notes
     -----
@@ -199,4 +199,4 @@ def wall_source(
         for n in range(1, _TERMS + 1):
             total += wall(2 * n * above_mm + height_mm) - wall(2 * n * above_mm - height_mm)
         total -= height_mm / above_mm * wall((2 * _TERMS + 1) * above_mm)
-    return total.sum(axis=1) / (2.0 * np.pi), seen.sum(axis=1)
+    return total / (2.0 * np.pi), seen

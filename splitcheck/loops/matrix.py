@@ -29,16 +29,23 @@ def interaction(panels: Panels, plates_mm: Sequence[float]) -> Floats:
 def _free(panels: Panels) -> Floats:
     x, y = panels.centre.T
     dx, dy = x[:, None] - x, y[:, None] - y
-    square = dx * dx + dy * dy
+    xx, yy = dx * dx, dy * dy
+    square = xx + yy
     np.fill_diagonal(square, 1.0)
-    inverse = 1.0 / np.sqrt(square)
-    # second moments of both panels: <1/r> = 1/R + (T : grad grad 1/R)/2
-    xx, xy, yy = panels.spread.T
-    bend = (xx[:, None] + xx) * (2 * dx * dx - dy * dy)
-    bend += (yy[:, None] + yy) * (2 * dy * dy - dx * dx)
-    bend += (xy[:, None] + xy) * (6 * dx * dy)
+    # second moments T of both panels: <1/r> = 1/R + (T : grad grad 1/R)/2
+    a, c, b = panels.spread.T
+    bend = (a[:, None] + a) * (2 * xx - yy)
+    bend += (b[:, None] + b) * (2 * yy - xx)
+    dx *= dy
+    dx *= 6 * (c[:, None] + c)
+    bend += dx
+    matrix = 1.0 / np.sqrt(square)
+    bend *= 0.5
+    bend /= square
+    bend /= square
+    bend += 1.0
+    matrix *= bend
     reach = panels.radius[:, None] + panels.radius
-    matrix: Floats = inverse + 0.5 * bend * inverse**5
     first, second = np.nonzero(np.triu(square < (_NEARBY * reach) ** 2, 1))
     touching = square[first, second] < (_TOUCHING * reach[first, second]) ** 2
     i, j = first[~touching], second[~touching]

@@ -166,7 +166,7 @@ def _wanted(x: Floats, y: Floats, lines: Floats, rim: Floats, grading: Grading) 
     if len(rim):
         entry = np.hypot(x[:, None] - rim[:, 0], y[:, None] - rim[:, 1]).min(axis=1)
         along_mm = np.minimum(
-            along_mm, np.maximum(across_mm, (grading.slope * entry)[:, None])
+            along_mm, np.maximum(across_mm, (grading.slope * entry + 1.5 * grading.near_mm)[:, None])
         )
     # a cell axis at an angle to the trace takes the radius of the ellipse in that direction
     wanted[:, 0] = (1.0 / np.sqrt((ux / along_mm) ** 2 + (uy / across_mm) ** 2)).min(axis=1)
@@ -190,7 +190,8 @@ def _clipped(
     west, south, east, north = gap.bounds
     # a hair wider, by odd amounts, so that no cell border falls on a rim
     hair = 1e-7 * max(east - west, north - south)
-    boxes = np.array([[west - hair, south - 1.7 * hair, east + 2.3 * hair, north + 1.3 * hair]])
+    around = [west - hair, south - 1.7 * hair, east + 2.3 * hair, north + 1.3 * hair]
+    boxes = _roots(around, grading.near_mm)
     rim = _entries(gap, lines)
     holes = np.array([ring.bounds for ring in gap.interiors]).reshape(-1, 4)
     limit = np.array([max(east - west, north - south) / least] * 2)
@@ -210,6 +211,25 @@ def _clipped(
     else:
         done.append(boxes)
     return _cut_out(gap, np.concatenate(done))
+
+
+def _roots(around: Sequence[float], near_mm: float) -> Floats:
+    """First cells: halving them shall lead close to the size wanted, not up to twice below it."""
+    west, south, east, north = around
+    steps = [_division((east - west) / near_mm), _division((north - south) / near_mm)]
+    x = np.linspace(west, east, steps[0] + 1)
+    y = np.linspace(south, north, steps[1] + 1)
+    corners = [np.repeat(x[:-1], steps[1]), np.tile(y[:-1], steps[0])]
+    corners += [np.repeat(x[1:], steps[1]), np.tile(y[1:], steps[0])]
+    return np.stack(corners, axis=1)
+
+
+def _division(ratio: float) -> int:
+    """First division of a side that is `ratio` final cells long: 4 to 7, or 1 where it is short."""
+    if ratio < 12:
+        return 1
+    halvings = int(np.floor(np.log2(ratio / 4)))
+    return int(np.ceil(ratio / 1.1 / 2**halvings))
 
 
 def _swallows(boxes: Floats, holes: Floats) -> NDArray[np.bool_]:

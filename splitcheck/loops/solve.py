@@ -19,10 +19,15 @@ from splitcheck.loops.sources import islands, point_angles, strip_source
 from splitcheck.units import MU0, Floats
 
 #: Size of a panel at the trace, in heights of the trace over the plane.
-_NEAR = 0.5
-_SLOPE = 0.35
+_NEAR = 0.6
+_SLOPE = 0.4
 #: The check solve is coarser by this; its distance from the fine one is part of the error.
-_COARSER = 1.7
+_COARSER = 2.0
+#: Where the two differ by more than this and the method's own error, the panels are halved again,
+_SETTLED_NH = 4e-3
+#: at most this often, and not from so many panels.
+_MORE = 2
+_REFINE_BELOW = 300
 #: More unknowns than this are not solved for: the panels are made coarser instead.
 MAX_PANELS = 2000
 #: What the method itself is off by where mesh and truncation are not: against the independent
@@ -154,8 +159,20 @@ def added(
         [bridge.line for bridge in bridges if isinstance(bridge, Strap)],
     )
     job = _job(scene, traces, bridges, height_mm, beyond_mm, above_mm)
+    coarse = _solved(job, _panels(job, fineness / _COARSER))
     fine = _solved(job, _panels(job, fineness))
-    return _judged(job, fine, _solved(job, _panels(job, fineness / _COARSER)))
+    for _ in range(_MORE):
+        if _settled(fine, coarse) or len(fine.mesh) > _REFINE_BELOW:
+            break
+        fineness *= _COARSER
+        coarse, fine = fine, _solved(job, _panels(job, fineness))
+    return _judged(job, fine, coarse)
+
+
+def _settled(fine: _Raw, coarse: _Raw) -> bool:
+    """Whether halving the panels did not matter any more."""
+    own, before = np.diag(fine.added_nh), np.diag(coarse.added_nh)
+    return bool((np.abs(own - before) < _METHOD_ERROR * own + _SETTLED_NH).all())
 
 
 def _check(
@@ -297,7 +314,8 @@ def _panels(job: _Job, fineness: float) -> Panels:
     """Cut the gaps, coarser and coarser until there are not too many panels."""
     lines = tuple(LineString(strip.line) for strip in job.strips)
     near, slope = job.near_mm / fineness, _SLOPE / fineness
-    least = tuple(2 if coarse else 4 for coarse in job.scene.coarse)
+    main = 4 if fineness >= 1 else 2
+    least = tuple(2 if coarse else main for coarse in job.scene.coarse)
     for _ in range(12):
         mesh = cut(job.scene.gaps, Grading(lines, near, slope), least)
         if len(mesh) <= MAX_PANELS:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import cache
 
 import numpy as np
 import shapely
@@ -15,6 +16,8 @@ from splitcheck.loops.panels import Panels
 from splitcheck.units import Floats
 
 _RAYS = 24
+#: Panels further than this many widths (or half heights) from a trace see it as one line.
+_CLOSE = 4.0
 #: Rays and cuts are laid askew by this (rad, or part of their length), so that none runs along a
 #: rim: boards are drawn in multiples of 15 degrees.
 _ASKEW = 0.0123
@@ -57,31 +60,46 @@ def strip_source(
     does s A/2 pi, with A the angle that the filament is seen under: the difference is smooth. The
     angle between the ends, followed continuously through the gap, takes the place of A.
     """
-    x, y = panels.points[:, :, 0].ravel(), panels.points[:, :, 1].ravel()
     share = 1.0 if above_mm is None else 1.0 - height_mm / above_mm
+    straight = np.concatenate([line[:-1], line[1:]], axis=1)
 
-    def filament(offset_mm: float) -> Floats:
-        path = _beside(line, offset_mm)
-        segments = np.concatenate([path[:-1], path[1:]], axis=1)
-        value, seen = wall_source(x, y, segments, height_mm, above_mm)
-        smooth = value.reshape(-1, 4) + share / (2 * np.pi) * (between - seen.reshape(-1, 4))
-        mean: Floats = smooth.mean(axis=1)
-        return mean
+    def smooth(spots: Floats, segments: Floats, weights: Floats) -> Floats:
+        value, seen = wall_source(spots[:, 0], spots[:, 1], segments, height_mm, above_mm)
+        total: Floats = (value - share / (2 * np.pi) * seen) @ weights
+        return total
 
-    centre = filament(0.0)
-    places, weights = _filaments(width_mm, height_mm)
-    if not len(places):
-        return centre, centre
-    strip = np.zeros_like(centre)
-    for place, weight in zip(places, weights, strict=True):
-        strip += weight * filament(float(place))
+    mean = share / (2 * np.pi) * between.mean(axis=1)
+    centre = mean + smooth(panels.centre, straight, np.ones(len(straight)))
+    strip = centre.copy()
+    scale = max(width_mm, height_mm / 2)
+    near = _distance(panels.centre, straight) < _CLOSE * scale + 2 * panels.radius
+    if near.any():
+        spots = panels.points[near].reshape(-1, 2)
+        places, weights = _filaments(width_mm, height_mm)
+        paths = [_beside(line, float(place)) for place in places]
+        bundle = np.concatenate([np.concatenate([p[:-1], p[1:]], axis=1) for p in paths])
+        each = np.repeat(weights, [len(path) - 1 for path in paths])
+        strip[near] = mean[near] + smooth(spots, bundle, each).reshape(-1, 4).mean(axis=1)
+        thin = smooth(spots, straight, np.ones(len(straight)))
+        centre[near] = mean[near] + thin.reshape(-1, 4).mean(axis=1)
     return strip, centre
 
 
+def _distance(spots: Floats, segments: Floats) -> Floats:
+    """Distance of points from the nearest of some stretches."""
+    x1, y1, x2, y2 = segments.T
+    dx, dy = x2 - x1, y2 - y1
+    from_x, from_y = spots[:, None, 0] - x1, spots[:, None, 1] - y1
+    place = np.clip((from_x * dx + from_y * dy) / (dx * dx + dy * dy), 0.0, 1.0)
+    nearest: Floats = np.hypot(from_x - place * dx, from_y - place * dy).min(axis=1)
+    return nearest
+
+
+@cache
 def _filaments(width_mm: float, height_mm: float) -> tuple[Floats, Floats]:
     """Gauss points across the width: more for traces wide against their height."""
     if width_mm < 0.02 * height_mm:
-        return np.zeros(0), np.zeros(0)
+        return np.zeros(1), np.ones(1)
     nodes, weights = leggauss(int(min(3 + width_mm / height_mm, 9)))
     return nodes * width_mm / 2, weights / 2
 
