@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterable, Sequence
 from typing import NamedTuple
 
@@ -11,6 +12,7 @@ from scipy.spatial import cKDTree
 from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.copper.marks import Drawing, Fill, Point, Stroke
+from splitcheck.units import GRID_MM
 
 Bounds = tuple[float, float, float, float]
 
@@ -18,6 +20,8 @@ Bounds = tuple[float, float, float, float]
 SNAPS_MM = (0.001, 0.01, 0.03, 0.1)
 #: Most line pieces; an edge with more is no edge.
 PIECES_CAP = 200_000
+#: Only this many of the largest loops are looked at.
+_LOOPS_CAP = 1000
 #: A loop that holds this share of the copper is the board.
 _HOLDS = 0.95
 _SOME = 0.5
@@ -61,6 +65,7 @@ def outline(drawing: Drawing, copper_bounds: Bounds, copper: Sequence[Polygon] =
         return Outline(None, (*remarks, f"{drawing.name}: draws no line; it gives no outline"))
     weights = _Copper.of(copper_bounds, copper)
     found: Outline | None = None
+    most = 0.0
     for snap_mm in SNAPS_MM:
         faces = _faces(lines, snap_mm)
         shape, share = _board(faces, weights)
@@ -71,10 +76,12 @@ def outline(drawing: Drawing, copper_bounds: Bounds, copper: Sequence[Polygon] =
             said.append(
                 f"{drawing.name}: gaps of up to {snap_mm:g} mm between its lines are closed"
             )
-        said += _said(drawing.name, shape, share, faces)
-        found = Outline(shape, tuple(said))
+        what = "copper" if copper else "box round the copper"
+        said += _said(drawing.name, shape, share, what, faces)
         if share >= _HOLDS:
-            return found
+            return Outline(shape, tuple(said))
+        if share > most:
+            found, most = Outline(shape, tuple(said)), share
     if found is not None:
         return found
     wrong = f"{drawing.name}: its lines close no loop round the copper; it gives no outline"
@@ -148,12 +155,28 @@ def _faces(lines: Sequence[Sequence[Point]], snap_mm: float) -> list[Polygon]:
         points = [joined[2 * i], *line[1:-1], joined[2 * i + 1]]
         if len(points) > 2 or points[0] != points[1]:
             moved.append(LineString(points))
-    # A line that ends just short of the middle of another is drawn on to it.
-    network = shapely.unary_union(moved)
-    if snap_mm > SNAPS_MM[0]:
-        network = shapely.unary_union(shapely.set_precision(network, snap_mm / 2))
+    network = shapely.unary_union([*moved, *_bridges(moved, snap_mm)], grid_size=GRID_MM)
     faces = [face for face in shapely.polygonize([network]).geoms if isinstance(face, Polygon)]
     return [face for face in faces if face.area > _SMALLEST_MM2]
+
+
+def _bridges(lines: Sequence[LineString], snap_mm: float) -> list[LineString]:
+    """Short lines from ends that meet nothing to the middle of the line they just miss."""
+    ends = [(i, p) for i, line in enumerate(lines) for p in (line.coords[0], line.coords[-1])]
+    met = Counter(place for _, place in ends)
+    tree = shapely.STRtree(lines)
+    bridges = []
+    for i, place in ends:
+        if met[place] > 1:
+            continue
+        point = shapely.Point(place)
+        for j in sorted(tree.query(point, predicate="dwithin", distance=snap_mm)):
+            foot = lines[j].interpolate(lines[j].project(point))
+            if j != i and foot.distance(point) > 0:
+                # Drawn a little past the foot, so that the two surely cross.
+                past = [foot.coords[0][k] + 0.01 * (foot.coords[0][k] - place[k]) for k in (0, 1)]
+                bridges.append(LineString([place, (past[0], past[1])]))
+    return bridges
 
 
 def _join(ends: np.ndarray[tuple[int, int], np.dtype[np.float64]], snap_mm: float) -> list[Point]:
@@ -202,7 +225,7 @@ def _loops(faces: Sequence[Polygon]) -> list[Polygon]:
     whole = shapely.unary_union(filled)
     hulls = [Polygon(part.exterior) for part in _parts(whole)]
     keyed = {(round(loop.area, 6), loop.bounds): loop for loop in [*filled, *hulls]}
-    return [loop for _, loop in sorted(keyed.items(), key=lambda item: item[0])]
+    return [loop for _, loop in sorted(keyed.items(), key=lambda item: item[0])][-_LOOPS_CAP:]
 
 
 def _several(loops: Sequence[Polygon], copper: _Copper) -> MultiPolygon | None:
@@ -237,14 +260,14 @@ def _parts(shape: shapely.Geometry) -> list[Polygon]:
 
 
 def _said(
-    name: str, shape: Polygon | MultiPolygon, share: float, faces: Iterable[Polygon]
+    name: str, shape: Polygon | MultiPolygon, share: float, what: str, faces: Iterable[Polygon]
 ) -> list[str]:
     said = []
     boards = len(_parts(shape))
     if boards > 1:
         said.append(f"{name}: shows {boards} boards")
     if share < _HOLDS:
-        said.append(f"{name}: {1 - share:.0%} of the copper lies outside the outline")
+        said.append(f"{name}: {1 - share:.0%} of the {what} lies outside the outline")
     left_out = [face for face in faces if not shape.buffer(1e-3).covers(face)]
     outside = [face for face in left_out if not Polygon(face.exterior).within(_filled(shape))]
     if outside:

@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 import json
+import os
 import re
 import stat
 import struct
 import zipfile
+from contextlib import suppress
 from pathlib import Path
+from tempfile import TemporaryDirectory
 
 import pytest
 from hypothesis import given
@@ -19,14 +22,17 @@ from splitcheck.errors import SplitcheckError
 
 GERBER = "%FSLAX46Y46*%\n%MOMM*%\n%ADD10C,0.2*%\nD10*\nX0Y0D02*\nX1000000Y0D01*\nM02*\n"
 DRILL = "M48\nMETRIC\nT1C0.3\n%\nT1\nX1.0Y1.0\nM30\n"
-IPC = "P  UNITS CUST 0\n327GND              R1    -1          A01X+010000Y-005000X0236Y0236R000 S2\n999\n"
+IPC = (
+    "P  UNITS CUST 0\n"
+    "327GND              R1    -1          A01X+010000Y-005000X0236Y0236R000 S2\n999\n"
+)
 
 
-def gerber(extra: str = "") -> str:
+def _gerber(extra: str = "") -> str:
     return extra + GERBER
 
 
-def fill(folder: Path, files: dict[str, str | bytes]) -> Path:
+def _fill(folder: Path, files: dict[str, str | bytes]) -> Path:
     folder.mkdir(parents=True, exist_ok=True)
     for name, content in files.items():
         path = folder / name
@@ -35,34 +41,34 @@ def fill(folder: Path, files: dict[str, str | bytes]) -> Path:
     return folder
 
 
-def copper_names(export: Export) -> list[str]:
+def _copper_names(export: Export) -> list[str]:
     return [f.name for f in export.copper()]
 
 
-def kinds(export: Export) -> dict[str, str]:
+def _kinds(export: Export) -> dict[str, str]:
     return {f.name: f.kind for f in export.files}
 
 
-def function(*fields: str) -> str:
+def _function(*fields: str) -> str:
     return f"%TF.FileFunction,{','.join(fields)}*%\n"
 
 
 def test_attributes_decide_over_names(tmp_path: Path) -> None:
     """A file whose attributes say L2 is layer 2 even if its name says bottom."""
     files: dict[str, str | bytes] = {
-        "bottom.gbr": gerber(function("Copper", "L2", "Inr")),
-        "a.gbr": gerber(function("Copper", "L1", "Top")),
-        "b.gbr": gerber("G04 #@! TF.FileFunction,Copper,L3,Bot*\n"),
-        "c.gbr": gerber(function("Profile", "NP")),
-        "d.gbr": gerber(function("Soldermask", "Top")),
+        "bottom.gbr": _gerber(_function("Copper", "L2", "Inr")),
+        "a.gbr": _gerber(_function("Copper", "L1", "Top")),
+        "b.gbr": _gerber("G04 #@! TF.FileFunction,Copper,L3,Bot*\n"),
+        "c.gbr": _gerber(_function("Profile", "NP")),
+        "d.gbr": _gerber(_function("Soldermask", "Top")),
         "e.drl": DRILL,
     }
-    export = open_export(fill(tmp_path, files))
-    assert copper_names(export) == ["a.gbr", "bottom.gbr", "b.gbr"]
+    export = open_export(_fill(tmp_path, files))
+    assert _copper_names(export) == ["a.gbr", "bottom.gbr", "b.gbr"]
     assert [f.copper_number for f in export.copper()] == [1, 2, 3]
-    assert kinds(export)["c.gbr"] == "profile"
-    assert kinds(export)["d.gbr"] == "mask"
-    assert kinds(export)["e.drl"] == "drill"
+    assert _kinds(export)["c.gbr"] == "profile"
+    assert _kinds(export)["d.gbr"] == "mask"
+    assert _kinds(export)["e.drl"] == "drill"
     assert "Copper,L2,Inr" in export.copper()[1].reason
     assert not export.assumptions
 
@@ -87,8 +93,8 @@ def test_attributes_decide_over_names(tmp_path: Path) -> None:
 )
 def test_order_from_names_of_the_trade(names: list[str], tmp_path: Path) -> None:
     """Each file-name convention gives the order top to bottom."""
-    export = open_export(fill(tmp_path, dict.fromkeys(names, GERBER)))
-    assert copper_names(export) == names
+    export = open_export(_fill(tmp_path, dict.fromkeys(names, GERBER)))
+    assert _copper_names(export) == names
 
 
 def test_other_films_are_not_copper(tmp_path: Path) -> None:
@@ -99,22 +105,22 @@ def test_other_films_are_not_copper(tmp_path: Path) -> None:
         "b-F_Fab.gbr": "other", "b.GTS": "mask", "b.GTO": "legend", "b.GBP": "paste",
         "b-drill_map.gbr": "other", "b-F_CrtYd.gbr": "other",
     }  # fmt: skip
-    export = open_export(fill(tmp_path, dict.fromkeys(expected, GERBER)))
-    expected["b-drill_map.gbr"] = kinds(export)["b-drill_map.gbr"]
-    assert kinds(export) == expected
+    export = open_export(_fill(tmp_path, dict.fromkeys(expected, GERBER)))
+    expected["b-drill_map.gbr"] = _kinds(export)["b-drill_map.gbr"]
+    assert _kinds(export) == expected
     assert expected["b-drill_map.gbr"] in ("drill", "other")
 
 
 def test_layer_order_in_a_writers_comment(tmp_path: Path) -> None:
     """A physical layer number in a comment orders layers whose names do not."""
     files: dict[str, str | bytes] = {
-        "b.GTL": gerber("G04 Layer_Physical_Order=1*\n"),
-        "b.GP1": gerber("G04 Layer_Physical_Order=3*\n"),
-        "b.G1": gerber("G04 Layer_Physical_Order=2*\n"),
-        "b.GBL": gerber("G04 Layer_Physical_Order=4*\n"),
+        "b.GTL": _gerber("G04 Layer_Physical_Order=1*\n"),
+        "b.GP1": _gerber("G04 Layer_Physical_Order=3*\n"),
+        "b.G1": _gerber("G04 Layer_Physical_Order=2*\n"),
+        "b.GBL": _gerber("G04 Layer_Physical_Order=4*\n"),
     }
-    export = open_export(fill(tmp_path, files))
-    assert copper_names(export) == ["b.GTL", "b.G1", "b.GP1", "b.GBL"]
+    export = open_export(_fill(tmp_path, files))
+    assert _copper_names(export) == ["b.GTL", "b.G1", "b.GP1", "b.GBL"]
     assert not export.assumptions
 
 
@@ -122,7 +128,7 @@ def test_roles_without_order_are_arranged_by_custom_and_said(tmp_path: Path) -> 
     """Planes and signal layers without numbers are laid as stacks are, and it is an assumption."""
     names = ["TOP", "GND1", "SIG1-X", "SIG2-Y", "GND2", "PWR", "SIG3-X", "SIG4-Y", "GND3", "BOTTOM"]
     files: dict[str, str | bytes] = {f"b-{name}.gbr": GERBER for name in sorted(names)}
-    export = open_export(fill(tmp_path, files))
+    export = open_export(_fill(tmp_path, files))
     assert [f.layer_name for f in export.copper()] == names
     assert any("--stack FILE.toml" in text for text in export.assumptions)
 
@@ -163,32 +169,32 @@ def test_order_does_not_depend_on_the_order_of_files(order: list[int]) -> None:
 def test_missing_layer_number_is_an_error(tmp_path: Path) -> None:
     """Files that say L1 and L3 of a board lack L2, and that is said."""
     files: dict[str, str | bytes] = {
-        "a.gbr": gerber(function("Copper", "L1", "Top")),
-        "b.gbr": gerber(function("Copper", "L3", "Bot")),
+        "a.gbr": _gerber(_function("Copper", "L1", "Top")),
+        "b.gbr": _gerber(_function("Copper", "L3", "Bot")),
     }
     with pytest.raises(SplitcheckError, match="no file is L2; add the missing file"):
-        open_export(fill(tmp_path, files))
+        open_export(_fill(tmp_path, files))
     both = open_export(tmp_path, layers=[(1, "a.gbr"), (2, "b.gbr")])
-    assert copper_names(both) == ["a.gbr", "b.gbr"]
+    assert _copper_names(both) == ["a.gbr", "b.gbr"]
 
 
 def test_two_files_for_one_layer(tmp_path: Path) -> None:
     """Two different files for one layer are an error that names both; equal ones are not."""
-    fill(tmp_path, {"a.gtl": GERBER, "b-top.gbr": gerber("G04 other*\n"), "b.gbl": GERBER})
+    _fill(tmp_path, {"a.gtl": GERBER, "b-top.gbr": _gerber("G04 other*\n"), "b.gbl": GERBER})
     with pytest.raises(SplitcheckError, match=r"b-top\.gbr: claims the same .*\(top\) as a\.gtl"):
         open_export(tmp_path)
-    fill(tmp_path, {"b-top.gbr": GERBER})
+    _fill(tmp_path, {"b-top.gbr": GERBER})
     export = open_export(tmp_path)
-    assert copper_names(export) == ["a.gtl", "b.gbl"]
+    assert _copper_names(export) == ["a.gtl", "b.gbl"]
     assert any("same file as a.gtl" in remark for remark in export.remarks)
 
 
 def test_stack_option_overrides(tmp_path: Path) -> None:
     """The layers that the user lists decide; a listed file that is missing is an error."""
-    fill(tmp_path, {"x.gbr": GERBER, "y.gbr": gerber("G04 y*\n"), "a.gtl": GERBER})
+    _fill(tmp_path, {"x.gbr": GERBER, "y.gbr": _gerber("G04 y*\n"), "a.gtl": GERBER})
     export = open_export(tmp_path, layers=[(2, "x.gbr"), (1, "y.gbr")])
-    assert copper_names(export) == ["y.gbr", "x.gbr"]
-    assert kinds(export)["a.gtl"] == "other"
+    assert _copper_names(export) == ["y.gbr", "x.gbr"]
+    assert _kinds(export)["a.gtl"] == "other"
     for layers, text in [
         ([(1, "z.gbr")], "z.gbr: is listed as a copper layer but is not"),
         ([(1, "x.gbr"), (1, "y.gbr")], "second file listed for layer 1"),
@@ -198,7 +204,7 @@ def test_stack_option_overrides(tmp_path: Path) -> None:
             open_export(tmp_path, layers=layers)
 
 
-def job_text(files: list[tuple[str, str]], count: int, names: tuple[str, ...] = ()) -> str:
+def _job_text(files: list[tuple[str, str]], count: int, names: tuple[str, ...] = ()) -> str:
     stackup = [{"Type": "Copper", "Thickness": 0.035, "Name": name} for name in names]
     attributes = [{"Path": p, "FileFunction": f, "FilePolarity": "Positive"} for p, f in files]
     general = {"ProjectId": {"Name": "radio"}, "LayerNumber": count}
@@ -212,13 +218,13 @@ def test_job_file_names_and_orders_layers(tmp_path: Path) -> None:
     listed = [("p.gbr", "Copper,L1,Top"), ("q.gbr", "Copper,L5,Inr"), ("r.gbr", "Copper,L3,Bot"),
               ("s.gbr", "SolderMask,Top"), ("t.gbr", "Profile")]  # fmt: skip
     names = ("Top", "Ground", "Bottom")
-    files: dict[str, str | bytes] = {name: gerber(f"G04 {name}*\n") for name, _ in listed[:3]}
-    files |= {"t.gbr": GERBER, "radio.gbrjob": job_text(listed, 3, names)}
-    export = open_export(fill(tmp_path, files))
-    assert copper_names(export) == ["p.gbr", "q.gbr", "r.gbr"]
+    files: dict[str, str | bytes] = {name: _gerber(f"G04 {name}*\n") for name, _ in listed[:3]}
+    files |= {"t.gbr": GERBER, "radio.gbrjob": _job_text(listed, 3, names)}
+    export = open_export(_fill(tmp_path, files))
+    assert _copper_names(export) == ["p.gbr", "q.gbr", "r.gbr"]
     assert tuple(f.layer_name for f in export.copper()) == names
     assert export.name == "radio"
-    assert kinds(export)["t.gbr"] == "profile"
+    assert _kinds(export)["t.gbr"] == "profile"
     assert any("s.gbr" in remark for remark in export.remarks)
     assert open_export(tmp_path / "radio.gbrjob") == export
 
@@ -226,7 +232,7 @@ def test_job_file_names_and_orders_layers(tmp_path: Path) -> None:
 def test_job_file_that_lists_missing_copper(tmp_path: Path) -> None:
     """Copper that the job file lists and the folder lacks is an error."""
     listed = [("a.gtl", "Copper,L1,Top"), ("a.gbl", "Copper,L2,Bot")]
-    fill(tmp_path, {"a.gtl": GERBER, "a.gbrjob": job_text(listed, 2)})
+    _fill(tmp_path, {"a.gtl": GERBER, "a.gbrjob": _job_text(listed, 2)})
     with pytest.raises(SplitcheckError, match=r'a\.gbrjob: lists copper "a\.gbl"'):
         open_export(tmp_path)
 
@@ -234,14 +240,14 @@ def test_job_file_that_lists_missing_copper(tmp_path: Path) -> None:
 def test_drill_prose_netlist_and_tools_are_told_apart(tmp_path: Path) -> None:
     """A .txt is a drill file, a netlist or prose by what stands in it."""
     files: dict[str, str | bytes] = {
-        "b.gtl": GERBER, "b.gbl": gerber("G04 b*\n"),
+        "b.gtl": GERBER, "b.gbl": _gerber("G04 b*\n"),
         "b.TXT": DRILL, "b-npth.txt": DRILL, "readme.txt": "Drill: 0.2 mm\nT1 is small.\nM48 no\n",
         "b.ipc": IPC, "b.Tool": "T1 0.300000mm  362x [-52.07 | 18.41]\n",
         "pos.csv": "Designator,Layer,X,Y,Rotation\nR1,top,1,2,90\n", "b.pos": "R1 1.0 2.0 90 top\n",
         "picture.png": b"\x89PNG\r\n\x1a\n\0\0\0\rIHDR",
     }  # fmt: skip
-    export = open_export(fill(tmp_path, files))
-    found = kinds(export)
+    export = open_export(_fill(tmp_path, files))
+    found = _kinds(export)
     assert found == {
         "b.gtl": "copper", "b.gbl": "copper", "b.TXT": "drill", "b-npth.txt": "drill",
         "readme.txt": "readme", "b.ipc": "netlist", "b.Tool": "tools", "pos.csv": "placement",
@@ -257,8 +263,8 @@ def test_drill_plating_and_span_from_attributes(tmp_path: Path) -> None:
     """A drill file's attributes give its plating and the layers it goes through."""
     head = "M48\n; #@! TF.FileFunction,Plated,4,2,Buried\n"
     files: dict[str, str | bytes] = {"b.gtl": GERBER, "b.drl": head + DRILL[4:], "c-1-2.drl": DRILL}
-    files["b.gbl"] = gerber("G04 b*\n")
-    export = open_export(fill(tmp_path, files))
+    files["b.gbl"] = _gerber("G04 b*\n")
+    export = open_export(_fill(tmp_path, files))
     assert {f.name: (f.plated, f.span) for f in export.of_kind("drill")} == {
         "b.drl": (True, (2, 4)),
         "c-1-2.drl": (None, (1, 2)),
@@ -268,7 +274,7 @@ def test_drill_plating_and_span_from_attributes(tmp_path: Path) -> None:
 def test_likeliest_outline_is_kept(tmp_path: Path) -> None:
     """Of two files that might be the outline the one that says so is taken."""
     files: dict[str, str | bytes] = dict.fromkeys(("b.gtl", "b.gko", "b-outline.gbr"), GERBER)
-    export = open_export(fill(tmp_path, files))
+    export = open_export(_fill(tmp_path, files))
     assert [f.name for f in export.of_kind("profile")] == ["b-outline.gbr"]
     assert any("b.gko" in remark for remark in export.remarks)
 
@@ -285,7 +291,7 @@ def test_likeliest_outline_is_kept(tmp_path: Path) -> None:
 )
 def test_stated_polarity(text: str, negative: bool | None, tmp_path: Path) -> None:
     """What a file states of its polarity is kept; nothing stated is None."""
-    assert open_export(fill(tmp_path, {"a.gtl": text})).copper()[0].negative is negative
+    assert open_export(_fill(tmp_path, {"a.gtl": text})).copper()[0].negative is negative
 
 
 def test_files_one_folder_down(tmp_path: Path) -> None:
@@ -295,16 +301,16 @@ def test_files_one_folder_down(tmp_path: Path) -> None:
         "Drill/a.drl": DRILL,
         "notes.txt": "hi",
     }
-    export = open_export(fill(tmp_path, files))
-    assert copper_names(export) == ["Gerber/a.gtl"]
+    export = open_export(_fill(tmp_path, files))
+    assert _copper_names(export) == ["Gerber/a.gtl"]
     assert [f.name for f in export.of_kind("drill")] == ["Drill/a.drl"]
-    fill(tmp_path, {"b.gtl": GERBER})
+    _fill(tmp_path, {"b.gtl": GERBER})
     export = open_export(tmp_path)
-    assert copper_names(export) == ["b.gtl"]
+    assert _copper_names(export) == ["b.gtl"]
     assert any("Gerber" in remark for remark in export.remarks)
 
 
-def zipped(path: Path, files: dict[str, str | bytes]) -> Path:
+def _zipped(path: Path, files: dict[str, str | bytes]) -> Path:
     with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as out:
         for name, content in files.items():
             out.writestr(name, content)
@@ -313,12 +319,12 @@ def zipped(path: Path, files: dict[str, str | bytes]) -> Path:
 
 def test_zip_reads_like_its_folder(tmp_path: Path) -> None:
     """A .zip gives the same files as the folder that was packed."""
-    files: dict[str, str | bytes] = {"a.gtl": GERBER, "a.gbl": gerber("G04 b*\n"), "a.drl": DRILL}
-    plain = open_export(fill(tmp_path / "board", files))
-    packed = open_export(zipped(tmp_path / "board.zip", files))
+    files: dict[str, str | bytes] = {"a.gtl": GERBER, "a.gbl": _gerber("G04 b*\n"), "a.drl": DRILL}
+    plain = open_export(_fill(tmp_path / "board", files))
+    packed = open_export(_zipped(tmp_path / "board.zip", files))
     assert packed == plain
     nested = {f"top/{name}": content for name, content in files.items()}
-    inside = open_export(zipped(tmp_path / "nested.zip", nested | {"__MACOSX/top/._a.gtl": b"\0"}))
+    inside = open_export(_zipped(tmp_path / "nested.zip", nested | {"__MACOSX/top/._a.gtl": b"\0"}))
     assert [f.sha256 for f in inside.files] == [f.sha256 for f in plain.files]
 
 
@@ -328,18 +334,18 @@ def test_zip_reads_like_its_folder(tmp_path: Path) -> None:
 def test_zip_that_reaches_outside(name: str, tmp_path: Path) -> None:
     """An entry that would leave the archive is refused by name."""
     with pytest.raises(SplitcheckError, match="points outside the archive"):
-        open_export(zipped(tmp_path / "a.zip", {name: GERBER}))
+        open_export(_zipped(tmp_path / "a.zip", {name: GERBER}))
 
 
 def test_zip_bomb(tmp_path: Path) -> None:
     """An entry that grows beyond reason is refused while it is unpacked."""
     with pytest.raises(SplitcheckError, match="grows more than 200 times"):
-        open_export(zipped(tmp_path / "a.zip", {"a.gtl": b"0" * 20_000_000}))
+        open_export(_zipped(tmp_path / "a.zip", {"a.gtl": b"0" * 20_000_000}))
 
 
 def test_zip_whose_header_lies(tmp_path: Path) -> None:
     """A stated size of 10 bytes does not let 20 MB through."""
-    path = zipped(tmp_path / "a.zip", {"a.gtl": b"0" * 20_000_000})
+    path = _zipped(tmp_path / "a.zip", {"a.gtl": b"0" * 20_000_000})
     data = bytearray(path.read_bytes())
     central = data.rfind(b"PK\x01\x02")
     data[central + 24 : central + 28] = struct.pack("<I", 10)
@@ -350,7 +356,7 @@ def test_zip_whose_header_lies(tmp_path: Path) -> None:
 
 def test_broken_encrypted_and_foreign_archives(tmp_path: Path) -> None:
     """A broken or encrypted archive, or another file given as one, is said to be so."""
-    good = zipped(tmp_path / "a.zip", {"a.gtl": GERBER}).read_bytes()
+    good = _zipped(tmp_path / "a.zip", {"a.gtl": GERBER}).read_bytes()
     (tmp_path / "cut.zip").write_bytes(good[: len(good) // 2])
     locked = bytearray(good)
     for sign, offset in ((b"PK\x03\x04", 6), (b"PK\x01\x02", 8)):
@@ -365,14 +371,14 @@ def test_broken_encrypted_and_foreign_archives(tmp_path: Path) -> None:
 
 def test_archive_inside_is_not_opened(tmp_path: Path) -> None:
     """A .zip inside the folder stays closed."""
-    inner = zipped(tmp_path / "in.zip", {"a.gtl": GERBER}).read_bytes()
+    inner = _zipped(tmp_path / "in.zip", {"a.gtl": GERBER}).read_bytes()
     with pytest.raises(SplitcheckError, match="no copper layer"):
-        open_export(fill(tmp_path / "board", {"in.zip": inner}))
+        open_export(_fill(tmp_path / "board", {"in.zip": inner}))
 
 
 def test_caps(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """File size, total size and file count are capped."""
-    fill(tmp_path, {"a.gtl": GERBER * 4, "b.gbl": GERBER * 3})
+    _fill(tmp_path, {"a.gtl": GERBER * 4, "b.gbl": GERBER * 3})
     with monkeypatch.context() as m:
         m.setattr(archive, "FILE_CAP_BYTES", 3 * len(GERBER))
         with pytest.raises(SplitcheckError, match=r"a\.gtl: has .* over the cap"):
@@ -399,7 +405,7 @@ def test_caps(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
 )
 def test_junk_with_a_layers_name(content: bytes, text: str, tmp_path: Path) -> None:
     """Junk whose name promises a layer is named, with what to do."""
-    fill(tmp_path, {"a.gtl": GERBER, "b.gbr": content})
+    _fill(tmp_path, {"a.gtl": GERBER, "b.gbr": content})
     with pytest.raises(SplitcheckError, match=rf"b\.gbr: .*{text}.*; export it again"):
         open_export(tmp_path)
 
@@ -407,10 +413,10 @@ def test_junk_with_a_layers_name(content: bytes, text: str, tmp_path: Path) -> N
 def test_folder_and_dead_link_with_a_layers_name(tmp_path: Path) -> None:
     """A folder or a dead link that is named as a layer is an error, not a silent skip."""
     (tmp_path / "a" / "x.gbr").mkdir(parents=True)
-    fill(tmp_path / "a", {"a.gtl": GERBER})
+    _fill(tmp_path / "a", {"a.gtl": GERBER})
     with pytest.raises(SplitcheckError, match=r"x\.gbr: is a folder"):
         open_export(tmp_path / "a")
-    fill(tmp_path / "b", {"a.gtl": GERBER})
+    _fill(tmp_path / "b", {"a.gtl": GERBER})
     (tmp_path / "b" / "y.gbl").symlink_to(tmp_path / "nowhere")
     with pytest.raises(SplitcheckError, match=r"y\.gbl: is a link to nowhere"):
         open_export(tmp_path / "b")
@@ -424,23 +430,21 @@ def test_nothing_to_read(tmp_path: Path) -> None:
         open_export(tmp_path / "none.gbrjob")
     with pytest.raises(SplitcheckError, match="holds no files"):
         open_export(tmp_path)
-    fill(tmp_path, {"a.gts": GERBER, "notes.txt": "hello"})
+    _fill(tmp_path, {"a.gts": GERBER, "notes.txt": "hello"})
     with pytest.raises(SplitcheckError, match=r"no copper layer; found a\.gts \(mask\)"):
         open_export(tmp_path)
 
 
 def test_unknown_gerber_is_left_out_with_a_remark(tmp_path: Path) -> None:
     """A Gerber file that nothing places is left out, and that is said."""
-    export = open_export(fill(tmp_path, {"a.gtl": GERBER, "widget.gbr": GERBER}))
-    assert kinds(export)["widget.gbr"] == "other"
+    export = open_export(_fill(tmp_path, {"a.gtl": GERBER, "widget.gbr": GERBER}))
+    assert _kinds(export)["widget.gbr"] == "other"
     assert any(remark.startswith("widget.gbr is left out") for remark in export.remarks)
 
 
 def test_only_regular_files_are_read(tmp_path: Path) -> None:
     """A pipe in the folder is not waited for."""
-    import os
-
-    fill(tmp_path, {"a.gtl": GERBER})
+    _fill(tmp_path, {"a.gtl": GERBER})
     os.mkfifo(tmp_path / "pipe")
     assert stat.S_ISFIFO((tmp_path / "pipe").stat().st_mode)
     export = open_export(tmp_path)
@@ -450,14 +454,10 @@ def test_only_regular_files_are_read(tmp_path: Path) -> None:
 @given(st.binary(max_size=300))
 def test_any_bytes_end_in_an_answer_or_an_error_of_ours(data: bytes) -> None:
     """Whatever stands in a file, reading ends without a crash."""
-    from tempfile import TemporaryDirectory
-
     with TemporaryDirectory() as folder:
-        fill(Path(folder), {"a.gtl": GERBER, "x.bin": data, "y.gbrjob": data})
-        try:
-            open_export(Path(folder))
-        except SplitcheckError as error:
-            assert "; " in str(error)
+        _fill(Path(folder), {"a.gtl": GERBER, "x.bin": data, "y.gbrjob": data})
+        with suppress(SplitcheckError):
+            assert open_export(Path(folder)).copper()
 
 
 def boards(corpus: Path) -> dict[str, dict[str, list[str]]]:
@@ -484,12 +484,12 @@ def test_real_boards_are_understood(corpus: Path) -> None:
                 open_export(corpus / name)
             continue
         export = open_export(corpus / name)
-        assert copper_names(export) == rows["copper"], name
+        assert _copper_names(export) == rows["copper"], name
         assert sorted(f.name for f in export.of_kind("drill")) == sorted(rows["drill"]), name
         assert [f.name for f in export.of_kind("profile")] == rows["outline"], name
 
 
 def test_intake_has_a_reason_for_every_file(tmp_path: Path) -> None:
     """Every file carries a reason in words."""
-    files: dict[str, str | bytes] = {"a.gtl": GERBER, "a.gbl": gerber("G04 b*\n"), "n.md": "# n"}
-    assert all(f.reason for f in intake.open_export(fill(tmp_path, files)).files)
+    files: dict[str, str | bytes] = {"a.gtl": GERBER, "a.gbl": _gerber("G04 b*\n"), "n.md": "# n"}
+    assert all(f.reason for f in intake.open_export(_fill(tmp_path, files)).files)
