@@ -64,7 +64,7 @@ PLAIN = Setting()
 
 
 def brush(
-    definition: Definition, bodies: dict[str, str], unit_mm: float, function: str | None, place: str
+    definition: Definition, body: str | None, unit_mm: float, function: str | None, place: str
 ) -> Brush:
     """Build an aperture.
 
@@ -72,8 +72,8 @@ def brush(
     ----------
     definition
         Template name and parameters.
-    bodies
-        Macro bodies by name.
+    body
+        Body of its macro; ``None`` for a standard template.
     unit_mm
         One file unit in mm.
     function
@@ -84,34 +84,31 @@ def brush(
     Raises
     ------
     SplitcheckError
-        Wrong parameters, an unknown template, or a size that no board has.
+        Wrong parameters, or a size that no board has.
 
     Examples
     --------
-    >>> brush(Definition(10, "R", (1.0, 2.0)), {}, 1.0, None, "a.gbr:1").width_mm
+    >>> brush(Definition(10, "R", (1.0, 2.0)), None, 1.0, None, "a.gbr:1").width_mm
     1.0
     """
     _, template, parameters = definition
     name = f"aperture D{definition.code}"
-    for value in parameters:
-        if not isfinite(value) or abs(value) * unit_mm > MOST_MM and template in _STANDARD:
-            wrong = f"{name} has the size {value * unit_mm:g} mm, limit {MOST_MM:g} mm"
-            raise SplitcheckError(place, wrong, "check the units of the export")
-    if template in _STANDARD:
+    largest = max((abs(value) for value in parameters), default=0.0)
+    if not isfinite(largest) or (body is None and largest * unit_mm > MOST_MM):
+        wrong = f"{name} has the size {largest * unit_mm:g} mm, limit {MOST_MM:g} mm"
+        raise SplitcheckError(place, wrong, "check the units of the export")
+    if body is None:
         return _standard(name, template, parameters, unit_mm, function, place)
-    if template not in bodies:
-        wrong = f"{name} uses the macro {template[:40]!r}, which is not defined before it"
-        raise SplitcheckError(place, wrong, "export the file again with its aperture macros")
-    shapes = macros.instantiate(bodies[template], parameters, unit_mm, place)
-    for shape in shapes:
-        if not np.all(np.abs(shape.bounds) <= MOST_MM):
-            wrong = f"{name} reaches {max(map(abs, shape.bounds)):g} mm, limit {MOST_MM:g} mm"
-            raise SplitcheckError(place, wrong, "check the units of the export")
+    shapes = macros.instantiate(body, parameters, unit_mm, place)
+    reach = float(np.max(np.abs([shape.bounds for shape in shapes]), initial=0.0))
+    if reach > MOST_MM:
+        wrong = f"{name} reaches {reach:g} mm, limit {MOST_MM:g} mm"
+        raise SplitcheckError(place, wrong, "check the units of the export")
     return Brush(shapes, None, _smaller_side(shapes), function)
 
 
-_STANDARD = {"C": (1, 2), "R": (1, 3), "O": (1, 3), "P": (2, 4)}
-"""Parameters of the standard templates: fewest and most, one hole diameter included."""
+STANDARD = {"C": (1, 2), "R": (1, 3), "O": (1, 3), "P": (2, 4)}
+"""Standard templates: fewest and most parameters, one hole diameter included."""
 
 
 def _standard(
@@ -122,7 +119,7 @@ def _standard(
     function: str | None,
     place: str,
 ) -> Brush:
-    fewest, most = _STANDARD[template]
+    fewest, most = STANDARD[template]
     # One more: old files give rectangular holes (historic, clause 8.2 of the format).
     if not fewest <= len(parameters) <= most + 1:
         wrong = f"{name} ({template}) has {len(parameters)} parameters, {fewest} to {most} belong"
@@ -169,7 +166,7 @@ def _obround(half_width: float, half_height: float) -> Polygon:
     if half_width == half_height:
         return _snapped(curves.circle(2 * half_width))
     if half_width > half_height:
-        end = curves.cap(2 * half_height) + [half_width - half_height, 0.0]
+        end = curves.cap(2 * half_height) + np.array([half_width - half_height, 0.0])
         return _snapped(np.vstack((end, -end)))
     end = curves.cap(2 * half_width)
     # The same end, turned a quarter: from (+w, .) over the top to (-w, .).
@@ -193,8 +190,8 @@ def transformed(tool: Brush, setting: Setting) -> Brush:
     a, b, c, d = setting.matrix()
     if tool.diameter_mm is not None:
         size = tool.diameter_mm * setting.scale
-        shapes = (_snapped(curves.circle(size)),) if tool.shapes and size > 0 else ()
-        return tool._replace(shapes=shapes, diameter_mm=size, width_mm=round(size, 6))
+        round_shapes = (_snapped(curves.circle(size)),) if tool.shapes else ()
+        return tool._replace(shapes=round_shapes, diameter_mm=size, width_mm=round(size, 6))
     shapes = tuple(linear(shape, (a, b, c, d)) for shape in tool.shapes)
     return tool._replace(shapes=shapes, width_mm=round(tool.width_mm * setting.scale, 6))
 

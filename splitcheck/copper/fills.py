@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import shapely
-from shapely import LinearRing, LineString, MultiPolygon, Polygon
+from shapely import LineString, Polygon
 from shapely.geometry.base import BaseGeometry
 
 from splitcheck.units import Floats
@@ -31,8 +31,9 @@ def filled(ring: Floats) -> BaseGeometry:
 
     Examples
     --------
-    >>> slit = [(0, 0), (9, 0), (9, 9), (0, 9), (0, 5), (3, 5), (3, 6), (6, 6), (6, 3), (3, 3), (3, 5), (0, 5)]
-    >>> filled(np.array(slit, float)).area
+    >>> round_it = [(0, 0), (9, 0), (9, 9), (0, 9), (0, 5)]
+    >>> hole = [(3, 5), (3, 6), (6, 6), (6, 3), (3, 3), (3, 5), (0, 5)]
+    >>> filled(np.array(round_it + hole, float)).area
     72.0
     """
     if len(ring) < 3:

@@ -46,7 +46,8 @@ class Attributes:
         name = name.strip()
         values = tuple(unescaped(field) for field in fields)
         if kind == "TD":
-            return self._delete(name)
+            self._delete(name)
+            return None
         if not name:
             return "an attribute without a name"
         if kind == "TF":

@@ -6,7 +6,7 @@ from typing import NamedTuple, NoReturn
 
 from shapely import Polygon
 
-from splitcheck.copper.apertures import Brush, Setting, linear
+from splitcheck.copper.apertures import MOST_MM, Setting, linear
 from splitcheck.copper.gerber_language import Repeat
 from splitcheck.copper.marks import Fill, Flash, Mark, Point, Stroke, Tag
 from splitcheck.errors import SplitcheckError
@@ -48,6 +48,12 @@ class Canvas:
         copies = repeat.columns * repeat.rows
         if copies > MOST_COPIES:
             self._too_many(line, f"{repeat.columns} x {repeat.rows} = {copies}")
+        reach = max(
+            (repeat.columns - 1) * abs(repeat.step_x), (repeat.rows - 1) * abs(repeat.step_y)
+        )
+        if not reach < MOST_MM:
+            wrong = f"step-repeat reaches {reach:g} mm, beyond the limit of {MOST_MM:g} mm"
+            raise SplitcheckError(f"{self.name}:{line}", wrong, "check its steps and units")
         self._nest(None, line, repeat)
 
     def _nest(self, code: int | None, line: int, repeat: Repeat | None) -> None:
@@ -104,7 +110,14 @@ class Canvas:
                 self.marks.extend(self.copied(mark, Copying(), shift) for mark in gathered)
 
     def set_down(
-        self, block: tuple[Mark, ...], setting: Setting, at: Point, dark: bool, tag: Tag, line: int
+        self,
+        block: tuple[Mark, ...],
+        setting: Setting,
+        at: Point,
+        tag: Tag,
+        line: int,
+        *,
+        dark: bool,
     ) -> None:
         """Flash a block aperture: a clear flash turns its polarities round."""
         self._spend(line, len(block), f"{self._copies + len(block)} marks from blocks")
@@ -166,9 +179,6 @@ def _inherited(inner: Tag, outer: Tag) -> Tag:
     """Attributes of the mark inside the block; what it does not say, the flash says."""
     if inner == outer:
         return inner
-    return Tag(*(mine if mine is not None else theirs for mine, theirs in zip(inner, outer)))
-
-
-def brush_marks(tool: Brush, at: Point, dark: bool, tag: Tag, line: int) -> list[Mark]:
-    """A flash of an aperture: one mark for each of its pieces."""
-    return [Flash(at, shape, dark, tag, line, tool.diameter_mm) for shape in tool.shapes]
+    return Tag(
+        *(mine if mine is not None else theirs for mine, theirs in zip(inner, outer, strict=True))
+    )

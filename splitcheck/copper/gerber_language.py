@@ -1,4 +1,4 @@
-"""The rare commands of a Gerber file, read by pygerber's grammar; its dialects, which it rejects."""
+"""The rare commands of a Gerber file, by pygerber's grammar and, where it says no, by ours."""
 
 from __future__ import annotations
 
@@ -9,8 +9,7 @@ from functools import cache, lru_cache
 from typing import Any, NamedTuple
 
 from splitcheck.copper.apertures import Definition
-
-INCH_MM = 25.4
+from splitcheck.units import INCH_MM
 
 
 class Format(NamedTuple):
@@ -34,11 +33,11 @@ class Repeat(NamedTuple):
 
 @cache
 def _tokenizer() -> Any:
-    """pygerber's tokenizer: its import takes a third of a second, so it waits until needed."""
+    """The tokenizer of pygerber: its import takes a third of a second, so it waits until needed."""
     precision = decimal.getcontext().prec
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")
-        from pygerber.gerberx3.tokenizer.tokenizer import Tokenizer
+        from pygerber.gerberx3.tokenizer.tokenizer import Tokenizer  # noqa: PLC0415 - see above
 
         tokenizer = Tokenizer()
     # Importing it sets the precision of all decimals of the process.
@@ -48,7 +47,7 @@ def _tokenizer() -> Any:
 
 @lru_cache(maxsize=4096)
 def token(command: str) -> Any:
-    """pygerber's token of one extended command, or ``None`` where its grammar says no.
+    """One extended command as pygerber's token, or ``None`` where its grammar says no.
 
     Examples
     --------
@@ -57,12 +56,12 @@ def token(command: str) -> Any:
     """
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")
-        from pyparsing import ParseException
+        import pyparsing  # noqa: PLC0415 - comes with pygerber, and as late
 
         try:
             for found in _tokenizer().tokenize_expressions(f"%{command}*%"):
                 return found
-        except (ParseException, RecursionError, ValueError, decimal.DecimalException):
+        except (pyparsing.ParseException, RecursionError, ValueError, decimal.DecimalException):
             return None
     return None
 
@@ -111,8 +110,10 @@ def read_definition(command: str) -> Definition | None:
 
     Examples
     --------
-    >>> read_definition("ADD10R,1X2"), read_definition("ADD11A-B,.5X")
-    (Definition(code=10, template='R', parameters=(1.0, 2.0)), Definition(code=11, template='A-B', parameters=(0.5,)))
+    >>> read_definition("ADD10R,1X2")
+    Definition(code=10, template='R', parameters=(1.0, 2.0))
+    >>> read_definition("ADD11A-B,.5X")
+    Definition(code=11, template='A-B', parameters=(0.5,))
     """
     found = token(command)
     if found is not None:
@@ -130,19 +131,20 @@ def read_definition(command: str) -> Definition | None:
 
 def _definition(found: Any) -> Definition | None:
     code = int(found.aperture_id[1:])
+    values: list[Any]
     match type(found).__name__:
         case "DefineCircle":
-            template, values = "C", (found.diameter, found.hole_diameter)
+            template, values = "C", [found.diameter, found.hole_diameter]
         case "DefineRectangle":
-            template, values = "R", (found.x_size, found.y_size, found.hole_diameter)
+            template, values = "R", [found.x_size, found.y_size, found.hole_diameter]
         case "DefineObround":
-            template, values = "O", (found.x_size, found.y_size, found.hole_diameter)
+            template, values = "O", [found.x_size, found.y_size, found.hole_diameter]
         case "DefinePolygon":
-            template = "P"
             turn = 0 if found.rotation is None else found.rotation
-            values = (found.outer_diameter, found.number_of_vertices, turn, found.hole_diameter)
+            values = [found.outer_diameter, found.number_of_vertices, turn, found.hole_diameter]
+            template = "P"
         case "DefineMacro":
-            template, values = found.aperture_type, tuple(found.am_param)
+            template, values = found.aperture_type, found.am_param
         case _:
             return None
     return Definition(code, template, tuple(float(v) for v in values if v is not None))
@@ -181,14 +183,16 @@ def read_word(command: str, words: tuple[str, ...]) -> str | None:
     """Read the one word of LP, LM or IP; ``None`` if it is none of those allowed."""
     found = token(command)
     if found is not None:
-        value = getattr(found, {"LP": "polarity", "LM": "mirroring"}.get(command[:2], "image_polarity"))
+        value = getattr(
+            found, {"LP": "polarity", "LM": "mirroring"}.get(command[:2], "image_polarity")
+        )
         word = str(value.value)
     else:
         word = command[2:].strip()
     return word if word in words else None
 
 
-_AXES = re.compile(r"([A-Z]{2})(?:A([+-]?\d*\.?\d*))?(?:B([+-]?\d*\.?\d*))?$")
+_AXES = re.compile(r"[A-Z]{2}(?:A([+-]?\d*\.?\d*))?(?:B([+-]?\d*\.?\d*))?$")
 
 
 def read_axes(command: str, default: float) -> tuple[float, float] | None:
@@ -197,6 +201,7 @@ def read_axes(command: str, default: float) -> tuple[float, float] | None:
     if match is None:
         return None
     try:
-        return tuple(float(v) if v else default for v in match.groups()[1:])  # type: ignore[return-value]
+        a, b = (float(v) if v else default for v in match.groups())
     except ValueError:
         return None
+    return a, b

@@ -11,11 +11,15 @@ from splitcheck.errors import SplitcheckError
 #: One word: blank before it, G code, X, Y, I, J, D code, and whatever else, up to its star.
 #: Every part is optional and the last takes anything, so a match never backtracks far.
 WORD = re.compile(
-    r"(\s*)(?:G0*(\d{1,3}))?(?:X([+-]?\d+))?(?:Y([+-]?\d+))?(?:I([+-]?\d+))?(?:J([+-]?\d+))?"
-    r"(?:D0*(\d{1,9}))?([^*]*)\*"
+    r"(\s*)(?:G0*(\d{1,3}))?(?:X([+-]?\d{1,18}))?(?:Y([+-]?\d{1,18}))?"
+    r"(?:I([+-]?\d{1,18}))?(?:J([+-]?\d{1,18}))?(?:D0*(\d{1,9}))?([^*]*)\*"
 )
 _COMMENT = re.compile(r"\s*G0*4(?!\d)")
 _LETTERS = 4096
+
+
+_PART = re.compile(r"([A-Z])([+-]?\d*\.?\d*)")
+_MOST_DIGITS = 18
 
 
 class Block(NamedTuple):
@@ -25,7 +29,9 @@ class Block(NamedTuple):
     text: str
     line: int
     whole: bool = True
-    """False if the text ends in the middle of it."""
+    """False if its last star or percent sign is missing."""
+    last: bool = False
+    """The text ends here."""
 
 
 def check_is_text(text: str, name: str) -> None:
@@ -53,42 +59,68 @@ def check_is_text(text: str, name: str) -> None:
 
 def blocks(text: str) -> Iterator[Block]:
     """Cut a text at its percent signs; those inside ``G04`` comments do not count."""
-    at = 0
+    at = 1 if text.startswith("\ufeff") else 3 if text.startswith("\xef\xbb\xbf") else 0
     line = 1
     while at < len(text):
         percent = text.find("%", at)
-        if percent < 0:
-            yield from _words(text[at:], line)
-            return
-        words = text[at:percent]
-        if words and _COMMENT.match(words, words.rfind("*") + 1):
+        end = len(text) if percent < 0 else percent
+        words = text[at:end]
+        if percent >= 0 and _COMMENT.match(words, words.rfind("*") + 1):
             star = text.find("*", percent)
-            percent = len(text) if star < 0 else star + 1
-            words = text[at:percent]
-            yield from _words(words, line)
-            line += words.count("\n")
-            at = percent
-            continue
+            percent, end = -1, len(text) if star < 0 else star + 1
+            words = text[at:end]
         if words:
-            yield from _words(words, line)
+            yield from _words(words, line, last=end == len(text))
             line += words.count("\n")
-        end = text.find("%", percent + 1)
-        inside = text[percent + 1 :] if end < 0 else text[percent + 1 : end]
-        yield Block(True, inside, line, end >= 0)
+        at = end
+        if percent < 0:
+            continue
+        close = text.find("%", percent + 1)
+        inside = text[percent + 1 :] if close < 0 else text[percent + 1 : close]
+        yield Block(True, inside, line, whole=close >= 0, last=close < 0)
         line += inside.count("\n")
-        at = len(text) if end < 0 else end + 1
+        at = len(text) if close < 0 else close + 1
 
 
-def _words(text: str, line: int) -> Iterator[Block]:
+def _words(text: str, line: int, *, last: bool) -> Iterator[Block]:
     """Whole words, then what follows the last star, if it is more than blank."""
     star = text.rfind("*") + 1
     if star:
         yield Block(False, text[:star], line)
     rest = text[star:]
     if rest.strip(" \t\r\n\f\x1a\0"):
-        line += text.count("\n", 0, star) + (len(rest) - len(rest.lstrip()) and _newlines(rest))
-        yield Block(False, rest.strip(), line, whole=False)
+        before = len(text) - len(rest.lstrip())
+        yield Block(False, rest.strip(), line + text.count("\n", 0, before), False, last)
 
 
-def _newlines(rest: str) -> int:
-    return rest[: len(rest) - len(rest.lstrip())].count("\n")
+def in_order(word: str) -> list[dict[str, str]] | None:
+    """A word of any order and spacing as values by letter; a repeated letter starts another.
+
+    Returns
+    -------
+    Values of G, X, Y, I, J, D or M, numbers all; ``None`` if it is no such word.
+
+    Examples
+    --------
+    >>> in_order("G01 Y1 X2D2"), in_order("G01G75"), in_order("QQ")
+    ([{'G': '01', 'Y': '1', 'X': '2', 'D': '2'}], [{'G': '01'}, {'G': '75'}], None)
+    """
+    compact = "".join(word.split()).upper()
+    parts = _PART.findall(compact)
+    if not parts or sum(1 + len(value) for _, value in parts) != len(compact):
+        return None
+    words: list[dict[str, str]] = [{}]
+    for letter, value in parts:
+        if letter == "N":
+            # Sequence numbers of old files.
+            continue
+        if letter not in "GXYIJDM" or not 0 < sum(map(str.isdigit, value)) <= _MOST_DIGITS:
+            return None
+        if letter in "GDM" and (
+            not value.isdigit() or len(value.lstrip("0")) > 3 + 6 * (letter == "D")
+        ):
+            return None
+        if letter in words[-1]:
+            words.append({})
+        words[-1][letter] = value
+    return words

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from collections.abc import Callable
 from math import cos, isfinite, pi, sin, sqrt
+from typing import NoReturn
 
 import numpy as np
 import shapely
@@ -55,14 +56,19 @@ def instantiate(
     >>> [p.area for p in instantiate("21,1,$1,$1-0.5-0.5,0,0,0*", (2.0,), 1.0, "a.gbr:1")]
     [2.0]
     """
-    statements = [s for s in (" ".join(part.split()) for part in body.split("*")) if s]
-    if len(statements) > MOST_STATEMENTS:
-        _fail(place, f"{len(statements)} statements, more than the limit of {MOST_STATEMENTS}")
-    values = {number: value for number, value in enumerate(parameters, 1)}
+    values = dict(enumerate(parameters, 1))
     image: list[BaseGeometry] = []
-    for statement in statements:
+    statements = (" ".join(part.split()) for part in body.split("*"))
+    for statement in filter(None, statements):
         _obey(statement, values, unit_mm, place, image)
     return _pieces(shapely.union_all(image)) if image else ()
+
+
+def check_size(body: str, place: str) -> None:
+    """Refuse a macro of absurdly many statements before any of them is drawn."""
+    count = body.count("*")
+    if count > MOST_STATEMENTS:
+        _fail(place, f"{count} statements, more than the limit of {MOST_STATEMENTS}")
 
 
 def _obey(
@@ -88,7 +94,6 @@ def _obey(
     draw = _PRIMITIVES.get(code.strip().lstrip("0"))
     if draw is None:
         _fail(place, f"the unknown primitive {code.strip()[:20]!r}")
-    assert draw is not None
     dark, shape = draw(numbers, unit_mm, place)
     if dark:
         image.append(shape)
@@ -135,7 +140,6 @@ class _Expression:
             match = _TOKEN.match(text, at)
             if match is None:
                 self.wrong()
-            assert match is not None
             number, variable, sign = match.groups()
             if number is not None:
                 self.tokens.append(float(number))
@@ -146,7 +150,7 @@ class _Expression:
             at = match.end()
         self.tokens.reverse()
 
-    def wrong(self) -> None:
+    def wrong(self) -> NoReturn:
         _fail(self.place, f"{self.text.strip()[:40]!r}, which is no expression")
 
     def value(self) -> float:
@@ -193,7 +197,6 @@ class _Expression:
                 self.wrong()
         elif isinstance(token, str):
             self.wrong()
-            raise AssertionError
         else:
             value = token
         return -value if negative else value
@@ -334,7 +337,7 @@ def _box(x: float, y: float, width: float, height: float, degrees: float, unit: 
 
 
 def _set_down(shape: BaseGeometry, x: float, y: float, degrees: float) -> BaseGeometry:
-    return shapely.transform(shape, lambda p: _turned(p + [x, y], degrees))
+    return shapely.transform(shape, lambda p: _turned(p + np.array([x, y]), degrees))
 
 
 def _pieces(shape: BaseGeometry) -> tuple[Polygon, ...]:
@@ -343,5 +346,5 @@ def _pieces(shape: BaseGeometry) -> tuple[Polygon, ...]:
     return tuple(sorted(parts, key=lambda p: (p.bounds, p.area)))
 
 
-def _fail(place: str, what: str) -> None:
+def _fail(place: str, what: str) -> NoReturn:
     raise SplitcheckError(place, f"the aperture macro holds {what}", _AGAIN)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Iterable, Sequence
+from itertools import pairwise
 from math import ceil, pi
 from typing import Any, TypeAlias
 
@@ -92,7 +93,9 @@ def _thick(paths: Sequence[tuple[Point, ...]], width_mm: float) -> Shapes:
         return np.full(len(paths), Polygon(), dtype=object)
     quarter = ceil(pi / 2 / curves.step_rad(width_mm / 2))
     made: Shapes = shapely.buffer(
-        np.array([LineString(path) for path in paths], dtype=object), width_mm / 2, quad_segs=quarter
+        np.array([LineString(path) for path in paths], dtype=object),
+        width_mm / 2,
+        quad_segs=quarter,
     )
     return made
 
@@ -102,15 +105,12 @@ def _stamped(shape: Polygon, places: Sequence[Point]) -> Shapes:
     at = np.array(places)[:, None]
 
     def rings(ring: shapely.LinearRing) -> Shapes:
-        made: Shapes = shapely.linearrings(
-            np.round(at + shapely.get_coordinates(ring), 6)
-        )
-        return made
+        corners = np.round(at + shapely.get_coordinates(ring), 6)
+        return np.asarray(shapely.linearrings(corners), dtype=object)
 
     shell = rings(shape.exterior)
     if not shape.interiors:
-        solid: Shapes = shapely.polygons(shell)
-        return solid
+        return np.asarray(shapely.polygons(shell), dtype=object)
     holes = np.column_stack([rings(ring) for ring in shape.interiors])
     return np.array(
         [shapely.polygons(one, holes=inner) for one, inner in zip(shell, holes, strict=True)],
@@ -123,7 +123,7 @@ def _filled(marks: Sequence[Fill]) -> Shapes:
     counts = np.array([len(mark.ring) for mark in marks])
     corners = np.array([point for mark in marks for point in mark.ring])
     rings = shapely.linearrings(corners, indices=np.repeat(np.arange(len(marks)), counts))
-    shapes: Shapes = shapely.polygons(rings)
+    shapes: Shapes = np.asarray(shapely.polygons(rings), dtype=object)
     ends = np.cumsum(counts)
     for number in np.flatnonzero(~shapely.is_valid(shapes)):
         ring = corners[ends[number] - counts[number] : ends[number]]
@@ -141,11 +141,9 @@ def swept(points: Iterable[Point], shape: Polygon) -> shapely.Geometry:
     """
     path = np.array(list(points))
     placed = _stamped(shape, [(x, y) for x, y in path.tolist()])
-    if len(path) == 1:
-        return placed[0]
     edges = np.concatenate([_edges(ring) for ring in (shape.exterior, *shape.interiors)])
     quads = [placed]
-    for start, end in zip(path[:-1], path[1:], strict=True):
+    for start, end in pairwise(path):
         if np.array_equal(start, end):
             continue
         first, last = edges[:, 0], edges[:, 1]

@@ -192,9 +192,7 @@ def _sorted(parts: Shapes) -> tuple[Polygon, ...]:
     return tuple(sorted(solid, key=lambda part: (part.bounds, part.area)))
 
 
-def _witnesses(
-    shapes: Shapes, dark: NDArray[np.bool_]
-) -> tuple[NDArray[np.int64], Shapes]:
+def _witnesses(shapes: Shapes, dark: NDArray[np.bool_]) -> tuple[NDArray[np.int64], Shapes]:
     """Points that stand for dark marks: one inside each, or one in each part that is left."""
     owners = np.flatnonzero(dark & ~shapely.is_empty(shapes))
     whole = shapes[owners]
