@@ -334,7 +334,7 @@ def test_any_text_ends_in_holes_or_an_error_of_ours(text: str) -> None:
 
 
 def test_gerber_drill_file() -> None:
-    """Flashes are holes, strokes and long flashes are slots; the function gives plating and span."""
+    """Flashes are holes, strokes and long flashes slots; the function gives plating and span."""
     via = Tag(function="ViaDrill")
     marks: list[Mark] = [
         Flash((1.0, 2.0), Dot(0, 0).buffer(0.15), True, via, 5, 0.3),
