@@ -14,7 +14,7 @@ from splitcheck.copper.gerber_numbers import Numbers
 from splitcheck.copper.marks import Mark, Tag
 
 #: Most macro statements that a whole file may have drawn, all its apertures together.
-MOST_DRAWN = 500_000
+MOST_DRAWN = 100_000
 
 
 class _Entry(NamedTuple):
