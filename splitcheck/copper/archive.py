@@ -8,6 +8,7 @@ import zlib
 from pathlib import Path, PurePosixPath, PureWindowsPath
 from typing import IO, NamedTuple
 
+from splitcheck.copper import naming
 from splitcheck.errors import SplitcheckError
 
 #: Largest single file, bytes.
@@ -32,13 +33,23 @@ class Loaded(NamedTuple):
     """Why it could not be read, in words; ``data`` is then empty."""
 
 
-def load(path: Path) -> tuple[Loaded, ...]:
-    """Read the files of a folder or a .zip, at most one folder deep.
+#: Why a file of a folder inside was not read.
+DEEPER = "lies in a folder inside"
+#: A larger file whose start is binary and whose name promises no layer stays unread.
+BINARY = "is binary data"
+FOLDER = "is a folder, not a file"
+_BINARY_BYTES = 2**20
+
+
+def load(path: Path, *, deep: bool) -> tuple[Loaded, ...]:
+    """Read the files of a folder or a .zip.
 
     Parameters
     ----------
     path
         A folder or a .zip file.
+    deep
+        Whether to read files one folder down as well; else they are only named.
 
     Returns
     -------
@@ -51,30 +62,28 @@ def load(path: Path) -> tuple[Loaded, ...]:
         outside itself, or if a cap on size, growth or number is passed.
     """
     if path.is_dir():
-        return _load_folder(path)
+        return _load_folder(path, deep=deep)
     if path.is_file():
-        return _load_zip(path)
+        return _load_zip(path, deep=deep)
     if path.is_symlink():
         raise SplitcheckError(str(path), "is a link to nowhere", "give the folder itself")
     do = "give the folder, .zip or .gbrjob of the exported Gerber files"
     raise SplitcheckError(str(path), "does not exist", do)
 
 
-def _load_folder(folder: Path) -> tuple[Loaded, ...]:
+def _load_folder(folder: Path, *, deep: bool) -> tuple[Loaded, ...]:
     try:
-        entries = sorted(folder.iterdir())
-        below = [
-            f for d in entries if d.is_dir() and not d.name.startswith(".") for f in _inside(d)
-        ]
+        entries = [e for e in sorted(folder.iterdir()) if not e.name.startswith(".")]
     except OSError as fault:
         wrong = f"the folder cannot be read ({fault.strerror})"
         raise SplitcheckError(str(folder), wrong, "check its permissions") from None
-    paths = [p for p in [*entries, *below] if not p.name.startswith(".")]
-    _check_count(str(folder), len(paths))
+    below = [f for entry in entries if entry.is_dir() for f in _inside(entry)]
+    _check_count(str(folder), len(entries) + (len(below) if deep else 0))
     loaded: list[Loaded] = []
     left_bytes = TOTAL_CAP_BYTES
-    for file in paths:
-        one = _load_file(file, file.relative_to(folder).as_posix())
+    for file in [*entries, *below]:
+        name = file.relative_to(folder).as_posix()
+        one = Loaded(name, b"", DEEPER) if "/" in name and not deep else _load_file(file, name)
         left_bytes -= len(one.data)
         if left_bytes < 0:
             raise _too_much(str(folder))
@@ -85,7 +94,8 @@ def _load_folder(folder: Path) -> tuple[Loaded, ...]:
 def _inside(folder: Path) -> list[Path]:
     """Files of a sub-folder; a folder that carries a file's name is judged by its own name."""
     try:
-        return sorted(p for p in folder.iterdir() if not p.is_dir())
+        files = sorted(p for p in folder.iterdir() if not p.name.startswith("."))
+        return [p for p in files if not p.is_dir()]
     except OSError:
         return []
 
@@ -94,13 +104,17 @@ def _load_file(file: Path, name: str) -> Loaded:
     try:
         status = file.stat()
         if stat.S_ISDIR(status.st_mode):
-            return Loaded(name, b"", "is a folder, not a file")
+            return Loaded(name, b"", FOLDER)
         if not stat.S_ISREG(status.st_mode):
             return Loaded(name, b"", "is not a regular file")
         if status.st_size > FILE_CAP_BYTES:
             return Loaded(name, b"", _over(status.st_size))
         with file.open("rb") as stream:
-            data = stream.read(FILE_CAP_BYTES + 1)
+            data = stream.read(4096)
+            foreign = b"\0" in data and not naming.promises_layer(name)
+            if foreign and status.st_size > _BINARY_BYTES:
+                return Loaded(name, b"", BINARY)
+            data += stream.read(FILE_CAP_BYTES)
     except FileNotFoundError:
         return Loaded(name, b"", "is a link to nowhere")
     except OSError as fault:
@@ -110,11 +124,11 @@ def _load_file(file: Path, name: str) -> Loaded:
     return Loaded(name, data, None)
 
 
-def _load_zip(path: Path) -> tuple[Loaded, ...]:
+def _load_zip(path: Path, *, deep: bool) -> tuple[Loaded, ...]:
     again = "pack the exported files again as a plain .zip, or give the folder"
     try:
         with zipfile.ZipFile(path) as archive:
-            return _entries(archive, path.name)
+            return _entries(archive, path.name, deep=deep)
     except zipfile.BadZipFile as fault:
         wrong = f"is not a readable .zip ({str(fault) or 'broken'})"
         if path.suffix.casefold() != ".zip":
@@ -128,7 +142,7 @@ def _load_zip(path: Path) -> tuple[Loaded, ...]:
         raise SplitcheckError(path.name, f"cannot be unpacked ({fault})", again) from None
 
 
-def _entries(archive: zipfile.ZipFile, place: str) -> tuple[Loaded, ...]:
+def _entries(archive: zipfile.ZipFile, place: str, *, deep: bool) -> tuple[Loaded, ...]:
     infos = [info for info in archive.infolist() if not info.is_dir()]
     _check_count(place, len(infos))
     loaded: dict[str, Loaded] = {}
@@ -144,6 +158,9 @@ def _entries(archive: zipfile.ZipFile, place: str) -> tuple[Loaded, ...]:
         if name in loaded:
             wrong = f"holds two files named {name}"
             raise SplitcheckError(place, wrong, "pack the exported files again")
+        if len(parts) > 1 and not deep:
+            loaded[name] = Loaded(name, b"", DEEPER)
+            continue
         with archive.open(info) as stream:
             loaded[name] = _read_capped(stream, name, info.compress_size, left_bytes, place)
         left_bytes -= len(loaded[name].data)

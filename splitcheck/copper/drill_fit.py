@@ -211,19 +211,3 @@ def spread_mm(points: Floats) -> tuple[float, float]:
         return 0.0, 0.0
     width, height = points.max(axis=0) - points.min(axis=0)
     return float(width), float(height)
-
-
-def arc_points(
-    start: tuple[float, float], end: tuple[float, float], centre: tuple[float, float], way: int
-) -> list[tuple[float, float]]:
-    """Points after ``start`` on an arc to ``end``, mm; ``way`` is 1 clockwise, -1 the other way."""
-    x, y = centre
-    angle = float(np.arctan2(start[1] - y, start[0] - x))
-    last = float(np.arctan2(end[1] - y, end[0] - x))
-    turn = (angle - last if way > 0 else last - angle) % (2 * np.pi) or 2 * np.pi
-    radius_mm = float(np.hypot(start[0] - x, start[1] - y))
-    angles = angle - way * np.linspace(0, turn, max(2, int(np.ceil(turn / 0.1)) + 1))[1:-1]
-    mid = [
-        (round(x + radius_mm * np.cos(a), 6), round(y + radius_mm * np.sin(a), 6)) for a in angles
-    ]
-    return [*((float(a), float(b)) for a, b in mid), end]

@@ -7,21 +7,14 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from hashlib import sha256
 from pathlib import Path
-from typing import NamedTuple
 
 from splitcheck.copper import archive, jobfile, naming, ordering, sniff
 from splitcheck.copper.jobfile import Job
+from splitcheck.copper.judging import Judged, Read, judge
 from splitcheck.copper.naming import Claim, Kind
 from splitcheck.errors import SplitcheckError
 
 _NO_COPPER_DO = "give the folder, .zip or .gbrjob of the exported Gerber files"
-_FUNCTIONS: dict[str, Kind] = {
-    "copper": "copper", "profile": "profile", "plated": "drill", "nonplated": "drill",
-    "mixedplating": "drill", "soldermask": "mask", "paste": "paste", "solderpaste": "paste",
-    "legend": "legend",
-}  # fmt: skip
-_PLACEMENT_ENDINGS = frozenset({"pos", "mnt", "mnb", "pnp", "xy", "cpl"})
-_SIDES: dict[str, naming.Side] = {"top": "top", "inr": "inner", "bot": "bottom"}
 _SPAN_NAME = re.compile(r"[-_ ](?:L)?(\d{1,2})[-_](?:L)?(\d{1,2})$", re.IGNORECASE)
 
 
@@ -77,22 +70,6 @@ class Export:
         return sizes
 
 
-class _Read(NamedTuple):
-    """A readable file before it is judged."""
-
-    name: str
-    text: str
-    digest: str
-    language: sniff.Language
-
-
-class _Judged(NamedTuple):
-    read: _Read
-    claim: Claim
-    source: str
-    """``attribute``, ``comment``, ``job``, ``name``, ``stack`` or ``content``."""
-
-
 def open_export(path: Path, *, layers: Sequence[tuple[int, str]] | None = None) -> Export:
     """Find out what each file of an export is.
 
@@ -120,10 +97,10 @@ def open_export(path: Path, *, layers: Sequence[tuple[int, str]] | None = None) 
     """
     folder, wanted_job = _folder_of(path)
     remarks: list[str] = []
-    loaded = _level(archive.load(folder), remarks)
-    reads = _readable(loaded, str(path), remarks)
+    reads = _readable(_load(folder, remarks), str(path), remarks)
     job = _job(reads, wanted_job, remarks)
-    judged = _judge_all(reads, job)
+    start = naming.shared_start(r.name for r in reads if r.language == "gerber")
+    judged = [judge(read, job, start) for read in reads]
     if layers is not None:
         judged = _override(judged, layers)
     judged = _one_outline(judged, remarks)
@@ -161,16 +138,17 @@ def _folder_of(path: Path) -> tuple[Path, str | None]:
     return path, None
 
 
-def _level(loaded: tuple[archive.Loaded, ...], remarks: list[str]) -> tuple[archive.Loaded, ...]:
-    """The files of the top, or those one folder down when the top holds no layer of a board."""
-    top = tuple(f for f in loaded if "/" not in f.name)
-    below = tuple(f for f in loaded if "/" in f.name)
-    if any(_is_layer(f) for f in top) or not any(_is_layer(f) for f in below):
-        folders = sorted({f.name.partition("/")[0] for f in below if _is_layer(f)})
-        if folders:
-            remarks.append(f"Folders inside were not read: {', '.join(folders)}")
-        return top
-    return loaded
+def _load(folder: Path, remarks: list[str]) -> tuple[archive.Loaded, ...]:
+    """The files of the top, or with those one folder down when the top holds no layer."""
+    loaded = archive.load(folder, deep=False)
+    top = tuple(f for f in loaded if f.unread != archive.DEEPER)
+    below = [f for f in loaded if f.unread == archive.DEEPER]
+    if not any(_is_layer(f) for f in top) and below:
+        return archive.load(folder, deep=True)
+    unread = sorted({f.name.partition("/")[0] for f in below if naming.promises_layer(f.name)})
+    if unread:
+        remarks.append(f"Folders inside were not read: {', '.join(unread)}")
+    return top
 
 
 def _is_layer(file: archive.Loaded) -> bool:
@@ -180,15 +158,15 @@ def _is_layer(file: archive.Loaded) -> bool:
     )
 
 
-def _readable(loaded: Iterable[archive.Loaded], place: str, remarks: list[str]) -> list[_Read]:
-    reads: list[_Read] = []
+def _readable(loaded: Iterable[archive.Loaded], place: str, remarks: list[str]) -> list[Read]:
+    reads: list[Read] = []
     do = "export it again, or take it out of the folder"
     for file in loaded:
         promised = naming.promises_layer(file.name)
         if file.unread is not None:
             if promised or naming.ending(file.name) == "gbrjob":
                 raise SplitcheckError(file.name, file.unread, do)
-            if file.unread != "is a folder, not a file":
+            if file.unread not in (archive.FOLDER, archive.BINARY):
                 remarks.append(f"{file.name} {file.unread}")
             continue
         text = sniff.decode(file.data)
@@ -203,13 +181,13 @@ def _readable(loaded: Iterable[archive.Loaded], place: str, remarks: list[str]) 
                 file.name, f"holds {what[language]} although its name promises a layer", do
             )
         digest = sha256(file.data).hexdigest()
-        reads.append(_Read(file.name, text or "", digest, language))
+        reads.append(Read(file.name, text or "", digest, language))
     if not reads:
         raise SplitcheckError(place, "holds no files", _NO_COPPER_DO)
     return reads
 
 
-def _job(reads: Sequence[_Read], wanted: str | None, remarks: list[str]) -> Job | None:
+def _job(reads: Sequence[Read], wanted: str | None, remarks: list[str]) -> Job | None:
     named = [r for r in reads if naming.ending(r.name) == "gbrjob"]
     if wanted is not None:
         named = [r for r in named if r.name == wanted]
@@ -224,80 +202,7 @@ def _job(reads: Sequence[_Read], wanted: str | None, remarks: list[str]) -> Job 
     return None
 
 
-def _judge_all(reads: Sequence[_Read], job: Job | None) -> list[_Judged]:
-    start = naming.shared_start(r.name for r in reads if r.language == "gerber")
-    return [_judge(read, job, start) for read in reads]
-
-
-def _judge(read: _Read, job: Job | None, start: str) -> _Judged:
-    """What one file is, by the first evidence that says so."""
-    plain: dict[str, tuple[Kind, str]] = {
-        "job": ("job", "it is a job file"),
-        "netlist": ("netlist", "its records are those of an IPC-D-356 netlist"),
-        "placement": ("placement", "it lists where parts are placed"),
-        "tools": ("tools", "it lists drill tools"),
-        "excellon": ("drill", "its commands are those of a drill file"),
-        "text": ("readme", "it is plain text"),
-        "binary": ("other", "it is binary data"),
-        "empty": ("other", "it is empty"),
-    }
-    if read.language != "gerber":
-        kind, reason = plain[read.language]
-        if read.language == "text" and naming.ending(read.name) in _PLACEMENT_ENDINGS:
-            kind, reason = "placement", "its ending is that of a list of placed parts"
-        if naming.ending(read.name) == "zip":
-            reason = "it is an archive inside; archives inside are not opened"
-        return _Judged(read, Claim(kind, reason), "content")
-    attributes = sniff.file_attributes(read.text)
-    if attributes.get(".Part", ("",))[0] in ("FabricationPanel", "Coupon"):
-        part = attributes[".Part"][0]
-        return _Judged(read, Claim("other", f"its attributes call it a {part}"), "attribute")
-    function = attributes.get(".FileFunction")
-    if function:
-        return _Judged(read, _by_function(function, "its attributes say"), "attribute")
-    entry = job.entry(read.name) if job else None
-    if entry and entry.function[0]:
-        return _Judged(read, _by_function(entry.function, "the job file says"), "job")
-    return _by_name(read, start)
-
-
-def _by_function(function: tuple[str, ...], who: str) -> Claim:
-    kind = _FUNCTIONS.get(function[0].casefold(), "other")
-    reason = f"{who} {','.join(function)}"
-    if kind != "copper":
-        return Claim(kind, reason, strength=9)
-    fields = [f.casefold() for f in function]
-    numbers = [int(f[1:]) for f in fields if re.fullmatch(r"l\d{1,3}", f)]
-    side = next((_SIDES[f] for f in fields if f in _SIDES), None)
-    role: naming.Role | None = "signal" if "signal" in fields else None
-    return Claim(kind, reason, side, "layer", numbers[0] if numbers else None, role)
-
-
-def _by_name(read: _Read, start: str) -> _Judged:
-    words = naming.layer_words(read.name, start)
-    film, place = sniff.film_layer(read.text), sniff.physical_order(read.text)
-    claims = [naming.by_words(words), naming.by_ending(read.name)]
-    claim = next((c for c in claims if c and (c.kind != "copper" or c.side or c.number)), None)
-    claim = claim or next((c for c in claims if c), None)
-    image = sniff.image_name(read.text)
-    for text in (film, image, naming.layer_words(read.name, "")):
-        if claim is None and text:
-            claim = naming.by_words(text)
-    if place is not None and (claim is None or claim.kind == "copper"):
-        reason = f"a comment in it says that it is physical layer {place}"
-        side = claim.side if claim else None
-        return _Judged(read, Claim("copper", reason, side, "layer", place), "comment")
-    if film is not None and (claim is None or claim.kind == "copper"):
-        film_claim = naming.by_words(film)
-        claim = claim or Claim("copper", f'its header says copper layer "{film}"')
-        if film_claim and film_claim.kind == "copper":
-            claim = claim._replace(role=film_claim.role, side=claim.side or film_claim.side)
-    if claim is None:
-        claim = Claim("other", "nothing says which layer it is; --stack FILE.toml can name it")
-    return _Judged(read, claim, "name")
-
-
-def _override(judged: list[_Judged], layers: Sequence[tuple[int, str]]) -> list[_Judged]:
+def _override(judged: list[Judged], layers: Sequence[tuple[int, str]]) -> list[Judged]:
     """Let the stack given by the user say which files are copper, and in which order."""
     do = "correct the stack file"
     by_file: dict[str, int] = {}
@@ -315,10 +220,10 @@ def _override(judged: list[_Judged], layers: Sequence[tuple[int, str]]) -> list[
         if j.read.name in by_file:
             number = by_file[j.read.name]
             claim = Claim("copper", f"the stack file says layer {number}", None, "layer", number)
-            changed.append(_Judged(j.read, claim, "stack"))
+            changed.append(Judged(j.read, claim, "stack"))
         elif j.claim.kind == "copper":
             claim = Claim("other", "the stack file does not list it")
-            changed.append(_Judged(j.read, claim, "stack"))
+            changed.append(Judged(j.read, claim, "stack"))
         else:
             changed.append(j)
     return changed
@@ -328,7 +233,7 @@ def _same_file(name: str, wanted: str) -> bool:
     return wanted in (name, name.rsplit("/", 1)[-1]) or name.casefold() == wanted.casefold()
 
 
-def _one_outline(judged: list[_Judged], remarks: list[str]) -> list[_Judged]:
+def _one_outline(judged: list[Judged], remarks: list[str]) -> list[Judged]:
     """Of files that only custom calls an outline, keep the likeliest."""
     outlines = [j for j in judged if j.claim.kind == "profile"]
     best = max((j.claim.strength for j in outlines), default=0)
@@ -339,10 +244,10 @@ def _one_outline(judged: list[_Judged], remarks: list[str]) -> list[_Judged]:
     return [j._replace(claim=spare) if j.read.name in weak else j for j in judged]
 
 
-def _drop_twins(judged: list[_Judged], remarks: list[str]) -> list[_Judged]:
+def _drop_twins(judged: list[Judged], remarks: list[str]) -> list[Judged]:
     """Refuse two different files for one layer; of two equal ones keep the first."""
-    seen: dict[tuple[object, ...], _Judged] = {}
-    kept: list[_Judged] = []
+    seen: dict[tuple[object, ...], Judged] = {}
+    kept: list[Judged] = []
     for j in judged:
         keys = _layer_keys(j.claim) if j.claim.kind == "copper" else []
         other = next((seen[key] for key in keys if key in seen), None)
@@ -366,7 +271,7 @@ def _layer_keys(claim: Claim) -> list[tuple[object, ...]]:
     return [] if claim.number is None else [("number", claim.family, claim.number)]
 
 
-def _check_job(job: Job | None, judged: Sequence[_Judged], found: int, remarks: list[str]) -> None:
+def _check_job(job: Job | None, judged: Sequence[Judged], found: int, remarks: list[str]) -> None:
     """A copper file that the job lists must be there; other missing files are a remark."""
     if job is None:
         return
@@ -386,7 +291,7 @@ def _check_job(job: Job | None, judged: Sequence[_Judged], found: int, remarks: 
 
 
 def _numbers(
-    coppers: Sequence[_Judged], reads: Sequence[_Read]
+    coppers: Sequence[Judged], reads: Sequence[Read]
 ) -> tuple[dict[str, int], tuple[str, ...]]:
     """Number of each copper file from the top, and what had to be assumed for it."""
     start = naming.shared_start(r.name for r in reads if r.language == "gerber")
@@ -405,7 +310,7 @@ def _numbers(
 
 
 def _layer_names(
-    coppers: Sequence[_Judged], numbers: dict[str, int], reads: Sequence[_Read], job: Job | None
+    coppers: Sequence[Judged], numbers: dict[str, int], reads: Sequence[Read], job: Job | None
 ) -> dict[str, str]:
     """A name for each copper file that a person knows the layer by; no two alike."""
     start = naming.shared_start(r.name for r in reads if r.language == "gerber")
@@ -420,7 +325,7 @@ def _layer_names(
     return names
 
 
-def _own_name(judged: _Judged, start: str, number: int, count: int) -> str:
+def _own_name(judged: Judged, start: str, number: int, count: int) -> str:
     film = sniff.film_layer(judged.read.text)
     words = film or naming.layer_words(judged.read.name, start)
     if words and naming.by_words(words) is not None:
@@ -429,7 +334,7 @@ def _own_name(judged: _Judged, start: str, number: int, count: int) -> str:
 
 
 def _file(
-    judged: _Judged, numbers: dict[str, int], names: dict[str, str], count: int, job: Job | None
+    judged: Judged, numbers: dict[str, int], names: dict[str, str], count: int, job: Job | None
 ) -> InputFile:
     read, claim = judged.read, judged.claim
     file = InputFile(read.name, read.text, read.digest, claim.kind, claim.reason)
@@ -446,7 +351,7 @@ def _file(
     return file
 
 
-def _drill_function(read: _Read, count: int) -> tuple[bool | None, tuple[int, int] | None]:
+def _drill_function(read: Read, count: int) -> tuple[bool | None, tuple[int, int] | None]:
     """Plating and span of a drill file, from its attributes or else its name."""
     function = sniff.file_attributes(read.text).get(".FileFunction", ())
     if function:
@@ -483,7 +388,7 @@ def _says_plating(text: str) -> bool:
     )
 
 
-def _no_copper(place: str, judged: Sequence[_Judged]) -> SplitcheckError:
+def _no_copper(place: str, judged: Sequence[Judged]) -> SplitcheckError:
     found = ", ".join(f"{j.read.name} ({j.claim.kind})" for j in judged[:6])
     more = f" and {len(judged) - 6} more" if len(judged) > 6 else ""
     return SplitcheckError(place, f"holds no copper layer; found {found}{more}", _NO_COPPER_DO)

@@ -61,9 +61,7 @@ _EXTENSIONS: dict[str, tuple[Kind, Side | None, str]] = {
 _GERBER_ENDINGS = frozenset(
     {"gbr", "ger", "gerber", "gbx", "gb", "pho", "art", "gdo", "gbrx", "rs274x", *_EXTENSIONS}
 )
-_DRILL_ENDINGS = frozenset(
-    {"drl", "xln", "exc", "drill", "drd", "ncd", "nc", "tap", "xnc", "ncdrill"}
-)
+_DRILL_ENDINGS = frozenset({"drl", "xln", "exc", "drill", "drd", "ncd", "xnc", "ncdrill"})
 _INNER_ENDING = re.compile(r"(g|gl|gp|in|ly|lyr|l|inner)(\d{1,2})(l?)$")
 _OTHER_ENDING = re.compile(r"(gm|gd|gg)\d{1,2}$")
 
@@ -91,7 +89,7 @@ _OTHER_TOKENS: dict[str, tuple[Kind, str]] = {
     "drill": ("drill", "drill"), "drills": ("drill", "drill"), "drl": ("drill", "drill"),
     "pth": ("drill", "drill"), "npth": ("drill", "drill"), "holes": ("drill", "drill"),
 }  # fmt: skip
-_TOP = {"top", "toplayer", "front", "topcopper", "coppertop", "componentside", "cmp"}
+_TOP = {"top", "toplayer", "front", "topcopper", "coppertop", "componentside", "component", "cmp"}
 _BOTTOM = {"bottom", "bot", "bottomlayer", "back", "bottomcopper", "copperbottom", "copperbot",
            "solderside"}  # fmt: skip
 _LAYER = {"l", "layer", "lyr", "ly", "lay"}
@@ -210,6 +208,8 @@ def by_words(words: str) -> Claim | None:
     for kind, meaning, parts in _OTHER_WORDS:
         if any(part in joined for part in parts):
             return Claim(kind, f'its name says {meaning} ("{words}")', strength=4)
+    if "solder" in tokens and "side" not in tokens:
+        return Claim("mask", f'its name says solder mask ("{words}")', strength=4)
     for token in tokens:
         if token in _OTHER_TOKENS:
             kind, meaning = _OTHER_TOKENS[token]

@@ -12,7 +12,7 @@ from hypothesis import strategies as st
 from shapely import Point as Dot
 from shapely import box
 
-from splitcheck.copper import drill
+from splitcheck.copper import drill, drill_play
 from splitcheck.copper.holes import DrillFile, Hole
 from splitcheck.copper.marks import NO_TAG, Drawing, Fill, Flash, Mark, Stroke, Tag
 from splitcheck.errors import SplitcheckError
@@ -296,7 +296,7 @@ def test_errors_name_line_and_text(lines: list[str], text: str) -> None:
 
 def test_many_repeats_are_capped(monkeypatch: pytest.MonkeyPatch) -> None:
     """Repeats of repeats cannot fill the memory."""
-    monkeypatch.setattr(drill, "HOLES_CAP", 1000)
+    monkeypatch.setattr(drill_play, "HOLES_CAP", 1000)
     with pytest.raises(SplitcheckError, match="over 1000 holes"):
         _metric("T1", "X1.0Y1.0", *["R600X0.1"] * 9)
 

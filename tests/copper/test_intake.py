@@ -103,12 +103,11 @@ def test_other_films_are_not_copper(tmp_path: Path) -> None:
         "b-F_Cu.gbr": "copper", "b-B_Cu.gbr": "copper", "b-F_Mask.gbr": "mask",
         "b-B_Paste.gbr": "paste", "b-F_SilkS.gbr": "legend", "b-Edge_Cuts.gbr": "profile",
         "b-F_Fab.gbr": "other", "b.GTS": "mask", "b.GTO": "legend", "b.GBP": "paste",
-        "b-drill_map.gbr": "other", "b-F_CrtYd.gbr": "other",
+        "b-drill_map.gbr": "other", "b-drl.gbr": "other", "b-Top Solder.gbr": "mask",
+        "b-Top Solder.gts": "mask", "b-Fab Notes.gm1": "other", "b-F_CrtYd.gbr": "other",
     }  # fmt: skip
     export = open_export(_fill(tmp_path, dict.fromkeys(expected, GERBER)))
-    expected["b-drill_map.gbr"] = _kinds(export)["b-drill_map.gbr"]
     assert _kinds(export) == expected
-    assert expected["b-drill_map.gbr"] in ("drill", "other")
 
 
 def test_layer_order_in_a_writers_comment(tmp_path: Path) -> None:
@@ -292,6 +291,12 @@ def test_likeliest_outline_is_kept(tmp_path: Path) -> None:
 def test_stated_polarity(text: str, negative: bool | None, tmp_path: Path) -> None:
     """What a file states of its polarity is kept; nothing stated is None."""
     assert open_export(_fill(tmp_path, {"a.gtl": text})).copper()[0].negative is negative
+
+
+def test_large_foreign_files_stay_unread(tmp_path: Path) -> None:
+    """A large binary file that promises no layer costs nothing and hinders nothing."""
+    _fill(tmp_path, {"a.gtl": GERBER, "film.mov": b"\0" * 2_000_000})
+    assert [f.name for f in open_export(tmp_path).files] == ["a.gtl"]
 
 
 def test_files_one_folder_down(tmp_path: Path) -> None:
