@@ -12,7 +12,7 @@ from scipy.spatial import cKDTree
 from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.copper.marks import Drawing, Fill, Point, Stroke
-from splitcheck.units import GRID_MM
+from splitcheck.units import GRID_MM, Floats
 
 Bounds = tuple[float, float, float, float]
 
@@ -91,9 +91,9 @@ def outline(drawing: Drawing, copper_bounds: Bounds, copper: Sequence[Polygon] =
 class _Copper(NamedTuple):
     """Where the copper is: places with weights that sum to 1, and pieces to test loops with."""
 
-    places: shapely.MultiPoint
-    points: Sequence[shapely.Point]
-    weights: Sequence[float]
+    places: Floats
+    """Shape (n, 2), mm."""
+    weights: Floats
     tree: shapely.STRtree | None
     pieces: Sequence[Polygon]
     bounds: Bounds
@@ -101,11 +101,13 @@ class _Copper(NamedTuple):
     @classmethod
     def of(cls, bounds: Bounds, copper: Sequence[Polygon]) -> _Copper:
         pieces = [piece for piece in copper if piece.area > 0]
-        points = [piece.representative_point() for piece in pieces]
         total_mm2 = sum(piece.area for piece in pieces)
-        weights = [piece.area / total_mm2 for piece in pieces]
+        rows = [_sample(piece, piece.area > total_mm2 / 100) for piece in pieces]
+        shares = [np.full(len(r), p.area / len(r)) for p, r in zip(pieces, rows, strict=True)]
+        places = np.concatenate([np.empty((0, 2)), *rows])
+        weights = np.concatenate([np.empty(0), *shares]) / max(total_mm2, 1e-12)
         tree = shapely.STRtree(pieces) if pieces else None
-        return cls(shapely.MultiPoint(points), points, weights, tree, pieces, bounds)
+        return cls(places, weights, tree, pieces, bounds)
 
     def share_in(self, loop: Polygon | MultiPolygon) -> float:
         """Share of the copper inside a loop, 0 to 1; without copper, of its box."""
@@ -113,8 +115,8 @@ class _Copper(NamedTuple):
             box = shapely.box(*self.bounds)
             return shapely.box(*loop.bounds).intersection(box).area / max(box.area, 1e-12)
         shapely.prepare(loop)
-        inside = shapely.contains(loop, np.array(self.points, dtype=object))
-        return float(np.dot(inside.astype(np.float64), np.array(self.weights)))
+        inside = shapely.contains_xy(loop, self.places[:, 0], self.places[:, 1])
+        return float(np.dot(inside.astype(np.float64), self.weights))
 
     def covers(self, loop: Polygon) -> float:
         """Share of a loop that copper covers on its fullest layer at least, 0 to 1."""
@@ -123,6 +125,19 @@ class _Copper(NamedTuple):
         near = [self.pieces[i] for i in self.tree.query(loop, predicate="intersects")]
         covered_mm2 = max((piece.intersection(loop).area for piece in near), default=0.0)
         return covered_mm2 / loop.area
+
+
+def _sample(piece: Polygon, large: bool) -> Floats:
+    """Places spread over a large piece of copper, or one place inside a small one, mm."""
+    if large:
+        x0, y0, x1, y1 = piece.bounds
+        steps = (np.arange(24) + 0.5) / 24
+        x, y = (a.ravel() for a in np.meshgrid(x0 + (x1 - x0) * steps, y0 + (y1 - y0) * steps))
+        inside = shapely.contains_xy(piece, x, y)
+        if inside.any():
+            return np.column_stack((x[inside], y[inside]))
+    point = piece.representative_point()
+    return np.array([[point.x, point.y]])
 
 
 def _lines(drawing: Drawing) -> tuple[list[list[Point]], list[str]]:
@@ -179,7 +194,7 @@ def _bridges(lines: Sequence[LineString], snap_mm: float) -> list[LineString]:
     return bridges
 
 
-def _join(ends: np.ndarray[tuple[int, int], np.dtype[np.float64]], snap_mm: float) -> list[Point]:
+def _join(ends: Floats, snap_mm: float) -> list[Point]:
     """Ends moved onto the first end within reach, so that they meet."""
     first = list(range(len(ends)))
     for a, b in sorted(cKDTree(ends).query_pairs(snap_mm)):
