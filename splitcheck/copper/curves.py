@@ -12,6 +12,8 @@ from splitcheck.units import Floats
 
 #: How far a chord may lie from its arc, mm. Half the finest etching tolerance, by far.
 SAGITTA_MM = 0.002
+#: An arc that bends less than this is a straight line, mm.
+FLAT_MM = 0.0001
 #: A circle never has fewer corners than this, however small.
 FEWEST_CORNERS = 16
 
@@ -124,9 +126,13 @@ def arc(start: Point, end: Point, centre: Point, *, clockwise: bool) -> list[Poi
     if first == 0 or last == 0:
         return [end]
     angle = sweep_rad(start, end, centre, clockwise=clockwise)
-    chords = max(1, ceil(angle / step_rad(max(first, last)) - 1e-9))
+    radius = max(first, last)
+    chords = max(1, ceil(angle / step_rad(radius) - 1e-9))
     if chords == 1:
-        return [end]
+        if radius * (1 - cos(angle / 2)) < FLAT_MM:
+            return [end]
+        # One chord has no inner corner to move: a circle of many short arcs would lose area.
+        chords = 2
     outward = stretch(chords, angle)
     begin = atan2(start[1] - cy, start[0] - cx)
     step = (-angle if clockwise else angle) / chords

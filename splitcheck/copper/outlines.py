@@ -66,7 +66,7 @@ def _capsules(ends: Sequence[tuple[Point, ...]], width_mm: float) -> Shapes:
     """Straight round-ended lines of one width."""
     if width_mm <= 0:
         return np.full(len(ends), Polygon(), dtype=object)
-    pairs = np.array(ends)
+    pairs = np.array(ends, dtype=np.float64)
     start, end = pairs[:, 0], pairs[:, 1]
     along = end - start
     length = np.hypot(along[:, 0], along[:, 1])
@@ -102,7 +102,7 @@ def _thick(paths: Sequence[tuple[Point, ...]], width_mm: float) -> Shapes:
 
 def _stamped(shape: Polygon, places: Sequence[Point]) -> Shapes:
     """One shape set down at many places."""
-    at = np.array(places)[:, None]
+    at = np.array(places, dtype=np.float64)[:, None]
 
     def rings(ring: shapely.LinearRing) -> Shapes:
         corners = np.round(at + shapely.get_coordinates(ring), 6)
@@ -139,7 +139,7 @@ def swept(points: Iterable[Point], shape: Polygon) -> shapely.Geometry:
     The shape at every point, and between two points the parallelogram that each of its edges
     sweeps: together the Minkowski sum with the line, also for shapes with holes or notches.
     """
-    path = np.array(list(points))
+    path = np.array(list(points), dtype=np.float64)
     placed = _stamped(shape, [(x, y) for x, y in path.tolist()])
     edges = np.concatenate([_edges(ring) for ring in (shape.exterior, *shape.interiors)])
     quads = [placed]
