@@ -8,6 +8,7 @@ import sys
 from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
 from io import TextIOWrapper
+from time import monotonic
 from typing import Literal, TextIO, TypeAlias
 
 from splitcheck.report.words import shorten, visible
@@ -18,6 +19,7 @@ Progress: TypeAlias = Callable[[str, int, int], None]
 #: Without a terminal to measure, as in a CI log.
 _DEFAULT_WIDTH = 80
 _LONGEST_COMPLAINT = 2000
+_REDRAW_SECONDS = 0.05
 
 
 def prepare() -> None:
@@ -105,10 +107,17 @@ def progress_bar(*, quiet: bool) -> Iterator[Progress | None]:
     color = color_for("auto", sys.stderr)
     console = Console(file=sys.stderr, no_color=not color)
     columns = (TextColumn("{task.description}", markup=False), BarColumn(), MofNCompleteColumn())
-    with Bar(*columns, console=console, transient=True) as bar:
+    # No thread that redraws by itself: readers fork, and a fork beside a thread can hang.
+    with Bar(*columns, console=console, transient=True, auto_refresh=False) as bar:
         task = bar.add_task("start", total=None)
+        drawn = (monotonic(), "")
 
         def advance(stage: str, done: int, total: int) -> None:
+            nonlocal drawn
             bar.update(task, description=stage, completed=done, total=total or None)
+            now = monotonic()
+            if stage != drawn[1] or now - drawn[0] > _REDRAW_SECONDS:
+                bar.refresh()
+                drawn = (now, stage)
 
         yield advance

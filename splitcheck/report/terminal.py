@@ -40,6 +40,7 @@ _ASSUMPTIONS_SHOWN = 10
 _FACTS_SHOWN = 12
 _REASONS_SHOWN = 5
 _NET_CELLS = 28
+_PLANE_CELLS = 60
 _LONGEST_NAME = 120
 
 
@@ -164,10 +165,10 @@ def _where(finding: Finding) -> str:
     layer = shorten(finding.layer, _NET_CELLS)
     over = ""
     if finding.plane_layer:
-        net = f" ({shorten(finding.plane_net, _NET_CELLS)})" if finding.plane_net else ""
+        net = f" ({shorten(finding.plane_net, _PLANE_CELLS)})" if finding.plane_net else ""
         over = f" over {shorten(finding.plane_layer, _NET_CELLS)}{net}"
     x_mm, y_mm = (round(value, 3) + 0.0 for value in finding.at_mm)
-    source = f"{shorten(finding.source.file, 40)}:{finding.source.line}"
+    source = f"{shorten(finding.source.file, 60)}:{finding.source.line}".replace(" ", STICKY)
     place = f"x {x_mm:.3f} y {y_mm:.3f} mm".replace(" ", STICKY)
     return f"{layer}{over}, {place}, {source}"
 
@@ -180,7 +181,8 @@ def _sharers(group: Sequence[Finding], room: int) -> str:
     nets = tally.nets_of(group)
     levels = ", ".join(f"{count} {level}" for level, count in tally.by_level(group))
     places = f" at {len(group)} places" if len(group) > len(nets) else ""
-    start = f"{plural(len(nets), 'net')} over one gap{places} ({levels}): "
+    shared = "without a plane" if group[0].kind == "no-plane" else "over one gap"
+    start = f"{plural(len(nets), 'net')} {shared}{places} ({levels}): "
     taken = len(start)
     shown: list[str] = []
     for net in nets:

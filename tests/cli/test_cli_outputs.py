@@ -211,3 +211,31 @@ def test_demo_can_rank_at_once(road: Road, capsys: Capture) -> None:
     assert "BUS0" in out
     assert "splitcheck rank splitcheck-demo" in out
     assert "exit code 1" in out
+
+
+class Terminal(io.StringIO):
+    """Somebody sits before it."""
+
+    def isatty(self) -> bool:
+        """Claim to be a terminal."""
+        return True
+
+
+def test_progress_goes_to_standard_error_of_a_terminal(monkeypatch: pytest.MonkeyPatch) -> None:
+    """The stage is shown while it runs; without a terminal, or quiet, there is nobody to tell."""
+    monkeypatch.setenv("TERM", "xterm")
+    screen = Terminal()
+    monkeypatch.setattr(sys, "stderr", screen)
+    with streams.progress_bar(quiet=False) as progress:
+        assert progress is not None
+        progress("[copper]", 1, 4)
+    assert "[copper]" in screen.getvalue()
+    assert "1/4" in screen.getvalue()
+    with streams.progress_bar(quiet=True) as progress:
+        assert progress is None
+    monkeypatch.setenv("TERM", "dumb")
+    with streams.progress_bar(quiet=False) as progress:
+        assert progress is None
+    monkeypatch.setattr(sys, "stderr", io.StringIO())
+    with streams.progress_bar(quiet=False) as progress:
+        assert progress is None

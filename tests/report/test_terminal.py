@@ -86,6 +86,13 @@ def test_one_net_over_one_gap_thrice_is_told_as_places(pump: Report) -> None:
     assert "1 net over one gap at 3 places (3 error): CLK\n" in text
 
 
+def test_nets_without_a_plane_are_not_said_to_share_a_gap(pump: Report) -> None:
+    """There is no gap where there is no plane."""
+    bare = tuple(made.finding(n, f"LED{n}", kind="no-plane", plane_layer="") for n in (1, 2))
+    text = plain(replace(pump, findings=bare))
+    assert "      2 nets without a plane (2 error): LED1, LED2\n" in text
+
+
 def test_findings_without_a_gap_are_not_thrown_together(pump: Report) -> None:
     """Two corners without plane are two rows."""
     text = plain(replace(pump, findings=tuple(made.finding(n, "CLK", gap="") for n in (1, 2))))
