@@ -21,8 +21,14 @@ Ints = NDArray[np.int64]
 _WIDEN = 0.118
 #: Pieces smaller than this part of their cell are dropped.
 _SLIVER = 1e-4
-_MAX_EDGES = 14
-_MAX_DEPTH = 24
+#: Pieces with more corners than this are cut again.
+_MOST_CORNERS = 24
+#: Gaps with more corners than this are clipped step by step.
+_INTRICATE = 100
+
+
+class TooManyPanelsError(Exception):
+    """More panels than `Grading.most`: the caller shall ask for coarser ones."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,6 +43,8 @@ class Grading:
     """By how much a panel may grow per mm of distance."""
     stretch: float = 3.0
     """How much longer than wide a panel at the trace may be, along the trace."""
+    most: int = 100_000
+    """Give up on gaps that need more panels than this."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -64,7 +72,7 @@ class Panels:
         return len(self.area)
 
 
-def cut(gaps: Sequence[Polygon], grading: Grading, least: Sequence[int] = ()) -> Panels:
+def cut(gaps: Sequence[Polygon], grading: Grading, least: Sequence[float] = ()) -> Panels:
     """Cut gaps into graded panels.
 
     Parameters
@@ -89,18 +97,22 @@ def cut(gaps: Sequence[Polygon], grading: Grading, least: Sequence[int] = ()) ->
     """
     edges: list[Floats] = []
     rims: list[NDArray[np.bool_]] = []
+    areas: list[Floats] = []
     numbers: list[Ints] = []
     for number, gap in enumerate(gaps):
-        outline, rim = _pieces(gap, grading, least[number] if least else 4)
+        outline, rim, area = _pieces(gap, grading, least[number] if least else 4.0)
         edges.append(outline)
+        areas.append(area)
         rims.append(rim)
         numbers.append(np.full(len(outline), number, dtype=np.int64))
     widest = max((outline.shape[1] for outline in edges), default=1)
     if not edges:
-        return _measured(np.zeros((0, 1, 4)), np.zeros((0, 1), dtype=bool), np.zeros(0, np.int64))
+        nothing = np.zeros((0, 1, 4))
+        return _measured(nothing, nothing[:, :, 0] > 0, np.zeros(0), np.zeros(0, np.int64))
     return _measured(
         np.concatenate([_padded(outline, widest) for outline in edges]),
         np.concatenate([np.pad(rim, ((0, 0), (0, widest - rim.shape[1]))) for rim in rims]),
+        np.concatenate(areas),
         np.concatenate(numbers),
     )
 
@@ -112,16 +124,18 @@ def _padded(outline: Floats, widest: int) -> Floats:
     return np.concatenate([outline, np.repeat(start, room, axis=1)], axis=1)
 
 
-def _pieces(gap: Polygon, grading: Grading, least: int) -> tuple[Floats, NDArray[np.bool_]]:
-    """Edges of the panels of one gap, and which of them lie on the rim of the gap."""
+def _pieces(
+    gap: Polygon, grading: Grading, least: float
+) -> tuple[Floats, NDArray[np.bool_], Floats]:
+    """Edges of the panels of one gap, which of them lie on the rim of the gap, and areas."""
     angle = _frame_angle(gap, grading)
     turned = rotate(gap, -angle, origin=(0, 0), use_radians=True) if angle else gap
     lines = _segments(grading.lines, gap, grading)
     cos, sin = np.cos(angle), np.sin(angle)
     back = np.array([[cos, -sin], [sin, cos]])
     local = (lines.reshape(-1, 2) @ back).reshape(-1, 4)
-    outline, rim = _clipped(turned, local, grading, least)
-    return (outline.reshape(-1, 2) @ back.T).reshape(outline.shape), rim
+    outline, rim, area = _clipped(turned, local, grading, least)
+    return (outline.reshape(-1, 2) @ back.T).reshape(outline.shape), rim, area
 
 
 def _frame_angle(gap: Polygon, grading: Grading) -> float:
@@ -183,8 +197,8 @@ def _entries(gap: Polygon, lines: Floats) -> Floats:
 
 
 def _clipped(
-    gap: Polygon, lines: Floats, grading: Grading, least: int
-) -> tuple[Floats, NDArray[np.bool_]]:
+    gap: Polygon, lines: Floats, grading: Grading, least: float
+) -> tuple[Floats, NDArray[np.bool_], Floats]:
     """Halve the cells of the bounding box until they are fine enough, and clip them."""
     shapely.prepare(gap)
     west, south, east, north = gap.bounds
@@ -192,25 +206,39 @@ def _clipped(
     hair = 1e-7 * max(east - west, north - south)
     around = [west - hair, south - 1.7 * hair, east + 2.3 * hair, north + 1.3 * hair]
     boxes = _roots(around, grading.near_mm)
+    shapes = np.full(len(boxes), gap, dtype=object)
     rim = _entries(gap, lines)
     holes = np.array([ring.bounds for ring in gap.interiors]).reshape(-1, 4)
-    limit = np.array([max(east - west, north - south) / least] * 2)
-    done: list[Floats] = []
-    for _ in range(_MAX_DEPTH):
+    limit = max(east - west, north - south) / least
+    done: list[tuple[Floats, NDArray[np.object_]]] = []
+    count = 0
+    while len(boxes):
         size = boxes[:, 2:] - boxes[:, :2]
         middle = (boxes[:, :2] + boxes[:, 2:]) / 2
         wanted = np.minimum(_wanted(middle[:, 0], middle[:, 1], lines, rim, grading), limit)
         over = (size > wanted * 1.2) | _swallows(boxes, holes)[:, None]
         fine = ~over.any(axis=1)
-        done.append(boxes[fine])
-        boxes, over, middle = boxes[~fine], over[~fine], middle[~fine]
-        if not len(boxes):
-            break
-        boxes = _halved(boxes, middle, over)
-        boxes = boxes[shapely.intersects(gap, shapely.box(*boxes.T))]
-    else:
-        done.append(boxes)
-    return _cut_out(gap, np.concatenate(done))
+        done.append((boxes[fine], shapes[fine]))
+        count += int(fine.sum())
+        boxes, owner = _halved(boxes[~fine], middle[~fine], over[~fine])
+        if count + len(boxes) > grading.most:
+            raise TooManyPanelsError
+        boxes, shapes = _met(gap, boxes, shapes[~fine][owner])
+    return _cut_out(gap, np.concatenate([b for b, _ in done]), np.concatenate([s for _, s in done]))
+
+
+def _met(
+    gap: Polygon, boxes: Floats, shapes: NDArray[np.object_]
+) -> tuple[Floats, NDArray[np.object_]]:
+    """Cells that meet the gap, each with the part of an intricate gap that is left in it."""
+    cells = shapely.box(*boxes.T)
+    met = shapely.intersects(gap, cells)
+    boxes, cells, shapes = boxes[met], cells[met], shapes[met]
+    intricate = shapely.get_num_coordinates(shapes) > _INTRICATE
+    if intricate.any():
+        shapes = shapes.copy()
+        shapes[intricate] = shapely.intersection(shapes[intricate], cells[intricate])
+    return boxes, shapes
 
 
 def _roots(around: Sequence[float], near_mm: float) -> Floats:
@@ -242,50 +270,67 @@ def _swallows(boxes: Floats, holes: Floats) -> NDArray[np.bool_]:
     return swallowed
 
 
-def _halved(boxes: Floats, middle: Floats, over: NDArray[np.bool_]) -> Floats:
-    """Halve each cell along the axes that are too long, in a fixed order."""
+def _halved(
+    boxes: Floats, middle: Floats, over: NDArray[np.bool_]
+) -> tuple[Floats, Ints]:
+    """Halve each cell along the axes that are too long; the parts and whose parts they are."""
+    owner = np.arange(len(boxes))
     for axis in (0, 1):
-        cut_ = over[:, axis]
-        low, high = boxes.copy(), boxes[cut_].copy()
-        low[cut_, 2 + axis] = middle[cut_, axis]
-        high[:, axis] = middle[cut_, axis]
+        split = over[:, axis]
+        low, high = boxes.copy(), boxes[split].copy()
+        low[split, 2 + axis] = middle[split, axis]
+        high[:, axis] = middle[split, axis]
         boxes = np.concatenate([low, high])
-        middle = np.concatenate([middle, middle[cut_]])
-        over = np.concatenate([over, over[cut_]])
-    return boxes
+        owner = np.concatenate([owner, owner[split]])
+        middle = np.concatenate([middle, middle[split]])
+        over = np.concatenate([over, over[split]])
+    return boxes, owner
 
 
-def _cut_out(gap: Polygon, boxes: Floats) -> tuple[Floats, NDArray[np.bool_]]:
-    """Clip cells to the gap; edges of the pieces and which of them lie on the rim."""
-    cells = shapely.box(*boxes.T)
-    whole = shapely.contains_properly(gap, cells)
+def _cut_out(
+    gap: Polygon, boxes: Floats, shapes: NDArray[np.object_]
+) -> tuple[Floats, NDArray[np.bool_], Floats]:
+    """Clip cells to the gap: edges of the pieces, which of them lie on the rim, and areas."""
+    whole = shapely.contains_properly(gap, shapely.box(*boxes.T))
     outlines = [_box_edges(boxes[whole])]
     rims = [np.zeros((int(whole.sum()), 4), dtype=bool)]
+    areas = [np.prod(boxes[whole, 2:] - boxes[whole, :2], axis=1)]
     if not whole.all():
-        pieces, owner = shapely.get_parts(
-            shapely.intersection(gap, cells[~whole]), return_index=True
-        )
-        size = np.prod(boxes[~whole][:, 2:] - boxes[~whole][:, :2], axis=1)[owner]
+        pieces, cells = _plain_pieces(shapes[~whole], boxes[~whole])
         area = shapely.area(pieces)
-        keep = area > _SLIVER * size
-        pieces, owner, area = pieces[keep], owner[keep], area[keep]
-        plain = shapely.simplify(pieces, 0.0)
-        edges = _edges_of(shapely.orient_polygons(_simpler(plain, area)))
-        rims.append(_on_rim(edges, boxes[~whole][owner]))
+        many = shapely.get_num_coordinates(pieces) > 7
+        pieces[many] = shapely.simplify(pieces[many], 0.03 * np.sqrt(area[many]))
+        edges = _edges_of(shapely.orient_polygons(pieces))
+        rims.append(_on_rim(edges, cells))
         outlines.append(edges)
+        areas.append(area)
     widest = max(outline.shape[1] for outline in outlines)
     full = [_padded(outline, widest) for outline in outlines if len(outline)]
     marks = [np.pad(r, ((0, 0), (0, widest - r.shape[1]))) for r in rims if len(r)]
-    return np.concatenate(full), np.concatenate(marks)
+    return np.concatenate(full), np.concatenate(marks), np.concatenate(areas)
 
 
-def _simpler(pieces: NDArray[np.object_], area: Floats) -> NDArray[np.object_]:
-    """Straighten curved rims until no piece has more edges than the arrays hold."""
-    many = shapely.get_num_coordinates(pieces) > 7
-    if many.any():
-        pieces = pieces.copy()
-        pieces[many] = shapely.simplify(pieces[many], 0.03 * np.sqrt(area[many]))
-    return pieces
+def _plain_pieces(
+    shapes: NDArray[np.object_], boxes: Floats
+) -> tuple[NDArray[np.object_], Floats]:
+    """Clip to cells, and cut cells on until no piece has too many corners for the arrays."""
+    done: list[tuple[NDArray[np.object_], Floats]] = []
+    for last in (False, False, False, False, False, True):
+        pieces, owner = shapely.get_parts(
+            shapely.intersection(shapes, shapely.box(*boxes.T)), return_index=True
+        )
+        cells = boxes[owner]
+        keep = shapely.area(pieces) > _SLIVER * np.prod(cells[:, 2:] - cells[:, :2], axis=1)
+        pieces, cells = shapely.simplify(pieces[keep], 0.0), cells[keep]
+        rough = shapely.simplify(pieces, 0.03 * np.sqrt(shapely.area(pieces)))
+        good = (shapely.get_num_coordinates(rough) <= _MOST_CORNERS) | last
+        done.append((pieces[good], cells[good]))
+        if good.all():
+            break
+        middle = (cells[~good, :2] + cells[~good, 2:]) / 2
+        boxes, owner = _halved(cells[~good], middle, np.ones((len(middle), 2), dtype=bool))
+        shapes = pieces[~good][owner]
+    return np.concatenate([p for p, _ in done]), np.concatenate([c for _, c in done])
 
 
 def _box_edges(boxes: Floats) -> Floats:
@@ -326,10 +371,10 @@ def _on_rim(edges: Floats, boxes: Floats) -> NDArray[np.bool_]:
     return ~border & (length > 0)
 
 
-def _measured(edges: Floats, rim: NDArray[np.bool_], gap: Ints) -> Panels:
-    """Widen panels at the rim and measure them."""
+def _measured(edges: Floats, rim: NDArray[np.bool_], true: Floats, gap: Ints) -> Panels:
+    """Widen panels at the rim, up to what their true area asks for, and measure them."""
     area, centre, _ = _moments(edges)
-    edges = _widened(edges, rim, area, centre)
+    edges = _widened(edges, rim, (1 + _WIDEN) * true / area - 1, centre)
     area, centre, spread = _moments(edges)
     xx, xy, yy = spread.T
     half = np.hypot((xx - yy) / 2, xy)
@@ -361,8 +406,8 @@ def _moments(edges: Floats) -> tuple[Floats, Floats, Floats]:
     return area, centre, np.stack([xx, xy - cx * cy, yy], axis=1)
 
 
-def _widened(edges: Floats, rim: NDArray[np.bool_], area: Floats, centre: Floats) -> Floats:
-    """Stretch panels across the rim by `_WIDEN`, away from their inner side."""
+def _widened(edges: Floats, rim: NDArray[np.bool_], part: Floats, centre: Floats) -> Floats:
+    """Stretch panels across the rim by a part of them, away from their inner side."""
     dx, dy = edges[:, :, 2] - edges[:, :, 0], edges[:, :, 3] - edges[:, :, 1]
     length = np.where(rim, np.hypot(dx, dy), 0.0)
     whole = np.maximum(length.sum(axis=1), 1e-300)
@@ -378,6 +423,6 @@ def _widened(edges: Floats, rim: NDArray[np.bool_], area: Floats, centre: Floats
     for first in (0, 2):
         x = edges[:, :, first] - fixed[:, None, 0]
         y = edges[:, :, first + 1] - fixed[:, None, 1]
-        out[:, :, first] += _WIDEN * (pull[0][:, None] * x + pull[1][:, None] * y)
-        out[:, :, first + 1] += _WIDEN * (pull[1][:, None] * x + pull[2][:, None] * y)
+        out[:, :, first] += part[:, None] * (pull[0][:, None] * x + pull[1][:, None] * y)
+        out[:, :, first + 1] += part[:, None] * (pull[1][:, None] * x + pull[2][:, None] * y)
     return out

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+import networkx as nx
 import numpy as np
 import shapely
 from numpy.typing import NDArray
@@ -17,6 +18,8 @@ from splitcheck.units import MU0, Floats
 _SNAP_MM = 1e-6
 #: The outside of the plane is a gap out to this many times its larger side.
 _REACH = 2.5
+#: ... but only to this many times the distance of another plane, if there is one.
+_REACH_PLATES = 12.0
 #: Gaps that would add less than this by themselves are left out unless a crossed gap is near, nH.
 _NEGLIGIBLE_NH = 5e-4
 #: At most this many gaps beside those crossed; the rest goes into the error.
@@ -47,6 +50,7 @@ def arrange(
     height_mm: float,
     outside: Polygon | None,
     kept: Sequence[LineString] = (),
+    plate_mm: float | None = None,
 ) -> Scene:
     """Clean and choose gaps, and pull the ends of lines back onto copper.
 
@@ -62,12 +66,16 @@ def arrange(
         Outline of the plane, or None.
     kept
         More lines of which a crossed gap is always kept: the bridges.
+    plate_mm
+        Distance of another plane, which keeps the field close to the rim of the board.
 
     Returns
     -------
     The scene.
     """
-    clean, endless = _merged(gaps, outside)
+    reach = np.inf if plate_mm is None else _REACH_PLATES * max(plate_mm, height_mm)
+    clean, endless = _merged(gaps, outside, reach)
+    lines = [shapely.remove_repeated_points(line, 1e-9) for line in lines]
     trimmed = [_on_copper(line, clean) for line in lines]
     near = [line for line, _ in trimmed if line is not None] or list(lines)
     chosen, coarse, left_out = _chosen(clean, near, [*near, *kept], height_mm, endless)
@@ -84,23 +92,42 @@ def arrange(
 
 
 def _merged(
-    gaps: Sequence[Polygon], outside: Polygon | None
+    gaps: Sequence[Polygon], outside: Polygon | None, reach_mm: float
 ) -> tuple[list[Polygon], int | None]:
     """Valid polygons that do not touch, in a fixed order, and which of them is the outside."""
-    shapes = [shapely.make_valid(gap) for gap in gaps if not gap.is_empty]
+    shapes = np.array([gap for gap in gaps if gap.area > 0], dtype=object)
+    shapes = shapely.get_parts(shapely.make_valid(shapes))
     if outside is not None:
         west, south, east, north = outside.bounds
-        reach = _REACH * max(east - west, north - south)
+        reach = min(_REACH * max(east - west, north - south), reach_mm)
         frame = shapely.box(west - reach, south - reach, east + reach, north + reach)
-        shapes.append(frame.difference(shapely.make_valid(outside)))
-    whole = shapely.union_all(shapes, grid_size=_SNAP_MM) if shapes else Polygon()
-    parts = [part for part in shapely.get_parts(whole) if part.geom_type == "Polygon"]
-    parts = [shapely.orient_polygons(part) for part in parts if part.area > 1e-9]
-    parts.sort(key=lambda part: part.bounds)
+        around = shapely.get_parts(frame.difference(shapely.make_valid(outside)))
+        shapes = np.concatenate([shapes, around])
+    parts = [part for part in _joined(shapes) if part.area > 1e-9]
+    parts.sort(key=lambda part: (part.bounds, part.area))
     endless = None
     if outside is not None and parts:
         endless = max(range(len(parts)), key=lambda k: shapely.box(*parts[k].bounds).area)
     return parts, endless
+
+
+def _joined(shapes: NDArray[np.object_]) -> list[Polygon]:
+    """Unite the polygons that touch, each group by itself; most gaps of a board stand alone."""
+    shapes = shapes[shapely.get_type_id(shapes) == shapely.GeometryType.POLYGON]
+    tree = shapely.STRtree(shapes)
+    first, second = tree.query(shapes, predicate="dwithin", distance=2 * _SNAP_MM)
+    graph = nx.Graph()
+    graph.add_nodes_from(range(len(shapes)))
+    graph.add_edges_from(zip(first.tolist(), second.tolist(), strict=True))
+    joined: list[Polygon] = []
+    for group in nx.connected_components(graph):
+        members = sorted(group)
+        if len(members) == 1:
+            joined.append(shapes[members[0]])
+            continue
+        united = shapely.union_all(shapes[members], grid_size=_SNAP_MM)
+        joined.extend(part for part in shapely.get_parts(united) if isinstance(part, Polygon))
+    return [shapely.orient_polygons(part) for part in joined]
 
 
 def _plainer(gap: Polygon, tolerance_mm: float) -> Polygon:
@@ -159,7 +186,7 @@ def _chosen(
     endless: int | None,
 ) -> tuple[list[int], list[bool], float]:
     """Gaps under a line, then those that matter to them; what the others may add, nH."""
-    if not gaps:
+    if not gaps or not lines:
         return [], [], 0.0
     shapes = np.array(gaps, dtype=object)
     swaths = shapely.union_all([line.buffer(3 * height_mm, quad_segs=2) for line in lines])
@@ -190,12 +217,13 @@ def _alone_nh(gaps: NDArray[np.object_], traces: Sequence[LineString], height_mm
     f changes by h a/(pi y^2) over it, and the disc has a polarisability of a^3/3 (from memory:
     Bethe's small hole), so that it adds about mu0 a^3/3 (h/(pi y^2))^2.
     """
-    if not len(gaps):
-        return np.zeros(0)
+    if not len(gaps) or not traces:
+        return np.zeros(len(gaps))
     bundle = shapely.multilinestrings(list(traces))
     shapely.prepare(bundle)
     low, high = shapely.bounds(gaps)[:, :2], shapely.bounds(gaps)[:, 2:]
     size = np.hypot(*(high - low).T)
-    away = np.maximum(shapely.distance(gaps, bundle), height_mm) + 0.25 * size
+    centres = shapely.points((low + high) / 2)
+    away = np.maximum(shapely.distance(centres, bundle) - 0.25 * size, height_mm)
     value: Floats = MU0 * size**3 / 3 * (height_mm / (np.pi * away**2)) ** 2
     return value

@@ -11,12 +11,14 @@ from typing import NamedTuple
 import networkx as nx
 import numpy as np
 import shapely
-from shapely import LineString, Polygon
+from numpy.typing import NDArray
+from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.copper.marks import Point
 from splitcheck.loops.bridges import IslandGraph, bridges_between
 from splitcheck.planes.crossings import Crossing
-from splitcheck.planes.islands import Plane
+from splitcheck.planes.islands import Plane, box_size_mm
+from splitcheck.planes.tracks import Ints
 from splitcheck.units import Floats
 
 #: Corners of gaps are thinned to this, mm, and coarser where there are very many.
@@ -25,8 +27,12 @@ THIN_MM = (0.02, 0.1, 0.4, 1.5)
 GRAZE_MM = 2e-3
 #: More corners than this in reach: thin the gaps more coarsely.
 MOST_CORNERS = 300
-#: So many pairs of bridges are followed in full; the rest would be longer by their straight length.
-MOST_PAIRS = 24
+#: So many bridges are looked at first from either end of a crossing, then three times as many.
+FIRST_BRIDGES = 12
+#: A way on the other side of the trace this many times longer than the best is not looked for.
+OTHER_SIDE = 5.0
+#: A straight leg to a bridge passes gaps up to this size, mm (antipads), and stops at larger ones.
+SMALL_GAP_MM = 3.0
 
 
 class Way(NamedTuple):
@@ -77,6 +83,7 @@ class Terrain:
 
     plane: Plane
     _known: dict[tuple[int, float], tuple[Polygon, Floats]] = field(default_factory=dict)
+    _large: MultiPolygon | None = None
 
     def obstacle(self, gap: int, thin_mm: float) -> tuple[Polygon, Floats]:
         """A gap's shape to be avoided and the corners a taut way may bend at, shape (n, 2)."""
@@ -89,6 +96,24 @@ class Terrain:
             shapely.prepare(core)
             self._known[key] = (core, _bends(shape))
         return self._known[key]
+
+    def blocked(self, starts: Floats, stops: Floats) -> NDArray[np.bool_]:
+        """Whether straight legs, shape (n, 2) at either end, run into a gap larger than small."""
+        lines = shapely.linestrings(np.stack([starts, stops], axis=1))
+        return np.asarray(shapely.intersects(self.large_gaps(), lines), dtype=np.bool_)
+
+    def large_gaps(self) -> MultiPolygon:
+        """All gaps larger than small, as one obstacle."""
+        if self._large is None:
+            self._large = MultiPolygon(
+                [
+                    gap.shape
+                    for gap in self.plane.gaps
+                    if gap.open or box_size_mm(gap.shape) > SMALL_GAP_MM
+                ]
+            )
+            shapely.prepare(self._large)
+        return self._large
 
     def crossed(self, line: LineString) -> list[int]:
         """Indexes of the gaps a line runs through."""
@@ -217,7 +242,7 @@ def _taut(
 
 def _free(
     here: Floats, there: Floats, blocks: Sequence[Polygon], barrier: LineString | None
-) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+) -> NDArray[np.bool_]:
     pairs = np.stack([np.broadcast_to(here, there.shape), there], axis=1)
     lines = shapely.linestrings(pairs)
     free = np.ones(len(there), dtype=np.bool_)
@@ -231,7 +256,7 @@ def _free(
     return free
 
 
-def _backwards(points: Floats, came: np.ndarray[tuple[int], np.dtype[np.intp]]) -> tuple[Point, ...]:
+def _backwards(points: Floats, came: Ints) -> tuple[Point, ...]:
     at, path = 1, []
     while at >= 0:
         path.append((float(points[at, 0]), float(points[at, 1])))
@@ -293,98 +318,113 @@ def _wall(crossing: Crossing, side: int) -> LineString:
 def _over_bridges(
     crossing: Crossing, planes: dict[int, Plane], terrains: dict[int, Terrain], graph: IslandGraph
 ) -> list[tuple[Way, int]]:
-    """Ways through a plated hole, an island of another layer and a plated hole back."""
+    """The best way on either side over a plated hole, another layer's island and a hole back."""
     plane = planes[crossing.plane]
     one, other = (plane.islands[i].id for i in crossing.islands)
-    found: list[tuple[Way, int]] = []
-    shared = sorted(set(graph.adj[one]) & set(graph.adj[other]))
-    best = {1: inf, -1: inf}
-    for middle in shared:
-        for length, a, b in _pairs(crossing, graph, one, middle, other):
-            side = _side(crossing, a, b)
-            if length >= best[side]:
-                continue
-            way = _follow(crossing, planes, terrains, graph, middle, a, b)
-            if way is not None and way.length_mm < best[side]:
-                best[side] = way.length_mm
-                found.append((way, side))
-    return found
+    best: dict[int, Way] = {}
+    for middle in sorted(set(graph.adj[one]) & set(graph.adj[other])):
+        island = graph.nodes[middle]["island"]
+        down = _candidates(crossing, bridges_between(graph, one, middle), -1)
+        up = _candidates(crossing, bridges_between(graph, middle, other), 1)
+        search = _Search(crossing, terrains[crossing.plane], terrains[island.layer], best)
+        for length, side, a, b in search.pairs(down, up):
+            path = (crossing.before, a, b, crossing.after)
+            best[side] = Way(length, path, (a, b), island.net_name, island.layer)
+    return [(way, side) for side, way in sorted(best.items())]
 
 
-def _pairs(
-    crossing: Crossing, graph: IslandGraph, one: str, middle: str, other: str
-) -> list[tuple[float, Point, Point]]:
-    """Pairs of bridges down and up by straight length, those whose legs stay on their own side."""
-    down, up = bridges_between(graph, one, middle), bridges_between(graph, middle, other)
-    (dx, dy), (x, y) = _heading(crossing), crossing.at
-    behind = (down[:, 0] - x) * dx + (down[:, 1] - y) * dy
-    beyond = (up[:, 0] - x) * dx + (up[:, 1] - y) * dy
-    if one == other:
-        down, up = down[behind < 0], up[beyond > 0]
-    to_down = np.hypot(*(down - np.asarray(crossing.before)).T)
-    from_up = np.hypot(*(up - np.asarray(crossing.after)).T)
-    down, to_down = _nearest(down, to_down)
-    up, from_up = _nearest(up, from_up)
-    if not len(down) or not len(up):
-        return []
-    between = np.hypot(
-        down[:, None, 0] - up[None, :, 0], down[:, None, 1] - up[None, :, 1]
+def _candidates(crossing: Crossing, places: Floats, end: int) -> Floats:
+    """Bridges on one end's side of the gap, in the order in which they can make a way short."""
+    if crossing.islands[0] == crossing.islands[1]:
+        (dx, dy), (x, y) = _heading(crossing), crossing.at
+        places = places[((places[:, 0] - x) * dx + (places[:, 1] - y) * dy) * end > 0]
+    return places[np.argsort(_through(crossing, places), kind="stable")]
+
+
+def _through(crossing: Crossing, places: Floats) -> Floats:
+    """Straight length from entry to exit by way of each place: no way through it is shorter."""
+    return np.asarray(
+        np.hypot(*(places - np.asarray(crossing.before)).T)
+        + np.hypot(*(places - np.asarray(crossing.after)).T)
     )
-    total = to_down[:, None] + between + from_up[None, :]
-    ranked = np.argsort(total, axis=None, kind="stable")[:MOST_PAIRS]
-    return [
-        (
-            float(total[i, j]),
-            (float(down[i, 0]), float(down[i, 1])),
-            (float(up[j, 0]), float(up[j, 1])),
+
+
+class _Search:
+    """Best pairs of bridges over one borrowed island, given the ways already known.
+
+    Legs go straight past antipads and the like; gaps larger than that are not gone through.
+    """
+
+    def __init__(
+        self, crossing: Crossing, own: Terrain, borrowed: Terrain, best: dict[int, Way]
+    ) -> None:
+        self.crossing = crossing
+        self.own = own
+        self.borrowed = borrowed
+        self.known = {side: way.length_mm for side, way in best.items()}
+
+    def pairs(self, down: Floats, up: Floats) -> list[tuple[float, int, Point, Point]]:
+        """The shortest pair on either side, each better than what is known: length, side, places.
+
+        Places are taken up in the order of ``_through``, a few more each time, until those left
+        cannot be on a shorter way than the one found.
+        """
+        found: dict[int, tuple[float, int, Point, Point]] = {}
+        through = [_through(self.crossing, down), _through(self.crossing, up)]
+        taken = FIRST_BRIDGES
+        while len(down) and len(up):
+            reached = [self._reached(down[:taken], -1), self._reached(up[:taken], 1)]
+            for pair in self._best_of(*reached):
+                if pair[0] < self.known.get(pair[1], inf):
+                    self.known[pair[1]] = pair[0]
+                    found[pair[1]] = pair
+            left = [float(far[taken]) if taken < len(far) else inf for far in through]
+            if min(left) >= self._enough():
+                break
+            taken *= 3
+        return [found[side] for side in sorted(found)]
+
+    def _enough(self) -> float:
+        """No way longer than this is looked for: the other side's would carry hardly anything."""
+        if not self.known:
+            return inf
+        worst = max(self.known.values()) if len(self.known) == 2 else inf
+        return min(worst, OTHER_SIDE * min(self.known.values()))
+
+    def _reached(self, places: Floats, end: int) -> Floats:
+        at = np.asarray(self.crossing.before if end < 0 else self.crossing.after)
+        return places[~self.own.blocked(np.broadcast_to(at, places.shape), places)]
+
+    def _best_of(self, down: Floats, up: Floats) -> list[tuple[float, int, Point, Point]]:
+        if not len(down) or not len(up):
+            return []
+        (dx, dy), (x, y) = _heading(self.crossing), self.crossing.at
+        between = np.hypot(down[:, None, 0] - up[None, :, 0], down[:, None, 1] - up[None, :, 1])
+        total = (
+            np.hypot(*(down - np.asarray(self.crossing.before)).T)[:, None]
+            + between
+            + np.hypot(*(up - np.asarray(self.crossing.after)).T)[None, :]
         )
-        for i, j in zip(*np.unravel_index(ranked, total.shape), strict=True)
-    ]
+        middle = (down[:, None, :] + up[None, :, :]) / 2
+        left = (middle[..., 1] - y) * dx - (middle[..., 0] - x) * dy >= 0
+        pairs = []
+        for side, mask in ((1, left), (-1, ~left)):
+            mask &= total < self.known.get(side, inf)
+            rows, columns = np.nonzero(mask)
+            order = np.argsort(total[rows, columns], kind="stable")
+            for start in range(0, len(order), FIRST_BRIDGES):
+                i = rows[order[start : start + FIRST_BRIDGES]]
+                j = columns[order[start : start + FIRST_BRIDGES]]
+                open_legs = np.flatnonzero(~self.borrowed.blocked(down[i], up[j]))
+                if len(open_legs):
+                    i, j = i[open_legs[0]], j[open_legs[0]]
+                    pairs.append((float(total[i, j]), side, _point(down[i]), _point(up[j])))
+                    break
+        return pairs
 
 
-def _nearest(places: Floats, far: Floats) -> tuple[Floats, Floats]:
-    keep = np.argsort(far, kind="stable")[:200]
-    return places[keep], far[keep]
-
-
-def _side(crossing: Crossing, a: Point, b: Point) -> int:
-    (dx, dy), (x, y) = _heading(crossing), crossing.at
-    middle_x, middle_y = (a[0] + b[0]) / 2, (a[1] + b[1]) / 2
-    return 1 if (middle_y - y) * dx - (middle_x - x) * dy >= 0 else -1
-
-
-def _follow(
-    crossing: Crossing,
-    planes: dict[int, Plane],
-    terrains: dict[int, Terrain],
-    graph: IslandGraph,
-    middle: str,
-    a: Point,
-    b: Point,
-) -> Way | None:
-    """The way over two bridges, each leg inside its island."""
-    island = graph.nodes[middle]["island"]
-    legs = [
-        _leg(terrains[crossing.plane], crossing.before, a),
-        _leg(terrains[island.layer], a, b),
-        _leg(terrains[crossing.plane], b, crossing.after),
-    ]
-    length, path = 0.0, [crossing.before]
-    for leg in legs:
-        if leg is None:
-            return None
-        length += leg[0]
-        path.extend(leg[1][1:])
-    return Way(length, tuple(path), (a, b), island.net_name, island.layer)
-
-
-def _leg(terrain: Terrain, a: Point, b: Point) -> tuple[float, tuple[Point, ...]] | None:
-    """A short leg of a way; a leg that must go more than three times round is no way."""
-    line = LineString([a, b])
-    if not terrain.crossed(line):
-        return line.length, (a, b)
-    found = _within(terrain, a, b, None, 3 * line.length + 1.0, THIN_MM[0])
-    return found if isinstance(found, tuple) else None
+def _point(place: Floats) -> Point:
+    return float(place[0]), float(place[1])
 
 
 def _chain(graph: IslandGraph, one: str, other: str, start: Point, goal: Point) -> Way | None:

@@ -13,7 +13,7 @@ from shapely import LineString, Point, Polygon
 
 from splitcheck.errors import SplitcheckError
 from splitcheck.loops.matrix import interaction
-from splitcheck.loops.panels import Grading, Panels, cut
+from splitcheck.loops.panels import Grading, Panels, TooManyPanelsError, cut
 from splitcheck.loops.relevant import Scene, arrange
 from splitcheck.loops.sources import islands, point_angles, strip_source
 from splitcheck.units import MU0, Floats
@@ -30,6 +30,10 @@ _MORE = 2
 _REFINE_BELOW = 300
 #: More unknowns than this are not solved for: the panels are made coarser instead.
 MAX_PANELS = 2000
+_COARSEN = 12
+#: A gap is cut into so many panels at least along its longer side, one far from traces into fewer.
+_LEAST = 8.4
+_LEAST_FAR = 2.1
 #: What the method itself is off by where mesh and truncation are not: against the independent
 #: field solves of tests/loops/reference.csv, mostly because a real strip crowds its current.
 _METHOD_ERROR = 0.03
@@ -157,6 +161,7 @@ def added(
         height_mm,
         outside,
         [bridge.line for bridge in bridges if isinstance(bridge, Strap)],
+        beyond_mm or above_mm,
     )
     job = _job(scene, traces, bridges, height_mm, beyond_mm, above_mm)
     coarse = _solved(job, _panels(job, fineness / _COARSER))
@@ -314,14 +319,18 @@ def _panels(job: _Job, fineness: float) -> Panels:
     """Cut the gaps, coarser and coarser until there are not too many panels."""
     lines = tuple(LineString(strip.line) for strip in job.strips)
     near, slope = job.near_mm / fineness, _SLOPE / fineness
-    main = 4 if fineness >= 1 else 2
-    least = tuple(2 if coarse else main for coarse in job.scene.coarse)
-    for _ in range(12):
-        mesh = cut(job.scene.gaps, Grading(lines, near, slope), least)
-        if len(mesh) <= MAX_PANELS:
-            return mesh
-        near, slope, least = near * 1.5, min(slope * 1.25, 2.0), tuple(2 for _ in least)
-    wrong = f"{len(job.scene.gaps)} gaps need {len(mesh)} panels, more than {MAX_PANELS}"
+    least = np.where(job.scene.coarse, _LEAST_FAR, _LEAST) * fineness
+    for _ in range(_COARSEN):
+        grading = Grading(lines, near, slope, most=MAX_PANELS)
+        try:
+            mesh = cut(job.scene.gaps, grading, [float(k) for k in np.maximum(least, 2.0)])
+        except TooManyPanelsError:
+            pass
+        else:
+            if len(mesh) <= MAX_PANELS:
+                return mesh
+        near, slope, least = near * 1.7, min(slope * 1.4, 3.0), least / 1.7
+    wrong = f"{len(job.scene.gaps)} gaps need more than {MAX_PANELS} panels"
     raise SplitcheckError("gaps", wrong, "give fewer or simpler gaps")
 
 

@@ -114,7 +114,8 @@ def _beside(line: Floats, offset_mm: float) -> Floats:
     before, after = np.concatenate([normal[:1], normal]), np.concatenate([normal, normal[-1:]])
     # mitred corners; a hairpin would throw its corner to infinity, so the mitre is held to 2
     mitre = (before + after) / np.maximum(1 + (before * after).sum(axis=1), 0.5)[:, None]
-    return np.concatenate([line[:1], line + offset_mm * mitre, line[-1:]])
+    beside: Floats = np.concatenate([line[:1], line + offset_mm * mitre, line[-1:]])
+    return beside
 
 
 def islands(gaps: Sequence[Polygon], points: Floats) -> list[tuple[int, Floats]]:

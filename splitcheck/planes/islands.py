@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 from rtree import index
 from shapely import MultiPolygon, Polygon
 
@@ -77,15 +78,19 @@ class Plane:
         self._shapes = [island.shape for island in islands]
         self.gap_boxes = _box_index(gap.shape for gap in self.gaps)
 
-    def island_at(self, xs: Floats, ys: Floats) -> np.ndarray[tuple[int], np.dtype[np.intp]]:
+    def island_at(self, xs: Floats, ys: Floats) -> NDArray[np.intp]:
         """Index of the island under each point, -1 where copper is missing; shape (n,)."""
         return locate(xs, ys, self._shapes)
 
-    def tiles_over(
-        self, lines: np.ndarray[tuple[int], np.dtype[np.object_]]
-    ) -> np.ndarray[tuple[int, int], np.dtype[np.intp]]:
+    def tiles_over(self, lines: NDArray[np.object_]) -> NDArray[np.intp]:
         """Pairs (line, tile) that meet, shape (2, n)."""
-        return self._tile_tree.query(lines, predicate="intersects")  # type: ignore[return-value]
+        return self._tile_tree.query(lines, predicate="intersects")
+
+
+def box_size_mm(shape: Polygon) -> float:
+    """Larger side of a shape's box, mm."""
+    x0, y0, x1, y1 = shape.bounds
+    return max(x1 - x0, y1 - y0)
 
 
 def find_planes(board: Board) -> tuple[Plane, ...]:
