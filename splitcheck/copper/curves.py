@@ -12,8 +12,8 @@ from splitcheck.units import Floats
 
 #: How far a chord may lie from its arc, mm. Half the finest etching tolerance, by far.
 SAGITTA_MM = 0.002
-#: An arc that bends less than this is a straight line, mm.
-FLAT_MM = 0.0001
+#: An arc that turns less than this may be one chord (0.04 % of its sector's area), radians.
+FLAT_RAD = 0.05
 #: A circle never has fewer corners than this, however small.
 FEWEST_CORNERS = 16
 
@@ -126,10 +126,9 @@ def arc(start: Point, end: Point, centre: Point, *, clockwise: bool) -> list[Poi
     if first == 0 or last == 0:
         return [end]
     angle = sweep_rad(start, end, centre, clockwise=clockwise)
-    radius = max(first, last)
-    chords = max(1, ceil(angle / step_rad(radius) - 1e-9))
+    chords = max(1, ceil(angle / step_rad(max(first, last)) - 1e-9))
     if chords == 1:
-        if radius * (1 - cos(angle / 2)) < FLAT_MM:
+        if angle < FLAT_RAD:
             return [end]
         # One chord has no inner corner to move: a circle of many short arcs would lose area.
         chords = 2

@@ -15,23 +15,29 @@ HEAD = "%FSLAX33Y33*%%MOMM*%%ADD10C,1*%%ADD11R,2X1*%G01*G75*\n"
 
 
 def read(body: str, head: str = HEAD) -> Drawing:
+    """The body after a usual header."""
     return gerber.read(head + body + "M02*", "it.gbr")
 
 
 def copper(body: str, head: str = HEAD) -> tuple[Polygon, ...]:
+    """Its copper."""
     return paint.paint(read(body, head).marks)
 
 
 def area_mm2(body: str, head: str = HEAD) -> float:
+    """Area of its copper."""
     return sum(piece.area for piece in copper(body, head))
 
 
 def bounds_mm(body: str, head: str = HEAD) -> tuple[float, ...]:
+    """Box round its copper."""
     found = shapely.total_bounds(copper(body, head))
     return tuple(round(float(value), 6) for value in found)
 
 
 class TestOperations:
+    """D01, D02, D03 and the aperture in hand."""
+
     def test_stroke_keeps_its_centre_line_width_and_line(self) -> None:
         """D02 then D01 is one stroke, as drawn."""
         (mark,) = read("D10*\nX0Y0D02*\nX3000Y4000D01*\n").marks
@@ -92,6 +98,8 @@ class TestOperations:
 
 
 class TestNumbers:
+    """FS, MO and their old forms."""
+
     def test_inch_and_mm_agree(self) -> None:
         """One inch is 25.4 mm, in coordinates and in apertures."""
         inch = "%FSLAX24Y24*%%MOIN*%%ADD10C,0.1*%"
@@ -134,6 +142,8 @@ class TestNumbers:
 
 
 class TestArcs:
+    """G02 and G03 in both modes."""
+
     @pytest.mark.parametrize("clockwise", [False, True])
     @pytest.mark.parametrize("quadrant", range(4))
     @pytest.mark.parametrize("single", [False, True])
@@ -188,6 +198,8 @@ class TestArcs:
 
 
 class TestApertures:
+    """AD with the standard templates."""
+
     @pytest.mark.parametrize(
         ("definition", "area"),
         [
@@ -233,6 +245,8 @@ class TestApertures:
 
 
 class TestTransformations:
+    """LM, LR and LS."""
+
     head = HEAD + "%AMT*4,1,3,0,0,2,0,0,1,0,0,0*%%ADD20T*%"
 
     @pytest.mark.parametrize(
@@ -269,6 +283,8 @@ class TestTransformations:
 
 
 class TestRepeats:
+    """SR and AB."""
+
     def test_step_repeat_is_copies_written_out(self) -> None:
         """Three columns, two rows."""
         body = "%SRX3Y2I10J20*%D10*X0Y0D03*X1000Y0D03*%SR*%"
@@ -318,6 +334,8 @@ class TestRepeats:
 
 
 class TestRegions:
+    """G36 and G37."""
+
     def test_each_move_ends_a_contour(self) -> None:
         """Two squares in one region."""
         body = (
@@ -357,6 +375,8 @@ class TestRegions:
 
 
 class TestPolarity:
+    """LP and IP."""
+
     def test_paint_follows_file_order(self) -> None:
         """Dark, clear, dark: the last dot stands in the hole."""
         head = HEAD + "%ADD30C,9*%%ADD31C,5*%%ADD32C,1*%"
@@ -373,6 +393,8 @@ class TestPolarity:
 
 
 class TestOldImageParameters:
+    """OF, MI, SF, IR and AS."""
+
     @pytest.mark.parametrize(
         ("commands", "at", "bounds"),
         [
@@ -402,6 +424,8 @@ class TestOldImageParameters:
 
 
 class TestAttributes:
+    """TF, TA, TO and TD."""
+
     def test_object_attributes_make_the_tag(self) -> None:
         """Net, component and pin; TD takes one away or all."""
         body = (
@@ -448,6 +472,8 @@ class TestAttributes:
 
 
 class TestSyntax:
+    """Words, blocks, comments, ends."""
+
     def test_several_commands_in_one_block_and_over_lines(self) -> None:
         """Common in one family of exporters."""
         (mark,) = read("D10*\nX1000Y0D03*", "%FSLAX33Y33*\nMOMM*\nADD10C,1*%\n").marks

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import warnings
 from collections.abc import Iterable
 from importlib import resources
@@ -14,6 +15,7 @@ import numpy as np
 import pytest
 import shapely
 from shapely import LineString, Point, Polygon
+from shapely.affinity import affine_transform
 from shapely.geometry.base import BaseGeometry
 
 from splitcheck.copper import gerber, paint
@@ -23,12 +25,10 @@ gerbonara = pytest.importorskip("gerbonara")
 
 def gerbonara_area_mm2(text: str) -> float:
     """Area of the copper that gerbonara sees, each primitive by the plainest shapely means."""
-    from gerbonara.utils import MM
-
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")
         file = gerbonara.GerberFile.from_string(text)
-    primitives = [p for thing in file.objects for p in thing.to_primitives(unit=MM)]
+    primitives = [p for thing in file.objects for p in thing.to_primitives(unit=gerbonara.utils.MM)]
     image: BaseGeometry = Polygon()
     for dark, run in groupby(primitives, key=lambda p: bool(p.polarity_dark)):
         shapes = shapely.union_all(np.array([shape_of(p) for p in run], dtype=object))
@@ -52,8 +52,9 @@ def shape_of(primitive: Any) -> BaseGeometry:
         case "Rectangle":
             w, h = primitive.w / 2, primitive.h / 2
             box = shapely.box(-w, -h, w, h)
-            turned = shapely.affinity.rotate(box, primitive.rotation, (0, 0), use_radians=True)
-            return shapely.affinity.translate(turned, primitive.x, primitive.y)
+            c, s = cos(primitive.rotation), sin(primitive.rotation)
+            turned: BaseGeometry = affine_transform(box, [c, -s, s, c, primitive.x, primitive.y])
+            return turned
         case "ArcPoly":
             return outline_of(primitive)
         case other:
@@ -61,6 +62,7 @@ def shape_of(primitive: Any) -> BaseGeometry:
 
 
 def outline_of(polygon: Any) -> BaseGeometry:
+    """A region or macro outline, arcs flattened."""
     ring = list(polygon.outline[:1])
     for start, end, (clockwise, centre) in polygon.segments:
         if clockwise is None:
@@ -69,7 +71,9 @@ def outline_of(polygon: Any) -> BaseGeometry:
             ring.extend(bent(start, end, centre, clockwise=clockwise))
     if len(ring) < 4:
         return Polygon()
-    return shapely.make_valid(Polygon(ring))
+    # By winding: even-odd repair loses parts where a cut-in runs along another edge (measured
+    # on a 23,000-corner contour: 120 mm2 off the signed area, which the winding repair meets).
+    return shapely.make_valid(Polygon(ring), method="structure", keep_collapsed=False)
 
 
 Pair = tuple[float, float]
@@ -93,4 +97,80 @@ def bent(start: Pair, end: Pair, centre: Pair, *, clockwise: bool) -> Iterable[P
 
 
 def area_mm2(text: str) -> float:
+    """Area of the copper as this program reads and paints it."""
     return sum(piece.area for piece in paint.paint(gerber.read(text, "it").marks))
+
+
+#: Polygons as macros of primitive 5, which gerbonara 1.5.0 sets down at the origin of the board
+#: and not at the flash (a fault of it: the format, clause 4.5.1.6, has them at the flash).
+OCTAGON = re.compile(r"%ADD(\d+)OC8,([\d.]+)\*%")
+
+
+def without_primitive_5(text: str) -> str:
+    """The same file with its octagon macros as standard polygon apertures of the same corners."""
+
+    def polygon(match: re.Match[str]) -> str:
+        return f"%ADD{match[1]}P,{1.08239 * float(match[2]):.8f}X8X22.5*%"
+
+    return OCTAGON.sub(polygon, text)
+
+
+#: A board of each of six CAD systems: folder and layers, the smaller ones.
+BOARDS = {
+    "bitaxe-ultra": "*_Cu.gbr",
+    "sonata-xl": "*.G[36]",
+    "parallella-carrier": "*L03.art",
+    "eez-mcu": "*.G2L",
+    "target3001": "*.Bot",
+    "opsis-hdmi2usb": "*SIGNAL1-X.gbr",
+}
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("board", BOARDS)
+def test_area_of_real_layers(corpus: Path, board: str) -> None:
+    """Within 0.1 % on every copper layer (all 62 layers of eleven boards were within 0.02 %)."""
+    files = sorted((corpus / board).glob(BOARDS[board]))
+    assert files
+    for file in files:
+        text = file.read_text(encoding="latin-1")
+        expected = gerbonara_area_mm2(without_primitive_5(text))
+        assert area_mm2(text) == pytest.approx(expected, rel=1e-3), file.name
+
+
+SHIPPED = ["simple_2layer-F_Cu.gbr", "simple_2layer-F_Mask.gbr", "simple_2layer-F_Silkscreen.gbr"]
+
+
+@pytest.mark.parametrize("name", SHIPPED)
+def test_area_of_files_that_a_package_ships(name: str) -> None:
+    """The example board inside the pygerber wheel (PyPI, MIT)."""
+    text = (resources.files("pygerber") / "examples" / name).read_text(encoding="utf-8")
+    assert area_mm2(text) == pytest.approx(gerbonara_area_mm2(text), rel=1e-3)
+
+
+HEAD = "%FSLAX33Y33*%%MOMM*%%ADD10C,0.3*%%ADD11R,2X1*%%ADD12O,3X1*%%ADD13P,2X6X10*%G01*G75*"
+MACRO = (
+    "\n%AMMIX*\n1,1,1.5,0.5,0*\n21,1,3,0.5,0,0,30*\n20,1,0.4,0,0,1,1,0*\n4,1,3,0,0,2,0,0,1,0,0,15*\n%"
+    "\n%ADD14MIX*%\n"
+)
+SMALL = {
+    "strokes": "D10*X0Y0D02*X5000Y3000D01*X9000D01*Y0D01*X0Y0D01*",
+    "flashes": "D11*X0Y0D03*D12*X5000D03*D13*Y5000D03*D10*X0D03*",
+    "macro": MACRO + "D14*X0Y0D03*X9000Y1000D03*",
+    "multi-quadrant arcs": "D10*X3000Y0D02*G03*X0Y3000I-3000J0D01*G02*X3000Y0I0J-3000D01*",
+    "full circle": "D10*X3000Y0D02*G03*X3000Y0I-3000J0D01*",
+    "single-quadrant arcs": "G74*D10*X3000Y0D02*G03*X0Y3000I3000J0D01*X-3000Y0I0J3000D01*",
+    "region with arcs": "G36*X0Y0D02*G01*X4000D01*G03*X0Y4000I-4000J0D01*G01*X0Y0D01*G37*",
+    "cut-in": "G36*X0Y0D02*X9000D01*Y9000D01*X0D01*Y5000D01*X3000D01*Y6000D01*X6000D01*"
+    "Y3000D01*X3000D01*Y5000D01*X0D01*Y0D01*G37*",
+    "polarity": "G36*X0Y0D02*X9000D01*Y9000D01*X0D01*Y0D01*G37*%LPC*%D12*X4000Y4000D03*"
+    "D10*X0Y0D02*X9000Y9000D01*%LPD*%D11*X4000Y4000D03*",
+    "old image parameters": "%OFA0B0*%%IPPOS*%%MIA0B0*%%SFA1.0B1.0*%D11*X0Y0D03*",
+}
+
+
+@pytest.mark.parametrize("name", SMALL)
+def test_area_of_small_files(name: str) -> None:
+    """One construct each, where gerbonara is right; within 0.1 %."""
+    text = HEAD + SMALL[name] + "M02*"
+    assert area_mm2(text) == pytest.approx(gerbonara_area_mm2(text), rel=1e-3)

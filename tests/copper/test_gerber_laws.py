@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from math import pi
 
@@ -14,6 +15,7 @@ from shapely import affinity
 from shapely.geometry.base import BaseGeometry
 
 from splitcheck.copper import gerber, paint
+from splitcheck.copper.marks import Mark
 
 #: Coordinates on a grid that mm and inch share: 0.254 mm = 0.01 in.
 STEP_MM = 0.254
@@ -46,6 +48,7 @@ drawings = st.lists(moves, min_size=1, max_size=7)
 
 
 def header(*, inch: bool = False) -> str:
+    """Format, units and four apertures of the same size in mm."""
     step = STEP_MM / 25.4 if inch else STEP_MM
     lines = [f"%FSLAX44Y44*%%MO{'IN' if inch else 'MM'}*%", MACRO]
     for number, template in enumerate(APERTURES):
@@ -54,6 +57,7 @@ def header(*, inch: bool = False) -> str:
 
 
 def body(drawing: list[Move], *, inch: bool = False, shift: tuple[int, int] = (0, 0)) -> str:
+    """The operations of a drawing, as Gerber words."""
     step = 100 if inch else 2540
 
     def point(at: tuple[int, int]) -> str:
@@ -69,16 +73,19 @@ def body(drawing: list[Move], *, inch: bool = False, shift: tuple[int, int] = (0
             words.append(f"{point(move.at)}D02*{point(move.to)}D01*")
         else:
             ring = ((x, y), (u, y), (u, v), (x, v), (x, y))
-            words.append("G36*" + "".join(f"{point(p)}D0{1 + (not n)}*" for n, p in enumerate(ring)))
+            words.append(
+                "G36*" + "".join(f"{point(p)}D0{1 + (not n)}*" for n, p in enumerate(ring))
+            )
             words.append("G37*")
     return "\n".join(words) + "\n%LPD*%"
 
 
 def image(text: str) -> BaseGeometry:
+    """What a file leaves as copper, each piece valid."""
     pieces = paint.paint(gerber.read(text + "M02*", "it.gbr").marks)
     for piece in pieces:
         assert piece.is_valid
-    return shapely.multipolygons(np.array(pieces, dtype=object)) if pieces else shapely.Polygon()
+    return shapely.MultiPolygon(pieces)
 
 
 def assert_same(one: BaseGeometry, other: BaseGeometry, tolerance_mm2: float = 1e-4) -> None:
@@ -95,8 +102,9 @@ def test_inch_file_is_the_mm_file(drawing: list[Move]) -> None:
     assert_same(paint_of(mm), paint_of(inch))
 
 
-def paint_of(marks: tuple[object, ...]) -> BaseGeometry:
-    return shapely.union_all(np.array(paint.paint(marks), dtype=object))  # type: ignore[arg-type]
+def paint_of(marks: Sequence[Mark]) -> BaseGeometry:
+    """What marks leave as copper."""
+    return shapely.MultiPolygon(paint.paint(marks))
 
 
 @given(drawings, GRID, GRID)
@@ -171,9 +179,7 @@ def test_paint_is_the_plain_fold_of_its_marks(drawing: list[Move]) -> None:
     marks = gerber.read(header() + body(drawing) + "M02*", "it.gbr").marks
     plain: BaseGeometry = shapely.Polygon()
     for mark in marks:
-        shape = shapely.union_all(
-            np.array(paint.paint([mark._replace(dark=True)]), dtype=object)
-        )
+        shape = paint_of([mark._replace(dark=True)])
         plain = plain.union(shape) if mark.dark else plain.difference(shape)
     assert_same(plain, paint_of(marks))
 

@@ -17,10 +17,12 @@ AT = "it.gbr:7"
 
 
 def area_mm2(body: str, *parameters: float, unit_mm: float = 1.0) -> float:
+    """Area that the macro covers."""
     return sum(p.area for p in instantiate(body, parameters, unit_mm, AT))
 
 
 def bounds_mm(body: str, *parameters: float, unit_mm: float = 1.0) -> tuple[float, ...]:
+    """Box round what it covers."""
     found = shapely.total_bounds(instantiate(body, parameters, unit_mm, AT))
     return tuple(round(float(value), 5) for value in found)
 
@@ -35,6 +37,8 @@ def cross_in_disc_mm2(diameter: float, gap: float) -> float:
 
 
 class TestPrimitives:
+    """Codes 1, 2, 4, 5, 6, 7, 20, 21 and 22."""
+
     @pytest.mark.parametrize(
         ("body", "area"),
         [
@@ -118,6 +122,8 @@ class TestPrimitives:
 
 
 class TestArithmetic:
+    """Expressions and variables."""
+
     @pytest.mark.parametrize(
         ("text", "value"),
         [
@@ -144,7 +150,7 @@ class TestArithmetic:
     def test_agrees_with_python(self, steps: list[tuple[str, int]]) -> None:
         """Python's own rules of precedence and order are the same."""
         text = "7" + "".join(f"{sign}{number}" for sign, number in steps)
-        truth = float(eval(text.replace("x", "*")))  # noqa: S307 - digits and signs made above
+        truth = float(eval(text.replace("x", "*")))
         assert evaluate(text, {}, AT) == pytest.approx(truth)
 
     def test_variables_are_set_in_order(self) -> None:
@@ -153,6 +159,8 @@ class TestArithmetic:
 
 
 class TestErrors:
+    """Macros at fault."""
+
     @pytest.mark.parametrize(
         ("body", "words"),
         [

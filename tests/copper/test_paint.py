@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from math import pi
 
 import numpy as np
@@ -12,29 +13,35 @@ from hypothesis import strategies as st
 from shapely import Polygon
 
 from splitcheck.copper import curves, fills, paint
-from splitcheck.copper.marks import Fill, Flash, Mark, Point, Stroke, Tag
+from splitcheck.copper.marks import NO_TAG, Fill, Flash, Mark, Point, Stroke, Tag
 
 GND, VCC, CLK = Tag("GND"), Tag("VCC"), Tag("CLK")
 
 
-def box(x: float, y: float, w: float, h: float, tag: Tag = Tag(), *, dark: bool = True) -> Fill:
+def box(x: float, y: float, w: float, h: float, tag: Tag = NO_TAG, *, dark: bool = True) -> Fill:
+    """A rectangular fill."""
     ring = ((x, y), (x + w, y), (x + w, y + h), (x, y + h), (x, y))
     return Fill(ring, dark, tag, 1)
 
 
-def line(start: Point, end: Point, width: float, tag: Tag = Tag(), *, dark: bool = True) -> Stroke:
+def line(start: Point, end: Point, width: float, tag: Tag = NO_TAG, *, dark: bool = True) -> Stroke:
+    """A straight stroke."""
     return Stroke((start, end), width, None, dark, tag, 1)
 
 
-def dot(at: Point, diameter: float, tag: Tag = Tag(), *, dark: bool = True) -> Flash:
+def dot(at: Point, diameter: float, tag: Tag = NO_TAG, *, dark: bool = True) -> Flash:
+    """A round flash."""
     return Flash(at, Polygon(curves.circle(diameter)), dark, tag, 1, diameter)
 
 
 def area_mm2(marks: list[Mark]) -> float:
+    """Area of the painted marks."""
     return sum(piece.area for piece in paint.paint(marks))
 
 
 class TestPaint:
+    """Marks to pieces."""
+
     def test_nothing_gives_nothing(self) -> None:
         """No marks, only clear marks, or marks of no size."""
         assert paint.paint([]) == ()
@@ -66,9 +73,7 @@ class TestPaint:
 
     def test_polarity_that_changes_with_every_mark(self) -> None:
         """Nested squares, dark and clear by turns: rings, in file order."""
-        marks: list[Mark] = [
-            box(n, n, 40 - 2 * n, 40 - 2 * n, dark=n % 2 == 0) for n in range(20)
-        ]
+        marks: list[Mark] = [box(n, n, 40 - 2 * n, 40 - 2 * n, dark=n % 2 == 0) for n in range(20)]
         pieces = paint.paint(marks)
         assert len(pieces) == 10
         squares = [(40 - 2 * n) ** 2 for n in range(20)]
@@ -90,7 +95,8 @@ class TestPaint:
     def test_stroke_that_is_not_round_follows_its_path(self) -> None:
         """A frame dragged along: its hole is swept too."""
         frame = Polygon(
-            [(-1, -1), (1, -1), (1, 1), (-1, 1)], [[(-0.5, -0.5), (-0.5, 0.5), (0.5, 0.5), (0.5, -0.5)]]
+            [(-1, -1), (1, -1), (1, 1), (-1, 1)],
+            [[(-0.5, -0.5), (-0.5, 0.5), (0.5, 0.5), (0.5, -0.5)]],
         )
         mark = Stroke(((0.0, 0.0), (0.5, 0.0)), 2.0, frame, True, Tag(), 1)
         # 2.5 x 2 without what no edge passed over: 0.5 x 1.
@@ -104,6 +110,8 @@ class TestPaint:
 
 
 class TestFills:
+    """Contours that are not simple."""
+
     def test_figure_of_eight_keeps_both_loops(self) -> None:
         """Wound once each, one way and the other."""
         ring = np.array([(0, 0), (2, 2), (2, 0), (0, 2), (0, 0)], dtype=float)
@@ -139,7 +147,7 @@ class TestFills:
         steps = np.arange(0.013, 6, 0.173)
         x, y = (part.ravel() for part in np.meshgrid(steps, steps * 0.991 + 0.0071))
         winding = np.zeros(len(x), dtype=int)
-        for (ax, ay), (bx, by) in zip(ring[:-1], ring[1:], strict=True):
+        for (ax, ay), (bx, by) in pairwise(ring):
             side = (bx - ax) * (y - ay) - (by - ay) * (x - ax)
             winding += (ay <= y) & (by > y) & (side > 0)
             winding -= (ay > y) & (by <= y) & (side < 0)
@@ -150,6 +158,8 @@ class TestFills:
 
 
 class TestInvert:
+    """Negative layers."""
+
     def test_what_the_image_leaves_of_the_board(self) -> None:
         """Two clearances, one across the edge."""
         image = paint.paint([dot((5, 5), 2.0), box(9, 0, 3, 1)])
@@ -168,6 +178,8 @@ class TestInvert:
 
 
 class TestNames:
+    """Whose copper is whose."""
+
     def test_each_piece_has_the_names_of_its_marks(self) -> None:
         """Unknown and no net do not count; two names on one piece are both told."""
         marks: list[Mark] = [
