@@ -43,6 +43,8 @@ class Grading:
     """By how much a panel may grow per mm of distance."""
     stretch: float = 3.0
     """How much longer than wide a panel at the trace may be, along the trace."""
+    slender: float = np.inf
+    """How long against its width a panel may be at most."""
     most: int = 100_000
     """Give up on gaps that need more panels than this."""
 
@@ -180,7 +182,8 @@ def _wanted(x: Floats, y: Floats, lines: Floats, rim: Floats, grading: Grading) 
     if len(rim):
         entry = np.hypot(x[:, None] - rim[:, 0], y[:, None] - rim[:, 1]).min(axis=1)
         along_mm = np.minimum(
-            along_mm, np.maximum(across_mm, (grading.slope * entry + 1.5 * grading.near_mm)[:, None])
+            along_mm,
+            np.maximum(across_mm, (grading.slope * entry + 1.5 * grading.near_mm)[:, None]),
         )
     # a cell axis at an angle to the trace takes the radius of the ellipse in that direction
     wanted[:, 0] = (1.0 / np.sqrt((ux / along_mm) ** 2 + (uy / across_mm) ** 2)).min(axis=1)
@@ -224,7 +227,8 @@ def _clipped(
         if count + len(boxes) > grading.most:
             raise TooManyPanelsError
         boxes, shapes = _met(gap, boxes, shapes[~fine][owner])
-    return _cut_out(gap, np.concatenate([b for b, _ in done]), np.concatenate([s for _, s in done]))
+    cells, shapes = (np.concatenate(part) for part in zip(*done, strict=True))
+    return _cut_out(gap, cells, shapes, grading)
 
 
 def _met(
@@ -254,7 +258,7 @@ def _roots(around: Sequence[float], near_mm: float) -> Floats:
 
 def _division(ratio: float) -> int:
     """First division of a side that is `ratio` final cells long: 4 to 7, or 1 where it is short."""
-    if ratio < 12:
+    if ratio < 40:
         return 1
     halvings = int(np.floor(np.log2(ratio / 4)))
     return int(np.ceil(ratio / 1.1 / 2**halvings))
@@ -270,9 +274,7 @@ def _swallows(boxes: Floats, holes: Floats) -> NDArray[np.bool_]:
     return swallowed
 
 
-def _halved(
-    boxes: Floats, middle: Floats, over: NDArray[np.bool_]
-) -> tuple[Floats, Ints]:
+def _halved(boxes: Floats, middle: Floats, over: NDArray[np.bool_]) -> tuple[Floats, Ints]:
     """Halve each cell along the axes that are too long; the parts and whose parts they are."""
     owner = np.arange(len(boxes))
     for axis in (0, 1):
@@ -288,7 +290,7 @@ def _halved(
 
 
 def _cut_out(
-    gap: Polygon, boxes: Floats, shapes: NDArray[np.object_]
+    gap: Polygon, boxes: Floats, shapes: NDArray[np.object_], grading: Grading
 ) -> tuple[Floats, NDArray[np.bool_], Floats]:
     """Clip cells to the gap: edges of the pieces, which of them lie on the rim, and areas."""
     whole = shapely.contains_properly(gap, shapely.box(*boxes.T))
@@ -296,7 +298,7 @@ def _cut_out(
     rims = [np.zeros((int(whole.sum()), 4), dtype=bool)]
     areas = [np.prod(boxes[whole, 2:] - boxes[whole, :2], axis=1)]
     if not whole.all():
-        pieces, cells = _plain_pieces(shapes[~whole], boxes[~whole])
+        pieces, cells = _plain_pieces(shapes[~whole], boxes[~whole], grading)
         area = shapely.area(pieces)
         many = shapely.get_num_coordinates(pieces) > 7
         pieces[many] = shapely.simplify(pieces[many], 0.03 * np.sqrt(area[many]))
@@ -311,33 +313,42 @@ def _cut_out(
 
 
 def _plain_pieces(
-    shapes: NDArray[np.object_], boxes: Floats
+    shapes: NDArray[np.object_], boxes: Floats, grading: Grading
 ) -> tuple[NDArray[np.object_], Floats]:
-    """Clip to cells, and cut cells on until no piece has too many corners for the arrays."""
+    """Clip to cells, and cut cells on until no piece is too slender or has too many corners."""
     done: list[tuple[NDArray[np.object_], Floats]] = []
     for last in (False, False, False, False, False, True):
         pieces, owner = shapely.get_parts(
             shapely.intersection(shapes, shapely.box(*boxes.T)), return_index=True
         )
+        if len(pieces) > 2 * grading.most:
+            raise TooManyPanelsError
         cells = boxes[owner]
         keep = shapely.area(pieces) > _SLIVER * np.prod(cells[:, 2:] - cells[:, :2], axis=1)
         pieces, cells = shapely.simplify(pieces[keep], 0.0), cells[keep]
         rough = shapely.simplify(pieces, 0.03 * np.sqrt(shapely.area(pieces)))
-        good = (shapely.get_num_coordinates(rough) <= _MOST_CORNERS) | last
+        bounds = shapely.bounds(pieces)
+        extent = bounds[:, 2:] - bounds[:, :2]
+        long = extent.max(axis=1)
+        good = shapely.get_num_coordinates(rough) <= _MOST_CORNERS
+        good &= long**2 <= grading.slender * shapely.area(pieces)
+        good |= last
         done.append((pieces[good], cells[good]))
         if good.all():
             break
-        middle = (cells[~good, :2] + cells[~good, 2:]) / 2
-        boxes, owner = _halved(cells[~good], middle, np.ones((len(middle), 2), dtype=bool))
+        # the cell shrinks to the piece before it is halved, but keeps its own border
+        middle = (bounds[~good, :2] + bounds[~good, 2:]) / 2
+        over = extent[~good] > 0.4 * long[~good, None]
+        boxes, owner = _halved(cells[~good], middle, over)
         shapes = pieces[~good][owner]
     return np.concatenate([p for p, _ in done]), np.concatenate([c for _, c in done])
 
 
 def _box_edges(boxes: Floats) -> Floats:
     west, south, east, north = boxes.T
-    corners = np.stack(
-        [west, south, east, south, east, north, west, north], axis=1
-    ).reshape(-1, 4, 2)
+    corners = np.stack([west, south, east, south, east, north, west, north], axis=1).reshape(
+        -1, 4, 2
+    )
     return np.concatenate([corners, np.roll(corners, -1, axis=1)], axis=2)
 
 
@@ -414,7 +425,9 @@ def _widened(edges: Floats, rim: NDArray[np.bool_], part: Floats, centre: Floats
     square = np.maximum(length, 1e-300)
     nx, ny = dy / square, -dx / square
     weight = length / whole[:, None]
-    pull = np.stack([(weight * nx * nx).sum(1), (weight * nx * ny).sum(1), (weight * ny * ny).sum(1)])
+    pull = np.stack(
+        [(weight * nx * nx).sum(1), (weight * nx * ny).sum(1), (weight * ny * ny).sum(1)]
+    )
     middle = (edges[:, :, :2] + edges[:, :, 2:]) / 2
     rim_at = (weight[:, :, None] * middle).sum(axis=1)
     touched = length.sum(axis=1) > 0

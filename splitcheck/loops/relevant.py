@@ -95,15 +95,14 @@ def _merged(
     gaps: Sequence[Polygon], outside: Polygon | None, reach_mm: float
 ) -> tuple[list[Polygon], int | None]:
     """Valid polygons that do not touch, in a fixed order, and which of them is the outside."""
-    shapes = np.array([gap for gap in gaps if gap.area > 0], dtype=object)
-    shapes = shapely.get_parts(shapely.make_valid(shapes))
+    shapes = shapely.get_parts(shapely.make_valid(np.array(gaps, dtype=object).reshape(-1)))
     if outside is not None:
         west, south, east, north = outside.bounds
         reach = min(_REACH * max(east - west, north - south), reach_mm)
         frame = shapely.box(west - reach, south - reach, east + reach, north + reach)
         around = shapely.get_parts(frame.difference(shapely.make_valid(outside)))
         shapes = np.concatenate([shapes, around])
-    parts = [part for part in _joined(shapes) if part.area > 1e-9]
+    parts = [part for part in _joined(shapes) if part.area > _SNAP_MM * part.length]
     parts.sort(key=lambda part: (part.bounds, part.area))
     endless = None
     if outside is not None and parts:

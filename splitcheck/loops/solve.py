@@ -25,15 +25,16 @@ _SLOPE = 0.4
 _COARSER = 2.0
 #: Where the two differ by more than this and the method's own error, the panels are halved again,
 _SETTLED_NH = 4e-3
-#: at most this often, and not from so many panels.
+#: at most this often, and up to this many.
 _MORE = 2
-_REFINE_BELOW = 300
+_REFINE_UP_TO = 600
 #: More unknowns than this are not solved for: the panels are made coarser instead.
 MAX_PANELS = 2000
-_COARSEN = 12
+_COARSEN = 7
 #: A gap is cut into so many panels at least along its longer side, one far from traces into fewer.
 _LEAST = 8.4
 _LEAST_FAR = 2.1
+_SLENDER = 12.0
 #: What the method itself is off by where mesh and truncation are not: against the independent
 #: field solves of tests/loops/reference.csv, mostly because a real strip crowds its current.
 _METHOD_ERROR = 0.03
@@ -167,10 +168,13 @@ def added(
     coarse = _solved(job, _panels(job, fineness / _COARSER))
     fine = _solved(job, _panels(job, fineness))
     for _ in range(_MORE):
-        if _settled(fine, coarse) or len(fine.mesh) > _REFINE_BELOW:
+        if _settled(fine, coarse):
             break
         fineness *= _COARSER
-        coarse, fine = fine, _solved(job, _panels(job, fineness))
+        finer = _panels(job, fineness, _REFINE_UP_TO)
+        if len(finer) < 1.5 * len(fine.mesh):
+            break
+        coarse, fine = fine, _solved(job, finer)
     return _judged(job, fine, coarse)
 
 
@@ -199,7 +203,9 @@ def _check(
     straps = [bridge for bridge in bridges if isinstance(bridge, Strap)]
     for strip in (*traces, *straps):
         if not (isfinite(strip.line.length) and strip.line.length > 0):
-            raise SplitcheckError("line", "a trace or part has no length", "give two points or more")
+            raise SplitcheckError(
+                "line", "a trace or part has no length", "give two points or more"
+            )
         if not (isfinite(strip.width_mm) and strip.width_mm >= 0):
             wrong = f"{strip.width_mm} is not a width"
             raise SplitcheckError("width_mm", wrong, "give millimetres, 0 or more")
@@ -315,21 +321,23 @@ def _via_matrix(places: Floats, diameters_mm: Sequence[float], plate_mm: float) 
     return matrix
 
 
-def _panels(job: _Job, fineness: float) -> Panels:
+def _panels(job: _Job, fineness: float, most: int = MAX_PANELS) -> Panels:
     """Cut the gaps, coarser and coarser until there are not too many panels."""
+    # images in planes are averaged over a few points of each panel, potentials exactly
+    slender = _SLENDER if job.plates_mm else np.inf
     lines = tuple(LineString(strip.line) for strip in job.strips)
     near, slope = job.near_mm / fineness, _SLOPE / fineness
     least = np.where(job.scene.coarse, _LEAST_FAR, _LEAST) * fineness
     for _ in range(_COARSEN):
-        grading = Grading(lines, near, slope, most=MAX_PANELS)
+        grading = Grading(lines, near, slope, slender=slender, most=most)
         try:
             mesh = cut(job.scene.gaps, grading, [float(k) for k in np.maximum(least, 2.0)])
         except TooManyPanelsError:
             pass
         else:
-            if len(mesh) <= MAX_PANELS:
+            if len(mesh) <= most:
                 return mesh
-        near, slope, least = near * 1.7, min(slope * 1.4, 3.0), least / 1.7
+        near, slope, least = near * 1.7, min(slope * 1.5, 4.0), least / 1.7
     wrong = f"{len(job.scene.gaps)} gaps need more than {MAX_PANELS} panels"
     raise SplitcheckError("gaps", wrong, "give fewer or simpler gaps")
 
@@ -395,8 +403,8 @@ def _sources(job: _Job, mesh: Panels) -> tuple[Floats, Floats, Floats]:
         row[:strips] = (inside[1 : 2 * strips : 2] - inside[0 : 2 * strips : 2]) * shares
         row[strips:] = inside[2 * strips :]
     return (
-        np.array(columns).reshape(-1, len(mesh)).T,
-        np.array(centres).reshape(-1, len(mesh)).T,
+        np.array(columns).reshape(len(columns), len(mesh)).T,
+        np.array(centres).reshape(len(centres), len(mesh)).T,
         rows,
     )
 
@@ -407,9 +415,7 @@ def _response(job: _Job, mesh: Panels, sources: Floats) -> Floats:
         return np.zeros_like(sources)
     matrix = interaction(mesh, job.plates_mm)
     # flux can go out over the open rim of the world, unless planes shut it in
-    closed = [
-        g for g in range(len(job.scene.gaps)) if g != job.scene.endless or job.plates_mm
-    ]
+    closed = [g for g in range(len(job.scene.gaps)) if g != job.scene.endless or job.plates_mm]
     nets = (mesh.gap[:, None] == np.array(closed, dtype=np.int64)).astype(np.float64)
     solved = _cholesky_solve(matrix, np.concatenate([sources, nets], axis=1))
     flux, unit = solved[:, : sources.shape[1]], solved[:, sources.shape[1] :]
@@ -442,7 +448,9 @@ def _ways(
         balance = np.concatenate([rows, onto])
     need, can = -balance[:, :count], balance[:, count:]
     forced = np.linalg.pinv(can) @ need if bridges and len(balance) else np.zeros((bridges, count))
-    short = np.abs(can @ forced - need).max(axis=0, initial=0.0) if len(balance) else np.zeros(count)
+    short = (
+        np.abs(can @ forced - need).max(axis=0, initial=0.0) if len(balance) else np.zeros(count)
+    )
     cut_off = short > 1e-6
     currents = forced
     free = _free(can, bridges)

@@ -10,7 +10,7 @@ from shapely import LineString, Point, Polygon, box
 
 from splitcheck.loops.matrix import interaction
 from splitcheck.loops.panels import Grading, cut
-from splitcheck.loops.solve import Strap, TraceOver, ViaBridge, added
+from splitcheck.loops.solve import Strap, TraceOver, ViaBridge, _via_matrix, added
 from splitcheck.units import MU0
 
 
@@ -36,7 +36,7 @@ def test_a_round_hole_has_the_polarisability_of_bethe(turn: float) -> None:
     solve's equation with f = x and the moment as its answer.
     """
     line = LineString([(-9, -9 * turn), (9, 9 * turn)])
-    mesh = cut([Point(0, 0).buffer(1.5, quad_segs=32)], Grading((line,), near_mm=0.3))
+    mesh = cut([Point(0, 0).buffer(1.5, quad_segs=32)], Grading((line,), near_mm=0.1))
     field = mesh.centre[:, 0]
     flux = np.linalg.solve(interaction(mesh, ()), field)
     assert 2 * pi * field @ flux == pytest.approx(4 / 3 * 1.5**3, rel=0.01)
@@ -74,7 +74,8 @@ def test_a_long_slot_is_the_complement_of_a_dipole(length: float, width: float) 
 
 
 @pytest.mark.parametrize(
-    ("height", "truth"), [(0.1, 3.60), (0.2, 3.32), (0.5, 2.84), (1.0, 2.36), (1.6, 1.97), (3, 1.39)]
+    ("height", "truth"),
+    [(0.1, 3.60), (0.2, 3.32), (0.5, 2.84), (1.0, 2.36), (1.6, 1.97), (3, 1.39)],
 )
 def test_height_spreads_the_return_current(height: float, truth: float) -> None:
     """A slot of 20 x 1 mm, against a sheet solver whose mesh reads up to 3 % high."""
@@ -120,18 +121,27 @@ def test_a_near_plane_above_leaves_the_slot_its_share_alone() -> None:
     assert ratio == pytest.approx((strip * pi * height) ** 2, rel=0.01)
 
 
-def test_a_via_pair_far_from_the_gap_is_a_two_wire_line() -> None:
-    """Across a full cut the pair carries all of the return, and farther apart by mu0 d/pi ln more.
+@pytest.mark.parametrize(
+    ("apart", "truth"), [(1.0, 0.150), (2.0, 0.207), (5.0, 0.280), (20, 0.391)]
+)
+def test_a_via_pair_between_planes_is_a_two_wire_line(apart: float, truth: float) -> None:
+    """mu0 d/pi acosh(s/D) at d = 0.2, D = 0.3 mm: the inductance of a two-wire line."""
+    matrix = _via_matrix(np.array([[0.0, 0.0], [apart, 0.0]]), [0.3, 0.3], 0.2)
+    there_and_back = np.array([1.0, -1.0])
+    assert there_and_back @ matrix @ there_and_back == pytest.approx(truth, rel=0.015)
 
-    mu0 d/pi ln(s2/s1) between two distances of the vias, so far away that the cut is nothing.
-    """
-    plane, cut_ = box(-200, -200, 200, 200), box(-0.1, -300, 0.1, 300)
 
-    def at(x: float) -> float:
-        pair = [ViaBridge(Point(-x, 0), 0.3), ViaBridge(Point(x, 0), 0.3)]
-        return value([cut_], [trace(60)], 0.2, beyond_mm=0.3, bridges=pair, outside=plane)
-
-    assert at(16) - at(8) == pytest.approx(MU0 * 0.3 / pi * log(2), rel=0.05)
+def test_four_vias_carry_by_symmetry_and_less_than_two() -> None:
+    """Two pairs beside the trace share the return; superposition holds them below one pair."""
+    plane, cut_ = box(-20, -20, 20, 20), box(-0.2, -25, 0.2, 25)
+    near = [ViaBridge(Point(x, 2), 0.47) for x in (-2, 2)]
+    both = [*near, *(ViaBridge(Point(x, -2), 0.47) for x in (-2, 2))]
+    one, two = (
+        added([cut_], [trace(15)], 0.2, beyond_mm=0.8, bridges=vias, outside=plane)
+        for vias in (near, both)
+    )
+    assert two.bridge_a[:, 0] == pytest.approx(two.bridge_a[[2, 3, 0, 1], 0], abs=0.02)
+    assert 0.5 * one.added_nh[0, 0] < two.added_nh[0, 0] < one.added_nh[0, 0]
 
 
 def test_a_strap_right_under_the_trace_costs_its_own_inductance() -> None:

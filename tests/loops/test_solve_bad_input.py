@@ -158,12 +158,26 @@ def test_ten_thousand_antipads_in_range_end_in_time() -> None:
     assert sound(solution) > 1.0
 
 
-def test_a_comb_of_a_thousand_fingers_is_made_coarser() -> None:
+def comb(teeth: int) -> Polygon:
+    """A gap of many fingers, 30 mm long."""
+    pitch = 40 / teeth
+    fingers = [box(-20 + k * pitch, 0.0, -20 + (k + 0.5) * pitch, 30) for k in range(teeth)]
+    whole = shapely.union_all([*fingers, box(-20, -0.5, 20.0, 0.01)])
+    assert isinstance(whole, Polygon)
+    return whole
+
+
+def test_a_comb_of_hundreds_of_fingers_is_made_coarser() -> None:
     """More panels than can be solved are not tried."""
-    fingers = [box(k * 0.04, 0.0, k * 0.04 + 0.02, 30) for k in range(-500, 500)]
-    comb = shapely.union_all([*fingers, box(-20, -0.5, 20.0, 0.01)])
     trace = TraceOver(LineString([(0.0, -5), (0.0, 35)]), 0.1)
-    assert sound(added([comb], [trace], 0.1)) > 0
+    assert sound(added([comb(300)], [trace], 0.1)) > 0
+
+
+def test_a_comb_of_thousands_of_fingers_is_refused_with_a_reason() -> None:
+    """It cannot be cut into so few panels; the caller is told."""
+    trace = TraceOver(LineString([(0.0, -5), (0.0, 35)]), 0.1)
+    with pytest.raises(SplitcheckError, match="panels"):
+        added([comb(3000)], [trace], 0.1)
 
 
 def test_a_strap_and_vias_share_the_current() -> None:

@@ -67,8 +67,9 @@ def test_matrix_is_symmetric_and_positive_definite(gap: Polygon, height: float) 
 def test_all_lengths_times_k_give_k(gap: Polygon, height: float, factor: float) -> None:
     """Inductance is a length times mu0."""
     large = scale(gap, factor, factor, origin=(0, 0))
-    once, twice = added([gap], [across()], height), added(
-        [large], [across(width=0.3 * factor, half=25 * factor)], height * factor
+    once, twice = (
+        added([gap], [across()], height),
+        added([large], [across(width=0.3 * factor, half=25 * factor)], height * factor),
     )
     assert pair(twice)[0] == pytest.approx(factor * pair(once)[0], rel=0.01)
 
@@ -99,8 +100,9 @@ def test_a_larger_gap_never_adds_less(gap: Polygon, height: float, more: float) 
     for hole in holes:
         larger = larger.difference(hole.buffer(-more))
     assert isinstance(larger, Polygon)
-    (a, da), (b, db) = pair(added([gap], [across()], height)), pair(
-        added([larger], [across()], height)
+    (a, da), (b, db) = (
+        pair(added([gap], [across()], height)),
+        pair(added([larger], [across()], height)),
     )
     assert b >= a - max(da, db) / 2
 
