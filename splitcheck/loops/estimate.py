@@ -113,6 +113,45 @@ def shielding(beyond_mm: float | None, gap_mm: float) -> float:
     return 1.0 - (1.0 - SHIELD[-1][1]) * SHIELD[-1][0] / ratio
 
 
+def between(below: float, above: float) -> float:
+    """Share of a slot's inductance left with whole planes on both sides.
+
+    Notes
+    -----
+    The two half spaces of a slot are in parallel. One of them shielded by a share s has the
+    conductance 1/s - 1/2 of the whole; both add up.
+
+    Examples
+    --------
+    >>> between(1.0, 1.0), round(between(0.4, 1.0), 3), round(between(0.4, 0.4), 3)
+    (1.0, 0.4, 0.25)
+    """
+    return 1.0 / (1.0 / below + 1.0 / above - 1.0)
+
+
+def handed_over(planes_mm: float, island_mm2: float, share: float) -> Inductance:
+    """What it costs when a plane's share of the return must leave it for the other plane.
+
+    Parameters
+    ----------
+    planes_mm
+        Distance between the two planes, mm, > 0.
+    island_mm2
+        Area of the smaller of the islands that are cut apart, mm2, > 0.
+    share
+        Part of the return that the broken plane carries, 0 to 1.
+
+    Notes
+    -----
+    On either side of the gap the current spreads between the two planes out to the size of the
+    island: L = 2 mu0 d/(2 pi) ln(R/d), radial spreading in a plane pair. A bound in kind; the
+    error is as large as the value.
+    """
+    size = max(sqrt(island_mm2 / pi) / planes_mm, e)
+    value = share**2 * MU0 * planes_mm / pi * log(size)
+    return Inductance(value, value + 0.01)
+
+
 def via_pair_nh(apart_mm: float, diameter_mm: float, plane_gap_mm: float) -> float:
     """Loop inductance of two vias between two planes: down on one side of a gap, up on the other.
 
@@ -136,6 +175,7 @@ def added(
     width_mm: float,
     *,
     beyond_mm: float | None,
+    above_mm: float | None,
     share: float,
 ) -> Inductance | None:
     """Added loop inductance of a crossing by closed forms.
@@ -152,6 +192,8 @@ def added(
         Height over the plane and width of the trace, mm, > 0.
     beyond_mm
         Distance from the plane to a whole plane beyond it, mm; None without one.
+    above_mm
+        Distance from the plane to a whole plane on the trace's other side, mm; None without one.
     share
         Part of the return that this plane carries, 0 to 1.
 
@@ -183,8 +225,8 @@ def added(
         error += 0.4
     elif nearest < 3.0 * spread:
         error += 0.4
-    if beyond_mm is not None:
-        value *= shielding(beyond_mm, gap_mm)
+    value *= between(shielding(beyond_mm, gap_mm), shielding(above_mm, gap_mm))
+    if beyond_mm is not None or above_mm is not None:
         error += 0.2
     value *= share**2
     return Inductance(value, error * value + 0.01)

@@ -134,7 +134,11 @@ def _bends(shape: shapely.Geometry) -> Floats:
 
 
 def shortest(
-    terrain: Terrain, start: Point, goal: Point, barrier: LineString | None = None
+    terrain: Terrain,
+    start: Point,
+    goal: Point,
+    barrier: LineString | None = None,
+    first: Sequence[int] = (),
 ) -> tuple[float, tuple[Point, ...]] | None:
     """Shortest way on copper between two points of one island.
 
@@ -146,6 +150,8 @@ def shortest(
         Points on copper, mm.
     barrier
         A line that the way must not cross.
+    first
+        Indexes of gaps whose corners are needed from the start, where a barrier stands.
 
     Returns
     -------
@@ -168,7 +174,9 @@ def shortest(
     limit = 2 * straight + 2.0
     thin = 0
     while True:
-        tried = _within(terrain, start, goal, barrier, min(limit, widest), THIN_MM[thin])
+        tried = _within(
+            terrain, start, goal, barrier, min(limit, widest), THIN_MM[thin], first
+        )
         if tried == "crowded":
             if thin + 1 == len(THIN_MM):
                 return None
@@ -188,8 +196,9 @@ def _within(
     barrier: LineString | None,
     limit: float,
     thin_mm: float,
+    first: Sequence[int],
 ) -> tuple[float, tuple[Point, ...]] | str | None:
-    obstacles: list[int] = []
+    obstacles = list(first)
     ends = np.array([start, goal], dtype=float)
     for _ in range(60):
         corners = [ends]
@@ -291,7 +300,9 @@ def find_route(
     for side in (1, -1):
         ways = [way for way, on_side in borrowed if on_side == side]
         if one == other:
-            found = shortest(terrains[crossing.plane], start, goal, _wall(crossing, -side))
+            found = shortest(
+                terrains[crossing.plane], start, goal, _wall(crossing, -side), (crossing.gap,)
+            )
             if found is not None:
                 ways.append(Way(found[0], found[1], (), plane.islands[crossing.islands[0]].net_name, 0))
         sides.append(min(ways, key=lambda way: (way.length_mm, way.path)) if ways else None)

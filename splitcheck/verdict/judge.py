@@ -37,6 +37,8 @@ CHANGE_RUN_MM = 5.0
 CHANGE_STITCH_MM = 3.0
 #: From this ratio of length across the trace to length along it a closed gap is a slot.
 SLOT_RATIO = 2.5
+#: A trace this near the rim of a gap, as a share of its run, clips the gap rather than crosses it.
+EDGE_RATIO = 0.25
 
 
 @dataclass(frozen=True, slots=True)
@@ -175,15 +177,19 @@ def _layers_on_other_side(scene: Scene, crossing: Crossing) -> list[int]:
     return list(range(crossing.layer + step, last + 1 if step > 0 else 0, step))
 
 
-def share_of(scene: Scene, crossing: Crossing) -> float:
-    """Part of the return that the broken plane carries: 1 - h1/(h1 + h2) between two planes."""
-    points = np.array([crossing.before, crossing.at, crossing.after])
-    other = nearest_cover(
+def _other_side(scene: Scene, crossing: Crossing) -> int | None:
+    """The layer on the trace's other side that carries returns unbroken along the run."""
+    points = np.array([crossing.before, *crossing.path, crossing.at, crossing.after])
+    return nearest_cover(
         tuple(scene.planes.values()),
         _layers_on_other_side(scene, crossing),
         points[:, 0],
         points[:, 1],
     )
+
+
+def _share(scene: Scene, crossing: Crossing, other: int | None) -> float:
+    """Part of the return that the broken plane carries: 1 - h1/(h1 + h2) between two planes."""
     if other is None:
         return 1.0
     near = scene.board.stack.height_mm(crossing.layer, crossing.plane)
@@ -191,7 +197,7 @@ def share_of(scene: Scene, crossing: Crossing) -> float:
     return far / (near + far)
 
 
-def beyond_mm(scene: Scene, crossing: Crossing) -> float | None:
+def _beyond_mm(scene: Scene, crossing: Crossing) -> float | None:
     """Distance from the broken plane to a whole plane beyond it under this part of the gap."""
     xs, ys = _places_in_gap(scene, crossing)
     layer = nearest_cover(
@@ -222,11 +228,12 @@ def _places_in_gap(
 def _crossing_finding(scene: Scene, crossing: Crossing) -> Finding | str | None:
     """The finding of a crossing; None if it adds too little."""
     route = find_route(crossing, scene.planes, scene.terrains, scene.graph)
-    share = share_of(scene, crossing)
-    beyond = beyond_mm(scene, crossing)
+    other = _other_side(scene, crossing)
+    share = _share(scene, crossing, other)
+    beyond = _beyond_mm(scene, crossing)
     gap = scene.planes[crossing.plane].gaps[crossing.gap]
     kind = _kind(crossing, gap, route)
-    value = _estimate(scene, crossing, route, share, beyond)
+    value = _estimate(scene, crossing, route, share, beyond, other)
     if value is not None and value.added_nh < scene.min_nh:
         return None
     if kind == "edge-run":
@@ -241,22 +248,25 @@ def _crossing_finding(scene: Scene, crossing: Crossing) -> Finding | str | None:
 def _kind(crossing: Crossing, gap: Gap, route: Route) -> Kind:
     if crossing.islands[0] != crossing.islands[1]:
         return "split-crossing"
-    across = sum(
-        min(route.reach_mm(way), 1e3) for way in (route.left, route.right)
-    )
-    if gap.open and (route.left is None or route.right is None):
-        best = route.best
-        if best is not None and route.reach_mm(best) < 0.5 * crossing.run_mm:
-            return "edge-run"
-        return "slot-crossing"
-    return "slot-crossing" if across >= SLOT_RATIO * crossing.run_mm else "void-crossing"
+    left, right = (min(route.reach_mm(way), 1e3) for way in (route.left, route.right))
+    if min(left, right) < EDGE_RATIO * crossing.run_mm:
+        return "edge-run" if gap.open else "void-crossing"
+    return "slot-crossing" if left + right >= SLOT_RATIO * crossing.run_mm else "void-crossing"
 
 
 def _estimate(
-    scene: Scene, crossing: Crossing, route: Route, share: float, beyond: float | None
+    scene: Scene,
+    crossing: Crossing,
+    route: Route,
+    share: float,
+    beyond: float | None,
+    other: int | None,
 ) -> estimate.Inductance | None:
+    above = None if other is None else scene.board.stack.height_mm(crossing.plane, other)
     if not route.joined:
-        return None
+        islands = scene.planes[crossing.plane].islands
+        smaller = min(islands[i].shape.area for i in crossing.islands)
+        return None if above is None else estimate.handed_over(above, smaller, share)
     return estimate.added(
         (route.reach_mm(route.left), route.reach_mm(route.right)),
         (_bridge_nh(scene, crossing, route.left), _bridge_nh(scene, crossing, route.right)),
@@ -264,6 +274,7 @@ def _estimate(
         scene.board.stack.height_mm(crossing.layer, crossing.plane),
         crossing.width_mm,
         beyond_mm=beyond,
+        above_mm=above,
         share=share,
     )
 
@@ -344,12 +355,17 @@ def _reason(
         start = f"{name} is split here between {one.net_name} ({one.id}) and {other.net_name} ({other.id})"
     else:
         start = f"{name} ({one.net_name}) is open for {crossing.run_mm:.2f} mm under the trace"
-    return "; ".join([start, _way_in_words(scene, route), *_extras(share, beyond)])
+    return "; ".join([start, _way_in_words(scene, route, share), *_extras(share, beyond)])
 
 
-def _way_in_words(scene: Scene, route: Route) -> str:
+def _way_in_words(scene: Scene, route: Route, share: float) -> str:
     best = route.best
     if not route.joined or best is None:
+        if share < 1.0:
+            return (
+                "neither copper nor a plated hole joins the two sides: the return must leave for "
+                "the plane on the trace's other side"
+            )
         return "neither copper nor a plated hole joins the two sides: no galvanic way back"
     detour = route.detour_mm or 0.0
     if not best.bridges:
