@@ -21,6 +21,8 @@ _RIGHT = 0.5
 _CLEAR = 0.6
 #: ... from which a shift is believed.
 _SHIFT_CLEAR = 0.8
+#: So many holes tell a format; more only take time.
+_SAMPLE = 4000
 #: Fewer holes than this on pads overrule nothing.
 _FEW = 5
 
@@ -156,8 +158,8 @@ def _said(script: Script, fit: Fit, ranked: Sequence[Fit] = ()) -> str:
 
 
 def _centres(script: Script, form: Format) -> Floats:
-    """Middle of every hole or slot, shape (n, 2), mm, each place once."""
-    raws = play(script, form)
+    """Middle of the first some thousand holes and slots, shape (n, 2), mm, each place once."""
+    raws = play(script, form, _SAMPLE)
     middles = [
         ((r.path[0][0] + r.path[-1][0]) / 2, (r.path[0][1] + r.path[-1][1]) / 2) for r in raws
     ]

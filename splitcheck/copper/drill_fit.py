@@ -17,7 +17,6 @@ Ints: TypeAlias = NDArray[np.int64]
 
 #: A hole sits on a pad if their centres are this close, mm.
 NEAR_MM = 0.06
-_SAMPLE = 3000
 
 
 class Format(NamedTuple):
@@ -150,11 +149,7 @@ def rank(
     formats: Iterable[Format], pads: Floats, centres_of: Callable[[Format], Floats]
 ) -> list[Fit]:
     """Score formats against the pads, best first; among equals the earlier comes first."""
-    fits = []
-    for form in formats:
-        centres = centres_of(form)
-        step = max(1, len(centres) // _SAMPLE)
-        fits.append(Fit(form, share_on_pads(centres[::step], pads)))
+    fits = [Fit(form, share_on_pads(centres_of(form), pads)) for form in formats]
     return sorted(fits, key=lambda fit: -round(fit.share, 3))
 
 

@@ -13,7 +13,7 @@ from splitcheck.copper.marks import Point
 from splitcheck.errors import SplitcheckError
 
 #: Most holes in one file, repeats included.
-HOLES_CAP = 1_000_000
+HOLES_CAP = 500_000
 
 
 class Raw(NamedTuple):
@@ -24,7 +24,7 @@ class Raw(NamedTuple):
     line: int
 
 
-def play(script: Script, form: Format) -> list[Raw]:
+def play(script: Script, form: Format, most: int | None = None) -> list[Raw]:
     """Carry out the commands of a drill file under one number format.
 
     Parameters
@@ -33,6 +33,8 @@ def play(script: Script, form: Format) -> list[Raw]:
         The file taken apart.
     form
         How its numbers are read.
+    most
+        Stop after about that many holes; ``None``: play all.
 
     Returns
     -------
@@ -43,9 +45,11 @@ def play(script: Script, form: Format) -> list[Raw]:
     SplitcheckError
         If it drills before a tool is chosen, or more than ``HOLES_CAP`` holes.
     """
-    head = _Head(script, form)
+    head = _Head(script, form, most)
     for op in script.ops:
         head.do(op)
+        if most is not None and len(head.raws) >= most:
+            break
     head.lift()
     return head.raws
 
@@ -53,7 +57,8 @@ def play(script: Script, form: Format) -> list[Raw]:
 class _Head:
     """Where the drill stands and what it has drilled."""
 
-    def __init__(self, script: Script, form: Format) -> None:
+    def __init__(self, script: Script, form: Format, most: int | None) -> None:
+        self.most = HOLES_CAP if most is None else most
         self.script = script
         self.form = form
         self.raws: list[Raw] = []
@@ -140,7 +145,7 @@ class _Head:
         """R: the last hole again, each time one step further."""
         dx_mm = 0.0 if op.x is None else self.value_mm(op.x)
         dy_mm = 0.0 if op.y is None else self.value_mm(op.y)
-        for _ in range(op.number):
+        for _ in range(min(op.number, self.most - len(self.raws) + 1)):
             self.at = round(self.at[0] + dx_mm, 6), round(self.at[1] + dy_mm, 6)
             self.drill((self.at,))
 

@@ -16,12 +16,15 @@ Code: TypeAlias = Literal[
     "tool", "hit", "slot", "move", "cut", "arc", "down", "up", "repeat", "relative", "absolute"
 ]
 
-#: Most commands, and most repeats, in one file.
-COMMANDS_CAP = 2_000_000
+#: Most commands in one file.
+COMMANDS_CAP = 1_000_000
+#: Most repeats by one command.
+REPEATS_CAP = 10_000
 _AGAIN = "export the drill file again"
 
 _WORD = re.compile(r"([A-Z])([-+]?[\d.]*)")
 _NUMBER = re.compile(r"[-+]?(?:\d{1,18}(?:\.\d{0,18})?|\.\d{1,18})")
+_PLACE = re.compile(rf"(?:X({_NUMBER.pattern}))?(?:Y({_NUMBER.pattern}))?")
 _HOLESIZE = re.compile(
     r"(?:T(\d{1,4})\s+)?Holesize\s+(\d{1,4})\.?\s*=\s*([\d.]{1,12})\b.{0,80}?"
     r"\b(NON_PLATED|PLATED|OPTIONAL)\s+(MM|MILS|INCH|INCHES)\b(?:\s+Quantity\s*=\s*(\d{1,9}))?",
@@ -152,6 +155,10 @@ def scan(text: str, name: str) -> Script:
     for number, raw in enumerate(text.splitlines(), 1):
         line = raw.strip()
         if not line or state.ended:
+            continue
+        place = _PLACE.fullmatch(line)
+        if place and state.motion == "hit" and not state.skip_text:
+            state.add(Op("hit", number, place[1], place[2]))
             continue
         if line.startswith((";", "(")):
             _comment(state, line[1:].strip())
@@ -290,8 +297,9 @@ def _repeat(state: _State, line: str, number: int) -> None:
     match = re.match(r"R(\d{1,9})", line)
     words = _words(line[match.end() :] if match else line, place)
     count = int(match[1]) if match else 0
-    if count > 100_000:
-        raise SplitcheckError(place, f"repeats {count} times, over the cap of 100000", _AGAIN)
+    if count > REPEATS_CAP:
+        wrong = f"repeats {count} times, over the cap of {REPEATS_CAP}"
+        raise SplitcheckError(place, wrong, _AGAIN)
     state.add(Op("repeat", number, words.get("X"), words.get("Y"), number=count))
 
 

@@ -12,6 +12,8 @@ from splitcheck.errors import SplitcheckError
 
 _SUBLAYER = re.compile(r"\s*\((\d{1,3})/(\d{1,3})\)\s*$")
 _MAX_ENTRIES = 1000
+#: Longest job file, characters.
+SIZE_CAP = 16 * 2**20
 
 
 class JobEntry(NamedTuple):
@@ -121,6 +123,9 @@ def read(text: str, name: str) -> Job:
 
 def _parse(text: str, name: str) -> dict[str, Any]:
     again = "export the job file again, or take it out of the folder"
+    if len(text) > SIZE_CAP:
+        wrong = f"has {len(text)} characters, over the cap of {SIZE_CAP}"
+        raise SplitcheckError(name, wrong, again)
     try:
         root = json.loads(text)
     except json.JSONDecodeError as fault:

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from collections import Counter
 from collections.abc import Iterable, Sequence
 from typing import NamedTuple
 
 import numpy as np
 import shapely
-from scipy.spatial import cKDTree
 from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.copper.marks import Drawing, Fill, Point, Stroke
@@ -19,9 +19,11 @@ Bounds = tuple[float, float, float, float]
 #: Ends of lines closer than this are joined; tried in this order, mm.
 SNAPS_MM = (0.001, 0.01, 0.03, 0.1)
 #: Most line pieces; an edge with more is no edge.
-PIECES_CAP = 200_000
+PIECES_CAP = 50_000
+#: Most closed areas between lines.
+FACES_CAP = 2000
 #: Only this many of the largest loops are looked at.
-_LOOPS_CAP = 1000
+_LOOPS_CAP = 500
 #: A loop that holds this share of the copper is the board.
 _HOLDS = 0.95
 _SOME = 0.5
@@ -68,6 +70,9 @@ def outline(drawing: Drawing, copper_bounds: Bounds, copper: Sequence[Polygon] =
     most = 0.0
     for snap_mm in SNAPS_MM:
         faces = _faces(lines, snap_mm)
+        if len(faces) > FACES_CAP:
+            wrong = f"{drawing.name}: its lines close over {FACES_CAP} loops; it is no edge"
+            return Outline(None, (*remarks, wrong))
         shape, share = _board(faces, weights)
         if shape is None:
             continue
@@ -185,7 +190,7 @@ def _bridges(lines: Sequence[LineString], snap_mm: float) -> list[LineString]:
         if met[place] > 1:
             continue
         point = shapely.Point(place)
-        for j in sorted(tree.query(point, predicate="dwithin", distance=snap_mm)):
+        for j in sorted(tree.query(point, predicate="dwithin", distance=snap_mm))[:8]:
             foot = lines[j].interpolate(lines[j].project(point))
             if j != i and foot.distance(point) > 0:
                 # Drawn a little past the foot, so that the two surely cross.
@@ -196,19 +201,18 @@ def _bridges(lines: Sequence[LineString], snap_mm: float) -> list[LineString]:
 
 def _join(ends: Floats, snap_mm: float) -> list[Point]:
     """Ends moved onto the first end within reach, so that they meet."""
-    first = list(range(len(ends)))
-    for a, b in sorted(cKDTree(ends).query_pairs(snap_mm)):
-        low, high = sorted((_root(first, a), _root(first, b)))
-        first[high] = low
-    places = [ends[_root(first, i)] for i in range(len(ends))]
-    return [(float(x), float(y)) for x, y in places]
-
-
-def _root(first: list[int], i: int) -> int:
-    while first[i] != i:
-        first[i] = first[first[i]]
-        i = first[i]
-    return i
+    cells: dict[tuple[int, int], list[Point]] = {}
+    joined: list[Point] = []
+    for x, y in ends.tolist():
+        column, row = math.floor(x / snap_mm), math.floor(y / snap_mm)
+        around = ((column + i, row + j) for i in (-1, 0, 1) for j in (-1, 0, 1))
+        near = (p for cell in around for p in cells.get(cell, ()))
+        known = next((p for p in near if math.dist(p, (x, y)) <= snap_mm), None)
+        if known is None:
+            known = (x, y)
+            cells.setdefault((column, row), []).append(known)
+        joined.append(known)
+    return joined
 
 
 def _board(
@@ -259,12 +263,10 @@ def _several(loops: Sequence[Polygon], copper: _Copper) -> MultiPolygon | None:
 
 def _without_cutouts(loop: Polygon, faces: Sequence[Polygon], copper: _Copper) -> Polygon:
     """The loop less what is cut out of it: loops free of its edge with no copper in them."""
-    inner = []
-    for face in faces:
-        hole = Polygon(face.exterior)
-        free = hole.area < 0.9 * loop.area and loop.contains(hole)
-        if free and not hole.touches(loop.exterior) and copper.covers(hole) < _BARE:
-            inner.append(hole)
+    holes = [Polygon(face.exterior) for face in faces]
+    shapely.prepare(loop)
+    free = shapely.contains_properly(loop, np.array(holes, dtype=object))
+    inner = [h for h, f in zip(holes, free, strict=True) if f and copper.covers(h) < _BARE]
     cut = loop.difference(shapely.unary_union(inner)) if inner else loop
     parts = _parts(cut)
     return max(parts, key=lambda part: part.area) if parts else loop
@@ -283,15 +285,12 @@ def _said(
         said.append(f"{name}: shows {boards} boards")
     if share < _HOLDS:
         said.append(f"{name}: {1 - share:.0%} of the {what} lies outside the outline")
-    left_out = [face for face in faces if not shape.buffer(1e-3).covers(face)]
-    outside = [face for face in left_out if not Polygon(face.exterior).within(_filled(shape))]
-    if outside:
-        said.append(f"{name}: {len(outside)} closed loops beside the board are ignored")
+    filled = shapely.unary_union([Polygon(part.exterior) for part in _parts(shape)])
+    shapely.prepare(filled)
+    beside = sum(not filled.contains(face.representative_point()) for face in faces)
+    if beside:
+        said.append(f"{name}: {beside} closed loops beside the board are ignored")
     cuts = sum(len(part.interiors) for part in _parts(shape))
     if cuts:
         said.append(f"{name}: {cuts} cut-outs inside the board")
     return said
-
-
-def _filled(shape: Polygon | MultiPolygon) -> shapely.Geometry:
-    return shapely.unary_union([Polygon(p.exterior) for p in _parts(shape)]).buffer(1e-3)

@@ -282,7 +282,7 @@ def test_tools_from_a_separate_list() -> None:
         (["X1.0Y1.0"], r"a\.drl:5: drills before any tool"),
         (["T1", "WHAT"], r'a\.drl:6: "WHAT" is not a drill command'),
         (["T1", "X1.0Y1.0", "INCH"], "changes units after the first coordinate"),
-        (["T1", "X1.0Y1.0", "R999999999X0.1"], "over the cap of 100000"),
+        (["T1", "X1.0Y1.0", "R999999999X0.1"], "over the cap of 10000"),
         (["T1", "X1.0Y1.0", "G93X1.0Y0"], "moves the origin"),
         (["T1", "X1.0Y1.0", "M02X1.0Y1.0"], "repeated pattern"),
         (["T1C500.0", "X1.0Y1.0"], "500 mm, over 100 mm"),
