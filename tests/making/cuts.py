@@ -7,14 +7,14 @@ import re
 from collections.abc import Iterator
 from math import dist, hypot
 from pathlib import Path
-from typing import NamedTuple
+from typing import NamedTuple, TypeGuard
 
 import shapely
 from shapely import LineString, Polygon
 
 from splitcheck.board.names import is_ground, is_supply
 from splitcheck.copper import gerber
-from splitcheck.copper.intake import InputFile, open_export
+from splitcheck.copper.intake import open_export
 from splitcheck.copper.marks import Fill, Mark, Point, Stroke
 from splitcheck.copper.paint import paint
 
@@ -25,6 +25,8 @@ FROM_END_MM = 1.2
 APART_MM, MARGIN_MM = 1.0, 0.15
 #: Pieces of copper smaller than this are not taken for a plane, mm2.
 PLANE_MM2 = 100.0
+#: Wider strokes are supplies or switching nodes, which the cut would hardly reach beyond, mm.
+SIGNAL_MM = 0.5
 
 
 class PlantedCut(NamedTuple):
@@ -43,7 +45,8 @@ def choose_cuts(folder: Path, wanted: int, seed: int) -> tuple[PlantedCut, ...]:
     Notes
     -----
     Only traces of the two outer layers are taken, and the plane is the layer next to them: no
-    other layer is as near. (1) The trace's net has a name, pours nothing and is no supply by name.
+    other layer is as near. (1) The trace is a signal's: narrow, its net has a name, pours
+    nothing on any layer and is no supply by name.
     (2) The place is away from the ends of its stroke. (3) Before the cut the plane is whole there:
     the cut with a margin lies inside one large piece of copper. (4) Cuts keep apart.
     """
@@ -51,8 +54,13 @@ def choose_cuts(folder: Path, wanted: int, seed: int) -> tuple[PlantedCut, ...]:
     drawings = {file.name: gerber.read(file.text, file.name).marks for file in copper}
     sites: list[PlantedCut] = []
     rng = random.Random(seed)
+    poured = {
+        mark.tag.net for marks in drawings.values() for mark in marks if isinstance(mark, Fill)
+    }
     for trace_file, plane_file in ((copper[0], copper[1]), (copper[-1], copper[-2])):
-        sites += _sites(drawings[trace_file.name], drawings[plane_file.name], plane_file, rng)
+        strokes = [mark for mark in drawings[trace_file.name] if _is_signal(mark, poured)]
+        planes = [p for p in paint(drawings[plane_file.name]) if p.area >= PLANE_MM2]
+        sites += _sites(strokes, planes, plane_file.name, rng)
     rng.shuffle(sites)
     chosen: list[PlantedCut] = []
     for site in sites:
@@ -66,31 +74,27 @@ def _apart_mm(one: PlantedCut, other: PlantedCut) -> float:
     return float(between - (one.width_mm + other.width_mm) / 2)
 
 
+def _is_signal(mark: Mark, poured: set[str | None]) -> TypeGuard[Stroke]:
+    if not isinstance(mark, Stroke) or not mark.dark or mark.width_mm > SIGNAL_MM:
+        return False
+    net = mark.tag.net
+    if not net or net in poured or is_ground(net) or is_supply(net):
+        return False
+    return len(mark.points) == 2 and dist(*mark.points) > 2 * FROM_END_MM
+
+
 def _sites(
-    marks: tuple[Mark, ...], below: tuple[Mark, ...], plane_file: InputFile, rng: random.Random
+    strokes: list[Stroke], planes: list[Polygon], plane_file: str, rng: random.Random
 ) -> Iterator[PlantedCut]:
     """Possible cuts at random places along every stroke, one try for each mm of it."""
-    planes = [piece for piece in paint(below) if piece.area >= PLANE_MM2]
     shapely.prepare(planes)
-    poured = _poured(marks)
-    for mark in marks:
-        if not isinstance(mark, Stroke) or not mark.dark or not mark.tag.net:
-            continue
-        net, length_mm = mark.tag.net, dist(mark.points[0], mark.points[-1])
-        if len(mark.points) != 2 or length_mm < 2 * FROM_END_MM or net in poured:
-            continue
-        if is_ground(net) or is_supply(net):
-            continue
+    for stroke in strokes:
+        length_mm = dist(*stroke.points)
         for _ in range(int(length_mm)):
             along_mm = rng.uniform(FROM_END_MM, length_mm - FROM_END_MM)
-            cut = _cut(mark, along_mm / length_mm, rng.uniform(0.2, 0.4), plane_file.name)
+            cut = _cut(stroke, along_mm / length_mm, rng.uniform(0.2, 0.4), plane_file)
             if _is_whole(planes, cut):
                 yield cut
-
-
-def _poured(marks: tuple[Mark, ...]) -> set[str]:
-    """Nets that fill areas on a layer."""
-    return {mark.tag.net for mark in marks if isinstance(mark, Fill) and mark.tag.net}
 
 
 def _cut(stroke: Stroke, fraction: float, width_mm: float, plane_file: str) -> PlantedCut:
