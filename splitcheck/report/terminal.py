@@ -13,7 +13,7 @@ from splitcheck import __version__
 from splitcheck.report import tally
 from splitcheck.report.page import Column, Page
 from splitcheck.report.words import STICKY, number, plural, shorten, with_error
-from splitcheck.verdict.findings import LEVELS, Finding, Kind, Level, Report
+from splitcheck.verdict.findings import LEVELS, Finding, Kind, Level, Method, Report
 
 #: How each level is coloured; its word always stands beside it.
 LEVEL_STYLES: dict[Level, str] = {"error": "bold red", "warning": "yellow", "note": "cyan"}
@@ -35,6 +35,11 @@ _COLUMNS = (
     Column("added\nnH", "right"),
     Column("noise\nmV", "right"),
 )
+_METHODS: dict[Method, str] = {
+    "solved": "solved from the field",
+    "estimated": "estimated by closed forms",
+    "none": "without a way back to put a number on",
+}
 _NET = 3
 _ASSUMPTIONS_SHOWN = 10
 _FACTS_SHOWN = 12
@@ -155,6 +160,9 @@ def _below(page: Page, group: Sequence[Finding], indent: int, *, why: bool) -> N
     if len(group) > 1:
         room = 2 * (page.width - indent)
         page.say_text(Text(_sharers(group, room)), indent=indent)
+    extras = _extras(worst)
+    if extras:
+        page.say_text(Text(extras), indent=indent)
     if worst.waived is not None:
         page.say(f"waived: {worst.waived}", indent=indent)
     if why and worst.reason:
@@ -171,6 +179,19 @@ def _where(finding: Finding) -> str:
     source = f"{shorten(finding.source.file, 60)}:{finding.source.line}".replace(" ", STICKY)
     place = f"x {x_mm:.3f} y {y_mm:.3f} mm".replace(" ", STICKY)
     return f"{layer}{over}, {place}, {source}"
+
+
+def _extras(finding: Finding) -> str:
+    """What only a field solution knows, and the partner of a pair."""
+    parts = []
+    if finding.stray_db is not None:
+        parts.append(f"stray field {finding.stray_db:+.1f} dB")
+    if finding.corner_khz is not None:
+        corner = number(finding.corner_khz)
+        parts.append(f"above {corner} kHz the return follows inductance, not resistance")
+    if finding.pair is not None:
+        parts.append(f"pair with {shorten(finding.pair, _NET_CELLS)}")
+    return "; ".join(parts)
 
 
 def _sharers(group: Sequence[Finding], room: int) -> str:
@@ -213,6 +234,10 @@ def _in_all(page: Page, report: Report) -> None:
     gaps = plural(len(tally.over_one_gap(found)), "gap")
     nets = plural(len(tally.nets_of(found)), "net")
     page.say(f"{plural(len(found), 'finding')} over {gaps} on {nets}")
+    methods = Counter(f.method for f in found)
+    told = [f"{methods[m]} {word}" for m, word in _METHODS.items() if methods[m]]
+    if told:
+        page.say(f"added inductance: {', '.join(told)}")
     waived = len(report.findings) - len(found)
     if waived:
         page.say(f"{plural(waived, 'waived finding')}, not counted above")

@@ -132,6 +132,15 @@ def test_no_number_is_lost_to_a_long_name(pump: Report) -> None:
     assert f"net {name}\n" in text
 
 
+def test_what_only_a_field_solution_knows_is_shown_where_it_is_known(pump: Report) -> None:
+    """Stray field, corner frequency and the partner of a pair stand under the row."""
+    solved = made.finding(1, "D_P", method="solved", stray_db=12.345, corner_khz=25.31, pair="D_N")
+    text = " ".join(plain(replace(pump, findings=(solved,))).split())
+    assert "stray field +12.3 dB; above 25.3 kHz the return follows inductance, " in text
+    assert "not resistance; pair with D_N" in text
+    assert "added inductance: 1 solved from the field" in text
+
+
 def test_square_brackets_in_a_name_are_no_markup(pump: Report) -> None:
     """``D[0]`` and ``[red]`` are names like any other."""
     text = plain(replace(pump, findings=(made.finding(1, "[red]D[0]"),), board="[bold]x[/bold]"))
