@@ -7,6 +7,7 @@ from pathlib import Path
 import pytest
 import typer
 
+from splitcheck.board.stack import read_stack_file
 from splitcheck.cli.commands import app
 
 ROOT = Path(__file__).parents[2]
@@ -39,6 +40,15 @@ def test_readme_explains_no_option_that_is_not_there() -> None:
     """The table has as many rows as ``rank`` has options."""
     table = README.split("## Options of `rank`")[1].split("###")[0]
     assert table.count("\n| `-") == len(options("rank"))
+
+
+def test_the_stack_file_of_readme_can_be_read() -> None:
+    """The example is one, and says what its comments say."""
+    text = README.split("```toml\n")[1].split("```")[0]
+    top, ground, bottom = read_stack_file(text, "stack.toml")
+    assert (top.copper_um, top.below_mm, top.below_er) == (35.0, 0.2, 4.3)
+    assert (ground.file, ground.negative) == ("radio-gnd.gbr", True)
+    assert (bottom.below_mm, bottom.negative) == (None, None)
 
 
 def test_the_gate_runs_the_test_command_of_readme() -> None:
