@@ -58,7 +58,7 @@ def choose(script: Script, pads: Floats) -> Choice:
     """
     base = drill_fit.default(script)
     stated = drill_fit.states_all(script)
-    if not script.ops:
+    if not play(script, base, 1):
         return Choice(base, (0.0, 0.0), (f"{script.name}: drills no holes",))
     words = base.words(script.all_decimal())
     if not len(pads):

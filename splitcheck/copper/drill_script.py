@@ -106,6 +106,7 @@ class _State:
         self.type_plated: bool | None = None
         self.skip_text = False
         self.ignored: dict[str, int] = {}
+        self.stops: list[int] = []
 
     def add(self, op: Op) -> None:
         self.script.ops.append(op)
@@ -164,12 +165,31 @@ def scan(text: str, name: str) -> Script:
             _comment(state, line[1:].strip())
             continue
         _command(state, line.partition(";")[0].strip().upper(), number)
+    _tools_by_stops(state)
     if state.ignored:
         listed = ", ".join(f"{code} (line {n})" for code, n in sorted(state.ignored.items()))
         state.script.remarks.append(
             f"{name}: commands that move no hole were passed over: {listed}"
         )
     return state.script
+
+
+def _tools_by_stops(state: _State) -> None:
+    """Where no tool is ever chosen, each stop (M00) is a change to the next tool of the table."""
+    script = state.script
+    if not script.ops or not script.tools or any(op.code == "tool" for op in script.ops):
+        return
+    starts = [0, *(at for at in state.stops if at < len(script.ops))]
+    changes = dict(zip(starts, sorted(script.tools), strict=False))
+    ops: list[Op] = []
+    for at, op in enumerate(script.ops):
+        if at in changes:
+            ops.append(Op("tool", op.line, number=changes[at]))
+        ops.append(op)
+    script.ops = ops
+    script.remarks.append(
+        f"{script.name}: chooses no tool; assumed that each stop (M00) changes to the next one"
+    )
 
 
 def _comment(state: _State, body: str) -> None:
@@ -285,6 +305,9 @@ def _tool(state: _State, line: str, number: int) -> None:
             return
     state.add(Op("tool", number, number=tool))
     if "X" in words or "Y" in words:
+        place_words = [words[key] for key in "XY" if key in words]
+        if not all(_NUMBER.fullmatch(word) for word in place_words):
+            raise SplitcheckError(place, f'"{line[:60]}" is not a coordinate', _AGAIN)
         state.add(Op("hit", number, words.get("X"), words.get("Y")))
 
 
@@ -364,8 +387,11 @@ def _code(state: _State, code: str, rest: str, number: int) -> bool:
         state.add(Op("down", number))
     elif code in ("M16", "M17"):
         state.add(Op("up", number))
-    elif code in ("M30", "M00"):
+    elif code == "M30":
         state.ended = True
+        return True
+    elif code == "M00":
+        state.stops.append(len(state.script.ops))
         return True
     elif code in ("M97", "M98"):
         state.ignored.setdefault(code, number)

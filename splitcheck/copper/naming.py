@@ -92,10 +92,11 @@ _OTHER_TOKENS: dict[str, tuple[Kind, str]] = {
 _TOP = {"top", "toplayer", "front", "topcopper", "coppertop", "componentside", "component", "cmp"}
 _BOTTOM = {"bottom", "bot", "bottomlayer", "back", "bottomcopper", "copperbottom", "copperbot",
            "solderside"}  # fmt: skip
-_LAYER = {"l", "layer", "lyr", "ly", "lay"}
+_LAYER = {"l", "layer", "lyr", "ly", "lay", "art"}
 _INNER = {"in", "inner", "int", "internal", "mid", "midlayer", "innerlayer", "inr"}
 _ROLES: dict[str, Role] = {
     "gnd": "ground", "ground": "ground", "agnd": "ground", "dgnd": "ground", "vss": "ground",
+    "plane": "ground",
     "pwr": "supply", "power": "supply", "vcc": "supply", "vdd": "supply", "supply": "supply",
     "sig": "signal", "sign": "signal", "signal": "signal", "route": "signal",
 }  # fmt: skip
@@ -156,10 +157,10 @@ def plating(name: str) -> bool | None:
 
     Examples
     --------
-    >>> [plating(n) for n in ("a-PTH.drl", "a_npth.drl", "NonPlated.txt", "a.drl")]
+    >>> [plating(n) for n in ("a-PTH.drl", "a_npth.drl", "ThruHoleNonPlated.ncd", "a.drl")]
     [True, False, False, None]
     """
-    words = name.rsplit("/", 1)[-1]
+    words = _CAMEL.sub(" ", name.rsplit("/", 1)[-1])
     if _NON_PLATED.search(words):
         return False
     return True if _PLATED.search(words) else None
@@ -240,7 +241,7 @@ def _numbered(tokens: list[str]) -> tuple[str, int | None, Role | None]:
         if not match:
             continue
         word, digits = match[1], match[2]
-        following = [t for t in tokens[i + 1 : i + 3] if t not in ("layer", "cu")]
+        following = [t for t in tokens[i + 1 : i + 3] if t not in ("layer", "plane", "cu")]
         if not digits and following and following[0].isdecimal() and len(following[0]) <= 3:
             digits = following[0]
         number = int(digits) if digits else None

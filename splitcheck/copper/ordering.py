@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterator, Mapping, Sequence
 from itertools import pairwise
 from typing import NamedTuple
@@ -11,6 +12,8 @@ from splitcheck.copper.naming import Role
 from splitcheck.errors import SplitcheckError
 
 _MOST_ARRANGEMENTS = 50_000
+#: Counts whose numbers do not say from which layer they count, or that planes are counted too.
+_UNSURE = frozenset({"g", "gp", "signal", "ground", "supply"})
 
 
 class Candidate(NamedTuple):
@@ -49,14 +52,21 @@ def order(candidates: Sequence[Candidate]) -> tuple[tuple[Candidate, ...], tuple
     _check_gaps(candidates)
     assumptions: list[str] = []
     families = {c.family for c in inner}
+    names = ", ".join(c.file for c in sorted(inner, key=_leading))
     if len(families) <= 1 and all(c.number is not None for c in inner):
         inner.sort(key=_number)
-        if any(c.family not in ("layer", "") for c in inner) and len(inner) > 1:
+        if len(inner) > 1 and families <= _UNSURE:
             names = ", ".join(c.file for c in inner)
             assumptions.append(
                 f"The inner layers are taken in the order of their numbers ({names});"
                 " --stack FILE.toml sets another order."
             )
+    elif len({_leading(c) for c in candidates if c.words[:1].isdecimal()}) == len(candidates):
+        inner.sort(key=_leading)
+        assumptions.append(
+            f"The inner layers are taken in the order of the numbers that their names begin with"
+            f" ({names}); --stack FILE.toml sets another order."
+        )
     else:
         inner = list(_arranged(inner, outer))
         names = ", ".join(c.file for c in inner)
@@ -74,6 +84,12 @@ def order(candidates: Sequence[Candidate]) -> tuple[tuple[Candidate, ...], tuple
 
 def _number(candidate: Candidate) -> int:
     return candidate.number if candidate.number is not None else 0
+
+
+def _leading(candidate: Candidate) -> int:
+    """The number that the name begins with, or 0."""
+    digits = re.match(r"\d{1,3}", candidate.words)
+    return int(digits[0]) if digits else 0
 
 
 def _check_gaps(candidates: Sequence[Candidate]) -> None:

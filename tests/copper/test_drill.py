@@ -266,6 +266,13 @@ def test_plating_of_the_whole_file(
     assert (file.holes[0].plated, file.holes[0].span) == (plated, span)
 
 
+def test_tools_changed_by_hand() -> None:
+    """Where no tool is chosen, each stop changes to the next tool of the table: an assumption."""
+    file = _read("M48", "METRIC", "T1C0.3", "T2C1.0", "%", "X1.0Y1.0", "M00", "X2.0Y2.0", "M30")
+    assert [hole.diameter_mm for hole in file.holes] == [0.3, 1.0]
+    assert any("chooses no tool" in remark for remark in file.remarks)
+
+
 def test_tools_from_a_separate_list() -> None:
     """A tool without a size takes it from the list; without a list it is an error with its line."""
     lines = "M48\nMETRIC\n%\nT1\nX1.0Y1.0\nM30"
@@ -279,7 +286,7 @@ def test_tools_from_a_separate_list() -> None:
     [
         (["T1", "X1.2.3Y0"], r"a\.drl:6: .*not a coordinate"),
         (["T1", "XY"], "not a coordinate"),
-        (["X1.0Y1.0"], r"a\.drl:5: drills before any tool"),
+        (["X1.0Y1.0", "T1"], r"a\.drl:5: drills before any tool"),
         (["T1", "WHAT"], r'a\.drl:6: "WHAT" is not a drill command'),
         (["T1", "X1.0Y1.0", "INCH"], "changes units after the first coordinate"),
         (["T1", "X1.0Y1.0", "R999999999X0.1"], "over the cap of 10000"),
@@ -320,9 +327,10 @@ def test_units_that_change_before_the_first_hole() -> None:
 
 def test_empty_program() -> None:
     """A file without holes is no error."""
-    file = _metric()
-    assert file.holes == ()
-    assert any("drills no holes" in remark for remark in file.remarks)
+    for body in ((), ("T1", "G00X1.0Y1.0")):
+        file = _read("M48", "METRIC", "T1C0.3", "%", *body, "M30", pads=PADS)
+        assert file.holes == ()
+        assert any("drills no holes" in remark for remark in file.remarks)
 
 
 @given(st.text(alphabet="TXYGMRCIAN0123456789.-+%;,= \n", max_size=200))

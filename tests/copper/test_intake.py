@@ -89,6 +89,16 @@ def test_attributes_decide_over_names(tmp_path: Path) -> None:
         ["TOP.gbr", "L02_GND.gbr", "L03_PWR.gbr", "BOT.gbr"],
         ["CopperTop.gbr", "MidLayer1.gbr", "MidLayer2.gbr", "CopperBottom.gbr"],
         ["b.Top", "b.In1", "b.In2", "b.Bot"],
+        ["01_TOP.gbr", "02_SIG.gbr", "03_GND.gbr", "04_BOTTOM.gbr"],
+        ["art001.pho", "art002.pho", "art003.pho", "art004.pho"],
+        ["EtchLayer1Top.gdo", "EtchLayer2.gdo", "EtchLayer3.gdo", "EtchLayer4Bottom.gdo"],
+        [
+            "Gerber_TopLayer.GTL",
+            "Gerber_InnerLayer1.G1",
+            "Gerber_InnerLayer2.G2",
+            "Gerber_BottomLayer.GBL",
+        ],
+        ["Top Layer.gbr", "Internal Plane 1.gbr", "Internal Plane 2.gbr", "Bottom Layer.gbr"],
     ],
 )
 def test_order_from_names_of_the_trade(names: list[str], tmp_path: Path) -> None:
