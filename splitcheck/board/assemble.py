@@ -12,15 +12,20 @@ from shapely import MultiPolygon, Polygon
 from splitcheck.board.board import Board
 from splitcheck.board.drills import Drilling, read_drills
 from splitcheck.board.layers import ReadLayer, copper_box, pad_places
+from splitcheck.board.listed import listed_names
 from splitcheck.board.negative import looks_negative, turn_round
 from splitcheck.board.nets import PlatedHole, join, name_nets
 from splitcheck.board.parts import CopperLayer, parts_of
 from splitcheck.board.stack import CopperEntry, Stack, default_build, from_entries, from_job
+from splitcheck.copper import gerber
 from splitcheck.copper.intake import Export
+from splitcheck.copper.outline import outline
 from splitcheck.errors import SplitcheckError
 
 #: Below this share of plated holes on copper of two layers something was read wrongly.
 LEAST_ON_COPPER = 0.95
+#: How far a board without an outline is taken to reach beyond its copper, mm.
+MARGIN_MM = 0.2
 
 
 @dataclass(frozen=True, slots=True)
@@ -56,28 +61,35 @@ def assemble(
     """
     drawn = tuple(layer.layer for layer in read)
     _check_overlap(drawn)
-    outline, outline_said = find_outline(export, drawn)
-    drilling = read_drills(export, drawn, pad_places(drawn))
-    layers, turned = _turn_negatives(export, read, drilling, outline, stack_file)
+    edge, edge_said, edge_remarks = find_outline(export, drawn)
+    pads = pad_places(drawn)
+    drilling = read_drills(export, drawn, pads)
+    layers, turned = _turn_negatives(export, read, drilling, edge, stack_file)
+    layers, outside = _inside(layers, edge)
     stack = _stack(export, layers, stack_file)
     parts = parts_of(layers)
     holes, net_of = join(layers, parts, drilling.holes)
-    nets, naming = name_nets(parts, net_of, {})
-    board = Board(export.name, outline, stack, layers, parts, net_of, nets, holes)
+    listed = listed_names(export, layers, pads, drilling.holes)
+    nets, naming = name_nets(parts, net_of, listed.names)
+    board = Board(export.name, edge, stack, layers, parts, net_of, nets, holes)
     return Assembled(
         board,
         (
             *export.assumptions,
             *stack.assumptions,
             *turned,
-            *outline_said,
+            *edge_said,
             *drilling.assumptions,
+            *listed.assumptions,
             *_off_copper(holes),
         ),
         (
             *export.remarks,
             *(remark for layer in read for remark in layer.remarks),
+            *edge_remarks,
+            *outside,
             *drilling.remarks,
+            *listed.remarks,
             *naming,
         ),
         (f"Layer spacing: {stack.origin}", *drilling.facts, *_on_copper(holes)),
@@ -112,11 +124,60 @@ def _span(box: Polygon) -> str:
 
 def find_outline(
     export: Export, layers: tuple[CopperLayer, ...]
-) -> tuple[Polygon | MultiPolygon, tuple[str, ...]]:
-    """The board's outline, or the box of its copper as an assumption."""
+) -> tuple[Polygon | MultiPolygon, tuple[str, ...], tuple[str, ...]]:
+    """The board's outline, or the box of its copper as an assumption.
+
+    Returns
+    -------
+    The outline, assumptions, and remarks.
+    """
     box = copper_box(layers)
-    return box.buffer(0.2, join_style="mitre"), (
-        "No outline was found: the box of all copper stands for it.",
+    remarks: list[str] = []
+    for file in export.of_kind("profile"):
+        drawing = gerber.read(file.text, file.name)
+        copper = [piece for layer in layers for piece in layer.pieces]
+        found = outline(drawing, box.bounds, copper)
+        remarks.extend((*drawing.remarks, *found.remarks))
+        if found.shape is not None:
+            return found.shape, (), tuple(remarks)
+    return (
+        box.buffer(MARGIN_MM, join_style="mitre"),
+        (
+            f"No outline was found: the box of all copper, {MARGIN_MM} mm wider, stands for the "
+            "board; gaps that reach its edge depend on it.",
+        ),
+        tuple(remarks),
+    )
+
+
+def _inside(
+    layers: tuple[CopperLayer, ...], board: Polygon | MultiPolygon
+) -> tuple[tuple[CopperLayer, ...], tuple[str, ...]]:
+    """Leave out copper that lies wholly outside the board: frames, titles, coupons."""
+    kept, remarks = [], []
+    shapely.prepare(board)
+    for layer in layers:
+        inside = shapely.intersects(board, np.array(layer.pieces, dtype=object))
+        if bool(inside.all()):
+            kept.append(layer)
+            continue
+        remarks.append(
+            f"{layer.file}: {int((~inside).sum())} pieces of copper lie outside the board and "
+            "are left out"
+        )
+        kept.append(_only(layer, np.flatnonzero(inside).tolist()))
+    return tuple(kept), tuple(remarks)
+
+
+def _only(layer: CopperLayer, pieces: list[int]) -> CopperLayer:
+    new = {old: number for number, old in enumerate(pieces)}
+    return replace(
+        layer,
+        pieces=tuple(layer.pieces[i] for i in pieces),
+        names=tuple(layer.names[i] for i in pieces),
+        lines=tuple(
+            line._replace(piece=new[line.piece]) for line in layer.lines if line.piece in new
+        ),
     )
 
 
@@ -124,7 +185,7 @@ def _turn_negatives(
     export: Export,
     read: Sequence[ReadLayer],
     drilling: Drilling,
-    outline: Polygon | MultiPolygon,
+    board: Polygon | MultiPolygon,
     stack_file: tuple[str, Sequence[CopperEntry]] | None,
 ) -> tuple[tuple[CopperLayer, ...], tuple[str, ...]]:
     """Turn negative images round, by the stack file, by what the files say, or by what they show."""
@@ -137,14 +198,14 @@ def _turn_negatives(
             wanted = stated.get(number)
         if wanted is None and found.negative:
             wanted = True
-        if wanted is None and looks_negative(layer, len(read), outline, drilling.holes):
+        if wanted is None and looks_negative(layer, len(read), board, drilling.holes):
             wanted = True
             said.append(
                 f"{layer.file} was taken as a negative image (what it draws is clearance): as "
                 "copper it would join no two plated holes. Set polarity in --stack FILE.toml "
                 "if that is wrong."
             )
-        layers.append(turn_round(layer, outline) if wanted else layer)
+        layers.append(turn_round(layer, board) if wanted else layer)
     return tuple(layers), tuple(said)
 
 
@@ -165,8 +226,7 @@ def _stack(
         if stack is not None:
             return stack
     thickness = export.job.thickness_mm if export.job is not None else None
-    stack = default_build(names, thickness)
-    return replace(stack)
+    return default_build(names, thickness)
 
 
 def _share_on_copper(holes: Sequence[PlatedHole]) -> tuple[int, int]:

@@ -11,8 +11,11 @@ from shapely import Polygon
 from splitcheck.board.parts import CopperLayer, Pad
 from splitcheck.board.traces import centre_lines
 from splitcheck.copper import gerber, paint
-from splitcheck.copper.marks import Drawing, Flash
+from splitcheck.copper.marks import Drawing, Fill, Stroke
 from splitcheck.units import Floats
+
+#: A filled contour up to this size may be a pad, mm.
+LARGEST_PAD_MM = 8.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,23 +62,34 @@ def read_layer(file: CopperFile) -> ReadLayer:
 
 
 def _pads(drawing: Drawing) -> tuple[Pad, ...]:
+    """Flashes, and fills small enough to be pads of odd shapes."""
     sizes: dict[int, float] = {}
     pads = []
     for mark in drawing.marks:
-        if not isinstance(mark, Flash) or not mark.dark:
+        if not mark.dark or isinstance(mark, Stroke):
+            continue
+        tag = mark.tag
+        if isinstance(mark, Fill):
+            (x0, y0), (x1, y1) = np.min(mark.ring, axis=0), np.max(mark.ring, axis=0)
+            size = float(max(x1 - x0, y1 - y0))
+            if size > LARGEST_PAD_MM:
+                continue
+            at = (float(x0 + x1) / 2, float(y0 + y1) / 2)
+            pads.append(Pad(at, tag.net, tag.component, tag.pin, tag.function, size, False))
             continue
         key = id(mark.shape)
         if key not in sizes:
-            x0, y0, x1, y1 = mark.shape.bounds
-            sizes[key] = max(x1 - x0, y1 - y0)
-        tag = mark.tag
-        pads.append(Pad(mark.at, tag.net, tag.component, tag.pin, tag.function, sizes[key]))
+            left, low, right, high = mark.shape.bounds
+            sizes[key] = max(right - left, high - low)
+        pads.append(
+            Pad(mark.at, tag.net, tag.component, tag.pin, tag.function, sizes[key], True)
+        )
     return tuple(pads)
 
 
 def pad_places(layers: tuple[CopperLayer, ...]) -> Floats:
     """Centres of all flashed pads, shape (n, 2), mm, each once."""
-    places = [pad.at for layer in layers for pad in layer.pads]
+    places = [pad.at for layer in layers for pad in layer.pads if pad.flashed]
     if not places:
         return np.empty((0, 2))
     return np.unique(np.array(places), axis=0)

@@ -12,7 +12,7 @@ from splitcheck.copper.marks import Point
 
 
 class Pad(NamedTuple):
-    """A flashed pad."""
+    """A flashed pad, or a filled contour of a pad's size."""
 
     at: Point
     net: str | None
@@ -21,6 +21,7 @@ class Pad(NamedTuple):
     function: str | None
     size_mm: float
     """Larger side of its outline."""
+    flashed: bool
 
 
 @dataclass(frozen=True, slots=True)

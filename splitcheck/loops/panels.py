@@ -21,8 +21,11 @@ Ints = NDArray[np.int64]
 _WIDEN = 0.118
 #: Pieces smaller than this part of their cell are dropped.
 _SLIVER = 1e-4
-#: Pieces with more corners than this are cut again.
+#: Pieces with more corners than this, or that fill less than this of their hull, are cut again.
 _MOST_CORNERS = 24
+_HOLLOW = 0.6
+#: More pieces than this in one cell are lumped together.
+_MOST_PARTS = 4
 #: Gaps with more corners than this are clipped step by step.
 _INTRICATE = 100
 
@@ -45,6 +48,8 @@ class Grading:
     """How much longer than wide a panel at the trace may be, along the trace."""
     slender: float = np.inf
     """How long against its width a panel may be at most."""
+    rounds: int = 3
+    """How often to cut on pieces that are not compact, before they are lumped together."""
     most: int = 100_000
     """Give up on gaps that need more panels than this."""
 
@@ -267,7 +272,7 @@ def _division(ratio: float) -> int:
 def _swallows(boxes: Floats, holes: Floats) -> NDArray[np.bool_]:
     """Which cells hold a whole hole that is not small in them."""
     inside = (boxes[:, None, :2] < holes[:, :2]) & (boxes[:, None, 2:] > holes[:, 2:])
-    large = (holes[:, 2:] - holes[:, :2]).max(axis=1) > 0.15 * np.min(
+    large = (holes[:, 2:] - holes[:, :2]).max(axis=1) > 0.3 * np.min(
         boxes[:, 2:] - boxes[:, :2], axis=1
     )[:, None]
     swallowed: NDArray[np.bool_] = (inside.all(axis=2) & large).any(axis=1)
@@ -298,14 +303,17 @@ def _cut_out(
     rims = [np.zeros((int(whole.sum()), 4), dtype=bool)]
     areas = [np.prod(boxes[whole, 2:] - boxes[whole, :2], axis=1)]
     if not whole.all():
-        pieces, cells = _plain_pieces(shapes[~whole], boxes[~whole], grading)
-        area = shapely.area(pieces)
-        many = shapely.get_num_coordinates(pieces) > 7
-        pieces[many] = shapely.simplify(pieces[many], 0.03 * np.sqrt(area[many]))
-        edges = _edges_of(shapely.orient_polygons(pieces))
-        rims.append(_on_rim(edges, cells))
-        outlines.append(edges)
-        areas.append(area)
+        plain, cells, rough, owner = _plain_pieces(shapes[~whole], boxes[~whole], grading)
+        if len(plain):
+            edges = _edges_of(shapely.orient_polygons(plain))
+            outlines.append(edges)
+            rims.append(_on_rim(edges, cells))
+            areas.append(_true_areas(plain, edges))
+        if len(rough):
+            edges, area = _lumps(rough, owner)
+            outlines.append(edges)
+            rims.append(np.zeros((len(edges), 4), dtype=bool))
+            areas.append(area)
     widest = max(outline.shape[1] for outline in outlines)
     full = [_padded(outline, widest) for outline in outlines if len(outline)]
     marks = [np.pad(r, ((0, 0), (0, widest - r.shape[1]))) for r in rims if len(r)]
@@ -314,34 +322,87 @@ def _cut_out(
 
 def _plain_pieces(
     shapes: NDArray[np.object_], boxes: Floats, grading: Grading
-) -> tuple[NDArray[np.object_], Floats]:
-    """Clip to cells, and cut cells on until no piece is too slender or has too many corners."""
+) -> tuple[NDArray[np.object_], Floats, NDArray[np.object_], Ints]:
+    """Clip to cells, and cut on what is not compact.
+
+    Returns the compact pieces and their cells, and what is still not compact at the end, with the
+    number of the cell each such piece lies in.
+    """
     done: list[tuple[NDArray[np.object_], Floats]] = []
-    for last in (False, False, False, False, False, True):
+    for left in range(grading.rounds, -1, -1):
         pieces, owner = shapely.get_parts(
             shapely.intersection(shapes, shapely.box(*boxes.T)), return_index=True
         )
-        if len(pieces) > 2 * grading.most:
-            raise TooManyPanelsError
         cells = boxes[owner]
         keep = shapely.area(pieces) > _SLIVER * np.prod(cells[:, 2:] - cells[:, :2], axis=1)
-        pieces, cells = shapely.simplify(pieces[keep], 0.0), cells[keep]
-        rough = shapely.simplify(pieces, 0.03 * np.sqrt(shapely.area(pieces)))
+        pieces, cells, owner = shapely.simplify(pieces[keep], 0.0), cells[keep], owner[keep]
+        if len(pieces) > 3 * grading.most:
+            raise TooManyPanelsError
         bounds = shapely.bounds(pieces)
-        extent = bounds[:, 2:] - bounds[:, :2]
-        long = extent.max(axis=1)
-        good = shapely.get_num_coordinates(rough) <= _MOST_CORNERS
-        good &= long**2 <= grading.slender * shapely.area(pieces)
-        good |= last
-        done.append((pieces[good], cells[good]))
-        if good.all():
+        compact = _compact(pieces, bounds, grading)
+        if not left:
+            parts = np.bincount(owner, minlength=1)
+            compact &= parts[owner] <= _MOST_PARTS
+        done.append((pieces[compact], cells[compact]))
+        if compact.all() or not left:
             break
-        # the cell shrinks to the piece before it is halved, but keeps its own border
-        middle = (bounds[~good, :2] + bounds[~good, 2:]) / 2
-        over = extent[~good] > 0.4 * long[~good, None]
-        boxes, owner = _halved(cells[~good], middle, over)
-        shapes = pieces[~good][owner]
-    return np.concatenate([p for p, _ in done]), np.concatenate([c for _, c in done])
+        extent = (bounds[:, 2:] - bounds[:, :2])[~compact]
+        middle = (bounds[~compact, :2] + bounds[~compact, 2:]) / 2
+        over = extent > 0.4 * extent.max(axis=1)[:, None]
+        boxes, owner = _halved(cells[~compact], middle, over)
+        shapes = pieces[~compact][owner]
+    plain, inside = (np.concatenate(part) for part in zip(*done, strict=True))
+    area = shapely.area(plain)
+    many = shapely.get_num_coordinates(plain) > 7
+    plain[many] = shapely.simplify(plain[many], 0.03 * np.sqrt(area[many]))
+    return plain, inside, pieces[~compact], owner[~compact]
+
+
+def _compact(
+    pieces: NDArray[np.object_], bounds: Floats, grading: Grading
+) -> NDArray[np.bool_]:
+    """Which pieces one density and a few points can stand for."""
+    area = shapely.area(pieces)
+    rough = shapely.simplify(pieces, 0.03 * np.sqrt(area))
+    long = (bounds[:, 2:] - bounds[:, :2]).max(axis=1)
+    good: NDArray[np.bool_] = shapely.get_num_coordinates(rough) <= _MOST_CORNERS
+    good &= area > _HOLLOW * shapely.area(shapely.convex_hull(pieces))
+    good &= long**2 <= grading.slender * area
+    return good
+
+
+def _true_areas(plain: NDArray[np.object_], edges: Floats) -> Floats:
+    """Areas that the straightened pieces stand for."""
+    return shapely.area(plain)
+
+
+def _lumps(pieces: NDArray[np.object_], owner: Ints) -> tuple[Floats, Floats]:
+    """One rectangle, of the same area and second moments, for what is left in each cell."""
+    area, centre, spread = _moments(_edges_of(shapely.orient_polygons(pieces)))
+    _, cell = np.unique(owner, return_inverse=True)
+    whole = np.bincount(cell, area)
+    mean = np.stack([np.bincount(cell, area * centre[:, k]) / whole for k in (0, 1)], axis=1)
+    off = centre - mean[cell]
+    square = np.stack([off[:, 0] ** 2, off[:, 0] * off[:, 1], off[:, 1] ** 2], axis=1)
+    moment = area[:, None] * (spread + square)
+    total = np.stack([np.bincount(cell, moment[:, k]) / whole for k in (0, 1, 2)], axis=1)
+    u, v = _axes(total)
+    # the moments keep the reach of a hollow lump; its rectangle is longer, not wider, than it is
+    corners = [-u - v, u - v, u + v, v - u]
+    ring = mean[:, None, :] + np.sqrt(3.0) * np.stack(corners, axis=1)
+    return np.concatenate([ring, np.roll(ring, -1, axis=1)], axis=2), whole
+
+
+def _axes(spread: Floats) -> tuple[Floats, Floats]:
+    """Principal axes of second moments, each as long as the root of its moment."""
+    xx, xy, yy = spread.T
+    half = np.hypot((xx - yy) / 2, xy)
+    mean = (xx + yy) / 2
+    long, short = np.sqrt(mean + half), np.sqrt(np.maximum(mean - half, 1e-6 * mean))
+    turn = 0.5 * np.arctan2(2 * xy, xx - yy)
+    u = np.stack([np.cos(turn), np.sin(turn)], axis=1) * long[:, None]
+    v = np.stack([-np.sin(turn), np.cos(turn)], axis=1) * short[:, None]
+    return u, v
 
 
 def _box_edges(boxes: Floats) -> Floats:
@@ -387,16 +448,10 @@ def _measured(edges: Floats, rim: NDArray[np.bool_], true: Floats, gap: Ints) ->
     area, centre, _ = _moments(edges)
     edges = _widened(edges, rim, (1 + _WIDEN) * true / area - 1, centre)
     area, centre, spread = _moments(edges)
-    xx, xy, yy = spread.T
-    half = np.hypot((xx - yy) / 2, xy)
-    mean = (xx + yy) / 2
-    long, short = np.sqrt(mean + half), np.sqrt(np.maximum(mean - half, 1e-6 * mean))
-    turn = 0.5 * np.arctan2(2 * xy, xx - yy)
-    u = np.stack([np.cos(turn), np.sin(turn)], axis=1) * long[:, None]
-    v = np.stack([-np.sin(turn), np.cos(turn)], axis=1) * short[:, None]
+    u, v = _axes(spread)
     points = centre[:, None, :] + np.stack([u + v, u - v, v - u, -u - v], axis=1)
     reach = np.hypot(edges[:, :, 0] - centre[:, None, 0], edges[:, :, 1] - centre[:, None, 1])
-    sides = np.sqrt(12.0) * np.stack([long, short], axis=1)
+    sides = np.sqrt(12.0) * np.stack([np.hypot(*u.T), np.hypot(*v.T)], axis=1)
     radius = reach.max(axis=1) if len(edges) else np.zeros(0)
     return Panels(edges, area, centre, spread, sides, points, radius, gap)
 

@@ -21,10 +21,8 @@ from splitcheck.planes.islands import Plane, box_size_mm
 from splitcheck.planes.tracks import Ints
 from splitcheck.units import Floats
 
-#: Corners of gaps are thinned to this, mm, and coarser where there are very many.
-THIN_MM = (0.02, 0.1, 0.4, 1.5)
-#: A way may graze a gap by this much, mm.
-GRAZE_MM = 2e-3
+#: Ways keep this far off the gaps they go round, mm, and farther where corners are very many.
+CLEAR_MM = (0.01, 0.05, 0.2, 0.8)
 #: More corners than this in reach: thin the gaps more coarsely.
 MOST_CORNERS = 300
 #: So many bridges are looked at first from either end of a crossing, then three times as many.
@@ -79,23 +77,30 @@ class Route:
 
 @dataclass(slots=True)
 class Terrain:
-    """The gaps of one plane as obstacles: thinned, shrunk by a hair, and their corners."""
+    """The gaps of one plane as obstacles, and the corners at which ways bend round them."""
 
     plane: Plane
-    _known: dict[tuple[int, float], tuple[Polygon, Floats]] = field(default_factory=dict)
+    _corners: dict[tuple[int, float], Floats] = field(default_factory=dict)
     _large: MultiPolygon | None = None
 
-    def obstacle(self, gap: int, thin_mm: float) -> tuple[Polygon, Floats]:
-        """A gap's shape to be avoided and the corners a taut way may bend at, shape (n, 2)."""
-        key = (gap, thin_mm)
-        if key not in self._known:
-            shape = shapely.orient_polygons(
-                self.plane.gaps[gap].shape.simplify(thin_mm), exterior_cw=False
-            )
-            core = shape.buffer(-GRAZE_MM, join_style="mitre", quad_segs=1)
-            shapely.prepare(core)
-            self._known[key] = (core, _bends(shape))
-        return self._known[key]
+    def shape(self, gap: int) -> Polygon:
+        """A gap's shape, prepared for many tests."""
+        shape = self.plane.gaps[gap].shape
+        shapely.prepare(shape)
+        return shape
+
+    def corners(self, gap: int, clear_mm: float) -> Floats:
+        """Places just off a gap's rim at which a taut way round it may bend, shape (n, 2).
+
+        The gap is widened by a little more than the rim is then thinned by: a way from corner to
+        corner stays clear of it.
+        """
+        key = (gap, clear_mm)
+        if key not in self._corners:
+            wider = self.plane.gaps[gap].shape.buffer(1.2 * clear_mm, quad_segs=2)
+            thinned = wider.simplify(clear_mm)
+            self._corners[key] = _bends(shapely.orient_polygons(thinned, exterior_cw=False))
+        return self._corners[key]
 
     def blocked(self, starts: Floats, stops: Floats) -> NDArray[np.bool_]:
         """Whether straight legs, shape (n, 2) at either end, run into a gap larger than small."""
@@ -118,7 +123,7 @@ class Terrain:
     def crossed(self, line: LineString) -> list[int]:
         """Indexes of the gaps a line runs through."""
         near = sorted(self.plane.gap_boxes.intersection(line.bounds))
-        return [gap for gap in near if self.obstacle(gap, THIN_MM[0])[0].intersects(line)]
+        return [gap for gap in near if self.shape(gap).intersects(line)]
 
 
 def _bends(shape: shapely.Geometry) -> Floats:
@@ -172,15 +177,15 @@ def shortest(
     x0, y0, x1, y1 = terrain.plane.gaps[0].shape.bounds if terrain.plane.gaps else (0, 0, 0, 0)
     widest = straight + 4 * (x1 - x0 + y1 - y0) + 1.0
     limit = 2 * straight + 2.0
-    thin = 0
+    coarse = 0
     while True:
         tried = _within(
-            terrain, start, goal, barrier, min(limit, widest), THIN_MM[thin], first
+            terrain, start, goal, barrier, min(limit, widest), CLEAR_MM[coarse], first
         )
         if tried == "crowded":
-            if thin + 1 == len(THIN_MM):
+            if coarse + 1 == len(CLEAR_MM):
                 return None
-            thin += 1
+            coarse += 1
             continue
         if isinstance(tried, tuple) and (tried[0] <= limit or limit >= widest):
             return tried
@@ -195,7 +200,7 @@ def _within(
     goal: Point,
     barrier: LineString | None,
     limit: float,
-    thin_mm: float,
+    clear_mm: float,
     first: Sequence[int],
 ) -> tuple[float, tuple[Point, ...]] | str | None:
     obstacles = list(first)
@@ -203,20 +208,18 @@ def _within(
     for _ in range(60):
         corners = [ends]
         for gap in obstacles:
-            bends = terrain.obstacle(gap, thin_mm)[1]
+            bends = terrain.corners(gap, clear_mm)
             far = np.hypot(*(bends - ends[0]).T) + np.hypot(*(bends - ends[1]).T)
             corners.append(bends[far <= limit])
         points = np.concatenate(corners)
         if len(points) > MOST_CORNERS:
             return "crowded"
-        blocks = [terrain.obstacle(gap, thin_mm)[0] for gap in obstacles]
+        blocks = [terrain.shape(gap) for gap in obstacles]
         found = _taut(points, blocks, barrier)
         if found is None:
             return None
         line = LineString(found[1])
         fresh = [gap for gap in terrain.crossed(line) if gap not in obstacles]
-        if thin_mm > THIN_MM[0]:
-            fresh = [gap for gap in fresh if terrain.obstacle(gap, thin_mm)[0].intersects(line)]
         if not fresh:
             return found
         obstacles.extend(fresh)

@@ -14,6 +14,7 @@ import numpy as np
 
 from splitcheck.board.board import Board
 from splitcheck.board.names import is_ground, is_supply
+from splitcheck.board.traces import locate
 from splitcheck.copper.marks import Point
 from splitcheck.errors import SplitcheckError
 from splitcheck.planes.islands import Plane
@@ -368,10 +369,12 @@ def judged_nets(
     SplitcheckError
         If a pattern matches no net.
     """
+    joined = connected_nets(board)
     signals = frozenset(
         net.number
         for net in board.nets
         if net.number not in carriers
+        and (net.given or net.number in joined)
         and not any(is_ground(name) or is_supply(name) for name in net.name.split("|"))
     )
     if not patterns:
@@ -388,3 +391,16 @@ def judged_nets(
             )
         wanted.update(net.number for net in matched)
     return frozenset(wanted & signals)
+
+
+def connected_nets(board: Board) -> frozenset[int]:
+    """Nets with a pad or a plated hole; what has neither is text or a drawing in copper."""
+    found = {hole.net for hole in board.holes}
+    first = 0
+    for layer in board.layers:
+        if layer.pads:
+            xs, ys = np.array([pad.at for pad in layer.pads]).T
+            pieces = np.unique(locate(xs, ys, layer.pieces))
+            found.update(board.net_of[first + int(piece)] for piece in pieces if piece >= 0)
+        first += len(layer.pieces)
+    return frozenset(found)
