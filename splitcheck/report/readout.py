@@ -62,7 +62,7 @@ def _layers(page: Page, report: Report) -> None:
 def _files(page: Page, report: Report) -> None:
     page.heading("Files, and why each is what it is")
     for row in report.inputs:
-        page.say(f"{shorten(row.file, 60)}: {row.kind}; {row.reason}")
+        page.say(f"{shorten(row.file, 60)}: {row.kind}; {row.reason}", lead="- ")
     if not report.inputs:
         page.say("None.")
 
