@@ -60,7 +60,7 @@ def read(
     script = scan(text, name)
     choice = choose(script, drill_fit.unique_places(pads))
     raws = play(script, choice.format)
-    plating = _plating(script)
+    plating = script.plated()
     span = _span(script)
     sizes_mm = {n: _size_mm(script, n, choice.format, tools, raws) for n in {r.tool for r in raws}}
     holes = []
@@ -77,13 +77,6 @@ def read(
         stated=drill_fit.states_all(script),
         remarks=(*script.remarks, *choice.remarks, *_count_remarks(script, raws)),
     )
-
-
-def _plating(script: Script) -> bool | None:
-    """Plating of the whole file: its attribute, or else its name."""
-    if script.function:
-        return {"plated": True, "nonplated": False}.get(script.function[0].casefold())
-    return naming.plating(script.name)
 
 
 def _span(script: Script) -> tuple[int, int] | None:

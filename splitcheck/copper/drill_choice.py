@@ -145,16 +145,17 @@ def _by_spread(script: Script, ranked: Sequence[Fit], pads: Floats) -> Choice:
 
 
 def _said(script: Script, fit: Fit, ranked: Sequence[Fit] = ()) -> str:
+    """How the file was read, and how many of its holes bear it out."""
     words = fit.format.words(script.all_decimal())
     count = len(_centres(script, fit.format))
-    text = f"{script.name}: read as {words}; {fit.share:.0%} of {count} holes lie on pads"
+    text = f"read as {words}; {fit.share:.0%} of {count} holes lie on pads"
+    if fit.share < _RIGHT and script.plated() is False:
+        text += ", but holes without plating need none"
     if not ranked:
-        return text
+        return f"{script.name}: {text}"
     other = next((r for r in ranked[1:] if r.share < fit.share), None)
-    rest = f" (next best {other.share:.0%})" if other else ""
-    return (
-        f"{script.name}: the number format is not stated in full; {text.partition(': ')[2]}{rest}"
-    )
+    rest = f" (next best format {other.share:.0%})" if other else ""
+    return f"{script.name}: the number format is not stated in full; {text}{rest}"
 
 
 def _centres(script: Script, form: Format) -> Floats:

@@ -6,7 +6,7 @@ import re
 from dataclasses import dataclass, field
 from typing import Literal, NamedTuple, TypeAlias
 
-from splitcheck.copper import sniff
+from splitcheck.copper import naming, sniff
 from splitcheck.errors import SplitcheckError
 
 Unit: TypeAlias = Literal["mm", "inch"]
@@ -77,6 +77,12 @@ class Script:
     function: tuple[str, ...] = ()
     """Its file function (X2), if any."""
     remarks: list[str] = field(default_factory=list)
+
+    def plated(self) -> bool | None:
+        """Plating of the whole file: by its attribute, or else its name."""
+        if self.function:
+            return {"plated": True, "nonplated": False}.get(self.function[0].casefold())
+        return naming.plating(self.name)
 
     def all_decimal(self) -> bool:
         """Whether every coordinate carries its decimal point."""
