@@ -11,7 +11,8 @@ from splitcheck.copper import drill_fit, naming
 from splitcheck.copper.drill_choice import choose
 from splitcheck.copper.drill_fit import Format
 from splitcheck.copper.drill_play import Raw, play
-from splitcheck.copper.drill_script import Script, Tool, scan
+from splitcheck.copper.drill_scan import scan
+from splitcheck.copper.drill_script import Script, Tool
 from splitcheck.copper.holes import DrillFile, Hole
 from splitcheck.copper.marks import Drawing, Flash, Point, Stroke
 from splitcheck.errors import SplitcheckError
