@@ -60,7 +60,7 @@ class _State:
         if self.placed and self.script.unit not in (None, unit):
             wrong = "changes units after the first coordinate"
             raise SplitcheckError(f"{self.script.name}:{line}", wrong, _AGAIN)
-        if self.script.unit not in (None, unit):
+        if self.script.unit not in (None, unit) and not self.script.remarks:
             self.script.remarks.append(
                 f"{self.script.name}:{line}: the unit changes from {self.script.unit} to {unit};"
                 " coordinates are read in the second, tools in the one they are listed under"

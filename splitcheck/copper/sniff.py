@@ -25,7 +25,8 @@ _NETLIST = re.compile(
 )
 _PLACEMENT = re.compile(
     r"^#{2,3} ?(?:Footprint|Module) positions"
-    r"|^\s*\"?(?:Ref(?:Des|erence)?|Designator)\b.*[,;\t].*(?:X|Rot)",
+    r"|^\s*\"?(?:Ref(?:Des|erence)?|Designator)\b.{0,300}"
+    r"(?:(?<![a-z])(?:Mid|Pos|Center|Ref|Location|Loc)?[ _-]?X\b|\bRot)",
     re.MULTILINE | re.IGNORECASE,
 )
 _TOOL_LINE = re.compile(

@@ -253,6 +253,8 @@ def test_drill_prose_netlist_and_tools_are_told_apart(tmp_path: Path) -> None:
         "b.TXT": DRILL, "b-npth.txt": DRILL, "readme.txt": "Drill: 0.2 mm\nT1 is small.\nM48 no\n",
         "b.ipc": IPC, "b.Tool": "T1 0.300000mm  362x [-52.07 | 18.41]\n",
         "pos.csv": "Designator,Layer,X,Y,Rotation\nR1,top,1,2,90\n", "b.pos": "R1 1.0 2.0 90 top\n",
+        "bom.csv": "Reference,Value,Box\nR1,10k,3\n",
+        "cpl.csv": "Designator,Mid X,Mid Y,Layer\nR1,1,2,T\n",
         "picture.png": b"\x89PNG\r\n\x1a\n\0\0\0\rIHDR",
     }  # fmt: skip
     export = open_export(_fill(tmp_path, files))
@@ -260,7 +262,7 @@ def test_drill_prose_netlist_and_tools_are_told_apart(tmp_path: Path) -> None:
     assert found == {
         "b.gtl": "copper", "b.gbl": "copper", "b.TXT": "drill", "b-npth.txt": "drill",
         "readme.txt": "readme", "b.ipc": "netlist", "b.Tool": "tools", "pos.csv": "placement",
-        "b.pos": "placement", "picture.png": "other",
+        "b.pos": "placement", "bom.csv": "readme", "cpl.csv": "placement", "picture.png": "other",
     }  # fmt: skip
     assert export.drill_tools() == {1: 0.3}
     plated = {f.name: f.plated for f in export.of_kind("drill")}
