@@ -180,6 +180,14 @@ def test_non_plated_holes_without_pads_keep_the_stated_format() -> None:
     assert not any("assumed" in remark for remark in file.remarks)
 
 
+def test_bare_holes_in_an_unstated_format_lie_within_the_copper() -> None:
+    """Few mounting holes without pads: the format by which they lie on the board, as assumption."""
+    rows = ["X0010000Y0020000", "X2300000Y0020000", "X2300000Y1500000"]
+    file = _read("M48", "METRIC", "T1C3.2", "%", "T1", *rows, "M30", pads=PADS)
+    assert _places(file) == [(0.1, 0.2), (23.0, 0.2), (23.0, 15.0)]
+    assert any("lie within the copper" in remark for remark in file.remarks)
+
+
 def test_one_pad_under_all_holes_is_no_fit() -> None:
     """A scale that draws all holes together onto one pad does not win."""
     rows = [f"X{round(x * 1e5):07d}Y{round(y * 1e5):07d}" for x, y in PADS]

@@ -133,6 +133,20 @@ def test_layer_order_in_a_writers_comment(tmp_path: Path) -> None:
     assert not export.assumptions
 
 
+def test_etch_layers_named_in_a_films_header(tmp_path: Path) -> None:
+    """A film whose header names an etch layer is copper of that name; a coupon is not used."""
+    films = {"f1.art": "TOP", "f2.art": "GND_L2", "f3.art": "PWR_L3", "f4.art": "BOTTOM"}
+    files: dict[str, str | bytes] = {
+        name: _gerber(f"G04 Layer:  PIN/{layer}*\nG04 Layer:  ETCH/{layer}*\n")
+        for name, layer in films.items()
+    }
+    files["x.gbr"] = _gerber("%TF.Part,Coupon*%\n" + _function("Copper", "L1", "Top"))
+    export = open_export(_fill(tmp_path, files))
+    assert _copper_names(export) == list(films)
+    assert [f.layer_name for f in export.copper()] == list(films.values())
+    assert _kinds(export)["x.gbr"] == "other"
+
+
 def test_roles_without_order_are_arranged_by_custom_and_said(tmp_path: Path) -> None:
     """Planes and signal layers without numbers are laid as stacks are, and it is an assumption."""
     names = ["TOP", "GND1", "SIG1-X", "SIG2-Y", "GND2", "PWR", "SIG3-X", "SIG4-Y", "GND3", "BOTTOM"]
