@@ -26,6 +26,8 @@ _MOST_CORNERS = 24
 _HOLLOW = 0.6
 #: More pieces than this in one cell are lumped together.
 _MOST_PARTS = 4
+#: ... at once if they are this many times as large as a panel at the trace.
+_LARGE = 12.0
 #: Gaps with more corners than this are clipped step by step.
 _INTRICATE = 100
 
@@ -44,6 +46,8 @@ class Grading:
     """Size of a panel at the trace."""
     slope: float = 0.35
     """By how much a panel may grow per mm of distance."""
+    far_mm: float = np.inf
+    """From this distance on panels grow twice as fast, and faster further out."""
     stretch: float = 3.0
     """How much longer than wide a panel at the trace may be, along the trace."""
     slender: float = np.inf
@@ -182,7 +186,8 @@ def _wanted(x: Floats, y: Floats, lines: Floats, rim: Floats, grading: Grading) 
     ux, uy = dx / length, dy / length
     along = np.clip((x[:, None] - x1) * ux + (y[:, None] - y1) * uy, 0.0, length)
     distance = np.hypot(x[:, None] - x1 - along * ux, y[:, None] - y1 - along * uy)
-    across_mm = np.maximum(grading.near_mm, grading.slope * distance)
+    growth = grading.slope * distance * (1.0 + distance / grading.far_mm)
+    across_mm = np.maximum(grading.near_mm, growth)
     along_mm = np.maximum(across_mm, grading.near_mm * grading.stretch)
     if len(rim):
         entry = np.hypot(x[:, None] - rim[:, 0], y[:, None] - rim[:, 1]).min(axis=1)
@@ -303,17 +308,17 @@ def _cut_out(
     rims = [np.zeros((int(whole.sum()), 4), dtype=bool)]
     areas = [np.prod(boxes[whole, 2:] - boxes[whole, :2], axis=1)]
     if not whole.all():
-        plain, cells, rough, owner = _plain_pieces(shapes[~whole], boxes[~whole], grading)
+        plain, cells, area, rough, owner = _plain_pieces(shapes[~whole], boxes[~whole], grading)
         if len(plain):
             edges = _edges_of(shapely.orient_polygons(plain))
             outlines.append(edges)
             rims.append(_on_rim(edges, cells))
-            areas.append(_true_areas(plain, edges))
+            areas.append(area)
         if len(rough):
-            edges, area = _lumps(rough, owner)
+            edges, whole_area = _lumps(rough, owner)
             outlines.append(edges)
             rims.append(np.zeros((len(edges), 4), dtype=bool))
-            areas.append(area)
+            areas.append(whole_area)
     widest = max(outline.shape[1] for outline in outlines)
     full = [_padded(outline, widest) for outline in outlines if len(outline)]
     marks = [np.pad(r, ((0, 0), (0, widest - r.shape[1]))) for r in rims if len(r)]
@@ -322,13 +327,16 @@ def _cut_out(
 
 def _plain_pieces(
     shapes: NDArray[np.object_], boxes: Floats, grading: Grading
-) -> tuple[NDArray[np.object_], Floats, NDArray[np.object_], Ints]:
+) -> tuple[NDArray[np.object_], Floats, Floats, NDArray[np.object_], Ints]:
     """Clip to cells, and cut on what is not compact.
 
-    Returns the compact pieces and their cells, and what is still not compact at the end, with the
-    number of the cell each such piece lies in.
+    Returns the compact pieces, their cells and areas, and what is still not compact at the end,
+    with the number of the cell that each such piece lies in.
     """
     done: list[tuple[NDArray[np.object_], Floats]] = []
+    lumps: list[tuple[NDArray[np.object_], Ints]] = []
+    count = len(boxes)
+    number = np.arange(count)
     for left in range(grading.rounds, -1, -1):
         pieces, owner = shapely.get_parts(
             shapely.intersection(shapes, shapely.box(*boxes.T)), return_index=True
@@ -340,22 +348,29 @@ def _plain_pieces(
             raise TooManyPanelsError
         bounds = shapely.bounds(pieces)
         compact = _compact(pieces, bounds, grading)
-        if not left:
-            parts = np.bincount(owner, minlength=1)
-            compact &= parts[owner] <= _MOST_PARTS
+        parts = np.bincount(owner, minlength=1)[owner]
+        extent = bounds[:, 2:] - bounds[:, :2]
+        # far from the traces, where cells are large, shapes do not matter so much
+        over = extent.max(axis=1) > _LARGE * grading.near_mm * 2.0 ** (left - grading.rounds)
+        end = over & (left < grading.rounds) | (left == 0)
+        compact &= ~(end & (parts > _MOST_PARTS))
         done.append((pieces[compact], cells[compact]))
-        if compact.all() or not left:
+        lumps.append((pieces[~compact & end], number[owner[~compact & end]]))
+        again = ~compact & ~end
+        if not again.any():
             break
-        extent = (bounds[:, 2:] - bounds[:, :2])[~compact]
-        middle = (bounds[~compact, :2] + bounds[~compact, 2:]) / 2
-        over = extent > 0.4 * extent.max(axis=1)[:, None]
-        boxes, owner = _halved(cells[~compact], middle, over)
-        shapes = pieces[~compact][owner]
+        middle = (bounds[again, :2] + bounds[again, 2:]) / 2
+        along = extent[again] > 0.4 * extent[again].max(axis=1)[:, None]
+        boxes, half = _halved(cells[again], middle, along)
+        number = count + np.arange(len(boxes))
+        count += len(boxes)
+        shapes = pieces[again][half]
     plain, inside = (np.concatenate(part) for part in zip(*done, strict=True))
+    rough, cell = (np.concatenate(part) for part in zip(*lumps, strict=True))
     area = shapely.area(plain)
     many = shapely.get_num_coordinates(plain) > 7
     plain[many] = shapely.simplify(plain[many], 0.03 * np.sqrt(area[many]))
-    return plain, inside, pieces[~compact], owner[~compact]
+    return plain, inside, area, rough, cell
 
 
 def _compact(
@@ -369,11 +384,6 @@ def _compact(
     good &= area > _HOLLOW * shapely.area(shapely.convex_hull(pieces))
     good &= long**2 <= grading.slender * area
     return good
-
-
-def _true_areas(plain: NDArray[np.object_], edges: Floats) -> Floats:
-    """Areas that the straightened pieces stand for."""
-    return shapely.area(plain)
 
 
 def _lumps(pieces: NDArray[np.object_], owner: Ints) -> tuple[Floats, Floats]:

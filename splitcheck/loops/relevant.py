@@ -32,8 +32,8 @@ class Scene:
 
     gaps: tuple[Polygon, ...]
     """Clean gaps, no two of them touching; the ones that are crossed first."""
-    coarse: tuple[bool, ...]
-    """For each gap: too far from the traces to need many panels."""
+    weight: tuple[int, ...]
+    """For each gap: 2 crossed by a trace (or nothing is crossed and it is near), 1 near, 0 far."""
     endless: int | None
     """Number of the gap that is the outside of the plane."""
     lines: tuple[Floats | None, ...]
@@ -78,12 +78,12 @@ def arrange(
     lines = [shapely.remove_repeated_points(line, 1e-9) for line in lines]
     trimmed = [_on_copper(line, clean) for line in lines]
     near = [line for line, _ in trimmed if line is not None] or list(lines)
-    chosen, coarse, left_out = _chosen(clean, near, [*near, *kept], height_mm, endless)
+    chosen, weight, left_out = _chosen(clean, near, [*near, *kept], height_mm, endless)
     tolerance = height_mm / 50
     finer = [_plainer(clean[k], tolerance) for k in chosen]
     return Scene(
         gaps=tuple(finer),
-        coarse=tuple(coarse),
+        weight=tuple(weight),
         endless=chosen.index(endless) if endless in chosen else None,
         lines=tuple(None if line is None else shapely.get_coordinates(line) for line, _ in trimmed),
         cut_short_mm=tuple(short for _, short in trimmed),
@@ -183,7 +183,7 @@ def _chosen(
     lines: Sequence[LineString],
     height_mm: float,
     endless: int | None,
-) -> tuple[list[int], list[bool], float]:
+) -> tuple[list[int], list[int], float]:
     """Gaps under a line, then those that matter to them; what the others may add, nH."""
     if not gaps or not lines:
         return [], [], 0.0
@@ -206,7 +206,10 @@ def _chosen(
     order = np.argsort(-weight, kind="stable")[:_MOST_GAPS]
     more = sorted(int(k) for k in wanted[order])
     left = float(alone.sum() - weight[order].sum())
-    return [*main, *more], [False] * len(main) + [True] * len(more), left
+    bundle = shapely.multilinestrings(list(lines))
+    crossed = shapely.intersects(shapes[main], bundle) if main else np.zeros(0, dtype=bool)
+    rank = [2 if here or not crossed.any() else 1 for here in crossed]
+    return [*main, *more], [*rank, *(0 for _ in more)], left
 
 
 def _alone_nh(gaps: NDArray[np.object_], traces: Sequence[LineString], height_mm: float) -> Floats:

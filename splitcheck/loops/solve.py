@@ -21,6 +21,8 @@ from splitcheck.units import MU0, Floats
 #: Size of a panel at the trace, in heights of the trace over the plane.
 _NEAR = 0.6
 _SLOPE = 0.4
+#: From this many panel sizes on they grow faster than in proportion to the distance.
+_FAR = 25.0
 #: The check solve is coarser by this; its distance from the fine one is part of the error.
 _COARSER = 2.0
 #: Where the two differ by more than this and the method's own error, the panels are halved again,
@@ -29,11 +31,11 @@ _SETTLED_NH = 4e-3
 _MORE = 2
 _REFINE_UP_TO = 600
 #: More unknowns than this are not solved for: the panels are made coarser instead.
-MAX_PANELS = 2000
+MAX_PANELS = 1000
 _COARSEN = 7
-#: A gap is cut into so many panels at least along its longer side, one far from traces into fewer.
-_LEAST = 8.4
-_LEAST_FAR = 2.1
+#: Into how many panels to cut the longer side of a gap at least: one far from all traces, one near
+#: them, and one that is crossed.
+_LEAST = (2.1, 4.2, 8.4)
 _SLENDER = 12.0
 #: What the method itself is off by where mesh and truncation are not: against the independent
 #: field solves of tests/loops/reference.csv, mostly because a real strip crowds its current.
@@ -327,9 +329,9 @@ def _panels(job: _Job, fineness: float, most: int = MAX_PANELS) -> Panels:
     slender = _SLENDER if job.plates_mm else np.inf
     lines = tuple(LineString(strip.line) for strip in job.strips)
     near, slope = job.near_mm / fineness, _SLOPE / fineness
-    least = np.where(job.scene.coarse, _LEAST_FAR, _LEAST) * fineness
+    least = np.array(_LEAST)[list(job.scene.weight)] * fineness
     for _ in range(_COARSEN):
-        grading = Grading(lines, near, slope, slender=slender, most=most)
+        grading = Grading(lines, near, slope, _FAR * near, slender=slender, most=most)
         try:
             mesh = cut(job.scene.gaps, grading, [float(k) for k in np.maximum(least, 2.0)])
         except TooManyPanelsError:
