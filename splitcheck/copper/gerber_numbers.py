@@ -5,8 +5,12 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import TypeAlias
 
+import numpy as np
+from numpy.typing import NDArray
+
 from splitcheck.copper import gerber_language as language
 from splitcheck.copper.gerber_log import Log
+from splitcheck.units import Floats
 
 Convert: TypeAlias = Callable[[str], float]
 
@@ -63,6 +67,21 @@ class Numbers:
                 converter(how.decimals[1], how.digits[1], unit, trailing=how.trailing_omitted),
             )
         return self._convert
+
+    def points(self, digits: NDArray[np.int64]) -> Floats | None:
+        """Many coordinates at once, shape (n, 2), mm; ``None`` where it takes one by one."""
+        self.converters()
+        assert self.format is not None
+        assert self.unit_mm is not None
+        if self.incremental or self.format.trailing_omitted:
+            return None
+        divisor = np.array([10**decimals for decimals in self.format.decimals])
+        if self.unit_mm == 1.0 and max(self.format.decimals) <= 6:
+            mm: Floats = digits / divisor
+        else:
+            nm = (digits * round(self.unit_mm * 1_000_000) + divisor // 2) // divisor
+            mm = nm / 1_000_000
+        return mm
 
     def digits(self, text: str, axis: str) -> str:
         """A coordinate with a decimal point, as the digits that the file's format would have."""

@@ -6,6 +6,9 @@ import re
 from collections.abc import Iterator
 from typing import NamedTuple
 
+import numpy as np
+from numpy.typing import NDArray
+
 from splitcheck.errors import SplitcheckError
 
 #: One word: blank before it, G code, X, Y, I, J, D code, and whatever else, up to its star.
@@ -14,6 +17,9 @@ WORD = re.compile(
     r"(\s*)(?:G0*(\d{1,3}))?(?:X([+-]?\d{1,18}))?(?:Y([+-]?\d{1,18}))?"
     r"(?:I([+-]?\d{1,18}))?(?:J([+-]?\d{1,18}))?(?:D0*(\d{1,9}))?([^*]*)\*"
 )
+#: Straight draws one after another, X and Y both given: most of any file, taken all at once.
+RUN = re.compile(r"(?:X[+-]?\d{1,11}Y[+-]?\d{1,11}D0*1\*\s*){8,}")
+_RUN_SIGNS = str.maketrans("XYD*", "    ")
 _COMMENT = re.compile(r"\s*G0*4(?!\d)")
 _LETTERS = 4096
 
@@ -91,6 +97,18 @@ def _words(text: str, line: int, *, last: bool) -> Iterator[Block]:
     if rest.strip(" \t\r\n\f\x1a\0"):
         before = len(text) - len(rest.lstrip())
         yield Block(False, rest.strip(), line + text.count("\n", 0, before), False, last)
+
+
+def run_numbers(run: str) -> NDArray[np.int64]:
+    """Digits of a run, shape (n, 2), in units of the file's last decimal.
+
+    Examples
+    --------
+    >>> run_numbers("X1Y-2D01*X30Y4D1*").tolist()
+    [[1, -2], [30, 4]]
+    """
+    numbers = np.fromstring(run.translate(_RUN_SIGNS), dtype=np.int64, sep=" ")
+    return numbers.reshape(-1, 3)[:, :2]
 
 
 def in_order(word: str) -> list[dict[str, str]] | None:

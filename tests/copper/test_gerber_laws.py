@@ -180,7 +180,9 @@ def test_paint_is_the_plain_fold_of_its_marks(drawing: list[Move]) -> None:
     plain: BaseGeometry = shapely.Polygon()
     for mark in marks:
         shape = paint_of([mark._replace(dark=True)])
-        plain = plain.union(shape) if mark.dark else plain.difference(shape)
+        # On a grid: in floating numbers this plain fold itself goes wrong now and then.
+        paint_on = shapely.union if mark.dark else shapely.difference
+        plain = paint_on(plain, shape, grid_size=1e-6)
     assert_same(plain, paint_of(marks))
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from functools import partial
 from itertools import pairwise
 from math import pi
 
@@ -12,7 +13,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 from shapely import Polygon
 
-from splitcheck.copper import curves, fills, paint
+from splitcheck.copper import coats, curves, fills, paint
 from splitcheck.copper.marks import NO_TAG, Fill, Flash, Mark, Point, Stroke, Tag
 
 GND, VCC, CLK = Tag("GND"), Tag("VCC"), Tag("CLK")
@@ -85,7 +86,7 @@ class TestPaint:
             box(n % 7, n % 5, 3 + n % 4, 2 + n % 3, dark=n % 3 > 0) for n in range(60)
         ]
         sorted_out = paint.paint(marks)
-        monkeypatch.setattr(paint, "MOST_PAIRS", 3)
+        monkeypatch.setattr(paint, "coats", partial(coats.coats, most_pairs=3))
         in_runs = paint.paint(marks)
         one, other = (
             shapely.union_all(np.array(pieces, dtype=object)) for pieces in (sorted_out, in_runs)

@@ -1,0 +1,151 @@
+"""Shapes added to copper and cut from it: large and small ones kept apart, so that it is fast."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+
+import numpy as np
+import shapely
+from shapely.geometry.base import BaseGeometry
+
+from splitcheck.copper.outlines import Shapes
+from splitcheck.units import GRID_MM
+
+#: A shape of more corners than this is large: a pour or a plane.
+LARGE_CORNERS = 400
+
+
+def united(shapes: Shapes) -> Shapes:
+    """Connected pieces of the union of shapes that files give, with their corners on the grid.
+
+    Parameters
+    ----------
+    shapes
+        Valid polygons and multipolygons, shape (n,), mm.
+
+    Returns
+    -------
+    Disjoint polygons, shape (m,), in no particular order.
+
+    Notes
+    -----
+    A union of thousands of shapes works up a tree, and a plane of 20,000 corners would be
+    overlaid again at every level of it. So the small shapes are united first, those wholly inside
+    a large one are dropped, and each large one is overlaid once with what reaches over its edge.
+    Measured on planes with a few thousand pads: 2 to 4 times faster.
+    """
+    parts: Shapes = shapely.get_parts(shapes)
+    large = shapely.get_num_coordinates(parts) > LARGE_CORNERS
+    small = parts[~large]
+    if len(small):
+        small = np.asarray(shapely.get_parts(shapely.disjoint_subset_union_all(small)), dtype=object)
+    return _overlaid(parts[large], small) if large.any() else small
+
+
+def added(standing: Shapes, pieces: Shapes) -> Shapes:
+    """Paint dark over copper that was cut before.
+
+    Parameters
+    ----------
+    standing, pieces
+        Disjoint polygons each, shape (n,) and (m,), mm.
+
+    Returns
+    -------
+    Disjoint polygons.
+    """
+    if not len(standing) or not len(pieces):
+        return np.concatenate((standing, pieces))
+    return _overlaid(standing, pieces)
+
+
+def cleared(standing: Shapes, clear: Shapes) -> Shapes:
+    """What clear shapes leave of disjoint pieces; only pieces that one of them meets are touched."""
+    piece, hit = shapely.STRtree(clear).query(standing, predicate="intersects")
+    if not len(piece):
+        return standing
+    left = standing.copy()
+    starts = np.searchsorted(piece, np.arange(len(standing) + 1))
+    for number in np.unique(piece).tolist():
+        cutter = shapely.union_all(clear[hit[starts[number] : starts[number + 1]]])
+        left[number] = _without(standing[number], cutter)
+    parts: Shapes = shapely.get_parts(left)
+    return parts[shapely.area(parts) > 0]
+
+
+def _overlaid(planes: Shapes, small: Shapes) -> Shapes:
+    """Large shapes, and small disjoint ones: each group that hangs together in one overlay."""
+    shapely.prepare(planes)
+    plane, hit = shapely.STRtree(small).query(planes, predicate="intersects")
+    swallowed = np.zeros(len(small), dtype=bool)
+    swallowed[hit[shapely.covers(planes[plane], small[hit])]] = True
+    reaching = ~swallowed[hit]
+    groups = _groups(planes, plane[reaching].tolist(), hit[reaching].tolist())
+    pieces = [_whole(planes[p], small[s]) for p, s in groups]
+    loose = np.ones(len(small), dtype=bool)
+    loose[hit] = False
+    return np.concatenate([small[loose], *pieces])
+
+
+def _whole(planes: Shapes, small: Shapes) -> Shapes:
+    whole = planes[0] if len(planes) == 1 else shapely.union_all(planes)
+    if len(small):
+        # The small pieces are disjoint, so together they are one valid multipolygon.
+        whole = _with(whole, shapely.MultiPolygon(list(small)))
+    return np.asarray(shapely.get_parts(whole), dtype=object)
+
+
+def _with(one: BaseGeometry, other: BaseGeometry) -> BaseGeometry:
+    """Union of two, checked by their intersection.
+
+    Notes
+    -----
+    Where copper was cut, new corners lie a rounding off the edges they were cut from, and an edge
+    may be painted or cut there again. In floating numbers such overlays can go wrong without a
+    word (seen: 0.7 mm2 of copper where no mark was). Areas tell: if union and intersection do not
+    add up to both parts, it is done again on the 1 nm grid, which is safe and slower.
+    """
+    both = shapely.union(one, other)
+    common = shapely.intersection(one, other)
+    if _adds_up(one.area + other.area, both.area + common.area):
+        return both
+    return shapely.union(one, other, grid_size=GRID_MM)
+
+
+def _without(one: BaseGeometry, other: BaseGeometry) -> BaseGeometry:
+    """Difference of two, checked by their intersection in the same way."""
+    left = shapely.difference(one, other)
+    common = shapely.intersection(one, other)
+    if _adds_up(one.area, left.area + common.area):
+        return left
+    return shapely.difference(one, other, grid_size=GRID_MM)
+
+
+def _adds_up(expected_mm2: float, found_mm2: float) -> bool:
+    return abs(expected_mm2 - found_mm2) <= 1e-7 * max(1.0, expected_mm2)
+
+
+def _groups(
+    planes: Shapes, plane_of: list[int], small_of: list[int]
+) -> list[tuple[list[int], list[int]]]:
+    """Large shapes that hang together, directly or by small ones, with those small ones."""
+    parent = list(range(len(planes)))
+
+    def root(number: int) -> int:
+        while parent[number] != number:
+            parent[number] = parent[parent[number]]
+            number = parent[number]
+        return number
+
+    first, second = shapely.STRtree(planes).query(planes, predicate="intersects")
+    for one, other in zip(first.tolist(), second.tolist(), strict=True):
+        parent[root(one)] = root(other)
+    owner: dict[int, int] = {}
+    for one, piece in zip(plane_of, small_of, strict=True):
+        parent[root(one)] = root(owner.setdefault(piece, one))
+    members: dict[int, tuple[list[int], list[int]]] = defaultdict(lambda: ([], []))
+    for number in range(len(planes)):
+        members[root(number)][0].append(number)
+    for piece, one in owner.items():
+        members[root(one)][1].append(piece)
+    return [members[key] for key in sorted(members)]
