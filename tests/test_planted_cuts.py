@@ -55,7 +55,7 @@ def test_every_cut_planted_in_the_clean_twin_is_found(tmp_path: Path, seed: int)
 
 
 def _boards_with_names(corpus: Path) -> list[Path]:
-    """Boards of the corpus with at least four copper layers whose traces carry net names."""
+    """Boards of four copper layers or more whose traces carry net names, the shortest first."""
     chosen = []
     for folder in sorted(path for path in corpus.iterdir() if path.is_dir()):
         try:
@@ -63,18 +63,20 @@ def _boards_with_names(corpus: Path) -> list[Path]:
         except SplitcheckError:
             continue
         if len(copper) >= 4 and "%TO.N," in copper[0].text:
-            chosen.append(folder)
-    return chosen
+            chosen.append((sum(len(file.text) for file in copper), folder))
+    return [folder for _, folder in sorted(chosen)]
 
 
 @pytest.mark.slow
 def test_every_cut_planted_in_real_boards_is_found(corpus: Path, tmp_path: Path) -> None:
-    """Fifty cuts each in at least three boards as their makers exported them."""
+    """Fifty cuts each in three boards as their makers exported them."""
     tried = 0
     for folder in _boards_with_names(corpus):
+        if tried == 3:
+            break
         spoiled, cuts = _planted(folder, tmp_path, seed=1)
         if len(cuts) < WANTED:
             continue
         tried += 1
         assert _missed(rank(spoiled), cuts) == [], folder.name
-    assert tried >= 3
+    assert tried == 3
