@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import shapely
@@ -24,10 +25,12 @@ _SLIVER = 1e-4
 #: Pieces with more corners than this, or that fill less than this of their hull, are cut again.
 _MOST_CORNERS = 24
 _HOLLOW = 0.6
-#: More pieces than this in one cell are lumped together.
-_MOST_PARTS = 4
-#: ... at once if they are this many times as large as a panel at the trace.
+#: Of so many pieces in one cell at most panels are made.
+_MOST_PARTS = 6
+#: Intricate pieces are not cut on if they are this many times as large as a panel at the trace.
 _LARGE = 12.0
+#: A gap that asks for no more panels along its side than this is cut into four.
+_FEW = 2.5
 #: Gaps with more corners than this are clipped step by step.
 _INTRICATE = 100
 
@@ -52,6 +55,8 @@ class Grading:
     """How much longer than wide a panel at the trace may be, along the trace."""
     slender: float = np.inf
     """How long against its width a panel may be at most."""
+    root_mm: float = np.inf
+    """Size of panel that the first division of a large gap aims at; inf: `near_mm`."""
     rounds: int = 3
     """How often to cut on pieces that are not compact, before they are lumped together."""
     most: int = 100_000
@@ -76,6 +81,8 @@ class Panels:
     """Four points of equal weight that have the same second moments, shape (n, 4, 2), mm."""
     radius: Floats
     """Largest distance of a corner from the centroid, shape (n,), mm."""
+    inside: Floats
+    """A point of the gap in each panel, shape (n, 2), mm."""
     gap: Ints
     """Number of the gap each panel belongs to, shape (n,)."""
 
@@ -106,25 +113,38 @@ def cut(gaps: Sequence[Polygon], grading: Grading, least: Sequence[float] = ()) 
     >>> bool(panels.area.sum() > slot.area)
     True
     """
-    edges: list[Floats] = []
-    rims: list[NDArray[np.bool_]] = []
-    areas: list[Floats] = []
-    numbers: list[Ints] = []
+    found = []
     for number, gap in enumerate(gaps):
-        outline, rim, area = _pieces(gap, grading, least[number] if least else 4.0)
-        edges.append(outline)
-        areas.append(area)
-        rims.append(rim)
-        numbers.append(np.full(len(outline), number, dtype=np.int64))
-    widest = max((outline.shape[1] for outline in edges), default=1)
-    if not edges:
-        nothing = np.zeros((0, 1, 4))
-        return _measured(nothing, nothing[:, :, 0] > 0, np.zeros(0), np.zeros(0, np.int64))
-    return _measured(
-        np.concatenate([_padded(outline, widest) for outline in edges]),
-        np.concatenate([np.pad(rim, ((0, 0), (0, widest - rim.shape[1]))) for rim in rims]),
-        np.concatenate(areas),
-        np.concatenate(numbers),
+        parts = least[number] if least else 4.0
+        found.append(_quarters(gap) if parts <= _FEW else _pieces(gap, grading, parts))
+    owner = np.repeat(np.arange(len(found)), [len(cuts.area) for cuts in found])
+    return _measured(_stacked(found), owner)
+
+
+class _Cuts(NamedTuple):
+    """Pieces of a gap on their way to be panels."""
+
+    edges: Floats
+    rim: NDArray[np.bool_]
+    """Which edges lie on the rim of the gap."""
+    area: Floats
+    """Areas that the pieces stand for."""
+    inside: Floats
+    """A point in each of them."""
+
+
+def _stacked(cuts: Sequence[_Cuts]) -> _Cuts:
+    """Put pieces together; all get as many edges as the one with most."""
+    full = [some for some in cuts if len(some.area)]
+    if not full:
+        none = np.zeros((0, 1, 4))
+        return _Cuts(none, none[:, :, 0] > 0, np.zeros(0), np.zeros((0, 2)))
+    widest = max(some.edges.shape[1] for some in full)
+    return _Cuts(
+        np.concatenate([_padded(some.edges, widest) for some in full]),
+        np.concatenate([np.pad(s.rim, ((0, 0), (0, widest - s.rim.shape[1]))) for s in full]),
+        np.concatenate([some.area for some in full]),
+        np.concatenate([some.inside for some in full]),
     )
 
 
@@ -135,18 +155,36 @@ def _padded(outline: Floats, widest: int) -> Floats:
     return np.concatenate([outline, np.repeat(start, room, axis=1)], axis=1)
 
 
-def _pieces(
-    gap: Polygon, grading: Grading, least: float
-) -> tuple[Floats, NDArray[np.bool_], Floats]:
-    """Edges of the panels of one gap, which of them lie on the rim of the gap, and areas."""
+def _pieces(gap: Polygon, grading: Grading, least: float) -> _Cuts:
+    """Cut one gap, in cells that lie along it."""
     angle = _frame_angle(gap, grading)
     turned = rotate(gap, -angle, origin=(0, 0), use_radians=True) if angle else gap
-    lines = _segments(grading.lines, gap, grading)
+    lines = _segments(grading.lines, grading)
     cos, sin = np.cos(angle), np.sin(angle)
     back = np.array([[cos, -sin], [sin, cos]])
     local = (lines.reshape(-1, 2) @ back).reshape(-1, 4)
-    outline, rim, area = _clipped(turned, local, grading, least)
-    return (outline.reshape(-1, 2) @ back.T).reshape(outline.shape), rim, area
+    cuts = _clipped(turned, local, grading, least)
+    edges = (cuts.edges.reshape(-1, 2) @ back.T).reshape(cuts.edges.shape)
+    return cuts._replace(edges=edges, inside=cuts.inside @ back.T)
+
+
+def _quarters(gap: Polygon) -> _Cuts:
+    """Four rectangles for a gap far away: together of its area and second moments."""
+    edges = _edges_of(np.array([gap], dtype=object))
+    (area,), (centre,), spread = _moments(edges)
+    (u,), (v,) = _axes(spread)
+    u, v = np.sqrt(3.0) * u, np.sqrt(3.0) * v
+    grow = np.sqrt(area / (4 * np.hypot(*u) * np.hypot(*v)))
+    quarter = np.array([[0, 0], [1, 0], [1, 1], [0, 1]])
+    rings = []
+    for a, b in ((-1, -1), (0, -1), (0, 0), (-1, 0)):
+        steps = quarter + np.array([a, b])
+        rings.append(centre + grow * (steps[:, :1] * u + steps[:, 1:] * v))
+    ring = np.array(rings)
+    rim = np.array([[True, False, False, True], [True, True, False, False]] * 2)
+    rim[2:] = [[False, True, True, False], [False, False, True, True]]
+    edges = np.concatenate([ring, np.roll(ring, -1, axis=1)], axis=2)
+    return _Cuts(edges, rim, np.full(4, area / 4), ring.mean(axis=1))
 
 
 def _frame_angle(gap: Polygon, grading: Grading) -> float:
@@ -166,7 +204,7 @@ def _frame_angle(gap: Polygon, grading: Grading) -> float:
     return 0.0 if abs(angle) < 1e-9 else angle
 
 
-def _segments(lines: Sequence[LineString], gap: Polygon, grading: Grading) -> Floats:
+def _segments(lines: Sequence[LineString], grading: Grading) -> Floats:
     """Straight stretches of the traces that matter for the size of panels in this gap."""
     found: list[Floats] = []
     for line in lines:
@@ -211,14 +249,14 @@ def _entries(gap: Polygon, lines: Floats) -> Floats:
 
 def _clipped(
     gap: Polygon, lines: Floats, grading: Grading, least: float
-) -> tuple[Floats, NDArray[np.bool_], Floats]:
+) -> _Cuts:
     """Halve the cells of the bounding box until they are fine enough, and clip them."""
     shapely.prepare(gap)
     west, south, east, north = gap.bounds
     # a hair wider, by odd amounts, so that no cell border falls on a rim
     hair = 1e-7 * max(east - west, north - south)
     around = [west - hair, south - 1.7 * hair, east + 2.3 * hair, north + 1.3 * hair]
-    boxes = _roots(around, grading.near_mm)
+    boxes = _roots(around, min(grading.root_mm, grading.near_mm))
     shapes = np.full(len(boxes), gap, dtype=object)
     rim = _entries(gap, lines)
     holes = np.array([ring.bounds for ring in gap.interiors]).reshape(-1, 4)
@@ -251,8 +289,19 @@ def _met(
     intricate = shapely.get_num_coordinates(shapes) > _INTRICATE
     if intricate.any():
         shapes = shapes.copy()
-        shapes[intricate] = shapely.intersection(shapes[intricate], cells[intricate])
+        shapes[intricate] = _clips(shapes[intricate], boxes[intricate])
     return boxes, shapes
+
+
+def _clips(shapes: NDArray[np.object_], boxes: Floats) -> NDArray[np.object_]:
+    """Clip polygons to boxes; by far faster than an intersection where they are intricate."""
+    out = np.empty(len(shapes), dtype=object)
+    for k, (shape, box) in enumerate(zip(shapes, boxes.tolist(), strict=True)):
+        out[k] = shapely.clip_by_rect(shape, *box)
+    bad = ~shapely.is_valid(out)
+    if bad.any():
+        out[bad] = shapely.intersection(shapes[bad], shapely.box(*boxes[bad].T))
+    return out
 
 
 def _roots(around: Sequence[float], near_mm: float) -> Floats:
@@ -301,76 +350,74 @@ def _halved(boxes: Floats, middle: Floats, over: NDArray[np.bool_]) -> tuple[Flo
 
 def _cut_out(
     gap: Polygon, boxes: Floats, shapes: NDArray[np.object_], grading: Grading
-) -> tuple[Floats, NDArray[np.bool_], Floats]:
-    """Clip cells to the gap: edges of the pieces, which of them lie on the rim, and areas."""
+) -> _Cuts:
+    """Clip cells to the gap."""
     whole = shapely.contains_properly(gap, shapely.box(*boxes.T))
-    outlines = [_box_edges(boxes[whole])]
-    rims = [np.zeros((int(whole.sum()), 4), dtype=bool)]
-    areas = [np.prod(boxes[whole, 2:] - boxes[whole, :2], axis=1)]
+    inner = boxes[whole]
+    middle, size = (inner[:, :2] + inner[:, 2:]) / 2, inner[:, 2:] - inner[:, :2]
+    off_rim = np.zeros((len(inner), 4), dtype=bool)
+    cuts = [_Cuts(_box_edges(inner), off_rim, size.prod(axis=1), middle)]
     if not whole.all():
-        plain, cells, area, rough, owner = _plain_pieces(shapes[~whole], boxes[~whole], grading)
+        plain, cells, area, hollow = _plain_pieces(shapes[~whole], boxes[~whole], grading)
         if len(plain):
             edges = _edges_of(shapely.orient_polygons(plain))
-            outlines.append(edges)
-            rims.append(_on_rim(edges, cells))
-            areas.append(area)
-        if len(rough):
-            edges, whole_area = _lumps(rough, owner)
-            outlines.append(edges)
-            rims.append(np.zeros((len(edges), 4), dtype=bool))
-            areas.append(whole_area)
-    widest = max(outline.shape[1] for outline in outlines)
-    full = [_padded(outline, widest) for outline in outlines if len(outline)]
-    marks = [np.pad(r, ((0, 0), (0, widest - r.shape[1]))) for r in rims if len(r)]
-    return np.concatenate(full), np.concatenate(marks), np.concatenate(areas)
+            cuts.append(_Cuts(edges, _on_rim(edges, cells), area, _points_in(plain)))
+        if len(hollow):
+            cuts.append(_lumps(hollow))
+    return _stacked(cuts)
+
+
+def _points_in(pieces: NDArray[np.object_]) -> Floats:
+    return shapely.get_coordinates(shapely.point_on_surface(pieces))
 
 
 def _plain_pieces(
     shapes: NDArray[np.object_], boxes: Floats, grading: Grading
-) -> tuple[NDArray[np.object_], Floats, Floats, NDArray[np.object_], Ints]:
+) -> tuple[NDArray[np.object_], Floats, Floats, NDArray[np.object_]]:
     """Clip to cells, and cut on what is not compact.
 
-    Returns the compact pieces, their cells and areas, and what is still not compact at the end,
-    with the number of the cell that each such piece lies in.
+    Returns the compact pieces, their cells and areas, and what is still not compact at the end.
+    Of cells that hold many pieces only the largest count.
     """
     done: list[tuple[NDArray[np.object_], Floats]] = []
-    lumps: list[tuple[NDArray[np.object_], Ints]] = []
-    count = len(boxes)
-    number = np.arange(count)
+    lumps: list[NDArray[np.object_]] = []
     for left in range(grading.rounds, -1, -1):
-        pieces, owner = shapely.get_parts(
-            shapely.intersection(shapes, shapely.box(*boxes.T)), return_index=True
-        )
+        simple = shapely.get_num_coordinates(shapes) <= _INTRICATE
+        clipped = shapes.copy()
+        clipped[simple] = shapely.intersection(shapes[simple], shapely.box(*boxes[simple].T))
+        clipped[~simple] = _clips(shapes[~simple], boxes[~simple])
+        pieces, owner = shapely.get_parts(clipped, return_index=True)
         cells = boxes[owner]
         keep = shapely.area(pieces) > _SLIVER * np.prod(cells[:, 2:] - cells[:, :2], axis=1)
-        pieces, cells, owner = shapely.simplify(pieces[keep], 0.0), cells[keep], owner[keep]
+        pieces, cells, owner = pieces[keep], cells[keep], owner[keep]
         if len(pieces) > 3 * grading.most:
             raise TooManyPanelsError
         bounds = shapely.bounds(pieces)
         compact = _compact(pieces, bounds, grading)
-        parts = np.bincount(owner, minlength=1)[owner]
         extent = bounds[:, 2:] - bounds[:, :2]
         # far from the traces, where cells are large, shapes do not matter so much
         over = extent.max(axis=1) > _LARGE * grading.near_mm * 2.0 ** (left - grading.rounds)
         end = over & (left < grading.rounds) | (left == 0)
-        compact &= ~(end & (parts > _MOST_PARTS))
-        done.append((pieces[compact], cells[compact]))
-        lumps.append((pieces[~compact & end], number[owner[~compact & end]]))
+        kept = ~end | (_rank(shapely.area(pieces), owner) < _MOST_PARTS)
+        done.append((pieces[compact & kept], cells[compact & kept]))
+        lumps.append(pieces[~compact & end & kept])
         again = ~compact & ~end
         if not again.any():
             break
         middle = (bounds[again, :2] + bounds[again, 2:]) / 2
         along = extent[again] > 0.4 * extent[again].max(axis=1)[:, None]
         boxes, half = _halved(cells[again], middle, along)
-        number = count + np.arange(len(boxes))
-        count += len(boxes)
         shapes = pieces[again][half]
     plain, inside = (np.concatenate(part) for part in zip(*done, strict=True))
-    rough, cell = (np.concatenate(part) for part in zip(*lumps, strict=True))
+    hollow = np.concatenate(lumps)
     area = shapely.area(plain)
-    many = shapely.get_num_coordinates(plain) > 7
-    plain[many] = shapely.simplify(plain[many], 0.03 * np.sqrt(area[many]))
-    return plain, inside, area, rough, cell
+    many = np.flatnonzero(shapely.get_num_coordinates(plain) > 7)
+    rough = shapely.simplify(plain[many], 0.03 * np.sqrt(area[many]), preserve_topology=False)
+    fit = (shapely.get_type_id(rough) == 3) & (shapely.area(rough) > 0.7 * area[many])
+    fit &= shapely.is_valid(rough)
+    rough[~fit] = shapely.simplify(plain[many[~fit]], 0.03 * np.sqrt(area[many[~fit]]))
+    plain[many] = rough
+    return plain, inside, area, hollow
 
 
 def _compact(
@@ -378,7 +425,7 @@ def _compact(
 ) -> NDArray[np.bool_]:
     """Which pieces one density and a few points can stand for."""
     area = shapely.area(pieces)
-    rough = shapely.simplify(pieces, 0.03 * np.sqrt(area))
+    rough = shapely.simplify(pieces, 0.03 * np.sqrt(area), preserve_topology=False)
     long = (bounds[:, 2:] - bounds[:, :2]).max(axis=1)
     good: NDArray[np.bool_] = shapely.get_num_coordinates(rough) <= _MOST_CORNERS
     good &= area > _HOLLOW * shapely.area(shapely.convex_hull(pieces))
@@ -386,21 +433,24 @@ def _compact(
     return good
 
 
-def _lumps(pieces: NDArray[np.object_], owner: Ints) -> tuple[Floats, Floats]:
-    """One rectangle, of the same area and second moments, for what is left in each cell."""
+def _rank(area: Floats, owner: Ints) -> Ints:
+    """The how-manieth largest of its owner each piece is, from 0."""
+    order = np.lexsort((-area, owner))
+    first = np.searchsorted(owner[order], owner[order], side="left")
+    rank = np.empty(len(area), dtype=np.int64)
+    rank[order] = np.arange(len(area)) - first
+    return rank
+
+
+def _lumps(pieces: NDArray[np.object_]) -> _Cuts:
+    """A rectangle of the same centre and second moments in place of each intricate piece."""
     area, centre, spread = _moments(_edges_of(shapely.orient_polygons(pieces)))
-    _, cell = np.unique(owner, return_inverse=True)
-    whole = np.bincount(cell, area)
-    mean = np.stack([np.bincount(cell, area * centre[:, k]) / whole for k in (0, 1)], axis=1)
-    off = centre - mean[cell]
-    square = np.stack([off[:, 0] ** 2, off[:, 0] * off[:, 1], off[:, 1] ** 2], axis=1)
-    moment = area[:, None] * (spread + square)
-    total = np.stack([np.bincount(cell, moment[:, k]) / whole for k in (0, 1, 2)], axis=1)
-    u, v = _axes(total)
-    # the moments keep the reach of a hollow lump; its rectangle is longer, not wider, than it is
-    corners = [-u - v, u - v, u + v, v - u]
-    ring = mean[:, None, :] + np.sqrt(3.0) * np.stack(corners, axis=1)
-    return np.concatenate([ring, np.roll(ring, -1, axis=1)], axis=2), whole
+    u, v = _axes(spread)
+    corners = np.stack([-u - v, u - v, u + v, v - u], axis=1)
+    ring = centre[:, None, :] + np.sqrt(3.0) * corners
+    edges = np.concatenate([ring, np.roll(ring, -1, axis=1)], axis=2)
+    off_rim = np.zeros((len(pieces), 4), dtype=bool)
+    return _Cuts(edges, off_rim, area, _points_in(pieces))
 
 
 def _axes(spread: Floats) -> tuple[Floats, Floats]:
@@ -453,17 +503,19 @@ def _on_rim(edges: Floats, boxes: Floats) -> NDArray[np.bool_]:
     return ~border & (length > 0)
 
 
-def _measured(edges: Floats, rim: NDArray[np.bool_], true: Floats, gap: Ints) -> Panels:
+def _measured(cuts: _Cuts, gap: Ints) -> Panels:
     """Widen panels at the rim, up to what their true area asks for, and measure them."""
-    area, centre, _ = _moments(edges)
-    edges = _widened(edges, rim, (1 + _WIDEN) * true / area - 1, centre)
+    area, centre, _ = _moments(cuts.edges)
+    # a lump keeps its moments rather than its area
+    part = np.where(cuts.rim.any(axis=1), (1 + _WIDEN) * cuts.area / area - 1, 0.0)
+    edges = _widened(cuts.edges, cuts.rim, part, centre)
     area, centre, spread = _moments(edges)
     u, v = _axes(spread)
     points = centre[:, None, :] + np.stack([u + v, u - v, v - u, -u - v], axis=1)
     reach = np.hypot(edges[:, :, 0] - centre[:, None, 0], edges[:, :, 1] - centre[:, None, 1])
     sides = np.sqrt(12.0) * np.stack([np.hypot(*u.T), np.hypot(*v.T)], axis=1)
     radius = reach.max(axis=1) if len(edges) else np.zeros(0)
-    return Panels(edges, area, centre, spread, sides, points, radius, gap)
+    return Panels(edges, area, centre, spread, sides, points, radius, cuts.inside, gap)
 
 
 def _moments(edges: Floats) -> tuple[Floats, Floats, Floats]:

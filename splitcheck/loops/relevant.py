@@ -21,9 +21,9 @@ _REACH = 2.5
 #: ... but only to this many times the distance of another plane, if there is one.
 _REACH_PLATES = 12.0
 #: Gaps that would add less than this by themselves are left out unless a crossed gap is near, nH.
-_NEGLIGIBLE_NH = 5e-4
+_NEGLIGIBLE_NH = 1e-3
 #: At most this many gaps beside those crossed; the rest goes into the error.
-_MOST_GAPS = 80
+_MOST_GAPS = 40
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,6 +51,8 @@ def arrange(
     outside: Polygon | None,
     kept: Sequence[LineString] = (),
     plate_mm: float | None = None,
+    *,
+    disjoint: bool = False,
 ) -> Scene:
     """Clean and choose gaps, and pull the ends of lines back onto copper.
 
@@ -68,13 +70,15 @@ def arrange(
         More lines of which a crossed gap is always kept: the bridges.
     plate_mm
         Distance of another plane, which keeps the field close to the rim of the board.
+    disjoint
+        The gaps are known to be valid and not to touch.
 
     Returns
     -------
     The scene.
     """
     reach = np.inf if plate_mm is None else _REACH_PLATES * max(plate_mm, height_mm)
-    clean, endless = _merged(gaps, outside, reach)
+    clean, endless = _merged(gaps, outside, reach, disjoint=disjoint)
     lines = [shapely.remove_repeated_points(line, 1e-9) for line in lines]
     trimmed = [_on_copper(line, clean) for line in lines]
     near = [line for line, _ in trimmed if line is not None] or list(lines)
@@ -92,17 +96,16 @@ def arrange(
 
 
 def _merged(
-    gaps: Sequence[Polygon], outside: Polygon | None, reach_mm: float
+    gaps: Sequence[Polygon], outside: Polygon | None, reach_mm: float, *, disjoint: bool
 ) -> tuple[list[Polygon], int | None]:
     """Valid polygons that do not touch, in a fixed order, and which of them is the outside."""
-    shapes = shapely.get_parts(shapely.make_valid(np.array(gaps, dtype=object).reshape(-1)))
+    shapes = np.array(gaps, dtype=object).reshape(-1)
+    if not disjoint:
+        shapes = _joined(shapely.get_parts(shapely.make_valid(shapes)))
     if outside is not None:
-        west, south, east, north = outside.bounds
-        reach = min(_REACH * max(east - west, north - south), reach_mm)
-        frame = shapely.box(west - reach, south - reach, east + reach, north + reach)
-        around = shapely.get_parts(frame.difference(shapely.make_valid(outside)))
-        shapes = np.concatenate([shapes, around])
-    parts = [part for part in _joined(shapes) if part.area > _SNAP_MM * part.length]
+        shapes = _with_outside(shapes, outside, reach_mm)
+    small = shapely.area(shapes) <= _SNAP_MM * shapely.length(shapes)
+    parts: list[Polygon] = list(shapely.orient_polygons(shapes[~small]))
     parts.sort(key=lambda part: (part.bounds, part.area))
     endless = None
     if outside is not None and parts:
@@ -110,14 +113,39 @@ def _merged(
     return parts, endless
 
 
-def _joined(shapes: NDArray[np.object_]) -> list[Polygon]:
+def _with_outside(
+    shapes: NDArray[np.object_], outside: Polygon, reach_mm: float
+) -> NDArray[np.object_]:
+    """Add all that lies outside the outline of the plane."""
+    west, south, east, north = outside.bounds
+    reach = min(_REACH * max(east - west, north - south), reach_mm)
+    frame = shapely.box(west - reach, south - reach, east + reach, north + reach)
+    shell = shapely.polygons(shapely.get_exterior_ring(shapes)) if len(shapes) else shapes
+    around = shapely.contains_properly(shell, outside.exterior)
+    if around.any():
+        # a gap that already runs round the whole board only has to reach further
+        k = int(np.flatnonzero(around)[0])
+        shapes = shapes.copy()
+        if shapely.contains_properly(frame, shell[k]):
+            shapes[k] = Polygon(frame.exterior, shapes[k].interiors)
+        return shapes
+    ring = shapely.get_parts(frame.difference(shapely.make_valid(outside)))
+    return _joined(np.concatenate([shapes, ring]))
+
+
+def _joined(shapes: NDArray[np.object_]) -> NDArray[np.object_]:
     """Unite the polygons that touch, each group by itself; most gaps of a board stand alone."""
     shapes = shapes[shapely.get_type_id(shapes) == shapely.GeometryType.POLYGON]
+    # lines are close to their polygons, and need no answer of what lies inside
     tree = shapely.STRtree(shapes)
-    first, second = tree.query(shapes, predicate="dwithin", distance=2 * _SNAP_MM)
-    graph = nx.Graph()
+    first, second = tree.query(shapely.buffer(shapely.envelope(shapes), 2 * _SNAP_MM))
+    ahead = first < second
+    first, second = first[ahead], second[ahead]
+    shapely.prepare(shapes)
+    touch = shapely.dwithin(shapes[first], shapes[second], 2 * _SNAP_MM)
+    graph: nx.Graph[int] = nx.Graph()
     graph.add_nodes_from(range(len(shapes)))
-    graph.add_edges_from(zip(first.tolist(), second.tolist(), strict=True))
+    graph.add_edges_from(zip(first[touch].tolist(), second[touch].tolist(), strict=True))
     joined: list[Polygon] = []
     for group in nx.connected_components(graph):
         members = sorted(group)
@@ -126,7 +154,9 @@ def _joined(shapes: NDArray[np.object_]) -> list[Polygon]:
             continue
         united = shapely.union_all(shapes[members], grid_size=_SNAP_MM)
         joined.extend(part for part in shapely.get_parts(united) if isinstance(part, Polygon))
-    return [shapely.orient_polygons(part) for part in joined]
+    out = np.empty(len(joined), dtype=object)
+    out[:] = joined
+    return out
 
 
 def _plainer(gap: Polygon, tolerance_mm: float) -> Polygon:
@@ -200,12 +230,19 @@ def _chosen(
         close = np.zeros(len(others), dtype=bool)
     else:
         size = np.sqrt(shapely.area(shapes[others]))
-        close = shapely.distance(shapes[others], around) < 2.5 * size
+        # a gap far from the traces has little flux to hand on, whatever lies beside it
+        close = np.zeros(len(others), dtype=bool)
+        maybe = np.flatnonzero(alone > _NEGLIGIBLE_NH / 50)
+        shapely.prepare(around)
+        close[maybe] = shapely.dwithin(around, shapes[others[maybe]], 2.5 * size[maybe])
     wanted = others[(alone > _NEGLIGIBLE_NH) | close]
     weight = alone[(alone > _NEGLIGIBLE_NH) | close]
     order = np.argsort(-weight, kind="stable")[:_MOST_GAPS]
     more = sorted(int(k) for k in wanted[order])
-    left = float(alone.sum() - weight[order].sum())
+    # few panels are spent on them, so that a part of what they add is in doubt as well
+    left = float(alone.sum() - 0.5 * weight[order].sum())
+    if not main:
+        return more, [2] * len(more), left
     bundle = shapely.multilinestrings(list(lines))
     crossed = shapely.intersects(shapes[main], bundle) if main else np.zeros(0, dtype=bool)
     rank = [2 if here or not crossed.any() else 1 for here in crossed]

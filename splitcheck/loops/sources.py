@@ -12,7 +12,7 @@ from shapely import LineString, Polygon
 from shapely.ops import split
 
 from splitcheck.loops.kernels import wall_source
-from splitcheck.loops.panels import Panels
+from splitcheck.loops.panels import Ints, Panels
 from splitcheck.units import Floats
 
 _RAYS = 24
@@ -191,21 +191,21 @@ def _seen(first: Floats, second: Floats, r: Floats) -> Floats:
     )
 
 
-def _followed(gap: Polygon, cut: LineString, angle: Floats, panels: Panels, mine) -> Floats:
+def _followed(gap: Polygon, cut: LineString, angle: Floats, inside: Floats) -> Floats:
     """Add whole turns to an angle that jumps on a line, and spread it to the panels' points."""
     if shapely.intersects(gap, cut):
-        return angle + 2 * np.pi * _turns(gap, cut, panels.centre[mine])
+        return angle + 2 * np.pi * _turns(gap, cut, inside)
     return angle
 
 
-def _between(gap: Polygon, at: Floats, base: Floats, panels: Panels, mine) -> Floats:
+def _between(gap: Polygon, at: Floats, base: Floats, panels: Panels, mine: Ints) -> Floats:
     """Angle from the base to the point, both on one island."""
     step = at - base
     via = (at + base) / 2 + _ASKEW * np.array([-step[1], step[0]])
-    centre = panels.centre[mine]
-    angle = _seen(base, via, centre) + _seen(via, at, centre)
-    angle = _followed(gap, LineString([at, via, base]), angle, panels, mine)
-    spot, middle = panels.points[mine], centre[:, None, :]
+    inside = panels.inside[mine]
+    angle = _seen(base, via, inside) + _seen(via, at, inside)
+    angle = _followed(gap, LineString([at, via, base]), angle, inside)
+    spot, middle = panels.points[mine], inside[:, None, :]
     return angle[:, None] + _turned(at, middle, spot) - _turned(base, middle, spot)
 
 
@@ -217,15 +217,16 @@ def _turned(at: Floats, before: Floats, after: Floats) -> Floats:
     )
 
 
-def _from_outside(gap: Polygon, at: Floats, panels: Panels, mine) -> Floats:
+def _from_outside(gap: Polygon, at: Floats, panels: Panels, mine: Ints) -> Floats:
     """Angle about a point that the gap does not surround."""
     ray, direction = _clearest_ray(gap, at)
-    away = panels.centre[mine] - at
+    inside = panels.inside[mine]
+    away = inside - at
     angle = direction + np.mod(np.arctan2(away[:, 1], away[:, 0]) - direction, 2 * np.pi)
     if ray is not None:
         # turning left over the ray the angle falls from a full turn to none
-        angle = angle + 2 * np.pi * _turns(gap, ray, panels.centre[mine])
-    return angle[:, None] + _turned(at, panels.centre[mine][:, None, :], panels.points[mine])
+        angle = angle + 2 * np.pi * _turns(gap, ray, inside)
+    return angle[:, None] + _turned(at, inside[:, None, :], panels.points[mine])
 
 
 def _clearest_ray(gap: Polygon, at: Floats) -> tuple[LineString | None, float]:
@@ -239,10 +240,12 @@ def _clearest_ray(gap: Polygon, at: Floats) -> tuple[LineString | None, float]:
     if not shapely.intersects(gap, LineString([at, ends[0]])):
         return None, float(directions[0])
     rays = shapely.linestrings(np.stack([np.broadcast_to(at, ends.shape), ends], axis=1))
-    met = shapely.get_num_geometries(shapely.intersection(gap, rays))
-    met = np.where(shapely.intersects(gap, rays), met, 0)
+    free = np.flatnonzero(~shapely.intersects(gap, rays))
+    if len(free):
+        return None, float(directions[free[0]])
+    met = shapely.get_num_geometries(shapely.intersection(gap.exterior, rays))
     best = int(np.argmin(met))
-    return (None if met[best] == 0 else rays[best]), float(directions[best])
+    return rays[best], float(directions[best])
 
 
 def _turns(gap: Polygon, cut: LineString, centres: Floats) -> Floats:
@@ -250,12 +253,15 @@ def _turns(gap: Polygon, cut: LineString, centres: Floats) -> Floats:
     pieces = sorted(split(gap, cut).geoms, key=lambda piece: -piece.area)
     if len(pieces) < 2:
         return np.zeros(len(centres))
-    tree = shapely.STRtree(pieces)
-    number = _walked(len(pieces), _steps(gap, cut, tree))
-    return number[tree.nearest(shapely.points(centres))]
+    number = _walked(len(pieces), _steps(gap, cut, pieces))
+    turns = np.full(len(centres), number[0])
+    for piece, own in zip(pieces[1:], number[1:], strict=True):
+        shapely.prepare(piece)
+        turns[shapely.contains_xy(piece, centres[:, 0], centres[:, 1])] = own
+    return turns
 
 
-def _steps(gap: Polygon, cut: LineString, tree: shapely.STRtree) -> list[tuple[int, int]]:
+def _steps(gap: Polygon, cut: LineString, pieces: Sequence[Polygon]) -> list[tuple[int, int]]:
     """Pairs of pieces that meet on the cut: right of it first, then left."""
     steps: list[tuple[int, int]] = []
     stretches = zip(cut.coords[:-1], cut.coords[1:], strict=True)
@@ -267,10 +273,18 @@ def _steps(gap: Polygon, cut: LineString, tree: shapely.STRtree) -> list[tuple[i
                 continue
             middle = shapely.get_coordinates(part.interpolate(0.5, normalized=True))[0]
             aside = min(1e-6, part.length / 100) * normal
-            right, left = tree.nearest(shapely.points([middle - aside, middle + aside]))
+            right, left = (_piece_at(pieces, spot) for spot in (middle - aside, middle + aside))
             if right != left:
                 steps.append((int(right), int(left)))
     return steps
+
+
+def _piece_at(pieces: Sequence[Polygon], spot: Floats) -> int:
+    """The piece that holds a point; the first and largest if rounding puts it in none."""
+    for number in range(len(pieces) - 1, 0, -1):
+        if shapely.contains_xy(pieces[number], *spot):
+            return number
+    return 0
 
 
 def _walked(count: int, steps: Sequence[tuple[int, int]]) -> Floats:
