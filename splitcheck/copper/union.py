@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 from collections import defaultdict
+from typing import TypeAlias
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 from shapely.geometry.base import BaseGeometry
 
 from splitcheck.copper.outlines import Shapes
@@ -13,6 +15,8 @@ from splitcheck.units import GRID_MM
 
 #: A shape of more corners than this is large: a pour or a plane.
 LARGE_CORNERS = 400
+
+Pairs: TypeAlias = tuple[NDArray[np.int64], NDArray[np.int64]]
 
 
 def united(shapes: Shapes) -> Shapes:
@@ -39,7 +43,8 @@ def united(shapes: Shapes) -> Shapes:
     small = parts[~large]
     if len(small):
         small = np.asarray(shapely.get_parts(shapely.disjoint_subset_union_all(small)), dtype=object)
-    return _overlaid(parts[large], small) if large.any() else small
+    planes = parts[large]
+    return _overlaid(planes, small, _meeting(planes, planes)) if len(planes) else small
 
 
 def added(standing: Shapes, pieces: Shapes) -> Shapes:
@@ -56,12 +61,14 @@ def added(standing: Shapes, pieces: Shapes) -> Shapes:
     """
     if not len(standing) or not len(pieces):
         return np.concatenate((standing, pieces))
-    return _overlaid(standing, pieces)
+    nothing = np.empty(0, dtype=np.int64)
+    return _overlaid(standing, pieces, (nothing, nothing))
 
 
 def cleared(standing: Shapes, clear: Shapes) -> Shapes:
     """What clear shapes leave of disjoint pieces; only pieces that one of them meets are touched."""
-    piece, hit = shapely.STRtree(clear).query(standing, predicate="intersects")
+    clear = np.asarray(shapely.get_parts(clear), dtype=object)
+    piece, hit = _meeting(standing, clear)
     if not len(piece):
         return standing
     left = standing.copy()
@@ -73,18 +80,41 @@ def cleared(standing: Shapes, clear: Shapes) -> Shapes:
     return parts[shapely.area(parts) > 0]
 
 
-def _overlaid(planes: Shapes, small: Shapes) -> Shapes:
-    """Large shapes, and small disjoint ones: each group that hangs together in one overlay."""
-    shapely.prepare(planes)
-    plane, hit = shapely.STRtree(small).query(planes, predicate="intersects")
+def _overlaid(planes: Shapes, small: Shapes, joined: Pairs) -> Shapes:
+    """Large shapes, of which some pairs are joined, and small disjoint ones that may reach them.
+
+    Each group that hangs together becomes one overlay.
+    """
+    plane, hit = _meeting(planes, small)
     swallowed = np.zeros(len(small), dtype=bool)
     swallowed[hit[shapely.covers(planes[plane], small[hit])]] = True
     reaching = ~swallowed[hit]
-    groups = _groups(planes, plane[reaching].tolist(), hit[reaching].tolist())
+    groups = _groups(len(planes), joined, (plane[reaching], hit[reaching]))
     pieces = [_whole(planes[p], small[s]) for p, s in groups]
     loose = np.ones(len(small), dtype=bool)
     loose[hit] = False
     return np.concatenate([small[loose], *pieces])
+
+
+def _meeting(planes: Shapes, small: Shapes) -> Pairs:
+    """Pairs of polygons that intersect, sorted by the first.
+
+    Notes
+    -----
+    Asking a plane with a thousand holes about a pad in one of them, GEOS looks for a piece of the
+    plane inside the pad, hole by hole. Asking about the rim of the pad is quick and says the same
+    unless the whole plane lies inside the pad, which its box rules out.
+    """
+    shapely.prepare(planes)
+    plane, hit = shapely.STRtree(small).query(planes)
+    rims = shapely.get_exterior_ring(small)
+    meet = shapely.intersects(planes[plane], rims[hit])
+    inner, outer = shapely.bounds(planes)[plane], shapely.bounds(small)[hit]
+    around = ~meet & (outer[:, :2] <= inner[:, :2]).all(axis=1)
+    around &= (outer[:, 2:] >= inner[:, 2:]).all(axis=1)
+    meet[around] = shapely.intersects(planes[plane[around]], small[hit[around]])
+    order = np.argsort(plane[meet], kind="stable")
+    return plane[meet][order], hit[meet][order]
 
 
 def _whole(planes: Shapes, small: Shapes) -> Shapes:
@@ -125,11 +155,9 @@ def _adds_up(expected_mm2: float, found_mm2: float) -> bool:
     return abs(expected_mm2 - found_mm2) <= 1e-7 * max(1.0, expected_mm2)
 
 
-def _groups(
-    planes: Shapes, plane_of: list[int], small_of: list[int]
-) -> list[tuple[list[int], list[int]]]:
+def _groups(planes: int, joined: Pairs, reaching: Pairs) -> list[tuple[list[int], list[int]]]:
     """Large shapes that hang together, directly or by small ones, with those small ones."""
-    parent = list(range(len(planes)))
+    parent = list(range(planes))
 
     def root(number: int) -> int:
         while parent[number] != number:
@@ -137,14 +165,13 @@ def _groups(
             number = parent[number]
         return number
 
-    first, second = shapely.STRtree(planes).query(planes, predicate="intersects")
-    for one, other in zip(first.tolist(), second.tolist(), strict=True):
+    for one, other in zip(joined[0].tolist(), joined[1].tolist(), strict=True):
         parent[root(one)] = root(other)
     owner: dict[int, int] = {}
-    for one, piece in zip(plane_of, small_of, strict=True):
+    for one, piece in zip(reaching[0].tolist(), reaching[1].tolist(), strict=True):
         parent[root(one)] = root(owner.setdefault(piece, one))
     members: dict[int, tuple[list[int], list[int]]] = defaultdict(lambda: ([], []))
-    for number in range(len(planes)):
+    for number in range(planes):
         members[root(number)][0].append(number)
     for piece, one in owner.items():
         members[root(one)][1].append(piece)
