@@ -31,6 +31,7 @@ _MOST_PARTS = 6
 _LARGE = 12.0
 #: A gap that asks for no more panels along its side than this is cut into four.
 _FEW = 2.5
+_QUARTERS = 1.075
 #: Gaps with more corners than this are clipped step by step.
 _INTRICATE = 100
 
@@ -169,22 +170,22 @@ def _pieces(gap: Polygon, grading: Grading, least: float) -> _Cuts:
 
 
 def _quarters(gap: Polygon) -> _Cuts:
-    """Four rectangles for a gap far away: together of its area and second moments."""
-    edges = _edges_of(np.array([gap], dtype=object))
-    (area,), (centre,), spread = _moments(edges)
+    """Four rectangles for a gap that sees the same field all over.
+
+    Together they have the second moments of the gap, for which a rectangle and a disc are as easily
+    polarised, and are larger by what four panels alone lack (1.07 for a square, 1.05 to 1.12 for
+    4 : 1, against many panels).
+    """
+    (centre,), spread = _moments(_edges_of(np.array([gap], dtype=object)))[1:]
     (u,), (v,) = _axes(spread)
-    u, v = np.sqrt(3.0) * u, np.sqrt(3.0) * v
-    grow = np.sqrt(area / (4 * np.hypot(*u) * np.hypot(*v)))
-    quarter = np.array([[0, 0], [1, 0], [1, 1], [0, 1]])
-    rings = []
-    for a, b in ((-1, -1), (0, -1), (0, 0), (-1, 0)):
-        steps = quarter + np.array([a, b])
-        rings.append(centre + grow * (steps[:, :1] * u + steps[:, 1:] * v))
-    ring = np.array(rings)
-    rim = np.array([[True, False, False, True], [True, True, False, False]] * 2)
-    rim[2:] = [[False, True, True, False], [False, False, True, True]]
+    u, v = _QUARTERS * np.sqrt(3.0) * u, _QUARTERS * np.sqrt(3.0) * v
+    square = np.array([[0, 0], [1, 0], [1, 1], [0, 1]])
+    steps = square + np.array([[[-1, -1]], [[0, -1]], [[0, 0]], [[-1, 0]]])
+    ring = centre + steps[:, :, :1] * u + steps[:, :, 1:] * v
     edges = np.concatenate([ring, np.roll(ring, -1, axis=1)], axis=2)
-    return _Cuts(edges, rim, np.full(4, area / 4), ring.mean(axis=1))
+    rim = np.array([[1, 0, 0, 1], [1, 1, 0, 0], [0, 1, 1, 0], [0, 0, 1, 1]], dtype=bool)
+    area = np.full(4, np.hypot(*u) * np.hypot(*v))
+    return _Cuts(edges, rim, area, ring.mean(axis=1))
 
 
 def _frame_angle(gap: Polygon, grading: Grading) -> float:
@@ -225,7 +226,8 @@ def _wanted(x: Floats, y: Floats, lines: Floats, rim: Floats, grading: Grading) 
     along = np.clip((x[:, None] - x1) * ux + (y[:, None] - y1) * uy, 0.0, length)
     distance = np.hypot(x[:, None] - x1 - along * ux, y[:, None] - y1 - along * uy)
     growth = grading.slope * distance * (1.0 + distance / grading.far_mm)
-    across_mm = np.maximum(grading.near_mm, growth)
+    # a cell wider than its distance would reach the trace itself
+    across_mm = np.maximum(grading.near_mm, np.minimum(growth, 0.8 * distance))
     along_mm = np.maximum(across_mm, grading.near_mm * grading.stretch)
     if len(rim):
         entry = np.hypot(x[:, None] - rim[:, 0], y[:, None] - rim[:, 1]).min(axis=1)

@@ -24,6 +24,8 @@ _REACH_PLATES = 12.0
 _NEGLIGIBLE_NH = 1e-3
 #: At most this many gaps beside those crossed; the rest goes into the error.
 _MOST_GAPS = 40
+#: A gap this large against its distance from the current still sees one field all over.
+_UNIFORM = 0.8
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,7 +35,8 @@ class Scene:
     gaps: tuple[Polygon, ...]
     """Clean gaps, no two of them touching; the ones that are crossed first."""
     weight: tuple[int, ...]
-    """For each gap: 2 crossed by a trace (or nothing is crossed and it is near), 1 near, 0 far."""
+    """For each gap: 2 crossed by a trace (or nothing is crossed and it is near), 1 near, 0 so small
+    against its distance from all traces that it sees one field all over."""
     endless: int | None
     """Number of the gap that is the outside of the plane."""
     lines: tuple[Floats | None, ...]
@@ -80,11 +83,9 @@ def arrange(
     reach = np.inf if plate_mm is None else _REACH_PLATES * max(plate_mm, height_mm)
     clean, endless = _merged(gaps, outside, reach, disjoint=disjoint)
     lines = [shapely.remove_repeated_points(line, 1e-9) for line in lines]
-    trimmed = [_on_copper(line, clean) for line in lines]
-    near = [line for line, _ in trimmed if line is not None] or list(lines)
-    chosen, weight, left_out = _chosen(clean, near, [*near, *kept], height_mm, endless)
-    tolerance = height_mm / 50
-    finer = [_plainer(clean[k], tolerance) for k in chosen]
+    chosen, weight, left_out = _chosen(clean, lines, [*lines, *kept], height_mm, endless)
+    finer = [_plainer(clean[k], height_mm / 50) for k in chosen]
+    trimmed = [_on_copper(line, finer) for line in lines]
     return Scene(
         gaps=tuple(finer),
         weight=tuple(weight),
@@ -240,13 +241,23 @@ def _chosen(
     order = np.argsort(-weight, kind="stable")[:_MOST_GAPS]
     more = sorted(int(k) for k in wanted[order])
     # few panels are spent on them, so that a part of what they add is in doubt as well
-    left = float(alone.sum() - 0.5 * weight[order].sum())
-    if not main:
-        return more, [2] * len(more), left
+    left = float(alone.sum() - 0.8 * weight[order].sum())
+    chosen = [*main, *more]
     bundle = shapely.multilinestrings(list(lines))
-    crossed = shapely.intersects(shapes[main], bundle) if main else np.zeros(0, dtype=bool)
-    rank = [2 if here or not crossed.any() else 1 for here in crossed]
-    return [*main, *more], [*rank, *(0 for _ in more)], left
+    apart = shapely.distance(shapes[chosen], bundle)
+    size = np.hypot(*_extent(shapes[chosen]).T)
+    whole = shapely.get_num_interior_rings(shapes[chosen]) == 0
+    small = whole & (size < _UNIFORM * (height_mm + apart))
+    rank = np.where(small, 0, np.where((apart == 0) | (apart > 0).all(), 2, 1))
+    if endless in chosen:
+        rank[chosen.index(endless)] = 2 if apart[chosen.index(endless)] == 0 else 1
+    return chosen, [int(k) for k in rank], left
+
+
+def _extent(shapes: NDArray[np.object_]) -> Floats:
+    box = shapely.bounds(shapes)
+    extent: Floats = box[:, 2:] - box[:, :2]
+    return extent
 
 
 def _alone_nh(gaps: NDArray[np.object_], traces: Sequence[LineString], height_mm: float) -> Floats:
@@ -260,9 +271,8 @@ def _alone_nh(gaps: NDArray[np.object_], traces: Sequence[LineString], height_mm
         return np.zeros(len(gaps))
     bundle = shapely.multilinestrings(list(traces))
     shapely.prepare(bundle)
-    low, high = shapely.bounds(gaps)[:, :2], shapely.bounds(gaps)[:, 2:]
-    size = np.hypot(*(high - low).T)
-    centres = shapely.points((low + high) / 2)
+    size = np.hypot(*_extent(gaps).T)
+    centres = shapely.centroid(gaps)
     away = np.maximum(shapely.distance(centres, bundle) - 0.25 * size, height_mm)
     value: Floats = MU0 * size**3 / 3 * (height_mm / (np.pi * away**2)) ** 2
     return value

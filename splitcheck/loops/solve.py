@@ -171,6 +171,8 @@ def added(
         disjoint=disjoint,
     )
     job = _job(scene, traces, bridges, height_mm, beyond_mm, above_mm)
+    if not job.traces or _lost(job).all():
+        return _judged(job, *(2 * [_nothing(job)]))
     coarse = _solved(job, _panels(job, fineness / _COARSER))
     fine = _solved(job, _panels(job, fineness))
     for _ in range(_MORE):
@@ -380,37 +382,60 @@ def _solved(job: _Job, mesh: Panels) -> _Raw:
     )
 
 
-def _sources(job: _Job, mesh: Panels) -> tuple[Floats, Floats, Floats]:
-    """Source functions of strips and vias; of the traces' centre lines; and island balances.
-
-    Each row of the balances says what current one unit of each source brings into an island.
-    """
+def _balances(job: _Job) -> tuple[list[tuple[int, Floats]], Floats]:
+    """What `islands` says of all ends and vias; and what a unit of each source brings there."""
     ends = [strip.line[[0, -1]] for strip in job.strips]
-    points = np.concatenate([*ends, job.vias]) if ends else job.vias
-    held = islands(job.scene.gaps, points)
+    held = islands(job.scene.gaps, np.concatenate([*ends, job.vias]))
+    strips = len(ends)
+    rows = np.zeros((len(held), strips + len(job.vias)))
+    for row, (_, inside) in zip(rows, held, strict=True):
+        row[:strips] = inside[1 : 2 * strips : 2] - inside[0 : 2 * strips : 2]
+        row[:strips] *= [_share(strip) for strip in job.strips]
+        row[strips:] = inside[2 * strips :]
+    return held, rows
+
+
+def _share(strip: _Strip) -> float:
+    return 1.0 if strip.above_mm is None else 1.0 - strip.height_mm / strip.above_mm
+
+
+def _lost(job: _Job) -> NDArray[np.bool_]:
+    """Which traces have no way back, before anything is solved."""
+    _, rows = _balances(job)
+    count, bridges = len(job.traces), len(job.bridges)
+    nothing = np.zeros((count + bridges,) * 2)
+    return _ways(nothing, np.eye(bridges), rows, count, len(job.vias))[1]
+
+
+def _nothing(job: _Job) -> _Raw:
+    """The answer where no trace has a way back."""
+    count = len(job.traces)
+    return _Raw(
+        added_nh=np.zeros((count, count)),
+        filament_nh=np.zeros(count),
+        cut_off=np.ones(count, dtype=bool),
+        mesh=cut((), Grading((), job.near_mm)),
+        flux=np.zeros((0, count)),
+        bridge_a=np.zeros((len(job.bridges), count)),
+    )
+
+
+def _sources(job: _Job, mesh: Panels) -> tuple[Floats, Floats, Floats]:
+    """Source functions of strips and vias; of the traces' centre lines; and island balances."""
+    held, rows = _balances(job)
+    points = np.concatenate([*(strip.line[[0, -1]] for strip in job.strips), job.vias])
     angles = point_angles(mesh, job.scene.gaps, points, held)
     columns, centres = [], []
-    shares = []
     for k, strip in enumerate(job.strips):
         between = angles[2 * k + 1] - angles[2 * k]
         full, centre = strip_source(
             mesh, strip.line, strip.width_mm, strip.height_mm, strip.above_mm, between
         )
         columns.append(full)
-        shares.append(1.0 if strip.above_mm is None else 1.0 - strip.height_mm / strip.above_mm)
         if k < len(job.traces):
             centres.append(centre)
     columns.extend(angles[2 * len(job.strips) :].mean(axis=2) / (2 * np.pi))
-    rows = np.zeros((len(held), len(columns)))
-    for row, (_, inside) in zip(rows, held, strict=True):
-        strips = len(job.strips)
-        row[:strips] = (inside[1 : 2 * strips : 2] - inside[0 : 2 * strips : 2]) * shares
-        row[strips:] = inside[2 * strips :]
-    return (
-        np.array(columns).reshape(len(columns), len(mesh)).T,
-        np.array(centres).reshape(len(centres), len(mesh)).T,
-        rows,
-    )
+    return np.array(columns).T, np.array(centres).T, rows
 
 
 def _response(job: _Job, mesh: Panels, sources: Floats) -> Floats:

@@ -65,13 +65,12 @@ def test_matrix_is_symmetric_and_positive_definite(gap: Polygon, height: float) 
 @laws
 @given(gaps(), heights, st.floats(0.4, 3.0))
 def test_all_lengths_times_k_give_k(gap: Polygon, height: float, factor: float) -> None:
-    """Inductance is a length times mu0."""
+    """Inductance is a length times mu0; within the error, as nH decide when to refine."""
     large = scale(gap, factor, factor, origin=(0, 0))
-    once, twice = (
-        added([gap], [across()], height),
-        added([large], [across(width=0.3 * factor, half=25 * factor)], height * factor),
-    )
-    assert pair(twice)[0] == pytest.approx(factor * pair(once)[0], rel=0.01)
+    wide = across(width=0.3 * factor, half=25 * factor)
+    a, da = pair(added([gap], [across()], height))
+    b, db = pair(added([large], [wide], height * factor))
+    assert abs(b / factor - a) <= (da + db / factor) / 2
 
 
 @laws
