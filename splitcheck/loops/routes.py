@@ -90,7 +90,8 @@ class Terrain:
         return shape
 
     def corners(self, gap: int, clear_mm: float) -> Floats:
-        """Places just off a gap's rim at which a taut way round it may bend, shape (n, 2).
+        """Places just off a gap's rim at which a taut way round it may bend, each with
+        the corners of the rim before and after it; shape (n, 3, 2).
 
         The gap is widened by a little more than the rim is then thinned by: a way from corner to
         corner stays clear of it.
@@ -127,15 +128,19 @@ class Terrain:
 
 
 def _bends(shape: shapely.Geometry) -> Floats:
-    """Corners where a polygon bulges outward, including those of its holes' rims."""
+    """Corners where a polygon bulges outward, with the corners before and after; shape (n, 3, 2)."""
     corners = []
     for polygon in getattr(shape, "geoms", [shape]):
         for ring in [polygon.exterior, *polygon.interiors]:
             at = np.asarray(ring.coords)[:-1]
-            ahead, behind = np.roll(at, -1, axis=0) - at, at - np.roll(at, 1, axis=0)
-            turn = behind[:, 0] * ahead[:, 1] - behind[:, 1] * ahead[:, 0]
-            corners.append(at[turn > 0])
-    return np.concatenate(corners) if corners else np.empty((0, 2))
+            before, after = np.roll(at, 1, axis=0), np.roll(at, -1, axis=0)
+            bulges = _cross(at - before, after - at) > 0
+            corners.append(np.stack([at, before, after], axis=1)[bulges])
+    return np.concatenate(corners) if corners else np.empty((0, 3, 2))
+
+
+def _cross(one: Floats, other: Floats) -> Floats:
+    return np.asarray(one[..., 0] * other[..., 1] - one[..., 1] * other[..., 0])
 
 
 def shortest(
@@ -144,6 +149,7 @@ def shortest(
     goal: Point,
     barrier: LineString | None = None,
     first: Sequence[int] = (),
+    longest_mm: float = inf,
 ) -> tuple[float, tuple[Point, ...]] | None:
     """Shortest way on copper between two points of one island.
 
@@ -157,6 +163,8 @@ def shortest(
         A line that the way must not cross.
     first
         Indexes of gaps whose corners are needed from the start, where a barrier stands.
+    longest_mm
+        A way longer than this is not looked for, mm.
 
     Returns
     -------
@@ -176,6 +184,7 @@ def shortest(
     straight = float(np.hypot(goal[0] - start[0], goal[1] - start[1]))
     x0, y0, x1, y1 = terrain.plane.gaps[0].shape.bounds if terrain.plane.gaps else (0, 0, 0, 0)
     widest = straight + 4 * (x1 - x0 + y1 - y0) + 1.0
+    widest = min(widest, longest_mm)
     limit = 2 * straight + 2.0
     coarse = 0
     while True:
@@ -188,7 +197,7 @@ def shortest(
             coarse += 1
             continue
         if isinstance(tried, tuple) and (tried[0] <= limit or limit >= widest):
-            return tried
+            return tried if tried[0] <= longest_mm else None
         if limit >= widest:
             return None
         limit *= 2.5
@@ -204,18 +213,19 @@ def _within(
     first: Sequence[int],
 ) -> tuple[float, tuple[Point, ...]] | str | None:
     obstacles = list(first)
-    ends = np.array([start, goal], dtype=float)
+    ends = np.repeat(np.array([start, goal], dtype=float)[:, None, :], 3, axis=1)
     for _ in range(60):
         corners = [ends]
         for gap in obstacles:
             bends = terrain.corners(gap, clear_mm)
-            far = np.hypot(*(bends - ends[0]).T) + np.hypot(*(bends - ends[1]).T)
+            at = bends[:, 0]
+            far = np.hypot(*(at - ends[0, 0]).T) + np.hypot(*(at - ends[1, 0]).T)
             corners.append(bends[far <= limit])
-        points = np.concatenate(corners)
-        if len(points) > MOST_CORNERS:
+        bends = np.concatenate(corners)
+        if len(bends) > MOST_CORNERS:
             return "crowded"
         blocks = [terrain.shape(gap) for gap in obstacles]
-        found = _taut(points, blocks, barrier)
+        found = _taut(bends, blocks, barrier)
         if found is None:
             return None
         line = LineString(found[1])
@@ -227,9 +237,14 @@ def _within(
 
 
 def _taut(
-    points: Floats, blocks: Sequence[Polygon], barrier: LineString | None
+    bends: Floats, blocks: Sequence[Polygon], barrier: LineString | None
 ) -> tuple[float, tuple[Point, ...]] | None:
-    """A* over the points, the first being the start and the second the goal."""
+    """A* over the bends, the first being the start and the second the goal.
+
+    A taut string leaves a corner so that both sides of the corner lie on one side of it: only such
+    steps are looked at.
+    """
+    points = bends[:, 0]
     ahead = np.hypot(*(points - points[1]).T)
     reached = np.full(len(points), inf)
     came = np.full(len(points), -1)
@@ -245,11 +260,21 @@ def _taut(
         closed[here] = True
         step = np.hypot(*(points - points[here]).T)
         better = np.flatnonzero(~closed & (reached[here] + step < reached - 1e-12))
+        better = better[_touches(bends[here], bends[better])]
         for other in better[_free(points[here], points[better], blocks, barrier)].tolist():
             reached[other] = reached[here] + step[other]
             came[other] = here
             heapq.heappush(queue, (float(reached[other] + ahead[other]), other))
     return None
+
+
+def _touches(here: Floats, there: Floats) -> NDArray[np.bool_]:
+    """Whether straight steps from one corner to others, shape (n, 3, 2), touch both as a string."""
+    step = there[:, 0] - here[0]
+    leaves = _cross(step, here[1] - here[0]) * _cross(step, here[2] - here[0])
+    meets = _cross(step, there[:, 1] - there[:, 0]) * _cross(step, there[:, 2] - there[:, 0])
+    slack = -1e-15 * (1.0 + (step**2).sum(axis=1))
+    return np.asarray((leaves >= slack) & (meets >= slack))
 
 
 def _free(
@@ -299,20 +324,44 @@ def find_route(
     straight = float(np.hypot(goal[0] - start[0], goal[1] - start[1]))
     one, other = (plane.islands[i].id for i in crossing.islands)
     borrowed = _over_bridges(crossing, planes, terrains, graph)
-    sides: list[Way | None] = []
-    for side in (1, -1):
-        ways = [way for way, on_side in borrowed if on_side == side]
-        if one == other:
-            found = shortest(
-                terrains[crossing.plane], start, goal, _wall(crossing, -side), (crossing.gap,)
-            )
-            if found is not None:
-                ways.append(Way(found[0], found[1], (), plane.islands[crossing.islands[0]].net_name, 0))
-        sides.append(min(ways, key=lambda way: (way.length_mm, way.path)) if ways else None)
+    sides: dict[int, Way] = {side: way for way, side in borrowed}
+    if one == other:
+        _add_own_ways(sides, crossing, terrains[crossing.plane])
     joined = one == other or nx.has_path(graph, one, other)
-    if joined and sides == [None, None]:
-        sides[0] = _chain(graph, one, other, start, goal)
-    return Route(straight, sides[0], sides[1], joined)
+    if joined and not sides:
+        chain = _chain(graph, one, other, start, goal)
+        return Route(straight, chain, None, joined)
+    return Route(straight, sides.get(1), sides.get(-1), joined)
+
+
+def _add_own_ways(sides: dict[int, Way], crossing: Crossing, terrain: Terrain) -> None:
+    """Put in the ways inside the crossed island itself, where they are shorter.
+
+    The side that the crossing lies nearer to is looked at first; a way on the other side many
+    times longer would carry hardly anything.
+    """
+    net = terrain.plane.islands[crossing.islands[0]].net_name
+    order = sorted((1, -1), key=lambda side: _rim_distance(crossing, terrain, side))
+    for side in order:
+        known = [way.length_mm for way in sides.values()]
+        longest = min([OTHER_SIDE * min(known, default=inf), sides[side].length_mm if side in sides else inf])
+        found = shortest(
+            terrain,
+            crossing.before,
+            crossing.after,
+            _wall(crossing, -side),
+            (crossing.gap,),
+            longest,
+        )
+        if found is not None:
+            sides[side] = Way(found[0], found[1], (), net, 0)
+
+
+def _rim_distance(crossing: Crossing, terrain: Terrain, side: int) -> float:
+    """How far it is from the middle of the run to the gap's rim straight aside, mm."""
+    rim = terrain.plane.gaps[crossing.gap].shape.boundary
+    aside = rim.intersection(_wall(crossing, side))
+    return float(aside.distance(shapely.Point(crossing.at))) if not aside.is_empty else inf
 
 
 def _heading(crossing: Crossing) -> tuple[float, float]:
