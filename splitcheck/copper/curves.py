@@ -26,6 +26,11 @@ def step_rad(radius_mm: float) -> float:
     return min(widest, 2 * acos(1 - SAGITTA_MM / radius_mm))
 
 
+def corners_of_quarter(radius_mm: float) -> int:
+    """Chords of a quarter circle that stay within ``SAGITTA_MM``."""
+    return ceil(pi / 2 / step_rad(radius_mm) - 1e-9)
+
+
 def stretch(chords: int, angle_rad: float) -> float:
     """By how much inner corners move outward so that the chords enclose the area of the sector.
 
@@ -48,7 +53,7 @@ def stretch(chords: int, angle_rad: float) -> float:
     Examples
     --------
     >>> round(stretch(8, pi), 5)
-    1.0146
+    1.01486
     """
     if chords < 2:
         return 1.0

@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterable, Sequence
 from itertools import pairwise
-from math import ceil, pi
 from typing import Any, TypeAlias
 
 import numpy as np
@@ -16,10 +15,6 @@ from shapely import LineString, Polygon
 from splitcheck.copper import curves, fills
 from splitcheck.copper.marks import Fill, Flash, Mark, Point, Stroke
 from splitcheck.units import Floats
-
-#: Pen strokes are thickened together from so many on, and up to so many.
-FEWEST_IN_RUN = 8
-MOST_IN_RUN = 64
 
 Shapes: TypeAlias = NDArray[Any]
 
@@ -56,7 +51,7 @@ def outlines(marks: Sequence[Mark]) -> Shapes:
     for width, numbers in lines.items():
         shapes[numbers] = _capsules([marks[n].points for n in numbers], width)  # type: ignore[union-attr]
     for width, numbers in paths.items():
-        shapes[numbers] = _thick([marks[n].points for n in numbers], width)  # type: ignore[union-attr]
+        shapes[numbers] = thick([marks[n].points for n in numbers], width)  # type: ignore[union-attr]
     for numbers in stamps.values():
         first = marks[numbers[0]]
         assert isinstance(first, Flash)
@@ -64,63 +59,6 @@ def outlines(marks: Sequence[Mark]) -> Shapes:
     if contours:
         shapes[contours] = _filled([marks[n] for n in contours])  # type: ignore[misc]
     return shapes
-
-
-def outlines_to_unite(marks: Sequence[Mark]) -> Shapes:
-    """Outlines of dark marks whose union alone is wanted; long pen runs come as one shape each.
-
-    Parameters
-    ----------
-    marks
-        Dark marks in file order.
-
-    Returns
-    -------
-    Valid polygons and multipolygons, mm, fewer than marks and in another order.
-
-    Notes
-    -----
-    Pours drawn by a pen, and the pen drawn round pours, are runs of thousands of short strokes,
-    each starting where the last one ended. Thickening sixty of them at once is several times
-    faster than uniting sixty outlines. Corners of such a run are chords inside the true arc, so
-    runs of a few strokes, where that could be seen in the area, stay single.
-    """
-    runs: dict[float, list[tuple[Point, ...]]] = defaultdict(list)
-    single: list[Mark] = []
-    for width, members in _pen_runs(marks):
-        if len(members) < FEWEST_IN_RUN:
-            single.extend(members)
-        else:
-            path = [point for mark in members for point in mark.points[:-1]]
-            runs[width].append((*path, members[-1].points[-1]))
-    single.extend(mark for mark in marks if not _by_round_pen(mark))
-    thick = [_thick(paths, width) for width, paths in runs.items()]
-    return np.concatenate([outlines(single), *thick])
-
-
-def _by_round_pen(mark: Mark) -> bool:
-    return type(mark) is Stroke and mark.shape is None
-
-
-def _pen_runs(marks: Sequence[Mark]) -> Iterator[tuple[float, list[Stroke]]]:
-    """Consecutive round strokes of one width, each starting at the end of the last."""
-    run: list[Stroke] = []
-    for mark in marks:
-        if not isinstance(mark, Stroke) or mark.shape is not None:
-            continue
-        if (
-            run
-            and len(run) < MOST_IN_RUN
-            and run[-1].width_mm == mark.width_mm
-            and run[-1].points[-1] == mark.points[0]
-        ):
-            run.append(mark)
-            continue
-        if run:
-            yield run[0].width_mm, run
-        run = [mark]
-    if run:
-        yield run[0].width_mm, run
 
 
 def _capsules(ends: Sequence[tuple[Point, ...]], width_mm: float) -> Shapes:
@@ -148,11 +86,11 @@ def _capsules(ends: Sequence[tuple[Point, ...]], width_mm: float) -> Shapes:
     return shapes
 
 
-def _thick(paths: Sequence[tuple[Point, ...]], width_mm: float) -> Shapes:
-    """Flattened arcs drawn with a round pen."""
+def thick(paths: Sequence[tuple[Point, ...]], width_mm: float) -> Shapes:
+    """Paths of many points drawn with a round pen, mm."""
     if width_mm <= 0:
         return np.full(len(paths), Polygon(), dtype=object)
-    quarter = ceil(pi / 2 / curves.step_rad(width_mm / 2))
+    quarter = curves.corners_of_quarter(width_mm / 2)
     made: Shapes = shapely.buffer(
         np.array([LineString(path) for path in paths], dtype=object),
         width_mm / 2,

@@ -11,7 +11,8 @@ from shapely import Polygon
 from splitcheck.copper.coats import coats
 from splitcheck.copper.landing import landed, names
 from splitcheck.copper.marks import Mark
-from splitcheck.copper.outlines import Shapes, outlines, outlines_to_unite
+from splitcheck.copper.outlines import Shapes, outlines
+from splitcheck.copper.pens import outlines_to_unite
 from splitcheck.copper.union import added, cleared, united
 
 __all__ = ["invert", "landed", "names", "paint"]

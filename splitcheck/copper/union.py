@@ -42,7 +42,8 @@ def united(shapes: Shapes) -> Shapes:
     large = shapely.get_num_coordinates(parts) > LARGE_CORNERS
     small = parts[~large]
     if len(small):
-        small = np.asarray(shapely.get_parts(shapely.disjoint_subset_union_all(small)), dtype=object)
+        whole = shapely.disjoint_subset_union_all(small)
+        small = np.asarray(shapely.get_parts(whole), dtype=object)
     planes = parts[large]
     return _overlaid(planes, small, _meeting(planes, planes)) if len(planes) else small
 
@@ -66,7 +67,7 @@ def added(standing: Shapes, pieces: Shapes) -> Shapes:
 
 
 def cleared(standing: Shapes, clear: Shapes) -> Shapes:
-    """What clear shapes leave of disjoint pieces; only pieces that one of them meets are touched."""
+    """What clear shapes leave of disjoint pieces; only pieces that they meet are touched."""
     clear = np.asarray(shapely.get_parts(clear), dtype=object)
     piece, hit = _meeting(standing, clear)
     if not len(piece):

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from functools import partial
 from itertools import pairwise
 from math import pi
@@ -12,8 +13,9 @@ import shapely
 from hypothesis import given
 from hypothesis import strategies as st
 from shapely import Polygon
+from shapely.geometry.base import BaseGeometry
 
-from splitcheck.copper import coats, curves, fills, paint
+from splitcheck.copper import coats, curves, fills, outlines, paint, union
 from splitcheck.copper.marks import NO_TAG, Fill, Flash, Mark, Point, Stroke, Tag
 
 GND, VCC, CLK = Tag("GND"), Tag("VCC"), Tag("CLK")
@@ -108,6 +110,93 @@ class TestPaint:
         path = (0.0, 0.0), *curves.arc((0, 0), (2, 0), (1, 0), clockwise=True)
         (piece,) = paint.paint([Stroke(tuple(path), 0.2, None, True, Tag(), 1)])
         assert piece.area == pytest.approx(pi * 0.2 + pi * 0.01, rel=2e-3)
+
+
+class TestPens:
+    """Runs of strokes painted as few shapes."""
+
+    @staticmethod
+    def run(points: list[Point], width: float) -> list[Mark]:
+        """The pen led along points, one stroke from each to the next."""
+        return [line(a, b, width) for a, b in pairwise(points)]
+
+    def assert_as_stroke_by_stroke(self, marks: list[Mark]) -> None:
+        """The same copper, but for chords of round corners, as uniting every stroke."""
+        plain = shapely.union_all(outlines.outlines(marks))
+        painted = shapely.MultiPolygon(paint.paint(marks))
+        off = shapely.symmetric_difference(plain, painted)
+        assert off.area < 0.004 * plain.length
+        # Thinner than twice the 2 um that chords may be off: nothing of it survives.
+        assert shapely.buffer(off, -0.0025).area == 0
+
+    def test_serpentine(self) -> None:
+        """A pour drawn line by line, longer than one piece of a run."""
+        points = [
+            (float(x), y)
+            for k in range(90)
+            for x, y in ((5 * (k % 2), 0.3 * k), (5 * ((k + 1) % 2), 0.3 * k))
+        ]
+        self.assert_as_stroke_by_stroke(self.run(points, 0.4))
+
+    def test_pen_round_a_pour(self) -> None:
+        """A contour filled and drawn: the fill grown by half the pen, with its hole."""
+        outside = [(0, 0), (20, 0), (20, 20), (0, 20), (0, 10)]
+        hole = [(5, 10), (5, 15), (12, 15), (12, 5), (5, 5), (5, 10), (0, 10), (0, 0)]
+        ring = tuple((float(x), float(y)) for x, y in outside + hole)
+        marks = [Fill(ring, True, Tag(), 1), *self.run(list(ring), 1.0)]
+        self.assert_as_stroke_by_stroke(marks)
+        (piece,) = paint.paint(marks)
+        # 21 x 21 with round corners of 0.5, less a hole of 6 x 9 with sharp ones.
+        assert piece.area == pytest.approx(441 - (4 - pi) * 0.25 - 6 * 9, rel=1e-4)
+
+    def test_pen_that_strays_from_its_pour(self) -> None:
+        """Two islands in one contour, joined by a line there and back: the pen bridges them."""
+        ring = (
+            (0.0, 0.0), (4.0, 0.0), (4.0, 2.0), (10.0, 2.0), (10.0, 0.0), (14.0, 0.0),
+            (14.0, 4.0), (10.0, 4.0), (10.0, 2.0), (4.0, 2.0), (4.0, 4.0), (0.0, 4.0), (0.0, 0.0),
+        )  # fmt: skip
+        fill = Fill(ring, True, Tag(), 1)
+        assert len(paint.paint([fill])) == 2
+        marks = [fill, *self.run(list(ring), 0.5)]
+        assert len(paint.paint(marks)) == 1
+        self.assert_as_stroke_by_stroke(marks)
+
+    @given(
+        st.lists(st.tuples(st.integers(0, 12), st.integers(0, 12)), min_size=9, max_size=30),
+        st.booleans(),
+    )
+    def test_any_run(self, corners: list[tuple[int, int]], filled: bool) -> None:
+        """Crossing itself, standing still, filled or not."""
+        points = [(x / 2, y / 2) for x, y in corners]
+        marks = self.run(points, 0.3)
+        if filled:
+            points.append(points[0])
+            marks = [Fill(tuple(points), True, Tag(), 1), *self.run(points, 0.3)]
+        self.assert_as_stroke_by_stroke(marks)
+
+
+class TestOverlays:
+    """Overlays that go wrong in floating numbers."""
+
+    def test_areas_that_do_not_add_up_are_done_again_on_the_grid(
+        self, monkeypatch: pytest.MonkeyPatch
+    ) -> None:
+        """An overlay that lies is found out and corrected."""
+        one, other = shapely.box(0, 0, 4, 4), shapely.box(2, 0, 6, 4)
+        honest_union, honest_difference = shapely.union, shapely.difference
+
+        def lying(honest: Callable[..., BaseGeometry]) -> Callable[..., BaseGeometry]:
+            def overlay(a: BaseGeometry, b: BaseGeometry, **grid: float) -> BaseGeometry:
+                return honest(a, b, **grid) if grid else shapely.box(0, 0, 5, 5)
+
+            return overlay
+
+        monkeypatch.setattr(shapely, "union", lying(honest_union))
+        monkeypatch.setattr(shapely, "difference", lying(honest_difference))
+        both = union.added(np.array([one], dtype=object), np.array([other], dtype=object))
+        left = union.cleared(np.array([one], dtype=object), np.array([other], dtype=object))
+        assert [p.area for p in both] == [24]
+        assert [p.area for p in left] == [8]
 
 
 class TestFills:
