@@ -22,6 +22,9 @@ Ints = NDArray[np.int64]
 _WIDEN = 0.118
 #: Pieces smaller than this part of their cell are dropped.
 _SLIVER = 1e-4
+#: Cells reach this far beyond their gap, as part of its size; less is rounding.
+_HAIR = 1e-7
+_SLACK = 1e-9
 #: Pieces with more corners than this, or that fill less than this of their hull, are cut again.
 _MOST_CORNERS = 24
 _HOLLOW = 0.6
@@ -114,12 +117,15 @@ def cut(gaps: Sequence[Polygon], grading: Grading, least: Sequence[float] = ()) 
     >>> bool(panels.area.sum() > slot.area)
     True
     """
-    found = []
-    for number, gap in enumerate(gaps):
-        parts = least[number] if least else 4.0
-        found.append(_quarters(gap) if parts <= _FEW else _pieces(gap, grading, parts))
-    owner = np.repeat(np.arange(len(found)), [len(cuts.area) for cuts in found])
-    return _measured(_stacked(found), owner)
+    wanted = np.array(least or [4.0] * len(gaps))
+    shapes = np.empty(len(gaps), dtype=object)
+    shapes[:] = gaps
+    found = [_quarters(gaps[int(k)], int(k)) for k in np.flatnonzero(wanted <= _FEW)]
+    many = np.flatnonzero(wanted > _FEW)
+    if len(many):
+        pieces = _pieces(shapes[many], grading, wanted[many])
+        found.append(pieces._replace(gap=many[pieces.gap]))
+    return _measured(_stacked(found))
 
 
 class _Cuts(NamedTuple):
@@ -132,6 +138,8 @@ class _Cuts(NamedTuple):
     """Areas that the pieces stand for."""
     inside: Floats
     """A point in each of them."""
+    gap: Ints
+    """Number of the gap each is of."""
 
 
 def _stacked(cuts: Sequence[_Cuts]) -> _Cuts:
@@ -139,13 +147,14 @@ def _stacked(cuts: Sequence[_Cuts]) -> _Cuts:
     full = [some for some in cuts if len(some.area)]
     if not full:
         none = np.zeros((0, 1, 4))
-        return _Cuts(none, none[:, :, 0] > 0, np.zeros(0), np.zeros((0, 2)))
+        return _Cuts(none, none[:, :, 0] > 0, none[:, 0, 0], none[:, 0, :2], np.zeros(0, np.int64))
     widest = max(some.edges.shape[1] for some in full)
     return _Cuts(
         np.concatenate([_padded(some.edges, widest) for some in full]),
         np.concatenate([np.pad(s.rim, ((0, 0), (0, widest - s.rim.shape[1]))) for s in full]),
         np.concatenate([some.area for some in full]),
         np.concatenate([some.inside for some in full]),
+        np.concatenate([some.gap for some in full]),
     )
 
 
@@ -156,20 +165,40 @@ def _padded(outline: Floats, widest: int) -> Floats:
     return np.concatenate([outline, np.repeat(start, room, axis=1)], axis=1)
 
 
-def _pieces(gap: Polygon, grading: Grading, least: float) -> _Cuts:
-    """Cut one gap, in cells that lie along it."""
-    angle = _frame_angle(gap, grading)
-    turned = rotate(gap, -angle, origin=(0, 0), use_radians=True) if angle else gap
-    lines = _segments(grading.lines, grading)
+def _pieces(gaps: NDArray[np.object_], grading: Grading, least: Floats) -> _Cuts:
+    """Cut gaps in cells that lie along each of them."""
+    angle = _frame_angles(gaps, grading)
     cos, sin = np.cos(angle), np.sin(angle)
-    back = np.array([[cos, -sin], [sin, cos]])
-    local = (lines.reshape(-1, 2) @ back).reshape(-1, 4)
-    cuts = _clipped(turned, local, grading, least)
-    edges = (cuts.edges.reshape(-1, 2) @ back.T).reshape(cuts.edges.shape)
-    return cuts._replace(edges=edges, inside=cuts.inside @ back.T)
+    turned = gaps.copy()
+    for k in np.flatnonzero(angle):
+        turned[k] = rotate(gaps[k], -angle[k], origin=(0, 0), use_radians=True)
+    plan = _Plan(turned, cos, sin, _segments(grading), _entries(gaps, grading), grading)
+    cuts = _clipped(plan, least)
+    c, s = cos[cuts.gap], sin[cuts.gap]
+    back = np.stack([np.stack([c, s], axis=1), np.stack([-s, c], axis=1)], axis=1)
+    ends = cuts.edges.reshape(len(c), -1, 2)
+    return cuts._replace(
+        edges=(ends @ back).reshape(cuts.edges.shape),
+        inside=(cuts.inside[:, None, :] @ back)[:, 0],
+    )
 
 
-def _quarters(gap: Polygon) -> _Cuts:
+class _Plan(NamedTuple):
+    """What decides the size of cells, for many gaps at once."""
+
+    gaps: NDArray[np.object_]
+    """Each turned into its own frame."""
+    cos: Floats
+    sin: Floats
+    """Direction of the first axis of each frame."""
+    lines: Floats
+    """Stretches of the traces, shape (s, 4), not turned."""
+    entries: Floats
+    """Where traces cross the rim of each gap, shape (gaps, k, 2), not turned; far off if none."""
+    grading: Grading
+
+
+def _quarters(gap: Polygon, number: int) -> _Cuts:
     """Four rectangles for a gap that sees the same field all over.
 
     Together they have the second moments of the gap, for which a rectangle and a disc are as easily
@@ -185,114 +214,137 @@ def _quarters(gap: Polygon) -> _Cuts:
     edges = np.concatenate([ring, np.roll(ring, -1, axis=1)], axis=2)
     rim = np.array([[1, 0, 0, 1], [1, 1, 0, 0], [0, 1, 1, 0], [0, 0, 1, 1]], dtype=bool)
     area = np.full(4, np.hypot(*u) * np.hypot(*v))
-    return _Cuts(edges, rim, area, ring.mean(axis=1))
+    return _Cuts(edges, rim, area, ring.mean(axis=1), np.full(4, number))
 
 
-def _frame_angle(gap: Polygon, grading: Grading) -> float:
+def _frame_angles(gaps: NDArray[np.object_], grading: Grading) -> Floats:
     """Direction in which to lay the cells: that of a straight gap, else that of the trace."""
-    outline = shapely.minimum_rotated_rectangle(gap)
-    if isinstance(outline, Polygon) and gap.area > 0.8 * outline.area:
-        (x0, y0), (x1, y1) = outline.exterior.coords[:2]
-        angle = float(np.arctan2(y1 - y0, x1 - x0))
-    else:
-        over = [line.intersection(gap) for line in grading.lines]
-        longest = max(over, key=lambda part: part.length, default=None)
-        angle = 0.0
-        if longest is not None and longest.length > 0:
-            ends = shapely.get_coordinates(longest)
-            angle = float(np.arctan2(*(ends[-1] - ends[0])[::-1]))
+    outlines = shapely.oriented_envelope(gaps)
+    straight = shapely.area(gaps) > 0.8 * np.maximum(shapely.area(outlines), 1e-300)
+    angle = np.zeros(len(gaps))
+    for k, gap in enumerate(gaps):
+        if straight[k]:
+            ends = shapely.get_coordinates(outlines[k])[:2]
+        else:
+            over = shapely.intersection(gap, np.array(grading.lines, dtype=object))
+            longest = int(np.argmax(shapely.length(over))) if len(over) else 0
+            ends = shapely.get_coordinates(over[longest]) if len(over) else np.zeros((0, 2))
+        if len(ends) > 1:
+            angle[k] = np.arctan2(*(ends[-1] - ends[0])[::-1])
     angle = (angle + np.pi / 4) % (np.pi / 2) - np.pi / 4
-    return 0.0 if abs(angle) < 1e-9 else angle
+    return np.where(np.abs(angle) < 1e-9, 0.0, angle)
 
 
-def _segments(lines: Sequence[LineString], grading: Grading) -> Floats:
-    """Straight stretches of the traces that matter for the size of panels in this gap."""
+def _segments(grading: Grading) -> Floats:
+    """Straight stretches of the traces, as fine as panels see them."""
     found: list[Floats] = []
-    for line in lines:
+    for line in grading.lines:
         points = shapely.get_coordinates(line.simplify(grading.near_mm / 4))
         found.append(np.concatenate([points[:-1], points[1:]], axis=1))
     return np.concatenate(found) if found else np.zeros((0, 4))
 
 
-def _wanted(x: Floats, y: Floats, lines: Floats, rim: Floats, grading: Grading) -> Floats:
-    """Largest panel wanted at points, as width along x and along y, shape (k, 2), mm."""
-    wanted = np.full((len(x), 2), np.inf)
-    if not len(lines):
-        return wanted
-    x1, y1, x2, y2 = lines.T
-    dx, dy = x2 - x1, y2 - y1
-    length = np.maximum(np.hypot(dx, dy), 1e-12)
-    ux, uy = dx / length, dy / length
-    along = np.clip((x[:, None] - x1) * ux + (y[:, None] - y1) * uy, 0.0, length)
-    distance = np.hypot(x[:, None] - x1 - along * ux, y[:, None] - y1 - along * uy)
+def _entries(gaps: NDArray[np.object_], grading: Grading) -> Floats:
+    """Where the traces cross the rim of each gap."""
+    bundle = shapely.multilinestrings(list(grading.lines)) if grading.lines else LineString()
+    met = shapely.intersection(shapely.boundary(gaps), bundle)
+    points, owner = shapely.get_coordinates(met, return_index=True)
+    counts = np.bincount(owner, minlength=len(gaps))
+    first = np.concatenate([[0], np.cumsum(counts)[:-1]])
+    entries = np.full((len(gaps), max(int(counts.max(initial=0)), 1), 2), 1e9)
+    entries[owner, np.arange(len(owner)) - first[owner]] = points
+    return entries
+
+
+def _wanted(plan: _Plan, middle: Floats, gap: Ints) -> Floats:
+    """Largest panel wanted at points of the gaps' frames, along either axis, shape (k, 2), mm."""
+    if not len(plan.lines):
+        return np.full((len(middle), 2), np.inf)
+    grading = plan.grading
+    cos, sin = plan.cos[gap], plan.sin[gap]
+    x = (cos * middle[:, 0] - sin * middle[:, 1])[:, None]
+    y = (sin * middle[:, 0] + cos * middle[:, 1])[:, None]
+    x1, y1, x2, y2 = plan.lines.T
+    length = np.maximum(np.hypot(x2 - x1, y2 - y1), 1e-12)
+    ux, uy = (x2 - x1) / length, (y2 - y1) / length
+    along = np.clip((x - x1) * ux + (y - y1) * uy, 0.0, length)
+    distance = np.hypot(x - x1 - along * ux, y - y1 - along * uy)
     growth = grading.slope * distance * (1.0 + distance / grading.far_mm)
     # a cell wider than its distance would reach the trace itself
     across_mm = np.maximum(grading.near_mm, np.minimum(growth, 0.8 * distance))
-    along_mm = np.maximum(across_mm, grading.near_mm * grading.stretch)
-    if len(rim):
-        entry = np.hypot(x[:, None] - rim[:, 0], y[:, None] - rim[:, 1]).min(axis=1)
-        along_mm = np.minimum(
-            along_mm,
-            np.maximum(across_mm, (grading.slope * entry + 1.5 * grading.near_mm)[:, None]),
-        )
+    rim = plan.entries[gap]
+    entry = np.hypot(x - rim[:, :, 0], y - rim[:, :, 1]).min(axis=1)
+    least = np.minimum(
+        grading.near_mm * grading.stretch, grading.slope * entry + 1.5 * grading.near_mm
+    )
+    along_mm = np.maximum(across_mm, least[:, None])
     # a cell axis at an angle to the trace takes the radius of the ellipse in that direction
-    wanted[:, 0] = (1.0 / np.sqrt((ux / along_mm) ** 2 + (uy / across_mm) ** 2)).min(axis=1)
-    wanted[:, 1] = (1.0 / np.sqrt((uy / along_mm) ** 2 + (ux / across_mm) ** 2)).min(axis=1)
-    return wanted
+    cross_x = cos[:, None] * ux + sin[:, None] * uy
+    cross_y = cos[:, None] * uy - sin[:, None] * ux
+    a, b = along_mm**-2.0, across_mm**-2.0
+    wide = (cross_x**2 * a + cross_y**2 * b).max(axis=1)
+    high = (cross_y**2 * a + cross_x**2 * b).max(axis=1)
+    return np.stack([wide, high], axis=1) ** -0.5
 
 
-def _entries(gap: Polygon, lines: Floats) -> Floats:
-    """Where the traces cross the rim of the gap, shape (k, 2)."""
-    if not len(lines):
-        return np.zeros((0, 2))
-    segments = shapely.linestrings(lines.reshape(-1, 2, 2))
-    return shapely.get_coordinates(shapely.intersection(segments, gap.boundary))
-
-
-def _clipped(
-    gap: Polygon, lines: Floats, grading: Grading, least: float
-) -> _Cuts:
-    """Halve the cells of the bounding box until they are fine enough, and clip them."""
-    shapely.prepare(gap)
-    west, south, east, north = gap.bounds
+def _clipped(plan: _Plan, least: Floats) -> _Cuts:
+    """Halve the cells of the bounding boxes until they are fine enough, and clip them."""
+    gaps, grading = plan.gaps, plan.grading
+    shapely.prepare(gaps)
+    bounds = shapely.bounds(gaps)
+    extent = (bounds[:, 2:] - bounds[:, :2]).max(axis=1)
     # a hair wider, by odd amounts, so that no cell border falls on a rim
-    hair = 1e-7 * max(east - west, north - south)
-    around = [west - hair, south - 1.7 * hair, east + 2.3 * hair, north + 1.3 * hair]
-    boxes = _roots(around, min(grading.root_mm, grading.near_mm))
-    shapes = np.full(len(boxes), gap, dtype=object)
-    rim = _entries(gap, lines)
-    holes = np.array([ring.bounds for ring in gap.interiors]).reshape(-1, 4)
-    limit = max(east - west, north - south) / least
-    done: list[tuple[Floats, NDArray[np.object_]]] = []
+    around = bounds + _HAIR * extent[:, None] * np.array([-1.0, -1.7, 2.3, 1.3])
+    first = min(grading.root_mm, grading.near_mm)
+    roots = [_roots(box, first) for box in around.tolist()]
+    boxes, gap = np.concatenate(roots), np.repeat(np.arange(len(gaps)), [len(r) for r in roots])
+    shapes = gaps[gap]
+    holes = [shapely.bounds(shapely.get_rings(shape)[1:]).reshape(-1, 4) for shape in gaps]
+    limit = (extent / least)[:, None]
+    done: list[tuple[Floats, NDArray[np.object_], Ints]] = []
     count = 0
     while len(boxes):
         size = boxes[:, 2:] - boxes[:, :2]
         middle = (boxes[:, :2] + boxes[:, 2:]) / 2
-        wanted = np.minimum(_wanted(middle[:, 0], middle[:, 1], lines, rim, grading), limit)
-        over = (size > wanted * 1.2) | _swallows(boxes, holes)[:, None]
+        wanted = np.minimum(_wanted(plan, middle, gap), limit[gap])
+        over = (size > wanted * 1.2) | _swallows(boxes, gap, holes)[:, None]
         fine = ~over.any(axis=1)
-        done.append((boxes[fine], shapes[fine]))
+        done.append((boxes[fine], shapes[fine], gap[fine]))
         count += int(fine.sum())
         boxes, owner = _halved(boxes[~fine], middle[~fine], over[~fine])
         if count + len(boxes) > grading.most:
             raise TooManyPanelsError
-        boxes, shapes = _met(gap, boxes, shapes[~fine][owner])
-    cells, shapes = (np.concatenate(part) for part in zip(*done, strict=True))
-    return _cut_out(gap, cells, shapes, grading)
+        boxes, shapes, gap = _met(gaps, boxes, shapes[~fine][owner], gap[~fine][owner])
+    boxes, shapes, gap = (np.concatenate(part) for part in zip(*done, strict=True))
+    return _cut_out(gaps, _Cells(boxes, shapes, gap, _SLACK * extent[gap]), grading)
+
+
+class _Cells(NamedTuple):
+    """Cells and what they lie over."""
+
+    boxes: Floats
+    shapes: NDArray[np.object_]
+    """The gap, or the part of it that is left in the cell."""
+    gap: Ints
+    slack: Floats
+    """What counts as on the border of a cell, mm."""
+
+    def take(self, which: NDArray[np.bool_] | Ints) -> _Cells:
+        """Some of the cells."""
+        return _Cells(*(column[which] for column in self))
 
 
 def _met(
-    gap: Polygon, boxes: Floats, shapes: NDArray[np.object_]
-) -> tuple[Floats, NDArray[np.object_]]:
-    """Cells that meet the gap, each with the part of an intricate gap that is left in it."""
-    cells = shapely.box(*boxes.T)
-    met = shapely.intersects(gap, cells)
-    boxes, cells, shapes = boxes[met], cells[met], shapes[met]
+    gaps: NDArray[np.object_], boxes: Floats, shapes: NDArray[np.object_], gap: Ints
+) -> tuple[Floats, NDArray[np.object_], Ints]:
+    """Cells that meet their gap, each with the part of an intricate gap that is left in it."""
+    met = shapely.intersects(gaps[gap], shapely.box(*boxes.T))
+    boxes, shapes, gap = boxes[met], shapes[met], gap[met]
     intricate = shapely.get_num_coordinates(shapes) > _INTRICATE
     if intricate.any():
         shapes = shapes.copy()
         shapes[intricate] = _clips(shapes[intricate], boxes[intricate])
-    return boxes, shapes
+    return boxes, shapes, gap
 
 
 def _clips(shapes: NDArray[np.object_], boxes: Floats) -> NDArray[np.object_]:
@@ -325,13 +377,17 @@ def _division(ratio: float) -> int:
     return int(np.ceil(ratio / 1.1 / 2**halvings))
 
 
-def _swallows(boxes: Floats, holes: Floats) -> NDArray[np.bool_]:
+def _swallows(boxes: Floats, gap: Ints, holes: Sequence[Floats]) -> NDArray[np.bool_]:
     """Which cells hold a whole hole that is not small in them."""
-    inside = (boxes[:, None, :2] < holes[:, :2]) & (boxes[:, None, 2:] > holes[:, 2:])
-    large = (holes[:, 2:] - holes[:, :2]).max(axis=1) > 0.3 * np.min(
-        boxes[:, 2:] - boxes[:, :2], axis=1
-    )[:, None]
-    swallowed: NDArray[np.bool_] = (inside.all(axis=2) & large).any(axis=1)
+    swallowed = np.zeros(len(boxes), dtype=bool)
+    for number in np.unique(gap):
+        if len(hole := holes[int(number)]):
+            mine = np.flatnonzero(gap == number)
+            box = boxes[mine, None]
+            inside = (box[:, :, :2] < hole[:, :2]) & (box[:, :, 2:] > hole[:, 2:])
+            side = (boxes[mine, 2:] - boxes[mine, :2]).min(axis=1)
+            large = (hole[:, 2:] - hole[:, :2]).max(axis=1) > 0.3 * side[:, None]
+            swallowed[mine] = (inside.all(axis=2) & large).any(axis=1)
     return swallowed
 
 
@@ -350,81 +406,93 @@ def _halved(boxes: Floats, middle: Floats, over: NDArray[np.bool_]) -> tuple[Flo
     return boxes, owner
 
 
-def _cut_out(
-    gap: Polygon, boxes: Floats, shapes: NDArray[np.object_], grading: Grading
-) -> _Cuts:
-    """Clip cells to the gap."""
-    whole = shapely.contains_properly(gap, shapely.box(*boxes.T))
-    inner = boxes[whole]
+def _cut_out(gaps: NDArray[np.object_], cells: _Cells, grading: Grading) -> _Cuts:
+    """Clip cells to their gaps."""
+    whole = shapely.contains_properly(gaps[cells.gap], shapely.box(*cells.boxes.T))
+    inner = cells.boxes[whole]
     middle, size = (inner[:, :2] + inner[:, 2:]) / 2, inner[:, 2:] - inner[:, :2]
     off_rim = np.zeros((len(inner), 4), dtype=bool)
-    cuts = [_Cuts(_box_edges(inner), off_rim, size.prod(axis=1), middle)]
+    cuts = [_Cuts(_box_edges(inner), off_rim, size.prod(axis=1), middle, cells.gap[whole])]
     if not whole.all():
-        plain, cells, area, hollow = _plain_pieces(shapes[~whole], boxes[~whole], grading)
-        if len(plain):
-            edges = _edges_of(shapely.orient_polygons(plain))
-            cuts.append(_Cuts(edges, _on_rim(edges, cells), area, _points_in(plain)))
-        if len(hollow):
-            cuts.append(_lumps(hollow))
+        plain, hollow = _plain_pieces(cells.take(~whole), grading)
+        if len(plain.gap):
+            area = shapely.area(plain.shapes)
+            edges = _edges_of(shapely.orient_polygons(_simpler(plain.shapes, area)))
+            rim = _on_rim(edges, plain)
+            cuts.append(_Cuts(edges, rim, area, _points_in(plain.shapes), plain.gap))
+        if len(hollow.gap):
+            cuts.append(_lumps(hollow.shapes, hollow.gap))
     return _stacked(cuts)
+
+
+def _simpler(pieces: NDArray[np.object_], area: Floats) -> NDArray[np.object_]:
+    """Straighten curved rims."""
+    many = np.flatnonzero(shapely.get_num_coordinates(pieces) > 7)
+    if not len(many):
+        return pieces
+    slack = 0.03 * np.sqrt(area[many])
+    rough = shapely.simplify(pieces[many], slack, preserve_topology=False)
+    fit = shapely.get_type_id(rough) == shapely.GeometryType.POLYGON
+    fit &= (shapely.area(rough) > 0.7 * area[many]) & shapely.is_valid(rough)
+    rough[~fit] = shapely.simplify(pieces[many[~fit]], slack[~fit])
+    pieces = pieces.copy()
+    pieces[many] = rough
+    return pieces
 
 
 def _points_in(pieces: NDArray[np.object_]) -> Floats:
     return shapely.get_coordinates(shapely.point_on_surface(pieces))
 
 
-def _plain_pieces(
-    shapes: NDArray[np.object_], boxes: Floats, grading: Grading
-) -> tuple[NDArray[np.object_], Floats, Floats, NDArray[np.object_]]:
+def _plain_pieces(cells: _Cells, grading: Grading) -> tuple[_Cells, _Cells]:
     """Clip to cells, and cut on what is not compact.
 
-    Returns the compact pieces, their cells and areas, and what is still not compact at the end.
-    Of cells that hold many pieces only the largest count.
+    Returns the compact pieces as the shapes of their cells, and what is still not compact at the
+    end. Of cells that hold many pieces only the largest count.
     """
-    done: list[tuple[NDArray[np.object_], Floats]] = []
-    lumps: list[NDArray[np.object_]] = []
+    done: list[_Cells] = []
+    lumps: list[_Cells] = []
     for left in range(grading.rounds, -1, -1):
-        simple = shapely.get_num_coordinates(shapes) <= _INTRICATE
-        clipped = shapes.copy()
-        clipped[simple] = shapely.intersection(shapes[simple], shapely.box(*boxes[simple].T))
-        clipped[~simple] = _clips(shapes[~simple], boxes[~simple])
-        pieces, owner = shapely.get_parts(clipped, return_index=True)
-        cells = boxes[owner]
-        keep = shapely.area(pieces) > _SLIVER * np.prod(cells[:, 2:] - cells[:, :2], axis=1)
-        pieces, cells, owner = pieces[keep], cells[keep], owner[keep]
-        if len(pieces) > 3 * grading.most:
+        pieces, owner = _parts(cells)
+        if len(owner) > 3 * grading.most:
             raise TooManyPanelsError
-        bounds = shapely.bounds(pieces)
-        compact = _compact(pieces, bounds, grading)
+        bounds = shapely.bounds(pieces.shapes)
+        compact = _compact(pieces.shapes, bounds, grading)
         extent = bounds[:, 2:] - bounds[:, :2]
         # far from the traces, where cells are large, shapes do not matter so much
         over = extent.max(axis=1) > _LARGE * grading.near_mm * 2.0 ** (left - grading.rounds)
         end = over & (left < grading.rounds) | (left == 0)
-        kept = ~end | (_rank(shapely.area(pieces), owner) < _MOST_PARTS)
-        done.append((pieces[compact & kept], cells[compact & kept]))
-        lumps.append(pieces[~compact & end & kept])
+        kept = ~end | (_rank(shapely.area(pieces.shapes), owner) < _MOST_PARTS)
+        done.append(pieces.take(compact & kept))
+        lumps.append(pieces.take(~compact & end & kept))
         again = ~compact & ~end
         if not again.any():
             break
         middle = (bounds[again, :2] + bounds[again, 2:]) / 2
         along = extent[again] > 0.4 * extent[again].max(axis=1)[:, None]
-        boxes, half = _halved(cells[again], middle, along)
-        shapes = pieces[again][half]
-    plain, inside = (np.concatenate(part) for part in zip(*done, strict=True))
-    hollow = np.concatenate(lumps)
-    area = shapely.area(plain)
-    many = np.flatnonzero(shapely.get_num_coordinates(plain) > 7)
-    rough = shapely.simplify(plain[many], 0.03 * np.sqrt(area[many]), preserve_topology=False)
-    fit = (shapely.get_type_id(rough) == 3) & (shapely.area(rough) > 0.7 * area[many])
-    fit &= shapely.is_valid(rough)
-    rough[~fit] = shapely.simplify(plain[many[~fit]], 0.03 * np.sqrt(area[many[~fit]]))
-    plain[many] = rough
-    return plain, inside, area, hollow
+        boxes, half = _halved(pieces.boxes[again], middle, along)
+        cells = pieces.take(again).take(half)._replace(boxes=boxes)
+    return (
+        _Cells(*(np.concatenate(column) for column in zip(*done, strict=True))),
+        _Cells(*(np.concatenate(column) for column in zip(*lumps, strict=True))),
+    )
 
 
-def _compact(
-    pieces: NDArray[np.object_], bounds: Floats, grading: Grading
-) -> NDArray[np.bool_]:
+def _parts(cells: _Cells) -> tuple[_Cells, Ints]:
+    """Clip shapes to their cells; the pieces, and the number of the cell each came from."""
+    simple = shapely.get_num_coordinates(cells.shapes) <= _INTRICATE
+    clipped = cells.shapes.copy()
+    borders = shapely.box(*cells.boxes[simple].T)
+    clipped[simple] = shapely.intersection(cells.shapes[simple], borders)
+    clipped[~simple] = _clips(cells.shapes[~simple], cells.boxes[~simple])
+    pieces, owner = shapely.get_parts(clipped, return_index=True)
+    whole = np.prod(cells.boxes[:, 2:] - cells.boxes[:, :2], axis=1)
+    keep = shapely.area(pieces) > _SLIVER * whole[owner]
+    owner = owner[keep]
+    return cells.take(owner)._replace(shapes=pieces[keep]), owner
+
+
+def _compact(pieces: NDArray[np.object_], bounds: Floats, grading: Grading) -> NDArray[np.bool_]:
     """Which pieces one density and a few points can stand for."""
     area = shapely.area(pieces)
     rough = shapely.simplify(pieces, 0.03 * np.sqrt(area), preserve_topology=False)
@@ -444,7 +512,7 @@ def _rank(area: Floats, owner: Ints) -> Ints:
     return rank
 
 
-def _lumps(pieces: NDArray[np.object_]) -> _Cuts:
+def _lumps(pieces: NDArray[np.object_], gap: Ints) -> _Cuts:
     """A rectangle of the same centre and second moments in place of each intricate piece."""
     area, centre, spread = _moments(_edges_of(shapely.orient_polygons(pieces)))
     u, v = _axes(spread)
@@ -452,7 +520,7 @@ def _lumps(pieces: NDArray[np.object_]) -> _Cuts:
     ring = centre[:, None, :] + np.sqrt(3.0) * corners
     edges = np.concatenate([ring, np.roll(ring, -1, axis=1)], axis=2)
     off_rim = np.zeros((len(pieces), 4), dtype=bool)
-    return _Cuts(edges, off_rim, area, _points_in(pieces))
+    return _Cuts(edges, off_rim, area, _points_in(pieces), gap)
 
 
 def _axes(spread: Floats) -> tuple[Floats, Floats]:
@@ -491,9 +559,9 @@ def _edges_of(pieces: NDArray[np.object_]) -> Floats:
     return padded
 
 
-def _on_rim(edges: Floats, boxes: Floats) -> NDArray[np.bool_]:
+def _on_rim(edges: Floats, cells: _Cells) -> NDArray[np.bool_]:
     """Which edges do not lie on the border of their cell, and so on the rim of the gap."""
-    slack = 1e-10 * np.ptp(boxes)
+    boxes, slack = cells.boxes, cells.slack[:, None]
     border = np.zeros(edges.shape[:2], dtype=bool)
     for axis in (0, 1):
         for side in (0, 2):
@@ -505,7 +573,7 @@ def _on_rim(edges: Floats, boxes: Floats) -> NDArray[np.bool_]:
     return ~border & (length > 0)
 
 
-def _measured(cuts: _Cuts, gap: Ints) -> Panels:
+def _measured(cuts: _Cuts) -> Panels:
     """Widen panels at the rim, up to what their true area asks for, and measure them."""
     area, centre, _ = _moments(cuts.edges)
     # a lump keeps its moments rather than its area
@@ -517,7 +585,7 @@ def _measured(cuts: _Cuts, gap: Ints) -> Panels:
     reach = np.hypot(edges[:, :, 0] - centre[:, None, 0], edges[:, :, 1] - centre[:, None, 1])
     sides = np.sqrt(12.0) * np.stack([np.hypot(*u.T), np.hypot(*v.T)], axis=1)
     radius = reach.max(axis=1) if len(edges) else np.zeros(0)
-    return Panels(edges, area, centre, spread, sides, points, radius, cuts.inside, gap)
+    return Panels(edges, area, centre, spread, sides, points, radius, cuts.inside, cuts.gap)
 
 
 def _moments(edges: Floats) -> tuple[Floats, Floats, Floats]:
