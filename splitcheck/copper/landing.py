@@ -10,7 +10,8 @@ from numpy.typing import NDArray
 from shapely import Polygon
 from shapely.geometry.base import BaseGeometry
 
-from splitcheck.copper.marks import Flash, Mark, Stroke
+from splitcheck.copper import fills
+from splitcheck.copper.marks import Fill, Flash, Mark, Stroke
 from splitcheck.copper.outlines import Shapes, outlines
 from splitcheck.units import Floats
 
@@ -35,9 +36,7 @@ def landed(
     for those that were cleared away. More than one only where later clears cut a mark apart.
     """
     asked = [
-        number
-        for number, mark in enumerate(marks)
-        if mark.dark and (mark.tag.net or not named)
+        number for number, mark in enumerate(marks) if mark.dark and (mark.tag.net or not named)
     ]
     found: list[set[int]] = [set() for _ in marks]
     owners, points = _witnesses(marks, asked)
@@ -101,7 +100,7 @@ def _witnesses(marks: Sequence[Mark], asked: list[int]) -> tuple[NDArray[np.int6
 
 
 def _quick_witnesses(marks: Sequence[Mark], asked: list[int]) -> tuple[NDArray[np.int64], Shapes]:
-    """Where nothing is cleared: the middle of a stroke, a point in the aperture of a flash."""
+    """Where nothing is cleared: a point inside each mark, without drawing its outline."""
     inside: dict[int, tuple[float, float]] = {}
     owners: list[int] = []
     points: list[tuple[float, float]] = []
@@ -115,11 +114,14 @@ def _quick_witnesses(marks: Sequence[Mark], asked: list[int]) -> tuple[NDArray[n
                 points.append(((ax + bx) / 2, (ay + by) / 2))
         elif isinstance(mark, Flash):
             if id(mark.shape) not in inside:
-                at = mark.shape.point_on_surface()
-                inside[id(mark.shape)] = (at.x, at.y)
+                spot = mark.shape.point_on_surface()
+                inside[id(mark.shape)] = (spot.x, spot.y)
             dx, dy = inside[id(mark.shape)]
             owners.append(number)
             points.append((mark.at[0] + dx, mark.at[1] + dy))
+        elif isinstance(mark, Fill) and (at := fills.inside(np.array(mark.ring))) is not None:
+            owners.append(number)
+            points.append(at)
         else:
             slow.append(number)
     shapes = outlines([marks[n] for n in slow])
@@ -130,4 +132,3 @@ def _quick_witnesses(marks: Sequence[Mark], asked: list[int]) -> tuple[NDArray[n
         np.concatenate((owners, np.array(slow, dtype=np.int64)[solid])).astype(np.int64),
         np.concatenate((np.asarray(shapely.points(corners), dtype=object), rest)),
     )
-

@@ -246,6 +246,17 @@ class TestFills:
         inside = shapely.contains(shape, points)
         assert np.array_equal(inside[~near], (winding != 0)[~near])
 
+    @given(st.lists(st.tuples(st.integers(0, 6), st.integers(0, 6)), min_size=3, max_size=9))
+    def test_inside_is_inside(self, corners: list[tuple[int, int]]) -> None:
+        """The point found without mending lies in the mended area, or there is none."""
+        ring = np.array([*corners, corners[0]], dtype=float)
+        point = fills.inside(ring)
+        if point is None:
+            # One level line found nothing: allowed only where a contour is no simple polygon.
+            assert not Polygon(ring).is_valid
+        else:
+            assert shapely.contains_xy(fills.filled(ring), *point)
+
 
 class TestInvert:
     """Negative layers."""
