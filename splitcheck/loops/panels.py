@@ -30,6 +30,8 @@ _MOST_CORNERS = 24
 _HOLLOW = 0.6
 #: Of so many pieces in one cell at most panels are made.
 _MOST_PARTS = 6
+#: A hole larger than this part of a cell must not lie in it whole.
+_HOLE = 0.3
 #: Intricate pieces are not cut on if they are this many times as large as a panel at the trace.
 _LARGE = 12.0
 #: A gap that asks for no more panels along its side than this is cut into four.
@@ -307,7 +309,7 @@ def _clipped(plan: _Plan, least: Floats) -> _Cuts:
         size = boxes[:, 2:] - boxes[:, :2]
         middle = (boxes[:, :2] + boxes[:, 2:]) / 2
         wanted = np.minimum(_wanted(plan, middle, gap), limit[gap])
-        over = (size > wanted * 1.2) | _swallows(boxes, gap, holes)[:, None]
+        over = (size > wanted * 1.2) | _swallows(boxes, wanted.min(axis=1), gap, holes)[:, None]
         fine = ~over.any(axis=1)
         done.append((boxes[fine], shapes[fine], gap[fine]))
         count += int(fine.sum())
@@ -377,16 +379,18 @@ def _division(ratio: float) -> int:
     return int(np.ceil(ratio / 1.1 / 2**halvings))
 
 
-def _swallows(boxes: Floats, gap: Ints, holes: Sequence[Floats]) -> NDArray[np.bool_]:
-    """Which cells hold a whole hole that is not small in them."""
+def _swallows(
+    boxes: Floats, wanted: Floats, gap: Ints, holes: Sequence[Floats]
+) -> NDArray[np.bool_]:
+    """Which cells hold a whole hole that is not small, neither in them nor against what is wanted."""
     swallowed = np.zeros(len(boxes), dtype=bool)
     for number in np.unique(gap):
         if len(hole := holes[int(number)]):
             mine = np.flatnonzero(gap == number)
             box = boxes[mine, None]
             inside = (box[:, :, :2] < hole[:, :2]) & (box[:, :, 2:] > hole[:, 2:])
-            side = (boxes[mine, 2:] - boxes[mine, :2]).min(axis=1)
-            large = (hole[:, 2:] - hole[:, :2]).max(axis=1) > 0.3 * side[:, None]
+            side = np.maximum((boxes[mine, 2:] - boxes[mine, :2]).min(axis=1), wanted[mine])
+            large = (hole[:, 2:] - hole[:, :2]).max(axis=1) > _HOLE * side[:, None]
             swallowed[mine] = (inside.all(axis=2) & large).any(axis=1)
     return swallowed
 

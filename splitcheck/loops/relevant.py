@@ -271,8 +271,9 @@ def _alone_nh(gaps: NDArray[np.object_], traces: Sequence[LineString], height_mm
         return np.zeros(len(gaps))
     bundle = shapely.multilinestrings(list(traces))
     shapely.prepare(bundle)
-    size = np.hypot(*_extent(gaps).T)
-    centres = shapely.centroid(gaps)
-    away = np.maximum(shapely.distance(centres, bundle) - 0.25 * size, height_mm)
+    # a large gap sees this field only over about its distance
+    apart = np.maximum(shapely.distance(gaps, bundle), height_mm)
+    size = np.minimum(np.hypot(*_extent(gaps).T), 2 * apart)
+    away = apart + 0.25 * size
     value: Floats = MU0 * size**3 / 3 * (height_mm / (np.pi * away**2)) ** 2
     return value
