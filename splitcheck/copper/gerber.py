@@ -138,7 +138,10 @@ class _Reader:
         """Carry out a stretch of words: long runs of straight draws at once, the rest singly."""
         at = 0
         for run in RUN.finditer(text):
-            self.each_word(text[at : run.start()])
+            before = text[at : run.start()]
+            self.each_word(before)
+            # Blank after the last star, which no word takes.
+            self.log.line += before.count("\n", before.rfind("*") + 1)
             if self.done:
                 return
             if self.mode != _LINEAR or not self.drawn_at_once(run[0]):
@@ -150,8 +153,8 @@ class _Reader:
         """Draw a run of straight lines; False if it must go word by word."""
         corners = self.region.corners
         digits = run_numbers(run)
-        ends = run.count("*\n")
-        if corners is None and not (len(digits) - 1 <= ends == run.count("\n") <= len(digits)):
+        ends = run.count("*\n") + run.count("*\r\n")
+        if corners is None and not len(digits) - 1 == ends == run.count("\n"):
             # Strokes need their line each: one word a line, or nothing.
             return False
         found = self.numbers.points(digits)
@@ -165,7 +168,7 @@ class _Reader:
             for start, end in pairwise((self.at, *points)):
                 self.stroke((start, end))
                 self.log.line += 1
-            self.log.line += ends - len(digits)
+            self.log.line -= 1
         self.at = points[-1]
         self.operation = 1
         return True
@@ -282,7 +285,7 @@ class _Reader:
     def comment(self, text: str) -> None:
         content = text.strip()
         if content.startswith("#@!"):
-            command = content[3:].strip()
+            command = content[3:].strip(" %")
             if command[:2] in _ATTRIBUTES:
                 self.attribute(command)
 

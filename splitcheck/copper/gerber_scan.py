@@ -18,7 +18,8 @@ WORD = re.compile(
     r"(?:I([+-]?\d{1,18}))?(?:J([+-]?\d{1,18}))?(?:D0*(\d{1,9}))?([^*]*)\*"
 )
 #: Straight draws one after another, X and Y both given: most of any file, taken all at once.
-RUN = re.compile(r"(?:X[+-]?\d{1,11}Y[+-]?\d{1,11}D0*1\*\s*){8,}")
+_DRAW = r"X[+-]?\d{1,11}Y[+-]?\d{1,11}D0*1\*"
+RUN = re.compile(rf"{_DRAW}(?:\s*{_DRAW}){{7,}}")
 _RUN_SIGNS = str.maketrans("XYD*", "    ")
 _COMMENT = re.compile(r"\s*G0*4(?!\d)")
 _LETTERS = 4096
@@ -75,6 +76,9 @@ def blocks(text: str) -> Iterator[Block]:
             star = text.find("*", percent)
             percent, end = -1, len(text) if star < 0 else star + 1
             words = text[at:end]
+            # Some write a whole command into a comment, "G04 #@! %TF...*%*": its end belongs to it.
+            if words.count("%") % 2 and text.startswith("%", end):
+                end += 2 if text.startswith("%*", end) else 1
         if words:
             yield from _words(words, line, last=end == len(text))
             line += words.count("\n")

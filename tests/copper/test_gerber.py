@@ -483,6 +483,36 @@ class TestSyntax:
         """It opens nothing."""
         assert len(read("G04 100% of it, 5%*\nD10*X0Y0D03*G04 X1Y1D03*").marks) == 1
 
+    def test_whole_commands_inside_comments(self) -> None:
+        """Percent signs and all: the attribute counts, and nothing after it is lost."""
+        body = "G04 #@! %TF.Part,Single*%*\nG04 #@! %TO.N,GND*%\nD10*\nX0Y0D03*\n%LPC*%X1D03*"
+        drawing = read(body)
+        assert drawing.attribute(".Part") == ("Single",)
+        assert [(m.dark, m.tag.net, m.line) for m in drawing.marks] == [
+            (True, "GND", 5),
+            (False, "GND", 6),
+        ]
+
+    @pytest.mark.parametrize("head", ["", "G36*", "G91*", "G02*"])
+    @pytest.mark.parametrize(
+        "file_head",
+        [
+            HEAD,
+            HEAD.replace("MOMM", "MOIN"),
+            HEAD.replace("FSLAX33Y33", "FSTAX16Y16"),
+            HEAD.replace("33", "26"),
+        ],
+    )
+    @pytest.mark.parametrize("between", ["\n", "", "\r\n", "\n\n"])
+    def test_runs_are_read_as_word_by_word(self, head: str, file_head: str, between: str) -> None:
+        """Long runs of straight draws go another way through the reader, to the same marks."""
+        words = [f"X{101 * n % 907}Y{-53 * n % 811}D01*{between}" for n in range(1, 40)]
+        end = ("X101Y758D01*G37*" if head == "G36*" else "") + "X5Y5D03*"
+        begin = f"D10*X101Y758D02*{head}"
+        at_once = read(begin + "".join(words) + end, file_head).marks
+        singly = read(begin + "G04*".join(words) + end, file_head).marks
+        assert at_once == singly
+
     def test_end_of_file_codes(self) -> None:
         """M02 and M00 end, M01 does not; what follows the end is not read."""
         assert len(read("D10*X0Y0D03*M00*X1D03*%JUNK").marks) == 1
