@@ -260,7 +260,8 @@ def _taut(
         closed[here] = True
         step = np.hypot(*(points - points[here]).T)
         better = np.flatnonzero(~closed & (reached[here] + step < reached - 1e-12))
-        better = better[_touches(bends[here], bends[better])]
+        if here > 1:  # from the start, nearer the rim than the corners, any step may be taut
+            better = better[(better == 1) | _touches(bends[here], bends[better])]
         for other in better[_free(points[here], points[better], blocks, barrier)].tolist():
             reached[other] = reached[here] + step[other]
             came[other] = here

@@ -32,9 +32,12 @@ from splitcheck.verdict.score import DEFAULT_DRIVE, Drive, level, noise_mv, wors
 OWN_ANTIPAD_MM = 2.0
 #: Bare trace shorter than this at a net's own pads and vias is not a finding, mm.
 OWN_END_MM = 3.0
-#: A run this long over another plane of the same net, stitched this near, is a change of plane.
+#: A run at least this long over another whole plane can be a change of plane: mm ...
 CHANGE_RUN_MM = 5.0
+#: ... if the two are one net and stitched this near to both ends, mm, ...
 CHANGE_STITCH_MM = 3.0
+#: ... or, whatever their nets, if it is this many times longer than the planes are apart.
+CHANGE_RATIO = 10.0
 #: From this ratio of length across the trace to length along it a closed gap is a slot.
 SLOT_RATIO = 2.5
 #: A trace this near the rim of a gap, as a share of its run, clips the gap rather than crosses it.
@@ -105,8 +108,8 @@ def _exempt(scene: Scene, crossing: Crossing) -> str | None:
 
     (1) The gap is the antipad of a plated hole of the net itself.
     (2) It is too small to add what is asked for, whatever way the return takes.
-    (3) A long run over another plane of the same net with stitching at both ends: the return
-    changes planes there, it does not go round.
+    (3) A long run over another whole plane, of the same net and stitched at both ends or close
+    beneath: the return changes planes there, it does not go round.
     """
     plane = scene.planes[crossing.plane]
     gap = plane.gaps[crossing.gap]
@@ -115,7 +118,7 @@ def _exempt(scene: Scene, crossing: Crossing) -> str | None:
     if not gap.open and _ceiling_nh(scene, crossing, gap) < scene.min_nh:
         return f"crossings that add less than {scene.min_nh:g} nH"
     if crossing.run_mm >= CHANGE_RUN_MM and _changes_plane(scene, crossing):
-        return "runs over another plane of the same net stitched at both ends (changes of plane)"
+        return "long runs over another whole plane (changes of plane, not judged here)"
     return None
 
 
@@ -146,20 +149,17 @@ def _ceiling_nh(scene: Scene, crossing: Crossing, gap: Gap) -> float:
 
 
 def _changes_plane(scene: Scene, crossing: Crossing) -> bool:
-    plane = scene.planes[crossing.plane]
-    one, other = (plane.islands[i] for i in crossing.islands)
-    if one.net != other.net:
-        return False
-    xs, ys = np.array(crossing.path).T
-    beyond = _layers_beyond(scene, crossing)
-    xs, ys = np.append(xs, crossing.at[0]), np.append(ys, crossing.at[1])
-    layer = nearest_cover(tuple(scene.planes.values()), beyond, xs, ys)
+    xs, ys = np.array([*crossing.path, crossing.at]).T
+    layer = nearest_cover(tuple(scene.planes.values()), _layers_beyond(scene, crossing), xs, ys)
     if layer is None:
         return False
+    if crossing.run_mm >= CHANGE_RATIO * scene.board.stack.height_mm(crossing.plane, layer):
+        return True
+    one, other = (scene.planes[crossing.plane].islands[i] for i in crossing.islands)
     number = int(scene.planes[layer].island_at(xs[:1], ys[:1])[0])
     island = scene.planes[layer].islands[number]
     return (
-        island.net == one.net
+        one.net == other.net == island.net
         and stitched_near(scene.graph, one.id, island.id, crossing.before, CHANGE_STITCH_MM)
         and stitched_near(scene.graph, other.id, island.id, crossing.after, CHANGE_STITCH_MM)
     )
