@@ -12,7 +12,7 @@ import numpy as np
 from splitcheck.copper import curves
 from splitcheck.copper import gerber_language as language
 from splitcheck.copper.gerber_attributes import Attributes
-from splitcheck.copper.gerber_canvas import Canvas
+from splitcheck.copper.gerber_canvas import Canvas, check_corners
 from splitcheck.copper.gerber_image import WholeImage
 from splitcheck.copper.gerber_log import Log
 from splitcheck.copper.gerber_numbers import Numbers
@@ -106,6 +106,7 @@ class _Reader:
             if self.done:
                 break
         self.finish()
+        check_corners(self.canvas.marks, self.log.name)
         negative = self.attributes.file.get(".FilePolarity", ())[:1] == ("Negative",)
         return Drawing(
             self.log.name,

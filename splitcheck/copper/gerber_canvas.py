@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from math import floor
 from typing import NamedTuple, NoReturn
 
-from shapely import Polygon
+from shapely import Polygon, get_num_coordinates
 
 from splitcheck.copper.apertures import MOST_MM, Setting, linear
 from splitcheck.copper.gerber_language import Repeat
@@ -15,6 +16,8 @@ from splitcheck.errors import SplitcheckError
 #: Most marks that step-repeat and blocks may make of a file, together.
 MOST_COPIES = 1_000_000
 MOST_NESTING = 100
+#: Most corners of all marks of a file together; a dense real layer has half a million.
+MOST_CORNERS = 20_000_000
 
 Matrix = tuple[float, float, float, float]
 SAME: Matrix = (1.0, 0.0, 0.0, 1.0)
@@ -168,6 +171,30 @@ class Canvas:
         raise SplitcheckError(
             f"{self.name}:{line}", wrong, "export one board, not the panel, or write it out"
         )
+
+
+def check_corners(marks: Sequence[Mark], name: str) -> None:
+    """Refuse marks that would have absurdly many corners when they are painted.
+
+    Raises
+    ------
+    SplitcheckError
+        At the mark that passes the limit: a large macro set down very often, for example.
+    """
+    total = 0
+    known: dict[int, int] = {}
+    for mark in marks:
+        if isinstance(mark, Fill):
+            total += len(mark.ring)
+        elif mark.shape is not None:
+            if id(mark.shape) not in known:
+                known[id(mark.shape)] = int(get_num_coordinates(mark.shape))
+            # Each edge sweeps a parallelogram along each stretch of a stroke.
+            each = 1 if isinstance(mark, Flash) else 4 * len(mark.points)
+            total += each * known[id(mark.shape)]
+        if total > MOST_CORNERS:
+            wrong = f"the marks up to here have {total} corners, limit {MOST_CORNERS}"
+            raise SplitcheckError(f"{name}:{mark.line}", wrong, "export with simpler apertures")
 
 
 def _moved(points: tuple[Point, ...], matrix: Matrix, shift: Point) -> tuple[Point, ...]:

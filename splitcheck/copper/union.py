@@ -107,15 +107,22 @@ def _meeting(planes: Shapes, small: Shapes) -> Pairs:
     unless the whole plane lies inside the pad, which its box rules out.
     """
     shapely.prepare(planes)
-    plane, hit = shapely.STRtree(small).query(planes)
-    rims = shapely.get_exterior_ring(small)
-    meet = shapely.intersects(planes[plane], rims[hit])
-    inner, outer = shapely.bounds(planes)[plane], shapely.bounds(small)[hit]
-    around = ~meet & (outer[:, :2] <= inner[:, :2]).all(axis=1)
-    around &= (outer[:, 2:] >= inner[:, 2:]).all(axis=1)
-    meet[around] = shapely.intersects(planes[plane[around]], small[hit[around]])
-    order = np.argsort(plane[meet], kind="stable")
-    return plane[meet][order], hit[meet][order]
+    tree, rims = shapely.STRtree(small), shapely.get_exterior_ring(small)
+    bounds = shapely.bounds(small)
+    found = [np.empty((2, 0), dtype=np.int64)]
+    # Some at a time: ten thousand planes over one another would be a hundred million pairs.
+    for chunk in np.array_split(np.arange(len(planes)), len(planes) // 256 + 1):
+        number, hit = tree.query(planes[chunk])
+        plane = chunk[number]
+        meet = shapely.intersects(planes[plane], rims[hit])
+        inner, outer = shapely.bounds(planes)[plane], bounds[hit]
+        around = ~meet & (outer[:, :2] <= inner[:, :2]).all(axis=1)
+        around &= (outer[:, 2:] >= inner[:, 2:]).all(axis=1)
+        meet[around] = shapely.intersects(planes[plane[around]], small[hit[around]])
+        found.append(np.stack((plane[meet], hit[meet])))
+    first, second = np.concatenate(found, axis=1)
+    order = np.argsort(first, kind="stable")
+    return first[order], second[order]
 
 
 def _whole(planes: Shapes, small: Shapes) -> Shapes:

@@ -43,7 +43,7 @@ def fault(text: str) -> str:
         ),
         (
             HEAD + "D10*\n%SRX1000Y900I1J1*%\nX0Y0D03*X1D03*%SR*%M02*",
-            "it.gbr:5: step-repeat and blocks make too many marks: 1000 x 900 copies of 2 marks = 1",
+            "it.gbr:5: step-repeat and blocks make too many marks: 1000 x 900 copies of 2 marks =",
         ),
         (HEAD + "%SRX2Y1I3000J0*%", "it.gbr:4: step-repeat reaches 3000 mm, beyond the limit of"),
         (HEAD + "%SRX0Y1I1J0*%", "it.gbr:4: the command 'SRX0Y1I1J0' cannot be read;"),
@@ -94,6 +94,14 @@ def test_macros_that_draw_too_much_together() -> None:
     macro = "%AMM*" + "1,1,0,0,0*" * 9000 + "%\n"
     uses = "".join(f"%ADD{n}M*%\nD{n}*X0Y0D03*\n" for n in range(11, 111))
     assert "primitives, limit 100000" in fault(HEAD + macro + uses)
+
+
+def test_large_aperture_set_down_very_often() -> None:
+    """A macro outline of 5000 corners, 5000 times, is told before it is painted."""
+    ring = ",".join(f"{n % 100},{n // 100}" for n in range(4999))
+    macro = f"%AMM*4,1,4999,{ring},0,0,0*%%ADD11M*%\nD11*"
+    flashes = "\n".join(f"X{n}D03*" for n in range(5000))
+    assert "corners, limit 20000000" in fault(HEAD + macro + flashes + "M02*")
 
 
 @pytest.mark.parametrize(
