@@ -8,7 +8,8 @@ import numpy as np
 from numpy.polynomial.legendre import leggauss
 
 from splitcheck.loops.kernels import outline_potential, plate_images, rectangle_self
-from splitcheck.loops.panels import Ints, Panels
+from splitcheck.loops.outlines import Ints
+from splitcheck.loops.panels import Panels
 from splitcheck.units import Floats
 
 #: Panels this close (distance against the sum of their radii) are integrated in closed form,

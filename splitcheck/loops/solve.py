@@ -12,9 +12,11 @@ from numpy.typing import NDArray
 from shapely import LineString, Point, Polygon
 
 from splitcheck.errors import SplitcheckError
+from splitcheck.loops.cells import Grading, TooManyPanelsError
 from splitcheck.loops.matrix import interaction
-from splitcheck.loops.panels import Grading, Panels, TooManyPanelsError, cut
+from splitcheck.loops.panels import Panels, cut
 from splitcheck.loops.relevant import Scene, arrange
+from splitcheck.loops.share import share_out, via_matrix
 from splitcheck.loops.sources import islands, point_angles, strip_source
 from splitcheck.units import MU0, Floats
 
@@ -28,7 +30,7 @@ _COARSER = 2.0
 #: Where the two differ by more than this and the method's own error, the panels are halved again,
 _SETTLED_NH = 4e-3
 #: at most this often, and up to this many.
-_MORE = 2
+_MORE = 1
 _REFINE_UP_TO = 600
 #: More unknowns than this are not solved for: the panels are made coarser instead.
 MAX_PANELS = 1000
@@ -40,6 +42,8 @@ _SLENDER = 12.0
 #: What the method itself is off by where mesh and truncation are not: against the independent
 #: field solves of tests/loops/reference.csv, mostly because a real strip crowds its current.
 _METHOD_ERROR = 0.03
+#: Less than this is not told from nothing.
+_FLOOR_NH = 1e-3
 
 
 @dataclass(frozen=True, slots=True)
@@ -290,7 +294,7 @@ def _job(
     for row, k in enumerate(straps):
         own[row, row] = getattr(bridges[k], "mounted_nh", 0.0)
     if beyond_mm is not None and chosen:
-        own[len(straps) :, len(straps) :] = _via_matrix(
+        own[len(straps) :, len(straps) :] = via_matrix(
             places, [b.diameter_mm for b in chosen], beyond_mm
         )
     for k, short in enumerate(scene.cut_short_mm):
@@ -313,20 +317,6 @@ def _job(
     )
 
 
-def _via_matrix(places: Floats, diameters_mm: Sequence[float], plate_mm: float) -> Floats:
-    """Inductance of vias between two planes, for currents that add up to zero.
-
-    The field between planes a distance d apart is that of line currents: mu0 d/2 pi ln(1/r), with
-    half the diameter for r on the diagonal. One via there and one back give mu0 d/pi ln(2s/D).
-    """
-    apart = np.hypot(*(places[:, None, :] - places).transpose(2, 0, 1))
-    for k, diameter in enumerate(diameters_mm):
-        apart[k, k] = max(diameter, 1e-3) / 2
-    least = min(max(min(diameters_mm), 1e-3) / 2, 1.0)
-    matrix: Floats = -MU0 * plate_mm / (2 * np.pi) * np.log(np.maximum(apart, least))
-    return matrix
-
-
 def _panels(job: _Job, fineness: float, most: int = MAX_PANELS) -> Panels:
     """Cut the gaps, coarser and coarser until there are not too many panels."""
     # images in planes are averaged over a few points of each panel, potentials exactly
@@ -335,7 +325,9 @@ def _panels(job: _Job, fineness: float, most: int = MAX_PANELS) -> Panels:
     near, slope = job.near_mm / fineness, _SLOPE / fineness
     least = np.array(_LEAST)[list(job.scene.weight)] * fineness
     for _ in range(_COARSEN):
-        grading = Grading(lines, near, slope, _FAR * near, slender=slender, root_mm=job.near_mm, most=most)
+        grading = Grading(
+            lines, near, slope, _FAR * near, slender=slender, root_mm=job.near_mm, most=most
+        )
         try:
             mesh = cut(job.scene.gaps, grading, [float(k) for k in np.maximum(least, 2.0)])
         except TooManyPanelsError:
@@ -367,7 +359,7 @@ def _solved(job: _Job, mesh: Panels) -> _Raw:
     count = len(job.traces)
     response = _response(job, mesh, np.concatenate([sources, centres], axis=1))
     energy = sources.T @ response[:, : sources.shape[1]]
-    way, cut_off = _ways(energy, job.own_nh, rows, count, len(job.vias))
+    way, cut_off = share_out(energy, job.own_nh, rows, count, len(job.vias))
     full = energy.copy()
     full[count:, count:] += job.own_nh
     added_nh = way.T @ full @ way
@@ -404,7 +396,7 @@ def _lost(job: _Job) -> NDArray[np.bool_]:
     _, rows = _balances(job)
     count, bridges = len(job.traces), len(job.bridges)
     nothing = np.zeros((count + bridges,) * 2)
-    return _ways(nothing, np.eye(bridges), rows, count, len(job.vias))[1]
+    return share_out(nothing, np.eye(bridges), rows, count, len(job.vias))[1]
 
 
 def _nothing(job: _Job) -> _Raw:
@@ -461,47 +453,6 @@ def _cholesky_solve(matrix: Floats, right: Floats) -> Floats:
     return solved
 
 
-def _ways(
-    energy: Floats, own_nh: Floats, rows: Floats, count: int, vias: int
-) -> tuple[Floats, NDArray[np.bool_]]:
-    """Current in each source per ampere in each trace: what must balance does, the rest is least.
-
-    Returns the currents, shape (sources, traces), and which traces have no way back.
-    """
-    bridges = energy.shape[0] - count
-    balance = rows
-    if vias:
-        # the plane beyond keeps no current
-        onto = np.zeros((1, energy.shape[0]))
-        onto[0, -vias:] = 1.0
-        balance = np.concatenate([rows, onto])
-    need, can = -balance[:, :count], balance[:, count:]
-    forced = np.linalg.pinv(can) @ need if bridges and len(balance) else np.zeros((bridges, count))
-    short = (
-        np.abs(can @ forced - need).max(axis=0, initial=0.0) if len(balance) else np.zeros(count)
-    )
-    cut_off = short > 1e-6
-    currents = forced
-    free = _free(can, bridges)
-    if free.shape[1]:
-        inner = energy[count:, count:] + own_nh
-        pull = energy[count:, :count] + inner @ forced
-        currents = forced - free @ np.linalg.solve(free.T @ inner @ free, free.T @ pull)
-    way = np.concatenate([np.eye(count), currents])
-    way[:, cut_off] = 0.0
-    return way, cut_off
-
-
-def _free(can: Floats, bridges: int) -> Floats:
-    """Bridge currents that no balance forbids, as columns."""
-    if not bridges or not len(can):
-        return np.eye(bridges)
-    _, values, right = np.linalg.svd(can)
-    rank = int((values > 1e-9 * max(values.max(initial=0.0), 1e-300)).sum())
-    free: Floats = right[rank:].T
-    return free
-
-
 def _judged(job: _Job, fine: _Raw, coarse: _Raw) -> Solution:
     """Put an error on the fine solve and spread it over all traces that were asked for."""
     mesh_nh = np.abs(fine.added_nh - coarse.added_nh)
@@ -509,7 +460,9 @@ def _judged(job: _Job, fine: _Raw, coarse: _Raw) -> Solution:
     scale = np.sqrt(np.maximum(np.outer(own, own), 0.0))
     left = job.scene.left_out_nh[list(job.traces)]
     short = np.array([job.scene.cut_short_mm[k] for k in job.traces])
-    alone = left + _short_nh(short, job.near_mm / _NEAR) + 0.2 * np.abs(fine.filament_nh)
+    alone = (
+        _FLOOR_NH + left + _short_nh(short, job.near_mm / _NEAR) + 0.2 * np.abs(fine.filament_nh)
+    )
     error = mesh_nh + _METHOD_ERROR * scale + np.sqrt(np.outer(alone, alone))
     added_nh = np.zeros((job.count, job.count))
     error_nh = np.zeros_like(added_nh)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from functools import cache
+from itertools import pairwise
 
 import numpy as np
 import shapely
@@ -12,7 +13,8 @@ from shapely import LineString, Polygon
 from shapely.ops import split
 
 from splitcheck.loops.kernels import wall_source
-from splitcheck.loops.panels import Ints, Panels
+from splitcheck.loops.outlines import Ints
+from splitcheck.loops.panels import Panels
 from splitcheck.units import Floats
 
 _RAYS = 24
@@ -264,18 +266,23 @@ def _turns(gap: Polygon, cut: LineString, centres: Floats) -> Floats:
 def _steps(gap: Polygon, cut: LineString, pieces: Sequence[Polygon]) -> list[tuple[int, int]]:
     """Pairs of pieces that meet on the cut: right of it first, then left."""
     steps: list[tuple[int, int]] = []
-    stretches = zip(cut.coords[:-1], cut.coords[1:], strict=True)
-    for (x0, y0), (x1, y1) in stretches:
-        normal = np.array([y0 - y1, x1 - x0]) / np.hypot(x1 - x0, y1 - y0)
-        over = shapely.intersection(gap, LineString([(x0, y0), (x1, y1)]))
-        for part in shapely.get_parts(over):
-            if part.length == 0:
-                continue
-            middle = shapely.get_coordinates(part.interpolate(0.5, normalized=True))[0]
-            aside = min(1e-6, part.length / 100) * normal
-            right, left = (_piece_at(pieces, spot) for spot in (middle - aside, middle + aside))
-            if right != left:
-                steps.append((int(right), int(left)))
+    # cuts cross rims, so that rim points and bends part them into stretches in and out of the gap
+    met = shapely.get_coordinates(shapely.intersection(shapely.boundary(gap), cut))
+    places = {shapely.line_locate_point(cut, shapely.points(spot)) for spot in met}
+    bends = np.cumsum([0.0, *np.hypot(*np.diff(cut.coords, axis=0).T)])
+    stops = sorted({*(float(place) for place in places), *bends.tolist()})
+    for start, end in pairwise(stops):
+        if end - start < 1e-9:
+            continue
+        middle = np.array(cut.interpolate((start + end) / 2).coords[0])
+        if not shapely.contains_xy(gap, *middle):
+            continue
+        ahead = np.array(cut.interpolate(end).coords[0]) - middle
+        normal = np.array([-ahead[1], ahead[0]]) / np.hypot(*ahead)
+        aside = min(1e-6, (end - start) / 100) * normal
+        right, left = (_piece_at(pieces, spot) for spot in (middle - aside, middle + aside))
+        if right != left:
+            steps.append((right, left))
     return steps
 
 

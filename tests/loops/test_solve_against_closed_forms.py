@@ -8,9 +8,11 @@ import numpy as np
 import pytest
 from shapely import LineString, Point, Polygon, box
 
+from splitcheck.loops.cells import Grading
 from splitcheck.loops.matrix import interaction
-from splitcheck.loops.panels import Grading, cut
-from splitcheck.loops.solve import Strap, TraceOver, ViaBridge, _via_matrix, added
+from splitcheck.loops.panels import cut
+from splitcheck.loops.share import via_matrix
+from splitcheck.loops.solve import Strap, TraceOver, ViaBridge, added
 from splitcheck.units import MU0
 
 
@@ -64,7 +66,7 @@ def test_a_trace_along_the_edge_of_a_half_plane(inside: float) -> None:
 
 @pytest.mark.parametrize(("length", "width"), [(10.0, 0.5), (20.0, 1.0), (40.0, 1.0), (40.0, 2.0)])
 def test_a_long_slot_is_the_complement_of_a_dipole(length: float, width: float) -> None:
-    """pi mu0 D/8 / (ln(2D/g) - 1), by Booker's relation and the capacitance of a thin dipole.
+    """Pi mu0 D/8 / (ln(2D/g) - 1), by Booker's relation and the capacitance of a thin dipole.
 
     Booker, "Slot aerials and their relation to complementary wire aerials", J. IEE 93 IIIA (1946)
     (from memory). It holds to the first order in 1/ln(D/g) and for a trace close to the plane.
@@ -126,7 +128,7 @@ def test_a_near_plane_above_leaves_the_slot_its_share_alone() -> None:
 )
 def test_a_via_pair_between_planes_is_a_two_wire_line(apart: float, truth: float) -> None:
     """mu0 d/pi acosh(s/D) at d = 0.2, D = 0.3 mm: the inductance of a two-wire line."""
-    matrix = _via_matrix(np.array([[0.0, 0.0], [apart, 0.0]]), [0.3, 0.3], 0.2)
+    matrix = via_matrix(np.array([[0.0, 0.0], [apart, 0.0]]), [0.3, 0.3], 0.2)
     there_and_back = np.array([1.0, -1.0])
     assert there_and_back @ matrix @ there_and_back == pytest.approx(truth, rel=0.015)
 
