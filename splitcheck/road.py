@@ -5,10 +5,10 @@ from __future__ import annotations
 import multiprocessing
 import os
 import shutil
-from collections import Counter
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
-from dataclasses import dataclass, replace
+from contextlib import contextmanager
+from dataclasses import dataclass
 from pathlib import Path
 from time import perf_counter
 from typing import TypeAlias
@@ -23,8 +23,8 @@ from splitcheck.loops.routes import Terrain
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import Tracks, lay_all
-from splitcheck.verdict.judge import Scene, judge
 from splitcheck.verdict.findings import Count, Finding, Report
+from splitcheck.verdict.judge import Scene, judge
 from splitcheck.verdict.summary import Seen, summarise
 
 Progress: TypeAlias = Callable[[str, int, int], None]
@@ -75,23 +75,24 @@ def read(path: Path, options: Options, progress: Progress | None = None) -> Repo
 
 def _walk(path: Path, options: Options, progress: Progress | None, *, judged: bool) -> Report:
     clock = Clock(progress or (lambda stage, done, total: None))
-    export = load(path, options)
-    clock.passed("files")
-    layers = read_copper(export, options.jobs, clock)
-    clock.passed("copper")
-    assembled = build(export, layers, options)
-    clock.passed("board")
-    planes = find_planes(assembled.board)
-    tracks = lay_tracks(assembled, options)
-    clock.passed("planes")
+    with clock.stage("files"):
+        export = load(path, options)
+    with clock.stage("copper"):
+        layers = read_copper(export, options.jobs, clock)
+    with clock.stage("board"):
+        assembled = build(export, layers, options)
+    with clock.stage("planes"):
+        planes = find_planes(assembled.board)
+        tracks = lay_tracks(assembled, options)
     findings: tuple[Finding, ...] = ()
     counts: tuple[Count, ...] = ()
     if judged:
-        crossings, bare = cross(tracks, planes)
-        clock.passed("crossings")
-        scene = set_scene(assembled, planes, join_islands(assembled.board, planes), options)
-        findings, counts = judge(scene, crossings, bare)
-        clock.passed("loops")
+        with clock.stage("crossings"):
+            crossings, bare = cross(tracks, planes)
+        with clock.stage("loops"):
+            graph = join_islands(assembled.board, planes)
+            scene = set_scene(assembled, planes, graph, options)
+            findings, counts = judge(scene, crossings, bare)
     return summarise(Seen(export, assembled, planes, tracks), findings, counts, clock.seconds())
 
 
@@ -100,15 +101,16 @@ class Clock:
 
     def __init__(self, tell: Progress) -> None:
         self.tell = tell
-        self._last = perf_counter()
         self._stages: list[tuple[str, float]] = []
 
-    def passed(self, stage: str) -> None:
-        """Note that a stage is done."""
-        now = perf_counter()
-        self._stages.append((stage, now - self._last))
-        self._last = now
-        self.tell(stage, 1, 1)
+    @contextmanager
+    def stage(self, name: str) -> Iterator[None]:
+        """Time a stage and tell of it as it starts and ends."""
+        self.tell(name, 0, 1)
+        start = perf_counter()
+        yield
+        self._stages.append((name, perf_counter() - start))
+        self.tell(name, 1, 1)
 
     def seconds(self) -> tuple[tuple[str, float], ...]:
         """Stages with their seconds."""

@@ -8,6 +8,7 @@ from __future__ import annotations
 from math import pi
 
 import numpy as np
+import shapely
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
@@ -31,6 +32,12 @@ def on_grid(value_mm: float) -> float:
     0.3
     """
     return round(value_mm, 6)
+
+
+def segments(ends: Floats) -> NDArray[np.object_]:
+    """Straight lines from an array of shape (n, 2, 2); always an array, of shape (n,)."""
+    lines: NDArray[np.object_] = np.atleast_1d(np.asarray(shapely.linestrings(ends), dtype=object))
+    return lines
 
 
 def runs(ranked: NDArray[np.intp]) -> list[tuple[int, int]]:

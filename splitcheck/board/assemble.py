@@ -140,14 +140,11 @@ def find_outline(
         remarks.extend((*drawing.remarks, *found.remarks))
         if found.shape is not None:
             return found.shape, (), tuple(remarks)
-    return (
-        box.buffer(MARGIN_MM, join_style="mitre"),
-        (
-            f"No outline was found: the box of all copper, {MARGIN_MM} mm wider, stands for the "
-            "board; gaps that reach its edge depend on it.",
-        ),
-        tuple(remarks),
+    said = (
+        f"No outline was found: the box of all copper, {MARGIN_MM} mm wider, stands for the "
+        "board; gaps that reach its edge depend on it."
     )
+    return box.buffer(MARGIN_MM, join_style="mitre"), (said,), tuple(remarks)
 
 
 def _inside(
@@ -188,12 +185,14 @@ def _turn_negatives(
     board: Polygon | MultiPolygon,
     stack_file: tuple[str, Sequence[CopperEntry]] | None,
 ) -> tuple[tuple[CopperLayer, ...], tuple[str, ...]]:
-    """Turn negative images round, by the stack file, by what the files say, or by what they show."""
+    """Turn negative images round: by the stack file, what the files say, or what they show."""
     stated = {file.copper_number: file.negative for file in export.copper()}
     layers, said = [], []
     for number, found in enumerate(read, start=1):
         layer = found.layer
-        wanted = stack_file[1][number - 1].negative if _fits(stack_file, len(read)) else None
+        wanted = None
+        if stack_file is not None and len(stack_file[1]) == len(read):
+            wanted = stack_file[1][number - 1].negative
         if wanted is None:
             wanted = stated.get(number)
         if wanted is None and found.negative:
@@ -207,10 +206,6 @@ def _turn_negatives(
             )
         layers.append(turn_round(layer, board) if wanted else layer)
     return tuple(layers), tuple(said)
-
-
-def _fits(stack_file: tuple[str, Sequence[CopperEntry]] | None, count: int) -> bool:
-    return stack_file is not None and len(stack_file[1]) == count
 
 
 def _stack(
@@ -245,7 +240,8 @@ def _off_copper(holes: Sequence[PlatedHole]) -> tuple[str, ...]:
     good, count = _share_on_copper(holes)
     if not count or good >= LEAST_ON_COPPER * count:
         return ()
-    return (
+    said = (
         f"Only {good} of {count} plated holes land on copper of two layers: the drill file may "
-        "have another origin or belong to another board, and ways over other layers are missing.",
+        "have another origin or belong to another board, and ways over other layers are missing."
     )
+    return (said,)

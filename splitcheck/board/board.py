@@ -1,4 +1,4 @@
-"""The board: stack, copper, nets, plated holes and outline, all in the Gerber files' own x and y."""
+"""The board: stack, copper, nets, plated holes and outline, in the Gerber files' own x and y."""
 
 from __future__ import annotations
 

@@ -57,11 +57,13 @@ def read_drills(export: Export, layers: Sequence[CopperLayer], pads: Floats) -> 
             "copper at both outer ends were taken as plated."
         )
     unique = sorted(set(plated), key=lambda hole: (hole.path, hole.diameter_mm, hole.line))
+    remarks = [remark for file in files for remark in file.remarks]
+    assumed = [remark for remark in remarks if "assumed" in remark]
     return Drilling(
         tuple(_once(unique)),
         len(holes) - len(plated),
-        tuple(remark for file in files for remark in file.remarks),
-        tuple(assumptions),
+        tuple(remark for remark in remarks if remark not in assumed),
+        (*assumptions, *(f"{remark}." for remark in assumed)),
         tuple(f"{file.name}: {len(file.holes)} holes, {file.format}" for file in files),
     )
 
@@ -71,9 +73,7 @@ def _read_one(file: InputFile, pads: Floats, export: Export) -> DrillFile:
         found = drill.from_drawing(gerber.read(file.text, file.name))
     else:
         found = drill.read(file.text, file.name, pads=pads, tools=export.drill_tools() or None)
-    holes = tuple(
-        replace_hole(hole, file.plated, file.span) for hole in found.holes
-    )
+    holes = tuple(replace_hole(hole, file.plated, file.span) for hole in found.holes)
     return replace(found, holes=holes)
 
 
@@ -111,6 +111,4 @@ def _by_copper(holes: Sequence[Hole], layers: Sequence[CopperLayer]) -> list[Hol
         met = np.zeros(len(holes), dtype=bool)
         met[np.unique(tree.query(rings, predicate="intersects")[0])] = True
         touched &= met
-    return [
-        hole._replace(plated=bool(on)) for hole, on in zip(holes, touched, strict=True)
-    ]
+    return [hole._replace(plated=bool(on)) for hole, on in zip(holes, touched, strict=True)]

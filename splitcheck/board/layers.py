@@ -81,9 +81,7 @@ def _pads(drawing: Drawing) -> tuple[Pad, ...]:
         if key not in sizes:
             left, low, right, high = mark.shape.bounds
             sizes[key] = max(right - left, high - low)
-        pads.append(
-            Pad(mark.at, tag.net, tag.component, tag.pin, tag.function, sizes[key], True)
-        )
+        pads.append(Pad(mark.at, tag.net, tag.component, tag.pin, tag.function, sizes[key], True))
     return tuple(pads)
 
 
@@ -98,4 +96,7 @@ def pad_places(layers: tuple[CopperLayer, ...]) -> Floats:
 def copper_box(layers: tuple[CopperLayer, ...]) -> Polygon:
     """Bounding box of all copper."""
     boxes = np.array([piece.bounds for layer in layers for piece in layer.pieces])
-    return shapely.box(*boxes[:, :2].min(axis=0), *boxes[:, 2:].max(axis=0))
+    x0, y0 = boxes[:, :2].min(axis=0).tolist()
+    x1, y1 = boxes[:, 2:].max(axis=0).tolist()
+    box: Polygon = shapely.box(x0, y0, x1, y1)
+    return box

@@ -70,7 +70,10 @@ def _landed(
 ) -> list[tuple[int, str]]:
     """Pairs of part id and net name: surface points on their side, others on both outer layers."""
     first_of_last = sum(len(layer.pieces) for layer in layers[:-1])
-    sides = ((layers[0], 0, {0, 1}), (layers[-1], first_of_last, set()))
+    sides: tuple[tuple[CopperLayer, int, set[int]], ...] = (
+        (layers[0], 0, {0, 1}),
+        (layers[-1], first_of_last, set()),
+    )
     pairs = []
     for layer, first, accesses in sides:
         points = [

@@ -90,7 +90,9 @@ def _barrel(hole: Hole) -> shapely.Geometry:
     return path.buffer(max(hole.diameter_mm, 0.02) / 2, quad_segs=4)
 
 
-def _touches(barrels: np.ndarray[tuple[int], np.dtype[np.object_]], layer: CopperLayer) -> list[tuple[int, int]]:
+def _touches(
+    barrels: np.ndarray[tuple[int], np.dtype[np.object_]], layer: CopperLayer
+) -> list[tuple[int, int]]:
     """Pairs (barrel, piece) that touch, sorted."""
     if not len(barrels) or not layer.pieces:
         return []
@@ -149,7 +151,9 @@ def name_nets(
         ids = members[number]
         names = sorted({name for i in ids for name in (*parts[i].names, *also.get(i, ()))})
         if len(names) > 1:
-            listed = ", ".join(repr(name) for name in names[:4]) + (" ..." if len(names) > 4 else "")
+            listed = ", ".join(repr(name) for name in names[:4]) + (
+                " ..." if len(names) > 4 else ""
+            )
             x, y = _anchor(parts[ids[0]])
             remarks.append(
                 f"One piece of copper carries {len(names)} net names ({listed}), near "

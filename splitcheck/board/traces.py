@@ -68,7 +68,7 @@ def centre_lines(marks: Sequence[Mark], pieces: Sequence[Polygon]) -> tuple[Cent
     free = (inside & bare).sum(axis=1) * 2 > len(LOOK_AT)
     return tuple(
         CentreLine(strokes[i].points, strokes[i].width_mm, int(first_look[i]), strokes[i].line)
-        for i in np.flatnonzero(free & (first_look >= 0))
+        for i in np.flatnonzero(free & (first_look >= 0)).tolist()
     )
 
 
@@ -90,7 +90,7 @@ def _looks(strokes: Sequence[Stroke]) -> tuple[Floats, Floats, Floats]:
         step = ends[:, 1] - ends[:, 0]
         on[plain] = ends[:, None, 0] + fractions[None, :, None] * step[:, None, :]
         along[plain] = (step / np.hypot(step[:, 0], step[:, 1])[:, None])[:, None, :]
-    for i in np.flatnonzero(~plain):
+    for i in np.flatnonzero(~plain).tolist():
         on[i], along[i] = _looks_along(np.array(strokes[i].points))
     half = np.array([stroke.width_mm / 2 + BESIDE_MM for stroke in strokes])[:, None, None]
     aside = half * np.stack([-along[..., 1], along[..., 0]], axis=-1)
@@ -108,7 +108,9 @@ def _looks_along(points: Floats) -> tuple[Floats, Floats]:
     return starts[which] + along * (at - reached[which])[:, None], along
 
 
-def _piece_under(points: Floats, pieces: Sequence[Polygon]) -> np.ndarray[tuple[int, int], np.dtype[np.intp]]:
+def _piece_under(
+    points: Floats, pieces: Sequence[Polygon]
+) -> np.ndarray[tuple[int, int], np.dtype[np.intp]]:
     """Index of the piece under each point, -1 where there is none; shape of ``points[..., 0]``."""
     flat = points.reshape(-1, 2)
     found = locate(flat[:, 0], flat[:, 1], pieces)

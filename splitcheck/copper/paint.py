@@ -6,7 +6,7 @@ from collections.abc import Sequence
 
 import numpy as np
 import shapely
-from shapely import Polygon
+from shapely import MultiPolygon, Polygon
 
 from splitcheck.copper.coats import coats
 from splitcheck.copper.landing import landed, names
@@ -52,7 +52,7 @@ def paint(marks: Sequence[Mark]) -> tuple[Polygon, ...]:
     return _sorted(standing)
 
 
-def invert(pieces: Sequence[Polygon], outline: Polygon) -> tuple[Polygon, ...]:
+def invert(pieces: Sequence[Polygon], outline: Polygon | MultiPolygon) -> tuple[Polygon, ...]:
     """Copper of a negative layer: what its image leaves of the board.
 
     Parameters

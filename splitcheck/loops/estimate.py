@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from math import acosh, e, hypot, inf, log, log1p, pi, sqrt
 
 from splitcheck.units import MU0
@@ -107,7 +108,7 @@ def shielding(beyond_mm: float | None, gap_mm: float) -> float:
     ratio = beyond_mm / gap_mm
     if ratio <= SHIELD[0][0]:
         return SHIELD[0][1] * ratio / SHIELD[0][0]
-    for (x0, y0), (x1, y1) in zip(SHIELD, SHIELD[1:], strict=False):
+    for (x0, y0), (x1, y1) in pairwise(SHIELD):
         if ratio <= x1:
             return y0 + (y1 - y0) * log(ratio / x0) / log(x1 / x0)
     return 1.0 - (1.0 - SHIELD[-1][1]) * SHIELD[-1][0] / ratio

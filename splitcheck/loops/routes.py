@@ -5,6 +5,7 @@ from __future__ import annotations
 import heapq
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from itertools import pairwise
 from math import inf
 from typing import NamedTuple
 
@@ -19,7 +20,7 @@ from splitcheck.loops.bridges import IslandGraph, bridges_between
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane, box_size_mm
 from splitcheck.planes.tracks import Ints
-from splitcheck.units import Floats
+from splitcheck.units import Floats, segments
 
 #: Ways keep this far off the gaps they go round, mm, and farther where corners are very many.
 CLEAR_MM = (0.01, 0.05, 0.2, 0.8)
@@ -90,8 +91,9 @@ class Terrain:
         return shape
 
     def corners(self, gap: int, clear_mm: float) -> Floats:
-        """Places just off a gap's rim at which a taut way round it may bend, each with
-        the corners of the rim before and after it; shape (n, 3, 2).
+        """Places just off a gap's rim at which a taut way round it may bend; shape (n, 3, 2).
+
+        Each comes with the corners of the rim before and after it.
 
         The gap is widened by a little more than the rim is then thinned by: a way from corner to
         corner stays clear of it.
@@ -105,7 +107,7 @@ class Terrain:
 
     def blocked(self, starts: Floats, stops: Floats) -> NDArray[np.bool_]:
         """Whether straight legs, shape (n, 2) at either end, run into a gap larger than small."""
-        lines = shapely.linestrings(np.stack([starts, stops], axis=1))
+        lines = segments(np.stack([starts, stops], axis=1))
         return np.asarray(shapely.intersects(self.large_gaps(), lines), dtype=np.bool_)
 
     def large_gaps(self) -> MultiPolygon:
@@ -128,7 +130,7 @@ class Terrain:
 
 
 def _bends(shape: shapely.Geometry) -> Floats:
-    """Corners where a polygon bulges outward, with the corners before and after; shape (n, 3, 2)."""
+    """Corners where a polygon bulges outward, with those before and after; shape (n, 3, 2)."""
     corners = []
     for polygon in getattr(shape, "geoms", [shape]):
         for ring in [polygon.exterior, *polygon.interiors]:
@@ -188,9 +190,7 @@ def shortest(
     limit = 2 * straight + 2.0
     coarse = 0
     while True:
-        tried = _within(
-            terrain, start, goal, barrier, min(limit, widest), CLEAR_MM[coarse], first
-        )
+        tried = _within(terrain, start, goal, barrier, min(limit, widest), CLEAR_MM[coarse], first)
         if tried == "crowded":
             if coarse + 1 == len(CLEAR_MM):
                 return None
@@ -281,8 +281,7 @@ def _touches(here: Floats, there: Floats) -> NDArray[np.bool_]:
 def _free(
     here: Floats, there: Floats, blocks: Sequence[Polygon], barrier: LineString | None
 ) -> NDArray[np.bool_]:
-    pairs = np.stack([np.broadcast_to(here, there.shape), there], axis=1)
-    lines = shapely.linestrings(pairs)
+    lines = segments(np.stack([np.broadcast_to(here, there.shape), there], axis=1))
     free = np.ones(len(there), dtype=np.bool_)
     if barrier is not None:
         free &= ~shapely.intersects(barrier, lines)
@@ -345,7 +344,9 @@ def _add_own_ways(sides: dict[int, Way], crossing: Crossing, terrain: Terrain) -
     order = sorted((1, -1), key=lambda side: _rim_distance(crossing, terrain, side))
     for side in order:
         known = [way.length_mm for way in sides.values()]
-        longest = min([OTHER_SIDE * min(known, default=inf), sides[side].length_mm if side in sides else inf])
+        longest = min(
+            [OTHER_SIDE * min(known, default=inf), sides[side].length_mm if side in sides else inf]
+        )
         found = shortest(
             terrain,
             crossing.before,
@@ -472,9 +473,8 @@ class _Search:
         middle = (down[:, None, :] + up[None, :, :]) / 2
         left = (middle[..., 1] - y) * dx - (middle[..., 0] - x) * dy >= 0
         pairs = []
-        for side, mask in ((1, left), (-1, ~left)):
-            mask &= total < self.known.get(side, inf)
-            rows, columns = np.nonzero(mask)
+        for side, there in ((1, left), (-1, ~left)):
+            rows, columns = np.nonzero(there & (total < self.known.get(side, inf)))
             order = np.argsort(total[rows, columns], kind="stable")
             for start in range(0, len(order), FIRST_BRIDGES):
                 i = rows[order[start : start + FIRST_BRIDGES]]
@@ -495,7 +495,7 @@ def _chain(graph: IslandGraph, one: str, other: str, start: Point, goal: Point) 
     """A way over three or more bridges: island by island, the nearest bridge each time."""
     ids = nx.shortest_path(graph, one, other)
     at, length, path = np.asarray(start), 0.0, [start]
-    for here, there in zip(ids, ids[1:], strict=False):
+    for here, there in pairwise(ids):
         places = bridges_between(graph, here, there)
         far = np.hypot(*(places - at).T)
         nearest = int(np.argmin(far))

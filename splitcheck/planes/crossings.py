@@ -7,7 +7,8 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from difflib import get_close_matches
 from fnmatch import fnmatchcase
-from typing import NamedTuple
+from itertools import pairwise
+from typing import NamedTuple, TypeAlias
 
 import networkx as nx
 import numpy as np
@@ -77,6 +78,10 @@ class BareTrace:
     """Its straight stretches."""
 
 
+#: A node of the walk along a run: what kind of place, its piece or node, and where on the piece.
+Place: TypeAlias = tuple[str, int, float]
+
+
 class _Bit(NamedTuple):
     """A bare stretch of a piece together with what lies at its two ends."""
 
@@ -94,7 +99,7 @@ def middle(path: Sequence[Point]) -> Point:
     >>> middle([(0.0, 0.0), (4.0, 0.0)])
     (2.0, 0.0)
     """
-    steps = [float(np.hypot(b[0] - a[0], b[1] - a[1])) for a, b in zip(path, path[1:], strict=False)]
+    steps = [float(np.hypot(b[0] - a[0], b[1] - a[1])) for a, b in pairwise(path)]
     left = sum(steps) / 2
     for (x0, y0), (x1, y1), step in zip(path, path[1:], steps, strict=False):
         if left <= step and step > 0:
@@ -208,7 +213,7 @@ class _Rim(NamedTuple):
     at: Point
     on: Point
     """A point of the trace on copper beyond it."""
-    key: tuple[str, int, float]
+    key: Place
     """Its node in the walk graph."""
 
 
@@ -258,11 +263,9 @@ class _Ends:
         return rims
 
 
-def _crossing(
-    tracks: Tracks, plane: Plane, group: Sequence[_Bit], ends: _Ends
-) -> Crossing | None:
+def _crossing(tracks: Tracks, plane: Plane, group: Sequence[_Bit], ends: _Ends) -> Crossing | None:
     """Make a crossing of a group that starts and ends on the plane; else None."""
-    rims: dict[tuple[str, int, float], _Rim] = {}
+    rims: dict[Place, _Rim] = {}
     for bit in group:
         for rim in ends.of(bit):
             rims.setdefault(rim.key, rim)
@@ -294,9 +297,9 @@ def _crossing(
     )
 
 
-def _walk(tracks: Tracks, group: Sequence[_Bit]) -> nx.Graph[tuple[str, int, float]]:
+def _walk(tracks: Tracks, group: Sequence[_Bit]) -> nx.Graph[Place]:
     """The bits of a group as a graph of places, edges weighted by length in mm."""
-    graph: nx.Graph[tuple[str, int, float]] = nx.Graph()
+    graph: nx.Graph[Place] = nx.Graph()
     for bit in group:
         keys = []
         for at, end in ((bit.start, 0), (bit.stop, 1)):
@@ -314,14 +317,17 @@ def _walk(tracks: Tracks, group: Sequence[_Bit]) -> nx.Graph[tuple[str, int, flo
 
 
 def _farthest(
-    graph: nx.Graph[tuple[str, int, float]], rims: Sequence[tuple[str, int, float]]
-) -> tuple[tuple[str, int, float], tuple[str, int, float], list[tuple[str, int, float]], float] | None:
+    graph: nx.Graph[Place], rims: Sequence[Place]
+) -> tuple[Place, Place, list[Place], float] | None:
     """The two rims farthest apart along the run, with the way between them."""
     best = None
     for number, one in enumerate(rims[:8]):
         if one not in graph:
             continue
-        lengths, paths = nx.single_source_dijkstra(graph, one, weight="weight")
+        lengths: dict[Place, float]
+        paths: dict[Place, list[Place]]
+        # the stubs leave open whether a target was given
+        lengths, paths = nx.single_source_dijkstra(graph, one, weight="weight")  # type: ignore[assignment]
         for other in rims[number + 1 :]:
             if other in lengths and (best is None or lengths[other] > best[3]):
                 best = (one, other, paths[other], float(lengths[other]))
@@ -381,7 +387,9 @@ def judged_nets(
         return signals
     wanted: set[int] = set()
     for pattern in patterns:
-        matched = [net for net in board.nets if fnmatchcase(net.name, pattern)]
+        matched = [
+            net for net in board.nets if net.name == pattern or fnmatchcase(net.name, pattern)
+        ]
         if not matched:
             near = get_close_matches(pattern, sorted({net.name for net in board.nets}), 3, 0.5)
             raise SplitcheckError(

@@ -172,7 +172,9 @@ def _number(board: Board, layer: int, parts: list[Part]) -> tuple[Island, ...]:
 
 def _gaps(layer: int, islands: tuple[Island, ...], box: Polygon) -> tuple[Gap, ...]:
     """Turn islands inside out: holes become gaps, and islands inside a hole are holes of it."""
-    holes = [(ring, number) for number, island in enumerate(islands) for ring in island.shape.interiors]
+    holes = [
+        (ring, number) for number, island in enumerate(islands) for ring in island.shape.interiors
+    ]
     shapes = [Polygon(ring) for ring, _ in holes]
     within = _holes_holding(islands, shapes, [number for _, number in holes])
     inner: dict[int, list[shapely.LinearRing]] = defaultdict(list)

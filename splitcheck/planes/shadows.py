@@ -11,7 +11,7 @@ import shapely
 
 from splitcheck.planes.islands import Plane
 from splitcheck.planes.tracks import Tracks
-from splitcheck.units import Floats
+from splitcheck.units import Floats, segments
 
 #: Stretches of uncovered trace shorter than this are noise of the polygons, mm.
 LEAST_RUN_MM = 2e-3
@@ -52,7 +52,7 @@ def uncovered(tracks: Tracks, plane: Plane, pieces: Sequence[int]) -> Uncovered:
     which = np.asarray(pieces, dtype=np.intp)
     if not len(which) or not plane.tiles:
         return {}
-    lines = shapely.linestrings(np.stack([tracks.start[which], tracks.end[which]], axis=1))
+    lines = segments(np.stack([tracks.start[which], tracks.end[which]], axis=1))
     hits, tiles = plane.tiles_over(lines)
     shapes = np.array([plane.tiles[tile].shape for tile in tiles], dtype=object)
     overlaps = shapely.intersection(lines[hits], shapes)
@@ -113,9 +113,7 @@ def common(one: Sequence[Span], other: Sequence[Span]) -> list[Span]:
     >>> common([(0.0, 0.5)], [(0.25, 1.0)])
     [(0.25, 0.5)]
     """
-    return [
-        (max(a, c), min(b, d)) for a, b in one for c, d in other if min(b, d) > max(a, c)
-    ]
+    return [(max(a, c), min(b, d)) for a, b in one for c, d in other if min(b, d) > max(a, c)]
 
 
 def without(span: Span, taken: Sequence[Span]) -> list[Span]:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 import shapely
@@ -13,7 +14,7 @@ from numpy.typing import NDArray
 from splitcheck.board.board import Board
 from splitcheck.board.parts import CopperLayer
 from splitcheck.errors import SplitcheckError
-from splitcheck.units import Floats
+from splitcheck.units import Floats, segments
 
 #: Ends closer than this are one, mm.
 JOIN_MM = 1e-3
@@ -101,7 +102,7 @@ def _split_where_others_end(table: Floats) -> Floats:
     """Cut pieces where a piece of the same net ends in their middle (a T of two strokes)."""
     if len(table) < 2:
         return table
-    lines = shapely.linestrings(table[:, :4].reshape(-1, 2, 2))
+    lines = segments(table[:, :4].reshape(-1, 2, 2))
     ends = np.concatenate([table[:, 0:2], table[:, 2:4]])
     owner = np.concatenate([table[:, 5], table[:, 5]])
     points, hits = shapely.STRtree(lines).query(
@@ -123,7 +124,7 @@ def _split_where_others_end(table: Floats) -> Floats:
     for i, fractions in sorted(cuts.items()):
         x0, y0, x1, y1, *rest = table[i]
         marks = [0.0, *sorted(set(fractions)), 1.0]
-        for a, b in zip(marks, marks[1:], strict=False):
+        for a, b in pairwise(marks):
             if (b - a) * np.hypot(x1 - x0, y1 - y0) > JOIN_MM:
                 rows.append(
                     np.array(

@@ -95,8 +95,7 @@ def _with_shares(findings: Sequence[Finding]) -> list[Finding]:
         replace(
             finding,
             shares_gap_with=tuple(
-                GapShare(net, None)
-                for net in sorted(nets.get(finding.gap, set()) - {finding.net})
+                GapShare(net, None) for net in sorted(nets.get(finding.gap, set()) - {finding.net})
             ),
         )
         for finding in findings
@@ -200,9 +199,7 @@ def _share(scene: Scene, crossing: Crossing, other: int | None) -> float:
 def _beyond_mm(scene: Scene, crossing: Crossing) -> float | None:
     """Distance from the broken plane to a whole plane beyond it under this part of the gap."""
     xs, ys = _places_in_gap(scene, crossing)
-    layer = nearest_cover(
-        tuple(scene.planes.values()), _layers_beyond(scene, crossing), xs, ys
-    )
+    layer = nearest_cover(tuple(scene.planes.values()), _layers_beyond(scene, crossing), xs, ys)
     return None if layer is None else scene.board.stack.height_mm(crossing.plane, layer)
 
 
@@ -217,9 +214,7 @@ def _places_in_gap(
     reach = np.array([-2.0, -1.0, -0.5, 0.0, 0.5, 1.0, 2.0]) * max(crossing.run_mm, 1.0)
     xs = np.append(crossing.at[0] - dy / length * reach, [p[0] for p in crossing.path])
     ys = np.append(crossing.at[1] + dx / length * reach, [p[1] for p in crossing.path])
-    inside = shapely.contains_xy(gap, xs, ys) & shapely.contains_xy(
-        scene.board.outline, xs, ys
-    )
+    inside = shapely.contains_xy(gap, xs, ys) & shapely.contains_xy(scene.board.outline, xs, ys)
     if not inside.any():
         return np.array([crossing.at[0]]), np.array([crossing.at[1]])
     return xs[inside], ys[inside]
@@ -241,7 +236,14 @@ def _crossing_finding(scene: Scene, crossing: Crossing) -> Finding | str | None:
     added = None if value is None else value.added_nh
     noise = None if added is None else noise_mv(added, scene.drive)
     return _finding(
-        scene, crossing, route, kind, gap, value, noise, _reason(scene, crossing, route, kind, share, beyond)
+        scene,
+        crossing,
+        route,
+        kind,
+        gap,
+        value,
+        noise,
+        _reason(scene, crossing, route, kind, share, beyond),
     )
 
 
@@ -325,10 +327,7 @@ def _finding(
         corner_khz=None,
         stray_db=None,
         islands=(islands[0].id, islands[1].id),
-        bridges=tuple(
-            BridgeUse("via", (round(x, 4), round(y, 4)), best.bridge_net)
-            for x, y in (best.bridges if best else ())
-        ),
+        bridges=_bridges(best),
         gap=gap.id,
         shares_gap_with=(),
         pair=None,
@@ -336,6 +335,14 @@ def _finding(
         waived=None,
         fingerprint=_fingerprint(kind, net, layers[crossing.layer - 1].name, at),
         reason=reason,
+    )
+
+
+def _bridges(way: Way | None) -> tuple[BridgeUse, ...]:
+    if way is None:
+        return ()
+    return tuple(
+        BridgeUse("via", (round(x, 4), round(y, 4)), way.bridge_net) for x, y in way.bridges
     )
 
 
@@ -352,7 +359,10 @@ def _reason(
     one, other = (plane.islands[i] for i in crossing.islands)
     name = scene.board.stack.layers[crossing.plane - 1].name
     if kind == "split-crossing":
-        start = f"{name} is split here between {one.net_name} ({one.id}) and {other.net_name} ({other.id})"
+        start = (
+            f"{name} is split here between {one.net_name} ({one.id}) and "
+            f"{other.net_name} ({other.id})"
+        )
     else:
         start = f"{name} ({one.net_name}) is open for {crossing.run_mm:.2f} mm under the trace"
     return "; ".join([start, _way_in_words(scene, route, share), *_extras(share, beyond)])
@@ -410,7 +420,11 @@ def _bare_finding(scene: Scene, traces: Sequence[BareTrace]) -> Finding | None:
     net = scene.board.nets[longest.net].name
     layer = scene.board.stack.layers[longest.layer - 1].name
     at = (round(longest.at[0], 4), round(longest.at[1], 4))
-    where = "" if len(traces) == 1 else f" in {len(traces)} places, the longest {longest.bare_mm:.1f} mm"
+    where = (
+        ""
+        if len(traces) == 1
+        else f" in {len(traces)} places, the longest {longest.bare_mm:.1f} mm"
+    )
     return Finding(
         id="",
         kind="no-plane",

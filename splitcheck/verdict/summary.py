@@ -52,7 +52,11 @@ def summarise(
         board=board.name,
         size_mm=(round(x1 - x0, 4), round(y1 - y0, 4)),
         layers=_layers(board, seen.planes),
-        assumptions=(*seen.assembled.assumptions, _drive_sentence(DEFAULT_DRIVE)),
+        assumptions=(
+            *_no_plane(seen.planes),
+            *seen.assembled.assumptions,
+            _drive_sentence(DEFAULT_DRIVE),
+        ),
         remarks=seen.assembled.remarks,
         facts=(*_facts(board), *seen.assembled.facts),
         inputs=tuple(
@@ -73,6 +77,16 @@ def summarise(
         counts=(*_exempt(board), *counts),
         seconds=seconds,
     )
+
+
+def _no_plane(planes: Sequence[Plane]) -> tuple[str, ...]:
+    if planes:
+        return ()
+    sentence = (
+        "No layer has reference copper: no piece is both wide and large enough to be a plane, so "
+        "every trace counts as one without a plane."
+    )
+    return (sentence,)
 
 
 def _drive_sentence(drive: Drive) -> str:
@@ -96,9 +110,7 @@ def _layers(board: Board, planes: Sequence[Plane]) -> tuple[LayerRow, ...]:
         elif share < SIGNAL_SHARE:
             role = "signal"
         rows.append(
-            LayerRow(
-                layer.name, copper.file, layer.number, layer.top_mm, layer.copper_um, role
-            )
+            LayerRow(layer.name, copper.file, layer.number, layer.top_mm, layer.copper_um, role)
         )
     return tuple(rows)
 
