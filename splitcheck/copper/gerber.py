@@ -5,18 +5,14 @@ from __future__ import annotations
 import gc
 import re
 from collections.abc import Callable
-from itertools import pairwise
 
-import numpy as np
-
-from splitcheck.copper import curves
 from splitcheck.copper import gerber_language as language
 from splitcheck.copper.gerber_attributes import Attributes
 from splitcheck.copper.gerber_canvas import Canvas, check_corners
 from splitcheck.copper.gerber_image import WholeImage
 from splitcheck.copper.gerber_log import Log
 from splitcheck.copper.gerber_numbers import Numbers
-from splitcheck.copper.gerber_region import Region
+from splitcheck.copper.gerber_pen import Pen
 from splitcheck.copper.gerber_scan import (
     RUN,
     WORD,
@@ -26,11 +22,9 @@ from splitcheck.copper.gerber_scan import (
     run_numbers,
 )
 from splitcheck.copper.gerber_tools import Tools, block_code
-from splitcheck.copper.marks import Drawing, Flash, Point, Stroke
+from splitcheck.copper.marks import Drawing
 from splitcheck.units import INCH_MM
 
-#: A coordinate beyond this is a mistake of units or format, mm.
-MOST_MM = 2000.0
 _LINEAR, _CLOCKWISE = 1, 2
 
 
@@ -80,14 +74,10 @@ class _Reader:
         self.attributes = Attributes()
         self.tools = Tools(self.log, self.numbers, self.attributes)
         self.canvas = Canvas(name)
-        self.region = Region(self.log, self.attributes)
+        self.pen = Pen(self.log, self.tools, self.canvas, self.attributes)
         self.image = WholeImage(self.log, self.numbers)
         self.done = False
-        self.at: Point = (0.0, 0.0)
-        self.dark = True
         self.mode = _LINEAR
-        self.quadrant: bool | None = None
-        """True: single quadrant (G74), False: multi (G75), ``None``: not said."""
         self.operation: int | None = None
         """The last of D01, D02, D03, for old files that do not repeat it."""
 
@@ -119,7 +109,7 @@ class _Reader:
     def finish(self) -> None:
         if not self.done:
             self.log.remark("the file has no end command (M02); it may have been cut off")
-        self.region.check_ended()
+        self.pen.region.check_ended()
         opened = self.canvas.inside_block()
         if opened is not None:
             self.log.fail("a block aperture (AB) is never ended", line=opened)
@@ -152,31 +142,22 @@ class _Reader:
 
     def drawn_at_once(self, run: str) -> bool:
         """Draw a run of straight lines; False if it must go word by word."""
-        corners = self.region.corners
         digits = run_numbers(run)
+        newlines = run.count("\n")
         ends = run.count("*\n") + run.count("*\r\n")
-        if corners is None and not len(digits) - 1 == ends == run.count("\n"):
+        if self.pen.region.corners is None and not len(digits) - 1 == ends == newlines:
             # Strokes need their line each: one word a line, or nothing.
             return False
         found = self.numbers.points(digits)
-        if found is None or not np.abs(found).max() < MOST_MM:
+        if found is None:
             return False
-        points: list[Point] = [(x, y) for x, y in found.tolist()]
-        if corners is not None:
-            self.region.draw(self.at, points)
-            self.log.line += run.count("\n")
-        else:
-            for start, end in pairwise((self.at, *points)):
-                self.stroke((start, end))
-                self.log.line += 1
-            self.log.line -= 1
-        self.at = points[-1]
+        self.pen.lines_to([(x, y) for x, y in found.tolist()], newlines)
         self.operation = 1
         return True
 
     def each_word(self, text: str) -> None:
         """Carry out words one by one."""
-        log, region = self.log, self.region
+        log, pen = self.log, self.pen
         for blank, g, x, y, i, j, d, rest in WORD.findall(text):
             if blank:
                 log.line += blank.count("\n")
@@ -192,14 +173,12 @@ class _Reader:
                     self.g_code(int(g))
             if d == "1" or (not d and (x or y) and self.operation == 1):
                 self.operation = 1
-                end = self.place(x, y)
-                if self.mode != _LINEAR:
-                    self.arc(end, i, j)
-                elif not region.corners:
-                    self.line_to(end)
+                end = self.numbers.place(pen.at, x, y)
+                if self.mode == _LINEAR:
+                    pen.line_to(end)
                 else:
-                    region.corners.append(end)
-                self.at = end
+                    offset = self.numbers.offset(i, j)
+                    pen.arc_to(end, offset, clockwise=self.mode == _CLOCKWISE)
             elif d or x or y:
                 self.other_operation(x, y, d)
 
@@ -216,32 +195,11 @@ class _Reader:
             code = 2
         else:
             self.operation = code
-        self.at = self.place(x, y)
-        if self.region.corners is None:
-            if code == 3:
-                self.flash()
-        elif code == 3:
-            self.log.remark("a flash inside a region is left out")
+        end = self.numbers.place(self.pen.at, x, y)
+        if code == 3:
+            self.pen.flash_at(end)
         else:
-            self.canvas.marks += self.region.ended_contour(dark=self.dark)
-            self.region.move(self.at)
-
-    def place(self, x: str, y: str) -> Point:
-        """Where X and Y lead; what is missing stays as it is."""
-        to_x, to_y = self.numbers.converters()
-        at_x, at_y = self.at
-        if self.numbers.incremental:
-            at_x = round(at_x + to_x(x or "0"), 6)
-            at_y = round(at_y + to_y(y or "0"), 6)
-        else:
-            if x:
-                at_x = to_x(x)
-            if y:
-                at_y = to_y(y)
-        if not (-MOST_MM < at_x < MOST_MM and -MOST_MM < at_y < MOST_MM):
-            wrong = f"the coordinate ({at_x:g}, {at_y:g}) mm is beyond the limit of {MOST_MM:g} mm"
-            self.log.fail(wrong, "check the units and the number format (MO, FS) of the export")
-        return (at_x, at_y)
+            self.pen.move_to(end)
 
     def odd_word(self, known: tuple[str, ...], rest: str) -> None:
         """A word that is more than plain coordinates: comment, end, decimals, another order."""
@@ -278,9 +236,9 @@ class _Reader:
             self.log.remark(f"unknown word {word[:12]!r} is skipped")
 
     def ended(self, number: str) -> None:
-        if number.strip("0") in ("", "2"):
+        if number.lstrip("0") in ("", "2"):
             self.done = True
-        elif number.strip("0") != "1":
+        elif number.lstrip("0") != "1":
             self.log.remark(f"unknown code M{number[:12]}")
 
     def comment(self, text: str) -> None:
@@ -294,13 +252,13 @@ class _Reader:
         """A G code other than G01 to G03."""
         match number:
             case 36:
-                self.region.begin()
+                self.pen.region.begin()
             case 37:
-                self.end_region()
+                self.pen.end_region()
             case 70 | 71:
                 self.numbers.set_unit(INCH_MM if number == 70 else 1.0, f"G{number}")
             case 74 | 75:
-                self.quadrant = number == 74
+                self.pen.quadrant = number == 74
             case 90 | 91:
                 self.numbers.incremental = number == 91
             # G54 and G55 only announce the D code that follows; G00 is the old move.
@@ -308,77 +266,6 @@ class _Reader:
                 pass
             case _:
                 self.log.remark(f"unknown code G{number:02}")
-
-    # --------------------------------------------------------------------------------- operations
-
-    def line_to(self, end: Point) -> None:
-        if self.region.corners is None:
-            self.stroke((self.at, end))
-        else:
-            self.region.draw(self.at, (end,))
-
-    def stroke(self, points: tuple[Point, ...]) -> None:
-        tools = self.tools
-        brush = tools.brush or tools.take()
-        tag = tools.tag or tools.make_tag()
-        marks, line = self.canvas.marks, self.log.line
-        if brush.diameter_mm is not None:
-            marks.append(Stroke(points, brush.diameter_mm, None, self.dark, tag, line))
-        elif brush.block is not None:
-            self.log.remark("a line drawn with a block aperture is left out")
-        else:
-            for shape in brush.shapes:
-                marks.append(Stroke(points, brush.width_mm, shape, self.dark, tag, line))
-
-    def flash(self) -> None:
-        tools = self.tools
-        brush = tools.brush or tools.take()
-        tag = tools.tag or tools.make_tag()
-        at, dark, line = self.at, self.dark, self.log.line
-        if brush.block is not None:
-            self.canvas.set_down(brush.block, tools.setting, at, tag, line, dark=dark)
-            return
-        for shape in brush.shapes:
-            self.canvas.marks.append(Flash(at, shape, dark, tag, line, brush.diameter_mm))
-
-    def arc(self, end: Point, i: str, j: str) -> None:
-        to_x, to_y = self.numbers.converters()
-        start = self.at
-        offset = (to_x(i) if i else 0.0, to_y(j) if j else 0.0)
-        clockwise = self.mode == _CLOCKWISE
-        if not max(abs(offset[0]), abs(offset[1])) < 100 * MOST_MM:
-            self.log.fail("an arc has its centre beyond 200 m", "check the number format (FS)")
-        if offset == (0.0, 0.0):
-            self.log.remark("an arc without a centre is drawn straight")
-            points = [end]
-        elif self.single_quadrant(start, end, offset, clockwise=clockwise):
-            centre, fits = curves.quadrant_centre(start, end, offset, clockwise=clockwise)
-            if not fits:
-                self.log.remark("an arc of more than a quarter turn in single-quadrant mode (G74)")
-            # In this mode an arc between equal points has no length, and is no circle.
-            points = [end] if start == end else curves.arc(start, end, centre, clockwise=clockwise)
-        else:
-            centre = (start[0] + offset[0], start[1] + offset[1])
-            points = curves.arc(start, end, centre, clockwise=clockwise)
-        if self.region.corners is None:
-            self.stroke((start, *points))
-        else:
-            self.region.draw(start, points)
-
-    def single_quadrant(self, start: Point, end: Point, offset: Point, *, clockwise: bool) -> bool:
-        if self.quadrant is not None:
-            return self.quadrant
-        self.log.remark("arcs without G74 or G75; each is read the way that its centre fits")
-        if min(offset) < 0 or start == end:
-            return False
-        return curves.quadrant_centre(start, end, offset, clockwise=clockwise)[1]
-
-    def end_region(self) -> None:
-        if self.region.corners is None:
-            self.log.remark("an end of a region (G37) without its begin")
-            return
-        self.canvas.marks += self.region.ended_contour(dark=self.dark)
-        self.region.end()
 
     # -------------------------------------------------------------------------- extended commands
 
@@ -418,7 +305,7 @@ class _Reader:
         word = language.read_word(command, ("C", "D"))
         if word is None:
             self.log.unreadable(command)
-        self.dark = word == "D"
+        self.pen.dark = word == "D"
 
     def step_repeat(self, command: str) -> None:
         if self.canvas.repeating():

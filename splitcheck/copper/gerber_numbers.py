@@ -10,7 +10,11 @@ from numpy.typing import NDArray
 
 from splitcheck.copper import gerber_language as language
 from splitcheck.copper.gerber_log import Log
+from splitcheck.copper.marks import Point
 from splitcheck.units import Floats
+
+#: A coordinate beyond this is a mistake of units or format, mm.
+MOST_MM = 2000.0
 
 Convert: TypeAlias = Callable[[str], float]
 
@@ -68,8 +72,33 @@ class Numbers:
             )
         return self._convert
 
+    def place(self, at: Point, x: str, y: str) -> Point:
+        """Where X and Y lead; what is missing stays as it is."""
+        to_x, to_y = self.converters()
+        at_x, at_y = at
+        if self.incremental:
+            at_x = round(at_x + to_x(x or "0"), 6)
+            at_y = round(at_y + to_y(y or "0"), 6)
+        else:
+            if x:
+                at_x = to_x(x)
+            if y:
+                at_y = to_y(y)
+        if not (-MOST_MM < at_x < MOST_MM and -MOST_MM < at_y < MOST_MM):
+            wrong = f"the coordinate ({at_x:g}, {at_y:g}) mm is beyond the limit of {MOST_MM:g} mm"
+            self.log.fail(wrong, "check the units and the number format (MO, FS) of the export")
+        return (at_x, at_y)
+
+    def offset(self, i: str, j: str) -> Point:
+        """I and J, from the start of an arc to its centre, mm; what is missing is 0."""
+        to_x, to_y = self.converters()
+        offset = (to_x(i) if i else 0.0, to_y(j) if j else 0.0)
+        if not max(abs(offset[0]), abs(offset[1])) < 100 * MOST_MM:
+            self.log.fail("an arc has its centre beyond 200 m", "check the number format (FS)")
+        return offset
+
     def points(self, digits: NDArray[np.int64]) -> Floats | None:
-        """Many coordinates at once, shape (n, 2), mm; ``None`` where it takes one by one."""
+        """Many coordinates at once, shape (n, 2), mm; ``None`` where it must go one by one."""
         self.converters()
         assert self.format is not None
         assert self.unit_mm is not None
@@ -81,7 +110,7 @@ class Numbers:
         else:
             nm = (digits * round(self.unit_mm * 1_000_000) + divisor // 2) // divisor
             mm = nm / 1_000_000
-        return mm
+        return mm if np.abs(mm).max() < MOST_MM else None
 
     def digits(self, text: str, axis: str) -> str:
         """A coordinate with a decimal point, as the digits that the file's format would have."""
