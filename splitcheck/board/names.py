@@ -12,8 +12,9 @@ _SUPPLY = re.compile(
     r"[+\-]?(?:P|V|VCC|VDD)?_?\d+(?:[.,]\d+)?V\d*(?:[_\-./ ].*|[A-Z]{0,4})?"  # +3V3 1V8 5.0V 12V_IN
     r"|[+\-]?V\d+(?:[PV._]\d+)?(?:[_\-./].*)?"  # V3P3 V1.8 V5
     r"|(?:[A-Z]{0,3})?(?:VCC|VDD|VEE|VPP|VTT|AVCC|DVCC|AVDD|DVDD)[A-Z0-9]{0,6}(?:[_\-./+ ].*)?"
-    r"|V(?:IN|OUT|BAT|BATT|BUS|SYS|MAIN|USB|CORE|IO|MEM|PLL|REF|RTC|DRV|MOT|SUPPLY|PWR)\d*"
+    r"|\+?V(?:IN|OUT|BAT|BATT|BUS|SYS|MAIN|USB|CORE|IO|MEM|PLL|REF|RTC|DRV|MOT|SUPPLY|PWR)\d*"
     r"(?:[_\-./+ ].*)?"
+    r"|\+V[A-Z]\w{0,7}|[+\-]BATT?"
     r"|(?:PWR|POWER|VPOWER)(?:[_\-./ ]?\w{0,8})?"
     r")$"
 )

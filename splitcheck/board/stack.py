@@ -241,8 +241,9 @@ def default_build(names: Sequence[str], thickness_mm: float | None = None) -> St
         f"{total:.2f} mm was taken (dielectrics {spacing} mm from the top down, "
         f"35 um copper); heights set the nH, so give --stack FILE.toml to be sure."
     )
+    layers = _pile(names, [DEFAULT_COPPER_UM] * count, below, [DEFAULT_ER] * count)
     return Stack(
-        _pile(names, [DEFAULT_COPPER_UM] * count, below, [DEFAULT_ER] * count),
+        layers,
         "default build",
         (said,),
     )
