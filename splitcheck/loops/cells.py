@@ -252,7 +252,7 @@ class _Cells(NamedTuple):
 
     def take(self, which: NDArray[np.bool_] | Ints) -> _Cells:
         """Some of the cells."""
-        return _Cells(*(column[which] for column in self))
+        return _Cells(self.boxes[which], self.shapes[which], self.gap[which], self.slack[which])
 
 
 def _met(
@@ -301,7 +301,7 @@ def _division(ratio: float) -> int:
 def _swallows(
     boxes: Floats, wanted: Floats, gap: Ints, holes: Sequence[Floats]
 ) -> NDArray[np.bool_]:
-    """Which cells hold a whole hole that is not small, neither in them nor against what is wanted."""
+    """Which cells hold a whole hole that is not small, in them or against what is wanted."""
     swallowed = np.zeros(len(boxes), dtype=bool)
     for number in np.unique(gap):
         if len(hole := holes[int(number)]):

@@ -93,7 +93,7 @@ def plate_images(r: Floats, plate_mm: float) -> Floats:
     Examples
     --------
     >>> plate_images(np.array([0.0, 1.0, 10.0]), 0.5).round(4)
-    array([-0.2318, -0.9963, -4.7052])
+    array([-0.2319, -0.9963, -4.7052])
     """
     x = r / (2.0 * plate_mm)
     near = x < _TABLED

@@ -40,7 +40,7 @@ def _free(panels: Panels) -> Floats:
     dx *= dy
     dx *= 6 * (c[:, None] + c)
     bend += dx
-    matrix = 1.0 / np.sqrt(square)
+    matrix: Floats = 1.0 / np.sqrt(square)
     bend *= 0.5
     bend /= square
     bend /= square
@@ -100,7 +100,8 @@ def _self(panels: Panels) -> Floats:
     rough = _potential_at(panels, own, own)
     # four points read the mean of a rectangle's own potential a little high: take that out
     a, b = panels.sides.T
-    return rough * rectangle_self(a, b) / _four_points(a, b)
+    own_mean: Floats = rough * rectangle_self(a, b) / _four_points(a, b)
+    return own_mean
 
 
 def _four_points(a: Floats, b: Floats) -> Floats:
@@ -111,7 +112,8 @@ def _four_points(a: Floats, b: Floats) -> Floats:
     )
     x = (0.5 - 0.5 / np.sqrt(3.0)) * a
     y = (0.5 - 0.5 / np.sqrt(3.0)) * b
-    return outline_potential(x[:, None], y[:, None], edges)[:, 0] / (a * b)
+    mean: Floats = outline_potential(x[:, None], y[:, None], edges)[:, 0] / (a * b)
+    return mean
 
 
 def _images(panels: Panels, plates_mm: Sequence[float]) -> Floats:
@@ -141,7 +143,7 @@ def _own_images(panels: Panels, plate: float) -> Floats:
     nodes, weights = leggauss(6)
     u, w = (nodes + 1) / 2, weights / 2
     a, b = panels.sides.T
-    total = np.zeros(len(a))
+    total: Floats = np.zeros(len(a))
     for ui, wi in zip(u, w, strict=True):
         for vi, wv in zip(u, w, strict=True):
             weight = 4 * wi * wv * (1 - ui) * (1 - vi)

@@ -19,6 +19,7 @@ def padded(outline: Floats, widest: int) -> Floats:
 
 
 def box_edges(boxes: Floats) -> Floats:
+    """Edges of boxes, given as west, south, east, north, shape (n, 4); result (n, 4, 4)."""
     west, south, east, north = boxes.T
     corners = np.stack([west, south, east, south, east, north, west, north], axis=1).reshape(
         -1, 4, 2

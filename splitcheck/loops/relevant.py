@@ -9,7 +9,7 @@ import networkx as nx
 import numpy as np
 import shapely
 from numpy.typing import NDArray
-from shapely import LineString, Polygon
+from shapely import LineString, Point, Polygon
 from shapely.ops import substring
 
 from splitcheck.units import MU0, Floats
@@ -121,7 +121,7 @@ def _with_outside(
     west, south, east, north = outside.bounds
     reach = min(_REACH * max(east - west, north - south), reach_mm)
     frame = shapely.box(west - reach, south - reach, east + reach, north + reach)
-    shell = shapely.polygons(shapely.get_exterior_ring(shapes)) if len(shapes) else shapes
+    shell = np.array([Polygon(shape.exterior) for shape in shapes], dtype=object)
     around = shapely.contains_properly(shell, outside.exterior)
     if around.any():
         # a gap that already runs round the whole board only has to reach further
@@ -165,12 +165,10 @@ def _plainer(gap: Polygon, tolerance_mm: float) -> Polygon:
     if len(gap.exterior.coords) < 9 and not gap.interiors:
         return gap
     plain = gap.simplify(tolerance_mm)
-    fit = isinstance(plain, Polygon) and plain.is_valid and not plain.is_empty
-    return shapely.orient_polygons(plain) if fit and _same_holes(plain, gap) else gap
-
-
-def _same_holes(plain: Polygon, gap: Polygon) -> bool:
-    return len(plain.interiors) == len(gap.interiors)
+    if not isinstance(plain, Polygon) or plain.is_empty or not plain.is_valid:
+        return gap
+    same = len(plain.interiors) == len(gap.interiors)
+    return shapely.orient_polygons(plain) if same else gap
 
 
 def _on_copper(line: LineString, gaps: Sequence[Polygon]) -> tuple[LineString | None, float]:
@@ -191,7 +189,9 @@ def _on_copper(line: LineString, gaps: Sequence[Polygon]) -> tuple[LineString | 
             if not beyond:
                 return None, whole
             step = min(beyond)
-            line = substring(line, 0 if at_end else step, line.length - (step if at_end else 0))
+            rest = substring(line, 0 if at_end else step, line.length - (step if at_end else 0))
+            assert isinstance(rest, LineString)
+            line = rest
     short = whole - line.length
     return line, (short if short > 1e-6 else 0.0)
 
@@ -205,7 +205,7 @@ def _clear(line: LineString, along: float, gap: Polygon, *, at_end: bool) -> boo
 
 def _rim_points(line: LineString, gap: Polygon) -> NDArray[np.object_]:
     met = line.intersection(gap.boundary)
-    return shapely.points(shapely.get_coordinates(met))
+    return np.array([Point(spot) for spot in shapely.get_coordinates(met)], dtype=object)
 
 
 def _chosen(
@@ -235,7 +235,7 @@ def _chosen(
         close = np.zeros(len(others), dtype=bool)
         maybe = np.flatnonzero(alone > _NEGLIGIBLE_NH / 50)
         shapely.prepare(around)
-        close[maybe] = shapely.dwithin(around, shapes[others[maybe]], 2.5 * size[maybe])
+        close[maybe] = shapely.distance(around, shapes[others[maybe]]) < 2.5 * size[maybe]
     wanted = others[(alone > _NEGLIGIBLE_NH) | close]
     weight = alone[(alone > _NEGLIGIBLE_NH) | close]
     order = np.argsort(-weight, kind="stable")[:_MOST_GAPS]

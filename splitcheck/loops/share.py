@@ -1,4 +1,4 @@
-"""Energies in, currents of the bridges out: what must balance does, the rest flows as it costs least."""
+"""Energies in, currents of the bridges out: balanced where they must be, else the cheapest."""
 
 from __future__ import annotations
 

@@ -44,6 +44,8 @@ _SLENDER = 12.0
 _METHOD_ERROR = 0.03
 #: Less than this is not told from nothing.
 _FLOOR_NH = 1e-3
+#: How much of the difference between an evenly filled strip and a thread of current is in doubt.
+_WIDTH_ERROR = 0.2
 
 
 @dataclass(frozen=True, slots=True)
@@ -212,8 +214,9 @@ def _check(
     if above_mm is not None and above_mm <= height_mm:
         wrong = f"the plane above lies at {above_mm} mm, not above the trace at {height_mm} mm"
         raise SplitcheckError("above_mm", wrong, "give the distance between the two planes")
-    straps = [bridge for bridge in bridges if isinstance(bridge, Strap)]
-    for strip in (*traces, *straps):
+    strips: list[TraceOver | Strap] = [*traces]
+    strips += [bridge for bridge in bridges if isinstance(bridge, Strap)]
+    for strip in strips:
         if not (isfinite(strip.line.length) and strip.line.length > 0):
             raise SplitcheckError(
                 "line", "a trace or part has no length", "give two points or more"
@@ -446,11 +449,24 @@ def _response(job: _Job, mesh: Panels, sources: Floats) -> Floats:
 
 
 def _cholesky_solve(matrix: Floats, right: Floats) -> Floats:
+    """Solve for all right sides with one factor.
+
+    The matrix is positive definite but for what the averages over intricate panels miss; if that
+    shows, the panels' own terms are raised a little, which the coarser solve will not agree with.
+    """
     from scipy.linalg import cho_factor, cho_solve  # noqa: PLC0415 (0.25 s, only where needed)
 
-    factor = cho_factor(matrix, lower=True, overwrite_a=True, check_finite=False)
-    solved: Floats = cho_solve(factor, right, check_finite=False)
-    return solved
+    own = np.diag(matrix).copy()
+    for raised in (0.0, 0.01, 0.03, 0.1, 0.3, 1.0, 10.0):
+        np.fill_diagonal(matrix, own * (1 + raised))
+        try:
+            factor = cho_factor(matrix, lower=True, check_finite=False)
+        except np.linalg.LinAlgError:
+            continue
+        solved: Floats = cho_solve(factor, right, check_finite=False)
+        return solved
+    message = "a field matrix could not be made positive definite"
+    raise ArithmeticError(message)
 
 
 def _judged(job: _Job, fine: _Raw, coarse: _Raw) -> Solution:
@@ -460,9 +476,8 @@ def _judged(job: _Job, fine: _Raw, coarse: _Raw) -> Solution:
     scale = np.sqrt(np.maximum(np.outer(own, own), 0.0))
     left = job.scene.left_out_nh[list(job.traces)]
     short = np.array([job.scene.cut_short_mm[k] for k in job.traces])
-    alone = (
-        _FLOOR_NH + left + _short_nh(short, job.near_mm / _NEAR) + 0.2 * np.abs(fine.filament_nh)
-    )
+    alone = _FLOOR_NH + left + _short_nh(short, job.near_mm / _NEAR)
+    alone = alone + _WIDTH_ERROR * np.abs(fine.filament_nh)
     error = mesh_nh + _METHOD_ERROR * scale + np.sqrt(np.outer(alone, alone))
     added_nh = np.zeros((job.count, job.count))
     error_nh = np.zeros_like(added_nh)

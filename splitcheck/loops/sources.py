@@ -241,7 +241,7 @@ def _clearest_ray(gap: Polygon, at: Floats) -> tuple[LineString | None, float]:
     ends = at + far * np.stack([np.cos(directions), np.sin(directions)], axis=1)
     if not shapely.intersects(gap, LineString([at, ends[0]])):
         return None, float(directions[0])
-    rays = shapely.linestrings(np.stack([np.broadcast_to(at, ends.shape), ends], axis=1))
+    rays = np.array([LineString([at, end]) for end in ends], dtype=object)
     free = np.flatnonzero(~shapely.intersects(gap, rays))
     if len(free):
         return None, float(directions[free[0]])
@@ -252,7 +252,8 @@ def _clearest_ray(gap: Polygon, at: Floats) -> tuple[LineString | None, float]:
 
 def _turns(gap: Polygon, cut: LineString, centres: Floats) -> Floats:
     """Whole turns to add on each side of a cut, where the angle falls by one to its left."""
-    pieces = sorted(split(gap, cut).geoms, key=lambda piece: -piece.area)
+    parts = [part for part in split(gap, cut).geoms if isinstance(part, Polygon)]
+    pieces = sorted(parts, key=lambda piece: -piece.area)
     if len(pieces) < 2:
         return np.zeros(len(centres))
     number = _walked(len(pieces), _steps(gap, cut, pieces))

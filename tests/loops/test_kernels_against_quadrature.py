@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 import pytest
 from hypothesis import given
@@ -19,6 +21,7 @@ def outline(*corners: tuple[float, float]) -> Floats:
 
 
 def potential(x: float, y: float, edges: Floats) -> float:
+    """Potential at one point."""
     return float(outline_potential(np.array([[float(x)]]), np.array([[float(y)]]), edges)[0, 0])
 
 
@@ -44,7 +47,7 @@ def test_potential_inside_is_the_integral_in_polar_coordinates(x: float, y: floa
 
     corners = sorted(np.arctan2(v - y, u - x) for u, v in ((0, 0), (3, 0), (3, 1), (0, 1)))
     rounds = [*corners, corners[0] + 2 * np.pi]
-    truth = sum(quad(reach, a, b)[0] for a, b in zip(rounds[:-1], rounds[1:], strict=True))
+    truth = sum(quad(reach, a, b)[0] for a, b in pairwise(rounds))
     assert potential(x, y, RECTANGLE) == pytest.approx(truth, rel=1e-7)
 
 
@@ -102,7 +105,8 @@ def test_image_series_is_the_sum(plate: float) -> None:
 def source(y: Floats, height: float, above: float | None) -> Floats:
     """Source function of a trace along x from far to far, at places across it."""
     segments = np.array([[-4000.0, 0.0, 4000.0, 0.0]])
-    return wall_source(np.zeros_like(y), y, segments, height, above)[0].sum(axis=1)
+    total: Floats = wall_source(np.zeros_like(y), y, segments, height, above)[0].sum(axis=1)
+    return total
 
 
 def test_source_over_one_plane_is_the_arc_tangent() -> None:
@@ -129,7 +133,7 @@ def test_source_between_planes_has_the_density_of_a_stripline(
 
 @pytest.mark.parametrize("above", [None, 0.5])
 def test_source_less_the_angle_is_smooth_across_the_trace(above: float | None) -> None:
-    """The jump of f is the share of this plane, that of the angle 2 pi, at one and the same line."""
+    """The jump of f is the share of this plane, that of the angle 2 pi, on the same line."""
     share = 1.0 if above is None else 1.0 - 0.2 / 0.5
     segments = np.array([[-3.0, 0.0, 0.0, 0.0], [0.0, 0.0, 2.0, 2.0]])
     spots = np.array([[-1.0, -1e-9], [-1.0, 0.0], [-1.0, 1e-9]])

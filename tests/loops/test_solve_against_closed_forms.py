@@ -17,14 +17,17 @@ from splitcheck.units import MU0
 
 
 def trace(half_mm: float = 25.0, y_mm: float = 0.0, width_mm: float = 0.2) -> TraceOver:
+    """A trace along x."""
     return TraceOver(LineString([(-half_mm, y_mm), (half_mm, y_mm)]), width_mm)
 
 
 def slot(length_mm: float, width_mm: float) -> Polygon:
+    """A slot across x, centred."""
     return box(-width_mm / 2, -length_mm / 2, width_mm / 2, length_mm / 2)
 
 
 def value(*args: object, **kwargs: object) -> float:
+    """What the first trace gains."""
     found = added(*args, **kwargs).of(0)  # type: ignore[arg-type]  # passed through
     assert found is not None
     return found

@@ -20,11 +20,13 @@ FOLDER = Path(__file__).parent
 
 
 def rows(name: str) -> list[dict[str, str]]:
+    """Rows of a table."""
     with (FOLDER / name).open(encoding="utf-8", newline="") as file:
         return list(csv.DictReader(file))
 
 
 def gaps_of(row: dict[str, str]) -> list[Polygon]:
+    """The gaps of a row."""
     return [part for part in shapely.get_parts(wkt.loads(row["gaps"])) if part.area > 0]
 
 

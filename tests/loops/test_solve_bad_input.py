@@ -120,7 +120,7 @@ def test_a_gap_as_large_as_the_board_cuts_the_trace_off() -> None:
 
 def test_only_the_trace_that_enters_an_island_is_cut_off() -> None:
     """A moat round an island; one trace ends on it, the other passes over it."""
-    moat = box(-4, -4, 4, 4) - box(-3, -3, 3, 3)
+    moat = Polygon(box(-4, -4, 4, 4).exterior, [box(-3, -3, 3, 3).exterior])
     onto = TraceOver(LineString([(-20, 1), (0, 1)]), 0.2)
     solution = added([moat], [onto, TRACE], 0.2)
     assert solution.cut_off == (True, False)

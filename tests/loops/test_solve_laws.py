@@ -28,7 +28,8 @@ def gaps(draw: st.DrawFn) -> Polygon:
     elif kind == "void":
         shape = Point(0, 0).buffer(long / 3)
     else:
-        shape = Point(0, long / 2).buffer(long / 3 + wide) - Point(0, long / 2).buffer(long / 3)
+        at = Point(0, long / 2)
+        shape = Polygon(at.buffer(long / 3 + wide).exterior, [at.buffer(long / 3).exterior])
     turned = rotate(shape, draw(st.floats(-60, 60)), origin=(0, 0))
     return translate(turned, 0, draw(st.floats(-long / 4, long / 4)))
 
@@ -37,6 +38,7 @@ heights = st.floats(0.1, 1.0)
 
 
 def across(y: float = 0.0, width: float = 0.3, half: float = 25.0) -> TraceOver:
+    """A trace along x."""
     return TraceOver(LineString([(-half, y), (half, y)]), width)
 
 
@@ -48,6 +50,7 @@ def pair(solution: Solution) -> tuple[float, float]:
 
 
 def same(first: Solution, second: Solution) -> bool:
+    """Whether two solutions agree within their errors."""
     (a, da), (b, db) = pair(first), pair(second)
     return abs(a - b) <= (da + db) / 2 + 1e-4
 
@@ -97,8 +100,8 @@ def test_a_larger_gap_never_adds_less(gap: Polygon, height: float, more: float) 
     holes = [Polygon(ring) for ring in gap.interiors]
     larger = Polygon(gap.buffer(more).exterior)
     for hole in holes:
-        larger = larger.difference(hole.buffer(-more))
-    assert isinstance(larger, Polygon)
+        smaller = hole.buffer(-more)
+        larger = Polygon(larger.exterior, [smaller.exterior] if smaller.area else [])
     (a, da), (b, db) = (
         pair(added([gap], [across()], height)),
         pair(added([larger], [across()], height)),
