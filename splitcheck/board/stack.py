@@ -236,17 +236,13 @@ def default_build(names: Sequence[str], thickness_mm: float | None = None) -> St
     else:
         below = [*[dielectric / max(count - 1, 1)] * (count - 1), 0.0]
     spacing = ", ".join(f"{height_mm:.2f}" for height_mm in below[:-1])
+    layers = _pile(names, [DEFAULT_COPPER_UM] * count, below, [DEFAULT_ER] * count)
     said = (
         f"The export states no layer spacing: a usual build of {count} layers and "
-        f"{total:.2f} mm was taken (dielectrics {spacing} mm from the top down, "
+        f"{layers[-1].bottom_mm:.2f} mm was taken (dielectrics {spacing} mm from the top down, "
         f"35 um copper); heights set the nH, so give --stack FILE.toml to be sure."
     )
-    layers = _pile(names, [DEFAULT_COPPER_UM] * count, below, [DEFAULT_ER] * count)
-    return Stack(
-        layers,
-        "default build",
-        (said,),
-    )
+    return Stack(layers, "default build", (said,))
 
 
 def _pile(

@@ -19,7 +19,7 @@ def _names(count: int) -> list[str]:
 
 @given(st.integers(2, 29))
 def test_default_build_adds_up_to_a_board_of_1_6_mm(count: int) -> None:
-    """Copper and dielectrics fill the usual thickness while they fit (common practice, no source)."""
+    """While they fit, all layers make the usual thickness (common practice, no source)."""
     stack = default_build(_names(count))
     assert stack.layers[0].top_mm == 0.0
     assert stack.layers[-1].bottom_mm == pytest.approx(1.6, abs=1e-5)
