@@ -50,7 +50,9 @@ def outlines_to_unite(marks: Sequence[Mark]) -> Shapes:
     areas = outlines(fills)
     bare = np.ones(len(fills), dtype=bool)
     grown: list[BaseGeometry] = []
-    number_of = {_path(fill.ring): number for number, fill in enumerate(fills)}
+    number_of = {
+        _path(fill.ring): number for number, fill in enumerate(fills) if not areas[number].is_empty
+    }
     pieces: dict[float, list[Path]] = defaultdict(list)
     for width, path in runs:
         number = number_of.get(path)

@@ -537,6 +537,50 @@ class TestSyntax:
             "it.gbr:6: unknown word 'HELLO' is skipped",
         )
 
+    @pytest.mark.parametrize(
+        ("body", "marks", "remark"),
+        [
+            ("X0Y0*D10*X0Y0D03*", 1, "coordinates before any D01, D02 or D03 are taken as a move"),
+            ("D10*X5Y5D11*X0Y0D03*", 1, "coordinates together with an aperture code are left out"),
+            ("G37*D10*X0Y0D03*", 1, "an end of a region (G37) without its begin"),
+            ("%AB*%D10*X0Y0D03*", 1, "an end of a block aperture (AB) without its begin"),
+            ("G36*X0Y0D02*X0Y0D03*G37*", 0, "a flash inside a region is left out"),
+            (
+                "G36*X0Y0D02*X9D01*X0D01*G37*",
+                0,
+                "a contour of fewer than three corners is left out",
+            ),
+            ("D10*X0Y0D02*G02*X9Y9D01*", 1, "an arc without a centre is drawn straight"),
+            (
+                "G74*D10*X1000Y0D02*G03*X-1000Y0I1000J0D01*",
+                1,
+                "an arc of more than a quarter turn in single-quadrant mode (G74)",
+            ),
+            (
+                "%ABD20*%%AB*%D20*X0Y0D02*X9D01*",
+                0,
+                "a line drawn with a block aperture is left out",
+            ),
+            ("M99*D10*X0Y0D03*", 1, "unknown code M99"),
+            ("LPC*D10*X0Y0D03*", 1, "command 'LP' stands outside of percent signs"),
+            ("D10*X0Y0D03%LPC*%*X1D03*", 2, "a word without its star before a percent sign"),
+            ("G71*G70*D10*X0Y0D03*", 1, "units change to inch (G70)"),
+            ("%TO*%D10*X0Y0D03*", 1, "an attribute without a name"),
+        ],
+    )
+    def test_what_is_odd_is_read_and_told(self, body: str, marks: int, remark: str) -> None:
+        """Each with its line; nothing else is said."""
+        drawing = read(body)
+        assert len(drawing.marks) == marks
+        assert drawing.remarks == (f"it.gbr:2: {remark}",)
+
+    def test_old_forms_are_read_without_a_word(self) -> None:
+        """Sequence numbers, several G codes in a word, parts of SR left out, G55 and G00."""
+        body = "N10G01G75X0Y0D02*N20G54D10*G55X0Y0D03*G00X5Y5D02*%SRX2I5*%X0Y0D03*%SR*%"
+        drawing = read(body)
+        assert [m.at for m in drawing.marks if isinstance(m, Flash)] == [(0, 0), (0, 0), (5, 0)]
+        assert drawing.remarks == ()
+
     def test_byte_order_mark_is_skipped(self) -> None:
         """However it was decoded."""
         for mark in ("\ufeff", "\xef\xbb\xbf"):

