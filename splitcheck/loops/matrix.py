@@ -147,5 +147,6 @@ def _own_images(panels: Panels, plate: float) -> Floats:
     for ui, wi in zip(u, w, strict=True):
         for vi, wv in zip(u, w, strict=True):
             weight = 4 * wi * wv * (1 - ui) * (1 - vi)
-            total += weight * plate_images(np.hypot(a * ui, b * vi), plate)
-    return total
+            total = total + weight * plate_images(np.hypot(a * ui, b * vi), plate)
+    mean: Floats = total
+    return mean

@@ -17,7 +17,7 @@ from splitcheck.loops.matrix import interaction
 from splitcheck.loops.panels import Panels, cut
 from splitcheck.loops.relevant import Scene, arrange
 from splitcheck.loops.share import share_out, via_matrix
-from splitcheck.loops.sources import islands, point_angles, strip_source
+from splitcheck.loops.sources import Strip, islands, point_angles, strip_sources
 from splitcheck.units import MU0, Floats
 
 #: Size of a panel at the trace, in heights of the trace over the plane.
@@ -25,6 +25,8 @@ _NEAR = 0.6
 _SLOPE = 0.4
 #: From this many panel sizes on they grow faster than in proportion to the distance.
 _FAR = 25.0
+#: Panels are this much larger where more than a few traces ask for small ones.
+_FEW_TRACES, _BUS = 6, 1.5
 #: The check solve is coarser by this; its distance from the fine one is part of the error.
 _COARSER = 2.0
 #: Where the two differ by more than this and the method's own error, the panels are halved again,
@@ -227,16 +229,6 @@ def _check(
 
 
 @dataclass(frozen=True, slots=True)
-class _Strip:
-    """A trace or a strap that has both ends over copper."""
-
-    line: Floats
-    width_mm: float
-    height_mm: float
-    above_mm: float | None
-
-
-@dataclass(frozen=True, slots=True)
 class _Job:
     """What is solved, twice: on fine and on coarse panels."""
 
@@ -245,7 +237,7 @@ class _Job:
     """Number of traces."""
     traces: tuple[int, ...]
     """Those of them that lie over copper at both ends."""
-    strips: tuple[_Strip, ...]
+    strips: tuple[Strip, ...]
     """These traces, then the straps."""
     vias: Floats
     """Places of the vias that count, shape (v, 2)."""
@@ -255,6 +247,7 @@ class _Job:
     own_nh: Floats
     """Inductance matrix of the bridges over a whole plane."""
     plates_mm: tuple[float, ...]
+    height_mm: float
     near_mm: float
     remarks: tuple[str, ...]
 
@@ -269,12 +262,12 @@ def _job(
 ) -> _Job:
     """Sort out which traces and bridges count."""
     remarks: list[str] = []
-    strips: list[_Strip] = []
+    strips: list[Strip] = []
     on = [k for k, line in enumerate(scene.lines) if line is not None]
     for k in on:
         line = scene.lines[k]
         assert line is not None
-        strips.append(_Strip(line, traces[k].width_mm, height_mm, above_mm))
+        strips.append(Strip(line, traces[k].width_mm, height_mm, above_mm))
     straps, vias = [], []
     for k, bridge in enumerate(bridges):
         ends = bridge.at if isinstance(bridge, ViaBridge) else bridge.line.boundary
@@ -290,7 +283,7 @@ def _job(
         strap = bridges[k]
         assert isinstance(strap, Strap)
         line = shapely.get_coordinates(strap.line)
-        strips.append(_Strip(line, strap.width_mm, strap.height_mm, above_mm))
+        strips.append(Strip(line, strap.width_mm, strap.height_mm, above_mm))
     chosen = [b for b in (bridges[k] for k in vias) if isinstance(b, ViaBridge)]
     places = np.array([b.at.coords[0][:2] for b in chosen]).reshape(-1, 2)
     own = np.zeros((len(straps) + len(vias),) * 2)
@@ -315,7 +308,8 @@ def _job(
         bridge_count=len(bridges),
         own_nh=own,
         plates_mm=tuple(d for d in (above_mm, beyond_mm) if d is not None),
-        near_mm=_NEAR * height_mm,
+        height_mm=height_mm,
+        near_mm=_NEAR * height_mm * (1.0 if len(on) <= _FEW_TRACES else _BUS),
         remarks=tuple(remarks),
     )
 
@@ -385,13 +379,9 @@ def _balances(job: _Job) -> tuple[list[tuple[int, Floats]], Floats]:
     rows = np.zeros((len(held), strips + len(job.vias)))
     for row, (_, inside) in zip(rows, held, strict=True):
         row[:strips] = inside[1 : 2 * strips : 2] - inside[0 : 2 * strips : 2]
-        row[:strips] *= [_share(strip) for strip in job.strips]
+        row[:strips] *= [strip.share for strip in job.strips]
         row[strips:] = inside[2 * strips :]
     return held, rows
-
-
-def _share(strip: _Strip) -> float:
-    return 1.0 if strip.above_mm is None else 1.0 - strip.height_mm / strip.above_mm
 
 
 def _lost(job: _Job) -> NDArray[np.bool_]:
@@ -420,17 +410,10 @@ def _sources(job: _Job, mesh: Panels) -> tuple[Floats, Floats, Floats]:
     held, rows = _balances(job)
     points = np.concatenate([*(strip.line[[0, -1]] for strip in job.strips), job.vias])
     angles = point_angles(mesh, job.scene.gaps, points, held)
-    columns, centres = [], []
-    for k, strip in enumerate(job.strips):
-        between = angles[2 * k + 1] - angles[2 * k]
-        full, centre = strip_source(
-            mesh, strip.line, strip.width_mm, strip.height_mm, strip.above_mm, between
-        )
-        columns.append(full)
-        if k < len(job.traces):
-            centres.append(centre)
-    columns.extend(angles[2 * len(job.strips) :].mean(axis=2) / (2 * np.pi))
-    return np.array(columns).T, np.array(centres).T, rows
+    ends = 2 * len(job.strips)
+    full, lines = strip_sources(mesh, job.strips, angles[1:ends:2] - angles[:ends:2])
+    columns = [full, angles[ends:].T / (2 * np.pi)]
+    return np.concatenate(columns, axis=1), lines[:, : len(job.traces)], rows
 
 
 def _response(job: _Job, mesh: Panels, sources: Floats) -> Floats:
@@ -476,7 +459,7 @@ def _judged(job: _Job, fine: _Raw, coarse: _Raw) -> Solution:
     scale = np.sqrt(np.maximum(np.outer(own, own), 0.0))
     left = job.scene.left_out_nh[list(job.traces)]
     short = np.array([job.scene.cut_short_mm[k] for k in job.traces])
-    alone = _FLOOR_NH + left + _short_nh(short, job.near_mm / _NEAR)
+    alone = _FLOOR_NH + left + _short_nh(short, job.height_mm)
     alone = alone + _WIDTH_ERROR * np.abs(fine.filament_nh)
     error = mesh_nh + _METHOD_ERROR * scale + np.sqrt(np.outer(alone, alone))
     added_nh = np.zeros((job.count, job.count))

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 from functools import cache
 from itertools import pairwise
 
@@ -25,76 +26,110 @@ _CLOSE = 4.0
 _ASKEW = 0.0123
 
 
-def strip_source(
-    panels: Panels,
-    line: Floats,
-    width_mm: float,
-    height_mm: float,
-    above_mm: float | None,
-    between: Floats,
+@dataclass(frozen=True, slots=True)
+class Strip:
+    """A trace of finite width with both ends over copper."""
+
+    line: Floats
+    """Centre line, shape (p, 2), mm."""
+    width_mm: float
+    """Over which the current is spread evenly, >= 0."""
+    height_mm: float
+    """Over the plane, > 0."""
+    above_mm: float | None
+    """Distance of a plane on the trace's side."""
+
+    @property
+    def share(self) -> float:
+        """Part of the current that returns in this plane."""
+        return 1.0 if self.above_mm is None else 1.0 - self.height_mm / self.above_mm
+
+    @property
+    def segments(self) -> Floats:
+        """Its straight stretches, shape (p - 1, 4)."""
+        return np.concatenate([self.line[:-1], self.line[1:]], axis=1)
+
+
+def strip_sources(
+    panels: Panels, strips: Sequence[Strip], between: Floats
 ) -> tuple[Floats, Floats]:
-    """Source function of a trace of finite width, as its mean over each panel.
+    """Source functions of traces of finite width, as their means over each panel.
 
     Parameters
     ----------
     panels
-        The panels, shape (n,).
-    line
-        Centre line, shape (p, 2), mm; both ends over copper.
-    width_mm
-        Width over which the current is spread evenly, mm, >= 0.
-    height_mm
-        Height over the plane, mm, > 0.
-    above_mm
-        Distance of a plane on the trace's side, mm, or None.
+        The panels.
+    strips
+        The traces.
     between
-        Angle between the two ends of the trace seen from the points of the panels, continuous in
-        each gap (`point_angles` of the last point less that of the first), shape (n, 4), rad.
+        Angle between the two ends of each trace seen from the centres of the panels, continuous in
+        each gap (`point_angles` of the last point less that of the first), shape (s, n), rad.
 
     Returns
     -------
-    Source of the strip and that of its centre line alone, shape (n,) each.
+    Sources of the strips and those of their centre lines alone, shape (n, s) each.
 
     Notes
     -----
-    The strip is a bundle of filaments that leave from one point and end in one point, so that all
+    A strip is a bundle of filaments that leave from one point and end in one point, so that all
     of them enclose the same copper. Each filament's f jumps on its own line by its share s, and so
     does s A/2 pi, with A the angle that the filament is seen under: the difference is smooth. The
-    angle between the ends, followed continuously through the gap, takes the place of A.
+    angle between the ends, followed continuously through the gap, takes the place of A. Panels far
+    from a strip see it as one line, from their centre.
     """
-    share = 1.0 if above_mm is None else 1.0 - height_mm / above_mm
-    straight = np.concatenate([line[:-1], line[1:]], axis=1)
-
-    def smooth(spots: Floats, segments: Floats, weights: Floats) -> Floats:
-        value, seen = wall_source(spots[:, 0], spots[:, 1], segments, height_mm, above_mm)
-        total: Floats = (value - share / (2 * np.pi) * seen) @ weights
-        return total
-
-    mean = share / (2 * np.pi) * between.mean(axis=1)
-    centre = mean + smooth(panels.centre, straight, np.ones(len(straight)))
-    strip = centre.copy()
-    scale = max(width_mm, height_mm / 2)
-    near = _distance(panels.centre, straight) < _CLOSE * scale + 2 * panels.radius
-    if near.any():
-        spots = panels.points[near].reshape(-1, 2)
-        places, weights = _filaments(width_mm, height_mm)
-        paths = [_beside(line, float(place)) for place in places]
-        bundle = np.concatenate([np.concatenate([p[:-1], p[1:]], axis=1) for p in paths])
-        each = np.repeat(weights, [len(path) - 1 for path in paths])
-        strip[near] = mean[near] + smooth(spots, bundle, each).reshape(-1, 4).mean(axis=1)
-        thin = smooth(spots, straight, np.ones(len(straight)))
-        centre[near] = mean[near] + thin.reshape(-1, 4).mean(axis=1)
-    return strip, centre
+    lines = np.zeros((len(panels), len(strips)))
+    away = np.zeros((len(panels), len(strips)))
+    for height_mm, above_mm in sorted(
+        {(strip.height_mm, strip.above_mm) for strip in strips}, key=str
+    ):
+        where = (height_mm, above_mm)
+        same = [k for k, s in enumerate(strips) if (s.height_mm, s.above_mm) == where]
+        segments = [strips[k].segments for k in same]
+        first = np.cumsum([0, *(len(some) for some in segments[:-1])])
+        every = np.concatenate(segments)
+        value = _smooth(panels.centre, every, strips[same[0]])
+        lines[:, same] = np.add.reduceat(value, first, axis=1)
+        away[:, same] = np.minimum.reduceat(_distances(panels.centre, every), first, axis=1)
+    lines += between.T * [strip.share / (2 * np.pi) for strip in strips]
+    full = lines.copy()
+    for k, strip in enumerate(strips):
+        scale = max(strip.width_mm, strip.height_mm / 2)
+        near = np.flatnonzero(away[:, k] < _CLOSE * scale + 2 * panels.radius)
+        if len(near):
+            full[near, k], lines[near, k] = _nearby(panels, near, strip, between[k, near])
+    return full, lines
 
 
-def _distance(spots: Floats, segments: Floats) -> Floats:
-    """Distance of points from the nearest of some stretches."""
+def _smooth(spots: Floats, segments: Floats, strip: Strip) -> Floats:
+    """What stretches add to f, less what they add to the jump, shape (k, s)."""
+    x, y = spots.T
+    value, seen = wall_source(x, y, segments, strip.height_mm, strip.above_mm)
+    return value - strip.share / (2 * np.pi) * seen
+
+
+def _nearby(panels: Panels, near: Ints, strip: Strip, between: Floats) -> tuple[Floats, Floats]:
+    """Source of a strip and of its centre line on panels close by, from their four points."""
+    spots, middle = panels.points[near], panels.centre[near][:, None, :]
+    turn = _turned(strip.line[-1], middle, spots) - _turned(strip.line[0], middle, spots)
+    angle = strip.share / (2 * np.pi) * (between + turn.mean(axis=1))
+    flat = spots.reshape(-1, 2)
+    places, weights = _filaments(strip.width_mm, strip.height_mm)
+    paths = _beside(strip.line, places)
+    bundle = paths.reshape(-1, 4)
+    each = np.repeat(weights, paths.shape[1])
+    full = _smooth(flat, bundle, strip) @ each
+    thin = _smooth(flat, strip.segments, strip).sum(axis=1)
+    return angle + full.reshape(-1, 4).mean(axis=1), angle + thin.reshape(-1, 4).mean(axis=1)
+
+
+def _distances(spots: Floats, segments: Floats) -> Floats:
+    """Distance of points from stretches, shape (k, s)."""
     x1, y1, x2, y2 = segments.T
     dx, dy = x2 - x1, y2 - y1
     from_x, from_y = spots[:, None, 0] - x1, spots[:, None, 1] - y1
     place = np.clip((from_x * dx + from_y * dy) / (dx * dx + dy * dy), 0.0, 1.0)
-    nearest: Floats = np.hypot(from_x - place * dx, from_y - place * dy).min(axis=1)
-    return nearest
+    apart: Floats = np.hypot(from_x - place * dx, from_y - place * dy)
+    return apart
 
 
 @cache
@@ -106,18 +141,23 @@ def _filaments(width_mm: float, height_mm: float) -> tuple[Floats, Floats]:
     return nodes * width_mm / 2, weights / 2
 
 
-def _beside(line: Floats, offset_mm: float) -> Floats:
-    """Run beside a polyline at a signed distance to the left, from its first to its last point."""
-    if offset_mm == 0.0:
-        return line
+def _beside(line: Floats, offsets_mm: Floats) -> Floats:
+    """Run beside a polyline at signed distances to the left, all from its first to its last point.
+
+    Returns their stretches, shape (offsets, p + 1, 4).
+    """
     step = np.diff(line, axis=0)
     step /= np.hypot(step[:, 0], step[:, 1])[:, None]
     normal = np.stack([-step[:, 1], step[:, 0]], axis=1)
     before, after = np.concatenate([normal[:1], normal]), np.concatenate([normal, normal[-1:]])
     # mitred corners; a hairpin would throw its corner to infinity, so the mitre is held to 2
     mitre = (before + after) / np.maximum(1 + (before * after).sum(axis=1), 0.5)[:, None]
-    beside: Floats = np.concatenate([line[:1], line + offset_mm * mitre, line[-1:]])
-    return beside
+    # the legs at the ends have no length where the offset is none
+    slight = np.where(np.abs(offsets_mm) < 1e-6, 1e-6, offsets_mm)
+    path = np.empty((len(offsets_mm), len(line) + 2, 2))
+    path[:, 0], path[:, -1] = line[0], line[-1]
+    path[:, 1:-1] = line + slight[:, None, None] * mitre
+    return np.concatenate([path[:, :-1], path[:, 1:]], axis=2)
 
 
 def islands(gaps: Sequence[Polygon], points: Floats) -> list[tuple[int, Floats]]:
@@ -160,7 +200,7 @@ def point_angles(
 
     Returns
     -------
-    Angles at the four points of each panel, shape (k, n, 4), rad, up to a constant for each gap.
+    Angles at the centre of each panel, shape (k, n), rad, up to a constant for each gap.
 
     Notes
     -----
@@ -170,19 +210,27 @@ def point_angles(
     angle is followed from piece to piece over the cuts that a line from the point (to that first
     point, or else to where it meets the gap least) makes in it.
     """
-    angles = np.zeros((len(points), len(panels), 4))
+    angles = np.zeros((len(points), len(panels)))
     for number, gap in enumerate(gaps):
         mine = np.flatnonzero(panels.gap == number)
+        inside, centre = panels.inside[mine], panels.centre[mine]
         shapely.prepare(gap)
-        for k, at in enumerate(points):
-            base = next(
-                (int(np.argmax(row)) for owner, row in held if owner == number and row[k]), None
-            )
-            if base is None:
-                angles[k, mine] = _from_outside(gap, at, panels, mine)
-            elif base != k:
-                angles[k, mine] = _between(gap, at, points[base], panels, mine)
+        bases = _bases(points, number, held)
+        outer = np.flatnonzero(bases < 0)
+        if len(outer):
+            angles[np.ix_(outer, mine)] = _from_outside(gap, points[outer], inside, centre)
+        for k in np.flatnonzero((bases >= 0) & (bases != np.arange(len(points)))):
+            angles[k, mine] = _between(gap, points[k], points[bases[k]], inside, centre)
     return angles
+
+
+def _bases(points: Floats, gap: int, held: Sequence[tuple[int, Floats]]) -> Ints:
+    """The first point on the same island of a gap, for each point; -1 if it is on none."""
+    bases = np.full(len(points), -1)
+    for owner, row in held:
+        if owner == gap:
+            bases[row > 0] = int(np.argmax(row))
+    return bases
 
 
 def _seen(first: Floats, second: Floats, r: Floats) -> Floats:
@@ -200,15 +248,13 @@ def _followed(gap: Polygon, cut: LineString, angle: Floats, inside: Floats) -> F
     return angle
 
 
-def _between(gap: Polygon, at: Floats, base: Floats, panels: Panels, mine: Ints) -> Floats:
+def _between(gap: Polygon, at: Floats, base: Floats, inside: Floats, centre: Floats) -> Floats:
     """Angle from the base to the point, both on one island."""
     step = at - base
     via = (at + base) / 2 + _ASKEW * np.array([-step[1], step[0]])
-    inside = panels.inside[mine]
     angle = _seen(base, via, inside) + _seen(via, at, inside)
     angle = _followed(gap, LineString([at, via, base]), angle, inside)
-    spot, middle = panels.points[mine], inside[:, None, :]
-    return angle[:, None] + _turned(at, middle, spot) - _turned(base, middle, spot)
+    return angle + _turned(at, inside, centre) - _turned(base, inside, centre)
 
 
 def _turned(at: Floats, before: Floats, after: Floats) -> Floats:
@@ -219,28 +265,37 @@ def _turned(at: Floats, before: Floats, after: Floats) -> Floats:
     )
 
 
-def _from_outside(gap: Polygon, at: Floats, panels: Panels, mine: Ints) -> Floats:
-    """Angle about a point that the gap does not surround."""
-    ray, direction = _clearest_ray(gap, at)
-    inside = panels.inside[mine]
-    away = inside - at
-    angle = direction + np.mod(np.arctan2(away[:, 1], away[:, 0]) - direction, 2 * np.pi)
-    if ray is not None:
-        # turning left over the ray the angle falls from a full turn to none
-        angle = angle + 2 * np.pi * _turns(gap, ray, inside)
-    return angle[:, None] + _turned(at, inside[:, None, :], panels.points[mine])
-
-
-def _clearest_ray(gap: Polygon, at: Floats) -> tuple[LineString | None, float]:
-    """A direction in which a ray from the point meets the gap least often; None if not at all."""
+def _from_outside(gap: Polygon, points: Floats, inside: Floats, centre: Floats) -> Floats:
+    """Angles about points that the gap does not surround, shape (k, n)."""
     west, south, east, north = gap.bounds
-    corners = np.array([[west, south], [east, south], [east, north], [west, north]])
-    far = 2.0 * float(np.hypot(*(corners - at).T).max()) + 1.0
-    start = float(np.arctan2(*(at - corners.mean(axis=0))[::-1])) + _ASKEW
+    middle = np.array([(west + east) / 2, (south + north) / 2])
+    out = points - middle
+    direction = np.arctan2(out[:, 1], out[:, 0]) + _ASKEW
+    far = 2 * np.hypot(*out.T) + 2 * float(np.hypot(east - west, north - south))
+    ends = points + far[:, None] * np.stack([np.cos(direction), np.sin(direction)], axis=1)
+    rays = [LineString(pair) for pair in zip(points, ends, strict=True)]
+    blocked = np.flatnonzero(shapely.intersects(gap, rays))
+    cuts: dict[int, LineString] = {}
+    for k in blocked.tolist():
+        ray, direction[k] = _clearest_ray(gap, points[k], float(direction[k]), float(far[k]))
+        if ray is not None:
+            cuts[k] = ray
+    away = inside - points[:, None, :]
+    angle = np.arctan2(away[:, :, 1], away[:, :, 0]) - direction[:, None]
+    angle = direction[:, None] + np.mod(angle, 2 * np.pi)
+    for k, cut in cuts.items():
+        # turning left over the ray the angle falls from a full turn to none
+        angle[k] += 2 * np.pi * _turns(gap, cut, inside)
+    followed: Floats = angle + _turned(points[:, None, :], inside, centre)
+    return followed
+
+
+def _clearest_ray(
+    gap: Polygon, at: Floats, start: float, far: float
+) -> tuple[LineString | None, float]:
+    """A direction in which a ray from the point meets the gap least often; None if not at all."""
     directions = start + 2 * np.pi / _RAYS * np.arange(_RAYS)
     ends = at + far * np.stack([np.cos(directions), np.sin(directions)], axis=1)
-    if not shapely.intersects(gap, LineString([at, ends[0]])):
-        return None, float(directions[0])
     rays = np.array([LineString([at, end]) for end in ends], dtype=object)
     free = np.flatnonzero(~shapely.intersects(gap, rays))
     if len(free):
