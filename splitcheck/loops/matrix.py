@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 import numpy as np
 from numpy.polynomial.legendre import leggauss
+from numpy.typing import NDArray
 
 from splitcheck.loops.kernels import outline_potential, plate_images, rectangle_self
 from splitcheck.loops.outlines import Ints
@@ -16,6 +17,8 @@ from splitcheck.units import Floats
 _TOUCHING = 1.05
 #: these by four points each, and all others by their second moments.
 _NEARBY = 2.0
+#: Rows of the matrix that are filled at a time.
+_BLOCK = 48
 
 
 def interaction(panels: Panels, plates_mm: Sequence[float]) -> Floats:
@@ -28,34 +31,55 @@ def interaction(panels: Panels, plates_mm: Sequence[float]) -> Floats:
 
 
 def _free(panels: Panels) -> Floats:
-    x, y = panels.centre.T
-    dx, dy = x[:, None] - x, y[:, None] - y
+    """Mean of 1/r between all pairs, by how far apart they are."""
+    count = len(panels)
+    matrix = np.empty((count, count))
+    pairs: list[tuple[Ints, Ints, NDArray[np.bool_]]] = []
+    for start in range(0, count, _BLOCK):
+        # only the upper half, a strip of rows at a time that stays in the cache
+        rows, block = slice(start, start + _BLOCK), slice(start, None)
+        far, close, touching = _by_moments(panels, rows, block)
+        matrix[rows, block] = far
+        matrix[block, rows] = far.T
+        first, second = np.nonzero(np.triu(close, 1))
+        pairs.append((first + start, second + start, touching[first, second]))
+    first, second, touch = (np.concatenate(part) for part in zip(*pairs, strict=True))
+    i, j = first[~touch], second[~touch]
+    matrix[i, j] = matrix[j, i] = _by_points(panels, i, j)
+    i, j = first[touch], second[touch]
+    matrix[i, j] = matrix[j, i] = _by_outline(panels, i, j)
+    diagonal = np.arange(count)
+    matrix[diagonal, diagonal] = _self(panels)
+    return matrix
+
+
+def _by_moments(
+    panels: Panels, rows: slice, block: slice
+) -> tuple[Floats, NDArray[np.bool_], NDArray[np.bool_]]:
+    """Mean of 1/r by second moments, and which pairs are too close for it, or even touch.
+
+    With the second moments T of both panels <1/r> = 1/R + (T : grad grad 1/R)/2.
+    """
+    at, moved = panels.centre[rows, None], panels.centre[None, block]
+    dx, dy = at[:, :, 0] - moved[:, :, 0], at[:, :, 1] - moved[:, :, 1]
     xx, yy = dx * dx, dy * dy
     square = xx + yy
-    np.fill_diagonal(square, 1.0)
-    # second moments T of both panels: <1/r> = 1/R + (T : grad grad 1/R)/2
-    a, c, b = panels.spread.T
-    bend = (a[:, None] + a) * (2 * xx - yy)
-    bend += (b[:, None] + b) * (2 * yy - xx)
+    reach = (panels.radius[rows, None] + panels.radius[None, block]) ** 2
+    close = square < _NEARBY**2 * reach
+    touching = square < _TOUCHING**2 * reach
+    np.maximum(square, 1e-18, out=square)
+    a, c, b = (panels.spread[rows, None, k] + panels.spread[None, block, k] for k in range(3))
+    bend = a * (2 * xx - yy)
+    bend += b * (2 * yy - xx)
     dx *= dy
-    dx *= 6 * (c[:, None] + c)
+    dx *= 6 * c
     bend += dx
-    matrix: Floats = 1.0 / np.sqrt(square)
     bend *= 0.5
     bend /= square
     bend /= square
     bend += 1.0
-    matrix *= bend
-    reach = panels.radius[:, None] + panels.radius
-    first, second = np.nonzero(np.triu(square < (_NEARBY * reach) ** 2, 1))
-    touching = square[first, second] < (_TOUCHING * reach[first, second]) ** 2
-    i, j = first[~touching], second[~touching]
-    matrix[i, j] = matrix[j, i] = _by_points(panels, i, j)
-    i, j = first[touching], second[touching]
-    matrix[i, j] = matrix[j, i] = _by_outline(panels, i, j)
-    diagonal = np.arange(len(panels))
-    matrix[diagonal, diagonal] = _self(panels)
-    return matrix
+    bend /= np.sqrt(square)
+    return bend, close, touching
 
 
 def _by_points(panels: Panels, i: Ints, j: Ints) -> Floats:
@@ -121,7 +145,7 @@ def _images(panels: Panels, plates_mm: Sequence[float]) -> Floats:
     r = np.hypot(x[:, None] - x, y[:, None] - y)
     reach = panels.radius[:, None] + panels.radius
     first, second = np.nonzero(np.triu(r < _NEARBY * reach, 1))
-    total = np.zeros_like(r)
+    total: Floats = np.zeros_like(r)
     own = np.arange(len(panels))
     for plate in plates_mm:
         part = plate_images(r, plate)
