@@ -34,6 +34,8 @@ def _free(panels: Panels) -> Floats:
     """Mean of 1/r between all pairs, by how far apart they are."""
     count = len(panels)
     matrix = np.empty((count, count))
+    if not count:
+        return matrix
     pairs: list[tuple[Ints, Ints, NDArray[np.bool_]]] = []
     for start in range(0, count, _BLOCK):
         # only the upper half, a strip of rows at a time that stays in the cache

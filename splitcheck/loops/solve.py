@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from math import isfinite
 
 import numpy as np
@@ -17,7 +17,7 @@ from splitcheck.loops.matrix import interaction
 from splitcheck.loops.panels import Panels, cut
 from splitcheck.loops.relevant import Scene, arrange
 from splitcheck.loops.share import share_out, via_matrix
-from splitcheck.loops.sources import Strip, islands, point_angles, strip_sources
+from splitcheck.loops.sources import Known, Strip, islands, point_angles, strip_sources
 from splitcheck.units import MU0, Floats
 
 #: Size of a panel at the trace, in heights of the trace over the plane.
@@ -35,7 +35,7 @@ _SETTLED_NH = 4e-3
 _MORE = 1
 _REFINE_UP_TO = 600
 #: More unknowns than this are not solved for: the panels are made coarser instead.
-MAX_PANELS = 1000
+MAX_PANELS = 900
 _COARSEN = 7
 #: Into how many panels to cut the longer side of a gap at least: one far from all traces, one near
 #: them, and one that is crossed.
@@ -250,6 +250,8 @@ class _Job:
     height_mm: float
     near_mm: float
     remarks: tuple[str, ...]
+    known: Known = field(default_factory=dict)
+    """Cuts through the gaps, filled by the first solve and used again by the next."""
 
 
 def _job(
@@ -409,7 +411,7 @@ def _sources(job: _Job, mesh: Panels) -> tuple[Floats, Floats, Floats]:
     """Source functions of strips and vias; of the traces' centre lines; and island balances."""
     held, rows = _balances(job)
     points = np.concatenate([*(strip.line[[0, -1]] for strip in job.strips), job.vias])
-    angles = point_angles(mesh, job.scene.gaps, points, held)
+    angles = point_angles(mesh, job.scene.gaps, points, held, job.known)
     ends = 2 * len(job.strips)
     full, lines = strip_sources(mesh, job.strips, angles[1:ends:2] - angles[:ends:2])
     columns = [full, angles[ends:].T / (2 * np.pi)]

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
 from itertools import pairwise
+from typing import NamedTuple, TypeAlias
 
 import numpy as np
 import shapely
@@ -177,15 +178,36 @@ def islands(gaps: Sequence[Polygon], points: Floats) -> list[tuple[int, Floats]]
     """
     found = []
     for number, gap in enumerate(gaps):
-        for ring in gap.interiors:
-            inside = shapely.contains_xy(Polygon(ring), points[:, 0], points[:, 1])
+        rings = shapely.get_rings(gap)[1:]
+        west, south, east, north = shapely.bounds(rings).reshape(-1, 4).T[:, :, None]
+        x, y = points.T
+        within = (x > west) & (x < east) & (y > south) & (y < north)
+        for k in np.flatnonzero(within.any(axis=1)):
+            inside = shapely.contains_xy(Polygon(rings[k]), x, y)
             if inside.any():
                 found.append((number, inside.astype(np.float64)))
     return found
 
 
+#: Cuts already made: by gap and point, the cut and the pieces of the gap with their turns.
+Known: TypeAlias = "dict[tuple[int, int], _Sides]"
+
+
+class _Sides(NamedTuple):
+    """A gap parted by a cut: whole turns on each piece, the largest piece first."""
+
+    direction: float
+    """Where the angle starts, rad; counts for points that the gap does not surround."""
+    pieces: tuple[Polygon, ...]
+    turns: Floats
+
+
 def point_angles(
-    panels: Panels, gaps: Sequence[Polygon], points: Floats, held: list[tuple[int, Floats]]
+    panels: Panels,
+    gaps: Sequence[Polygon],
+    points: Floats,
+    held: list[tuple[int, Floats]],
+    known: Known,
 ) -> Floats:
     """Direction from points on copper to the panels, as angles continuous within each gap.
 
@@ -197,6 +219,8 @@ def point_angles(
         Points on copper, shape (k, 2), mm.
     held
         What `islands` found for these points.
+    known
+        Cuts made for these gaps and points before; what is missing is added.
 
     Returns
     -------
@@ -218,9 +242,14 @@ def point_angles(
         bases = _bases(points, number, held)
         outer = np.flatnonzero(bases < 0)
         if len(outer):
-            angles[np.ix_(outer, mine)] = _from_outside(gap, points[outer], inside, centre)
+            sides = _outer_sides(gap, points, [(number, int(k)) for k in outer], known)
+            angles[np.ix_(outer, mine)] = _from_outside(points[outer], sides, inside, centre)
         for k in np.flatnonzero((bases >= 0) & (bases != np.arange(len(points)))):
-            angles[k, mine] = _between(gap, points[k], points[bases[k]], inside, centre)
+            at, base = points[k], points[bases[k]]
+            if (number, int(k)) not in known:
+                cut = LineString([at, _way_over(at, base), base])
+                known[number, int(k)] = _parted(gap, cut, 0.0)
+            angles[k, mine] = _between(at, base, known[number, int(k)], inside, centre)
     return angles
 
 
@@ -241,19 +270,17 @@ def _seen(first: Floats, second: Floats, r: Floats) -> Floats:
     )
 
 
-def _followed(gap: Polygon, cut: LineString, angle: Floats, inside: Floats) -> Floats:
-    """Add whole turns to an angle that jumps on a line, and spread it to the panels' points."""
-    if shapely.intersects(gap, cut):
-        return angle + 2 * np.pi * _turns(gap, cut, inside)
-    return angle
-
-
-def _between(gap: Polygon, at: Floats, base: Floats, inside: Floats, centre: Floats) -> Floats:
-    """Angle from the base to the point, both on one island."""
+def _way_over(at: Floats, base: Floats) -> Floats:
+    """A point askew between two others, so that a cut by it runs along no rim."""
     step = at - base
-    via = (at + base) / 2 + _ASKEW * np.array([-step[1], step[0]])
-    angle = _seen(base, via, inside) + _seen(via, at, inside)
-    angle = _followed(gap, LineString([at, via, base]), angle, inside)
+    middle: Floats = (at + base) / 2 + _ASKEW * np.array([-step[1], step[0]])
+    return middle
+
+
+def _between(at: Floats, base: Floats, sides: _Sides, inside: Floats, centre: Floats) -> Floats:
+    """Angle from the base to the point, both on one island."""
+    via = _way_over(at, base)
+    angle = _seen(base, via, inside) + _seen(via, at, inside) + _turns(sides, inside)
     return angle + _turned(at, inside, centre) - _turned(base, inside, centre)
 
 
@@ -265,58 +292,76 @@ def _turned(at: Floats, before: Floats, after: Floats) -> Floats:
     )
 
 
-def _from_outside(gap: Polygon, points: Floats, inside: Floats, centre: Floats) -> Floats:
+def _outer_sides(
+    gap: Polygon, points: Floats, keys: Sequence[tuple[int, int]], known: Known
+) -> list[_Sides]:
+    """Cuts for points that the gap does not surround: rays that meet it least."""
+    new = [key for key in keys if key not in known]
+    if new:
+        west, south, east, north = gap.bounds
+        at = points[[k for _, k in new]]
+        out = at - np.array([(west + east) / 2, (south + north) / 2])
+        direction = np.arctan2(out[:, 1], out[:, 0]) + _ASKEW
+        far = 2 * np.hypot(*out.T) + 2 * float(np.hypot(east - west, north - south))
+        ends = at + far[:, None] * np.stack([np.cos(direction), np.sin(direction)], axis=1)
+        rays = [LineString(pair) for pair in zip(at, ends, strict=True)]
+        blocked = shapely.intersects(gap, rays)
+        for n, key in enumerate(new):
+            start = float(direction[n])
+            if blocked[n]:
+                ray, start = _clearest_ray(gap, at[n], start, float(far[n]))
+                known[key] = _parted(gap, ray, start)
+            else:
+                known[key] = _Sides(start, (gap,), np.zeros(1))
+    return [known[key] for key in keys]
+
+
+def _from_outside(
+    points: Floats, sides: Sequence[_Sides], inside: Floats, centre: Floats
+) -> Floats:
     """Angles about points that the gap does not surround, shape (k, n)."""
-    west, south, east, north = gap.bounds
-    middle = np.array([(west + east) / 2, (south + north) / 2])
-    out = points - middle
-    direction = np.arctan2(out[:, 1], out[:, 0]) + _ASKEW
-    far = 2 * np.hypot(*out.T) + 2 * float(np.hypot(east - west, north - south))
-    ends = points + far[:, None] * np.stack([np.cos(direction), np.sin(direction)], axis=1)
-    rays = [LineString(pair) for pair in zip(points, ends, strict=True)]
-    blocked = np.flatnonzero(shapely.intersects(gap, rays))
-    cuts: dict[int, LineString] = {}
-    for k in blocked.tolist():
-        ray, direction[k] = _clearest_ray(gap, points[k], float(direction[k]), float(far[k]))
-        if ray is not None:
-            cuts[k] = ray
+    direction = np.array([side.direction for side in sides])
     away = inside - points[:, None, :]
     angle = np.arctan2(away[:, :, 1], away[:, :, 0]) - direction[:, None]
     angle = direction[:, None] + np.mod(angle, 2 * np.pi)
-    for k, cut in cuts.items():
-        # turning left over the ray the angle falls from a full turn to none
-        angle[k] += 2 * np.pi * _turns(gap, cut, inside)
-    followed: Floats = angle + _turned(points[:, None, :], inside, centre)
+    # turning left over its ray an angle falls from a full turn to none
+    turns = np.array([_turns(side, inside) for side in sides])
+    followed: Floats = angle + turns + _turned(points[:, None, :], inside, centre)
     return followed
 
 
-def _clearest_ray(
-    gap: Polygon, at: Floats, start: float, far: float
-) -> tuple[LineString | None, float]:
-    """A direction in which a ray from the point meets the gap least often; None if not at all."""
+def _clearest_ray(gap: Polygon, at: Floats, start: float, far: float) -> tuple[LineString, float]:
+    """A ray from the point that meets the gap least often, and its direction."""
     directions = start + 2 * np.pi / _RAYS * np.arange(_RAYS)
     ends = at + far * np.stack([np.cos(directions), np.sin(directions)], axis=1)
     rays = np.array([LineString([at, end]) for end in ends], dtype=object)
     free = np.flatnonzero(~shapely.intersects(gap, rays))
     if len(free):
-        return None, float(directions[free[0]])
+        return rays[free[0]], float(directions[free[0]])
     met = shapely.get_num_geometries(shapely.intersection(gap.exterior, rays))
     best = int(np.argmin(met))
     return rays[best], float(directions[best])
 
 
-def _turns(gap: Polygon, cut: LineString, centres: Floats) -> Floats:
-    """Whole turns to add on each side of a cut, where the angle falls by one to its left."""
+def _parted(gap: Polygon, cut: LineString, direction: float) -> _Sides:
+    """Part a gap by a cut, where an angle falls by one turn to its left."""
+    if not shapely.intersects(gap, cut):
+        return _Sides(direction, (gap,), np.zeros(1))
     parts = [part for part in split(gap, cut).geoms if isinstance(part, Polygon)]
     pieces = sorted(parts, key=lambda piece: -piece.area)
     if len(pieces) < 2:
-        return np.zeros(len(centres))
-    number = _walked(len(pieces), _steps(gap, cut, pieces))
-    turns = np.full(len(centres), number[0])
-    for piece, own in zip(pieces[1:], number[1:], strict=True):
+        return _Sides(direction, (gap,), np.zeros(1))
+    for piece in pieces:
         shapely.prepare(piece)
-        turns[shapely.contains_xy(piece, centres[:, 0], centres[:, 1])] = own
-    return turns
+    return _Sides(direction, tuple(pieces), _walked(len(pieces), _steps(gap, cut, pieces)))
+
+
+def _turns(sides: _Sides, spots: Floats) -> Floats:
+    """Whole turns to add at points of a gap, rad."""
+    turns = np.full(len(spots), sides.turns[0])
+    for piece, own in zip(sides.pieces[1:], sides.turns[1:], strict=True):
+        turns[shapely.contains_xy(piece, spots[:, 0], spots[:, 1])] = own
+    return 2 * np.pi * turns
 
 
 def _steps(gap: Polygon, cut: LineString, pieces: Sequence[Polygon]) -> list[tuple[int, int]]:
