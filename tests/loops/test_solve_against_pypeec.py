@@ -15,7 +15,11 @@ from shapely import LineString, box
 
 from splitcheck.loops.solve import TraceOver, added
 
-pytest.importorskip("pypeec", reason="pypeec is not installed: nothing to compare with live")
+pytest.importorskip(
+    "pypeec.run.solver",
+    exc_type=ImportError,
+    reason="pypeec is not installed: nothing to compare with live",
+)
 
 pytestmark = [pytest.mark.slow, pytest.mark.filterwarnings("ignore")]
 
