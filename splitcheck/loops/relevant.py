@@ -236,8 +236,11 @@ def _chosen(
         maybe = np.flatnonzero(alone > _NEGLIGIBLE_NH / 50)
         shapely.prepare(around)
         close[maybe] = shapely.distance(around, shapes[others[maybe]]) < 2.5 * size[maybe]
-    wanted = others[(alone > _NEGLIGIBLE_NH) | close]
-    weight = alone[(alone > _NEGLIGIBLE_NH) | close]
+    matters = (alone > _NEGLIGIBLE_NH) | close
+    if not main and not matters.any():
+        # nothing counts for much: solve for what counts most
+        matters[np.argsort(-alone, kind="stable")[:3]] = True
+    wanted, weight = others[matters], alone[matters]
     order = np.argsort(-weight, kind="stable")[:_MOST_GAPS]
     more = sorted(int(k) for k in wanted[order])
     # few panels are spent on them, so that a part of what they add is in doubt as well

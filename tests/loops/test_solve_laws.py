@@ -190,3 +190,36 @@ def test_the_same_input_gives_the_same_bytes() -> None:
     first, second = (added([gap], [across(), across(0.5)], 0.2) for _ in range(2))
     assert first.added_nh.tobytes() == second.added_nh.tobytes()
     assert hypot(*first.added_nh[0]) > 0
+
+
+@laws
+@given(gaps(), heights, st.floats(1.2, 6.0))
+def test_a_plane_above_never_adds(gap: Polygon, height: float, times: float) -> None:
+    """It takes its share of the return; far away it takes none, and nothing changes."""
+    bare = pair(added([gap], [across()], height))[0]
+    near = pair(added([gap], [across()], height, above_mm=height * times))[0]
+    far = pair(added([gap], [across()], height, above_mm=2 * height * times))[0]
+    none = pair(added([gap], [across()], height, above_mm=1000 * height))[0]
+    assert 0 < near <= far * 1.001
+    assert far <= bare * 1.001
+    assert none == pytest.approx(bare, rel=0.01)
+
+
+def test_gaps_known_to_be_disjoint_give_the_same() -> None:
+    """Saying so saves time and changes nothing."""
+    gaps_ = [box(-0.2, -4, 0.2, 4), Point(2, 1).buffer(0.4), Point(-3, -1).buffer(0.6)]
+    board = box(-30, -30, 30, 30)
+    slow, quick = (
+        added(gaps_, [across()], 0.2, outside=board, disjoint=known) for known in (False, True)
+    )
+    assert pair(quick)[0] == pytest.approx(pair(slow)[0], rel=1e-3)
+
+
+def test_a_gap_that_runs_round_the_board_is_its_outside() -> None:
+    """Whether the outside comes as a gap or as an outline, it is one and the same."""
+    board, notch = box(-30, -20, 30, 20), box(-0.3, -2, 0.3, 30)
+    ring = box(-40, -30, 40, 30).difference(board.difference(notch))
+    assert isinstance(ring, Polygon)
+    by_outline = added([notch], [across()], 0.2, outside=board)
+    by_ring = added([ring], [across()], 0.2, outside=board, disjoint=True)
+    assert pair(by_ring)[0] == pytest.approx(pair(by_outline)[0], rel=0.01)
