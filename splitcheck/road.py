@@ -5,13 +5,13 @@ from __future__ import annotations
 import multiprocessing
 import os
 import shutil
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from time import perf_counter
-from typing import TypeAlias
+from typing import Any, TypeAlias
 
 from splitcheck.board.assemble import Assembled, assemble
 from splitcheck.board.layers import CopperFile, ReadLayer, read_layer
@@ -31,6 +31,8 @@ Progress: TypeAlias = Callable[[str, int, int], None]
 
 #: Less text than this is read faster by one process than by several.
 ALONE_BYTES = 400_000
+#: Fewer items than this are worked off faster by one process.
+FEW_ITEMS = 24
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,7 +94,7 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judged: bo
         with clock.stage("loops"):
             graph = join_islands(assembled.board, planes)
             scene = set_scene(assembled, planes, graph, options)
-            findings, counts = judge(scene, crossings, bare)
+            findings, counts = judge(scene, crossings, bare, Spread(options.jobs))
     return summarise(Seen(export, assembled, planes, tracks), findings, counts, clock.seconds())
 
 
@@ -167,6 +169,37 @@ def _processes() -> multiprocessing.context.BaseContext:
     """Forked workers start without importing everything again; not every system has them."""
     forked = "fork" in multiprocessing.get_all_start_methods()
     return multiprocessing.get_context("fork" if forked else "spawn")
+
+
+#: What the workers of ``Spread`` call; they inherit it when they are forked.
+_work: Callable[[Any], Any] | None = None
+
+
+class Spread:
+    """Calls a function on many items, on several cores where that is faster; results in order."""
+
+    def __init__(self, jobs: int | None) -> None:
+        self.jobs = jobs or os.cpu_count() or 1
+
+    def __call__(self, work: Callable[[Any], Any], items: Iterable[Any]) -> Iterable[Any]:
+        """Results in the order of the items."""
+        listed = list(items)
+        forked = "fork" in multiprocessing.get_all_start_methods()
+        if self.jobs < 2 or len(listed) < FEW_ITEMS or not forked:
+            return [work(item) for item in listed]
+        global _work  # noqa: PLW0603  # forked workers inherit it; sending it would cost more than the work
+        _work = work
+        try:
+            with ProcessPoolExecutor(self.jobs, mp_context=_processes()) as pool:
+                size = max(1, min(16, len(listed) // (4 * self.jobs)))
+                return list(pool.map(_worked, listed, chunksize=size))
+        finally:
+            _work = None
+
+
+def _worked(item: Any) -> Any:
+    assert _work is not None
+    return _work(item)
 
 
 def build(export: Export, layers: Sequence[ReadLayer], options: Options) -> Assembled:

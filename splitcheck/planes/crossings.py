@@ -31,6 +31,8 @@ from splitcheck.planes.tracks import Tracks
 
 #: How far off the rim of a gap the copper is probed, mm.
 PROBE_MM = 5e-3
+#: How far a trace is followed on either side of a crossing, mm.
+STRETCH_MM = 10.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -45,6 +47,8 @@ class Crossing:
     """Index of the gap in the plane."""
     path: tuple[Point, ...]
     """Centre line of the run from entry to exit, both on the rim of the gap, mm."""
+    stretch: tuple[Point, ...]
+    """The run with the trace on either side of it, up to where it branches or ends, mm."""
     before: Point
     """A point of the trace on copper just before the run."""
     after: Point
@@ -215,6 +219,12 @@ class _Rim(NamedTuple):
     """A point of the trace on copper beyond it."""
     key: Place
     """Its node in the walk graph."""
+    piece: int
+    """The piece of trace that leads away from the gap there."""
+    fraction: float
+    """Where on that piece the rim is."""
+    toward: int
+    """Which end of that piece leads away: 0 its start, 1 its end."""
 
 
 class _Ends:
@@ -245,6 +255,9 @@ class _Ends:
                             self.tracks.point(bit.piece, at),
                             self.tracks.point(bit.piece, beyond),
                             ("rim", bit.piece, at),
+                            bit.piece,
+                            at,
+                            end,
                         )
                     )
                 continue
@@ -259,7 +272,10 @@ class _Ends:
             beyond = step if first else 1.0 - step
             if self._covered(other, beyond) and self._seen(other, beyond):
                 at = self.tracks.point(other, 0.0 if first else 1.0)
-                rims.append(_Rim(at, self.tracks.point(other, beyond), ("node", node, 0.0)))
+                on = self.tracks.point(other, beyond)
+                rims.append(
+                    _Rim(at, on, ("node", node, 0.0), other, 0.0 if first else 1.0, int(first))
+                )
         return rims
 
 
@@ -288,6 +304,11 @@ def _crossing(tracks: Tracks, plane: Plane, group: Sequence[_Bit], ends: _Ends) 
         plane=plane.layer,
         gap=first.gap,
         path=path,
+        stretch=(
+            *reversed(_followed(tracks, rims[entry])),
+            *path,
+            *_followed(tracks, rims[leave]),
+        ),
         before=before,
         after=after,
         islands=(int(islands[0]), int(islands[1])),
@@ -295,6 +316,28 @@ def _crossing(tracks: Tracks, plane: Plane, group: Sequence[_Bit], ends: _Ends) 
         width_mm=float(tracks.width_mm[first.piece]),
         line=int(tracks.line[first.piece]),
     )
+
+
+def _followed(tracks: Tracks, rim: _Rim) -> list[Point]:
+    """Points of a trace from the rim of a gap outwards, until it branches or is long enough."""
+    points: list[Point] = []
+    piece, fraction, toward = rim.piece, rim.fraction, rim.toward
+    left = STRETCH_MM
+    while True:
+        ahead = abs(toward - fraction) * float(tracks.length_mm[piece])
+        if ahead >= left:
+            step = left / float(tracks.length_mm[piece])
+            points.append(tracks.point(piece, fraction + (step if toward else -step)))
+            return points
+        points.append(tracks.point(piece, float(toward)))
+        left -= ahead
+        node = int(tracks.nodes[piece, toward])
+        others = [other for other in tracks.at_node(node) if other != piece]
+        if len(others) != 1:
+            return points
+        piece = others[0]
+        first = int(tracks.nodes[piece, 0]) == node
+        fraction, toward = (0.0, 1) if first else (1.0, 0)
 
 
 def _walk(tracks: Tracks, group: Sequence[_Bit]) -> nx.Graph[Place]:

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, replace
+from functools import partial
 from hashlib import sha256
 from math import inf
+from typing import Any, TypeAlias
 
 import numpy as np
 import shapely
@@ -14,6 +16,8 @@ import shapely
 from splitcheck.board.board import Board
 from splitcheck.loops import estimate
 from splitcheck.loops.bridges import IslandGraph, stitched_near
+from splitcheck.loops.estimate import Inductance
+from splitcheck.loops.fields import Field, Fields, Task, can_solve, cluster
 from splitcheck.loops.routes import Route, Terrain, Way, find_route
 from splitcheck.planes.crossings import BareTrace, Crossing
 from splitcheck.planes.islands import Gap, Plane
@@ -44,6 +48,10 @@ SLOT_RATIO = 2.5
 EDGE_RATIO = 0.25
 
 
+#: Calls a function on every item and gives the results in order, as ``map`` does.
+Spread: TypeAlias = Callable[[Callable[[Any], Any], Iterable[Any]], Iterable[Any]]
+
+
 @dataclass(frozen=True, slots=True)
 class Scene:
     """What judging a crossing needs to know beyond the crossing."""
@@ -56,29 +64,85 @@ class Scene:
     drive: Drive = DEFAULT_DRIVE
 
 
+@dataclass(frozen=True, slots=True)
+class Weighed:
+    """A crossing with its way round and what closed forms say of it."""
+
+    crossing: Crossing
+    route: Route
+    beyond: int | None
+    """Layer number of a whole plane beyond the broken one."""
+    other: int | None
+    """Layer number of a whole plane on the trace's other side."""
+    share: float
+    """Part of the return that the broken plane carries."""
+    estimate: Inductance | None
+    kind: Kind
+
+
 def judge(
-    scene: Scene, crossings: Sequence[Crossing], bare: Sequence[BareTrace]
+    scene: Scene,
+    crossings: Sequence[Crossing],
+    bare: Sequence[BareTrace],
+    spread: Spread = map,
 ) -> tuple[tuple[Finding, ...], tuple[Count, ...]]:
     """Turn crossings and bare traces into findings, worst first.
+
+    Parameters
+    ----------
+    scene
+        The board and its planes.
+    crossings, bare
+        What the traces run over.
+    spread
+        How to call a function on many items: in turn, or on several cores.
 
     Returns
     -------
     Findings with their ids, and counts of what was seen and is not a finding.
     """
-    findings: list[Finding] = []
     dropped: dict[str, int] = defaultdict(int)
-    for crossing in crossings:
-        reason = _exempt(scene, crossing)
-        finding = None if reason else _crossing_finding(scene, crossing)
+    weighed: list[Weighed] = []
+    for result in spread(partial(_weigh, scene), crossings):
+        if isinstance(result, str):
+            dropped[result] += 1
+        else:
+            weighed.append(result)
+    solved = _solve_all(scene, weighed, spread)
+    findings: list[Finding] = []
+    for number, item in enumerate(weighed):
+        finding = _crossing_finding(scene, item, solved.get(number), weighed)
         if finding is None:
-            dropped[reason or f"crossings that add less than {scene.min_nh:g} nH"] += 1
-        elif isinstance(finding, str):
-            dropped[finding] += 1
+            dropped[_too_small(scene)] += 1
         else:
             findings.append(finding)
     findings.extend(_bare_findings(scene, bare, dropped))
     counts = tuple(Count(what, number) for what, number in sorted(dropped.items()))
     return _with_ids(_with_shares(findings)), counts
+
+
+def _solve_all(scene: Scene, weighed: Sequence[Weighed], spread: Spread) -> dict[int, Field]:
+    """Solve for every crossing that has a way back, those over one gap together."""
+    tasks = [
+        Task(
+            number,
+            item.crossing,
+            item.route,
+            scene.board.stack.height_mm(item.crossing.layer, item.crossing.plane),
+            item.beyond,
+            item.other,
+        )
+        for number, item in enumerate(weighed)
+    ]
+    solved: dict[int, Field] = {}
+    fields = Fields(scene.board, scene.planes, scene.graph)
+    for result in spread(fields.solve, cluster([task for task in tasks if can_solve(task)])):
+        solved.update(result)
+    return solved
+
+
+def _too_small(scene: Scene) -> str:
+    return f"crossings that add less than {scene.min_nh:g} nH"
 
 
 def _with_ids(findings: Iterable[Finding]) -> tuple[Finding, ...]:
@@ -87,19 +151,20 @@ def _with_ids(findings: Iterable[Finding]) -> tuple[Finding, ...]:
 
 
 def _with_shares(findings: Sequence[Finding]) -> list[Finding]:
+    """Name every net over the same gap, also those that no solve has put together."""
     nets: dict[str, set[str]] = defaultdict(set)
     for finding in findings:
-        if finding.kind not in {"no-plane", "edge-run"}:
+        if finding.kind != "no-plane":
             nets[finding.gap].add(finding.net)
-    return [
-        replace(
-            finding,
-            shares_gap_with=tuple(
-                GapShare(net, None) for net in sorted(nets.get(finding.gap, set()) - {finding.net})
-            ),
+    shared = []
+    for finding in findings:
+        known = {share.net for share in finding.shares_gap_with} | {finding.net}
+        more = sorted(nets.get(finding.gap, set()) - known)
+        shares = (*finding.shares_gap_with, *(GapShare(net, None) for net in more))
+        shared.append(
+            replace(finding, shares_gap_with=tuple(sorted(shares, key=lambda share: share.net)))
         )
-        for finding in findings
-    ]
+    return shared
 
 
 def _exempt(scene: Scene, crossing: Crossing) -> str | None:
@@ -196,11 +261,13 @@ def _share(scene: Scene, crossing: Crossing, other: int | None) -> float:
     return far / (near + far)
 
 
-def _beyond_mm(scene: Scene, crossing: Crossing) -> float | None:
-    """Distance from the broken plane to a whole plane beyond it under this part of the gap."""
+def _beyond(scene: Scene, crossing: Crossing) -> int | None:
+    """Layer number of the nearest plane beyond the broken one if it is whole under the gap.
+
+    A nearer plane that is open there as well is passed over for the next one.
+    """
     xs, ys = _places_in_gap(scene, crossing)
-    layer = nearest_cover(tuple(scene.planes.values()), _layers_beyond(scene, crossing), xs, ys)
-    return None if layer is None else scene.board.stack.height_mm(crossing.plane, layer)
+    return nearest_cover(tuple(scene.planes.values()), _layers_beyond(scene, crossing), xs, ys)
 
 
 def _places_in_gap(
@@ -220,31 +287,33 @@ def _places_in_gap(
     return xs[inside], ys[inside]
 
 
-def _crossing_finding(scene: Scene, crossing: Crossing) -> Finding | str | None:
-    """The finding of a crossing; None if it adds too little."""
+def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
+    """Find the way round of a crossing and estimate it; the reason if it is no finding."""
+    exempt = _exempt(scene, crossing)
+    if exempt is not None:
+        return exempt
     route = find_route(crossing, scene.planes, scene.terrains, scene.graph)
     other = _other_side(scene, crossing)
+    beyond = _beyond(scene, crossing)
     share = _share(scene, crossing, other)
-    beyond = _beyond_mm(scene, crossing)
-    gap = scene.planes[crossing.plane].gaps[crossing.gap]
-    kind = _kind(crossing, gap, route)
     value = _estimate(scene, crossing, route, share, beyond, other)
-    if value is not None and value.added_nh < scene.min_nh:
-        return None
+    if value is not None and value.added_nh + value.error_nh < scene.min_nh:
+        return _too_small(scene)
+    kind = _kind(crossing, scene.planes[crossing.plane].gaps[crossing.gap], route)
     if kind == "edge-run":
         return "runs beyond the rim of a plane (edge runs)"
-    added = None if value is None else value.added_nh
-    noise = None if added is None else noise_mv(added, scene.drive)
-    return _finding(
-        scene,
-        crossing,
-        route,
-        kind,
-        gap,
-        value,
-        noise,
-        _reason(scene, crossing, route, kind, share, beyond),
-    )
+    return Weighed(crossing, route, beyond, other, share, value, kind)
+
+
+def _crossing_finding(
+    scene: Scene, item: Weighed, field: Field | None, weighed: Sequence[Weighed]
+) -> Finding | None:
+    """The finding of a crossing; None if it adds too little."""
+    value = item.estimate if field is None else field.value
+    if value is not None and value.added_nh < scene.min_nh:
+        return None
+    noise = None if value is None else noise_mv(value.added_nh, scene.drive)
+    return _finding(scene, item, value, noise, field, weighed)
 
 
 def _kind(crossing: Crossing, gap: Gap, route: Route) -> Kind:
@@ -261,24 +330,30 @@ def _estimate(
     crossing: Crossing,
     route: Route,
     share: float,
-    beyond: float | None,
+    beyond: int | None,
     other: int | None,
-) -> estimate.Inductance | None:
-    above = None if other is None else scene.board.stack.height_mm(crossing.plane, other)
-    if not route.joined:
+) -> Inductance | None:
+    heights = scene.board.stack
+    above = None if other is None else heights.height_mm(crossing.plane, other)
+    over = None
+    if above is not None and crossing.islands[0] != crossing.islands[1]:
         islands = scene.planes[crossing.plane].islands
         smaller = min(islands[i].shape.area for i in crossing.islands)
-        return None if above is None else estimate.handed_over(above, smaller, share)
-    return estimate.added(
+        over = estimate.handed_over(above, smaller, share)
+    if not route.joined:
+        return over
+    round_gap = estimate.added(
         (route.reach_mm(route.left), route.reach_mm(route.right)),
         (_bridge_nh(scene, crossing, route.left), _bridge_nh(scene, crossing, route.right)),
         crossing.run_mm,
-        scene.board.stack.height_mm(crossing.layer, crossing.plane),
+        heights.height_mm(crossing.layer, crossing.plane),
         crossing.width_mm,
-        beyond_mm=beyond,
+        beyond_mm=None if beyond is None else heights.height_mm(crossing.plane, beyond),
         above_mm=above,
         share=share,
     )
+    known = [value for value in (over, round_gap) if value is not None]
+    return min(known, key=lambda value: value.added_nh) if known else None
 
 
 def _bridge_nh(scene: Scene, crossing: Crossing, way: Way | None) -> float:
@@ -293,23 +368,21 @@ def _bridge_nh(scene: Scene, crossing: Crossing, way: Way | None) -> float:
 
 def _finding(
     scene: Scene,
-    crossing: Crossing,
-    route: Route,
-    kind: Kind,
-    gap: Gap,
-    value: estimate.Inductance | None,
+    item: Weighed,
+    value: Inductance | None,
     noise: float | None,
-    reason: str,
+    field: Field | None,
+    weighed: Sequence[Weighed],
 ) -> Finding:
+    crossing, route = item.crossing, item.route
     plane = scene.planes[crossing.plane]
     layers = scene.board.stack.layers
     islands = [plane.islands[i] for i in crossing.islands]
     net = scene.board.nets[crossing.net].name
-    best = route.best
     at = (round(crossing.at[0], 4), round(crossing.at[1], 4))
     return Finding(
         id="",
-        kind=kind,
+        kind=item.kind,
         level=level(noise, scene.drive),
         net=net,
         net_class=scene.drive.name,
@@ -321,21 +394,34 @@ def _finding(
         detour_mm=route.detour_mm if route.joined else None,
         added_nh=None if value is None else value.added_nh,
         error_nh=None if value is None else value.error_nh,
-        method="none" if value is None else "estimated",
+        method="solved" if field is not None else "none" if value is None else "estimated",
         noise_mv=noise,
         rise_ns=scene.drive.rise_ns,
         corner_khz=None,
         stray_db=None,
         islands=(islands[0].id, islands[1].id),
-        bridges=_bridges(best),
-        gap=gap.id,
-        shares_gap_with=(),
+        bridges=_bridges(route.best),
+        gap=plane.gaps[crossing.gap].id,
+        shares_gap_with=_mutual(scene, crossing.net, field, weighed),
         pair=None,
         source=Source(scene.board.layers[crossing.layer - 1].file, crossing.line),
         waived=None,
-        fingerprint=_fingerprint(kind, net, layers[crossing.layer - 1].name, at),
-        reason=reason,
+        fingerprint=_fingerprint(item.kind, net, layers[crossing.layer - 1].name, at),
+        reason=_reason(scene, item),
     )
+
+
+def _mutual(
+    scene: Scene, own: int, field: Field | None, weighed: Sequence[Weighed]
+) -> tuple[GapShare, ...]:
+    """The largest mutual inductance with every other net that shares the gap."""
+    best: dict[str, float] = {}
+    for number, mutual in field.mutual_nh if field is not None else ():
+        net = weighed[number].crossing.net
+        name = scene.board.nets[net].name
+        if net != own and abs(mutual) > abs(best.get(name, 0.0)):
+            best[name] = mutual
+    return tuple(GapShare(name, mutual) for name, mutual in sorted(best.items()))
 
 
 def _bridges(way: Way | None) -> tuple[BridgeUse, ...]:
@@ -352,20 +438,20 @@ def _fingerprint(kind: str, net: str, layer: str, at: tuple[float, float]) -> st
     return sha256(text.encode()).hexdigest()[:16]
 
 
-def _reason(
-    scene: Scene, crossing: Crossing, route: Route, kind: Kind, share: float, beyond: float | None
-) -> str:
+def _reason(scene: Scene, item: Weighed) -> str:
+    crossing = item.crossing
     plane = scene.planes[crossing.plane]
     one, other = (plane.islands[i] for i in crossing.islands)
     name = scene.board.stack.layers[crossing.plane - 1].name
-    if kind == "split-crossing":
+    if item.kind == "split-crossing":
         start = (
             f"{name} is split here between {one.net_name} ({one.id}) and "
             f"{other.net_name} ({other.id})"
         )
     else:
         start = f"{name} ({one.net_name}) is open for {crossing.run_mm:.2f} mm under the trace"
-    return "; ".join([start, _way_in_words(scene, route, share), *_extras(share, beyond)])
+    way = _way_in_words(scene, item.route, item.share)
+    return "; ".join([start, way, *_extras(scene, item)])
 
 
 def _way_in_words(scene: Scene, route: Route, share: float) -> str:
@@ -387,12 +473,19 @@ def _way_in_words(scene: Scene, route: Route, share: float) -> str:
     return f"the return walks {detour:.1f} mm more through {via}"
 
 
-def _extras(share: float, beyond: float | None) -> list[str]:
+def _extras(scene: Scene, item: Weighed) -> list[str]:
     extras = []
-    if share < 1.0:
-        extras.append(f"{100 * share:.0f} % of the return flows on this plane")
-    if beyond is not None:
-        extras.append(f"a whole plane {beyond:.2f} mm beyond shields the gap")
+    names = [layer.name for layer in scene.board.stack.layers]
+    if item.share < 1.0:
+        extras.append(f"{100 * item.share:.0f} % of the return flows on this plane")
+    if item.beyond is not None:
+        apart = scene.board.stack.height_mm(item.crossing.plane, item.beyond)
+        extras.append(
+            f"{names[item.beyond - 1]} is whole {apart:.2f} mm beyond and shields the gap"
+        )
+    passed = [layer for layer in _layers_beyond(scene, item.crossing) if layer in scene.planes]
+    if passed and passed[0] != item.beyond:
+        extras.append(f"the next plane, {names[passed[0] - 1]}, is open here as well")
     return extras
 
 
@@ -456,7 +549,7 @@ def _bare_finding(scene: Scene, traces: Sequence[BareTrace]) -> Finding | None:
     )
 
 
-def _bare_estimate(scene: Scene, traces: Sequence[BareTrace]) -> estimate.Inductance | None:
+def _bare_estimate(scene: Scene, traces: Sequence[BareTrace]) -> Inductance | None:
     """What running past the rim of the nearest plane costs; None if the board has no plane.
 
     The rim is taken as straight and as far away as the nearest reference copper of any layer.
@@ -475,4 +568,4 @@ def _bare_estimate(scene: Scene, traces: Sequence[BareTrace]) -> estimate.Induct
             if best == inf:
                 return None
             total += best * line.length
-    return estimate.Inductance(total, 0.6 * total)
+    return Inductance(total, 0.6 * total)

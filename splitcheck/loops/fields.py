@@ -1,0 +1,303 @@
+"""Crossings of a board to field solves: which gaps, traces, planes and bridges each one takes."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Sequence
+from dataclasses import dataclass
+from math import isfinite
+
+import numpy as np
+import shapely
+from shapely import LineString, MultiPolygon, Polygon
+
+from splitcheck.board.board import Board
+from splitcheck.copper.marks import Point
+from splitcheck.loops import solve as engine
+from splitcheck.loops.bridges import IslandGraph, bridges_between
+from splitcheck.loops.estimate import Inductance, via_pair_nh
+from splitcheck.loops.routes import Route, Way
+from splitcheck.planes.crossings import Crossing
+from splitcheck.planes.islands import Plane, box_size_mm
+
+#: The window of a solve reaches this much beyond the ways round the gap: in mm and as a share.
+BEYOND_MM = 2.0
+BEYOND_SHARE = 0.3
+#: Crossings of one gap this near to one another are solved together, mm ...
+TOGETHER_MM = 4.0
+#: ... but not more of them at once.
+MOST_TRACES = 40
+#: At most so many other gaps near the crossed one are looked at.
+MOST_NEIGHBOURS = 60
+#: Gaps smaller than this share of the height do not matter unless crossed.
+SMALL_SHARE = 1.0
+#: Barrel of a plated hole taken as a bridge, mm (common practice, no source).
+VIA_MM = 0.3
+#: Vias up to so many times as far off as the one of the shortest way are bridges as well ...
+VIAS_AS_NEAR = 2.0
+#: ... but not more than this on either side of a gap.
+MOST_VIAS = 8
+#: Width taken for copper that a way borrows on the trace's side, mm.
+STRAP_MM = 1.0
+
+
+@dataclass(frozen=True, slots=True)
+class Task:
+    """A crossing with all that its solve needs to know."""
+
+    number: int
+    """Its place among the crossings of the board."""
+    crossing: Crossing
+    route: Route
+    height_mm: float
+    beyond: int | None
+    """Layer number of the whole plane beyond the broken one."""
+    other: int | None
+    """Layer number of the whole plane on the trace's other side."""
+
+
+@dataclass(frozen=True, slots=True)
+class Field:
+    """What the solve says of one crossing."""
+
+    value: Inductance
+    mutual_nh: tuple[tuple[int, float], ...]
+    """Mutual added inductance with other crossings of the same gap, by their number."""
+
+
+def can_solve(task: Task) -> bool:
+    """Whether the solve sees the way that the return takes.
+
+    A gap inside one island always has a way round in the plane. Where the islands are cut apart,
+    the bridges carry all of the return: the solve then knows vias to the plane beyond, and nothing
+    else well enough.
+    """
+    if task.crossing.islands[0] == task.crossing.islands[1]:
+        return True
+    best = task.route.best
+    return best is not None and len(best.bridges) == 2 and best.bridge_layer == task.beyond
+
+
+def cluster(tasks: Sequence[Task]) -> tuple[tuple[Task, ...], ...]:
+    """Put together crossings that one solve serves.
+
+    They are over one gap, from one layer, under the same planes, and near one another.
+    """
+    groups: dict[tuple[object, ...], list[Task]] = defaultdict(list)
+    for task in tasks:
+        c = task.crossing
+        groups[c.plane, c.gap, c.layer, task.beyond or 0, task.other or 0].append(task)
+    clusters: list[tuple[Task, ...]] = []
+    for _, members in sorted(groups.items()):
+        clusters.extend(_near_one_another(members))
+    return tuple(clusters)
+
+
+def _near_one_another(tasks: Sequence[Task]) -> list[tuple[Task, ...]]:
+    """Split tasks into chains of neighbours."""
+    left = sorted(tasks, key=lambda task: (task.crossing.at, task.number))
+    clusters = []
+    while left:
+        members = [left.pop(0)]
+        grown = True
+        while grown and len(members) < MOST_TRACES:
+            at = np.array([task.crossing.at for task in members])
+            near = [
+                task
+                for task in left
+                if np.hypot(*(at - np.asarray(task.crossing.at)).T).min() <= TOGETHER_MM
+            ][: MOST_TRACES - len(members)]
+            grown = bool(near)
+            members.extend(near)
+            left = [task for task in left if task not in near]
+        clusters.append(tuple(sorted(members, key=lambda task: task.number)))
+    return clusters
+
+
+class Fields:
+    """The board as the solves see it; built once, asked for every cluster."""
+
+    def __init__(self, board: Board, planes: dict[int, Plane], graph: IslandGraph) -> None:
+        self.board = board
+        self.planes = planes
+        self.graph = graph
+        self._foreign: dict[int, shapely.STRtree] = {}
+
+    def solve(self, tasks: Sequence[Task]) -> dict[int, Field]:
+        """Solve for crossings that belong together.
+
+        Parameters
+        ----------
+        tasks
+            A cluster.
+
+        Returns
+        -------
+        Solved values by number of the crossing. Left out are those that the solve finds no way
+        back for, because the way it would have to take leads over more layers than it knows.
+        """
+        first = tasks[0].crossing
+        plane = self.planes[first.plane]
+        window = _window(tasks)
+        traces = [_trace(task, plane.gaps[first.gap].shape) for task in tasks]
+        solution = engine.added(
+            self._gaps(tasks, window, [trace.line for trace in traces]),
+            traces,
+            tasks[0].height_mm,
+            beyond_mm=self._apart_mm(first.plane, tasks[0].beyond),
+            above_mm=self._apart_mm(first.plane, tasks[0].other),
+            bridges=self._bridges(tasks),
+            outside=_outside(plane, window),
+        )
+        return {
+            task.number: Field(
+                Inductance(float(solution.added_nh[i, i]), float(solution.error_nh[i, i])),
+                tuple(
+                    (other.number, float(solution.added_nh[i, j]))
+                    for j, other in enumerate(tasks)
+                    if j != i and not solution.cut_off[j]
+                ),
+            )
+            for i, task in enumerate(tasks)
+            if not solution.cut_off[i] and isfinite(float(solution.added_nh[i, i]))
+        }
+
+    def _apart_mm(self, plane: int, other: int | None) -> float | None:
+        return None if other is None else self.board.stack.height_mm(plane, other)
+
+    def _gaps(
+        self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString]
+    ) -> list[Polygon]:
+        """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out."""
+        plane = self.planes[tasks[0].crossing.plane]
+        across = shapely.union_all(lines)
+        least = SMALL_SHARE * tasks[0].height_mm
+        crossed = plane.gaps[tasks[0].crossing.gap].shape
+        beside = []
+        for number in sorted(plane.gap_boxes.intersection(window.bounds)):
+            shape = plane.gaps[number].shape
+            if shape is crossed or box_size_mm(shape) < least or shape.intersects(across):
+                continue
+            beside.append((shape.distance(across), number))
+        chosen = [plane.gaps[number].shape for _, number in sorted(beside)[:MOST_NEIGHBOURS]]
+        foreign = self._foreign_copper(plane, window)
+        return [
+            polygon
+            for shape in (crossed, *chosen)
+            for polygon in _polygons(shapely.difference(_clipped(shape, window), foreign))
+        ]
+
+    def _foreign_copper(self, plane: Plane, window: Polygon) -> shapely.Geometry:
+        """Copper of the plane's layer that carries no return: no flux goes through it either."""
+        if plane.layer not in self._foreign:
+            islands = {island.part for island in plane.islands}
+            self._foreign[plane.layer] = shapely.STRtree(
+                [
+                    part.shape
+                    for part in self.board.parts
+                    if part.layer == plane.layer and part.id not in islands
+                ]
+            )
+        tree = self._foreign[plane.layer]
+        return shapely.union_all(tree.geometries[np.sort(tree.query(window))])
+
+    def _bridges(self, tasks: Sequence[Task]) -> list[engine.ViaBridge | engine.Strap]:
+        """Bridges that the ways round can take: vias to the plane beyond, or straps.
+
+        A plane on the trace's other side is in the solve already and needs no strap.
+        """
+        crossing = tasks[0].crossing
+        vias: set[Point] = set()
+        straps: dict[tuple[Point, ...], engine.Strap] = {}
+        for task in tasks:
+            for way in (task.route.left, task.route.right):
+                if way is None or len(way.bridges) != 2:
+                    continue
+                if way.bridge_layer == task.beyond:
+                    vias.update(self._vias_like(task, way))
+                elif way.bridge_layer != task.other and (
+                    (way.bridge_layer > crossing.plane) == (crossing.layer > crossing.plane)
+                ):
+                    straps[way.bridges] = self._strap(crossing, way.bridges, way.bridge_layer)
+        return [
+            *(strap for _, strap in sorted(straps.items())),
+            *(engine.ViaBridge(shapely.Point(at), VIA_MM) for at in sorted(vias)),
+        ]
+
+    def _vias_like(self, task: Task, way: Way) -> list[Point]:
+        """The vias of a way and those that join the same islands hardly farther off."""
+        crossing = task.crossing
+        plane = self.planes[crossing.plane]
+        borrowed = {
+            island.id
+            for island in self.planes[way.bridge_layer].islands
+            if island.net_name == way.bridge_net
+        }
+        found: list[Point] = list(way.bridges)
+        for number, at, bridge in zip(
+            crossing.islands, (crossing.before, crossing.after), way.bridges, strict=True
+        ):
+            island = plane.islands[number].id
+            reach = VIAS_AS_NEAR * float(np.hypot(bridge[0] - at[0], bridge[1] - at[1])) + 1.0
+            for other in sorted(borrowed & set(self.graph.adj[island])):
+                places = bridges_between(self.graph, island, other)
+                far = np.hypot(*(places - np.asarray(at)).T)
+                order = np.argsort(far, kind="stable")[:MOST_VIAS]
+                found.extend(
+                    (float(places[i, 0]), float(places[i, 1])) for i in order if far[i] <= reach
+                )
+        return found
+
+    def _strap(self, crossing: Crossing, ends: tuple[Point, ...], layer: int) -> engine.Strap:
+        """A way over copper on the trace's side of the plane."""
+        height = self.board.stack.height_mm(crossing.plane, layer)
+        line = LineString(ends)
+        return engine.Strap(line, STRAP_MM, height, via_pair_nh(line.length, VIA_MM, height))
+
+
+def _outside(plane: Plane, window: Polygon) -> Polygon | None:
+    """What the plane's layer may hold copper in, if the window looks beyond it."""
+    if not plane.gaps or not plane.gaps[0].open:
+        return None
+    frame: Polygon = shapely.box(*plane.gaps[0].shape.bounds)
+    return None if frame.contains_properly(window) else frame
+
+
+def _window(tasks: Sequence[Task]) -> Polygon:
+    """A box round the crossings and their ways round, with room to spare."""
+    points = [point for task in tasks for point in task.crossing.path]
+    for task in tasks:
+        for way in (task.route.left, task.route.right):
+            if way is not None:
+                points.extend(way.path)
+    x0, y0 = np.min(points, axis=0)
+    x1, y1 = np.max(points, axis=0)
+    room = BEYOND_MM + BEYOND_SHARE * max(x1 - x0, y1 - y0) + 5 * tasks[0].height_mm
+    box: Polygon = shapely.box(x0 - room, y0 - room, x1 + room, y1 + room)
+    return box
+
+
+def _trace(task: Task, gap: Polygon) -> engine.TraceOver:
+    """The trace over the gap; what of it comes over the same gap again is another crossing."""
+    stretch = LineString(task.crossing.stretch)
+    away = shapely.difference(stretch, gap)
+    run = LineString([task.crossing.before, *task.crossing.path, task.crossing.after])
+    touching = [part for part in getattr(away, "geoms", [away]) if shapely.dwithin(part, run, 1e-6)]
+    line = shapely.line_merge(shapely.union_all([*touching, LineString(task.crossing.path)]))
+    if line.geom_type != "LineString":
+        line = stretch
+    return engine.TraceOver(line, task.crossing.width_mm)
+
+
+def _clipped(shape: Polygon, window: Polygon) -> shapely.Geometry:
+    if window.contains(shapely.box(*shape.bounds)):
+        return shape
+    clipped = shapely.clip_by_rect(shape, *window.bounds)
+    return clipped if clipped.is_valid else shapely.make_valid(clipped)
+
+
+def _polygons(shape: shapely.Geometry) -> list[Polygon]:
+    parts = getattr(shape, "geoms", [shape])
+    return [part for part in parts if isinstance(part, Polygon) and part.area > 1e-9] + [
+        inner for part in parts if isinstance(part, MultiPolygon) for inner in _polygons(part)
+    ]
