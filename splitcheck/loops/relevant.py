@@ -16,6 +16,7 @@ from splitcheck.units import MU0, Floats
 
 #: Gaps are snapped to this grid, so that rims that should coincide do, mm.
 _SNAP_MM = 1e-6
+_DECIMALS = 9
 #: The outside of the plane is a gap out to this many times its larger side.
 _REACH = 2.5
 #: ... but only to this many times the distance of another plane, if there is one.
@@ -102,6 +103,7 @@ def _merged(
     """Valid polygons that do not touch, in a fixed order, and which of them is the outside."""
     shapes = np.array(gaps, dtype=object).reshape(-1)
     if not disjoint:
+        shapes = shapely.transform(shapes, lambda points: points.round(_DECIMALS))
         shapes = _joined(shapely.get_parts(shapely.make_valid(shapes)))
     if outside is not None:
         shapes = _with_outside(shapes, outside, reach_mm)
