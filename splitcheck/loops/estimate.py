@@ -209,8 +209,10 @@ def added(
     along the gap, not across it: there it costs what a plane edge that far off costs per length.
     A plane with a share k of the return adds k^2 of the whole.
     """
+    left = between(shielding(beyond_mm, gap_mm), shielding(above_mm, gap_mm))
     stubs = [
-        2.0 * stub_nh(reach, gap_mm, height_mm, width_mm) + bridge
+        # what a bridge adds lies between the planes: the plane beyond does not shield it
+        2.0 * stub_nh(reach, gap_mm, height_mm, width_mm) * left + bridge
         for reach, bridge in zip(reach_mm, bridge_nh, strict=True)
         if reach < inf
     ]
@@ -222,11 +224,13 @@ def added(
     spread = height_mm + width_mm / 4.0
     if gap_mm > LONG_RUN * nearest or nearest < spread:
         # along a gap rather than across it: copper that ends as far off as the return is
-        value = gap_mm * beside_edge_nh_mm(-nearest, height_mm)
+        value = gap_mm * beside_edge_nh_mm(-nearest, height_mm) * left
+        value += bridge_nh[reach_mm.index(nearest)]
         error += 0.4
     elif nearest < 3.0 * spread:
         error += 0.4
-    value *= between(shielding(beyond_mm, gap_mm), shielding(above_mm, gap_mm))
+    if len(stubs) == 1 and nearest < 6.0 * spread and not any(bridge_nh):
+        error += 0.2  # on one side only the return spreads less than the stub's formula has it
     if beyond_mm is not None or above_mm is not None:
         error += 0.2
     value *= share**2
