@@ -53,7 +53,7 @@ def noise_mv(added_nh: float, drive: Drive) -> float:
     >>> round(noise_mv(3.0, DEFAULT_DRIVE))
     99
     """
-    if added_nh <= 0.0:
+    if added_nh < 1e-12:  # so small that tr / tau may not be a number
         return 0.0
     tau_ns = added_nh / (2.0 * drive.line_ohm)
     return 2.0 * drive.wave_mv * tau_ns / drive.rise_ns * (1.0 - exp(-drive.rise_ns / tau_ns))
