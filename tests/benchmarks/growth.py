@@ -7,6 +7,7 @@ linear; n log n from 1 to 16 boards of this size shows about 1.1.
 
 from __future__ import annotations
 
+import json
 import sys
 from math import log
 from pathlib import Path
@@ -18,8 +19,7 @@ import numpy as np
 from fixtures.making.plan import BoardPlan, Cut, Hole, Pad, Point, Pour, Trace, box
 from fixtures.making.write import write_board
 from fixtures.tide_logger import HEIGHT_MM, WIDTH_MM, tide_logger
-from splitcheck.road import Options, rank
-from tests.benchmarks.measure import load, table
+from tests.benchmarks.measure import load, measure, table
 
 TIMES = 3
 APART_MM = 2.0
@@ -72,16 +72,20 @@ def _copy(item: Item, number: int, shift: Point) -> Item:
 
 def _seconds(folder: Path) -> tuple[int, int, dict[str, float]]:
     """Marks, findings, and the best time of every stage."""
+    out = folder / "report.json"
+    rank = [sys.executable, "-m", "splitcheck", "rank", str(folder), "--quiet", "--jobs", "1"]
     best: dict[str, float] = {}
     for _ in range(TIMES):
-        report = rank(folder, Options(jobs=1))
-        for stage, seconds in report.seconds:
+        measure([*rank, "--fail-at", "never", "--out", f"json={out}"])
+        report = json.loads(out.read_text(encoding="utf-8"))
+        out.unlink()
+        for stage, seconds in report["summary"]["seconds"].items():
             best[stage] = min(seconds, best.get(stage, seconds))
     marks = sum(
         text.count("D01*") + text.count("D03*")
         for text in (path.read_text(encoding="ascii") for path in folder.glob("*.gbr"))
     )
-    return marks, len(report.findings), best
+    return marks, len(report["findings"]), best
 
 
 def exponent(marks: list[int], seconds: list[float]) -> float:
