@@ -65,8 +65,8 @@ def test_small_copper_is_no_island_to_bridge_to() -> None:
 
 @pytest.mark.parametrize(("reach_mm", "near"), [(4.9, False), (5.0, True), (9.0, True)])
 def test_stitched_near_counts_from_hole_centres(reach_mm: float, *, near: bool) -> None:
-    """A hole at a distance of exactly 5 mm."""
-    graph = islands_joined(_made((5, 5)))
+    """The nearer of two holes is exactly 5 mm away."""
+    graph = islands_joined(_made((5, 5), (1, 29)))
     assert stitched_near(graph, "L1.1", "L2.1", (8, 9), reach_mm) is near
     assert not stitched_near(graph, "L1.2", "L2.1", (8, 9), reach_mm)
 

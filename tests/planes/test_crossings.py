@@ -139,6 +139,17 @@ def test_plane_hidden_by_a_nearer_one() -> None:
     assert bare == ()
 
 
+def test_gap_entered_from_a_nearer_plane_is_not_crossed() -> None:
+    """The nearer plane ends where the slot begins: the farther one carried nothing before it."""
+    made = board(
+        Sheet(lines=(Line("CLK", ((5, 15), (35, 15))),)),
+        Sheet((("GND", shapely.box(0, 0, 19.5, 30)),)),
+        _cut(SLOT),
+        outline=OUTLINE,
+    )
+    assert [c for c in crossings(made)[0] if c.plane == 3] == []
+
+
 def test_gap_over_a_plane_beyond_is_a_crossing_still() -> None:
     """The nearer plane carried the return: the farther one does not undo its gap."""
     made = board(

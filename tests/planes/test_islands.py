@@ -70,6 +70,17 @@ def test_island_within_an_island_within_an_island() -> None:
     assert [round(gap.shape.area, 6) for gap in found.gaps[1:]] == [600 - 28 * 18, 100 - 64]
 
 
+def test_plane_larger_than_the_ring_round_it() -> None:
+    """A thin guard ring, a plane inside it, an island in that plane: two rings of gap."""
+    ring = _holed(shapely.box(0, 0, 40, 30), shapely.box(1, 1, 39, 29))
+    middle = _holed(shapely.box(2, 2, 38, 28), shapely.box(15, 10, 25, 20))
+    inner = shapely.box(16, 11, 24, 19)
+    found = plane(_with(("GND", ring), ("+5V", middle), ("+3V3", inner)), 2)
+    assert [island.net_name for island in found.islands] == ["+5V", "GND", "+3V3"]
+    areas = [round(gap.shape.area, 6) for gap in found.gaps[1:]]
+    assert areas == [38 * 28 - 36 * 26, 100 - 64]
+
+
 def test_foreign_copper_in_a_hole_is_gap() -> None:
     """A signal's area within a ground plane carries no return: the hole stays a whole gap."""
     moat = shapely.box(10, 10, 14, 14)
