@@ -13,6 +13,7 @@ from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.board.board import Board
 from splitcheck.copper.marks import Point
+from splitcheck.errors import SplitcheckError
 from splitcheck.loops import solve as engine
 from splitcheck.loops.bridges import IslandGraph, bridges_between
 from splitcheck.loops.estimate import Inductance, via_pair_nh
@@ -28,7 +29,7 @@ TOGETHER_MM = 4.0
 #: ... but not more of them at once.
 MOST_TRACES = 40
 #: At most so many other gaps near the crossed one are looked at.
-MOST_NEIGHBOURS = 60
+MOST_NEIGHBOURS = 12
 #: Gaps smaller than this share of the height do not matter unless crossed.
 SMALL_SHARE = 1.0
 #: Barrel of a plated hole taken as a bridge, mm (common practice, no source).
@@ -134,21 +135,26 @@ class Fields:
         Returns
         -------
         Solved values by number of the crossing. Left out are those that the solve finds no way
-        back for, because the way it would have to take leads over more layers than it knows.
+        back for, because the way it would have to take leads over more layers than it knows, and
+        those with more gaps round them than it can take.
         """
         first = tasks[0].crossing
         plane = self.planes[first.plane]
         window = _window(tasks)
         traces = [_trace(task, plane.gaps[first.gap].shape) for task in tasks]
-        solution = engine.added(
-            self._gaps(tasks, window, [trace.line for trace in traces]),
-            traces,
-            tasks[0].height_mm,
-            beyond_mm=self._apart_mm(first.plane, tasks[0].beyond),
-            above_mm=self._apart_mm(first.plane, tasks[0].other),
-            bridges=self._bridges(tasks),
-            outside=_outside(plane, window),
-        )
+        try:
+            solution = engine.added(
+                self._gaps(tasks, window, [trace.line for trace in traces]),
+                traces,
+                tasks[0].height_mm,
+                beyond_mm=self._apart_mm(first.plane, tasks[0].beyond),
+                above_mm=self._apart_mm(first.plane, tasks[0].other),
+                bridges=self._bridges(tasks),
+                outside=_outside(plane, window),
+                disjoint=True,
+            )
+        except SplitcheckError:  # more gaps here than can be solved for: closed forms have to do
+            return {}
         return {
             task.number: Field(
                 Inductance(float(solution.added_nh[i, i]), float(solution.error_nh[i, i])),

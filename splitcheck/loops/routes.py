@@ -32,6 +32,8 @@ FIRST_BRIDGES = 12
 OTHER_SIDE = 5.0
 #: A straight leg to a bridge passes gaps up to this size, mm (antipads), and stops at larger ones.
 SMALL_GAP_MM = 3.0
+#: The corners of a crossed gap up to this size are all looked at from the start, mm.
+SMALL_DETOUR_MM = 12.0
 
 
 class Way(NamedTuple):
@@ -188,6 +190,10 @@ def shortest(
     widest = straight + 4 * (x1 - x0 + y1 - y0) + 1.0
     widest = min(widest, longest_mm)
     limit = 2 * straight + 2.0
+    for gap in first:  # a small gap is gone round at once, whatever the way
+        size = box_size_mm(terrain.plane.gaps[gap].shape)
+        if size < SMALL_DETOUR_MM:
+            limit = max(limit, straight + 4 * size)
     coarse = 0
     while True:
         tried = _within(terrain, start, goal, barrier, min(limit, widest), CLEAR_MM[coarse], first)
@@ -323,10 +329,10 @@ def find_route(
     start, goal = crossing.before, crossing.after
     straight = float(np.hypot(goal[0] - start[0], goal[1] - start[1]))
     one, other = (plane.islands[i].id for i in crossing.islands)
-    borrowed = _over_bridges(crossing, planes, terrains, graph)
-    sides: dict[int, Way] = {side: way for way, side in borrowed}
+    sides: dict[int, Way] = {}
     if one == other:
         _add_own_ways(sides, crossing, terrains[crossing.plane])
+    _add_borrowed_ways(sides, crossing, planes, terrains, graph)
     joined = one == other or nx.has_path(graph, one, other)
     if joined and not sides:
         chain = _chain(graph, one, other, start, goal)
@@ -380,22 +386,24 @@ def _wall(crossing: Crossing, side: int) -> LineString:
     return LineString([(x, y), (x - dy * far, y + dx * far)])
 
 
-def _over_bridges(
-    crossing: Crossing, planes: dict[int, Plane], terrains: dict[int, Terrain], graph: IslandGraph
-) -> list[tuple[Way, int]]:
-    """The best way on either side over a plated hole, another layer's island and a hole back."""
+def _add_borrowed_ways(
+    sides: dict[int, Way],
+    crossing: Crossing,
+    planes: dict[int, Plane],
+    terrains: dict[int, Terrain],
+    graph: IslandGraph,
+) -> None:
+    """Put in shorter ways over a plated hole, another layer's island and a plated hole back."""
     plane = planes[crossing.plane]
     one, other = (plane.islands[i].id for i in crossing.islands)
-    best: dict[int, Way] = {}
     for middle in sorted(set(graph.adj[one]) & set(graph.adj[other])):
         island = graph.nodes[middle]["island"]
         down = _candidates(crossing, bridges_between(graph, one, middle), -1)
         up = _candidates(crossing, bridges_between(graph, middle, other), 1)
-        search = _Search(crossing, terrains[crossing.plane], terrains[island.layer], best)
+        search = _Search(crossing, terrains[crossing.plane], terrains[island.layer], sides)
         for length, side, a, b in search.pairs(down, up):
             path = (crossing.before, a, b, crossing.after)
-            best[side] = Way(length, path, (a, b), island.net_name, island.layer)
-    return [(way, side) for side, way in sorted(best.items())]
+            sides[side] = Way(length, path, (a, b), island.net_name, island.layer)
 
 
 def _candidates(crossing: Crossing, places: Floats, end: int) -> Floats:
@@ -436,16 +444,17 @@ class _Search:
         """
         found: dict[int, tuple[float, int, Point, Point]] = {}
         through = [_through(self.crossing, down), _through(self.crossing, up)]
+        left = [float(far[0]) if len(far) else inf for far in through]
+        if max(left) >= self._enough():
+            return []
         taken = FIRST_BRIDGES
-        while len(down) and len(up):
+        while min(left) < self._enough():
             reached = [self._reached(down[:taken], -1), self._reached(up[:taken], 1)]
             for pair in self._best_of(*reached):
                 if pair[0] < self.known.get(pair[1], inf):
                     self.known[pair[1]] = pair[0]
                     found[pair[1]] = pair
             left = [float(far[taken]) if taken < len(far) else inf for far in through]
-            if min(left) >= self._enough():
-                break
             taken *= 3
         return [found[side] for side in sorted(found)]
 
