@@ -6,6 +6,6 @@ import os
 # fight for them. It must be said before numpy is first imported.
 os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
 
-from splitcheck.cli.entry import main, run  # noqa: E402  # see above
+from splitcheck.cli.entry import main, run
 
 __all__ = ["main", "run"]
