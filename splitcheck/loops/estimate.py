@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from itertools import pairwise
 from math import acosh, e, hypot, inf, log, log1p, pi, sqrt
 
 from splitcheck.units import MU0
@@ -12,8 +11,6 @@ from splitcheck.units import MU0
 STUB_NH_MM = 0.987
 #: A run this many times longer than the nearest copper is away goes along the gap.
 LONG_RUN = 3.0
-#: Plane beyond at d: share of the unshielded value by d / gap width (see ``shielding``).
-SHIELD = ((0.1, 0.113), (0.2, 0.203), (0.5, 0.404), (1.2, 0.660), (3.0, 0.889))
 
 
 @dataclass(frozen=True, slots=True)
@@ -89,29 +86,34 @@ def beside_edge_nh_mm(inside_mm: float, height_mm: float) -> float:
     return MU0 / (2.0 * pi) * log(2.0 * sqrt(rho * less / 2.0) / height_mm)
 
 
-def shielding(beyond_mm: float | None, gap_mm: float) -> float:
-    """Share of a slot's inductance that is left with a whole plane beyond it at some distance.
+def shielding(beyond_mm: float | None, gap_mm: float, reach_mm: float, height_mm: float) -> float:
+    """Share of a gap's inductance that is left with a whole plane beyond it at some distance.
+
+    Parameters
+    ----------
+    beyond_mm
+        Distance from the broken plane to the whole one, mm, > 0; None: there is none.
+    gap_mm, reach_mm
+        Width of the gap along the trace and how far it reaches on either side, mm, > 0.
+    height_mm
+        Height of the trace over the broken plane, mm, > 0.
 
     Notes
     -----
-    Interpolated in the logarithm of distance over slot width; the anchors are from a sheet solver
-    (slot 20 mm by 1 mm, height 0.2 mm). The law of the limit is linear: the current crosses as
-    between parallel plates.
+    1/(1 + (l/d)^1.15) with l = 0.215 s^0.17 a^0.62 h^0.21: the field of a gap fades at a
+    distance that grows with its length and hardly with its width. Fitted to 345 runs of this
+    package's own field solve (s 0.2 to 8, a 1 to 8, h 0.1 to 0.5, d 0.1 to 2 mm): 6.5 % rms, 38 %
+    at worst; not a law.
 
     Examples
     --------
-    >>> shielding(None, 1.0), round(shielding(0.5, 1.0), 3), round(shielding(0.05, 1.0), 3)
-    (1.0, 0.404, 0.057)
+    >>> shielding(None, 1.0, 10.0, 0.2), round(shielding(0.5, 1.0, 10.0, 0.2), 2)
+    (1.0, 0.43)
     """
     if beyond_mm is None:
         return 1.0
-    ratio = beyond_mm / gap_mm
-    if ratio <= SHIELD[0][0]:
-        return SHIELD[0][1] * ratio / SHIELD[0][0]
-    for (x0, y0), (x1, y1) in pairwise(SHIELD):
-        if ratio <= x1:
-            return y0 + (y1 - y0) * log(ratio / x0) / log(x1 / x0)
-    return 1.0 - (1.0 - SHIELD[-1][1]) * SHIELD[-1][0] / ratio
+    fades_mm = 0.215 * gap_mm**0.17 * reach_mm**0.62 * height_mm**0.21
+    return 1.0 / (1.0 + float((fades_mm / beyond_mm) ** 1.15))
 
 
 def between(below: float, above: float) -> float:
@@ -209,12 +211,16 @@ def added(
     along the gap, not across it: there it costs what a plane edge that far off costs per length.
     A plane with a share k of the return adds k^2 of the whole.
     """
-    left = between(shielding(beyond_mm, gap_mm), shielding(above_mm, gap_mm))
+    reach = _both_sides_mm(reach_mm)
+    left = between(
+        shielding(beyond_mm, gap_mm, reach, height_mm),
+        shielding(above_mm, gap_mm, reach, height_mm),
+    )
     stubs = [
         # what a bridge adds lies between the planes: the plane beyond does not shield it
-        2.0 * stub_nh(reach, gap_mm, height_mm, width_mm) * left + bridge
-        for reach, bridge in zip(reach_mm, bridge_nh, strict=True)
-        if reach < inf
+        2.0 * stub_nh(side, gap_mm, height_mm, width_mm) * left + bridge
+        for side, bridge in zip(reach_mm, bridge_nh, strict=True)
+        if side < inf
     ]
     if not stubs:
         return None
@@ -235,3 +241,9 @@ def added(
         error += 0.2
     value *= share**2
     return Inductance(value, error * value + 0.01)
+
+
+def _both_sides_mm(reach_mm: tuple[float, float]) -> float:
+    """Reach of the even gap that adds as much: the two sides are in parallel."""
+    one, other = (max(reach, 1e-3) for reach in reach_mm)
+    return 2.0 * min(one, other) if inf in (one, other) else 2.0 * one * other / (one + other)

@@ -131,10 +131,10 @@ def test_plane_with_a_share_adds_the_square_of_it(left: float, right: float, sha
 @given(gaps, distances, st.floats(0.001, 5.0))
 def test_nearer_plane_beyond_shields_more(gap: float, beyond: float, more: float) -> None:
     """From nothing left right on it to all left far away."""
-    near, far = shielding(beyond, gap), shielding(beyond + more, gap)
+    near, far = shielding(beyond, gap, 5.0, 0.2), shielding(beyond + more, gap, 5.0, 0.2)
     assert 0 < near <= far < 1
-    assert shielding(1e6 * gap, gap) == pytest.approx(1.0, abs=1e-5)
-    assert shielding(1e-6 * gap, gap) == pytest.approx(0.0, abs=1e-5)
+    assert shielding(1e6 * gap, gap, 5.0, 0.2) == pytest.approx(1.0, abs=1e-5)
+    assert shielding(1e-6 * gap, gap, 5.0, 0.2) == pytest.approx(0.0, abs=1e-5)
 
 
 @given(st.floats(0.01, 1.0), st.floats(0.01, 1.0))
