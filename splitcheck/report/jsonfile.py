@@ -101,6 +101,8 @@ def _finding(finding: Finding) -> Json:
         "added_nh": _to(4, finding.added_nh),
         "error_nh": _to(4, finding.error_nh),
         "method": finding.method,
+        "estimated_nh": _to(4, finding.estimated_nh),
+        "estimated_error_nh": _to(4, finding.estimated_error_nh),
         "noise_mv": _to(2, finding.noise_mv),
         "rise_ns": _to(4, finding.rise_ns),
         "corner_khz": _to(4, finding.corner_khz),

@@ -82,6 +82,9 @@ class Finding:
     fingerprint: str
     reason: str
     """One sentence for a person: what is missing, where the return goes instead."""
+    estimated_nh: float | None = None
+    """What closed forms say, where that differs from the solved value by more than both errors."""
+    estimated_error_nh: float | None = None
 
 
 @dataclass(frozen=True, slots=True)

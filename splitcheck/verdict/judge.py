@@ -408,7 +408,17 @@ def _finding(
         waived=None,
         fingerprint=_fingerprint(item.kind, net, layers[crossing.layer - 1].name, at),
         reason=_reason(scene, item),
+        **_disagreement(item.estimate, field),
     )
+
+
+def _disagreement(first: Inductance | None, field: Field | None) -> dict[str, float]:
+    """The closed-form value, to be kept beside a solved one that it does not agree with."""
+    if first is None or field is None:
+        return {}
+    if abs(first.added_nh - field.value.added_nh) <= first.error_nh + field.value.error_nh:
+        return {}
+    return {"estimated_nh": first.added_nh, "estimated_error_nh": first.error_nh}
 
 
 def _mutual(
