@@ -10,6 +10,7 @@ from math import isfinite
 import numpy as np
 import shapely
 from shapely import LineString, MultiPolygon, Polygon
+from shapely.ops import substring
 
 from splitcheck.board.board import Board
 from splitcheck.copper.marks import Point
@@ -28,6 +29,8 @@ BEYOND_SHARE = 0.3
 TOGETHER_MM = 4.0
 #: ... but not more of them at once.
 MOST_TRACES = 40
+#: A trace is solved with at least this many heights of it beyond either rim of its gap.
+ENDS = 10.0
 #: At most so many other gaps near the crossed one are looked at.
 MOST_NEIGHBOURS = 12
 #: Gaps smaller than this share of the height do not matter unless crossed.
@@ -50,6 +53,8 @@ class Task:
     """Its place among the crossings of the board."""
     crossing: Crossing
     route: Route
+    runs: tuple[tuple[Point, ...], ...]
+    """Centre lines of all runs that it stands for, its own among them."""
     height_mm: float
     beyond: int | None
     """Layer number of the whole plane beyond the broken one."""
@@ -284,15 +289,59 @@ def _window(tasks: Sequence[Task]) -> Polygon:
 
 
 def _trace(task: Task, gap: Polygon) -> engine.TraceOver:
-    """The trace over the gap; what of it comes over the same gap again is another crossing."""
+    """The trace over its runs and on either side of them.
+
+    Where it comes over the same gap again in a run that is judged by itself, it is cut short. A
+    short end goes straight on, if on copper: the source of a trace that ends right at the rim
+    would be that of its end, not of its length.
+    """
+    points: list[Point] = [(x, y) for x, y in _own_stretch(task, gap).coords]
+    for ahead in (False, True):
+        ends = points if ahead else points[::-1]
+        missing = ENDS * task.height_mm - _beyond_rim_mm(task.crossing, ends)
+        step = np.subtract(ends[-1], ends[-2])
+        length = float(np.hypot(*step))
+        if missing <= 0 or length <= 0:
+            continue
+        x, y = np.asarray(ends[-1]) + step / length * missing
+        end = (float(x), float(y))
+        if not LineString([ends[-1], end]).intersects(gap):
+            points = [*points, end] if ahead else [end, *points]
+    return engine.TraceOver(LineString(points), task.crossing.width_mm)
+
+
+def _own_stretch(task: Task, gap: Polygon) -> LineString:
+    """The stretch of a crossing up to where it would count another finding's run."""
     stretch = LineString(task.crossing.stretch)
-    away = shapely.difference(stretch, gap)
-    run = LineString([task.crossing.before, *task.crossing.path, task.crossing.after])
-    touching = [part for part in getattr(away, "geoms", [away]) if shapely.dwithin(part, run, 1e-6)]
-    line = shapely.line_merge(shapely.union_all([*touching, LineString(task.crossing.path)]))
-    if line.geom_type != "LineString":
-        line = stretch
-    return engine.TraceOver(line, task.crossing.width_mm)
+    own = shapely.union_all([LineString(path) for path in task.runs])
+    bare = shapely.intersection(stretch, gap)
+    mine: list[tuple[float, float]] = []
+    others: list[tuple[float, float]] = []
+    for part in getattr(bare, "geoms", [bare]):
+        if part.geom_type != "LineString":
+            continue
+        ends = sorted(
+            stretch.project(shapely.Point(end)) for end in (part.coords[0], part.coords[-1])
+        )
+        is_own = shapely.dwithin(part.interpolate(0.5, normalized=True), own, 1e-3)
+        (mine if is_own else others).append((ends[0], ends[1]))
+    if not mine or not others:
+        return stretch
+    first, last = min(start for start, _ in mine), max(stop for _, stop in mine)
+    before = max((stop for _, stop in others if stop <= first + 1e-6), default=None)
+    after = min((start for start, _ in others if start >= last - 1e-6), default=None)
+    room = 3 * task.height_mm
+    start = 0.0 if before is None else min(before + room, (before + first) / 2)
+    stop = stretch.length if after is None else max(after - room, (after + last) / 2)
+    cut = substring(stretch, start, stop)
+    return cut if isinstance(cut, LineString) else stretch
+
+
+def _beyond_rim_mm(crossing: Crossing, ends: Sequence[Point]) -> float:
+    """Length of the trace from the rim of the gap to the last of its points, mm."""
+    line = LineString(ends)
+    rims = (line.project(shapely.Point(rim)) for rim in (crossing.path[0], crossing.path[-1]))
+    return float(line.length - max(rims))
 
 
 def _clipped(shape: Polygon, window: Polygon) -> shapely.Geometry:

@@ -48,7 +48,7 @@ class Crossing:
     path: tuple[Point, ...]
     """Centre line of the run from entry to exit, both on the rim of the gap, mm."""
     stretch: tuple[Point, ...]
-    """The run with the trace on either side of it, up to where it branches or ends, mm."""
+    """The run with some of the trace on either side of it, straight on where it branches, mm."""
     before: Point
     """A point of the trace on copper just before the run."""
     after: Point
@@ -319,7 +319,7 @@ def _crossing(tracks: Tracks, plane: Plane, group: Sequence[_Bit], ends: _Ends) 
 
 
 def _followed(tracks: Tracks, rim: _Rim) -> list[Point]:
-    """Points of a trace from the rim of a gap outwards, until it branches or is long enough."""
+    """Points of a trace from the rim of a gap outwards; where it branches, straight on."""
     points: list[Point] = []
     piece, fraction, toward = rim.piece, rim.fraction, rim.toward
     left = STRETCH_MM
@@ -333,11 +333,21 @@ def _followed(tracks: Tracks, rim: _Rim) -> list[Point]:
         left -= ahead
         node = int(tracks.nodes[piece, toward])
         others = [other for other in tracks.at_node(node) if other != piece]
-        if len(others) != 1:
+        if not others:
             return points
-        piece = others[0]
+        piece = min(others, key=lambda other: _turn(tracks, piece, toward, other, node))
         first = int(tracks.nodes[piece, 0]) == node
         fraction, toward = (0.0, 1) if first else (1.0, 0)
+
+
+def _turn(tracks: Tracks, piece: int, toward: int, other: int, node: int) -> tuple[float, int]:
+    """How sharply a trace turns from one piece into another at a node; 0 is straight on."""
+    ahead = (tracks.end[piece] - tracks.start[piece]) * (1 if toward else -1)
+    leads = tracks.end[other] - tracks.start[other]
+    if int(tracks.nodes[other, 0]) != node:
+        leads = -leads
+    along = float(ahead @ leads) / float(tracks.length_mm[piece] * tracks.length_mm[other])
+    return round(1.0 - along, 9), other
 
 
 def _walk(tracks: Tracks, group: Sequence[_Bit]) -> nx.Graph[Place]:

@@ -42,6 +42,8 @@ CHANGE_RUN_MM = 5.0
 CHANGE_STITCH_MM = 3.0
 #: ... or, whatever their nets, if it is this many times longer than the planes are apart.
 CHANGE_RATIO = 10.0
+#: A run whose middle lies this near to the same stretch of trace is on it, mm.
+SAME_PLACE_MM = 1e-3
 #: From this ratio of length across the trace to length along it a closed gap is a slot.
 SLOT_RATIO = 2.5
 #: A trace this near the rim of a gap, as a share of its run, clips the gap rather than crosses it.
@@ -78,6 +80,13 @@ class Weighed:
     """Part of the return that the broken plane carries."""
     estimate: Inductance | None
     kind: Kind
+    runs: tuple[Crossing, ...]
+    """All runs that it stands for: one trace may pass over one gap several times."""
+
+    @property
+    def bare_mm(self) -> float:
+        """Length of all its runs, mm."""
+        return sum(crossing.run_mm for crossing in self.runs)
 
 
 def judge(
@@ -108,6 +117,7 @@ def judge(
             dropped[result] += 1
         else:
             weighed.append(result)
+    weighed = _once_a_gap(weighed)
     solved = _solve_all(scene, weighed, spread)
     findings: list[Finding] = []
     for number, item in enumerate(weighed):
@@ -121,6 +131,41 @@ def judge(
     return _with_ids(_with_shares(findings)), counts
 
 
+def _once_a_gap(weighed: Sequence[Weighed]) -> list[Weighed]:
+    """Join the runs of one stretch of trace over one gap of one island into the worst of them.
+
+    The return has to go round once for all of them, or not at all where the trace comes back; the
+    solve sees the whole stretch. Adding their values up would count it several times.
+    """
+    groups: dict[tuple[int, ...], list[Weighed]] = defaultdict(list)
+    for item in weighed:
+        c = item.crossing
+        groups[c.net, c.layer, c.plane, c.gap, *c.islands].append(item)
+    kept: list[Weighed] = []
+    for key, members in sorted(groups.items()):
+        left = sorted(members, key=_by_estimate)
+        if key[-1] != key[-2]:
+            kept.extend(left)
+            continue
+        while left:
+            worst = left.pop(0)
+            stretch = shapely.LineString(worst.crossing.stretch)
+            same = [
+                item
+                for item in left
+                if shapely.dwithin(stretch, shapely.Point(item.crossing.at), SAME_PLACE_MM)
+            ]
+            left = [item for item in left if item not in same]
+            runs = (worst.crossing, *(item.crossing for item in same))
+            kept.append(replace(worst, runs=runs))
+    return kept
+
+
+def _by_estimate(item: Weighed) -> tuple[float, float, tuple[float, float]]:
+    added = inf if item.estimate is None else item.estimate.added_nh
+    return (-added, -item.crossing.run_mm, item.crossing.at)
+
+
 def _solve_all(scene: Scene, weighed: Sequence[Weighed], spread: Spread) -> dict[int, Field]:
     """Solve for every crossing that has a way back, those over one gap together."""
     tasks = [
@@ -128,6 +173,7 @@ def _solve_all(scene: Scene, weighed: Sequence[Weighed], spread: Spread) -> dict
             number,
             item.crossing,
             item.route,
+            tuple(crossing.path for crossing in item.runs),
             scene.board.stack.height_mm(item.crossing.layer, item.crossing.plane),
             item.beyond,
             item.other,
@@ -302,7 +348,7 @@ def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
     kind = _kind(crossing, scene.planes[crossing.plane].gaps[crossing.gap], route)
     if kind == "edge-run":
         return "runs beyond the rim of a plane (edge runs)"
-    return Weighed(crossing, route, beyond, other, share, value, kind)
+    return Weighed(crossing, route, beyond, other, share, value, kind, (crossing,))
 
 
 def _crossing_finding(
@@ -390,7 +436,7 @@ def _finding(
         plane_layer=layers[crossing.plane - 1].name,
         plane_net=" to ".join(dict.fromkeys(island.net_name for island in islands)),
         at_mm=at,
-        gap_mm=crossing.run_mm,
+        gap_mm=item.bare_mm,
         detour_mm=route.detour_mm if route.joined else None,
         added_nh=None if value is None else value.added_nh,
         error_nh=None if value is None else value.error_nh,
@@ -459,7 +505,9 @@ def _reason(scene: Scene, item: Weighed) -> str:
             f"{other.net_name} ({other.id})"
         )
     else:
-        start = f"{name} ({one.net_name}) is open for {crossing.run_mm:.2f} mm under the trace"
+        start = f"{name} ({one.net_name}) is open for {item.bare_mm:.2f} mm under the trace"
+        if len(item.runs) > 1:
+            start += f", in {len(item.runs)} places"
     way = _way_in_words(scene, item.route, item.share)
     return "; ".join([start, way, *_extras(scene, item)])
 
