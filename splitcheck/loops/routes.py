@@ -3,17 +3,18 @@
 from __future__ import annotations
 
 import heapq
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from itertools import pairwise
-from math import inf
-from typing import NamedTuple
+from math import floor, inf
+from typing import NamedTuple, TypeAlias
 
 import networkx as nx
 import numpy as np
 import shapely
 from numpy.typing import NDArray
 from shapely import LineString, MultiPolygon, Polygon
+from shapely.ops import substring
 
 from splitcheck.copper.marks import Point
 from splitcheck.loops.bridges import IslandGraph, bridges_between
@@ -24,8 +25,14 @@ from splitcheck.units import Floats, segments
 
 #: Ways keep this far off the gaps they go round, mm, and farther where corners are very many.
 CLEAR_MM = (0.01, 0.05, 0.2, 0.8)
+#: Entry and exit of a run lie this near to the rim of its gap, mm.
+RIM_MM = 1e-3
 #: More corners than this in reach: thin the gaps more coarsely.
-MOST_CORNERS = 300
+MOST_CORNERS = 330
+#: A point this near to a rim lies on it, mm.
+ON_RIM_MM = 1e-4
+#: Each ellipse in which a way is looked for reaches this much farther than the one before.
+WIDER = 2.5
 #: So many bridges are looked at first from either end of a crossing, then three times as many.
 FIRST_BRIDGES = 12
 #: A way on the other side of the trace this many times longer than the best is not looked for.
@@ -34,6 +41,16 @@ OTHER_SIDE = 5.0
 SMALL_GAP_MM = 3.0
 #: The corners of a crossed gap up to this size are all looked at from the start, mm.
 SMALL_DETOUR_MM = 12.0
+#: Corners of gaps whose rim has more points than this are found in tiles, as they are needed, ...
+TILED_POINTS = 400
+#: ... with sides of this length and so much room round them, mm.
+TILE_MM = 8.0
+TILE_MARGIN_MM = 0.5
+
+
+Box: TypeAlias = tuple[float, float, float, float]
+#: Column and row of a tile; None: the whole gap.
+Tile: TypeAlias = tuple[int, int] | None
 
 
 class Way(NamedTuple):
@@ -83,7 +100,9 @@ class Terrain:
     """The gaps of one plane as obstacles, and the corners at which ways bend round them."""
 
     plane: Plane
-    _corners: dict[tuple[int, float], Floats] = field(default_factory=dict)
+    _corners: dict[tuple[int, float, Tile], Floats] = field(default_factory=dict)
+    _rims: dict[int, Floats] = field(default_factory=dict)
+    _outlines: dict[int, Floats] = field(default_factory=dict)
     _large: MultiPolygon | None = None
 
     def shape(self, gap: int) -> Polygon:
@@ -92,20 +111,70 @@ class Terrain:
         shapely.prepare(shape)
         return shape
 
-    def corners(self, gap: int, clear_mm: float) -> Floats:
-        """Places just off a gap's rim at which a taut way round it may bend; shape (n, 3, 2).
+    def corners(self, gap: int, clear_mm: float, box: Box) -> Iterator[Floats]:
+        """Places just off a gap's rim at which a taut way round it may bend; shape (n, 3, 2) each.
 
-        Each comes with the corners of the rim before and after it.
+        Each comes with the corners of the rim before and after it. All those in the box are given,
+        and some others.
 
         The gap is widened by a little more than the rim is then thinned by: a way from corner to
         corner stays clear of it.
         """
-        key = (gap, clear_mm)
-        if key not in self._corners:
-            wider = self.plane.gaps[gap].shape.buffer(1.2 * clear_mm, quad_segs=2)
-            thinned = wider.simplify(clear_mm)
-            self._corners[key] = _bends(shapely.orient_polygons(thinned, exterior_cw=False))
-        return self._corners[key]
+        for tile in self._tiles(gap, box):
+            key = (gap, clear_mm, tile)
+            if key not in self._corners:
+                self._corners[key] = self._corners_in(gap, clear_mm, tile)
+            yield self._corners[key]
+
+    def _tiles(self, gap: int, box: Box) -> Iterator[Tile]:
+        """The tiles of an intricate gap that a box meets; None for the whole of a simple gap."""
+        shape = self.plane.gaps[gap].shape
+        if shapely.get_num_coordinates(shape) <= TILED_POINTS:
+            yield None
+            return
+        x0, y0, x1, y1 = shape.bounds
+        low = max(box[0], x0 - 1.0), max(box[1], y0 - 1.0)
+        high = min(box[2], x1 + 1.0), min(box[3], y1 + 1.0)
+        for i in range(floor(low[0] / TILE_MM), floor(high[0] / TILE_MM) + 1):
+            for j in range(floor(low[1] / TILE_MM), floor(high[1] / TILE_MM) + 1):
+                yield i, j
+
+    def _corners_in(self, gap: int, clear_mm: float, tile: Tile) -> Floats:
+        shape: shapely.Geometry = self.plane.gaps[gap].shape
+        if tile is not None:  # with a margin, so that its own border makes no corner in the tile
+            low, margin = np.array(tile) * TILE_MM, 4 * clear_mm + TILE_MARGIN_MM
+            shape = shapely.clip_by_rect(shape, *(low - margin), *(low + TILE_MM + margin))
+            shape = shapely.simplify(shape, 0.1 * clear_mm)
+        wider = shapely.simplify(shapely.buffer(shape, 1.2 * clear_mm, quad_segs=2), clear_mm)
+        bends = _bends(shapely.orient_polygons(wider, exterior_cw=False))
+        if tile is not None:  # and with the next corner, so that steps lead from tile to tile
+            mine = np.all((bends >= low) & (bends < low + TILE_MM), axis=2).any(axis=1)
+            room = margin - 2 * clear_mm
+            real = ((bends[:, 0] > low - room) & (bends[:, 0] < low + TILE_MM + room)).all(axis=1)
+            bends = bends[mine & real]
+        return bends
+
+    def rim_distance_mm(self, gap: int, at: Point, along: Point) -> float:
+        """How far it is from a point to a gap's rim in a direction of length 1; inf if never."""
+        if gap not in self._rims:
+            self._rims[gap] = _edges(self.plane.gaps[gap].shape)
+        return float(_met(self._rims[gap], at, along)[0].min(initial=inf))
+
+    def parted(self, island: int, entry: Point, exit_: Point, at: Point, along: Point) -> bool:
+        """Whether a wall from a gap outside an island parts the rim's points entry and exit.
+
+        What of the wall lies within the island's outline cuts it in two, and the rim into two arcs.
+        """
+        if island not in self._outlines:
+            self._outlines[island] = _edges(Polygon(self.plane.islands[island].shape.exterior))
+        outline = self._outlines[island]
+        ends = [_place_on(outline, point) for point in (entry, exit_)]
+        far, places = _met(outline, at, along)
+        if ends[0] is None or ends[1] is None or len(far) % 2:
+            return False
+        cuts = np.sort(places[np.argsort(far, kind="stable")].reshape(-1, 2), axis=1).T
+        between = [(cuts[0] < end) & (end < cuts[1]) for end in ends]
+        return bool((between[0] != between[1]).any())
 
     def blocked(self, starts: Floats, stops: Floats) -> NDArray[np.bool_]:
         """Whether straight legs, shape (n, 2) at either end, run into a gap larger than small."""
@@ -131,6 +200,36 @@ class Terrain:
         return [gap for gap in near if self.shape(gap).intersects(line)]
 
 
+def _edges(shape: Polygon) -> Floats:
+    """Edges of all rings as x1, y1, x2, y2, shape (4, n)."""
+    points, ring = shapely.get_coordinates(shapely.get_rings(shape), return_index=True)
+    ends = np.concatenate([points[:-1], points[1:]], axis=1)
+    return np.ascontiguousarray(ends[ring[1:] == ring[:-1]].T)
+
+
+def _met(edges: Floats, at: Point, along: Point) -> tuple[Floats, Floats]:
+    """Where a ray meets edges: how far out, mm, and the edge's number plus the part of it."""
+    x1, y1, x2, y2 = edges
+    first = along[0] * (y1 - at[1]) - along[1] * (x1 - at[0])
+    last = along[0] * (y2 - at[1]) - along[1] * (x2 - at[0])
+    met = np.flatnonzero((first < 0) != (last < 0))
+    part = first[met] / (first[met] - last[met])
+    x, y = (one[met] + part * (two[met] - one[met]) for one, two in ((x1, x2), (y1, y2)))
+    far = along[0] * (x - at[0]) + along[1] * (y - at[1])
+    return far[far >= 0], (met + part)[far >= 0]
+
+
+def _place_on(edges: Floats, at: Point) -> float | None:
+    """The edge that a point lies on, by its number plus the part of it; None if it is off them."""
+    x1, y1, x2, y2 = edges
+    dx, dy = x2 - x1, y2 - y1
+    square = np.maximum(dx * dx + dy * dy, 1e-30)
+    part = np.clip(((at[0] - x1) * dx + (at[1] - y1) * dy) / square, 0.0, 1.0)
+    off = np.hypot(x1 + part * dx - at[0], y1 + part * dy - at[1])
+    nearest = int(np.argmin(off))
+    return nearest + float(part[nearest]) if off[nearest] < ON_RIM_MM else None
+
+
 def _bends(shape: shapely.Geometry) -> Floats:
     """Corners where a polygon bulges outward, with those before and after; shape (n, 3, 2)."""
     corners = []
@@ -154,6 +253,7 @@ def shortest(
     barrier: LineString | None = None,
     first: Sequence[int] = (),
     longest_mm: float = inf,
+    least_mm: float = 0.0,
 ) -> tuple[float, tuple[Point, ...]] | None:
     """Shortest way on copper between two points of one island.
 
@@ -169,6 +269,8 @@ def shortest(
         Indexes of gaps whose corners are needed from the start, where a barrier stands.
     longest_mm
         A way longer than this is not looked for, mm.
+    least_mm
+        No way is shorter than this, mm.
 
     Returns
     -------
@@ -194,6 +296,8 @@ def shortest(
         size = box_size_mm(terrain.plane.gaps[gap].shape)
         if size < SMALL_DETOUR_MM:
             limit = max(limit, straight + 4 * size)
+    while limit < min(least_mm, widest):
+        limit *= WIDER
     coarse = 0
     while True:
         tried = _within(terrain, start, goal, barrier, min(limit, widest), CLEAR_MM[coarse], first)
@@ -206,7 +310,7 @@ def shortest(
             return tried if tried[0] <= longest_mm else None
         if limit >= widest:
             return None
-        limit *= 2.5
+        limit *= WIDER
 
 
 def _within(
@@ -220,18 +324,25 @@ def _within(
 ) -> tuple[float, tuple[Point, ...]] | str | None:
     obstacles = list(first)
     ends = np.repeat(np.array([start, goal], dtype=float)[:, None, :], 3, axis=1)
+    middle, half = ends[:, 0].mean(axis=0), limit / 2
+    box = (*(middle - half).tolist(), *(middle + half).tolist())
+    corners, count = [ends], 2
+    fresh = obstacles
     for _ in range(60):
-        corners = [ends]
-        for gap in obstacles:
-            bends = terrain.corners(gap, clear_mm)
-            at = bends[:, 0]
-            far = np.hypot(*(at - ends[0, 0]).T) + np.hypot(*(at - ends[1, 0]).T)
-            corners.append(bends[far <= limit])
-        bends = np.concatenate(corners)
-        if len(bends) > MOST_CORNERS:
-            return "crowded"
+        for gap in fresh:
+            for bends in terrain.corners(gap, clear_mm, box):
+                if not len(bends):
+                    continue
+                x, y = bends[:, 0, 0], bends[:, 0, 1]
+                far = np.hypot(x - start[0], y - start[1]) + np.hypot(x - goal[0], y - goal[1])
+                near = far <= limit
+                if near.any():
+                    corners.append(bends[near])
+                    count += len(corners[-1])
+                if count > MOST_CORNERS:
+                    return "crowded"
         blocks = [terrain.shape(gap) for gap in obstacles]
-        found = _taut(bends, blocks, barrier)
+        found = _taut(np.concatenate(corners), blocks, barrier, limit)
         if found is None:
             return None
         line = LineString(found[1])
@@ -243,51 +354,63 @@ def _within(
 
 
 def _taut(
-    bends: Floats, blocks: Sequence[Polygon], barrier: LineString | None
+    bends: Floats, blocks: Sequence[Polygon], barrier: LineString | None, limit: float
 ) -> tuple[float, tuple[Point, ...]] | None:
     """A* over the bends, the first being the start and the second the goal.
 
     A taut string leaves a corner so that both sides of the corner lie on one side of it: only such
-    steps are looked at.
+    steps are looked at, and only on ways no longer than the limit.
     """
-    points = bends[:, 0]
-    ahead = np.hypot(*(points - points[1]).T)
-    reached = np.full(len(points), inf)
+    points = bends[:, 0].copy()
+    x, y = points.T.copy()
+    sides = (bends[:, 1:] - bends[:, :1]).transpose(1, 2, 0).copy()
+    ahead = np.hypot(x - x[1], y - y[1])
+    reached = np.minimum(limit - ahead + 1e-9, inf)
     came = np.full(len(points), -1)
-    closed = np.zeros(len(points), dtype=bool)
     reached[0] = 0.0
     queue: list[tuple[float, int]] = [(float(ahead[0]), 0)]
+    done = np.zeros(len(points), dtype=bool)
     while queue:
         _, here = heapq.heappop(queue)
-        if closed[here]:
+        if done[here]:
             continue
         if here == 1:
             return float(reached[1]), _backwards(points, came)
-        closed[here] = True
-        step = np.hypot(*(points - points[here]).T)
-        better = np.flatnonzero(~closed & (reached[here] + step < reached - 1e-12))
+        done[here] = True
+        dx, dy = x - x[here], y - y[here]
+        along = reached[here] + np.hypot(dx, dy)
+        better = along < reached - 1e-12
         if here > 1:  # from the start, nearer the rim than the corners, any step may be taut
-            better = better[(better == 1) | _touches(bends[here], bends[better])]
-        for other in better[_free(points[here], points[better], blocks, barrier)].tolist():
-            reached[other] = reached[here] + step[other]
-            came[other] = here
-            heapq.heappush(queue, (float(reached[other] + ahead[other]), other))
+            taut = _touches(dx, dy, sides, here)
+            taut[1] = True
+            better &= taut
+        chosen = np.flatnonzero(better)
+        chosen = chosen[_free(points[here], points[chosen], blocks, barrier)]
+        reached[chosen] = along[chosen]
+        came[chosen] = here
+        for cost, other in zip((along + ahead)[chosen].tolist(), chosen.tolist(), strict=True):
+            heapq.heappush(queue, (cost, other))
     return None
 
 
-def _touches(here: Floats, there: Floats) -> NDArray[np.bool_]:
-    """Whether straight steps from one corner to others, shape (n, 3, 2), touch both as a string."""
-    step = there[:, 0] - here[0]
-    leaves = _cross(step, here[1] - here[0]) * _cross(step, here[2] - here[0])
-    meets = _cross(step, there[:, 1] - there[:, 0]) * _cross(step, there[:, 2] - there[:, 0])
-    slack = -1e-15 * (1.0 + (step**2).sum(axis=1))
+def _touches(dx: Floats, dy: Floats, sides: Floats, here: int) -> NDArray[np.bool_]:
+    """Whether straight steps from one corner to all others touch both as a string does.
+
+    ``sides`` holds the steps from each corner to those before and after it, shape (2, 2, n).
+    """
+    (ax, ay), (bx, by) = sides
+    leaves = (dx * ay[here] - dy * ax[here]) * (dx * by[here] - dy * bx[here])
+    meets = (dx * ay - dy * ax) * (dx * by - dy * bx)
+    slack = -1e-15 * (1.0 + dx * dx + dy * dy)
     return np.asarray((leaves >= slack) & (meets >= slack))
 
 
 def _free(
     here: Floats, there: Floats, blocks: Sequence[Polygon], barrier: LineString | None
 ) -> NDArray[np.bool_]:
-    lines = segments(np.stack([np.broadcast_to(here, there.shape), there], axis=1))
+    ends = np.empty((len(there), 2, 2))
+    ends[:, 0], ends[:, 1] = here, there
+    lines = segments(ends)
     free = np.ones(len(there), dtype=np.bool_)
     if barrier is not None:
         free &= ~shapely.intersects(barrier, lines)
@@ -333,8 +456,10 @@ def find_route(
     if one == other:
         _add_own_ways(sides, crossing, terrains[crossing.plane])
     _add_borrowed_ways(sides, crossing, planes, terrains, graph)
+    if one == other and not sides:
+        _add_rim_ways(sides, crossing, plane)
     joined = one == other or nx.has_path(graph, one, other)
-    if joined and not sides:
+    if joined and not sides and one != other:
         chain = _chain(graph, one, other, start, goal)
         return Route(straight, chain, None, joined)
     return Route(straight, sides.get(1), sides.get(-1), joined)
@@ -347,12 +472,15 @@ def _add_own_ways(sides: dict[int, Way], crossing: Crossing, terrain: Terrain) -
     times longer would carry hardly anything.
     """
     net = terrain.plane.islands[crossing.islands[0]].net_name
-    order = sorted((1, -1), key=lambda side: _rim_distance(crossing, terrain, side))
-    for side in order:
+    rims = {side: _rim_distance(crossing, terrain, side) for side in (1, -1)}
+    for side in sorted(rims, key=rims.__getitem__):
         known = [way.length_mm for way in sides.values()]
         longest = min(
             [OTHER_SIDE * min(known, default=inf), sides[side].length_mm if side in sides else inf]
         )
+        least = _least_mm(crossing, side, rims[side])
+        if least > longest or _parted(crossing, terrain, -side):
+            continue
         found = shortest(
             terrain,
             crossing.before,
@@ -360,6 +488,7 @@ def _add_own_ways(sides: dict[int, Way], crossing: Crossing, terrain: Terrain) -
             _wall(crossing, -side),
             (crossing.gap,),
             longest,
+            least,
         )
         if found is not None:
             sides[side] = Way(found[0], found[1], (), net, 0)
@@ -367,9 +496,30 @@ def _add_own_ways(sides: dict[int, Way], crossing: Crossing, terrain: Terrain) -
 
 def _rim_distance(crossing: Crossing, terrain: Terrain, side: int) -> float:
     """How far it is from the middle of the run to the gap's rim straight aside, mm."""
-    rim = terrain.plane.gaps[crossing.gap].shape.boundary
-    aside = rim.intersection(_wall(crossing, side))
-    return float(aside.distance(shapely.Point(crossing.at))) if not aside.is_empty else inf
+    dx, dy = _heading(crossing)
+    return terrain.rim_distance_mm(crossing.gap, crossing.at, (-dy * side, dx * side))
+
+
+def _parted(crossing: Crossing, terrain: Terrain, side: int) -> bool:
+    """Whether every way has to cross the wall on one side of the run."""
+    dx, dy = _heading(crossing)
+    entry, exit_ = crossing.path[0], crossing.path[-1]
+    wall = (-dy * side, dx * side)
+    return terrain.parted(crossing.islands[0], entry, exit_, crossing.at, wall)
+
+
+def _least_mm(crossing: Crossing, side: int, rim_mm: float) -> float:
+    """Straight length by way of the rim aside: every way on that side passes it or farther out."""
+    if rim_mm == inf:
+        return 0.0
+    (dx, dy), (x, y) = _heading(crossing), crossing.at
+    chord = side * ((crossing.before[1] - y) * dx - (crossing.before[0] - x) * dy)
+    out = max(rim_mm, chord)  # the straight line from entry to exit may itself pass farther out
+    rim = x - dy * side * out, y + dx * side * out
+    return sum(
+        float(np.hypot(rim[0] - end[0], rim[1] - end[1]))
+        for end in (crossing.before, crossing.after)
+    )
 
 
 def _heading(crossing: Crossing) -> tuple[float, float]:
@@ -398,28 +548,19 @@ def _add_borrowed_ways(
     one, other = (plane.islands[i].id for i in crossing.islands)
     for middle in sorted(set(graph.adj[one]) & set(graph.adj[other])):
         island = graph.nodes[middle]["island"]
-        down = _candidates(crossing, bridges_between(graph, one, middle), -1)
-        up = _candidates(crossing, bridges_between(graph, middle, other), 1)
         search = _Search(crossing, terrains[crossing.plane], terrains[island.layer], sides)
+        down = search.candidates(bridges_between(graph, one, middle), -1)
+        up = search.candidates(bridges_between(graph, middle, other), 1)
         for length, side, a, b in search.pairs(down, up):
             path = (crossing.before, a, b, crossing.after)
             sides[side] = Way(length, path, (a, b), island.net_name, island.layer)
 
 
-def _candidates(crossing: Crossing, places: Floats, end: int) -> Floats:
-    """Bridges on one end's side of the gap, in the order in which they can make a way short."""
-    if crossing.islands[0] == crossing.islands[1]:
-        (dx, dy), (x, y) = _heading(crossing), crossing.at
-        places = places[((places[:, 0] - x) * dx + (places[:, 1] - y) * dy) * end > 0]
-    return places[np.argsort(_through(crossing, places), kind="stable")]
-
-
 def _through(crossing: Crossing, places: Floats) -> Floats:
     """Straight length from entry to exit by way of each place: no way through it is shorter."""
-    return np.asarray(
-        np.hypot(*(places - np.asarray(crossing.before)).T)
-        + np.hypot(*(places - np.asarray(crossing.after)).T)
-    )
+    (x0, y0), (x1, y1) = crossing.before, crossing.after
+    x, y = places[:, 0], places[:, 1]
+    return np.asarray(np.hypot(x - x0, y - y0) + np.hypot(x - x1, y - y1))
 
 
 class _Search:
@@ -435,6 +576,19 @@ class _Search:
         self.own = own
         self.borrowed = borrowed
         self.known = {side: way.length_mm for side, way in best.items()}
+
+    def candidates(self, places: Floats, end: int) -> Floats:
+        """Bridges on one end's side of the gap, in the order in which they can make a way short.
+
+        Those that cannot be on a way shorter than what is known are left out.
+        """
+        through = _through(self.crossing, places)
+        near = through < self._enough()
+        if self.crossing.islands[0] == self.crossing.islands[1]:
+            (dx, dy), (x, y) = _heading(self.crossing), self.crossing.at
+            near &= ((places[:, 0] - x) * dx + (places[:, 1] - y) * dy) * end > 0
+        which = np.flatnonzero(near)
+        return places[which[np.argsort(through[which], kind="stable")]]
 
     def pairs(self, down: Floats, up: Floats) -> list[tuple[float, int, Point, Point]]:
         """The shortest pair on either side, each better than what is known: length, side, places.
@@ -498,6 +652,44 @@ class _Search:
 
 def _point(place: Floats) -> Point:
     return float(place[0]), float(place[1])
+
+
+def _add_rim_ways(sides: dict[int, Way], crossing: Crossing, plane: Plane) -> None:
+    """Where rims have too many corners for a search: the hull of the rim on either side.
+
+    The rim itself is a way on copper; pulled taut it is hardly longer than its hull.
+    """
+    net = plane.islands[crossing.islands[0]].net_name
+    start, goal = shapely.Point(crossing.path[0]), shapely.Point(crossing.path[-1])
+    shape = plane.gaps[crossing.gap].shape
+    for ring in (shape.exterior, *shape.interiors):
+        if max(ring.distance(start), ring.distance(goal)) > RIM_MM:
+            continue
+        first, last = sorted((ring.project(start), ring.project(goal)))
+        inner = np.asarray(substring(ring, first, last).coords)
+        outer = np.concatenate(
+            [
+                np.asarray(substring(ring, last, ring.length).coords),
+                np.asarray(substring(ring, 0.0, first).coords),
+            ]
+        )
+        for arc in (inner, outer):
+            hull = shapely.convex_hull(
+                shapely.LineString([crossing.path[0], *arc, crossing.path[-1]])
+            )
+            length = max(float(hull.length) - start.distance(goal), start.distance(goal))
+            middle = _point(arc.mean(axis=0))
+            side = _side(crossing, middle, middle)
+            path = tuple(_point(np.asarray(at)) for at in shapely.get_coordinates(hull))
+            if side not in sides or length < sides[side].length_mm:
+                sides[side] = Way(length, path, (), net, 0)
+        return
+
+
+def _side(crossing: Crossing, a: Point, b: Point) -> int:
+    """On which side of the trace the middle of two places lies: 1 left, -1 right."""
+    (dx, dy), (x, y) = _heading(crossing), crossing.at
+    return 1 if ((a[1] + b[1]) / 2 - y) * dx - ((a[0] + b[0]) / 2 - x) * dy >= 0 else -1
 
 
 def _chain(graph: IslandGraph, one: str, other: str, start: Point, goal: Point) -> Way | None:
