@@ -384,7 +384,9 @@ def _taut(
             taut = _touches(dx, dy, sides, here)
             taut[1] = True
             better &= taut
-        chosen = np.flatnonzero(better)
+        (chosen,) = better.nonzero()
+        if not len(chosen):
+            continue
         chosen = chosen[_free(points[here], points[chosen], blocks, barrier)]
         reached[chosen] = along[chosen]
         came[chosen] = here
@@ -408,17 +410,17 @@ def _touches(dx: Floats, dy: Floats, sides: Floats, here: int) -> NDArray[np.boo
 def _free(
     here: Floats, there: Floats, blocks: Sequence[Polygon], barrier: LineString | None
 ) -> NDArray[np.bool_]:
+    """Which straight steps run into nothing."""
     ends = np.empty((len(there), 2, 2))
     ends[:, 0], ends[:, 1] = here, there
     lines = segments(ends)
-    free = np.ones(len(there), dtype=np.bool_)
-    if barrier is not None:
-        free &= ~shapely.intersects(barrier, lines)
-    for block in blocks:
-        left = np.flatnonzero(free)
+    left = np.arange(len(there))
+    for block in blocks if barrier is None else (barrier, *blocks):
+        left = left[~shapely.intersects(block, lines[left])]
         if not len(left):
             break
-        free[left] = ~shapely.intersects(block, lines[left])
+    free = np.zeros(len(there), dtype=np.bool_)
+    free[left] = True
     return free
 
 
