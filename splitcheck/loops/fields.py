@@ -33,6 +33,8 @@ MOST_TRACES = 40
 ENDS = 10.0
 #: At most so many other gaps near the crossed one are looked at.
 MOST_NEIGHBOURS = 12
+#: A solve whose panels had to be made coarser than this is worth less than a closed form.
+MOST_COARSER = 3.0
 #: Gaps smaller than this share of the height do not matter unless crossed.
 SMALL_SHARE = 1.0
 #: Barrel of a plated hole taken as a bridge, mm (common practice, no source).
@@ -145,21 +147,15 @@ class Fields:
         """
         first = tasks[0].crossing
         plane = self.planes[first.plane]
-        window = _window(tasks)
         traces = [_trace(task, plane.gaps[first.gap].shape) for task in tasks]
-        try:
-            solution = engine.added(
-                self._gaps(tasks, window, [trace.line for trace in traces]),
-                traces,
-                tasks[0].height_mm,
-                beyond_mm=self._apart_mm(first.plane, tasks[0].beyond),
-                above_mm=self._apart_mm(first.plane, tasks[0].other),
-                bridges=self._bridges(tasks),
-                outside=_outside(plane, window),
-                disjoint=True,
-            )
-        except SplitcheckError:  # more gaps here than can be solved for: closed forms have to do
-            return {}
+        solution = None
+        for neighbours in (MOST_NEIGHBOURS, 0):
+            solution = self._solution(tasks, traces, neighbours)
+            if solution is not None and solution.coarser <= MOST_COARSER:
+                break
+        if solution is None or solution.coarser > MOST_COARSER:
+            alone = [self.solve([task]) for task in tasks] if len(tasks) > 1 else []
+            return {number: field for found in alone for number, field in found.items()}
         return {
             task.number: Field(
                 Inductance(float(solution.added_nh[i, i]), float(solution.error_nh[i, i])),
@@ -173,11 +169,31 @@ class Fields:
             if not solution.cut_off[i] and isfinite(float(solution.added_nh[i, i]))
         }
 
+    def _solution(
+        self, tasks: Sequence[Task], traces: Sequence[engine.TraceOver], neighbours: int
+    ) -> engine.Solution | None:
+        """One solve with so many uncrossed gaps beside the crossed one; None: too many panels."""
+        plane = self.planes[tasks[0].crossing.plane]
+        window = _window(tasks)
+        try:
+            return engine.added(
+                self._gaps(tasks, window, [trace.line for trace in traces], neighbours),
+                traces,
+                tasks[0].height_mm,
+                beyond_mm=self._apart_mm(plane.layer, tasks[0].beyond),
+                above_mm=self._apart_mm(plane.layer, tasks[0].other),
+                bridges=self._bridges(tasks),
+                outside=_outside(plane, window),
+                disjoint=True,
+            )
+        except SplitcheckError:
+            return None
+
     def _apart_mm(self, plane: int, other: int | None) -> float | None:
         return None if other is None else self.board.stack.height_mm(plane, other)
 
     def _gaps(
-        self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString]
+        self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString], neighbours: int
     ) -> list[Polygon]:
         """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out."""
         plane = self.planes[tasks[0].crossing.plane]
@@ -190,7 +206,7 @@ class Fields:
             if shape is crossed or box_size_mm(shape) < least or shape.intersects(across):
                 continue
             beside.append((shape.distance(across), number))
-        chosen = [plane.gaps[number].shape for _, number in sorted(beside)[:MOST_NEIGHBOURS]]
+        chosen = [plane.gaps[number].shape for _, number in sorted(beside)[:neighbours]]
         foreign = self._foreign_copper(plane, window)
         return [
             polygon

@@ -37,6 +37,9 @@ _REFINE_UP_TO = 600
 #: More unknowns than this are not solved for: the panels are made coarser instead.
 MAX_PANELS = 900
 _COARSEN = 7
+_COARSER_STEP = 1.7
+#: What a mesh that had to be made coarser by one time itself may be off by.
+_COARSE_ERROR = 0.15
 #: Into how many panels to cut the longer side of a gap at least: one far from all traces, one near
 #: them, and one that is crossed.
 _LEAST = (2.1, 4.2, 8.4)
@@ -99,6 +102,8 @@ class Solution:
     """Flux through each panel per ampere in each trace, shape (panels, n), nWb/A."""
     bridge_a: Floats
     """Current in each bridge per ampere in each trace, shape (bridges, n)."""
+    coarser: float = 1.0
+    """How many times coarser than they should be the panels were made, so as not to be too many."""
 
     def of(self, trace: int) -> float | None:
         """Added inductance of one trace in nH, or None where it has no way back."""
@@ -180,18 +185,19 @@ def added(
     )
     job = _job(scene, traces, bridges, height_mm, beyond_mm, above_mm)
     if not job.traces or _lost(job).all():
-        return _judged(job, *(2 * [_nothing(job)]))
-    coarse = _solved(job, _panels(job, fineness / _COARSER))
-    fine = _solved(job, _panels(job, fineness))
+        return _judged(job, _nothing(job), _nothing(job))
+    coarse = _solved(job, _panels(job, fineness / _COARSER)[0])
+    mesh, coarser = _panels(job, fineness)
+    fine = _solved(job, mesh)
     for _ in range(_MORE):
         if _settled(fine, coarse):
             break
         fineness *= _COARSER
-        finer = _panels(job, fineness, _REFINE_UP_TO)
+        finer, _ = _panels(job, fineness, _REFINE_UP_TO)
         if len(finer) < 1.5 * len(fine.mesh):
             break
         coarse, fine = fine, _solved(job, finer)
-    return _judged(job, fine, coarse)
+    return _judged(job, fine, coarse, coarser)
 
 
 def _settled(fine: _Raw, coarse: _Raw) -> bool:
@@ -316,14 +322,14 @@ def _job(
     )
 
 
-def _panels(job: _Job, fineness: float, most: int = MAX_PANELS) -> Panels:
-    """Cut the gaps, coarser and coarser until there are not too many panels."""
+def _panels(job: _Job, fineness: float, most: int = MAX_PANELS) -> tuple[Panels, float]:
+    """Cut the gaps, coarser and coarser until there are not too many panels; how much coarser."""
     # images in planes are averaged over a few points of each panel, potentials exactly
     slender = _SLENDER if job.plates_mm else np.inf
     lines = tuple(LineString(strip.line) for strip in job.strips)
     near, slope = job.near_mm / fineness, _SLOPE / fineness
     least = np.array(_LEAST)[list(job.scene.weight)] * fineness
-    for _ in range(_COARSEN):
+    for step in range(_COARSEN):
         grading = Grading(
             lines, near, slope, _FAR * near, slender=slender, root_mm=job.near_mm, most=most
         )
@@ -333,8 +339,8 @@ def _panels(job: _Job, fineness: float, most: int = MAX_PANELS) -> Panels:
             pass
         else:
             if len(mesh) <= most:
-                return mesh
-        near, slope, least = near * 1.7, min(slope * 1.5, 4.0), least / 1.7
+                return mesh, _COARSER_STEP**step
+        near, slope, least = near * _COARSER_STEP, min(slope * 1.5, 4.0), least / _COARSER_STEP
     wrong = f"{len(job.scene.gaps)} gaps need more than {MAX_PANELS} panels"
     raise SplitcheckError("gaps", wrong, "give fewer or simpler gaps")
 
@@ -454,11 +460,11 @@ def _cholesky_solve(matrix: Floats, right: Floats) -> Floats:
     raise ArithmeticError(message)
 
 
-def _judged(job: _Job, fine: _Raw, coarse: _Raw) -> Solution:
+def _judged(job: _Job, fine: _Raw, coarse: _Raw, coarser: float = 1.0) -> Solution:
     """Put an error on the fine solve and spread it over all traces that were asked for."""
-    mesh_nh = np.abs(fine.added_nh - coarse.added_nh)
     own = np.diag(fine.added_nh)
     scale = np.sqrt(np.maximum(np.outer(own, own), 0.0))
+    mesh_nh = np.abs(fine.added_nh - coarse.added_nh) + _COARSE_ERROR * (coarser - 1.0) * scale
     left = job.scene.left_out_nh[list(job.traces)]
     short = np.array([job.scene.cut_short_mm[k] for k in job.traces])
     alone = _FLOOR_NH + left + _short_nh(short, job.height_mm)
@@ -487,6 +493,7 @@ def _judged(job: _Job, fine: _Raw, coarse: _Raw) -> Solution:
         mesh=fine.mesh,
         flux_nwb=flux,
         bridge_a=bridge_a,
+        coarser=coarser,
     )
 
 
