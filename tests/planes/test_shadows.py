@@ -73,6 +73,7 @@ def test_uncovered_and_covered_are_the_whole(
     line = shapely.LineString([one, other])
     copper = shapely.box(0, 0, 16, 12).difference(cut)
     assume(line.length > 0.01)
+    assume(line.intersection(copper.boundary).length == 0)  # on a rim it is either
     made = board(
         Sheet(lines=(Line("CLK", (one, other)),)),
         Sheet(tuple(("GND", piece) for piece in shapely.get_parts(copper))),
