@@ -35,6 +35,8 @@ ENDS = 10.0
 MOST_NEIGHBOURS = 12
 #: A solve whose panels had to be made coarser than this is worth less than a closed form.
 MOST_COARSER = 3.0
+#: Gaps with more corners than this in the window are not solved: the mesh would be too coarse.
+MOST_CORNERS = 4000
 #: Gaps smaller than this share of the height do not matter unless crossed.
 SMALL_SHARE = 1.0
 #: Barrel of a plated hole taken as a bridge, mm (common practice, no source).
@@ -148,14 +150,9 @@ class Fields:
         first = tasks[0].crossing
         plane = self.planes[first.plane]
         traces = [_trace(task, plane.gaps[first.gap].shape) for task in tasks]
-        solution = None
-        for neighbours in (MOST_NEIGHBOURS, 0):
-            solution = self._solution(tasks, traces, neighbours)
-            if solution is not None and solution.coarser <= MOST_COARSER:
-                break
+        solution = self._solution(tasks, traces)
         if solution is None or solution.coarser > MOST_COARSER:
-            alone = [self.solve([task]) for task in tasks] if len(tasks) > 1 else []
-            return {number: field for found in alone for number, field in found.items()}
+            return {}
         return {
             task.number: Field(
                 Inductance(float(solution.added_nh[i, i]), float(solution.error_nh[i, i])),
@@ -170,14 +167,17 @@ class Fields:
         }
 
     def _solution(
-        self, tasks: Sequence[Task], traces: Sequence[engine.TraceOver], neighbours: int
+        self, tasks: Sequence[Task], traces: Sequence[engine.TraceOver]
     ) -> engine.Solution | None:
-        """One solve with so many uncrossed gaps beside the crossed one; None: too many panels."""
+        """One solve; None if the gaps are too ragged for it."""
         plane = self.planes[tasks[0].crossing.plane]
         window = _window(tasks)
+        gaps = self._gaps(tasks, window, [trace.line for trace in traces])
+        if sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS:
+            return None
         try:
             return engine.added(
-                self._gaps(tasks, window, [trace.line for trace in traces], neighbours),
+                gaps,
                 traces,
                 tasks[0].height_mm,
                 beyond_mm=self._apart_mm(plane.layer, tasks[0].beyond),
@@ -193,7 +193,7 @@ class Fields:
         return None if other is None else self.board.stack.height_mm(plane, other)
 
     def _gaps(
-        self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString], neighbours: int
+        self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString]
     ) -> list[Polygon]:
         """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out."""
         plane = self.planes[tasks[0].crossing.plane]
@@ -206,7 +206,7 @@ class Fields:
             if shape is crossed or box_size_mm(shape) < least or shape.intersects(across):
                 continue
             beside.append((shape.distance(across), number))
-        chosen = [plane.gaps[number].shape for _, number in sorted(beside)[:neighbours]]
+        chosen = [plane.gaps[number].shape for _, number in sorted(beside)[:MOST_NEIGHBOURS]]
         foreign = self._foreign_copper(plane, window)
         return [
             polygon

@@ -138,9 +138,9 @@ def without(span: Span, taken: Sequence[Span]) -> list[Span]:
 
 
 def nearest_cover(
-    planes: Sequence[Plane], layers: Sequence[int], xs: Floats, ys: Floats
+    planes: Sequence[Plane], layers: Sequence[int], xs: Floats, ys: Floats, least: float = 1.0
 ) -> int | None:
-    """The first of some layers whose reference copper covers all of some points.
+    """The first of some layers whose reference copper covers most of some points.
 
     Parameters
     ----------
@@ -150,10 +150,12 @@ def nearest_cover(
         Layer numbers, nearest first.
     xs, ys
         Points, shape (n,), mm.
+    least
+        Share of the points that must be covered, 0 to 1.
     """
     by_layer = {plane.layer: plane for plane in planes}
     for layer in layers:
         plane = by_layer.get(layer)
-        if plane is not None and bool((plane.island_at(xs, ys) >= 0).all()):
+        if plane is not None and float((plane.island_at(xs, ys) >= 0).mean()) >= least:
             return layer
     return None

@@ -42,6 +42,8 @@ CHANGE_RUN_MM = 5.0
 CHANGE_STITCH_MM = 3.0
 #: ... or, whatever their nets, if it is this many times longer than the planes are apart.
 CHANGE_RATIO = 10.0
+#: A plane is whole under a gap if it covers this share of places in it: antipads do not count.
+WHOLE = 0.6
 #: A run whose middle lies this near to the same stretch of trace is on it, mm.
 SAME_PLACE_MM = 1e-3
 #: From this ratio of length across the trace to length along it a closed gap is a slot.
@@ -288,13 +290,15 @@ def _layers_on_other_side(scene: Scene, crossing: Crossing) -> list[int]:
 
 
 def _other_side(scene: Scene, crossing: Crossing) -> int | None:
-    """The layer on the trace's other side that carries returns unbroken along the run."""
-    points = np.array([crossing.before, *crossing.path, crossing.at, crossing.after])
+    """The layer on the trace's other side that carries returns along most of the run."""
+    run = shapely.LineString([crossing.before, *crossing.path, crossing.after])
+    points = shapely.get_coordinates(run.interpolate(np.linspace(0.0, 1.0, 13), normalized=True))
     return nearest_cover(
         tuple(scene.planes.values()),
         _layers_on_other_side(scene, crossing),
         points[:, 0],
         points[:, 1],
+        WHOLE,
     )
 
 
@@ -313,7 +317,9 @@ def _beyond(scene: Scene, crossing: Crossing) -> int | None:
     A nearer plane that is open there as well is passed over for the next one.
     """
     xs, ys = _places_in_gap(scene, crossing)
-    return nearest_cover(tuple(scene.planes.values()), _layers_beyond(scene, crossing), xs, ys)
+    return nearest_cover(
+        tuple(scene.planes.values()), _layers_beyond(scene, crossing), xs, ys, WHOLE
+    )
 
 
 def _places_in_gap(
