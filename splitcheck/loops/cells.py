@@ -403,11 +403,7 @@ def _plain_pieces(cells: _Cells, grading: Grading) -> tuple[_Cells, _Cells]:
 
 def _parts(cells: _Cells) -> tuple[_Cells, Ints]:
     """Clip shapes to their cells; the pieces, and the number of the cell each came from."""
-    simple = shapely.get_num_coordinates(cells.shapes) <= _INTRICATE
-    clipped = cells.shapes.copy()
-    borders = shapely.box(*cells.boxes[simple].T)
-    clipped[simple] = shapely.intersection(cells.shapes[simple], borders)
-    clipped[~simple] = _clips(cells.shapes[~simple], cells.boxes[~simple])
+    clipped = _clips(cells.shapes, cells.boxes)
     pieces, owner = shapely.get_parts(clipped, return_index=True)
     whole = np.prod(cells.boxes[:, 2:] - cells.boxes[:, :2], axis=1)
     keep = shapely.area(pieces) > _SLIVER * whole[owner]

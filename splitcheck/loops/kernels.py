@@ -13,7 +13,7 @@ from splitcheck.units import Floats
 _TERMS = 6
 #: The image series is tabled up to this many image distances; beyond, its logarithm is exact.
 _TABLED = 3.0
-_STEPS = 1536
+_STEPS = 4096
 
 
 def outline_potential(x: Floats, y: Floats, edges: Floats) -> Floats:
@@ -95,24 +95,38 @@ def plate_images(r: Floats, plate_mm: float) -> Floats:
     >>> plate_images(np.array([0.0, 1.0, 10.0]), 0.5).round(4)
     array([-0.2319, -0.9963, -4.7052])
     """
-    x = r / (2.0 * plate_mm)
-    near = x < _TABLED
-    far = -2.0 * np.log(np.maximum(x, 0.5)) - 1.0 / np.maximum(x, 0.5)
-    tabled = np.interp(np.minimum(x, _TABLED), _TABLE_X, _TABLE_G)
-    return np.where(near, tabled, far) / (2.0 * plate_mm)
+    return plate_images_squared(r * r, plate_mm)
+
+
+def plate_images_squared(square: Floats, plate_mm: float) -> Floats:
+    """`plate_images` of distances given by their squares, mm^2."""
+    x2 = square * (0.25 / plate_mm**2)
+    place = np.minimum(x2 * _PER_STEP, _STEPS - 0.5)
+    step = place.astype(np.int32)
+    place -= step
+    place *= np.take(_TABLE_RISE, step)
+    place += np.take(_TABLE, step)
+    far = np.flatnonzero(x2 >= _TABLED**2)
+    if len(far):
+        beyond = x2.ravel()[far]
+        place.ravel()[far] = -np.log(beyond) - 1.0 / np.sqrt(beyond)
+    place /= 2.0 * plate_mm
+    return place
 
 
 def _tabled_images() -> tuple[Floats, Floats]:
-    """Table the image sum against x = r/2d; see `plate_images`."""
-    x = np.linspace(0.0, _TABLED, _STEPS + 1)
+    """Table the image sum against x^2, in which it is smooth, and its rise from step to step."""
+    square = np.linspace(0.0, _TABLED**2, _STEPS + 1)
     n = np.arange(1, 121, dtype=np.float64)
-    near = 2.0 / np.sqrt(x[:, None] ** 2 + n**2)
+    near = 2.0 / np.sqrt(square[:, None] + n**2)
     last = 120.5
-    rest = np.log(last + np.sqrt(last**2 + x**2))
-    return x, near.sum(axis=1) - 2.0 * rest
+    rest = np.log(last + np.sqrt(last**2 + square))
+    table = near.sum(axis=1) - 2.0 * rest
+    return table, np.diff(table)
 
 
-_TABLE_X, _TABLE_G = _tabled_images()
+_TABLE, _TABLE_RISE = _tabled_images()
+_PER_STEP = _STEPS / _TABLED**2
 
 
 def rectangle_self(a: Floats, b: Floats) -> Floats:

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.polynomial.legendre import leggauss
 from numpy.typing import NDArray
 
-from splitcheck.loops.kernels import outline_potential, plate_images, rectangle_self
+from splitcheck.loops.kernels import outline_potential, plate_images_squared, rectangle_self
 from splitcheck.loops.outlines import Ints
 from splitcheck.loops.panels import Panels
 from splitcheck.units import Floats
@@ -143,25 +143,38 @@ def _four_points(a: Floats, b: Floats) -> Floats:
 
 
 def _images(panels: Panels, plates_mm: Sequence[float]) -> Floats:
-    x, y = panels.centre.T
-    r = np.hypot(x[:, None] - x, y[:, None] - y)
-    reach = panels.radius[:, None] + panels.radius
-    first, second = np.nonzero(np.triu(r < _NEARBY * reach, 1))
-    total: Floats = np.zeros_like(r)
-    own = np.arange(len(panels))
-    for plate in plates_mm:
-        part = plate_images(r, plate)
-        value = np.zeros(len(first))
-        for a in range(4):
-            d = panels.points[first, a, None] - panels.points[second]
-            value += plate_images(np.hypot(d[..., 0], d[..., 1]), plate).sum(axis=1)
-        part[first, second] = part[second, first] = value / 16.0
-        part[own, own] = _own_images(panels, plate)
-        far = float(r.max()) if len(r) else 1.0
-        # a constant counts nothing for gaps without net flux; this one keeps the sum positive
-        part += (np.log(max(far / (2 * plate), 1.0)) + 4.0) / plate
-        total += part
+    """Mean of the image series between all pairs, up to a constant."""
+    count = len(panels)
+    total = np.empty((count, count))
+    pairs: list[tuple[Ints, Ints]] = []
+    constant = _constant(panels, plates_mm)
+    for start in range(0, count, _BLOCK):
+        rows, block = slice(start, start + _BLOCK), slice(start, None)
+        at, moved = panels.centre[rows, None], panels.centre[None, block]
+        square = (at[:, :, 0] - moved[:, :, 0]) ** 2 + (at[:, :, 1] - moved[:, :, 1]) ** 2
+        reach = panels.radius[rows, None] + panels.radius[None, block]
+        first, second = np.nonzero(np.triu(square < (_NEARBY * reach) ** 2, 1))
+        pairs.append((first + start, second + start))
+        far = sum((plate_images_squared(square, plate) for plate in plates_mm), constant)
+        total[rows, block] = far
+        total[block, rows] = far.T
+    first, second = (np.concatenate(part) for part in zip(*pairs, strict=True))
+    close = np.zeros(len(first))
+    for a in range(4):
+        dx, dy = np.moveaxis(panels.points[first, a, None] - panels.points[second], 2, 0)
+        square = dx * dx + dy * dy
+        close += sum(plate_images_squared(square, plate).sum(axis=1) for plate in plates_mm)
+    total[first, second] = total[second, first] = close / 16.0 + constant
+    own = np.arange(count)
+    total[own, own] = sum((_own_images(panels, plate) for plate in plates_mm), constant)
     return total
+
+
+def _constant(panels: Panels, plates_mm: Sequence[float]) -> Floats:
+    """A constant that keeps the sum positive; it counts nothing for gaps without net flux."""
+    far = float(np.hypot(*np.ptp(panels.centre, axis=0))) if len(panels) else 1.0
+    parts = [(np.log(max(far / (2 * plate), 1.0)) + 4.0) / plate for plate in plates_mm]
+    return np.array(sum(parts))
 
 
 def _own_images(panels: Panels, plate: float) -> Floats:
@@ -173,6 +186,6 @@ def _own_images(panels: Panels, plate: float) -> Floats:
     for ui, wi in zip(u, w, strict=True):
         for vi, wv in zip(u, w, strict=True):
             weight = 4 * wi * wv * (1 - ui) * (1 - vi)
-            total = total + weight * plate_images(np.hypot(a * ui, b * vi), plate)
+            total = total + weight * plate_images_squared((a * ui) ** 2 + (b * vi) ** 2, plate)
     mean: Floats = total
     return mean

@@ -332,15 +332,20 @@ def _from_outside(
 
 def _clearest_ray(gap: Polygon, at: Floats, start: float, far: float) -> tuple[LineString, float]:
     """A ray from the point that meets the gap least often, and its direction."""
-    directions = start + 2 * np.pi / _RAYS * np.arange(_RAYS)
-    ends = at + far * np.stack([np.cos(directions), np.sin(directions)], axis=1)
-    rays = np.array([LineString([at, end]) for end in ends], dtype=object)
-    free = np.flatnonzero(~shapely.intersects(gap, rays))
-    if len(free):
-        return rays[free[0]], float(directions[free[0]])
-    met = shapely.get_num_geometries(shapely.intersection(gap.exterior, rays))
-    best = int(np.argmin(met))
-    return rays[best], float(directions[best])
+    # between which two rays each corner of the rim lies; an edge crosses those between its ends
+    away = shapely.get_coordinates(gap.exterior) - at
+    turned = np.mod(np.arctan2(away[:, 1], away[:, 0]) - start, 2 * np.pi)
+    sector = np.minimum((turned * (_RAYS / (2 * np.pi))).astype(np.int64), _RAYS - 1)
+    (crossing,) = np.diff(sector).nonzero()
+    ahead = np.diff(sector)[crossing]
+    left = _turned(np.zeros(2), away[crossing], away[crossing + 1]) > 0
+    count = np.mod(np.where(left, ahead, -ahead), _RAYS)
+    first = np.where(left, sector[crossing], sector[crossing + 1]) + 1
+    which = np.repeat(first - np.cumsum(count) + count, count) + np.arange(count.sum())
+    best = int(np.argmin(np.bincount(which % _RAYS, minlength=_RAYS)))
+    direction = start + 2 * np.pi / _RAYS * best
+    end = at + far * np.array([np.cos(direction), np.sin(direction)])
+    return LineString([at, end]), float(direction)
 
 
 def _parted(gap: Polygon, cut: LineString, direction: float) -> _Sides:
