@@ -226,7 +226,8 @@ class Fields:
                 ]
             )
         tree = self._foreign[plane.layer]
-        return shapely.union_all(tree.geometries[np.sort(tree.query(window))])
+        # pieces of copper do not touch one another, so that they are a multipolygon as they stand
+        return MultiPolygon(list(tree.geometries[np.sort(tree.query(window))]))
 
     def _bridges(self, tasks: Sequence[Task]) -> list[engine.ViaBridge | engine.Strap]:
         """Bridges that the ways round can take: vias to the plane beyond, or straps.
