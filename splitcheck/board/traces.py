@@ -16,6 +16,7 @@ from splitcheck.units import Floats, runs
 BESIDE_MM = 0.02
 #: Places along a stroke at which its sides are looked at, as fractions of its length.
 LOOK_AT = (0.1, 0.3, 0.5, 0.7, 0.9)
+MIDDLE = 2
 
 
 class CentreLine(NamedTuple):
@@ -58,7 +59,12 @@ def centre_lines(marks: Sequence[Mark], pieces: Sequence[Polygon]) -> tuple[Cent
     if not strokes or not pieces:
         return ()
     centre, left, right = _looks(strokes)
-    piece = _piece_under(centre, pieces)
+    if all(mark.dark for mark in marks):  # nothing parts a stroke: one look says where it lies
+        piece = np.repeat(
+            _piece_under(centre[:, MIDDLE : MIDDLE + 1], pieces), len(LOOK_AT), axis=1
+        )
+    else:
+        piece = _piece_under(centre, pieces)
     first_look = np.full(len(strokes), -1)
     inside = piece >= 0
     first_look[np.arange(len(strokes))[inside.any(axis=1)]] = piece[
