@@ -25,6 +25,8 @@ from splitcheck.planes.islands import Plane, box_size_mm
 #: The window of a solve reaches this much beyond the ways round the gap: in mm and as a share.
 BEYOND_MM = 2.0
 BEYOND_SHARE = 0.3
+#: A gap open on one side is kept out to this many times the size of the way on the other.
+OPEN_SIDE = 8.0
 #: Crossings of one gap this near to one another are solved together, mm ...
 TOGETHER_MM = 4.0
 #: ... but not more of them at once.
@@ -171,7 +173,7 @@ class Fields:
     ) -> engine.Solution | None:
         """One solve; None if the gaps are too ragged for it."""
         plane = self.planes[tasks[0].crossing.plane]
-        window = _window(tasks)
+        window = _window(tasks, plane.gaps[tasks[0].crossing.gap].shape)
         gaps = self._gaps(tasks, window, [trace.line for trace in traces])
         if sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS:
             return None
@@ -291,18 +293,26 @@ def _outside(plane: Plane, window: Polygon) -> Polygon | None:
     return None if frame.contains_properly(window) else frame
 
 
-def _window(tasks: Sequence[Task]) -> Polygon:
-    """A box round the crossings and their ways round, with room to spare."""
+def _window(tasks: Sequence[Task], gap: Polygon) -> Polygon:
+    """A box round the crossings and their ways round, with room to spare.
+
+    Cutting a gap off at the box closes it there. Where there is no way round on one side, the gap
+    is therefore kept out to many times the length of the way on the other, or to its end.
+    """
     points = [point for task in tasks for point in task.crossing.path]
-    for task in tasks:
-        for way in (task.route.left, task.route.right):
-            if way is not None:
-                points.extend(way.path)
+    ways = [way for task in tasks for way in (task.route.left, task.route.right)]
+    points.extend(point for way in ways if way is not None for point in way.path)
     x0, y0 = np.min(points, axis=0)
     x1, y1 = np.max(points, axis=0)
-    room = BEYOND_MM + BEYOND_SHARE * max(x1 - x0, y1 - y0) + 5 * tasks[0].height_mm
-    box: Polygon = shapely.box(x0 - room, y0 - room, x1 + room, y1 + room)
-    return box
+    size = max(x1 - x0, y1 - y0)
+    room = BEYOND_MM + BEYOND_SHARE * size + 5 * tasks[0].height_mm
+    box = shapely.box(x0 - room, y0 - room, x1 + room, y1 + room)
+    if None in ways:
+        far = shapely.box(*box.bounds).buffer(OPEN_SIDE * size, join_style="mitre")
+        whole = shapely.box(*gap.bounds).buffer(BEYOND_MM, join_style="mitre")
+        box = box.union(far.intersection(whole)).envelope
+    window: Polygon = box
+    return window
 
 
 def _trace(task: Task, gap: Polygon) -> engine.TraceOver:

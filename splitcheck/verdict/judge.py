@@ -395,7 +395,7 @@ def _estimate(
     if not route.joined:
         return over
     round_gap = estimate.added(
-        (route.reach_mm(route.left), route.reach_mm(route.right)),
+        (_reach_mm(crossing, route, route.left), _reach_mm(crossing, route, route.right)),
         (_bridge_nh(scene, crossing, route.left), _bridge_nh(scene, crossing, route.right)),
         crossing.run_mm,
         heights.height_mm(crossing.layer, crossing.plane),
@@ -406,6 +406,23 @@ def _estimate(
     )
     known = [value for value in (over, round_gap) if value is not None]
     return min(known, key=lambda value: value.added_nh) if known else None
+
+
+def _reach_mm(crossing: Crossing, route: Route, way: Way | None) -> float:
+    """How far along the gap a way goes before it crosses, mm.
+
+    Over bridges that is where the leg between them crosses the gap: the way to them and back runs
+    along the trace, over copper that is whole.
+    """
+    if way is None or len(way.bridges) != 2:
+        return route.reach_mm(way)
+    ahead = np.subtract(crossing.after, crossing.before)
+    ahead = ahead / (float(np.hypot(*ahead)) or 1.0)
+    (one, other) = (np.subtract(at, crossing.at) for at in way.bridges)
+    before, after = float(one @ ahead), float(other @ ahead)
+    part = 0.5 if before == after else min(max(-before / (after - before), 0.0), 1.0)
+    x, y = one + part * (other - one)
+    return abs(float(y * ahead[0] - x * ahead[1]))
 
 
 def _bridge_nh(scene: Scene, crossing: Crossing, way: Way | None) -> float:
