@@ -9,6 +9,7 @@ from collections.abc import Callable, Iterable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass
+from functools import partial
 from pathlib import Path
 from time import perf_counter
 from typing import Any, TypeAlias
@@ -33,6 +34,8 @@ Progress: TypeAlias = Callable[[str, int, int], None]
 ALONE_BYTES = 400_000
 #: Fewer items than this are worked off faster by one process.
 FEW_ITEMS = 24
+#: More items than this are not handed to a process at once: the last ones would be waited for.
+MOST_AT_ONCE = 8
 
 
 @dataclass(frozen=True, slots=True)
@@ -90,7 +93,7 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judged: bo
     counts: tuple[Count, ...] = ()
     if judged:
         with clock.stage("crossings"):
-            crossings, bare = cross(tracks, planes)
+            crossings, bare = cross(tracks, planes, Spread(options.jobs, few=2))
         with clock.stage("loops"):
             graph = join_islands(assembled.board, planes)
             scene = set_scene(assembled, planes, graph, options)
@@ -178,20 +181,21 @@ _work: Callable[[Any], Any] | None = None
 class Spread:
     """Calls a function on many items, on several cores where that is faster; results in order."""
 
-    def __init__(self, jobs: int | None) -> None:
+    def __init__(self, jobs: int | None, few: int = FEW_ITEMS) -> None:
         self.jobs = jobs or os.cpu_count() or 1
+        self.few = few
 
     def __call__(self, work: Callable[[Any], Any], items: Iterable[Any]) -> Iterable[Any]:
         """Results in the order of the items."""
         listed = list(items)
         forked = "fork" in multiprocessing.get_all_start_methods()
-        if self.jobs < 2 or len(listed) < FEW_ITEMS or not forked:
+        if self.jobs < 2 or len(listed) < self.few or not forked:
             return [work(item) for item in listed]
         global _work  # noqa: PLW0603  # forked workers inherit it; sending it would cost more than the work
         _work = work
         try:
             with ProcessPoolExecutor(self.jobs, mp_context=_processes()) as pool:
-                size = max(1, min(16, len(listed) // (4 * self.jobs)))
+                size = max(1, min(MOST_AT_ONCE, len(listed) // (8 * self.jobs)))
                 return list(pool.map(_worked, listed, chunksize=size))
         finally:
             _work = None
@@ -218,14 +222,20 @@ def lay_tracks(assembled: Assembled, options: Options) -> tuple[Tracks, ...]:
 
 
 def cross(
-    tracks: Sequence[Tracks], planes: Sequence[Plane]
+    tracks: Sequence[Tracks], planes: Sequence[Plane], spread: Spread
 ) -> tuple[tuple[Crossing, ...], tuple[BareTrace, ...]]:
-    """Walk all traces over all planes."""
-    found = [find_crossings(layer, planes) for layer in tracks]
+    """Walk all traces over all planes, layer by layer."""
+    found = list(spread(partial(_cross_layer, tracks, planes), range(len(tracks))))
     return (
         tuple(crossing for crossings, _ in found for crossing in crossings),
         tuple(trace for _, bare in found for trace in bare),
     )
+
+
+def _cross_layer(
+    tracks: Sequence[Tracks], planes: Sequence[Plane], number: int
+) -> tuple[tuple[Crossing, ...], tuple[BareTrace, ...]]:
+    return find_crossings(tracks[number], planes)
 
 
 def set_scene(
