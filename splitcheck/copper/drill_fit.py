@@ -7,7 +7,7 @@ from typing import NamedTuple, TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.spatial import cKDTree
+import shapely
 
 from splitcheck.copper.drill_script import Script, Unit, Zeros
 from splitcheck.units import INCH_MM, Floats
@@ -134,15 +134,22 @@ def share_on_pads(centres: Floats, pads: Floats) -> float:
     """
     if not len(centres) or not len(pads):
         return 0.0
-    hit, index = _nearest(cKDTree(pads), centres, NEAR_MM)
+    hit, index = _nearest(_tree(pads), centres, NEAR_MM)
     return min(float(np.mean(hit)), len(np.unique(index)) / len(np.unique(centres, axis=0)))
 
 
-def _nearest(tree: cKDTree, points: Floats, reach_mm: float) -> tuple[Bools, Ints]:
+def _tree(places: Floats) -> shapely.STRtree:
+    return shapely.STRtree(np.atleast_1d(shapely.points(places)))
+
+
+def _nearest(tree: shapely.STRtree, points: Floats, reach_mm: float) -> tuple[Bools, Ints]:
     """Which points have a neighbour in reach, and the number of that neighbour for those."""
-    found = tree.query(points, distance_upper_bound=reach_mm)
-    hit: Bools = np.isfinite(np.asarray(found[0], dtype=np.float64))
-    return hit, np.asarray(found[1], dtype=np.int64)[hit]
+    found = tree.query_nearest(
+        np.atleast_1d(shapely.points(points)), max_distance=reach_mm, all_matches=False
+    )
+    hit: Bools = np.zeros(len(points), dtype=np.bool_)
+    hit[found[0]] = True
+    return hit, np.asarray(found[1], dtype=np.int64)
 
 
 def rank(
@@ -167,23 +174,18 @@ def shift_between(centres: Floats, pads: Floats) -> tuple[float, float, float]:
 
     Notes
     -----
-    Differences of a spread sample vote in a grid; the four fullest neighbourhoods are refined
-    and checked against all.
+    Differences of a spread sample vote in two grids; the fullest cells are refined and checked
+    against all.
     """
     if not len(centres) or not len(pads):
         return 0.0, 0.0, 0.0
     few = centres[:: max(1, len(centres) // 150)]
     many = pads[:: max(1, len(pads) // 20_000)]
     differences = (many[None, :, :] - few[:, None, :]).reshape(-1, 2)
-    cell_mm = 2 * NEAR_MM
-    cells = np.floor(differences / cell_mm).astype(np.int64)
-    cells -= cells.min(axis=0)
-    keys = cells[:, 0] * (int(cells[:, 1].max()) + 1) + cells[:, 1]
-    values, votes = np.unique(keys, return_counts=True)
     best = (0.0, 0.0, 0.0)
-    tree = cKDTree(pads)
-    for key in values[np.argsort(-votes, kind="stable")[:6]]:
-        shift = np.median(differences[keys == key], axis=0)
+    tree = _tree(pads)
+    for first in _fullest(differences):
+        shift = first
         for _ in range(2):
             hit, index = _nearest(tree, centres + shift, 3 * NEAR_MM)
             if hit.any():
@@ -192,6 +194,22 @@ def shift_between(centres: Floats, pads: Floats) -> tuple[float, float, float]:
         if share > best[2]:
             best = (round(float(shift[0]), 6), round(float(shift[1]), 6), share)
     return best
+
+
+def _fullest(differences: Floats) -> list[Floats]:
+    """Medians of the fullest cells of two grids, half a cell apart: none is parted by both."""
+    cell_mm = 2 * NEAR_MM
+    fullest: list[Floats] = []
+    for offset in (0.0, 0.5):
+        cells = np.floor(differences / cell_mm + offset).astype(np.int64)
+        cells -= cells.min(axis=0)
+        keys = cells[:, 0] * (int(cells[:, 1].max()) + 1) + cells[:, 1]
+        values, votes = np.unique(keys, return_counts=True)
+        fullest.extend(
+            np.median(differences[keys == key], axis=0)
+            for key in values[np.argsort(-votes, kind="stable")[:6]]
+        )
+    return fullest
 
 
 def unique_places(points: object) -> Floats:

@@ -78,7 +78,7 @@ class Drawing:
     remarks: tuple[str, ...]
     """Oddities that could be read, each as ``file:line: text``; they reach the report."""
     image_negative: bool = False
-    """True if the file itself says that its image is negative (``%IPNEG*%`` or ``.FilePolarity``)."""
+    """Whether the file says that its image is negative (``%IPNEG*%`` or ``.FilePolarity``)."""
 
     def attribute(self, name: str) -> tuple[str, ...] | None:
         """Fields of a file attribute, or ``None`` if the file does not carry it."""
