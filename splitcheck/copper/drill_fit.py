@@ -6,8 +6,8 @@ from collections.abc import Callable, Iterable, Sequence
 from typing import NamedTuple, TypeAlias
 
 import numpy as np
-from numpy.typing import NDArray
 import shapely
+from numpy.typing import NDArray
 
 from splitcheck.copper.drill_script import Script, Unit, Zeros
 from splitcheck.units import INCH_MM, Floats
@@ -139,14 +139,16 @@ def share_on_pads(centres: Floats, pads: Floats) -> float:
 
 
 def _tree(places: Floats) -> shapely.STRtree:
-    return shapely.STRtree(np.atleast_1d(shapely.points(places)))
+    return shapely.STRtree(_points(places))
+
+
+def _points(places: Floats) -> NDArray[np.object_]:
+    return np.asarray(shapely.points(places.reshape(-1, 2)), dtype=object).reshape(-1)
 
 
 def _nearest(tree: shapely.STRtree, points: Floats, reach_mm: float) -> tuple[Bools, Ints]:
     """Which points have a neighbour in reach, and the number of that neighbour for those."""
-    found = tree.query_nearest(
-        np.atleast_1d(shapely.points(points)), max_distance=reach_mm, all_matches=False
-    )
+    found = tree.query_nearest(_points(points), max_distance=reach_mm, all_matches=False)
     hit: Bools = np.zeros(len(points), dtype=np.bool_)
     hit[found[0]] = True
     return hit, np.asarray(found[1], dtype=np.int64)
