@@ -414,9 +414,13 @@ def _parts(cells: _Cells) -> tuple[_Cells, Ints]:
 def _compact(pieces: NDArray[np.object_], bounds: Floats, grading: Grading) -> NDArray[np.bool_]:
     """Which pieces one density and a few points can stand for."""
     area = shapely.area(pieces)
-    rough = shapely.simplify(pieces, 0.03 * np.sqrt(area), preserve_topology=False)
+    corners = shapely.get_num_coordinates(pieces)
+    many = np.flatnonzero(corners > _MOST_CORNERS)
+    slack = 0.03 * np.sqrt(area[many])
+    rough = shapely.simplify(pieces[many], slack, preserve_topology=False)
+    corners[many] = shapely.get_num_coordinates(rough)
     long = (bounds[:, 2:] - bounds[:, :2]).max(axis=1)
-    good: NDArray[np.bool_] = shapely.get_num_coordinates(rough) <= _MOST_CORNERS
+    good: NDArray[np.bool_] = corners <= _MOST_CORNERS
     good &= area > _HOLLOW * shapely.area(shapely.convex_hull(pieces))
     good &= long**2 <= grading.slender * area
     return good

@@ -181,11 +181,8 @@ def _own_images(panels: Panels, plate: float) -> Floats:
     """Mean of the image series over all pairs of points of the equivalent rectangle."""
     nodes, weights = leggauss(6)
     u, w = (nodes + 1) / 2, weights / 2
-    a, b = panels.sides.T
-    total: Floats = np.zeros(len(a))
-    for ui, wi in zip(u, w, strict=True):
-        for vi, wv in zip(u, w, strict=True):
-            weight = 4 * wi * wv * (1 - ui) * (1 - vi)
-            total = total + weight * plate_images_squared((a * ui) ** 2 + (b * vi) ** 2, plate)
-    mean: Floats = total
+    a, b = panels.sides.T[:, :, None] * u
+    value = plate_images_squared(a[:, :, None] ** 2 + b[:, None, :] ** 2, plate)
+    weight = 2 * w * (1 - u)
+    mean: Floats = np.einsum("nij,i,j->n", value, weight, weight)
     return mean
