@@ -14,7 +14,6 @@ import numpy as np
 import shapely
 from numpy.typing import NDArray
 from shapely import LineString, MultiPolygon, Polygon
-from shapely.ops import substring
 
 from splitcheck.copper.marks import Point
 from splitcheck.loops.bridges import IslandGraph, bridges_between
@@ -221,13 +220,19 @@ def _met(edges: Floats, at: Point, along: Point) -> tuple[Floats, Floats]:
 
 def _place_on(edges: Floats, at: Point) -> float | None:
     """The edge that a point lies on, by its number plus the part of it; None if it is off them."""
+    place, off_mm = _nearest_on(edges, at)
+    return place if off_mm < ON_RIM_MM else None
+
+
+def _nearest_on(edges: Floats, at: Point) -> tuple[float, float]:
+    """The place on edges nearest to a point, and how far off it is, mm."""
     x1, y1, x2, y2 = edges
     dx, dy = x2 - x1, y2 - y1
     square = np.maximum(dx * dx + dy * dy, 1e-30)
     part = np.clip(((at[0] - x1) * dx + (at[1] - y1) * dy) / square, 0.0, 1.0)
     off = np.hypot(x1 + part * dx - at[0], y1 + part * dy - at[1])
     nearest = int(np.argmin(off))
-    return nearest + float(part[nearest]) if off[nearest] < ON_RIM_MM else None
+    return nearest + float(part[nearest]), float(off[nearest])
 
 
 def _bends(shape: shapely.Geometry) -> Floats:
@@ -667,14 +672,13 @@ def _add_rim_ways(sides: dict[int, Way], crossing: Crossing, plane: Plane) -> No
     for ring in (shape.exterior, *shape.interiors):
         if max(ring.distance(start), ring.distance(goal)) > RIM_MM:
             continue
-        first, last = sorted((ring.project(start), ring.project(goal)))
-        inner = np.asarray(substring(ring, first, last).coords)
-        outer = np.concatenate(
-            [
-                np.asarray(substring(ring, last, ring.length).coords),
-                np.asarray(substring(ring, 0.0, first).coords),
-            ]
+        corners = np.asarray(ring.coords)[:-1]
+        edges = np.concatenate([corners, np.roll(corners, -1, axis=0)], axis=1).T
+        (first, one), (last, other) = sorted(
+            (int(_nearest_on(edges, at)[0]), at) for at in (crossing.path[0], crossing.path[-1])
         )
+        inner = np.array([one, *corners[first + 1 : last + 1], other])
+        outer = np.array([other, *corners[last + 1 :], *corners[: first + 1], one])
         for arc in (inner, outer):
             hull = shapely.convex_hull(
                 shapely.LineString([crossing.path[0], *arc, crossing.path[-1]])
