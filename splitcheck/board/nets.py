@@ -9,6 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 import shapely
 
+from splitcheck.board.names import is_ground, is_supply
 from splitcheck.board.parts import CopperLayer, Part
 from splitcheck.copper.holes import Hole
 from splitcheck.units import runs
@@ -149,7 +150,8 @@ def name_nets(
     remarks: list[str] = []
     for number in sorted(members):
         ids = members[number]
-        names = sorted({name for i in ids for name in (*parts[i].names, *also.get(i, ()))})
+        found = {name for i in ids for name in (*parts[i].names, *also.get(i, ()))}
+        names = sorted(found, key=_grounds_first)
         if len(names) > 1:
             listed = ", ".join(repr(name) for name in names[:4]) + (
                 " ..." if len(names) > 4 else ""
@@ -169,6 +171,11 @@ def name_nets(
         )
     remarks.extend(_fallen_apart(nets))
     return tuple(nets), tuple(remarks)
+
+
+def _grounds_first(name: str) -> tuple[bool, bool, str]:
+    """Order of the names of a net tie: what carries returns names the plane."""
+    return not is_ground(name), not is_supply(name), name
 
 
 def _fallen_apart(nets: Sequence[Net]) -> list[str]:

@@ -10,6 +10,7 @@ from hashlib import sha256
 from math import inf
 from typing import Any, TypeAlias
 
+import networkx as nx
 import numpy as np
 import shapely
 
@@ -46,6 +47,8 @@ CHANGE_RATIO = 10.0
 WHOLE = 0.6
 #: A run whose middle lies this near to the same stretch of trace is on it, mm.
 SAME_PLACE_MM = 1e-3
+#: Findings over one gap within this distance of one another are told together, mm.
+TOGETHER_MM = 6.0
 #: From this ratio of length across the trace to length along it a closed gap is a slot.
 SLOT_RATIO = 2.5
 #: A trace this near the rim of a gap, as a share of its run, clips the gap rather than crosses it.
@@ -130,7 +133,41 @@ def judge(
             findings.append(finding)
     findings.extend(_bare_findings(scene, bare, dropped))
     counts = tuple(Count(what, number) for what, number in sorted(dropped.items()))
-    return _with_ids(_with_shares(findings)), counts
+    return _with_ids(_with_shares(_by_place(findings))), counts
+
+
+def _by_place(findings: Sequence[Finding]) -> list[Finding]:
+    """Tell apart the places of one gap: a gap of clearances can run all over a layer.
+
+    Findings over one gap belong together if they lie between the same islands and in a chain of
+    neighbours; the id of the gap gets a number for each such place where there are several.
+    """
+    groups: dict[tuple[str, frozenset[str]], list[int]] = defaultdict(list)
+    for number, finding in enumerate(findings):
+        groups[finding.gap, frozenset(finding.islands)].append(number)
+    places: dict[str, list[list[int]]] = defaultdict(list)
+    for (gap, islands), members in groups.items():
+        chained = _chains([findings[i].at_mm for i in members]) if islands else [list(range(len(members)))]
+        places[gap].extend([members[i] for i in chain] for chain in chained)
+    told = list(findings)
+    for gap, found in places.items():
+        if len(found) < 2:
+            continue
+        ranked = sorted(found, key=lambda place: min(worst_first(findings[i]) for i in place))
+        for rank, place in enumerate(ranked, start=1):
+            for i in place:
+                told[i] = replace(findings[i], gap=f"{gap}/{rank}")
+    return told
+
+
+def _chains(places: Sequence[tuple[float, float]]) -> list[list[int]]:
+    """Indexes of places in groups of which every member has another one near, unless alone."""
+    tree = shapely.STRtree(shapely.points(places))
+    near: nx.Graph[int] = nx.Graph()
+    near.add_nodes_from(range(len(places)))
+    pairs = tree.query(tree.geometries, predicate="dwithin", distance=TOGETHER_MM)
+    near.add_edges_from(pairs.T.tolist())
+    return [sorted(members) for members in nx.connected_components(near)]
 
 
 def _once_a_gap(weighed: Sequence[Weighed]) -> list[Weighed]:

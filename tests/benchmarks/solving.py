@@ -16,7 +16,17 @@ from typing import Any, NamedTuple
 from splitcheck.errors import SplitcheckError
 from splitcheck.loops.bridges import join_islands
 from splitcheck.planes.islands import find_planes
-from splitcheck.road import Clock, Options, build, cross, lay_tracks, load, read_copper, set_scene
+from splitcheck.road import (
+    Clock,
+    Options,
+    Spread,
+    build,
+    cross,
+    lay_tracks,
+    load,
+    read_copper,
+    set_scene,
+)
 from splitcheck.verdict.judge import judge
 from tests.benchmarks.measure import load as machine
 from tests.benchmarks.measure import table
@@ -36,7 +46,7 @@ def timed(folder: Path) -> tuple[list[Call], list[Call], int]:
     layers = read_copper(export, 1, Clock(lambda stage, done, total: None))
     assembled = build(export, layers, options)
     planes = find_planes(assembled.board)
-    crossings, bare = cross(lay_tracks(assembled, options), planes)
+    crossings, bare = cross(lay_tracks(assembled, options), planes, Spread(1))
     scene = set_scene(assembled, planes, join_islands(assembled.board, planes), options)
     stages: list[list[Call]] = []
 
