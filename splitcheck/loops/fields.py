@@ -66,6 +66,8 @@ class Task:
     """Layer number of the whole plane beyond the broken one."""
     other: int | None
     """Layer number of the whole plane on the trace's other side."""
+    part: float = 1.0
+    """Part of the current that the solve would see which really returns on this plane."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -157,9 +159,12 @@ class Fields:
             return {}
         return {
             task.number: Field(
-                Inductance(float(solution.added_nh[i, i]), float(solution.error_nh[i, i])),
+                Inductance(
+                    task.part**2 * float(solution.added_nh[i, i]),
+                    task.part**2 * float(solution.error_nh[i, i]),
+                ),
                 tuple(
-                    (other.number, float(solution.added_nh[i, j]))
+                    (other.number, task.part * other.part * float(solution.added_nh[i, j]))
                     for j, other in enumerate(tasks)
                     if j != i and not solution.cut_off[j]
                 ),

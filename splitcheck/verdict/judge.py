@@ -43,6 +43,8 @@ CHANGE_RUN_MM = 5.0
 CHANGE_STITCH_MM = 3.0
 #: ... or, whatever their nets, if it is this many times longer than the planes are apart.
 CHANGE_RATIO = 10.0
+#: So far before and after a run the plane on the trace's other side is looked for, mm.
+BESIDE_MM = 3.0
 #: A plane is whole under a gap if it covers this share of places in it: antipads do not count.
 WHOLE = 0.6
 #: A run whose middle lies this near to the same stretch of trace is on it, mm.
@@ -81,6 +83,8 @@ class Weighed:
     """Layer number of a whole plane beyond the broken one."""
     other: int | None
     """Layer number of a whole plane on the trace's other side."""
+    beside: int | None
+    """Layer number of the plane on the trace's other side, before and after the run."""
     share: float
     """Part of the return that the broken plane carries."""
     estimate: Inductance | None
@@ -147,7 +151,11 @@ def _by_place(findings: Sequence[Finding]) -> list[Finding]:
         groups[finding.gap, frozenset(finding.islands)].append(number)
     places: dict[str, list[list[int]]] = defaultdict(list)
     for (gap, islands), members in groups.items():
-        chained = _chains([findings[i].at_mm for i in members]) if islands else [list(range(len(members)))]
+        chained = (
+            _chains([findings[i].at_mm for i in members])
+            if islands
+            else [list(range(len(members)))]
+        )
         places[gap].extend([members[i] for i in chain] for chain in chained)
     told = list(findings)
     for gap, found in places.items():
@@ -216,6 +224,7 @@ def _solve_all(scene: Scene, weighed: Sequence[Weighed], spread: Spread) -> dict
             scene.board.stack.height_mm(item.crossing.layer, item.crossing.plane),
             item.beyond,
             item.other,
+            item.share / _share(scene, item.crossing, item.other),
         )
         for number, item in enumerate(weighed)
     ]
@@ -339,6 +348,19 @@ def _other_side(scene: Scene, crossing: Crossing) -> int | None:
     )
 
 
+def _beside(scene: Scene, crossing: Crossing) -> int | None:
+    """The layer on the trace's other side that carries returns just before and after the run."""
+    stretch = shapely.LineString(crossing.stretch)
+    ends = sorted(stretch.project(shapely.Point(end)) for end in (crossing.before, crossing.after))
+    steps = np.linspace(0.1, 1.0, 6) * BESIDE_MM
+    along = np.concatenate([ends[0] - steps, ends[1] + steps])
+    along = along[(along >= 0.0) & (along <= stretch.length)]
+    points = shapely.get_coordinates(stretch.interpolate(np.append(along, ends)))
+    layers = _layers_on_other_side(scene, crossing)
+    xs, ys = points[:, 0], points[:, 1]
+    return nearest_cover(tuple(scene.planes.values()), layers, xs, ys, WHOLE)
+
+
 def _share(scene: Scene, crossing: Crossing, other: int | None) -> float:
     """Part of the return that the broken plane carries: 1 - h1/(h1 + h2) between two planes."""
     if other is None:
@@ -384,14 +406,15 @@ def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
     route = find_route(crossing, scene.planes, scene.terrains, scene.graph)
     other = _other_side(scene, crossing)
     beyond = _beyond(scene, crossing)
-    share = _share(scene, crossing, other)
+    beside = _beside(scene, crossing)
+    share = _share(scene, crossing, other if beside is None else beside)
     value = _estimate(scene, crossing, route, share, beyond, other)
     if value is not None and value.added_nh + value.error_nh < scene.min_nh:
         return _too_small(scene)
     kind = _kind(crossing, scene.planes[crossing.plane].gaps[crossing.gap], route)
     if kind == "edge-run":
         return "runs beyond the rim of a plane (edge runs)"
-    return Weighed(crossing, route, beyond, other, share, value, kind, (crossing,))
+    return Weighed(crossing, route, beyond, other, beside, share, value, kind, (crossing,))
 
 
 def _crossing_finding(
@@ -601,6 +624,8 @@ def _extras(scene: Scene, item: Weighed) -> list[str]:
         extras.append(
             f"{names[item.beyond - 1]} is whole {apart:.2f} mm beyond and shields the gap"
         )
+    if item.beside is not None and item.beside != item.other:
+        extras.append(f"{names[item.beside - 1]} on the trace's other side is open here as well")
     passed = [layer for layer in _layers_beyond(scene, item.crossing) if layer in scene.planes]
     if passed and passed[0] != item.beyond:
         extras.append(f"the next plane, {names[passed[0] - 1]}, is open here as well")
