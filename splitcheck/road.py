@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 import multiprocessing
 import os
 import shutil
@@ -70,12 +71,26 @@ def rank(path: Path, options: Options, progress: Progress | None = None) -> Repo
     SplitcheckError
         If the input cannot be read or judged.
     """
-    return _walk(path, options, progress, judged=True)
+    with _uncollected():
+        return _walk(path, options, progress, judged=True)
 
 
 def read(path: Path, options: Options, progress: Progress | None = None) -> Report:
     """Say how the files of a board were understood; the report has no findings."""
-    return _walk(path, options, progress, judged=False)
+    with _uncollected():
+        return _walk(path, options, progress, judged=False)
+
+
+@contextmanager
+def _uncollected() -> Iterator[None]:
+    """Do without the search for cycles meanwhile: marks and findings hold none, and are many."""
+    enabled = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if enabled:
+            gc.enable()
 
 
 def _walk(path: Path, options: Options, progress: Progress | None, *, judged: bool) -> Report:

@@ -310,6 +310,8 @@ def shortest(
             if coarse + 1 == len(CLEAR_MM):
                 return None
             coarse += 1
+            if coarse + 1 == len(CLEAR_MM):  # few corners are left: look everywhere at once
+                limit = widest
             continue
         if isinstance(tried, tuple) and (tried[0] <= limit or limit >= widest):
             return tried if tried[0] <= longest_mm else None
