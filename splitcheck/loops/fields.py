@@ -39,9 +39,9 @@ MOST_NEIGHBOURS = 12
 MOST_COARSER = 3.0
 #: Gaps with more corners than this in the window are not solved: the mesh would be too coarse.
 MOST_CORNERS = 4000
-#: Gaps smaller than this share of the height do not matter unless crossed.
-SMALL_SHARE = 1.0
-#: Barrel of a plated hole taken as a bridge, mm (common practice, no source).
+#: Gaps smaller than the height do not matter unless this many heights near, or crossed.
+NEAR_HEIGHTS = 2.0
+#: Barrel of a plated hole whose drill is not known, mm (common practice, no source).
 VIA_MM = 0.3
 #: Vias up to so many times as far off as the one of the shortest way are bridges as well ...
 VIAS_AS_NEAR = 2.0
@@ -205,14 +205,18 @@ class Fields:
         """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out."""
         plane = self.planes[tasks[0].crossing.plane]
         across = shapely.union_all(lines)
-        least = SMALL_SHARE * tasks[0].height_mm
+        height = tasks[0].height_mm
         crossed = plane.gaps[tasks[0].crossing.gap].shape
         beside = []
         for number in sorted(plane.gap_boxes.intersection(window.bounds)):
             shape = plane.gaps[number].shape
-            if shape is crossed or box_size_mm(shape) < least or shape.intersects(across):
+            if shape is crossed:
                 continue
-            beside.append((shape.distance(across), number))
+            apart = shape.distance(across)
+            small = box_size_mm(shape) < height
+            if apart == 0 or (small and apart > NEAR_HEIGHTS * height):
+                continue
+            beside.append((apart, number))
         chosen = [plane.gaps[number].shape for _, number in sorted(beside)[:MOST_NEIGHBOURS]]
         foreign = self._foreign_copper(plane, window)
         return [
@@ -242,7 +246,7 @@ class Fields:
         A plane on the trace's other side is in the solve already and needs no strap.
         """
         crossing = tasks[0].crossing
-        vias: set[Point] = set()
+        vias: dict[Point, float] = {}
         straps: dict[tuple[Point, ...], engine.Strap] = {}
         for task in tasks:
             for way in (task.route.left, task.route.right):
@@ -256,11 +260,11 @@ class Fields:
                     straps[way.bridges] = self._strap(crossing, way.bridges, way.bridge_layer)
         return [
             *(strap for _, strap in sorted(straps.items())),
-            *(engine.ViaBridge(shapely.Point(at), VIA_MM) for at in sorted(vias)),
+            *(engine.ViaBridge(shapely.Point(at), wide_mm) for at, wide_mm in sorted(vias.items())),
         ]
 
-    def _vias_like(self, task: Task, way: Way) -> list[Point]:
-        """The vias of a way and those that join the same islands hardly farther off."""
+    def _vias_like(self, task: Task, way: Way) -> dict[Point, float]:
+        """The vias of a way and those that join the same islands hardly farther off; diameters."""
         crossing = task.crossing
         plane = self.planes[crossing.plane]
         borrowed = {
@@ -268,7 +272,7 @@ class Fields:
             for island in self.planes[way.bridge_layer].islands
             if island.net_name == way.bridge_net
         }
-        found: list[Point] = list(way.bridges)
+        found = dict.fromkeys(way.bridges, VIA_MM)
         for number, at, bridge in zip(
             crossing.islands, (crossing.before, crossing.after), way.bridges, strict=True
         ):
@@ -276,11 +280,12 @@ class Fields:
             reach = VIAS_AS_NEAR * float(np.hypot(bridge[0] - at[0], bridge[1] - at[1])) + 1.0
             for other in sorted(borrowed & set(self.graph.adj[island])):
                 places = bridges_between(self.graph, island, other)
+                wide_mm = self.graph.edges[island, other]["wide_mm"]
                 far = np.hypot(*(places - np.asarray(at)).T)
                 order = np.argsort(far, kind="stable")[:MOST_VIAS]
-                found.extend(
-                    (float(places[i, 0]), float(places[i, 1])) for i in order if far[i] <= reach
-                )
+                own = np.hypot(*(places - np.asarray(bridge)).T)
+                for i in {*order[far[order] <= reach].tolist(), *np.flatnonzero(own == 0).tolist()}:
+                    found[float(places[i, 0]), float(places[i, 1])] = float(wide_mm[i])
         return found
 
     def _strap(self, crossing: Crossing, ends: tuple[Point, ...], layer: int) -> engine.Strap:
