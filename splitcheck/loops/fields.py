@@ -19,6 +19,7 @@ from splitcheck.loops import solve as engine
 from splitcheck.loops.bridges import IslandGraph, bridges_between
 from splitcheck.loops.estimate import Inductance, via_pair_nh
 from splitcheck.loops.routes import Route, Way
+from splitcheck.loops.stray import stray_db
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane, box_size_mm
 
@@ -77,6 +78,8 @@ class Field:
     value: Inductance
     mutual_nh: tuple[tuple[int, float], ...]
     """Mutual added inductance with other crossings of the same gap, by their number."""
+    stray_db: float | None = None
+    """How much more field a probe finds above the crossing; None under another plane."""
 
 
 def can_solve(task: Task) -> bool:
@@ -154,7 +157,8 @@ class Fields:
         first = tasks[0].crossing
         plane = self.planes[first.plane]
         traces = [_trace(task, plane.gaps[first.gap].shape) for task in tasks]
-        solution = self._solution(tasks, traces)
+        bridges = self._bridges(tasks)
+        solution = self._solution(tasks, traces, bridges)
         if solution is None or solution.coarser > MOST_COARSER:
             return {}
         return {
@@ -168,13 +172,17 @@ class Fields:
                     for j, other in enumerate(tasks)
                     if j != i and not solution.cut_off[j]
                 ),
+                _stray_db(task, solution, i, traces[i], bridges),
             )
             for i, task in enumerate(tasks)
             if not solution.cut_off[i] and isfinite(float(solution.added_nh[i, i]))
         }
 
     def _solution(
-        self, tasks: Sequence[Task], traces: Sequence[engine.TraceOver]
+        self,
+        tasks: Sequence[Task],
+        traces: Sequence[engine.TraceOver],
+        bridges: Sequence[engine.ViaBridge | engine.Strap],
     ) -> engine.Solution | None:
         """One solve; None if the gaps are too ragged for it."""
         plane = self.planes[tasks[0].crossing.plane]
@@ -189,7 +197,7 @@ class Fields:
                 tasks[0].height_mm,
                 beyond_mm=self._apart_mm(plane.layer, tasks[0].beyond),
                 above_mm=self._apart_mm(plane.layer, tasks[0].other),
-                bridges=self._bridges(tasks),
+                bridges=bridges,
                 outside=_outside(plane, window),
                 disjoint=True,
             )
@@ -293,6 +301,20 @@ class Fields:
         height = self.board.stack.height_mm(crossing.plane, layer)
         line = LineString(ends)
         return engine.Strap(line, STRAP_MM, height, via_pair_nh(line.length, VIA_MM, height))
+
+
+def _stray_db(
+    task: Task,
+    solution: engine.Solution,
+    number: int,
+    trace: engine.TraceOver,
+    bridges: Sequence[engine.ViaBridge | engine.Strap],
+) -> float | None:
+    """Field above the crossing, unless a plane on the trace's side, whole or not, is in between."""
+    if task.other is not None or task.part < 1.0:
+        return None
+    at = task.crossing.at
+    return stray_db(solution, number, trace, task.height_mm, at, bridges=bridges)
 
 
 def _outside(plane: Plane, window: Polygon) -> Polygon | None:

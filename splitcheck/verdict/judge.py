@@ -17,6 +17,7 @@ import shapely
 from splitcheck.board.board import Board
 from splitcheck.loops import estimate
 from splitcheck.loops.bridges import IslandGraph, stitched_near
+from splitcheck.loops.corner import detour_corner_khz
 from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.fields import Field, Fields, Task, can_solve, cluster
 from splitcheck.loops.routes import Route, Terrain, Way, find_route
@@ -526,8 +527,8 @@ def _finding(
         method="solved" if field is not None else "none" if value is None else "estimated",
         noise_mv=noise,
         rise_ns=scene.drive.rise_ns,
-        corner_khz=None,
-        stray_db=None,
+        corner_khz=_corner_khz(scene, item, field),
+        stray_db=None if field is None else field.stray_db,
         islands=(islands[0].id, islands[1].id),
         bridges=_bridges(route.best),
         gap=plane.gaps[crossing.gap].id,
@@ -538,6 +539,22 @@ def _finding(
         fingerprint=_fingerprint(item.kind, net, layers[crossing.layer - 1].name, at),
         reason=_reason(scene, item),
         **_disagreement(item.estimate, field),
+    )
+
+
+def _corner_khz(scene: Scene, item: Weighed, field: Field | None) -> float | None:
+    """From where on the return follows inductance; None if nothing was solved."""
+    detour_mm = item.route.detour_mm
+    if field is None or detour_mm is None:
+        return None
+    stack, crossing = scene.board.stack, item.crossing
+    layer = item.other if item.beside is None else item.beside
+    return detour_corner_khz(
+        detour_mm,
+        field.value.added_nh,
+        height_mm=stack.height_mm(crossing.layer, crossing.plane),
+        copper_um=stack.layers[crossing.plane - 1].copper_um,
+        above_mm=None if layer is None else stack.height_mm(crossing.plane, layer),
     )
 
 
