@@ -26,8 +26,10 @@ from splitcheck.planes.islands import Plane, box_size_mm
 #: The window of a solve reaches this much beyond the ways round the gap: in mm and as a share.
 BEYOND_MM = 2.0
 BEYOND_SHARE = 0.3
-#: A gap open on one side is kept out to this many times the size of the way on the other.
-OPEN_SIDE = 8.0
+#: A gap open on one side is kept out to this many times the size of the way on the other: far
+#: enough, as flux may leave where it is cut off; and with another plane, where none may.
+OPEN_SIDE = 2.0
+OPEN_SIDE_SHUT = 8.0
 #: Crossings of one gap this near to one another are solved together, mm ...
 TOGETHER_MM = 4.0
 #: ... but not more of them at once.
@@ -187,7 +189,7 @@ class Fields:
         """One solve; None if the gaps are too ragged for it."""
         plane = self.planes[tasks[0].crossing.plane]
         window = _window(tasks, plane.gaps[tasks[0].crossing.gap].shape)
-        gaps = self._gaps(tasks, window, [trace.line for trace in traces])
+        gaps, ends = self._gaps(tasks, window, [trace.line for trace in traces])
         if sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS:
             return None
         try:
@@ -199,6 +201,7 @@ class Fields:
                 above_mm=self._apart_mm(plane.layer, tasks[0].other),
                 bridges=bridges,
                 outside=_outside(plane, window),
+                ends=ends,
                 disjoint=True,
             )
         except SplitcheckError:
@@ -209,8 +212,11 @@ class Fields:
 
     def _gaps(
         self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString]
-    ) -> list[Polygon]:
-        """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out."""
+    ) -> tuple[list[Polygon], list[shapely.Point]]:
+        """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out.
+
+        Returned with the places where the window cuts off what leads to the outside.
+        """
         plane = self.planes[tasks[0].crossing.plane]
         across = shapely.union_all(lines)
         height = tasks[0].height_mm
@@ -225,13 +231,16 @@ class Fields:
             if apart == 0 or (small and apart > NEAR_HEIGHTS * height):
                 continue
             beside.append((apart, number))
-        chosen = [plane.gaps[number].shape for _, number in sorted(beside)[:MOST_NEIGHBOURS]]
+        chosen = [plane.gaps[number] for _, number in sorted(beside)[:MOST_NEIGHBOURS]]
         foreign = self._foreign_copper(plane, window)
-        return [
-            polygon
-            for shape in (crossed, *chosen)
-            for polygon in _polygons(shapely.difference(_clipped(shape, window), foreign))
-        ]
+        gaps: list[Polygon] = []
+        ends: list[shapely.Point] = []
+        for gap in (plane.gaps[tasks[0].crossing.gap], *chosen):
+            pieces = _polygons(shapely.difference(_clipped(gap.shape, window), foreign))
+            gaps.extend(pieces)
+            if gap.open:
+                ends.extend(end for piece in pieces if (end := _end(piece, window)) is not None)
+        return gaps, ends
 
     def _foreign_copper(self, plane: Plane, window: Polygon) -> shapely.Geometry:
         """Copper of the plane's layer that carries no return: no flux goes through it either."""
@@ -325,11 +334,21 @@ def _outside(plane: Plane, window: Polygon) -> Polygon | None:
     return None if frame.contains_properly(window) else frame
 
 
+def _end(piece: Polygon, window: Polygon) -> shapely.Point | None:
+    """Where a window cuts off a gap: the middle of the longest cut."""
+    along = shapely.get_parts(shapely.line_merge(shapely.intersection(piece, window.exterior)))
+    cuts = along[shapely.get_type_id(along) == shapely.GeometryType.LINESTRING]
+    if not len(cuts):
+        return None
+    longest: LineString = cuts[int(np.argmax(shapely.length(cuts).round(6)))]
+    return longest.interpolate(0.5, normalized=True)
+
+
 def _window(tasks: Sequence[Task], gap: Polygon) -> Polygon:
     """A box round the crossings and their ways round, with room to spare.
 
-    Cutting a gap off at the box closes it there. Where there is no way round on one side, the gap
-    is therefore kept out to many times the length of the way on the other, or to its end.
+    Where there is no way round on one side, the gap is kept out to some times the length of the
+    way on the other, or to its end.
     """
     points = [point for task in tasks for point in task.crossing.path]
     ways = [way for task in tasks for way in (task.route.left, task.route.right)]
@@ -340,7 +359,9 @@ def _window(tasks: Sequence[Task], gap: Polygon) -> Polygon:
     room = BEYOND_MM + BEYOND_SHARE * size + 5 * tasks[0].height_mm
     box = shapely.box(x0 - room, y0 - room, x1 + room, y1 + room)
     if None in ways:
-        far = shapely.box(*box.bounds).buffer(OPEN_SIDE * size, join_style="mitre")
+        shut = tasks[0].beyond is not None or tasks[0].other is not None
+        times = OPEN_SIDE_SHUT if shut else OPEN_SIDE
+        far = shapely.box(*box.bounds).buffer(times * size, join_style="mitre")
         whole = shapely.box(*gap.bounds).buffer(BEYOND_MM, join_style="mitre")
         box = box.union(far.intersection(whole)).envelope
     window: Polygon = box

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from math import isfinite
 
 import numpy as np
@@ -17,7 +17,14 @@ from splitcheck.loops.matrix import interaction
 from splitcheck.loops.panels import Panels, cut
 from splitcheck.loops.relevant import Scene, arrange
 from splitcheck.loops.share import share_out, via_matrix
-from splitcheck.loops.sources import Known, Strip, islands, point_angles, strip_sources
+from splitcheck.loops.sources import (
+    Known,
+    Strip,
+    islands,
+    point_angles,
+    still_afar,
+    strip_sources,
+)
 from splitcheck.units import MU0, Floats
 
 #: Size of a panel at the trace, in heights of the trace over the plane.
@@ -47,6 +54,8 @@ _SLENDER = 12.0
 #: What the method itself is off by where mesh and truncation are not: against the independent
 #: field solves of tests/loops/reference.csv, mostly because a real strip crowds its current.
 _METHOD_ERROR = 0.03
+#: Where a gap was cut off is looked for this far from its rim, mm.
+_ON_RIM_MM = 0.05
 #: Less than this is not told from nothing.
 _FLOOR_NH = 1e-3
 #: How much of the difference between an evenly filled strip and a thread of current is in doubt.
@@ -119,6 +128,7 @@ def added(
     above_mm: float | None = None,
     bridges: Sequence[ViaBridge | Strap] = (),
     outside: Polygon | None = None,
+    ends: Sequence[Point] = (),
     disjoint: bool = False,
     fineness: float = 1.0,
 ) -> Solution:
@@ -142,6 +152,9 @@ def added(
         What can carry current from one side of a gap to the other.
     outside
         Outline of the plane: all outside it counts as a gap. None: the plane has no end.
+    ends
+        Where gaps that go on to the outside were cut off, on their rims: flux that leaves through
+        them there comes back outside. Without effect where another plane shuts it in.
     disjoint
         The gaps are known to be valid polygons that do not touch; this saves time.
     fineness
@@ -184,6 +197,8 @@ def added(
         disjoint=disjoint,
     )
     job = _job(scene, traces, bridges, height_mm, beyond_mm, above_mm)
+    if not job.plates_mm:
+        job = replace(job, ends=_cut_off(scene, ends))
     if not job.traces or _lost(job).all():
         return _judged(job, _nothing(job), _nothing(job))
     coarse = _solved(job, _panels(job, fineness / _COARSER)[0])
@@ -256,8 +271,20 @@ class _Job:
     height_mm: float
     near_mm: float
     remarks: tuple[str, ...]
+    ends: tuple[tuple[int, Floats], ...] = ()
+    """Gaps that go on beyond what is given, and where each was cut off."""
     known: Known = field(default_factory=dict)
     """Cuts through the gaps, filled by the first solve and used again by the next."""
+
+
+def _cut_off(scene: Scene, ends: Sequence[Point]) -> tuple[tuple[int, Floats], ...]:
+    """Which gaps were cut off, and where; one place for each."""
+    found: dict[int, Floats] = {}
+    for end in ends:
+        for number, gap in enumerate(scene.gaps):
+            if shapely.dwithin(gap, end, _ON_RIM_MM):
+                found.setdefault(number, np.array(end.coords[0][:2]))
+    return tuple(sorted(found.items(), key=lambda pair: pair[0]))
 
 
 def _job(
@@ -419,7 +446,8 @@ def _sources(job: _Job, mesh: Panels) -> tuple[Floats, Floats, Floats]:
     points = np.concatenate([*(strip.line[[0, -1]] for strip in job.strips), job.vias])
     angles = point_angles(mesh, job.scene.gaps, points, held, job.known)
     ends = 2 * len(job.strips)
-    full, lines = strip_sources(mesh, job.strips, angles[1:ends:2] - angles[:ends:2])
+    between = still_afar(mesh, job.strips, angles[1:ends:2] - angles[:ends:2], job.ends)
+    full, lines = strip_sources(mesh, job.strips, between)
     columns = [full, angles[ends:].T / (2 * np.pi)]
     return np.concatenate(columns, axis=1), lines[:, : len(job.traces)], rows
 
@@ -430,7 +458,8 @@ def _response(job: _Job, mesh: Panels, sources: Floats) -> Floats:
         return np.zeros_like(sources)
     matrix = interaction(mesh, job.plates_mm)
     # flux can go out over the open rim of the world, unless planes shut it in
-    closed = [g for g in range(len(job.scene.gaps)) if g != job.scene.endless or job.plates_mm]
+    free = {job.scene.endless, *(gap for gap, _ in job.ends)} if not job.plates_mm else set()
+    closed = [g for g in range(len(job.scene.gaps)) if g not in free]
     nets = (mesh.gap[:, None] == np.array(closed, dtype=np.int64)).astype(np.float64)
     solved = _cholesky_solve(matrix, np.concatenate([sources, nets], axis=1))
     flux, unit = solved[:, : sources.shape[1]], solved[:, sources.shape[1] :]

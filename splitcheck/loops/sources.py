@@ -101,6 +101,45 @@ def strip_sources(
     return full, lines
 
 
+def still_afar(
+    panels: Panels,
+    strips: Sequence[Strip],
+    between: Floats,
+    ends: Sequence[tuple[int, Floats]],
+) -> Floats:
+    """Set the angles between the ends of traces so that f fades away along a gap that goes on.
+
+    Within a gap f is known up to whole turns, which do not matter if no net flux goes through it.
+    Through a gap that goes on beyond what is looked at there may go some; its f is nothing far
+    away, so that where it was cut off f is what the traces make there without any turns.
+
+    Parameters
+    ----------
+    panels, strips
+        The panels and the traces.
+    between
+        As in `strip_sources`, shape (s, n), rad.
+    ends
+        Numbers of gaps that go on, and where each was cut off, mm.
+
+    Returns
+    -------
+    The angles, shape (s, n), rad.
+    """
+    turned = between.copy()
+    for gap, at in ends:
+        mine = np.flatnonzero(panels.gap == gap)
+        if not len(mine):
+            continue
+        last = mine[np.argmin(np.hypot(*(panels.centre[mine] - at).T))]
+        x, y = panels.centre[last, None].T
+        for k, strip in enumerate(strips):
+            _, seen = wall_source(x, y, strip.segments, strip.height_mm, strip.above_mm)
+            turns = np.rint((between[k, last] - seen.sum()) / (2 * np.pi))
+            turned[k, mine] -= 2 * np.pi * turns
+    return turned
+
+
 def _smooth(spots: Floats, segments: Floats, strip: Strip) -> Floats:
     """What stretches add to f, less what they add to the jump, shape (k, s)."""
     x, y = spots.T

@@ -80,3 +80,23 @@ def test_a_slot_under_a_stripline_adds_what_the_other_solver_says() -> None:
     trace = TraceOver(LineString([(-5, 0), (5, 0)]), 0.4)
     slot = shapely.box(-0.2, -4, 0.2, 4)
     assert added([slot], [trace], 0.2, above_mm=0.6).of(0) == pytest.approx(0.403, rel=0.05)
+
+
+@pytest.mark.parametrize("kept_mm", [4.0, 8.0, 12.0])
+@pytest.mark.parametrize(
+    "row",
+    [row for row in rows("reference.csv") if row["case"].startswith("D_")],
+    ids=lambda row: row["case"],
+)
+def test_slot_cut_off_on_its_way_to_the_rim_adds_what_all_of_it_does(
+    row: dict[str, str], kept_mm: float
+) -> None:
+    """The slot goes on for 20 mm to the rim of the plane; closed where it is cut off it adds less."""
+    (gap,) = gaps_of(row)
+    kept = shapely.clip_by_rect(gap, -20, -20, 20, kept_mm)
+    trace = TraceOver(LineString([(-15, 0), (15, 0)]), float(row["width_mm"]))
+    open_nh = added([kept], [trace], float(row["height_mm"]), ends=[Point(0, kept_mm)]).of(0)
+    closed_nh = added([kept], [trace], float(row["height_mm"])).of(0)
+    assert open_nh == pytest.approx(float(row["added_nh"]), rel=0.05)
+    assert closed_nh is not None
+    assert closed_nh < 0.9 * float(row["added_nh"])
