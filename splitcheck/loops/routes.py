@@ -42,9 +42,11 @@ SMALL_GAP_MM = 3.0
 SMALL_DETOUR_MM = 12.0
 #: Corners of gaps whose rim has more points than this are found in tiles, as they are needed, ...
 TILED_POINTS = 400
-#: ... with sides of this length and so much room round them, mm.
-TILE_MM = 8.0
-TILE_MARGIN_MM = 0.5
+#: ... with sides of this length, mm, ...
+TILE_MM = 12.0
+#: ... and room for the next corner: chords of an arc of radius r that leaves them by c are
+#: 2 sqrt(2 r c) long, times this by sqrt(c) for arcs of the trade's sizes, mm^0.5.
+WIDE_ARC = 4.0
 
 
 Box: TypeAlias = tuple[float, float, float, float]
@@ -141,7 +143,7 @@ class Terrain:
     def _corners_in(self, gap: int, clear_mm: float, tile: Tile) -> Floats:
         shape: shapely.Geometry = self.plane.gaps[gap].shape
         if tile is not None:  # with a margin, so that its own border makes no corner in the tile
-            low, margin = np.array(tile) * TILE_MM, 4 * clear_mm + TILE_MARGIN_MM
+            low, margin = np.array(tile) * TILE_MM, 4 * clear_mm + WIDE_ARC * clear_mm**0.5
             shape = shapely.clip_by_rect(shape, *(low - margin), *(low + TILE_MM + margin))
             shape = shapely.simplify(shape, 0.1 * clear_mm)
         wider = shapely.simplify(shapely.buffer(shape, 1.2 * clear_mm, quad_segs=2), clear_mm)
@@ -149,8 +151,9 @@ class Terrain:
         if tile is not None:  # and with the next corner, so that steps lead from tile to tile
             mine = np.all((bends >= low) & (bends < low + TILE_MM), axis=2).any(axis=1)
             room = margin - 2 * clear_mm
-            real = ((bends[:, 0] > low - room) & (bends[:, 0] < low + TILE_MM + room)).all(axis=1)
-            bends = bends[mine & real]
+            real = ((bends > low - room) & (bends < low + TILE_MM + room)).all(axis=2)
+            # where the rim runs on is not known: any step touches there
+            bends = np.where(real[:, :, None], bends, bends[:, :1])[mine & real[:, 0]]
         return bends
 
     def rim_distance_mm(self, gap: int, at: Point, along: Point) -> float:
