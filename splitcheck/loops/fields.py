@@ -30,8 +30,12 @@ BEYOND_SHARE = 0.3
 #: enough, as flux may leave where it is cut off; and with another plane, where none may.
 OPEN_SIDE = 2.0
 OPEN_SIDE_SHUT = 8.0
-#: Crossings of one gap this near to one another are solved together, mm ...
+#: Crossings of one gap this near to one another are solved together, mm; and those no further
+#: apart than so many of their detours, as they couple (by 0.3 of the lesser value at one of them,
+#: K_10 of tests/loops/reference_coupling.csv), out to where one mesh can hardly serve both, mm ...
 TOGETHER_MM = 4.0
+TOGETHER_DETOURS = 1.2
+TOGETHER_MOST_MM = 20.0
 #: ... but not more of them at once.
 MOST_TRACES = 40
 #: A trace is solved with at least this many heights of it beyond either rim of its gap.
@@ -112,7 +116,14 @@ def cluster(tasks: Sequence[Task]) -> tuple[tuple[Task, ...], ...]:
     return tuple(clusters)
 
 
-def _near_one_another(tasks: Sequence[Task]) -> list[tuple[Task, ...]]:
+def _together_mm(task: Task, detours: float) -> float:
+    """How far from a crossing others of its gap may be to be solved with it, mm."""
+    return max(TOGETHER_MM, min(detours * (task.route.detour_mm or 0.0), TOGETHER_MOST_MM))
+
+
+def _near_one_another(
+    tasks: Sequence[Task], detours: float = TOGETHER_DETOURS
+) -> list[tuple[Task, ...]]:
     """Split tasks into chains of neighbours."""
     left = sorted(tasks, key=lambda task: (task.crossing.at, task.number))
     clusters = []
@@ -121,10 +132,14 @@ def _near_one_another(tasks: Sequence[Task]) -> list[tuple[Task, ...]]:
         grown = True
         while grown and len(members) < MOST_TRACES:
             at = np.array([task.crossing.at for task in members])
+            reach = np.array([_together_mm(task, detours) for task in members])
             near = [
                 task
                 for task in left
-                if np.hypot(*(at - np.asarray(task.crossing.at)).T).min() <= TOGETHER_MM
+                if (
+                    np.hypot(*(at - np.asarray(task.crossing.at)).T)
+                    <= np.minimum(reach, _together_mm(task, detours))
+                ).any()
             ][: MOST_TRACES - len(members)]
             grown = bool(near)
             members.extend(near)
@@ -162,7 +177,10 @@ class Fields:
         bridges = self._bridges(tasks)
         solution = self._solution(tasks, traces, bridges)
         if solution is None or solution.coarser > MOST_COARSER:
-            return {}
+            nearer = _near_one_another(tasks, 0.0)
+            if len(nearer) < 2:
+                return {}
+            return {number: field for part in nearer for number, field in self.solve(part).items()}
         return {
             task.number: Field(
                 Inductance(
