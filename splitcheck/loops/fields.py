@@ -116,9 +116,15 @@ def cluster(tasks: Sequence[Task]) -> tuple[tuple[Task, ...], ...]:
     return tuple(clusters)
 
 
-def _together_mm(task: Task, detours: float) -> float:
-    """How far from a crossing others of its gap may be to be solved with it, mm."""
-    return max(TOGETHER_MM, min(detours * (task.route.detour_mm or 0.0), TOGETHER_MOST_MM))
+def together_mm(detour_mm: float | None, detours: float = TOGETHER_DETOURS) -> float:
+    """How far from a crossing others of its gap may be to be solved with it, mm.
+
+    Examples
+    --------
+    >>> together_mm(None), together_mm(10.0), together_mm(100.0)
+    (4.0, 12.0, 20.0)
+    """
+    return max(TOGETHER_MM, min(detours * (detour_mm or 0.0), TOGETHER_MOST_MM))
 
 
 def _near_one_another(
@@ -132,13 +138,13 @@ def _near_one_another(
         grown = True
         while grown and len(members) < MOST_TRACES:
             at = np.array([task.crossing.at for task in members])
-            reach = np.array([_together_mm(task, detours) for task in members])
+            reach = np.array([together_mm(task.route.detour_mm, detours) for task in members])
             near = [
                 task
                 for task in left
                 if (
                     np.hypot(*(at - np.asarray(task.crossing.at)).T)
-                    <= np.minimum(reach, _together_mm(task, detours))
+                    <= np.minimum(reach, together_mm(task.route.detour_mm, detours))
                 ).any()
             ][: MOST_TRACES - len(members)]
             grown = bool(near)

@@ -19,7 +19,7 @@ from splitcheck.loops import estimate
 from splitcheck.loops.bridges import IslandGraph, stitched_near
 from splitcheck.loops.corner import detour_corner_khz
 from splitcheck.loops.estimate import Inductance
-from splitcheck.loops.fields import Field, Fields, Task, can_solve, cluster
+from splitcheck.loops.fields import Field, Fields, Task, can_solve, cluster, together_mm
 from splitcheck.loops.routes import Route, Terrain, Way, find_route
 from splitcheck.planes.crossings import BareTrace, Crossing
 from splitcheck.planes.islands import Gap, Plane
@@ -153,9 +153,7 @@ def _by_place(findings: Sequence[Finding]) -> list[Finding]:
     places: dict[str, list[list[int]]] = defaultdict(list)
     for (gap, islands), members in groups.items():
         chained = (
-            _chains([findings[i].at_mm for i in members])
-            if islands
-            else [list(range(len(members)))]
+            _chains([findings[i] for i in members]) if islands else [list(range(len(members)))]
         )
         places[gap].extend([members[i] for i in chain] for chain in chained)
     told = list(findings)
@@ -169,13 +167,18 @@ def _by_place(findings: Sequence[Finding]) -> list[Finding]:
     return told
 
 
-def _chains(places: Sequence[tuple[float, float]]) -> list[list[int]]:
-    """Indexes of places in groups of which every member has another one near, unless alone."""
-    tree = shapely.STRtree(shapely.points(places))
+def _chains(findings: Sequence[Finding]) -> list[list[int]]:
+    """Indexes of findings in groups of which every member has another one near, unless alone.
+
+    Those that were solved together as they couple are near, too.
+    """
+    places = shapely.points([finding.at_mm for finding in findings])
+    reach = np.array([max(TOGETHER_MM, together_mm(f.detour_mm)) for f in findings])
     near: nx.Graph[int] = nx.Graph()
-    near.add_nodes_from(range(len(places)))
-    pairs = tree.query(tree.geometries, predicate="dwithin", distance=TOGETHER_MM)
-    near.add_edges_from(pairs.T.tolist())
+    near.add_nodes_from(range(len(findings)))
+    one, other = shapely.STRtree(places).query(places, predicate="dwithin", distance=reach)
+    close = shapely.distance(places[one], places[other]) <= reach[other]
+    near.add_edges_from(np.stack([one, other], axis=1)[close].tolist())
     return [sorted(members) for members in nx.connected_components(near)]
 
 
