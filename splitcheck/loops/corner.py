@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from math import cos, exp, hypot, inf, log, pi, sin, sqrt, tan, tanh
+from math import cos, exp, hypot, inf, log, log1p, pi, sin, sqrt, tan, tanh
 from typing import NamedTuple
 
 from splitcheck.units import MU0
@@ -123,6 +123,38 @@ def return_width_mm(height_mm: float, above_mm: float | None = None) -> float:
     return 2 * above_mm / pi * left**2 / (1.0 + left / tan(angle))
 
 
+def spread_mohm(detour_mm: float, start_mm: float, copper_um: float) -> float:
+    """Resistance that a way round a gap adds, to a current that spreads as it likes.
+
+    Parameters
+    ----------
+    detour_mm
+        What the way round is longer by, >= 0.
+    start_mm
+        Width of the return where it leaves the trace, `return_width_mm`, > 0.
+    copper_um
+        Thickness of the plane, > 0.
+
+    Returns
+    -------
+    mohm, at low frequency.
+
+    Notes
+    -----
+    On either side of the gap the return has half a plane: at a distance s from the trace it is
+    w + pi s wide. Out on one side and back on the other, half the detour each, that makes
+    2/pi ln(1 + pi detour/(2 w)) squares: detour/w for a short detour; for a long one the spreading
+    resistance of contacts on the rim of a sheet, which grows as a logarithm only. Necks in the
+    plane add to it.
+
+    Examples
+    --------
+    >>> round(spread_mohm(20.0, return_width_mm(0.2), 35.0), 2)
+    1.02
+    """
+    return sheet_mohm(copper_um) * 2 / pi * log1p(pi * detour_mm / (2 * start_mm))
+
+
 def loop_nh_mm(height_mm: float, width_mm: float) -> float:
     """Loop inductance per length of a strip over a whole plane.
 
@@ -182,21 +214,19 @@ def ways(
 
     Notes
     -----
-    R = sheet resistance * length / (2 pi h). On the way round the return is taken to be as wide as
-    under the trace: along the rim of a gap it is no wider once it follows inductance.
+    Under the trace R = sheet resistance * length / (2 pi h); the way round adds `spread_mohm`.
 
     Examples
     --------
     >>> direct, detour = ways(5, 20, 3.3, height_mm=0.2, width_mm=0.36, copper_um=35.0)
     >>> [round(value, 1) for value in (*direct, *detour)]
-    [2.0, 1.6, 9.8, 4.9]
+    [2.0, 1.6, 3.0, 4.9]
     """
-    per_mm = sheet_mohm(copper_um) / return_width_mm(height_mm)
+    under_mm = return_width_mm(height_mm)
+    own_mohm = sheet_mohm(copper_um) * straight_mm / under_mm
     own_nh = straight_mm * loop_nh_mm(height_mm, width_mm)
-    return (
-        Way(per_mm * straight_mm, own_nh),
-        Way(per_mm * (straight_mm + detour_mm), own_nh + added_nh),
-    )
+    more_mohm = spread_mohm(detour_mm, under_mm, copper_um)
+    return Way(own_mohm, own_nh), Way(own_mohm + more_mohm, own_nh + added_nh)
 
 
 def impedance_ohm(
@@ -335,14 +365,14 @@ def detour_corner_khz(
 
     Notes
     -----
-    `corner_khz` of sheet resistance * detour / `return_width_mm`. It is a screening value: the
-    change from one regime to the other takes two or three decades.
+    `corner_khz` of `spread_mohm`, which starts `return_width_mm` wide. It is a screening value:
+    the change from one regime to the other takes two or three decades.
 
     Examples
     --------
     >>> round(detour_corner_khz(20.0, 3.3, height_mm=0.2, copper_um=35.0))
-    378
+    49
     """
     share = 1.0 if above_mm is None else 1.0 - height_mm / above_mm
-    per_mm = sheet_mohm(copper_um) / return_width_mm(height_mm, above_mm)
-    return corner_khz(share**2 * per_mm * detour_mm, added_nh, copper_um)
+    extra_mohm = spread_mohm(detour_mm, return_width_mm(height_mm, above_mm), copper_um)
+    return corner_khz(share**2 * extra_mohm, added_nh, copper_um)

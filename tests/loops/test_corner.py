@@ -21,6 +21,7 @@ from splitcheck.loops.corner import (
     return_width_mm,
     sheet_mohm,
     skin_depth_um,
+    spread_mohm,
     swap_khz,
     ways,
 )
@@ -103,10 +104,24 @@ def test_return_width_is_that_of_the_current_density(height: float, above: float
 
 def test_resistance_of_the_return_under_a_trace() -> None:
     """0.39 ohm/m at 0.2 mm over 1 oz: 0.491 mohm per square over 2 pi 0.2 mm (by hand)."""
-    direct, detour = ways(1000, 500, 3.0, height_mm=0.2, width_mm=0.36, copper_um=35.0)
+    direct, detour = ways(1000, 0.01, 3.0, height_mm=0.2, width_mm=0.36, copper_um=35.0)
     assert direct.resistance_mohm == pytest.approx(390, rel=0.01)
-    assert detour.resistance_mohm == pytest.approx(1.5 * direct.resistance_mohm)
+    more = detour.resistance_mohm - direct.resistance_mohm
+    assert more == pytest.approx(1e-5 * direct.resistance_mohm, rel=0.02)
     assert detour.inductance_nh - direct.inductance_nh == pytest.approx(3.0)
+
+
+@pytest.mark.parametrize("apart", [10.0, 40.0])
+def test_a_way_round_resists_as_contacts_on_the_rim_of_a_sheet(apart: float) -> None:
+    """Two half rings of radius a on the rim of half a plane, d apart: R = 2 Rs/pi ln(d/a).
+
+    Two small contacts on a whole sheet have Rs/pi ln(d/a); on the rim, where only half the sheet
+    is left, twice that (standard result, by images). A way that is pi a wide at first comes to it
+    for d >> a, but for a constant: each doubling of d adds the same number of squares.
+    """
+    one, two = (spread_mohm(d, pi * 0.05, 35.0) for d in (apart, 2 * apart))
+    truth = 2 * sheet_mohm(35.0) / pi * np.log(2)
+    assert two - one == pytest.approx(truth, rel=0.01)
 
 
 @pytest.mark.parametrize(("width", "impedance"), [(2.0, 89.9), (1.0, 126.6)])

@@ -163,8 +163,8 @@ def test_a_small_hole_radiates_as_the_dipole_of_bethe() -> None:
     """
     line = LineString([(-9, -3), (9, 3)])
     mesh = cut([Point(0, 0).buffer(1.5, quad_segs=32)], Grading((line,), near_mm=0.1))
-    flux: Floats = 2 * pi * MU0 * np.linalg.solve(interaction(mesh, ()), mesh.centre[:, 1])
-    found = field_of_gaps(np.array([[0.0, 0.0, 150.0]]), mesh, flux)[0]
+    flux = 2 * pi * MU0 * np.linalg.solve(interaction(mesh, ()), mesh.centre[:, 1])
+    found = field_of_gaps(np.array([[0.0, 0.0, 150.0]]), mesh, flux.astype(np.float64))[0]
     truth = 4 / 3 * 1.5**3 / (2 * pi * 150.0**3)
     assert found == pytest.approx([0.0, truth, 0.0], rel=0.015, abs=0.005 * truth)
 
