@@ -21,7 +21,7 @@ from splitcheck.board.stack import read_stack_file
 from splitcheck.copper.intake import Export, open_export
 from splitcheck.errors import SplitcheckError
 from splitcheck.loops.bridges import IslandGraph, join_islands
-from splitcheck.loops.routes import Terrain
+from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import Tracks, lay_all

@@ -18,8 +18,8 @@ from splitcheck.errors import SplitcheckError
 from splitcheck.loops import solve as engine
 from splitcheck.loops.bridges import IslandGraph, bridges_between
 from splitcheck.loops.estimate import Inductance, via_pair_nh
-from splitcheck.loops.routes import Route, Way
 from splitcheck.loops.stray import stray_db
+from splitcheck.loops.ways import Route, Way
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane, box_size_mm
 
@@ -50,10 +50,8 @@ MOST_CORNERS = 4000
 NEAR_HEIGHTS = 2.0
 #: Barrel of a plated hole whose drill is not known, mm (common practice, no source).
 VIA_MM = 0.3
-#: Vias up to so many times as far off as the one of the shortest way are bridges as well ...
-VIAS_AS_NEAR = 2.0
-#: ... but not more than this on either side of a gap.
-MOST_VIAS = 8
+#: So many of the nearest vias on either side of a gap are bridges, besides that of the way.
+MOST_VIAS = 10
 #: Width taken for copper that a way borrows on the trace's side, mm.
 STRAP_MM = 1.0
 
@@ -305,7 +303,7 @@ class Fields:
         ]
 
     def _vias_like(self, task: Task, way: Way) -> dict[Point, float]:
-        """The vias of a way and those that join the same islands hardly farther off; diameters."""
+        """The vias of a way and the nearest others that join the same islands; diameters."""
         crossing = task.crossing
         plane = self.planes[crossing.plane]
         borrowed = {
@@ -318,14 +316,13 @@ class Fields:
             crossing.islands, (crossing.before, crossing.after), way.bridges, strict=True
         ):
             island = plane.islands[number].id
-            reach = VIAS_AS_NEAR * float(np.hypot(bridge[0] - at[0], bridge[1] - at[1])) + 1.0
             for other in sorted(borrowed & set(self.graph.adj[island])):
                 places = bridges_between(self.graph, island, other)
                 wide_mm = self.graph.edges[island, other]["wide_mm"]
                 far = np.hypot(*(places - np.asarray(at)).T)
                 order = np.argsort(far, kind="stable")[:MOST_VIAS]
                 own = np.hypot(*(places - np.asarray(bridge)).T)
-                for i in {*order[far[order] <= reach].tolist(), *np.flatnonzero(own == 0).tolist()}:
+                for i in {*order.tolist(), *np.flatnonzero(own == 0).tolist()}:
                     found[float(places[i, 0]), float(places[i, 1])] = float(wide_mm[i])
         return found
 

@@ -20,7 +20,9 @@ from splitcheck.loops.bridges import IslandGraph, stitched_near
 from splitcheck.loops.corner import detour_corner_khz
 from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.fields import Field, Fields, Task, can_solve, cluster, together_mm
-from splitcheck.loops.routes import Route, Terrain, Way, find_route
+from splitcheck.loops.routes import find_route
+from splitcheck.loops.terrain import Terrain
+from splitcheck.loops.ways import Route, Way
 from splitcheck.planes.crossings import BareTrace, Crossing
 from splitcheck.planes.islands import Gap, Plane
 from splitcheck.planes.shadows import nearest_cover

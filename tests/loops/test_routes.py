@@ -12,7 +12,10 @@ from shapely import LineString, Polygon
 
 from splitcheck.board.board import Board
 from splitcheck.copper.marks import Point
-from splitcheck.loops.routes import CLEAR_MM, Route, Terrain, find_route, shortest
+from splitcheck.loops.routes import find_route
+from splitcheck.loops.taut import CLEAR_MM, shortest
+from splitcheck.loops.terrain import Terrain
+from splitcheck.loops.ways import Route
 from tests.making.hand import Line, Sheet, board, crossings, plane, scene, via
 
 WHOLE = shapely.box(0, 0, 40, 30)

@@ -16,7 +16,8 @@ from hypothesis import strategies as st
 from shapely import LineString, Polygon
 
 from splitcheck.copper.marks import Point
-from splitcheck.loops.routes import CLEAR_MM, Terrain, shortest
+from splitcheck.loops.taut import CLEAR_MM, shortest
+from splitcheck.loops.terrain import Terrain
 from tests.making.hand import Line, Sheet, board, plane
 
 WHOLE = shapely.box(0, 0, 40, 30)

@@ -16,7 +16,7 @@ from splitcheck.board.traces import CentreLine
 from splitcheck.copper.holes import Hole
 from splitcheck.copper.marks import Point
 from splitcheck.loops.bridges import IslandGraph, join_islands
-from splitcheck.loops.routes import Terrain
+from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import lay_all
