@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from collections import defaultdict
 from dataclasses import dataclass
+from itertools import pairwise
+from math import hypot
 
 import numpy as np
 import shapely
@@ -24,6 +26,8 @@ LEAST_WIDTH_MM = 0.5
 UNNAMED_AREA_MM2 = 25.0
 UNNAMED_SHARE = 0.01
 UNNAMED_WIDTH_MM = 0.8
+#: ... and no more than this share of it may be strokes of traces: a wide trace is still a trace.
+UNNAMED_STROKED = 0.5
 #: Gaps are looked at out to this far beyond the copper, mm.
 FRAME_MM = 5.0
 #: Gap polygons with more corners than this are cut into tiles for quick tests.
@@ -104,7 +108,8 @@ def find_planes(board: Board) -> tuple[Plane, ...]:
     -----
     (1) A piece of copper is plane-like if it has area and is wide on average: 2 area / perimeter.
     (2) A net carries returns if its name is a ground's or a supply's and it has a plane-like
-    piece, or, whatever its name, if it has a piece as large as only planes are.
+    piece, or, whatever its name, if it has a piece as large as only planes are and not drawn as
+    a trace.
     (3) Islands are the plane-like pieces of such nets. Signal copper is never an island.
     """
     nets = reference_nets(board)
@@ -133,16 +138,30 @@ def is_plane_like(
 
 def reference_nets(board: Board) -> frozenset[int]:
     """Numbers of the nets whose copper can carry a return current."""
+    stroked_mm2 = _stroked_mm2(board)
     large = max(UNNAMED_AREA_MM2, UNNAMED_SHARE * board.outline.area)
     chosen = set()
     for part in board.parts:
         name = board.nets[board.net_of[part.id]].name
         known = any(is_ground(n) or is_supply(n) for n in name.split("|"))
-        if (known and is_plane_like(part.shape)) or is_plane_like(
-            part.shape, large, UNNAMED_WIDTH_MM
+        if (known and is_plane_like(part.shape)) or (
+            is_plane_like(part.shape, large, UNNAMED_WIDTH_MM)
+            and stroked_mm2[part.id] <= UNNAMED_STROKED * part.shape.area
         ):
             chosen.add(board.net_of[part.id])
     return frozenset(chosen)
+
+
+def _stroked_mm2(board: Board) -> list[float]:
+    """Area that traces draw of every part, mm2; where they overlap it counts twice."""
+    areas = [0.0] * len(board.parts)
+    first = 0
+    for layer in board.layers:
+        for line in layer.lines:
+            length = sum(hypot(x1 - x0, y1 - y0) for (x0, y0), (x1, y1) in pairwise(line.points))
+            areas[first + line.piece] += length * line.width_mm
+        first += len(layer.pieces)
+    return areas
 
 
 def _bounds(board: Board) -> tuple[float, float, float, float]:
