@@ -21,15 +21,17 @@ from splitcheck.loops.estimate import Inductance, via_pair_nh
 from splitcheck.loops.stray import stray_db
 from splitcheck.loops.ways import Route, Way
 from splitcheck.planes.crossings import Crossing
-from splitcheck.planes.islands import Plane, box_size_mm
+from splitcheck.planes.islands import Gap, Plane, box_size_mm
 
 #: The window of a solve reaches this much beyond the ways round the gap: in mm and as a share.
 BEYOND_MM = 2.0
 BEYOND_SHARE = 0.3
-#: A gap open on one side is kept out to this many times the size of the way on the other: far
-#: enough, as flux may leave where it is cut off; and with another plane, where none may.
+#: A gap with a way round on one side only is kept on the other out to this many times the size of
+#: that way: if it leads outside, for flux may leave where it is cut off; with another plane, which
+#: keeps the flux near; and else.
 OPEN_SIDE = 2.0
 OPEN_SIDE_SHUT = 8.0
+FAR_SIDE = 30.0
 #: Crossings of one gap this near to one another are solved together, mm; and those no further
 #: apart than so many of their detours, as they couple (by 0.3 of the lesser value at one of them,
 #: K_10 of tests/loops/reference_coupling.csv), out to where one mesh can hardly serve both, mm ...
@@ -210,7 +212,7 @@ class Fields:
     ) -> engine.Solution | None:
         """One solve; None if the gaps are too ragged for it."""
         plane = self.planes[tasks[0].crossing.plane]
-        window = _window(tasks, plane.gaps[tasks[0].crossing.gap].shape)
+        window = _window(tasks, plane.gaps[tasks[0].crossing.gap])
         gaps, ends = self._gaps(tasks, window, [trace.line for trace in traces])
         if sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS:
             return None
@@ -365,7 +367,7 @@ def _end(piece: Polygon, window: Polygon) -> shapely.Point | None:
     return longest.interpolate(0.5, normalized=True)
 
 
-def _window(tasks: Sequence[Task], gap: Polygon) -> Polygon:
+def _window(tasks: Sequence[Task], gap: Gap) -> Polygon:
     """A box round the crossings and their ways round, with room to spare.
 
     Where there is no way round on one side, the gap is kept out to some times the length of the
@@ -381,9 +383,9 @@ def _window(tasks: Sequence[Task], gap: Polygon) -> Polygon:
     box = shapely.box(x0 - room, y0 - room, x1 + room, y1 + room)
     if None in ways:
         shut = tasks[0].beyond is not None or tasks[0].other is not None
-        times = OPEN_SIDE_SHUT if shut else OPEN_SIDE
+        times = OPEN_SIDE_SHUT if shut else OPEN_SIDE if gap.open else FAR_SIDE
         far = shapely.box(*box.bounds).buffer(times * size, join_style="mitre")
-        whole = shapely.box(*gap.bounds).buffer(BEYOND_MM, join_style="mitre")
+        whole = shapely.box(*gap.shape.bounds).buffer(BEYOND_MM, join_style="mitre")
         box = box.union(far.intersection(whole)).envelope
     window: Polygon = box
     return window
