@@ -26,8 +26,8 @@ LEAST_WIDTH_MM = 0.5
 UNNAMED_AREA_MM2 = 25.0
 UNNAMED_SHARE = 0.01
 UNNAMED_WIDTH_MM = 0.8
-#: ... and no more than this share of it may be strokes of traces: a wide trace is still a trace.
-UNNAMED_STROKED = 0.5
+#: No more than this share of a plane may be strokes of traces: a wide trace is still a trace.
+MOST_STROKED = 0.5
 #: Gaps are looked at out to this far beyond the copper, mm.
 FRAME_MM = 5.0
 #: Gap polygons with more corners than this are cut into tiles for quick tests.
@@ -106,16 +106,21 @@ def find_planes(board: Board) -> tuple[Plane, ...]:
 
     Notes
     -----
-    (1) A piece of copper is plane-like if it has area and is wide on average: 2 area / perimeter.
+    (1) A piece of copper is plane-like if it has area, is wide on average (2 area / perimeter) and
+    is not drawn as a trace.
     (2) A net carries returns if its name is a ground's or a supply's and it has a plane-like
-    piece, or, whatever its name, if it has a piece as large as only planes are and not drawn as
-    a trace.
+    piece, or, whatever its name, if it has a piece as large as only planes are.
     (3) Islands are the plane-like pieces of such nets. Signal copper is never an island.
     """
     nets = reference_nets(board)
+    stroked_mm2 = _stroked_mm2(board)
     chosen: dict[int, list[Part]] = defaultdict(list)
     for part in board.parts:
-        if board.net_of[part.id] in nets and is_plane_like(part.shape):
+        if (
+            board.net_of[part.id] in nets
+            and is_plane_like(part.shape)
+            and stroked_mm2[part.id] <= MOST_STROKED * part.shape.area
+        ):
             chosen[part.layer].append(part)
     box = shapely.box(*_bounds(board)).buffer(FRAME_MM, join_style="mitre")
     return tuple(
@@ -143,10 +148,11 @@ def reference_nets(board: Board) -> frozenset[int]:
     chosen = set()
     for part in board.parts:
         name = board.nets[board.net_of[part.id]].name
+        if stroked_mm2[part.id] > MOST_STROKED * part.shape.area:
+            continue
         known = any(is_ground(n) or is_supply(n) for n in name.split("|"))
-        if (known and is_plane_like(part.shape)) or (
-            is_plane_like(part.shape, large, UNNAMED_WIDTH_MM)
-            and stroked_mm2[part.id] <= UNNAMED_STROKED * part.shape.area
+        if (known and is_plane_like(part.shape)) or is_plane_like(
+            part.shape, large, UNNAMED_WIDTH_MM
         ):
             chosen.add(board.net_of[part.id])
     return frozenset(chosen)
