@@ -28,7 +28,7 @@ BEYOND_MM = 2.0
 BEYOND_SHARE = 0.3
 #: A gap with a way round on one side only is kept on the other out to this many times the size of
 #: that way: if it leads outside, for flux may leave where it is cut off; with another plane, which
-#: keeps the flux near; and else.
+#: keeps the flux near; and else, if that is not too ragged.
 OPEN_SIDE = 2.0
 OPEN_SIDE_SHUT = 8.0
 FAR_SIDE = 30.0
@@ -212,9 +212,15 @@ class Fields:
     ) -> engine.Solution | None:
         """One solve; None if the gaps are too ragged for it."""
         plane = self.planes[tasks[0].crossing.plane]
-        window = _window(tasks, plane.gaps[tasks[0].crossing.gap])
-        gaps, ends = self._gaps(tasks, window, [trace.line for trace in traces])
-        if sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS:
+        crossed = plane.gaps[tasks[0].crossing.gap]
+        lines = [trace.line for trace in traces]
+        window = _window(tasks, crossed)
+        gaps, ends = self._gaps(tasks, window, lines, loose=crossed.open)
+        if not crossed.open and _too_ragged(gaps):
+            # flux that such a gap lets through nearby finds ample room in the rest of it
+            window = _window(tasks, crossed, OPEN_SIDE_SHUT)
+            gaps, ends = self._gaps(tasks, window, lines, loose=True)
+        if _too_ragged(gaps):
             return None
         try:
             return engine.added(
@@ -235,20 +241,21 @@ class Fields:
         return None if other is None else self.board.stack.height_mm(plane, other)
 
     def _gaps(
-        self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString]
+        self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString], *, loose: bool
     ) -> tuple[list[Polygon], list[shapely.Point]]:
         """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out.
 
-        Returned with the places where the window cuts off what leads to the outside.
+        Returned with the places where the window cuts off what leads to the outside; the crossed
+        gap does if it is `loose`.
         """
         plane = self.planes[tasks[0].crossing.plane]
         across = shapely.union_all(lines)
         height = tasks[0].height_mm
-        crossed = plane.gaps[tasks[0].crossing.gap].shape
+        crossed = plane.gaps[tasks[0].crossing.gap]
         beside = []
         for number in sorted(plane.gap_boxes.intersection(window.bounds)):
             shape = plane.gaps[number].shape
-            if shape is crossed:
+            if shape is crossed.shape:
                 continue
             apart = shape.distance(across)
             small = box_size_mm(shape) < height
@@ -259,10 +266,10 @@ class Fields:
         foreign = self._foreign_copper(plane, window)
         gaps: list[Polygon] = []
         ends: list[shapely.Point] = []
-        for gap in (plane.gaps[tasks[0].crossing.gap], *chosen):
+        for gap in (crossed, *chosen):
             pieces = _polygons(shapely.difference(_clipped(gap.shape, window), foreign))
             gaps.extend(pieces)
-            if gap.open:
+            if loose if gap is crossed else gap.open:
                 ends.extend(end for piece in pieces if (end := _end(piece, window)) is not None)
         return gaps, ends
 
@@ -367,7 +374,11 @@ def _end(piece: Polygon, window: Polygon) -> shapely.Point | None:
     return longest.interpolate(0.5, normalized=True)
 
 
-def _window(tasks: Sequence[Task], gap: Gap) -> Polygon:
+def _too_ragged(gaps: Sequence[Polygon]) -> bool:
+    return sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS
+
+
+def _window(tasks: Sequence[Task], gap: Gap, far_side: float = FAR_SIDE) -> Polygon:
     """A box round the crossings and their ways round, with room to spare.
 
     Where there is no way round on one side, the gap is kept out to some times the length of the
@@ -383,7 +394,7 @@ def _window(tasks: Sequence[Task], gap: Gap) -> Polygon:
     box = shapely.box(x0 - room, y0 - room, x1 + room, y1 + room)
     if None in ways:
         shut = tasks[0].beyond is not None or tasks[0].other is not None
-        times = OPEN_SIDE_SHUT if shut else OPEN_SIDE if gap.open else FAR_SIDE
+        times = OPEN_SIDE_SHUT if shut else OPEN_SIDE if gap.open else far_side
         far = shapely.box(*box.bounds).buffer(times * size, join_style="mitre")
         whole = shapely.box(*gap.shape.bounds).buffer(BEYOND_MM, join_style="mitre")
         box = box.union(far.intersection(whole)).envelope
