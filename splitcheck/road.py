@@ -26,7 +26,8 @@ from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, jud
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import Tracks, lay_all
 from splitcheck.verdict.findings import Count, Finding, Report
-from splitcheck.verdict.judge import Scene, judge
+from splitcheck.verdict.judge import judge
+from splitcheck.verdict.scene import Scene
 from splitcheck.verdict.summary import Seen, summarise
 
 Progress: TypeAlias = Callable[[str, int, int], None]

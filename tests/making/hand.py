@@ -20,7 +20,7 @@ from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import lay_all
-from splitcheck.verdict.judge import Scene
+from splitcheck.verdict.scene import Scene
 
 
 class Line(NamedTuple):

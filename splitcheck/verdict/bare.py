@@ -1,0 +1,102 @@
+"""Traces without any plane: one finding for each net and layer."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Sequence
+from math import inf
+
+import shapely
+
+from splitcheck.loops import estimate
+from splitcheck.loops.estimate import Inductance
+from splitcheck.planes.crossings import BareTrace
+from splitcheck.verdict.findings import Finding, Source
+from splitcheck.verdict.places import fingerprint
+from splitcheck.verdict.scene import Scene
+from splitcheck.verdict.score import level, noise_mv
+
+#: Bare trace shorter than this at a net's own pads and vias is not a finding, mm.
+OWN_END_MM = 3.0
+
+
+def bare_findings(
+    scene: Scene, bare: Sequence[BareTrace], dropped: dict[str, int]
+) -> list[Finding]:
+    """One finding for each net and layer that runs over no plane at all."""
+    groups: dict[tuple[int, int], list[BareTrace]] = defaultdict(list)
+    for trace in bare:
+        if trace.bare_mm < OWN_END_MM:
+            dropped[f"ends of traces without a plane, shorter than {OWN_END_MM:g} mm"] += 1
+        else:
+            groups[trace.layer, trace.net].append(trace)
+    found = (_bare_finding(scene, traces) for _, traces in sorted(groups.items()))
+    return [finding for finding in found if finding is not None]
+
+
+def _bare_finding(scene: Scene, traces: Sequence[BareTrace]) -> Finding | None:
+    longest = max(traces, key=lambda trace: trace.bare_mm)
+    total = sum(trace.bare_mm for trace in traces)
+    value = _bare_estimate(scene, traces)
+    if value is not None and value.added_nh < scene.min_nh:
+        return None
+    noise = None if value is None else noise_mv(value.added_nh, scene.drive)
+    net = scene.board.nets[longest.net].name
+    layer = scene.board.stack.layers[longest.layer - 1].name
+    at = (round(longest.at[0], 4), round(longest.at[1], 4))
+    where = (
+        ""
+        if len(traces) == 1
+        else f" in {len(traces)} places, the longest {longest.bare_mm:.1f} mm"
+    )
+    return Finding(
+        id="",
+        kind="no-plane",
+        level=level(noise, scene.drive),
+        net=net,
+        net_class=scene.drive.name,
+        layer=layer,
+        plane_layer="",
+        plane_net="",
+        at_mm=at,
+        gap_mm=total,
+        detour_mm=None,
+        added_nh=None if value is None else value.added_nh,
+        error_nh=None if value is None else value.error_nh,
+        method="none" if value is None else "estimated",
+        noise_mv=noise,
+        rise_ns=scene.drive.rise_ns,
+        corner_khz=None,
+        stray_db=None,
+        islands=(),
+        bridges=(),
+        gap=f"bare {layer}",
+        shares_gap_with=(),
+        pair=None,
+        source=Source(scene.board.layers[longest.layer - 1].file, longest.line),
+        waived=None,
+        fingerprint=fingerprint("no-plane", net, layer, at),
+        reason=f"{total:.1f} mm of the trace have no reference copper above or below{where}",
+    )
+
+
+def _bare_estimate(scene: Scene, traces: Sequence[BareTrace]) -> Inductance | None:
+    """What running past the rim of the nearest plane costs; None if the board has no plane.
+
+    The rim is taken as straight and as far away as the nearest reference copper of any layer.
+    """
+    total = 0.0
+    for trace in traces:
+        for start, stop in trace.spans:
+            line = shapely.LineString([start, stop])
+            best = inf
+            for plane in scene.planes.values():
+                if plane.layer == trace.layer:
+                    continue
+                height = scene.board.stack.height_mm(trace.layer, plane.layer)
+                away = min(island.shape.distance(line) for island in plane.islands)
+                best = min(best, estimate.beside_edge_nh_mm(-away, height))
+            if best == inf:
+                return None
+            total += best * line.length
+    return Inductance(total, 0.6 * total)

@@ -1,0 +1,52 @@
+"""What judging needs to know: the board, its planes, and each crossing once it is weighed."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from splitcheck.board.board import Board
+from splitcheck.loops.bridges import IslandGraph
+from splitcheck.loops.estimate import Inductance
+from splitcheck.loops.terrain import Terrain
+from splitcheck.loops.ways import Route
+from splitcheck.planes.crossings import Crossing
+from splitcheck.planes.islands import Plane
+from splitcheck.verdict.findings import Kind
+from splitcheck.verdict.score import DEFAULT_DRIVE, Drive
+
+
+@dataclass(frozen=True, slots=True)
+class Scene:
+    """What judging a crossing needs to know beyond the crossing."""
+
+    board: Board
+    planes: dict[int, Plane]
+    terrains: dict[int, Terrain]
+    graph: IslandGraph
+    min_nh: float
+    drive: Drive = DEFAULT_DRIVE
+
+
+@dataclass(frozen=True, slots=True)
+class Weighed:
+    """A crossing with its way round and what closed forms say of it."""
+
+    crossing: Crossing
+    route: Route
+    beyond: int | None
+    """Layer number of a whole plane beyond the broken one."""
+    other: int | None
+    """Layer number of a whole plane on the trace's other side."""
+    beside: int | None
+    """Layer number of the plane on the trace's other side, before and after the run."""
+    share: float
+    """Part of the return that the broken plane carries."""
+    estimate: Inductance | None
+    kind: Kind
+    runs: tuple[Crossing, ...]
+    """All runs that it stands for: one trace may pass over one gap several times."""
+
+    @property
+    def bare_mm(self) -> float:
+        """Length of all its runs, mm."""
+        return sum(crossing.run_mm for crossing in self.runs)
