@@ -10,6 +10,7 @@ from splitcheck.loops.bridges import stitched_near
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Gap
 from splitcheck.planes.shadows import nearest_cover
+from splitcheck.units import Floats
 from splitcheck.verdict.scene import Scene
 
 #: A net's own antipad is at most this much wider than its hole, mm; more is a field of antipads.
@@ -20,6 +21,12 @@ CHANGE_RUN_MM = 5.0
 CHANGE_STITCH_MM = 3.0
 #: ... or, whatever their nets, if it is this many times longer than the planes are apart.
 CHANGE_RATIO = 10.0
+#: ... where it covers this share of the run: antipads do not count.
+MOSTLY = 0.8
+#: A line wider than so many times its height is below some 15 ohm: no signal (common practice).
+SUPPLY_RATIO = 10.0
+#: So many heights along a trace the return takes to come to a farther plane.
+SETTLES = 3.0
 #: So far before and after a run the plane on the trace's other side is looked for, mm.
 BESIDE_MM = 3.0
 #: A plane is whole under a gap if it covers this share of places in it: antipads do not count.
@@ -31,15 +38,23 @@ def exempt(scene: Scene, crossing: Crossing) -> str | None:
 
     (1) The gap is the antipad of a plated hole of the net itself.
     (2) It is too small to add what is asked for, whatever way the return takes.
-    (3) A long run over another whole plane, of the same net and stitched at both ends or close
-    beneath: the return changes planes there, it does not go round.
+    (3) A long run over or under another whole plane, of the same net and stitched at both ends or
+    close by: the return changes planes there, it does not go round.
+    (4) The line is so wide for its height that it carries supply, not signals.
+    (5) A nearer plane carries the return before or after: the run lies in a gap of that plane, and
+    over so short a way the return does not come down to this one.
     """
     plane = scene.planes[crossing.plane]
     gap = plane.gaps[crossing.gap]
+    height = scene.board.stack.height_mm(crossing.layer, crossing.plane)
+    if crossing.width_mm > SUPPLY_RATIO * height:
+        return f"crossings of lines wider than {SUPPLY_RATIO:g} times their height (supply lines)"
     if not gap.open and _own_antipad(scene, crossing, gap):
         return "antipads at a net's own holes"
     if not gap.open and _ceiling_nh(scene, crossing, gap) < scene.min_nh:
         return f"crossings that add less than {scene.min_nh:g} nH"
+    if _is_hidden(scene, crossing):
+        return "crossings of farther planes inside a gap of a nearer one"
     if crossing.run_mm >= CHANGE_RUN_MM and _changes_plane(scene, crossing):
         return "long runs over another whole plane (changes of plane, not judged here)"
     return None
@@ -77,14 +92,27 @@ def _ceiling_nh(scene: Scene, crossing: Crossing, gap: Gap) -> float:
 
 
 def _changes_plane(scene: Scene, crossing: Crossing) -> bool:
-    xs, ys = np.array([*crossing.path, crossing.at]).T
-    layer = nearest_cover(tuple(scene.planes.values()), layers_beyond(scene, crossing), xs, ys)
-    if layer is None:
-        return False
-    if crossing.run_mm >= CHANGE_RATIO * scene.board.stack.height_mm(crossing.plane, layer):
-        return True
+    run = shapely.LineString([crossing.before, *crossing.path, crossing.after])
+    points = shapely.get_coordinates(run.interpolate(np.linspace(0.05, 0.95, 19), normalized=True))
+    xs, ys = points[:, 0], points[:, 1]
+    planes = tuple(scene.planes.values())
+    beyond_it = nearest_cover(planes, layers_beyond(scene, crossing), xs, ys, MOSTLY)
+    beside_it = nearest_cover(planes, _layers_on_other_side(scene, crossing), xs, ys, MOSTLY)
+    for layer in (beyond_it, beside_it):
+        if layer is not None and crossing.run_mm >= CHANGE_RATIO * scene.board.stack.height_mm(
+            crossing.plane, layer
+        ):
+            return True
+    return beyond_it is not None and _is_stitched(scene, crossing, beyond_it)
+
+
+def _is_stitched(scene: Scene, crossing: Crossing, layer: int) -> bool:
+    """Whether the plane of a layer is of the same net and joined at both ends of the run."""
     one, other = (scene.planes[crossing.plane].islands[i] for i in crossing.islands)
-    number = int(scene.planes[layer].island_at(xs[:1], ys[:1])[0])
+    x, y = crossing.at
+    number = int(scene.planes[layer].island_at(np.array([x]), np.array([y]))[0])
+    if number < 0:
+        return False
     island = scene.planes[layer].islands[number]
     return (
         one.net == other.net == island.net
@@ -119,14 +147,42 @@ def other_side(scene: Scene, crossing: Crossing) -> int | None:
     )
 
 
-def beside(scene: Scene, crossing: Crossing) -> int | None:
-    """The layer on the trace's other side that carries returns just before and after the run."""
+def _is_hidden(scene: Scene, crossing: Crossing) -> bool:
+    """Whether nearer planes cover most of the trace just before or just after the run."""
+    step = 1 if crossing.plane > crossing.layer else -1
+    nearer = [
+        scene.planes[layer]
+        for layer in range(crossing.layer + step, crossing.plane, step)
+        if layer in scene.planes
+    ]
+    if not nearer:
+        return False
+    reach = SETTLES * scene.board.stack.height_mm(crossing.layer, crossing.plane)
+    for points in _along_ends(crossing, reach):
+        covered = np.zeros(len(points), dtype=np.bool_)
+        for plane in nearer:
+            covered |= plane.island_at(points[:, 0], points[:, 1]) >= 0
+        if len(points) and covered.mean() > 0.5:
+            return True
+    return False
+
+
+def _along_ends(crossing: Crossing, reach_mm: float) -> tuple[Floats, Floats]:
+    """Places along the trace before and after a run, out to a distance, each of shape (n, 2)."""
     stretch = shapely.LineString(crossing.stretch)
     ends = sorted(stretch.project(shapely.Point(end)) for end in (crossing.before, crossing.after))
-    steps = np.linspace(0.1, 1.0, 6) * BESIDE_MM
-    along = np.concatenate([ends[0] - steps, ends[1] + steps])
-    along = along[(along >= 0.0) & (along <= stretch.length)]
-    points = shapely.get_coordinates(stretch.interpolate(np.append(along, ends)))
+    steps = np.linspace(0.1, 1.0, 10) * reach_mm
+    found = []
+    for along in (ends[0] - steps, ends[1] + steps):
+        inside = along[(along >= 0.0) & (along <= stretch.length)]
+        found.append(shapely.get_coordinates(stretch.interpolate(inside)))
+    return found[0], found[1]
+
+
+def beside(scene: Scene, crossing: Crossing) -> int | None:
+    """The layer on the trace's other side that carries returns just before and after the run."""
+    ends = np.array([crossing.before, crossing.after])
+    points = np.concatenate([*_along_ends(crossing, BESIDE_MM), ends])
     layers = _layers_on_other_side(scene, crossing)
     xs, ys = points[:, 0], points[:, 1]
     return nearest_cover(tuple(scene.planes.values()), layers, xs, ys, WHOLE)
