@@ -267,7 +267,11 @@ class Fields:
         gaps: list[Polygon] = []
         ends: list[shapely.Point] = []
         for gap in (crossed, *chosen):
-            pieces = _polygons(shapely.difference(_clipped(gap.shape, window), foreign))
+            clipped = _clipped(gap.shape, window)
+            if _too_ragged(_polygons(clipped)):
+                # foreign copper in it only adds corners; taking it out would be in vain
+                return _polygons(clipped), []
+            pieces = _polygons(shapely.difference(clipped, foreign))
             gaps.extend(pieces)
             if loose if gap is crossed else gap.open:
                 ends.extend(end for piece in pieces if (end := _end(piece, window)) is not None)
