@@ -7,6 +7,7 @@ from math import log10, pi
 from typing import NamedTuple
 
 import numpy as np
+import shapely
 from shapely import LineString
 from shapely import Point as Place
 
@@ -156,7 +157,10 @@ def stray_db(
     if solution.cut_off[number]:
         return None
     places = _probe_places(trace.line, at, height_mm + probe_mm, probe_mm)
-    line = _carried_on(np.asarray(trace.line.coords)[:, :2], _ON * (probe_mm + height_mm))
+    path = shapely.get_coordinates(shapely.remove_repeated_points(trace.line, 1e-6))
+    if len(path) < 2:
+        return None
+    line = _carried_on(path, _ON * (probe_mm + height_mm))
     without = field_of_wires(places, [Wire(line, height_mm, 1.0)])
     straps = [
         Wire(np.asarray(bridge.line.coords)[:, :2], bridge.height_mm, float(amps))
