@@ -80,6 +80,8 @@ class BareTrace:
     line: int
     spans: tuple[tuple[Point, Point], ...]
     """Its straight stretches."""
+    leaves: bool = False
+    """It has left the plane that carried its return and goes on over a farther one to its end."""
 
 
 #: A node of the walk along a run: what kind of place, its piece or node, and where on the piece.
@@ -126,7 +128,7 @@ def find_crossings(
 
     Returns
     -------
-    Crossings, and what is bare of every plane, net by net.
+    Crossings; and what is bare of every plane, or has left the plane that carried its return.
 
     Notes
     -----
@@ -137,6 +139,7 @@ def find_crossings(
     everything = range(len(tracks.net))
     crossings: list[Crossing] = []
     crossed: dict[int, list[Span]] = defaultdict(list)
+    leaving: list[BareTrace] = []
     open_spans: list[dict[int, list[Span]]] = []
     for side in (-1, 1):
         ranked = sorted(
@@ -146,11 +149,15 @@ def find_crossings(
         still: dict[int, list[Span]] = {piece: [(0.0, 1.0)] for piece in everything}
         for plane in ranked:
             bare = uncovered(tracks, plane, sorted(still))
+            further = _both(still, bare)
             for crossing, bits in _crossings_over(tracks, plane, bare, still):
+                if crossing is None:
+                    leaving.append(_bare_trace(tracks, bits, leaves=True))
+                    continue
                 crossings.append(crossing)
                 for bit in bits:
                     crossed[bit.piece].append((bit.start, bit.stop))
-            still = _both(still, bare)
+            still = further
         open_spans.append(still)
     bare_everywhere = [
         _Bit(piece, start, stop, 0)
@@ -158,7 +165,8 @@ def find_crossings(
         for span in common(open_spans[0].get(piece, []), open_spans[1].get(piece, []))
         for start, stop in without(span, merged(crossed[piece]))
     ]
-    return tuple(crossings), _bare_traces(tracks, bare_everywhere)
+    traces = tuple(_bare_trace(tracks, group) for group in _groups(tracks, bare_everywhere))
+    return tuple(crossings), (*traces, *_over_farther(leaving, traces))
 
 
 def _both(still: dict[int, list[Span]], bare: Uncovered) -> dict[int, list[Span]]:
@@ -172,7 +180,8 @@ def _both(still: dict[int, list[Span]], bare: Uncovered) -> dict[int, list[Span]
 
 def _crossings_over(
     tracks: Tracks, plane: Plane, bare: Uncovered, still: dict[int, list[Span]]
-) -> list[tuple[Crossing, list[_Bit]]]:
+) -> list[tuple[Crossing | None, list[_Bit]]]:
+    """Groups of bare bits with their crossing; None for those that leave the plane for good."""
     bits = [
         _Bit(piece, start, stop, bit.gap)
         for piece, found in bare.items()
@@ -183,7 +192,7 @@ def _crossings_over(
     ends = _Ends(tracks, bare, still)
     for group in _groups(tracks, bits):
         crossing = _crossing(tracks, plane, group, ends)
-        if crossing is not None:
+        if crossing is not None or ends.leaves(group):
             found.append((crossing, group))
     return found
 
@@ -263,6 +272,10 @@ class _Ends:
                 continue
             rims.extend(self._rims_at_node(int(self.tracks.nodes[bit.piece, end])))
         return rims
+
+    def leaves(self, group: Sequence[_Bit]) -> bool:
+        """Whether a group of bits comes from the plane and never gets back to it."""
+        return len({rim.key for bit in group for rim in self.of(bit)}) == 1
 
     def _rims_at_node(self, node: int) -> list[_Rim]:
         rims = []
@@ -387,26 +400,27 @@ def _farthest(
     return best
 
 
-def _bare_traces(tracks: Tracks, bits: Sequence[_Bit]) -> tuple[BareTrace, ...]:
-    traces = []
-    for group in _groups(tracks, bits):
-        lengths = [(bit.stop - bit.start) * float(tracks.length_mm[bit.piece]) for bit in group]
-        longest = group[int(np.argmax(lengths))]
-        traces.append(
-            BareTrace(
-                int(tracks.net[longest.piece]),
-                tracks.layer,
-                float(sum(lengths)),
-                tracks.point(longest.piece, (longest.start + longest.stop) / 2),
-                float(tracks.width_mm[longest.piece]),
-                int(tracks.line[longest.piece]),
-                tuple(
-                    (tracks.point(bit.piece, bit.start), tracks.point(bit.piece, bit.stop))
-                    for bit in group
-                ),
-            )
-        )
-    return tuple(traces)
+def _bare_trace(tracks: Tracks, group: Sequence[_Bit], *, leaves: bool = False) -> BareTrace:
+    lengths = [(bit.stop - bit.start) * float(tracks.length_mm[bit.piece]) for bit in group]
+    longest = group[int(np.argmax(lengths))]
+    return BareTrace(
+        int(tracks.net[longest.piece]),
+        tracks.layer,
+        float(sum(lengths)),
+        tracks.point(longest.piece, (longest.start + longest.stop) / 2),
+        float(tracks.width_mm[longest.piece]),
+        int(tracks.line[longest.piece]),
+        tuple(
+            (tracks.point(bit.piece, bit.start), tracks.point(bit.piece, bit.stop)) for bit in group
+        ),
+        leaves,
+    )
+
+
+def _over_farther(leaving: Sequence[BareTrace], bare: Sequence[BareTrace]) -> list[BareTrace]:
+    """Those that leave a plane for another one, not those that are bare of every plane then."""
+    nowhere = {span for trace in bare for span in trace.spans}
+    return [trace for trace in leaving if not nowhere.intersection(trace.spans)]
 
 
 def judged_nets(
