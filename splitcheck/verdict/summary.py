@@ -54,6 +54,7 @@ def summarise(
         layers=_layers(board, seen.planes),
         assumptions=(
             *_no_plane(seen.planes),
+            *_no_names(board),
             *seen.assembled.assumptions,
             _drive_sentence(DEFAULT_DRIVE),
         ),
@@ -85,6 +86,16 @@ def _no_plane(planes: Sequence[Plane]) -> tuple[str, ...]:
     sentence = (
         "No layer has reference copper: no piece is both wide and large enough to be a plane, so "
         "every trace counts as one without a plane."
+    )
+    return (sentence,)
+
+
+def _no_names(board: Board) -> tuple[str, ...]:
+    if any(net.given for net in board.nets):
+        return ()
+    sentence = (
+        "No file names the nets: copper was taken for a plane by its area and width alone, and "
+        "every other net is judged as a signal; a netlist (IPC-D-356) or X2 attributes would tell."
     )
     return (sentence,)
 

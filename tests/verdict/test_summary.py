@@ -83,3 +83,14 @@ def test_reading_says_all_but_findings(tmp_path: Path) -> None:
         ranked.layers, ranked.islands, ranked.inputs,
     )  # fmt: skip
     assert only_read.facts == ranked.facts
+
+
+def test_boards_without_net_names_say_what_stands_for_them(tmp_path: Path) -> None:
+    """What is a plane was decided by area alone then; with names in the files nothing is said."""
+    write_board(slotted_board(), tmp_path / "bare", attributes="none")
+    write_board(slotted_board(), tmp_path / "named")
+    bare, named = (
+        rank(tmp_path / folder, Options(jobs=1)).assumptions for folder in ("bare", "named")
+    )
+    assert any(said.startswith("No file names the nets") for said in bare)
+    assert not any(said.startswith("No file names the nets") for said in named)
