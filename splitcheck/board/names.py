@@ -56,6 +56,17 @@ def is_supply(name: str) -> bool:
     return bool(_SUPPLY.match(name)) and not _CONTROL.search(name)
 
 
+def is_power(name: str) -> bool:
+    """Whether any of the names of a net, joined by ``|`` where copper ties several, is power.
+
+    Examples
+    --------
+    >>> [is_power(name) for name in ("GND|ANT1", "+3V3", "SDA|SCL")]
+    [True, True, False]
+    """
+    return any(is_ground(one) or is_supply(one) for one in name.split("|"))
+
+
 #: A supply's name followed by one of these is a logic signal about that supply.
 _CONTROL = re.compile(
     r"[_\-./ ](?:EN|ENA|ENABLE|PG|PGOOD|OK|GOOD|SENSE|SNS|FB|CTRL|ON|OFF|FLT|FAULT|"

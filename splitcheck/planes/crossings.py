@@ -14,7 +14,7 @@ import networkx as nx
 import numpy as np
 
 from splitcheck.board.board import Board
-from splitcheck.board.names import is_ground, is_supply
+from splitcheck.board.names import is_power
 from splitcheck.board.traces import locate
 from splitcheck.copper.marks import Point
 from splitcheck.errors import SplitcheckError
@@ -448,7 +448,7 @@ def judged_nets(
         for net in board.nets
         if net.number not in carriers
         and (net.given or net.number in joined)
-        and not any(is_ground(name) or is_supply(name) for name in net.name.split("|"))
+        and not is_power(net.name)
     )
     if not patterns:
         return signals

@@ -14,7 +14,7 @@ from rtree import index
 from shapely import MultiPolygon, Polygon
 
 from splitcheck.board.board import Board
-from splitcheck.board.names import is_ground, is_supply
+from splitcheck.board.names import is_power
 from splitcheck.board.parts import Part
 from splitcheck.board.traces import locate
 from splitcheck.units import Floats
@@ -150,7 +150,7 @@ def reference_nets(board: Board) -> frozenset[int]:
         name = board.nets[board.net_of[part.id]].name
         if stroked_mm2[part.id] > MOST_STROKED * part.shape.area:
             continue
-        known = any(is_ground(n) or is_supply(n) for n in name.split("|"))
+        known = is_power(name)
         if (known and is_plane_like(part.shape)) or is_plane_like(
             part.shape, large, UNNAMED_WIDTH_MM
         ):

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 from splitcheck.board.assemble import Assembled
 from splitcheck.board.board import Board
-from splitcheck.board.names import is_ground, is_supply
+from splitcheck.board.names import is_power
 from splitcheck.copper.intake import Export
 from splitcheck.planes.islands import Plane, reference_nets
 from splitcheck.planes.tracks import Tracks
@@ -137,12 +137,7 @@ def _facts(board: Board) -> tuple[str, ...]:
 
 def _exempt(board: Board) -> tuple[Count, ...]:
     carriers = reference_nets(board)
-    supplies = [
-        net
-        for net in board.nets
-        if net.number not in carriers
-        and any(is_ground(name) or is_supply(name) for name in net.name.split("|"))
-    ]
+    supplies = [net for net in board.nets if net.number not in carriers and is_power(net.name)]
     return (
         Count("nets that carry returns (ground and supply planes), not judged", len(carriers)),
         Count("nets that are supplies by name, not judged", len(supplies)),
