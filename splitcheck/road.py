@@ -25,9 +25,9 @@ from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import Tracks, lay_all
-from splitcheck.verdict.findings import Count, Finding, Report
+from splitcheck.verdict.findings import Report
 from splitcheck.verdict.judge import judge
-from splitcheck.verdict.scene import Scene
+from splitcheck.verdict.scene import Judged, Scene
 from splitcheck.verdict.summary import Seen, summarise
 
 Progress: TypeAlias = Callable[[str, int, int], None]
@@ -55,6 +55,16 @@ class Options:
     """Processes that read files; None: one a core."""
 
 
+@dataclass(frozen=True, slots=True)
+class Walked:
+    """A board at the end of the road: the report and what it was made from."""
+
+    report: Report
+    seen: Seen
+    scene: Scene
+    judged: Judged
+
+
 def rank(path: Path, options: Options, progress: Progress | None = None) -> Report:
     """Rank the broken return paths of a board, worst first.
 
@@ -72,14 +82,19 @@ def rank(path: Path, options: Options, progress: Progress | None = None) -> Repo
     SplitcheckError
         If the input cannot be read or judged.
     """
+    return look(path, options, progress).report
+
+
+def look(path: Path, options: Options, progress: Progress | None = None) -> Walked:
+    """Rank as ``rank`` does, and keep what lies behind the report: for pictures and for mending."""
     with _uncollected():
-        return _walk(path, options, progress, judged=True)
+        return _walk(path, options, progress, judging=True)
 
 
 def read(path: Path, options: Options, progress: Progress | None = None) -> Report:
     """Say how the files of a board were understood; the report has no findings."""
     with _uncollected():
-        return _walk(path, options, progress, judged=False)
+        return _walk(path, options, progress, judging=False).report
 
 
 @contextmanager
@@ -94,7 +109,7 @@ def _uncollected() -> Iterator[None]:
             gc.enable()
 
 
-def _walk(path: Path, options: Options, progress: Progress | None, *, judged: bool) -> Report:
+def _walk(path: Path, options: Options, progress: Progress | None, *, judging: bool) -> Walked:
     clock = Clock(progress or (lambda stage, done, total: None))
     with clock.stage("files"):
         export = load(path, options)
@@ -105,16 +120,16 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judged: bo
     with clock.stage("planes"):
         planes = find_planes(assembled.board)
         tracks = lay_tracks(assembled, options)
-    findings: tuple[Finding, ...] = ()
-    counts: tuple[Count, ...] = ()
-    if judged:
+        graph = join_islands(assembled.board, planes)
+        scene = set_scene(assembled, planes, graph, options)
+    judged = Judged((), (), {})
+    if judging:
         with clock.stage("crossings"):
             crossings, bare = cross(tracks, planes, Spread(options.jobs, few=2))
         with clock.stage("loops"):
-            graph = join_islands(assembled.board, planes)
-            scene = set_scene(assembled, planes, graph, options)
-            findings, counts = judge(scene, crossings, bare, Spread(options.jobs))
-    return summarise(Seen(export, assembled, planes, tracks), findings, counts, clock.seconds())
+            judged = judge(scene, crossings, bare, Spread(options.jobs))
+    seen = Seen(export, assembled, planes, tracks)
+    return Walked(summarise(seen, judged, clock.seconds()), seen, scene, judged)
 
 
 class Clock:

@@ -11,7 +11,18 @@ from typing import TypeAlias, get_args
 
 from splitcheck import __version__
 from splitcheck.report import tally
-from splitcheck.verdict.findings import LEVELS, Finding, Kind, LayerRow, NetRow, Point, Report
+from splitcheck.verdict.findings import (
+    LEVELS,
+    ClassRow,
+    Finding,
+    Kind,
+    LayerRow,
+    Leg,
+    NetRow,
+    Point,
+    Proposal,
+    Report,
+)
 
 SCHEMA = "splitcheck-report/1"
 Json: TypeAlias = "dict[str, Json] | list[Json] | str | int | float | bool | None"
@@ -56,6 +67,26 @@ def _report(report: Report) -> Json:
         ],
         "nets": [_net(net) for net in report.nets],
         "findings": [_finding(finding) for finding in report.findings],
+        "classes": [_class(row) for row in report.classes],
+        "pairs": [
+            {
+                "nets": list(row.nets),
+                "known_by": row.known_by,
+                "apart_mm": _to(4, row.apart_mm),
+                "coupled_mm": _to(4, row.coupled_mm),
+            }
+            for row in report.pairs
+        ],
+        "waivers": [
+            {
+                "reason": row.reason,
+                "until": row.until,
+                "findings": row.findings,
+                "state": row.state,
+                "source": {"file": row.source.file, "line": row.source.line},
+            }
+            for row in report.waivers
+        ],
         "counts": [{"what": count.what, "number": count.number} for count in report.counts],
         "summary": _summary(report),
     }
@@ -80,7 +111,37 @@ def _net(net: NetRow) -> Json:
         "layers": list(net.layers),
         "findings": net.findings,
         "worst_added_nh": _to(4, net.worst_added_nh),
-        "journey": list(net.journey),
+        "sum_nh": _to(4, net.sum_nh),
+        "pair": net.pair,
+        "exempt": net.exempt,
+        "journey": [_leg(leg) for leg in net.journey],
+    }
+
+
+def _leg(leg: Leg) -> Json:
+    return {
+        "kind": leg.kind,
+        "layer": leg.layer,
+        "plane_layers": list(leg.plane_layers),
+        "plane_nets": list(leg.plane_nets),
+        "length_mm": _to(4, leg.length_mm),
+        "at_mm": _point(leg.at_mm),
+        "added_nh": _to(4, leg.added_nh),
+        "finding": leg.finding,
+    }
+
+
+def _class(row: ClassRow) -> Json:
+    return {
+        "name": row.name,
+        "nets": row.nets,
+        "rise_ns": _to(4, row.rise_ns),
+        "wave_mv": _to(2, row.wave_mv),
+        "line_ohm": _to(4, row.line_ohm),
+        "error_mv": _to(2, row.error_mv),
+        "warning_mv": _to(2, row.warning_mv),
+        "exempt": row.exempt,
+        "source": row.source,
     }
 
 
@@ -117,10 +178,28 @@ def _finding(finding: Finding) -> Json:
             for share in finding.shares_gap_with
         ],
         "pair": finding.pair,
+        "odd_nh": _to(4, finding.odd_nh),
+        "unbalance_nh": _to(4, finding.unbalance_nh),
+        "common_nh": _to(4, finding.common_nh),
+        "crosstalk_mv": _to(2, finding.crosstalk_mv),
+        "capped": finding.capped,
         "source": {"file": finding.source.file, "line": finding.source.line},
         "waived": finding.waived,
         "fingerprint": finding.fingerprint,
         "reason": finding.reason,
+        "proposals": [_proposal(proposal) for proposal in finding.proposals],
+    }
+
+
+def _proposal(proposal: Proposal) -> Json:
+    return {
+        "what": proposal.what,
+        "at_mm": [_point(point) for point in proposal.at_mm],
+        "words": proposal.words,
+        "added_nh": _to(4, proposal.added_nh),
+        "error_nh": _to(4, proposal.error_nh),
+        "noise_mv": _to(2, proposal.noise_mv),
+        "isolation": proposal.isolation,
     }
 
 

@@ -43,7 +43,8 @@ def _bare_finding(scene: Scene, traces: Sequence[BareTrace]) -> Finding | None:
     value = _bare_estimate(scene, traces)
     if value is not None and value.added_nh < scene.min_nh:
         return None
-    noise = None if value is None else noise_mv(value.added_nh, scene.drive)
+    drive = scene.drive_of(longest.net)
+    noise = None if value is None else noise_mv(value.added_nh, drive)
     net = scene.board.nets[longest.net].name
     layer = scene.board.stack.layers[longest.layer - 1].name
     at = (round(longest.at[0], 4), round(longest.at[1], 4))
@@ -55,9 +56,9 @@ def _bare_finding(scene: Scene, traces: Sequence[BareTrace]) -> Finding | None:
     return Finding(
         id="",
         kind="no-plane",
-        level=level(noise, scene.drive),
+        level=level(noise, drive),
         net=net,
-        net_class=scene.drive.name,
+        net_class=drive.name,
         layer=layer,
         plane_layer="",
         plane_net="",
@@ -68,7 +69,7 @@ def _bare_finding(scene: Scene, traces: Sequence[BareTrace]) -> Finding | None:
         error_nh=None if value is None else value.error_nh,
         method="none" if value is None else "estimated",
         noise_mv=noise,
-        rise_ns=scene.drive.rise_ns,
+        rise_ns=drive.rise_ns,
         corner_khz=None,
         stray_db=None,
         islands=(),

@@ -43,6 +43,24 @@ class GapShare:
 
 
 @dataclass(frozen=True, slots=True)
+class Proposal:
+    """One thing that would mend a finding, with what the finding is worth afterwards."""
+
+    what: Literal["via", "capacitor", "copper", "move"]
+    at_mm: tuple[Point, ...]
+    """Where: a via's place, both pads of a capacitor, the ends of a bridge of copper, or the ends
+    of the piece of trace to move."""
+    words: str
+    """One sentence for a person: what to put where, and how large."""
+    added_nh: float
+    """What is left of the added inductance."""
+    error_nh: float
+    noise_mv: float
+    isolation: bool
+    """Whether the gap may be an isolation barrier: the two sides share no net and no bridge."""
+
+
+@dataclass(frozen=True, slots=True)
 class Finding:
     """One place where a return path is broken, with what it costs."""
 
@@ -85,6 +103,19 @@ class Finding:
     estimated_nh: float | None = None
     """What closed forms say, where that differs from the solved value by more than both errors."""
     estimated_error_nh: float | None = None
+    odd_nh: float | None = None
+    """For a leg of a differential pair: what both legs gain together in odd mode, nH."""
+    unbalance_nh: float | None = None
+    """For a leg of a pair: by how much the legs differ, which turns into common mode, nH."""
+    common_nh: float | None = None
+    """For an edge run: the common-mode inductance of the plane beneath, nH."""
+    crosstalk_mv: float | None = None
+    """What all other nets over the gap induce when they switch together, mV."""
+    capped: bool = False
+    """Whether the gap is too long for the rise time, so that the noise stands at the limit of the
+    slot as a line."""
+    proposals: tuple[Proposal, ...] = ()
+    """What would mend it, best first; empty unless asked for."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -120,6 +151,25 @@ class IslandRow:
 
 
 @dataclass(frozen=True, slots=True)
+class Leg:
+    """One step of a net's way: a stretch over one plane, a change of plane, or a finding."""
+
+    kind: Literal["stretch", "bare", "change", "finding"]
+    layer: str
+    plane_layers: tuple[str, ...]
+    """Layers of the planes that carry the return, nearest first."""
+    plane_nets: tuple[str, ...]
+    length_mm: float
+    """0 for a change of plane."""
+    at_mm: Point
+    """Where it begins."""
+    added_nh: float | None
+    """0 where nothing is broken; None: no way back."""
+    finding: str | None
+    """Id of the finding that it is, if it is one."""
+
+
+@dataclass(frozen=True, slots=True)
 class NetRow:
     """A net and what was found on it."""
 
@@ -129,7 +179,14 @@ class NetRow:
     layers: tuple[str, ...]
     findings: int
     worst_added_nh: float | None
-    journey: tuple[str, ...] = ()
+    journey: tuple[Leg, ...] = ()
+    """From one end to the other; of a branched net its longest way, then the branches."""
+    sum_nh: float | None = None
+    """What all its findings add, nH; None if one of them has no way back."""
+    pair: str | None = None
+    """The other leg, if the net is one of a differential pair."""
+    exempt: str | None = None
+    """Why the net is not judged, if it is not."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -138,6 +195,47 @@ class Count:
 
     what: str
     number: int
+
+
+@dataclass(frozen=True, slots=True)
+class ClassRow:
+    """An interface class and how its nets are judged."""
+
+    name: str
+    nets: int
+    rise_ns: float
+    wave_mv: float
+    line_ohm: float
+    error_mv: float
+    warning_mv: float
+    exempt: bool
+    source: str
+    """Where its numbers come from."""
+
+
+@dataclass(frozen=True, slots=True)
+class PairRow:
+    """A differential pair and how it was known."""
+
+    nets: tuple[str, str]
+    known_by: Literal["name", "geometry", "name and geometry", "rules"]
+    apart_mm: float | None
+    """Usual distance of the centre lines; None if they never run side by side."""
+    coupled_mm: float
+    """Length along which they run side by side, mm."""
+
+
+@dataclass(frozen=True, slots=True)
+class WaiverRow:
+    """A waiver of the board's rules and what became of it."""
+
+    reason: str
+    until: str | None
+    """Last day it holds, as written (ISO 8601), or None."""
+    findings: int
+    """How many findings it waives."""
+    state: Literal["used", "expired", "unmatched"]
+    source: Source
 
 
 @dataclass(frozen=True, slots=True)
@@ -160,3 +258,7 @@ class Report:
     counts: tuple[Count, ...]
     seconds: tuple[tuple[str, float], ...]
     """Wall time of each stage; the only part that differs between two runs."""
+    classes: tuple[ClassRow, ...] = ()
+    """Every class with nets on this board, by name."""
+    pairs: tuple[PairRow, ...] = ()
+    waivers: tuple[WaiverRow, ...] = ()

@@ -33,7 +33,7 @@ from splitcheck.verdict.findings import (
 )
 from splitcheck.verdict.places import by_place, fingerprint, with_ids, with_shares
 from splitcheck.verdict.reason import reason
-from splitcheck.verdict.scene import Scene, Weighed
+from splitcheck.verdict.scene import Judged, Scene, Weighed
 from splitcheck.verdict.score import level, noise_mv
 
 #: A run whose middle lies this near to the same stretch of trace is on it, mm.
@@ -53,7 +53,7 @@ def judge(
     crossings: Sequence[Crossing],
     bare: Sequence[BareTrace],
     spread: Spread = map,
-) -> tuple[tuple[Finding, ...], tuple[Count, ...]]:
+) -> Judged:
     """Turn crossings and bare traces into findings, worst first.
 
     Parameters
@@ -67,7 +67,7 @@ def judge(
 
     Returns
     -------
-    Findings with their ids, and counts of what was seen and is not a finding.
+    Findings with their ids, counts of what was seen and is not a finding, and what lies behind.
     """
     dropped: dict[str, int] = defaultdict(int)
     weighed: list[Weighed] = []
@@ -84,10 +84,12 @@ def judge(
         if finding is None:
             dropped[too_small(scene)] += 1
         else:
-            findings.append(finding)
+            findings.append(replace(finding, id=str(number)))
     findings.extend(bare_findings(scene, bare, dropped))
     counts = tuple(Count(what, number) for what, number in sorted(dropped.items()))
-    return with_ids(with_shares(by_place(findings))), counts
+    numbered, renamed = with_ids(with_shares(by_place(findings)))
+    behind = {new: weighed[int(old)] for old, new in renamed.items()}
+    return Judged(numbered, counts, behind)
 
 
 def _once_a_gap(weighed: Sequence[Weighed]) -> list[Weighed]:
@@ -173,7 +175,8 @@ def _crossing_finding(
     value = item.estimate if field is None else field.value
     if value is not None and value.added_nh < scene.min_nh:
         return None
-    noise = None if value is None else noise_mv(value.added_nh, scene.drive)
+    drive = scene.drive_of(item.crossing.net)
+    noise = None if value is None else noise_mv(value.added_nh, drive)
     return _finding(scene, item, value, noise, field, weighed)
 
 
@@ -253,17 +256,19 @@ def _finding(
     weighed: Sequence[Weighed],
 ) -> Finding:
     crossing, route = item.crossing, item.route
+    drive = scene.drive_of(crossing.net)
     plane = scene.planes[crossing.plane]
     layers = scene.board.stack.layers
     islands = [plane.islands[i] for i in crossing.islands]
     net = scene.board.nets[crossing.net].name
     at = (round(crossing.at[0], 4), round(crossing.at[1], 4))
+    apart = _disagreement(item.estimate, field)
     return Finding(
         id="",
         kind=item.kind,
-        level=level(noise, scene.drive),
+        level=level(noise, drive),
         net=net,
-        net_class=scene.drive.name,
+        net_class=drive.name,
         layer=layers[crossing.layer - 1].name,
         plane_layer=layers[crossing.plane - 1].name,
         plane_net=" to ".join(dict.fromkeys(island.net_name for island in islands)),
@@ -274,7 +279,7 @@ def _finding(
         error_nh=None if value is None else value.error_nh,
         method="solved" if field is not None else "none" if value is None else "estimated",
         noise_mv=noise,
-        rise_ns=scene.drive.rise_ns,
+        rise_ns=drive.rise_ns,
         corner_khz=_corner_khz(scene, item, field),
         stray_db=None if field is None else field.stray_db,
         islands=(islands[0].id, islands[1].id),
@@ -286,7 +291,8 @@ def _finding(
         waived=None,
         fingerprint=fingerprint(item.kind, net, layers[crossing.layer - 1].name, at),
         reason=reason(scene, item),
-        **_disagreement(item.estimate, field),
+        estimated_nh=None if apart is None else apart.added_nh,
+        estimated_error_nh=None if apart is None else apart.error_nh,
     )
 
 
@@ -306,13 +312,12 @@ def _corner_khz(scene: Scene, item: Weighed, field: Field | None) -> float | Non
     )
 
 
-def _disagreement(first: Inductance | None, field: Field | None) -> dict[str, float]:
+def _disagreement(first: Inductance | None, field: Field | None) -> Inductance | None:
     """The closed-form value, to be kept beside a solved one that it does not agree with."""
     if first is None or field is None:
-        return {}
-    if abs(first.added_nh - field.value.added_nh) <= first.error_nh + field.value.error_nh:
-        return {}
-    return {"estimated_nh": first.added_nh, "estimated_error_nh": first.error_nh}
+        return None
+    agree = abs(first.added_nh - field.value.added_nh) <= first.error_nh + field.value.error_nh
+    return None if agree else first
 
 
 def _mutual(

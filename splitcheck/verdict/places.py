@@ -60,10 +60,12 @@ def _chains(findings: Sequence[Finding]) -> list[list[int]]:
     return [sorted(members) for members in nx.connected_components(near)]
 
 
-def with_ids(findings: Iterable[Finding]) -> tuple[Finding, ...]:
-    """The findings worst first, numbered."""
+def with_ids(findings: Iterable[Finding]) -> tuple[tuple[Finding, ...], dict[str, str]]:
+    """The findings worst first, numbered; and their new ids by those that they had."""
     ranked = sorted(findings, key=worst_first)
-    return tuple(replace(finding, id=f"F{n}") for n, finding in enumerate(ranked, start=1))
+    numbered = tuple(replace(finding, id=f"F{n}") for n, finding in enumerate(ranked, start=1))
+    renamed = {old.id: new.id for old, new in zip(ranked, numbered, strict=True) if old.id}
+    return numbered, renamed
 
 
 def with_shares(findings: Sequence[Finding]) -> list[Finding]:

@@ -11,7 +11,7 @@ from splitcheck.loops.terrain import Terrain
 from splitcheck.loops.ways import Route
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane
-from splitcheck.verdict.findings import Kind
+from splitcheck.verdict.findings import Count, Finding, Kind
 from splitcheck.verdict.score import DEFAULT_DRIVE, Drive
 
 
@@ -24,7 +24,12 @@ class Scene:
     terrains: dict[int, Terrain]
     graph: IslandGraph
     min_nh: float
-    drive: Drive = DEFAULT_DRIVE
+    drives: tuple[Drive, ...] = ()
+    """What drives each net, by its number; empty: every net as by default."""
+
+    def drive_of(self, net: int) -> Drive:
+        """What drives a net."""
+        return self.drives[net] if self.drives else DEFAULT_DRIVE
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,3 +55,15 @@ class Weighed:
     def bare_mm(self) -> float:
         """Length of all its runs, mm."""
         return sum(crossing.run_mm for crossing in self.runs)
+
+
+@dataclass(frozen=True, slots=True)
+class Judged:
+    """What judging a board comes to."""
+
+    findings: tuple[Finding, ...]
+    """Worst first, numbered."""
+    counts: tuple[Count, ...]
+    """What was seen and is not a finding."""
+    weighed: dict[str, Weighed]
+    """By id of the finding: the crossing behind it, of those that have one."""

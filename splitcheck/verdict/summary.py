@@ -22,6 +22,7 @@ from splitcheck.verdict.findings import (
     Report,
     Role,
 )
+from splitcheck.verdict.scene import Judged
 from splitcheck.verdict.score import DEFAULT_DRIVE, Drive
 
 #: A layer is a plane from this share of the board on, a signal layer below the second, else mixed.
@@ -41,8 +42,7 @@ class Seen:
 
 def summarise(
     seen: Seen,
-    findings: tuple[Finding, ...],
-    counts: tuple[Count, ...],
+    judged: Judged,
     seconds: tuple[tuple[str, float], ...],
 ) -> Report:
     """Bring everything into the report."""
@@ -73,9 +73,9 @@ def summarise(
             for plane in seen.planes
             for island in plane.islands
         ),
-        nets=_nets(board, seen.tracks, findings),
-        findings=findings,
-        counts=(*_exempt(board), *counts),
+        nets=_nets(board, seen.tracks, judged.findings),
+        findings=judged.findings,
+        counts=(*_exempt(board), *judged.counts),
         seconds=seconds,
     )
 

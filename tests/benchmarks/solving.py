@@ -60,7 +60,7 @@ def timed(folder: Path) -> tuple[list[Call], list[Call], int]:
             calls.append(Call(size, 1000 * (perf_counter() - start)))
             yield result
 
-    findings, _ = judge(scene, crossings, bare, spread)
+    findings = judge(scene, crossings, bare, spread).findings
     weighed, *solves = stages
     return weighed, [call for stage in solves for call in stage], len(findings)
 

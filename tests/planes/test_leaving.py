@@ -31,8 +31,10 @@ def test_trace_without_a_farther_plane_is_bare_instead() -> None:
 def test_leaving_is_counted_and_is_no_finding() -> None:
     """Changes of plane are told as a number; a whole near plane counts none."""
     split, whole = board(SIGNAL, HALF, WHOLE), board(SIGNAL, WHOLE, WHOLE)
-    findings, counts = judge(scene(split), *crossings(split))
+    judged = judge(scene(split), *crossings(split))
+    findings, counts = judged.findings, judged.counts
     assert findings == ()
     told = {count.what: count.number for count in counts}
     assert told == {"traces that leave a plane for a farther one (changes of plane)": 1}
-    assert judge(scene(whole), *crossings(whole)) == ((), ())
+    judged = judge(scene(whole), *crossings(whole))
+    assert (judged.findings, judged.counts) == ((), ())

@@ -6,15 +6,19 @@ from dataclasses import replace
 
 from splitcheck.verdict.findings import (
     BridgeUse,
+    ClassRow,
     Count,
     Finding,
     GapShare,
     InputRow,
     IslandRow,
     LayerRow,
+    Leg,
     NetRow,
+    PairRow,
     Report,
     Source,
+    WaiverRow,
 )
 
 
@@ -50,6 +54,13 @@ def finding(number: int, net: str, **changes: object) -> Finding:
         reason="A slot 35 mm long cuts Inner 1 under the trace; the return goes round its end.",
     )
     return replace(plain, **changes)  # type: ignore[arg-type]  # the names are the caller's
+
+
+def _leg(row: Finding) -> Leg:
+    """The only step of a net's way: its finding."""
+    planes = (row.plane_layer,) if row.plane_layer else ()
+    nets = (row.plane_net,) if row.plane_layer else ()
+    return Leg("finding", row.layer, planes, nets, 41.25, (1.0, 2.0), row.added_nh, row.id)
 
 
 def pump() -> Report:
@@ -108,7 +119,7 @@ def pump() -> Report:
     )
     findings = (*bus, split, corner)
     nets = tuple(
-        NetRow(row.net, "", 41.25, (row.layer,), 1, row.added_nh, ("Top over Inner 1",))
+        NetRow(row.net, "", 41.25, (row.layer,), 1, row.added_nh, (_leg(row),), row.added_nh)
         for row in findings
     )
     return Report(
@@ -145,4 +156,9 @@ def pump() -> Report:
         findings=findings,
         counts=(Count("nets exempt: they are reference copper", 3),),
         seconds=(("read", 0.5), ("cross", 0.25)),
+        classes=(ClassRow("default", 6, 1.0, 1650.0, 50.0, 100.0, 33.0, False, "common practice"),),
+        pairs=(PairRow(("BUS0", "BUS1"), "name", 0.35, 38.5),),
+        waivers=(
+            WaiverRow("bring-up only", "2031-01-31", 0, "unmatched", Source("splitcheck.toml", 9)),
+        ),
     )

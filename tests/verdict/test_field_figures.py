@@ -27,7 +27,7 @@ def found_on(
 ) -> Finding:
     """The only finding of a board."""
     made = board(*sheets, heights_mm=heights_mm, outline=plane)
-    (finding,), _ = judge(scene(made, 0.05), *crossings(made))
+    (finding,) = judge(scene(made, 0.05), *crossings(made)).findings
     return finding
 
 

@@ -40,7 +40,8 @@ def _made(
 
 
 def _judged(made: Board, min_nh: float = 0.05) -> tuple[tuple[Finding, ...], tuple[Count, ...]]:
-    return judge(scene(made, min_nh), *crossings(made))
+    judged = judge(scene(made, min_nh), *crossings(made))
+    return judged.findings, judged.counts
 
 
 def _disc(x: float, y: float, size_mm: float) -> Polygon:
