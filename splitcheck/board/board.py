@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 from shapely import MultiPolygon, Polygon
 
+from splitcheck.board.components import Component
 from splitcheck.board.nets import Net, PlatedHole
 from splitcheck.board.parts import CopperLayer, Part
 from splitcheck.board.stack import Stack
@@ -25,3 +26,5 @@ class Board:
     nets: tuple[Net, ...]
     holes: tuple[PlatedHole, ...]
     """Plated holes."""
+    components: tuple[Component, ...] = ()
+    """Parts on the board, by reference; empty if no file tells them."""
