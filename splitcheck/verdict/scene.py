@@ -12,7 +12,7 @@ from splitcheck.loops.ways import Route
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane
 from splitcheck.verdict.findings import Count, Finding, Kind
-from splitcheck.verdict.score import DEFAULT_DRIVE, Drive
+from splitcheck.verdict.rules import DEFAULT_CLASS, PLAIN_RULES, Class, Rules
 
 
 @dataclass(frozen=True, slots=True)
@@ -24,12 +24,14 @@ class Scene:
     terrains: dict[int, Terrain]
     graph: IslandGraph
     min_nh: float
-    drives: tuple[Drive, ...] = ()
-    """What drives each net, by its number; empty: every net as by default."""
+    rules: Rules = PLAIN_RULES
+    drives: tuple[Class, ...] = ()
+    """The class of each net, by its number, with what is known of the net alone; empty: every net
+    as by default."""
 
-    def drive_of(self, net: int) -> Drive:
-        """What drives a net."""
-        return self.drives[net] if self.drives else DEFAULT_DRIVE
+    def drive_of(self, net: int) -> Class:
+        """The class of a net: what drives it and what it bears."""
+        return self.drives[net] if self.drives else DEFAULT_CLASS
 
 
 @dataclass(frozen=True, slots=True)

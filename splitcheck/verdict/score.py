@@ -2,34 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from math import exp, inf
 
 from splitcheck.verdict.findings import LEVELS, Finding, Level
+from splitcheck.verdict.rules import Class
 
 
-@dataclass(frozen=True, slots=True)
-class Drive:
-    """What is assumed of a driver while nothing is known of the net."""
-
-    name: str
-    rise_ns: float
-    """10 to 90 %."""
-    wave_mv: float
-    """Amplitude of the wave it launches."""
-    line_ohm: float
-    error_mv: float
-    """Noise from which a finding is an error."""
-    warning_mv: float
-    """Noise from which a finding is a warning."""
-
-
-#: 3.3 V logic behind a series termination into 50 ohm, 1 ns; thresholds of 6 % and 2 % of the
-#: launched wave. Common practice, no source.
-DEFAULT_DRIVE = Drive("default", 1.0, 1650.0, 50.0, 100.0, 33.0)
-
-
-def noise_mv(added_nh: float, drive: Drive) -> float:
+def noise_mv(added_nh: float, drive: Class) -> float:
     """Peak voltage across an added inductance in a matched line.
 
     Parameters
@@ -50,7 +29,8 @@ def noise_mv(added_nh: float, drive: Drive) -> float:
 
     Examples
     --------
-    >>> round(noise_mv(3.0, DEFAULT_DRIVE))
+    >>> from splitcheck.verdict.rules import DEFAULT_CLASS
+    >>> round(noise_mv(3.0, DEFAULT_CLASS))
     99
     """
     if added_nh < 1e-12:  # so small that tr / tau may not be a number
@@ -59,7 +39,7 @@ def noise_mv(added_nh: float, drive: Drive) -> float:
     return 2.0 * drive.wave_mv * tau_ns / drive.rise_ns * (1.0 - exp(-drive.rise_ns / tau_ns))
 
 
-def level(noise: float | None, drive: Drive) -> Level:
+def level(noise: float | None, drive: Class) -> Level:
     """Level of a finding; without a way back for the current it is an error."""
     if noise is None or noise >= drive.error_mv:
         return "error"

@@ -22,8 +22,8 @@ from splitcheck.verdict.findings import (
     Report,
     Role,
 )
+from splitcheck.verdict.rules import DEFAULT_CLASS, Class
 from splitcheck.verdict.scene import Judged
-from splitcheck.verdict.score import DEFAULT_DRIVE, Drive
 
 #: A layer is a plane from this share of the board on, a signal layer below the second, else mixed.
 PLANE_SHARE = 0.6
@@ -56,7 +56,7 @@ def summarise(
             *_no_plane(seen.planes),
             *_no_names(board),
             *seen.assembled.assumptions,
-            _drive_sentence(DEFAULT_DRIVE),
+            _drive_sentence(DEFAULT_CLASS),
         ),
         remarks=seen.assembled.remarks,
         facts=(*_facts(board), *seen.assembled.facts),
@@ -100,7 +100,7 @@ def _no_names(board: Board) -> tuple[str, ...]:
     return (sentence,)
 
 
-def _drive_sentence(drive: Drive) -> str:
+def _drive_sentence(drive: Class) -> str:
     return (
         f"Every net is taken to switch in {drive.rise_ns:g} ns (10 to 90 %) and to launch "
         f"{drive.wave_mv:g} mV into {drive.line_ohm:g} ohm; an error is {drive.error_mv:g} mV of "
@@ -163,7 +163,7 @@ def _nets(
         rows.append(
             NetRow(
                 name,
-                DEFAULT_DRIVE.name,
+                DEFAULT_CLASS.name,
                 round(length[name], 4),
                 tuple(board.stack.layers[n - 1].name for n in sorted(layers[name])),
                 len(found),

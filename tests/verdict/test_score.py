@@ -10,10 +10,11 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from splitcheck.verdict.findings import Finding, Source
-from splitcheck.verdict.score import DEFAULT_DRIVE, Drive, level, noise_mv, worst_first
+from splitcheck.verdict.rules import DEFAULT_CLASS, Class
+from splitcheck.verdict.score import level, noise_mv, worst_first
 
 drives = st.builds(
-    Drive,
+    Class,
     st.just("some"),
     st.floats(0.05, 20),
     st.floats(100, 5000),
@@ -28,13 +29,13 @@ drives = st.builds(
 )
 def test_noise_of_a_3_3_v_driver_into_50_ohm(added_nh: float, rise_ns: float, mv: float) -> None:
     """Ramp into a series inductance between matched halves, 2 V tau/tr (1 - exp(-tr/tau))."""
-    assert noise_mv(added_nh, replace(DEFAULT_DRIVE, rise_ns=rise_ns)) == pytest.approx(
+    assert noise_mv(added_nh, replace(DEFAULT_CLASS, rise_ns=rise_ns)) == pytest.approx(
         mv, rel=0.01
     )
 
 
 @given(st.floats(1e-4, 0.05), drives)
-def test_small_inductance_is_l_di_dt(added_nh: float, drive: Drive) -> None:
+def test_small_inductance_is_l_di_dt(added_nh: float, drive: Class) -> None:
     """With dI = V / Z0 in the rise time."""
     if added_nh / drive.line_ohm < 0.05 * drive.rise_ns:
         slope = drive.wave_mv / drive.line_ohm / drive.rise_ns
@@ -43,7 +44,7 @@ def test_small_inductance_is_l_di_dt(added_nh: float, drive: Drive) -> None:
 
 @given(st.floats(0, 1e4), st.floats(0, 1e3), drives)
 def test_noise_grows_with_inductance_up_to_twice_the_wave(
-    added_nh: float, more_nh: float, drive: Drive
+    added_nh: float, more_nh: float, drive: Class
 ) -> None:
     """An open line reflects all of the wave, and no more."""
     low, high = noise_mv(added_nh, drive), noise_mv(added_nh + more_nh, drive)
@@ -53,8 +54,8 @@ def test_noise_grows_with_inductance_up_to_twice_the_wave(
 @given(st.floats(0.01, 100), st.floats(0.05, 10), st.floats(1, 10))
 def test_slower_edge_makes_less_noise(added_nh: float, rise_ns: float, slower: float) -> None:
     """Never more than the faster one."""
-    fast = noise_mv(added_nh, replace(DEFAULT_DRIVE, rise_ns=rise_ns))
-    slow = noise_mv(added_nh, replace(DEFAULT_DRIVE, rise_ns=rise_ns * slower))
+    fast = noise_mv(added_nh, replace(DEFAULT_CLASS, rise_ns=rise_ns))
+    slow = noise_mv(added_nh, replace(DEFAULT_CLASS, rise_ns=rise_ns * slower))
     assert slow <= fast * (1 + 1e-12)
 
 
@@ -71,12 +72,12 @@ def test_slower_edge_makes_less_noise(added_nh: float, rise_ns: float, slower: f
 )
 def test_levels_at_their_thresholds(mv: float | None, expected: str) -> None:
     """Thresholds belong to the worse level; no way back for the current is an error."""
-    assert level(mv, DEFAULT_DRIVE) == expected
+    assert level(mv, DEFAULT_CLASS) == expected
 
 
 def _finding(mv: float | None, nh: float | None, net: str) -> Finding:
     return Finding(
-        id="", kind="slot-crossing", level=level(mv, DEFAULT_DRIVE), net=net, net_class="default",
+        id="", kind="slot-crossing", level=level(mv, DEFAULT_CLASS), net=net, net_class="default",
         layer="L1", plane_layer="L2", plane_net="GND", at_mm=(1.0, 2.0), gap_mm=1.0,
         detour_mm=1.0, added_nh=nh, error_nh=0.1, method="estimated", noise_mv=mv, rise_ns=1.0,
         corner_khz=None, stray_db=None, islands=(), bridges=(), gap="L2.g1", shares_gap_with=(),
