@@ -12,6 +12,7 @@ from rich.text import Text
 from splitcheck import __version__
 from splitcheck.report import tally
 from splitcheck.report.page import Column, Page
+from splitcheck.report.sums import say_sums
 from splitcheck.report.words import STICKY, number, plural, shorten, with_error
 from splitcheck.verdict.findings import LEVELS, Finding, Kind, Level, Method, Report
 
@@ -65,6 +66,7 @@ def render(report: Report, *, top: int, width: int, color: bool) -> str:
     _read(page, report)
     _assumed(page, report)
     _found(page, report, top)
+    say_sums(page, report.nets)
     _in_all(page, report)
     page.gap()
     page.say(CAUTION, indent=0)

@@ -23,6 +23,7 @@ from splitcheck.verdict.findings import (
     Role,
 )
 from splitcheck.verdict.rules import DEFAULT_CLASS, Class
+from splitcheck.verdict.journey import MOST_LEGS, Journeys, journeys, sum_nh
 from splitcheck.verdict.scene import Judged
 
 #: A layer is a plane from this share of the board on, a signal layer below the second, else mixed.
@@ -48,6 +49,7 @@ def summarise(
     """Bring everything into the report."""
     board = seen.assembled.board
     x0, y0, x1, y1 = board.outline.bounds
+    ways = journeys(board, seen.planes, seen.tracks, judged.findings)
     return Report(
         board=board.name,
         size_mm=(round(x1 - x0, 4), round(y1 - y0, 4)),
@@ -73,10 +75,11 @@ def summarise(
             for plane in seen.planes
             for island in plane.islands
         ),
-        nets=_nets(board, seen.tracks, judged.findings),
+        nets=_nets(board, seen.tracks, judged.findings, ways),
         findings=judged.findings,
-        counts=(*_exempt(board), *judged.counts),
+        counts=(*_exempt(board), *judged.counts, *_not_told(ways)),
         seconds=seconds,
+        corner_mm=(round(x0, 4), round(y0, 4)),
     )
 
 
@@ -144,8 +147,15 @@ def _exempt(board: Board) -> tuple[Count, ...]:
     )
 
 
+def _not_told(ways: Journeys) -> tuple[Count, ...]:
+    if not ways.left_out:
+        return ()
+    what = f"legs of journeys left out, of nets with more than {MOST_LEGS}"
+    return (Count(what, ways.left_out),)
+
+
 def _nets(
-    board: Board, tracks: Sequence[Tracks], findings: Sequence[Finding]
+    board: Board, tracks: Sequence[Tracks], findings: Sequence[Finding], ways: Journeys
 ) -> tuple[NetRow, ...]:
     length: dict[str, float] = defaultdict(float)
     layers: dict[str, set[int]] = defaultdict(set)
@@ -168,6 +178,8 @@ def _nets(
                 tuple(board.stack.layers[n - 1].name for n in sorted(layers[name])),
                 len(found),
                 max(added) if added else None,
+                journey=ways.legs.get(name, ()),
+                sum_nh=sum_nh(found),
             )
         )
     return tuple(rows)
