@@ -99,7 +99,7 @@ def rank(
     options = road.Options(tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs)
     with streams.progress_bar(quiet=quiet) as progress:
         report = road.rank(path, options, progress)
-    results.show(report, terminal.render, wanted, top=top, quiet=quiet, color=color)
+    results.show(report, terminal.render, wanted, top=top, quiet=quiet, color=color, path=path)
     raise typer.Exit(results.exit_code(report, fail_at))
 
 

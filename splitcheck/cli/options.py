@@ -74,8 +74,8 @@ Out = Annotated[
     typer.Option(
         "--out",
         metavar="FORMAT=FILE",
-        help="Also write the whole result as text or json; FILE - is stdout, and then everything "
-        "else goes to stderr. Repeatable.",
+        help="Also write the whole result as text, json, sarif, junit, codequality, annotations, "
+        "markdown or csv; FILE - is stdout, and then everything else goes to stderr. Repeatable.",
     ),
 ]
 Quiet = Annotated[

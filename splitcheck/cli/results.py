@@ -4,15 +4,19 @@ from __future__ import annotations
 
 import sys
 from collections.abc import Sequence
+from pathlib import Path
 from typing import Protocol
 
 from splitcheck.cli import streams, targets
 from splitcheck.cli.options import FailAt
-from splitcheck.report import jsonfile, tally
-from splitcheck.verdict.findings import LEVELS, Report
+from splitcheck.report import locate, tally
+from splitcheck.verdict.changes import Comparison
+from splitcheck.verdict.findings import LEVELS, Level, Report
 
 #: Columns of a text report that goes to a file.
 FILE_WIDTH = 100
+#: A text file of the repository that hosts can show where they do not have the export itself.
+ANCHOR = "splitcheck.toml"
 
 
 class Render(Protocol):
@@ -30,10 +34,19 @@ def show(
     top: int,
     quiet: bool,
     color: streams.Color,
+    path: Path | None = None,
+    comparison: Comparison | None = None,
 ) -> None:
     """Deliver every ``--out``, then the text for the person before the screen.
 
     That text leaves standard output to a result that goes there, and is not said twice.
+
+    Parameters
+    ----------
+    path
+        What was read: hosts are pointed to the files in it.
+    comparison
+        What became of an earlier revision, if there is one.
     """
     taken = next((target for target in wanted if target.is_stdout), None)
     if not quiet and (taken is None or taken.format != "text"):
@@ -42,17 +55,45 @@ def show(
         shown = render(report, top=top, width=width, color=streams.color_for(color, stream))
         streams.put(shown, stream)
     for target in wanted:
-        if target.format == "json":
-            targets.deliver(target, jsonfile.render(report))
+        if target.format != "text":
+            told = located(report, path) if target.format in targets.HOSTED else report
+            targets.deliver(target, target.renderer()(told, comparison))
             continue
         wide = streams.width_for(sys.stdout) if target.is_stdout else FILE_WIDTH
         colored = target.is_stdout and streams.color_for(color, sys.stdout)
         targets.deliver(target, render(report, top=0, width=wide, color=colored))
 
 
-def exit_code(report: Report, fail_at: FailAt) -> int:
-    """1 if a finding that nobody has waived is at or above the threshold, else 0."""
+def located(report: Report, path: Path | None) -> Report:
+    """The report with places that a host can show, seen from the folder the command runs in.
+
+    1. A folder of exports in it: the Gerber file and the line that draws the trace.
+    2. Anything else (a zip, an artefact kept elsewhere, a report): ``splitcheck.toml`` if it is
+       there, a file that reviewers know and a host can show.
+    3. Else the Gerber file as the export calls it.
+    """
+    here = Path.cwd().resolve()
+    folder = None if path is None else path.resolve()
+    if folder is not None and path is not None and path.suffix.lower() == ".gbrjob":
+        folder = folder.parent
+    if folder is not None and folder.is_dir() and folder.is_relative_to(here):
+        inner = folder.relative_to(here).as_posix()
+        return locate.in_folder(report, "" if inner == "." else inner)
+    if (here / ANCHOR).is_file():
+        return locate.at_file(report, ANCHOR)
+    return report
+
+
+def exit_code(report: Report, fail_at: FailAt, comparison: Comparison | None = None) -> int:
+    """1 if a finding that counts is at or above the threshold, else 0.
+
+    Waived findings never count; against an earlier revision only those that are new or worse do.
+    """
     if fail_at == "never":
         return 0
-    counted = LEVELS[: LEVELS.index(fail_at) + 1]
-    return int(any(finding.level in counted for finding in tally.standing(report.findings)))
+    counted: tuple[Level, ...] = LEVELS[: LEVELS.index(fail_at) + 1]
+    standing = tally.standing(report.findings)
+    if comparison is not None:
+        changes = comparison.by_id()
+        standing = tuple(f for f in standing if changes[f.id].verdict in {"new", "worse"})
+    return int(any(finding.level in counted for finding in standing))

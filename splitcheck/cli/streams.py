@@ -79,9 +79,23 @@ def put(text: str, stream: TextIO) -> None:
         stream.write(text)
         stream.flush()
     except BrokenPipeError:
-        # Python flushes the stream once more at its end: let that go nowhere.
-        with open(os.devnull, "w", encoding="utf-8") as nowhere:  # noqa: PTH123
-            os.dup2(nowhere.fileno(), stream.fileno())
+        _leave(stream)
+
+
+def put_bytes(result: bytes, stream: TextIO) -> None:
+    """Write a result that is no text, as `put` writes one that is."""
+    try:
+        stream.flush()
+        stream.buffer.write(result)
+        stream.buffer.flush()
+    except BrokenPipeError:
+        _leave(stream)
+
+
+def _leave(stream: TextIO) -> None:
+    """Python flushes a stream once more at its end: let that go nowhere."""
+    with open(os.devnull, "w", encoding="utf-8") as nowhere:  # noqa: PTH123
+        os.dup2(nowhere.fileno(), stream.fileno())
 
 
 def complain(sentence: str) -> None:

@@ -4,15 +4,35 @@ from __future__ import annotations
 
 import os
 import sys
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from importlib import import_module
 from pathlib import Path
+from typing import TypeAlias
 
 from splitcheck.cli import streams
 from splitcheck.errors import SplitcheckError
+from splitcheck.verdict.changes import Comparison
+from splitcheck.verdict.findings import Report
 
-#: What ``--out`` can write.
-FORMATS = ("text", "json")
+#: Writes a report, and what became of an earlier one if there is one, as a file.
+Renderer: TypeAlias = Callable[[Report, Comparison | None], str | bytes]
+
+#: What ``--out`` can write: each format by the module with its ``render``, which is loaded when
+#: it is asked for. ``text`` is what the command itself shows.
+MODULES = {
+    "text": "",
+    "json": "splitcheck.report.jsonfile",
+    "sarif": "splitcheck.report.sarif",
+    "junit": "splitcheck.report.junit",
+    "codequality": "splitcheck.report.codequality",
+    "annotations": "splitcheck.report.annotations",
+    "markdown": "splitcheck.report.markdown",
+    "csv": "splitcheck.report.csvfile",
+}
+FORMATS = tuple(MODULES)
+#: Formats that point a host to a file of the repository.
+HOSTED = frozenset({"sarif", "junit", "codequality", "annotations"})
 #: The file name that means standard output.
 STDOUT = "-"
 
@@ -24,18 +44,23 @@ class Target:
     format: str
     file: str
 
+    def renderer(self) -> Renderer:
+        """What writes this format; not for ``text``."""
+        render: Renderer = import_module(MODULES[self.format]).render
+        return render
+
     @property
     def is_stdout(self) -> bool:
         """Whether it goes to standard output."""
         return self.file == STDOUT
 
 
-def parse(words: Sequence[str], board: Path) -> tuple[Target, ...]:
+def parse(words: Sequence[str], *boards: Path) -> tuple[Target, ...]:
     """Read all ``--out`` and make sure that each can be written, long before there is a result.
 
     Parameters
     ----------
-    board
+    boards
         What is going to be read; a result never goes over it.
 
     Raises
@@ -61,7 +86,7 @@ def parse(words: Sequence[str], board: Path) -> tuple[Target, ...]:
             raise SplitcheckError(place, "another --out goes there already", do)
         seen.add(name)
         if not target.is_stdout:
-            _check(Path(target.file), place, board)
+            _check(Path(target.file), place, boards)
     return targets
 
 
@@ -76,36 +101,38 @@ def _target(word: str) -> Target:
     return Target(name, file)
 
 
-def _check(path: Path, place: str, board: Path) -> None:
+def _check(path: Path, place: str, boards: Sequence[Path]) -> None:
     folder = path.parent
     if path.is_dir():
         raise SplitcheckError(place, "this is a folder", "name a file in it")
     if not folder.is_dir():
         wrong = f'there is no folder "{folder}"'
         raise SplitcheckError(place, wrong, "make the folder first or name another")
-    if path.exists() and board.is_file() and path.samefile(board):
+    if path.exists() and any(board.is_file() and path.samefile(board) for board in boards):
         wrong = "this is the very file that is read"
         raise SplitcheckError(place, wrong, "name another file for the result")
     if not os.access(path if path.exists() else folder, os.W_OK):
         raise SplitcheckError(place, "it may not be written", "change its rights or name another")
 
 
-def deliver(target: Target, text: str) -> None:
-    """Write one result; files are UTF-8 with plain line ends on every system.
+def deliver(target: Target, result: str | bytes) -> None:
+    """Write one result; text is UTF-8, with the line ends that its format has, on every system.
 
     Raises
     ------
     SplitcheckError
         If the file cannot be written after all.
     """
+    if target.is_stdout and isinstance(result, str):
+        streams.put(result, sys.stdout)
+        return
+    if isinstance(result, str):
+        result = result.encode(errors="backslashreplace")
     if target.is_stdout:
-        streams.put(text, sys.stdout)
+        streams.put_bytes(result, sys.stdout)
         return
     try:
-        with Path(target.file).open(
-            "w", encoding="utf-8", errors="backslashreplace", newline="\n"
-        ) as f:
-            f.write(text)
+        Path(target.file).write_bytes(result)
     except OSError as error:
         place = f"--out {target.format}={target.file}"
         wrong = f"cannot be written ({error.strerror})"

@@ -11,6 +11,7 @@ from typing import TypeAlias, get_args
 
 from splitcheck import __version__
 from splitcheck.report import tally
+from splitcheck.verdict.changes import VERDICTS, Change, Comparison
 from splitcheck.verdict.findings import (
     LEVELS,
     ClassRow,
@@ -28,8 +29,15 @@ SCHEMA = "splitcheck-report/1"
 Json: TypeAlias = "dict[str, Json] | list[Json] | str | int | float | bool | None"
 
 
-def render(report: Report) -> str:
-    """Write the report as JSON text, ending in a line end.
+def render(report: Report, comparison: Comparison | None = None) -> str:
+    """Write the report as JSON text, ending in a line end; `readback.load` reads it again.
+
+    Parameters
+    ----------
+    report
+        The newer revision, if there are two.
+    comparison
+        Adds what became of each finding of the earlier one.
 
     Raises
     ------
@@ -42,16 +50,20 @@ def render(report: Report) -> str:
     >>> json.loads(render(empty))["schema"]
     'splitcheck-report/1'
     """
-    return json.dumps(_report(report), indent=2, allow_nan=False) + "\n"
+    whole = _report(report)
+    if comparison is not None:
+        whole["comparison"] = _comparison(comparison)
+    return json.dumps(whole, indent=2, allow_nan=False) + "\n"
 
 
-def _report(report: Report) -> Json:
+def _report(report: Report) -> dict[str, Json]:
     return {
         "schema": SCHEMA,
         "tool": {"name": "splitcheck", "version": __version__},
         "board": {
             "name": report.board,
             "size_mm": _point(report.size_mm),
+            "corner_mm": None if report.corner_mm is None else _point(report.corner_mm),
             "layers": [_layer(layer) for layer in report.layers],
         },
         "assumptions": list(report.assumptions),
@@ -200,6 +212,43 @@ def _proposal(proposal: Proposal) -> Json:
         "error_nh": _to(4, proposal.error_nh),
         "noise_mv": _to(2, proposal.noise_mv),
         "isolation": proposal.isolation,
+    }
+
+
+def _comparison(comparison: Comparison) -> Json:
+    return {
+        "was": {"name": comparison.was.board, "findings": len(comparison.was.findings)},
+        "move": {
+            "turned_deg": _to(4, comparison.move.turned_deg),
+            "shift_mm": _point(comparison.move.shift_mm),
+        },
+        "remarks": list(comparison.remarks),
+        "by_verdict": {verdict: len(comparison.of(verdict)) for verdict in VERDICTS},
+        "changes": [_change(change) for change in comparison.changes],
+    }
+
+
+def _change(change: Change) -> Json:
+    was = change.was
+    return {
+        "verdict": change.verdict,
+        "why": change.why,
+        "finding": None if change.now is None else change.now.id,
+        "was": None
+        if was is None
+        else {
+            "id": was.id,
+            "kind": was.kind,
+            "level": was.level,
+            "net": was.net,
+            "layer": was.layer,
+            "plane_layer": was.plane_layer,
+            "at_mm": _point(was.at_mm),
+            "added_nh": _to(4, was.added_nh),
+            "error_nh": _to(4, was.error_nh),
+            "noise_mv": _to(2, was.noise_mv),
+            "waived": was.waived,
+        },
     }
 
 

@@ -262,3 +262,6 @@ class Report:
     """Every class with nets on this board, by name."""
     pairs: tuple[PairRow, ...] = ()
     waivers: tuple[WaiverRow, ...] = ()
+    corner_mm: Point | None = None
+    """Lower left corner of the outline's bounds, which with ``size_mm`` says where the board lies
+    in its files; None if not known."""

@@ -9,6 +9,7 @@ from dataclasses import dataclass
 from splitcheck.board.assemble import Assembled
 from splitcheck.board.board import Board
 from splitcheck.board.names import is_power
+from splitcheck.board.pairs import Pair
 from splitcheck.copper.intake import Export
 from splitcheck.planes.islands import Plane, reference_nets
 from splitcheck.planes.tracks import Tracks
@@ -22,6 +23,7 @@ from splitcheck.verdict.findings import (
     Report,
     Role,
 )
+from splitcheck.verdict.pairs import pair_rows
 from splitcheck.verdict.rules import DEFAULT_CLASS, Class
 from splitcheck.verdict.journey import MOST_LEGS, Journeys, journeys, sum_nh
 from splitcheck.verdict.scene import Judged
@@ -39,6 +41,7 @@ class Seen:
     assembled: Assembled
     planes: tuple[Plane, ...]
     tracks: tuple[Tracks, ...]
+    pairs: tuple[Pair, ...] = ()
 
 
 def summarise(
@@ -80,6 +83,7 @@ def summarise(
         counts=(*_exempt(board), *judged.counts, *_not_told(ways)),
         seconds=seconds,
         corner_mm=(round(x0, 4), round(y0, 4)),
+        pairs=pair_rows(board, seen.pairs),
     )
 
 

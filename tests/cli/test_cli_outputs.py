@@ -75,7 +75,7 @@ def test_several_outs_are_all_written(road: Road) -> None:
 @pytest.mark.parametrize(
     ("outs", "said"),
     [
-        (["pdf=a"], 'no format "pdf"; use one of text, json'),
+        (["pdf=a"], 'no format "pdf"; use one of text, json, sarif'),
         (["json"], "write it as FORMAT=FILE"),
         (["json="], "write it as FORMAT=FILE"),
         (["json=nowhere/a.json"], 'there is no folder "nowhere"'),

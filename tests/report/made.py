@@ -161,4 +161,5 @@ def pump() -> Report:
         waivers=(
             WaiverRow("bring-up only", "2031-01-31", 0, "unmatched", Source("splitcheck.toml", 9)),
         ),
+        corner_mm=(0.0, 0.0),
     )
