@@ -113,6 +113,10 @@ class Solution:
     """Current in each bridge per ampere in each trace, shape (bridges, n)."""
     coarser: float = 1.0
     """How many times coarser than they should be the panels were made, so as not to be too many."""
+    gaps: tuple[Polygon, ...] = ()
+    """The gaps as they were solved."""
+    lines: tuple[Floats | None, ...] = ()
+    """The centre lines as they were solved, shape (p, 2); None: nowhere over copper."""
 
     def of(self, trace: int) -> float | None:
         """Added inductance of one trace in nH, or None where it has no way back."""
@@ -523,6 +527,8 @@ def _judged(job: _Job, fine: _Raw, coarse: _Raw, coarser: float = 1.0) -> Soluti
         flux_nwb=flux,
         bridge_a=bridge_a,
         coarser=coarser,
+        gaps=job.scene.gaps,
+        lines=job.scene.lines,
     )
 
 

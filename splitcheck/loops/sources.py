@@ -153,8 +153,8 @@ def _nearby(panels: Panels, near: Ints, strip: Strip, between: Floats) -> tuple[
     turn = _turned(strip.line[-1], middle, spots) - _turned(strip.line[0], middle, spots)
     angle = strip.share / (2 * np.pi) * (between + turn.mean(axis=1))
     flat = spots.reshape(-1, 2)
-    places, weights = _filaments(strip.width_mm, strip.height_mm)
-    paths = _beside(strip.line, places)
+    places, weights = filaments(strip.width_mm, strip.height_mm)
+    paths = run_beside(strip.line, places)
     bundle = paths.reshape(-1, 4)
     each = np.repeat(weights, paths.shape[1])
     full = _smooth(flat, bundle, strip) @ each
@@ -173,7 +173,7 @@ def _distances(spots: Floats, segments: Floats) -> Floats:
 
 
 @cache
-def _filaments(width_mm: float, height_mm: float) -> tuple[Floats, Floats]:
+def filaments(width_mm: float, height_mm: float) -> tuple[Floats, Floats]:
     """Gauss points across the width: more for traces wide against their height."""
     if width_mm < 0.02 * height_mm:
         return np.zeros(1), np.ones(1)
@@ -181,7 +181,7 @@ def _filaments(width_mm: float, height_mm: float) -> tuple[Floats, Floats]:
     return nodes * width_mm / 2, weights / 2
 
 
-def _beside(line: Floats, offsets_mm: Floats) -> Floats:
+def run_beside(line: Floats, offsets_mm: Floats) -> Floats:
     """Run beside a polyline at signed distances to the left, all from its first to its last point.
 
     Returns their stretches, shape (offsets, p + 1, 4).
