@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import NamedTuple
 
 import numpy as np
@@ -20,7 +21,7 @@ from shapely import LineString, Polygon
 from splitcheck.loops.outlines import Ints
 from splitcheck.loops.streams import Flow, rises, smooth_part
 from splitcheck.planes.islands import box_size_mm
-from splitcheck.units import Floats
+from splitcheck.units import Floats, segments
 
 #: Smallest triangle, as a share of the larger side of the window and of the height of the trace;
 #: how fast they grow away from rims and trace; and the largest, as a share of the window.
@@ -196,7 +197,7 @@ def _planned(
     inner = _filled(near, field, gaps, laid, [c for c in circles if len(c)])
     parts = [*laid, *circles, inner]
     first = np.cumsum([0, *(len(part) for part in parts)])
-    numbers = [np.arange(a, b) for a, b in zip(first, first[1:], strict=False)]
+    numbers = [np.arange(a, b) for a, b in pairwise(first)]
     nodes = np.concatenate([np.reshape(part, (-1, 2)) for part in parts])
     closed = [_closed(nodes, own) for own in numbers[: len(laid)]]
     return _Plan(nodes, closed, owner, tuple(numbers[len(laid) : len(laid) + len(at)]), at)
@@ -225,7 +226,7 @@ class _Sizes:
         self.inner = max(_COARSE * box_size_mm(focus), least)
         ends = [shapely.get_coordinates(line) for line in lines] + list(rims)
         pieces = np.concatenate([np.stack([e[:-1], e[1:]], axis=1) for e in ends])
-        self.tree = shapely.STRtree(shapely.linestrings(pieces))
+        self.tree = shapely.STRtree(segments(pieces))
 
     def __call__(self, points: Floats) -> Floats:
         """Wanted size at points, mm."""
@@ -299,7 +300,7 @@ def _filled(
     size = field(points)
     for fixed in (rims, rings):
         if fixed:
-            tree = shapely.STRtree(shapely.points(np.concatenate(list(fixed))))
+            tree = shapely.STRtree([shapely.Point(at) for at in np.concatenate(list(fixed))])
             (which, _), apart = tree.query_nearest(
                 shapely.points(points), return_distance=True, all_matches=False
             )
@@ -326,7 +327,8 @@ def _triangles(flow: Flow, gaps: Sequence[Polygon], plan: _Plan) -> Sheet:
     nodes, rims = plan.nodes, list(plan.rims)
     used = Delaunay(nodes)
     for _ in range(_ROUNDS):
-        edges = np.unique(_keys(used.simplices[:, [0, 1, 2]], used.simplices[:, [1, 2, 0]]))
+        tri = used.simplices.astype(np.int64)
+        edges = np.unique(_keys(tri[:, [0, 1, 2]], tri[:, [1, 2, 0]]))
         extra: list[Floats] = []
         total = len(nodes)
         for k, rim in enumerate(rims):
@@ -361,7 +363,6 @@ def _triangles(flow: Flow, gaps: Sequence[Polygon], plan: _Plan) -> Sheet:
 
 def _keys(one: Ints, other: Ints) -> Ints:
     """A number for each pair of nodes, whichever comes first."""
-    one, other = one.astype(np.int64), other.astype(np.int64)
     keys: Ints = (np.minimum(one, other) << 32) + np.maximum(one, other)
     return keys
 
@@ -421,7 +422,8 @@ def _seeds(sheet: Sheet, pole: int, count: int) -> list[_Seed]:
         (found,) = np.nonzero((behind[:-1] <= level) & (level < behind[1:]))
         for k in found[:1].tolist():
             share = (level - behind[k]) / (behind[k + 1] - behind[k])
-            seeds.append(_Seed(outer[ends[k]][0], *ends[k], float(share)))
+            left, right = ends[k]
+            seeds.append(_Seed(outer[left, right][0], left, right, float(share)))
     return seeds
 
 
@@ -454,7 +456,7 @@ class _Ways:
             whole = rise[at] if forward else -rise[to]
             there = -rise[3 - at - to] if forward else rise[at]
             level = share * whole
-            # the level is between the left node and the one ahead, or else between that and the right
+            # between the left node and the one ahead, or else between that and the right
             if (level - there) * (level - whole) > 0 or whole == there:
                 share = level / there if there else 0.0
                 face, right = to, ahead

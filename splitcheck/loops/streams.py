@@ -191,7 +191,7 @@ def _of_strip(strip: Strip, points: Floats) -> Floats:
 
 
 def _of_line(strip: Strip, segments: Floats, points: Floats) -> Floats:
-    value, seen = wall_source(*points.T, segments, strip.height_mm, strip.above_mm)
+    value, seen = wall_source(points[:, 0], points[:, 1], segments, strip.height_mm, strip.above_mm)
     smooth: Floats = (value - strip.share / (2 * pi) * seen).sum(axis=1)
     return smooth
 

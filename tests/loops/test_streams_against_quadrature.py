@@ -35,6 +35,7 @@ SLOT = box(-0.3, -5, 0.3, 7)
 
 
 def solved(gaps: list[Polygon]) -> tuple[Solution, Flow]:
+    """The trace over gaps, and its return current."""
     solution = added(gaps, [TRACE], HEIGHT)
     flow = flow_of(solution, 0, [TRACE], HEIGHT)
     assert flow is not None
@@ -124,10 +125,9 @@ def test_all_of_the_return_passes_the_ends_of_the_slot() -> None:
     panel = int(np.argmin(np.abs(flow.mesh.centre[:, 1])))
     gap = smooth_part(flow, flow.mesh.points[panel]).mean()
     in_gap = flow.mesh.centre[panel]
-    past, under = (
-        rises(flow, *(np.array([p]) for p in (end, in_gap)), smooth_part(flow, end[None]), gap)[0]
-        for end in (np.array([0.0, far]), np.array([0.0, -far]))
-    )
+    ends = np.array([[0.0, far], [0.0, -far]])
+    inner = np.array([in_gap, in_gap])
+    past, under = rises(flow, ends, inner, smooth_part(flow, ends), np.full(2, gap))
     assert past - under == pytest.approx(1.0, abs=0.02)
     assert past < -under  # the near end is at -5
 
