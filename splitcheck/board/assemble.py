@@ -16,6 +16,7 @@ from splitcheck.board.listed import listed_names
 from splitcheck.board.negative import looks_negative, turn_round
 from splitcheck.board.nets import PlatedHole, join, name_nets
 from splitcheck.board.parts import CopperLayer, parts_of
+from splitcheck.board.populate import populate
 from splitcheck.board.stack import CopperEntry, Stack, default_build, from_entries, from_job
 from splitcheck.copper import gerber
 from splitcheck.copper.intake import Export
@@ -71,7 +72,10 @@ def assemble(
     holes, net_of = join(layers, parts, drilling.holes)
     listed = listed_names(export, layers, pads, drilling.holes)
     nets, naming = name_nets(parts, net_of, listed.names)
-    board = Board(export.name, edge, stack, layers, parts, net_of, nets, holes)
+    populated = populate(export, layers, net_of, drilling.holes, listed.pins, edge.bounds[:2])
+    board = Board(
+        export.name, edge, stack, layers, parts, net_of, nets, holes, populated.components
+    )
     return Assembled(
         board,
         (
@@ -81,6 +85,7 @@ def assemble(
             *edge_said,
             *drilling.assumptions,
             *listed.assumptions,
+            *populated.assumptions,
             *_off_copper(holes),
         ),
         (
@@ -90,6 +95,7 @@ def assemble(
             *outside,
             *drilling.remarks,
             *listed.remarks,
+            *populated.remarks,
             *naming,
         ),
         (f"Layer spacing: {stack.origin}", *drilling.facts, *_on_copper(holes)),

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -13,10 +14,22 @@ from splitcheck.board.traces import locate
 from splitcheck.copper import netlist
 from splitcheck.copper.holes import Hole
 from splitcheck.copper.intake import Export
+from splitcheck.copper.marks import Point
 from splitcheck.units import Floats
 
 #: Below this share of points on pads or holes a netlist belongs to something else.
 LEAST_SHARE = 0.5
+
+
+class ListedPin(NamedTuple):
+    """A pin of a component, moved onto the copper."""
+
+    component: str
+    pin: str | None
+    at: Point
+    bottom: bool
+    """Whether it is reached from the bottom."""
+    through: bool
 
 
 @dataclass(frozen=True, slots=True)
@@ -24,6 +37,8 @@ class Listed:
     """Names by part id, and what is to be said of finding them."""
 
     names: dict[int, tuple[str, ...]]
+    pins: tuple[ListedPin, ...]
+    """Pins of components, in file order."""
     remarks: tuple[str, ...]
     assumptions: tuple[str, ...]
 
@@ -47,6 +62,7 @@ def listed_names(
     names: dict[int, set[str]] = defaultdict(set)
     remarks: list[str] = []
     assumptions: list[str] = []
+    pins: list[ListedPin] = []
     centres = np.array([hole.path[0] for hole in holes]).reshape(-1, 2)
     for file in export.of_kind("netlist"):
         read = netlist.read(file.text, file.name)
@@ -58,11 +74,27 @@ def listed_names(
         remarks.append(fit.remark)
         for part, name in _landed(read, fit, layers):
             names[part].add(name)
+        pins.extend(_pins(read, fit))
     return Listed(
         {part: tuple(sorted(found)) for part, found in sorted(names.items())},
+        tuple(pins),
         tuple(remarks),
         tuple(assumptions),
     )
+
+
+def _pins(read: netlist.Netlist, fit: netlist.Alignment) -> list[ListedPin]:
+    return [
+        ListedPin(
+            point.component,
+            point.pin,
+            (round(point.x_mm + fit.dx_mm, 6), round(point.y_mm + fit.dy_mm, 6)),
+            bottom=not point.through and point.access not in (0, 1),
+            through=point.through,
+        )
+        for point in read.points
+        if point.component is not None
+    ]
 
 
 def _landed(

@@ -19,6 +19,12 @@ from splitcheck.units import Floats
 BridgeKind: TypeAlias = Literal["capacitor", "copper"]
 
 
+#: An island reached by a hole this near to a pad is always reached, mm; farther off only if
+#: within so many times the distance of the nearest (common practice, no source).
+NEAR_MM = 3.0
+MUCH_FARTHER = 1.5
+
+
 class Standing(NamedTuple):
     """A two-pad part between two islands."""
 
@@ -96,14 +102,21 @@ def _ways_down(
 def _reached(
     pin: Pin, ways: Mapping[int, list[tuple[Island, Floats]]], by_part: Mapping[int, Island]
 ) -> list[_Reach]:
-    """The islands that a pad reaches, by layer, each by the nearest hole."""
-    found = []
+    """The islands that a pad reaches, by layer, each by the nearest hole.
+
+    Left out are those whose nearest hole is much farther off than the nearest of all: the current
+    comes down there before, and goes on by other holes.
+    """
+    met = []
+    if pin.part in by_part:
+        met.append((0.0, _Reach(by_part[pin.part], pin.at, BARREL_MM)))
     for island, holes in ways.get(pin.part, ()):
         far = np.hypot(holes[:, 0] - pin.at[0], holes[:, 1] - pin.at[1])
-        x, y, wide = holes[int(np.argmin(far))].tolist()
-        found.append(_Reach(island, (x, y), wide))
-    if pin.part in by_part:
-        found.append(_Reach(by_part[pin.part], pin.at, BARREL_MM))
+        nearest = int(np.argmin(far))
+        x, y, wide = holes[nearest].tolist()
+        met.append((float(far[nearest]), _Reach(island, (x, y), wide)))
+    enough = max(NEAR_MM, MUCH_FARTHER * min((far for far, _ in met), default=0.0))
+    found = [reach for far, reach in met if far <= enough]
     return sorted(found, key=lambda reach: (reach.island.layer, reach.island.id))
 
 
