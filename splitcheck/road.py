@@ -9,7 +9,7 @@ import shutil
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
 from time import perf_counter
@@ -17,6 +17,7 @@ from typing import Any, TypeAlias
 
 from splitcheck.board.assemble import Assembled, assemble
 from splitcheck.board.layers import CopperFile, ReadLayer, read_layer
+from splitcheck.board.pairs import Pair, find_pairs
 from splitcheck.board.stack import read_stack_file
 from splitcheck.copper.intake import Export, open_export
 from splitcheck.errors import SplitcheckError
@@ -122,13 +123,14 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judging: b
         tracks = lay_tracks(assembled, options)
         graph = join_islands(assembled.board, planes)
         scene = set_scene(assembled, planes, graph, options)
+        scene = replace(scene, pairs=pair_up(scene, tracks))
     judged = Judged((), (), {})
     if judging:
         with clock.stage("crossings"):
             crossings, bare = cross(tracks, planes, Spread(options.jobs, few=2))
         with clock.stage("loops"):
             judged = judge(scene, crossings, bare, Spread(options.jobs))
-    seen = Seen(export, assembled, planes, tracks)
+    seen = Seen(export, assembled, planes, tracks, scene.pairs)
     return Walked(summarise(seen, judged, clock.seconds()), seen, scene, judged)
 
 
@@ -280,6 +282,12 @@ def set_scene(
         graph,
         options.min_nh,
     )
+
+
+def pair_up(scene: Scene, tracks: Sequence[Tracks]) -> tuple[Pair, ...]:
+    """Find the differential pairs among the traces that are judged."""
+    nets = {net for layer in tracks for net in layer.net.tolist()}
+    return find_pairs(scene.board, nets, scene.rules.pairs)
 
 
 def write_demo(folder: Path) -> Path:

@@ -31,6 +31,7 @@ from splitcheck.verdict.findings import (
     Kind,
     Source,
 )
+from splitcheck.verdict.pairs import with_pairs
 from splitcheck.verdict.places import by_place, fingerprint, with_ids, with_shares
 from splitcheck.verdict.reason import reason
 from splitcheck.verdict.scene import Judged, Scene, Weighed
@@ -87,7 +88,7 @@ def judge(
             findings.append(replace(finding, id=str(number)))
     findings.extend(bare_findings(scene, bare, dropped))
     counts = tuple(Count(what, number) for what, number in sorted(dropped.items()))
-    numbered, renamed = with_ids(with_shares(by_place(findings)))
+    numbered, renamed = with_ids(with_shares(with_pairs(scene, by_place(findings))))
     behind = {new: weighed[int(old)] for old, new in renamed.items()}
     return Judged(numbered, counts, behind)
 

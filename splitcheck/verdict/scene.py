@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from splitcheck.board.board import Board
+from splitcheck.board.pairs import Pair
 from splitcheck.loops.bridges import IslandGraph
 from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.terrain import Terrain
@@ -28,6 +29,8 @@ class Scene:
     drives: tuple[Class, ...] = ()
     """The class of each net, by its number, with what is known of the net alone; empty: every net
     as by default."""
+    pairs: tuple[Pair, ...] = ()
+    """The differential pairs among the nets that are judged."""
 
     def drive_of(self, net: int) -> Class:
         """The class of a net: what drives it and what it bears."""

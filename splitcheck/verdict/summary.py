@@ -23,9 +23,9 @@ from splitcheck.verdict.findings import (
     Report,
     Role,
 )
+from splitcheck.verdict.journey import MOST_LEGS, Journeys, journeys, sum_nh
 from splitcheck.verdict.pairs import pair_rows
 from splitcheck.verdict.rules import DEFAULT_CLASS, Class
-from splitcheck.verdict.journey import MOST_LEGS, Journeys, journeys, sum_nh
 from splitcheck.verdict.scene import Judged
 
 #: A layer is a plane from this share of the board on, a signal layer below the second, else mixed.
@@ -78,7 +78,7 @@ def summarise(
             for plane in seen.planes
             for island in plane.islands
         ),
-        nets=_nets(board, seen.tracks, judged.findings, ways),
+        nets=_nets(board, seen, judged.findings, ways),
         findings=judged.findings,
         counts=(*_exempt(board), *judged.counts, *_not_told(ways)),
         seconds=seconds,
@@ -159,17 +159,19 @@ def _not_told(ways: Journeys) -> tuple[Count, ...]:
 
 
 def _nets(
-    board: Board, tracks: Sequence[Tracks], findings: Sequence[Finding], ways: Journeys
+    board: Board, seen: Seen, findings: Sequence[Finding], ways: Journeys
 ) -> tuple[NetRow, ...]:
     length: dict[str, float] = defaultdict(float)
     layers: dict[str, set[int]] = defaultdict(set)
-    for layer in tracks:
+    for layer in seen.tracks:
         for net, millimetres in zip(layer.net.tolist(), layer.length_mm.tolist(), strict=True):
             length[board.nets[net].name] += millimetres
             layers[board.nets[net].name].add(layer.layer)
     by_net: dict[str, list[Finding]] = defaultdict(list)
     for finding in findings:
         by_net[finding.net].append(finding)
+    legs = [row.nets for row in pair_rows(board, seen.pairs)]
+    partner = dict([*legs, *((other, one) for one, other in legs)])
     rows = []
     for name in sorted(length):
         found = by_net.get(name, [])
@@ -184,6 +186,7 @@ def _nets(
                 max(added) if added else None,
                 journey=ways.legs.get(name, ()),
                 sum_nh=sum_nh(found),
+                pair=partner.get(name),
             )
         )
     return tuple(rows)
