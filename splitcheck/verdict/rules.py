@@ -11,6 +11,9 @@ from splitcheck.verdict.findings import Kind, Point, Source
 #: What a supply plane as the reference of a signal is taken for.
 SupplyReference: TypeAlias = Literal["allowed", "discouraged", "forbidden"]
 
+#: How far from its place a waiver reaches, mm, if it does not say.
+WAIVED_RADIUS_MM = 2.0
+
 
 @dataclass(frozen=True, slots=True)
 class Class:
@@ -31,8 +34,12 @@ class Class:
     warning_nh: float | None = None
     note_mv: float = 0.0
     """Below this noise a place is counted, not listed."""
-    patterns: tuple[str, ...] = ()
-    """Names of its nets: see ``names.py`` for how they are matched."""
+    words: tuple[str, ...] = ()
+    """Patterns of words in the names of its nets: see ``patterns.py``."""
+    names: tuple[str, ...] = ()
+    """Patterns of whole names."""
+    unless: tuple[str, ...] = ()
+    """Patterns of words: what has one of them in its name is not of this class."""
     differential: bool = False
     """Whether its nets come as pairs."""
     exempt: bool = False
@@ -51,6 +58,19 @@ DEFAULT_CLASS = Class("default", 1.0, 1650.0, 50.0, 100.0, 33.0)
 
 
 @dataclass(frozen=True, slots=True)
+class Assignment:
+    """What a board's rules say of one net, or of all nets of a pattern."""
+
+    key: str
+    """A net's very name, or a pattern of names."""
+    source: Source
+    net_class: str | None = None
+    rise_ns: float | None = None
+    current_ma: float | None = None
+    """Step of the current that its driver launches, mA: the wave, by the impedance of the line."""
+
+
+@dataclass(frozen=True, slots=True)
 class Waiver:
     """Findings that somebody answers for: they stay visible and do not count."""
 
@@ -60,7 +80,7 @@ class Waiver:
     """Pattern of net names; None: any."""
     kind: Kind | None = None
     at_mm: Point | None = None
-    radius_mm: float = 2.0
+    radius_mm: float = WAIVED_RADIUS_MM
     fingerprint: str | None = None
     until: date | None = None
     """The last day it holds; None: for ever."""
@@ -71,7 +91,10 @@ class Rules:
     """How a board is judged: the shipped rules, with what its own file changes."""
 
     classes: tuple[Class, ...] = (DEFAULT_CLASS,)
-    """In the order in which they are asked; the first that matches a net has it."""
+    """In the order in which they are asked; the first that matches a name has it. The one called
+    ``default`` has all others."""
+    assignments: tuple[Assignment, ...] = ()
+    """What the board's own file says of its nets; it goes before what names say."""
     change_mm: float = 1.27
     """A return via at most this far from a via that changes planes serves it, mm."""
     change_warning_nh: float = 0.5
@@ -88,6 +111,11 @@ class Rules:
     capacitors: tuple[str, ...] = ()
     """References of two-pad parts that are capacitors, whatever they are called."""
     waivers: tuple[Waiver, ...] = ()
+
+    @property
+    def default(self) -> Class:
+        """The class of nets of which nothing is known."""
+        return next((one for one in self.classes if one.name == "default"), DEFAULT_CLASS)
 
     def change_mm_of(self, net_class: Class) -> float:
         """How far a return via may be for a class, mm."""
