@@ -6,10 +6,13 @@ from collections.abc import Sequence
 from dataclasses import replace
 from datetime import date
 from math import dist
+from typing import Literal, TypeAlias
 
 from splitcheck.verdict.findings import Finding, WaiverRow
 from splitcheck.verdict.patterns import Names
 from splitcheck.verdict.rules import Waiver
+
+_State: TypeAlias = Literal["used", "expired", "unmatched"]
 
 
 def waive(
@@ -49,7 +52,7 @@ def waive(
             if waived[i].waived is None:
                 waived[i] = replace(waived[i], waived=waiver.reason)
         until = None if waiver.until is None else waiver.until.isoformat()
-        state = "expired" if expired else "used" if fitting else "unmatched"
+        state: _State = "expired" if expired else "used" if fitting else "unmatched"
         rows.append(WaiverRow(waiver.reason, until, len(fitting), state, waiver.source))
     return tuple(waived), tuple(rows)
 
