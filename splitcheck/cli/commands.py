@@ -7,7 +7,6 @@ from __future__ import annotations
 
 import shlex
 import sys
-from math import isfinite
 from pathlib import Path
 from typing import Annotated
 
@@ -28,9 +27,9 @@ from splitcheck.cli.options import (
     Quiet,
     Stack,
     Top,
+    check_min_nh,
     ending,
 )
-from splitcheck.errors import SplitcheckError
 
 app = typer.Typer(
     name="splitcheck",
@@ -91,10 +90,7 @@ def rank(
     from splitcheck import road
     from splitcheck.report import terminal
 
-    if not isfinite(min_nh) or min_nh < 0:
-        raise SplitcheckError(
-            f"--min-nh {min_nh}", "this is no inductance", "give 0 or more, in nH"
-        )
+    check_min_nh(min_nh)
     wanted = targets.parse(out or (), path)
     options = road.Options(tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs)
     with streams.progress_bar(quiet=quiet) as progress:

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from math import isfinite
 from pathlib import Path
 from typing import Annotated, Literal, TypeAlias
 
 import typer
 
 from splitcheck.cli import streams
+from splitcheck.errors import SplitcheckError
 
 FailAt: TypeAlias = Literal["error", "warning", "note", "never"]
 
@@ -24,6 +26,14 @@ def ending(*examples: str) -> str:
     """What stands under a help text; the backspace tells the formatter to keep the line ends."""
     shown = "".join(f"\n  {example}" for example in examples)
     return f"\b\nExamples:{shown}\n\n\b{EXIT_CODES}"
+
+
+def check_min_nh(min_nh: float) -> None:
+    """Complain of a threshold that is no inductance."""
+    if not isfinite(min_nh) or min_nh < 0:
+        raise SplitcheckError(
+            f"--min-nh {min_nh}", "this is no inductance", "give 0 or more, in nH"
+        )
 
 
 BoardPath = Annotated[

@@ -11,7 +11,7 @@ from splitcheck.cli import streams, targets
 from splitcheck.cli.options import FailAt
 from splitcheck.report import locate, tally
 from splitcheck.verdict.changes import Comparison
-from splitcheck.verdict.findings import LEVELS, Level, Report
+from splitcheck.verdict.findings import LEVELS, Report
 
 #: Columns of a text report that goes to a file.
 FILE_WIDTH = 100
@@ -91,9 +91,7 @@ def exit_code(report: Report, fail_at: FailAt, comparison: Comparison | None = N
     """
     if fail_at == "never":
         return 0
-    counted: tuple[Level, ...] = LEVELS[: LEVELS.index(fail_at) + 1]
-    standing = tally.standing(report.findings)
     if comparison is not None:
-        changes = comparison.by_id()
-        standing = tuple(f for f in standing if changes[f.id].verdict in {"new", "worse"})
-    return int(any(finding.level in counted for finding in standing))
+        return int(bool(comparison.failing(fail_at)))
+    counted = LEVELS[: LEVELS.index(fail_at) + 1]
+    return int(any(finding.level in counted for finding in tally.standing(report.findings)))

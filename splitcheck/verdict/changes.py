@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from math import cos, degrees, hypot, radians, sin
 from typing import Literal, TypeAlias
 
-from splitcheck.verdict.findings import Finding, Kind, Point, Report
+from splitcheck.verdict.findings import LEVELS, Finding, Kind, Level, Point, Report
 
 Verdict: TypeAlias = Literal["new", "worse", "better", "gone", "unchanged"]
 
@@ -100,3 +100,12 @@ class Comparison:
     def of(self, *verdicts: Verdict) -> tuple[Change, ...]:
         """All changes with one of these verdicts, in order."""
         return tuple(change for change in self.changes if change.verdict in verdicts)
+
+    def failing(self, at: Level) -> tuple[Change, ...]:
+        """What fails a gate: new or worse, of a level or one above it, and not waived."""
+        counted = LEVELS[: LEVELS.index(at) + 1]
+        return tuple(
+            change
+            for change in self.of("new", "worse")
+            if change.finding.level in counted and change.finding.waived is None
+        )
