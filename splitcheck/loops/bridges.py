@@ -20,8 +20,9 @@ from splitcheck.units import Floats
 #: that bridge them. What two-pad parts join is in a graph beside it: see ``over_parts``.
 IslandGraph: TypeAlias = "nx.Graph[str]"
 
-#: Key of the graph of two-pad parts among the attributes of an island graph.
+#: Keys of the graphs of two-pad parts, and of all bridges, among the attributes of an island graph.
 _PARTS = "parts"
+_ALL = "all"
 
 
 class PartBridge(NamedTuple):
@@ -79,9 +80,7 @@ def join_islands(board: Board, planes: Sequence[Plane]) -> IslandGraph:
                 places[one, other].append((*hole.at, hole.hole.diameter_mm))
     for (one, other), found in sorted(places.items()):
         _put_holes(graph, one, other, found)
-    graph.graph[_PARTS] = _part_graph(
-        _bridge(standing) for standing in standing_between(board, by_part)
-    )
+    _put_parts(graph, (_bridge(standing) for standing in standing_between(board, by_part)))
     return graph
 
 
@@ -101,15 +100,16 @@ def _bridge(standing: Standing) -> PartBridge:
     )  # fmt: skip
 
 
-def _part_graph(bridges: Iterable[PartBridge]) -> IslandGraph:
-    """Islands that two-pad parts join; edges carry ``parts``, seen from the lesser id, sorted."""
+def _put_parts(graph: IslandGraph, bridges: Iterable[PartBridge]) -> None:
+    """Lay the graph of parts beside that of holes; edges carry them, seen from the lesser id."""
     found: dict[tuple[str, str], list[PartBridge]] = defaultdict(list)
     for bridge in bridges:
         found[bridge.one, bridge.other].append(bridge)
-    graph: IslandGraph = nx.Graph()
-    for (one, other), parts in sorted(found.items()):
-        graph.add_edge(one, other, parts=tuple(sorted(parts)))
-    return graph
+    parts: IslandGraph = nx.Graph()
+    for (one, other), some in sorted(found.items()):
+        parts.add_edge(one, other, parts=tuple(sorted(some)))
+    graph.graph[_PARTS] = parts
+    graph.graph[_ALL] = nx.Graph([*graph.edges, *parts.edges])
 
 
 def bridges_between(graph: IslandGraph, one: str, other: str) -> Floats:
@@ -124,6 +124,12 @@ def over_parts(graph: IslandGraph) -> IslandGraph:
     """The graph of islands that two-pad parts join; it lacks islands that no part joins."""
     parts: IslandGraph | None = graph.graph.get(_PARTS)
     return nx.Graph() if parts is None else parts
+
+
+def all_bridges(graph: IslandGraph) -> IslandGraph:
+    """The graph of islands joined by anything; it lacks islands that nothing joins."""
+    both: IslandGraph = graph.graph.get(_ALL, graph)
+    return both
 
 
 def parts_between(graph: IslandGraph, one: str, other: str) -> tuple[PartBridge, ...]:
@@ -182,6 +188,7 @@ def with_via(
             old = np.column_stack([edge["at"], edge["wide_mm"]]).tolist() if edge else []
             holes = [(x, y, wide) for x, y, wide in old]
             _put_holes(more, one, other, [*holes, (*at, wide_mm)])
+    _put_parts(more, all_parts(graph))
     return more
 
 
@@ -224,8 +231,7 @@ def with_capacitor(
     middle = ((at_one[0] + at_other[0]) / 2, (at_one[1] + at_other[1]) / 2)
     new = PartBridge("capacitor", ref, one, other, at_one, at_other, middle, layer, mounted_nh)
     more: IslandGraph = graph.copy()
-    old = list(all_parts(graph))
-    more.graph[_PARTS] = _part_graph([*old, new if one < other else new.turned()])
+    _put_parts(more, [*all_parts(graph), new if one < other else new.turned()])
     return more
 
 

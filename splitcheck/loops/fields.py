@@ -16,12 +16,15 @@ from splitcheck.board.board import Board
 from splitcheck.copper.marks import Point
 from splitcheck.errors import SplitcheckError
 from splitcheck.loops import solve as engine
-from splitcheck.loops.bridges import IslandGraph, bridges_between
+from splitcheck.loops.bridges import IslandGraph, PartBridge, bridges_between, parts_between
 from splitcheck.loops.estimate import Inductance, via_pair_nh
+from splitcheck.loops.mounted import BARREL_MM, LOWEST_MM, STRIP_MM
 from splitcheck.loops.stray import stray_db
-from splitcheck.loops.ways import Route, Way
+from splitcheck.loops.streams import Flow, flow_of, over_whole_plane
+from splitcheck.loops.ways import Route, Way, to_point
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Gap, Plane, box_size_mm
+from splitcheck.units import Floats
 
 #: The window of a solve reaches this much beyond the ways round the gap: in mm and as a share.
 BEYOND_MM = 2.0
@@ -50,10 +53,10 @@ MOST_COARSER = 3.0
 MOST_CORNERS = 4000
 #: Gaps smaller than the height do not matter unless this many heights near, or crossed.
 NEAR_HEIGHTS = 2.0
-#: Barrel of a plated hole whose drill is not known, mm (common practice, no source).
-VIA_MM = 0.3
 #: So many of the nearest vias on either side of a gap are bridges, besides that of the way.
 MOST_VIAS = 10
+#: A trace that a window cuts off ends so far inside it, mm.
+ON_RIM_MM = 0.01
 #: Width taken for copper that a way borrows on the trace's side, mm.
 STRAP_MM = 1.0
 
@@ -92,13 +95,33 @@ def can_solve(task: Task) -> bool:
     """Whether the solve sees the way that the return takes.
 
     A gap inside one island always has a way round in the plane. Where the islands are cut apart,
-    the bridges carry all of the return: the solve then knows vias to the plane beyond, and nothing
-    else well enough.
+    the bridges carry all of the return: the solve then knows vias and capacitors to the plane
+    beyond, capacitors from one island straight to the other, and nothing else well enough.
     """
     if task.crossing.islands[0] == task.crossing.islands[1]:
         return True
     best = task.route.best
-    return best is not None and len(best.bridges) == 2 and best.bridge_layer == task.beyond
+    if best is None:
+        return False
+    if _is_straight(best):
+        return any(_as_strap(task, part) for part in best.capacitors)
+    return (
+        len(best.bridges) + len(best.capacitors) == 2
+        and task.beyond is not None
+        and best.bridge_layer == task.beyond
+    )
+
+
+def _is_straight(way: Way) -> bool:
+    """Whether a way goes over one part from the one island to the other."""
+    return len(way.capacitors) == 1 and not way.bridges
+
+
+def _as_strap(task: Task, part: PartBridge) -> bool:
+    """Whether a part stands on a side of the plane where nothing is between it and the plane."""
+    plane, layer = task.crossing.plane, part.layer
+    walls = [wall for wall in (task.beyond, task.other) if wall is not None]
+    return not any(plane < wall <= layer or layer <= wall < plane for wall in walls)
 
 
 def cluster(tasks: Sequence[Task]) -> tuple[tuple[Task, ...], ...]:
@@ -204,6 +227,36 @@ class Fields:
             if not solution.cut_off[i] and isfinite(float(solution.added_nh[i, i]))
         }
 
+    def flow(self, task: Task) -> Flow | None:
+        """The return current of one crossing, solved by itself.
+
+        Returns
+        -------
+        The flow; None where `solve` leaves the crossing out as well.
+        """
+        crossing = task.crossing
+        traces = [_trace(task, self.planes[crossing.plane].gaps[crossing.gap].shape)]
+        bridges = self._bridges([task])
+        solution = self._solution([task], traces, bridges)
+        if solution is None or solution.coarser > MOST_COARSER:
+            return None
+        return flow_of(
+            solution,
+            0,
+            traces,
+            task.height_mm,
+            beyond_mm=self._apart_mm(crossing.plane, task.beyond),
+            above_mm=self._apart_mm(crossing.plane, task.other),
+            bridges=bridges,
+        )
+
+    def undisturbed(self, task: Task) -> Flow:
+        """The return current of the trace of a crossing, were the plane whole."""
+        crossing = task.crossing
+        trace = _trace(task, self.planes[crossing.plane].gaps[crossing.gap].shape)
+        above_mm = self._apart_mm(crossing.plane, task.other)
+        return over_whole_plane(trace, task.height_mm, above_mm)
+
     def _solution(
         self,
         tasks: Sequence[Task],
@@ -222,6 +275,11 @@ class Fields:
             gaps, ends = self._gaps(tasks, window, lines, loose=True)
         if _too_ragged(gaps):
             return None
+        cut = any(_parts_islands(task) for task in tasks)
+        if cut:
+            traces = [
+                _within(trace, task, window) for trace, task in zip(traces, tasks, strict=True)
+            ]
         try:
             return engine.added(
                 gaps,
@@ -230,7 +288,7 @@ class Fields:
                 beyond_mm=self._apart_mm(plane.layer, tasks[0].beyond),
                 above_mm=self._apart_mm(plane.layer, tasks[0].other),
                 bridges=bridges,
-                outside=_outside(plane, window),
+                outside=_outside(plane, window, cut=cut),
                 ends=ends,
                 disjoint=True,
             )
@@ -293,30 +351,36 @@ class Fields:
         return MultiPolygon(list(tree.geometries[np.sort(tree.query(window))]))
 
     def _bridges(self, tasks: Sequence[Task]) -> list[engine.ViaBridge | engine.Strap]:
-        """Bridges that the ways round can take: vias to the plane beyond, or straps.
+        """Bridges that the ways round can take: vias and parts to the plane beyond, or straps.
 
         A plane on the trace's other side is in the solve already and needs no strap.
         """
         crossing = tasks[0].crossing
-        vias: dict[Point, float] = {}
+        vias: dict[Point, engine.ViaBridge] = {}
         straps: dict[tuple[Point, ...], engine.Strap] = {}
         for task in tasks:
             for way in (task.route.left, task.route.right):
-                if way is None or len(way.bridges) != 2:
+                if way is None or len(way.bridges) + len(way.capacitors) > 2:
                     continue
-                if way.bridge_layer == task.beyond:
+                if _is_straight(way):
+                    straps.update(self._straight_straps(task))
+                elif len(way.bridges) + len(way.capacitors) < 2:
+                    continue
+                elif way.bridge_layer == task.beyond:
                     vias.update(self._vias_like(task, way))
+                elif way.capacitors:
+                    continue
                 elif way.bridge_layer != task.other and (
                     (way.bridge_layer > crossing.plane) == (crossing.layer > crossing.plane)
                 ):
                     straps[way.bridges] = self._strap(crossing, way.bridges, way.bridge_layer)
         return [
             *(strap for _, strap in sorted(straps.items())),
-            *(engine.ViaBridge(shapely.Point(at), wide_mm) for at, wide_mm in sorted(vias.items())),
+            *(via for _, via in sorted(vias.items())),
         ]
 
-    def _vias_like(self, task: Task, way: Way) -> dict[Point, float]:
-        """The vias of a way and the nearest others that join the same islands; diameters."""
+    def _vias_like(self, task: Task, way: Way) -> dict[Point, engine.ViaBridge]:
+        """The vias and parts of a way and the nearest others that join the same islands."""
         crossing = task.crossing
         plane = self.planes[crossing.plane]
         borrowed = {
@@ -324,26 +388,61 @@ class Fields:
             for island in self.planes[way.bridge_layer].islands
             if island.net_name == way.bridge_net
         }
-        found = dict.fromkeys(way.bridges, VIA_MM)
-        for number, at, bridge in zip(
-            crossing.islands, (crossing.before, crossing.after), way.bridges, strict=True
-        ):
+        found: dict[Point, engine.ViaBridge] = {}
+        for number, at in zip(crossing.islands, (crossing.before, crossing.after), strict=True):
             island = plane.islands[number].id
-            for other in sorted(borrowed & set(self.graph.adj[island])):
+            for other in sorted(borrowed):
                 places = bridges_between(self.graph, island, other)
-                wide_mm = self.graph.edges[island, other]["wide_mm"]
-                far = np.hypot(*(places - np.asarray(at)).T)
-                order = np.argsort(far, kind="stable")[:MOST_VIAS]
-                own = np.hypot(*(places - np.asarray(bridge)).T)
-                for i in {*order.tolist(), *np.flatnonzero(own == 0).tolist()}:
-                    found[float(places[i, 0]), float(places[i, 1])] = float(wide_mm[i])
+                for i in _nearest(places, at, way.bridges):
+                    wide_mm = float(self.graph.edges[island, other]["wide_mm"][i])
+                    found.setdefault(to_point(places[i]), _via(places[i], wide_mm))
+                parts = parts_between(self.graph, island, other)
+                places = np.array([part.at_one for part in parts]).reshape(-1, 2)
+                for i in _nearest(places, at, [part.at_one for part in way.capacitors]):
+                    found.setdefault(
+                        to_point(places[i]), _via(places[i], BARREL_MM, parts[i].mounted_nh)
+                    )
+        return found
+
+    def _straight_straps(self, task: Task) -> dict[tuple[Point, ...], engine.Strap]:
+        """The parts from one island straight to the other that are nearest to the crossing."""
+        crossing = task.crossing
+        one, other = (self.planes[crossing.plane].islands[i].id for i in crossing.islands)
+        parts = [part for part in parts_between(self.graph, one, other) if _as_strap(task, part)]
+        far = [
+            float(np.hypot(part.at[0] - crossing.at[0], part.at[1] - crossing.at[1]))
+            for part in parts
+        ]
+        found: dict[tuple[Point, ...], engine.Strap] = {}
+        for i in np.argsort(far, kind="stable")[:MOST_VIAS].tolist():
+            part = parts[i]
+            apart = (
+                0.0
+                if part.layer == crossing.plane
+                else self.board.stack.height_mm(crossing.plane, part.layer)
+            )
+            ends = (part.at_one, part.at_other)
+            found[ends] = engine.Strap(
+                LineString(ends), STRIP_MM, max(apart, LOWEST_MM), part.mounted_nh
+            )
         return found
 
     def _strap(self, crossing: Crossing, ends: tuple[Point, ...], layer: int) -> engine.Strap:
         """A way over copper on the trace's side of the plane."""
         height = self.board.stack.height_mm(crossing.plane, layer)
         line = LineString(ends)
-        return engine.Strap(line, STRAP_MM, height, via_pair_nh(line.length, VIA_MM, height))
+        return engine.Strap(line, STRAP_MM, height, via_pair_nh(line.length, BARREL_MM, height))
+
+
+def _nearest(places: Floats, at: Point, always: Sequence[Point]) -> list[int]:
+    """Rows of the places nearest to one, and of some that are always wanted."""
+    far = np.hypot(*(places - np.asarray(at)).T)
+    wanted = np.flatnonzero([tuple(place) in always for place in places.tolist()])
+    return sorted({*np.argsort(far, kind="stable")[:MOST_VIAS].tolist(), *wanted.tolist()})
+
+
+def _via(place: Floats, wide_mm: float, mounted_nh: float = 0.0) -> engine.ViaBridge:
+    return engine.ViaBridge(shapely.Point(place), wide_mm, mounted_nh)
 
 
 def _stray_db(
@@ -360,11 +459,34 @@ def _stray_db(
     return stray_db(solution, number, trace, task.height_mm, at, bridges=bridges)
 
 
-def _outside(plane: Plane, window: Polygon) -> Polygon | None:
-    """What the plane's layer may hold copper in, if the window looks beyond it."""
+def _within(trace: engine.TraceOver, task: Task, window: Polygon) -> engine.TraceOver:
+    """The stretch of a trace round its run that lies in the window."""
+    inside = shapely.intersection(trace.line, window.buffer(-ON_RIM_MM, join_style="mitre"))
+    pieces = [piece for piece in shapely.get_parts(inside) if isinstance(piece, LineString)]
+    run = shapely.Point(task.crossing.at)
+    line = min(pieces, key=lambda piece: piece.distance(run), default=trace.line)
+    return engine.TraceOver(line, trace.width_mm)
+
+
+def _parts_islands(task: Task) -> bool:
+    one, other = task.crossing.islands
+    return one != other
+
+
+def _outside(plane: Plane, window: Polygon, *, cut: bool) -> Polygon | None:
+    """What the plane's layer may hold copper in, if the window looks beyond it.
+
+    Where the gap cuts islands apart it ends with the window: else the copper that the solve takes
+    to be beyond the window would join them.
+    """
     if not plane.gaps or not plane.gaps[0].open:
-        return None
+        return window if cut else None
     frame: Polygon = shapely.box(*plane.gaps[0].shape.bounds)
+    if cut:
+        return shapely.box(
+            *np.maximum(frame.bounds, window.bounds)[:2],
+            *np.minimum(frame.bounds, window.bounds)[2:],
+        )
     return None if frame.contains_properly(window) else frame
 
 
@@ -436,7 +558,7 @@ def _own_stretch(task: Task, gap: Polygon) -> LineString:
     mine: list[tuple[float, float]] = []
     others: list[tuple[float, float]] = []
     for part in getattr(bare, "geoms", [bare]):
-        if part.geom_type != "LineString":
+        if part.geom_type != "LineString" or part.is_empty:
             continue
         ends = sorted(
             stretch.project(shapely.Point(end)) for end in (part.coords[0], part.coords[-1])

@@ -11,7 +11,8 @@ import shapely
 
 from splitcheck.copper.marks import Point
 from splitcheck.loops.borrowed import add_borrowed_ways
-from splitcheck.loops.bridges import IslandGraph, bridges_between
+from splitcheck.loops.bridges import IslandGraph, bridges_between, joined_by_copper
+from splitcheck.loops.coupled import add_coupled_ways, coupled_chain
 from splitcheck.loops.taut import shortest
 from splitcheck.loops.terrain import Terrain, nearest_on
 from splitcheck.loops.ways import OTHER_SIDE, Route, Way, heading, side_of, to_point, wall
@@ -50,11 +51,14 @@ def find_route(
     add_borrowed_ways(sides, crossing, planes, terrains, graph)
     if one == other and not sides:
         _add_rim_ways(sides, crossing, plane)
-    joined = one == other or nx.has_path(graph, one, other)
-    if joined and not sides and one != other:
-        chain = _chain(graph, one, other, start, goal)
-        return Route(straight, chain, None, joined)
-    return Route(straight, sides.get(1), sides.get(-1), joined)
+    if one == other:
+        return Route(straight, sides.get(1), sides.get(-1), joined=True)
+    if not sides and joined_by_copper(graph, one, other):
+        sides[1] = _chain(graph, one, other, start, goal)
+    add_coupled_ways(sides, crossing, (one, other), terrains, graph)
+    chain = None if sides else coupled_chain(graph, one, other, start, goal)
+    left = sides.get(1, chain)
+    return Route(straight, left, sides.get(-1), joined=bool(sides) or chain is not None)
 
 
 def _add_own_ways(sides: dict[int, Way], crossing: Crossing, terrain: Terrain) -> None:
@@ -145,7 +149,7 @@ def _add_rim_ways(sides: dict[int, Way], crossing: Crossing, plane: Plane) -> No
         return
 
 
-def _chain(graph: IslandGraph, one: str, other: str, start: Point, goal: Point) -> Way | None:
+def _chain(graph: IslandGraph, one: str, other: str, start: Point, goal: Point) -> Way:
     """A way over three or more bridges: island by island, the nearest bridge each time."""
     ids = nx.shortest_path(graph, one, other)
     at, length, path = np.asarray(start), 0.0, [start]

@@ -73,10 +73,12 @@ class TraceOver:
 
 @dataclass(frozen=True, slots=True)
 class ViaBridge:
-    """A plated hole that joins this plane and the plane beyond."""
+    """A plated hole that joins this plane and the plane beyond, or a part that does."""
 
     at: Point
     diameter_mm: float
+    mounted_nh: float = 0.0
+    """Inductance of a part in its way, as mounted; 0 for a mere hole."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -332,6 +334,7 @@ def _job(
         own[len(straps) :, len(straps) :] = via_matrix(
             places, [b.diameter_mm for b in chosen], beyond_mm
         )
+        own[len(straps) :, len(straps) :] += np.diag([b.mounted_nh for b in chosen])
     for k, short in enumerate(scene.cut_short_mm):
         if scene.lines[k] is None:
             remarks.append(f"trace {k + 1} is nowhere over copper of this plane")

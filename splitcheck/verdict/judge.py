@@ -18,10 +18,11 @@ from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.fields import Field, Fields, Task, can_solve, cluster
 from splitcheck.loops.routes import find_route
 from splitcheck.loops.ways import Route, Way
+from splitcheck.planes.changes import PlaneChange
 from splitcheck.planes.crossings import BareTrace, Crossing
 from splitcheck.planes.islands import Gap
 from splitcheck.verdict import around
-from splitcheck.verdict.around import exempt, share_of, too_small
+from splitcheck.verdict.around import LONG_RUN, exempt, share_of, too_small
 from splitcheck.verdict.bare import bare_findings
 from splitcheck.verdict.findings import (
     BridgeUse,
@@ -33,6 +34,12 @@ from splitcheck.verdict.findings import (
 )
 from splitcheck.verdict.pairs import with_pairs
 from splitcheck.verdict.places import by_place, fingerprint, with_ids, with_shares
+from splitcheck.verdict.plane_changes import (
+    Case,
+    change_findings,
+    from_leaving,
+    from_long_runs,
+)
 from splitcheck.verdict.reason import reason
 from splitcheck.verdict.scene import Judged, Scene, Weighed
 from splitcheck.verdict.score import level, noise_mv
@@ -54,6 +61,8 @@ def judge(
     crossings: Sequence[Crossing],
     bare: Sequence[BareTrace],
     spread: Spread = map,
+    *,
+    changes: Sequence[PlaneChange] = (),
 ) -> Judged:
     """Turn crossings and bare traces into findings, worst first.
 
@@ -65,6 +74,8 @@ def judge(
         What the traces run over.
     spread
         How to call a function on many items: in turn, or on several cores.
+    changes
+        Plated holes where the return changes planes.
 
     Returns
     -------
@@ -72,8 +83,11 @@ def judge(
     """
     dropped: dict[str, int] = defaultdict(int)
     weighed: list[Weighed] = []
-    for result in spread(partial(_weigh, scene), crossings):
-        if isinstance(result, str):
+    long_runs: list[Crossing] = []
+    for crossing, result in zip(crossings, spread(partial(_weigh, scene), crossings), strict=True):
+        if result == LONG_RUN:
+            long_runs.append(crossing)
+        elif isinstance(result, str):
             dropped[result] += 1
         else:
             weighed.append(result)
@@ -87,6 +101,9 @@ def judge(
         else:
             findings.append(replace(finding, id=str(number)))
     findings.extend(bare_findings(scene, bare, dropped))
+    cases = [Case((change,), 0.0) for change in changes]
+    cases += [*from_leaving(scene, bare), *from_long_runs(scene, long_runs)]
+    findings.extend(change_findings(scene, cases, dropped))
     counts = tuple(Count(what, number) for what, number in sorted(dropped.items()))
     numbered, renamed = with_ids(with_shares(with_pairs(scene, by_place(findings))))
     behind = {new: weighed[int(old)] for old, new in renamed.items()}
@@ -155,18 +172,58 @@ def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
     why_not = exempt(scene, crossing)
     if why_not is not None:
         return why_not
+    item = _look_at(scene, crossing)
+    value = item.estimate
+    if value is not None and value.added_nh + value.error_nh < scene.min_nh:
+        return too_small(scene)
+    if item.kind == "edge-run":
+        return "runs beyond the rim of a plane (edge runs)"
+    return item
+
+
+def _look_at(scene: Scene, crossing: Crossing) -> Weighed:
+    """The way round of a crossing, what lies about it, and its estimate, finding or not."""
     route = find_route(crossing, scene.planes, scene.terrains, scene.graph)
     other = around.other_side(scene, crossing)
     beyond = around.beyond(scene, crossing)
     beside = around.beside(scene, crossing)
     share = share_of(scene, crossing, other if beside is None else beside)
     value = _estimate(scene, crossing, route, share, beyond, other)
-    if value is not None and value.added_nh + value.error_nh < scene.min_nh:
-        return too_small(scene)
     kind = _kind(crossing, scene.planes[crossing.plane].gaps[crossing.gap], route)
-    if kind == "edge-run":
-        return "runs beyond the rim of a plane (edge runs)"
     return Weighed(crossing, route, beyond, other, beside, share, value, kind, (crossing,))
+
+
+def value_again(
+    scene: Scene, crossings: Sequence[Crossing], *, all_of_them: bool = False
+) -> tuple[Inductance | None, ...]:
+    """Value crossings in a scene that was changed, each by itself, as ``judge`` would.
+
+    Parameters
+    ----------
+    scene
+        The scene with another plane, or one more via or capacitor.
+    crossings
+        What the traces run over there.
+    all_of_them
+        Also those that are no finding, and right beside a gap; by the solve alone.
+
+    Returns
+    -------
+    What each adds; None where there is no way back. Those that would be no finding are left out.
+    """
+    if all_of_them:
+        solved = [_solve_all(scene, [_look_at(scene, one)], map) for one in crossings]
+        return tuple(field[0].value for field in solved if field)
+    weighed = [
+        item for item in (_weigh(scene, one) for one in crossings) if not isinstance(item, str)
+    ]
+    values = []
+    for item in _once_a_gap(weighed):
+        field = _solve_all(scene, [item], map).get(0)
+        value = item.estimate if field is None else field.value
+        if value is None or value.added_nh >= scene.min_nh:
+            values.append(value)
+    return tuple(values)
 
 
 def _crossing_finding(
@@ -227,11 +284,12 @@ def _reach_mm(crossing: Crossing, route: Route, way: Way | None) -> float:
     Over bridges that is where the leg between them crosses the gap: the way to them and back runs
     along the trace, over copper that is whole.
     """
-    if way is None or len(way.bridges) != 2:
+    ends = None if way is None else way.off_plane
+    if ends is None:
         return route.reach_mm(way)
     ahead = np.subtract(crossing.after, crossing.before)
     ahead = ahead / (float(np.hypot(*ahead)) or 1.0)
-    (one, other) = (np.subtract(at, crossing.at) for at in way.bridges)
+    (one, other) = (np.subtract(at, crossing.at) for at in ends)
     before, after = float(one @ ahead), float(other @ ahead)
     part = 0.5 if before == after else min(max(-before / (after - before), 0.0), 1.0)
     x, y = one + part * (other - one)
@@ -239,13 +297,14 @@ def _reach_mm(crossing: Crossing, route: Route, way: Way | None) -> float:
 
 
 def _bridge_nh(scene: Scene, crossing: Crossing, way: Way | None) -> float:
-    if way is None or not way.bridges or way.bridge_layer in {0, crossing.plane}:
+    """What the bridges of a way add: parts as mounted, and the field between the two planes."""
+    if way is None or not (way.bridges or way.capacitors):
         return 0.0
-    (x0, y0), (x1, y1) = way.bridges[0], way.bridges[-1]
-    apart = float(np.hypot(x1 - x0, y1 - y0))
-    return estimate.via_pair_nh(
-        apart, 0.3, scene.board.stack.height_mm(crossing.plane, way.bridge_layer)
-    )
+    if way.bridge_layer in {0, crossing.plane}:
+        return way.parts_nh
+    (x0, y0), (x1, y1) = way.path[1], way.path[-2]
+    height = scene.board.stack.height_mm(crossing.plane, way.bridge_layer)
+    return way.parts_nh + estimate.via_pair_nh(float(np.hypot(x1 - x0, y1 - y0)), 0.3, height)
 
 
 def _finding(
@@ -284,7 +343,7 @@ def _finding(
         corner_khz=_corner_khz(scene, item, field),
         stray_db=None if field is None else field.stray_db,
         islands=(islands[0].id, islands[1].id),
-        bridges=_bridges(route.best),
+        bridges=_bridges(scene, route.best),
         gap=plane.gaps[crossing.gap].id,
         shares_gap_with=_mutual(scene, crossing.net, field, weighed),
         pair=None,
@@ -334,9 +393,18 @@ def _mutual(
     return tuple(GapShare(name, mutual) for name, mutual in sorted(best.items()))
 
 
-def _bridges(way: Way | None) -> tuple[BridgeUse, ...]:
+def _bridges(scene: Scene, way: Way | None) -> tuple[BridgeUse, ...]:
     if way is None:
         return ()
-    return tuple(
-        BridgeUse("via", (round(x, 4), round(y, 4)), way.bridge_net) for x, y in way.bridges
+    holes = (BridgeUse("via", (round(x, 4), round(y, 4)), way.bridge_net) for x, y in way.bridges)
+    parts = (
+        BridgeUse(
+            part.kind,
+            (round(part.at[0], 4), round(part.at[1], 4)),
+            " to ".join(
+                scene.graph.nodes[end]["island"].net_name for end in (part.one, part.other)
+            ),
+        )
+        for part in way.capacitors
     )
+    return (*holes, *parts)

@@ -2,9 +2,15 @@
 
 from __future__ import annotations
 
-from splitcheck.loops.ways import Route
+from math import hypot
+
+from splitcheck.loops.ways import Way
 from splitcheck.verdict.around import layers_beyond
 from splitcheck.verdict.scene import Scene, Weighed
+
+#: A capacitor helps if it is no farther off than this for each ns of rise time, mm/ns: 1 inch
+#: (S. Weir, si-list, 16 Oct 2008; L. Smith there on 22 Sep 1999 has three inches, to and fro).
+MM_PER_NS = 25.0
 
 
 def reason(scene: Scene, item: Weighed) -> str:
@@ -22,27 +28,58 @@ def reason(scene: Scene, item: Weighed) -> str:
         start = f"{name} ({one.net_name}) is open for {item.bare_mm:.2f} mm under the trace"
         if len(item.runs) > 1:
             start += f", in {len(item.runs)} places"
-    way = _way_in_words(scene, item.route, item.share)
-    return "; ".join([start, way, *_extras(scene, item)])
+    return "; ".join([start, _way_in_words(scene, item), *_extras(scene, item)])
 
 
-def _way_in_words(scene: Scene, route: Route, share: float) -> str:
+def _way_in_words(scene: Scene, item: Weighed) -> str:
+    route = item.route
     best = route.best
     if not route.joined or best is None:
-        if share < 1.0:
+        nothing = (
+            "neither copper, a plated hole nor a capacitor"
+            if scene.board.components
+            else "neither copper nor a plated hole"
+        )
+        if item.share < 1.0:
             return (
-                "neither copper nor a plated hole joins the two sides: the return must leave for "
-                "the plane on the trace's other side"
+                f"{nothing} joins the two sides: the return must leave for the plane on the "
+                "trace's other side"
             )
-        return "neither copper nor a plated hole joins the two sides: no galvanic way back"
-    detour = route.detour_mm or 0.0
-    if not best.bridges:
-        return f"the return walks {detour:.1f} mm more round the gap"
-    x, y = best.bridges[0]
-    via = f"plated holes from ({x:.2f}, {y:.2f}) over {best.bridge_net}"
+        return f"{nothing} joins the two sides: no galvanic way back"
+    more = f"the return walks {route.detour_mm or 0.0:.1f} mm more"
+    over = ""
     if best.bridge_layer:
-        via += f" on {scene.board.stack.layers[best.bridge_layer - 1].name}"
-    return f"the return walks {detour:.1f} mm more through {via}"
+        over = f" on {scene.board.stack.layers[best.bridge_layer - 1].name}"
+    if best.capacitors:
+        return f"{more} through {_parts_in_words(scene, item, best, over)}"
+    if not best.bridges:
+        return f"{more} round the gap"
+    x, y = best.bridges[0]
+    return f"{more} through plated holes from ({x:.2f}, {y:.2f}) over {best.bridge_net}{over}"
+
+
+def _parts_in_words(scene: Scene, item: Weighed, way: Way, over: str) -> str:
+    """The capacitors of a way, where the return goes between them, and whether they are near."""
+    named = [
+        f"{part.ref if part.kind == 'capacitor' else f'link {part.ref}'} "
+        f"({part.at[0]:.2f}, {part.at[1]:.2f})"
+        for part in way.capacitors
+    ]
+    words = " and ".join(named)
+    if way.capacitors[0].kind == "capacitor":
+        words = f"capacitor{'s' if len(named) > 1 else ''} {words}"
+    if over:
+        words += f" over {way.bridge_net}{over}"
+    x, y = item.crossing.at
+    words += f", {way.parts_nh:.1f} nH as mounted"
+    far = max(hypot(part.at[0] - x, part.at[1] - y) for part in way.capacitors)
+    rise = scene.drive_of(item.crossing.net).rise_ns
+    if far > MM_PER_NS * rise:
+        words += (
+            f", but {far:.0f} mm off: farther than {MM_PER_NS:g} mm per ns of the rise of "
+            f"{rise:g} ns, too far to help in time"
+        )
+    return words
 
 
 def _extras(scene: Scene, item: Weighed) -> list[str]:

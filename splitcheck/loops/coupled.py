@@ -1,0 +1,247 @@
+"""Ways that go over capacitors and links: where no copper joins two islands, or only far off."""
+
+from __future__ import annotations
+
+from itertools import pairwise
+from math import inf
+from typing import NamedTuple
+
+import networkx as nx
+import numpy as np
+
+from splitcheck.copper.marks import Point
+from splitcheck.loops.bridges import (
+    IslandGraph,
+    PartBridge,
+    all_bridges,
+    bridges_between,
+    over_parts,
+    parts_between,
+)
+from splitcheck.loops.terrain import Terrain
+from splitcheck.loops.ways import MM_PER_NH, Way, heading, to_point
+from splitcheck.planes.crossings import Crossing
+from splitcheck.units import Floats
+
+#: So many of the holes and so many of the parts that make a way shortest are looked at.
+MOST_HOPS = 12
+
+
+class _Hops(NamedTuple):
+    """Everything that leads from one island to another, by holes and by parts."""
+
+    leave: Floats
+    """Where it leaves the one island, shape (n, 2)."""
+    arrive: Floats
+    """Where it comes to the other, shape (n, 2)."""
+    cost_mm: Floats
+    """Its own length and what its inductance is worth in length."""
+    parts: tuple[PartBridge | None, ...]
+    """The part it is; None for a hole."""
+
+    def taken(self, rows: list[int]) -> _Hops:
+        """Some of them."""
+        return _Hops(
+            self.leave[rows],
+            self.arrive[rows],
+            self.cost_mm[rows],
+            tuple(self.parts[row] for row in rows),
+        )
+
+
+class _Found(NamedTuple):
+    """A way as it is compared."""
+
+    cost_mm: float
+    side: int
+    way: Way
+
+
+def add_coupled_ways(
+    sides: dict[int, Way],
+    crossing: Crossing,
+    islands: tuple[str, str],
+    terrains: dict[int, Terrain],
+    graph: IslandGraph,
+) -> None:
+    """Put in ways over capacitors from one island to another, where they are worth more.
+
+    Parameters
+    ----------
+    sides
+        Best way on either side of the trace, 1 left, -1 right; changed in place.
+    crossing
+        The crossing, whose trace leaves one island for another.
+    islands
+        Ids of the two.
+    terrains
+        Obstacles by layer number.
+    graph
+        The island graph.
+
+    Notes
+    -----
+    Over one part, or over another island with a part at one end at least and a plated hole or a
+    part at the other. An nH of a part counts as so many mm of way as a bridge farther off costs:
+    see ``MM_PER_NH``. Legs run straight past antipads and the like, as over plated holes.
+    """
+    one, other = islands
+    parts = over_parts(graph)
+    if one not in parts and other not in parts:
+        return
+    own = terrains[crossing.plane]
+    found = _direct(crossing, parts_between(graph, one, other), own)
+    near = [
+        set(known[end]) if end in known else set() for end in islands for known in (graph, parts)
+    ]
+    middles = ((near[0] | near[1]) & (near[2] | near[3])) - {one, other}
+    for middle in sorted(middles & (near[1] | near[3])):
+        island = graph.nodes[middle]["island"]
+        hops = _hops(graph, one, middle), _hops(graph, middle, other)
+        found += _over(crossing, hops, (island.net_name, island.layer), own, terrains[island.layer])
+    for candidate in sorted(found, key=lambda found: found.cost_mm):
+        known = sides.get(candidate.side)
+        if known is None or candidate.cost_mm < known.cost_mm:
+            sides[candidate.side] = candidate.way
+
+
+def coupled_chain(
+    graph: IslandGraph, one: str, other: str, start: Point, goal: Point
+) -> Way | None:
+    """A way over three or more bridges of any kind: island by island, the best bridge each time."""
+    both = all_bridges(graph)
+    if one not in both or other not in both or not nx.has_path(both, one, other):
+        return None
+    ids = nx.shortest_path(both, one, other)
+    at, length, path = np.asarray(start), 0.0, [start]
+    holes: list[Point] = []
+    parts: list[PartBridge] = []
+    for here, there in pairwise(ids):
+        hops = _hops(graph, here, there)
+        far = np.hypot(*(hops.leave - at).T) + hops.cost_mm
+        best = int(np.argmin(far))
+        part = hops.parts[best]
+        length += float(np.hypot(*(hops.leave[best] - at)))
+        length += float(np.hypot(*(hops.arrive[best] - hops.leave[best])))
+        at = hops.arrive[best]
+        if part is None:
+            holes.append(to_point(at))
+        else:
+            parts.append(part)
+        path += [to_point(hops.leave[best]), to_point(at)]
+    length += float(np.hypot(*(np.asarray(goal) - at)))
+    borrowed = graph.nodes[ids[len(ids) // 2]]["island"]
+    return Way(
+        length, _path([*path, goal]), tuple(holes), borrowed.net_name, borrowed.layer, tuple(parts)
+    )
+
+
+def _hops(graph: IslandGraph, one: str, other: str) -> _Hops:
+    holes = bridges_between(graph, one, other)
+    parts = parts_between(graph, one, other)
+    leave = np.array([part.at_one for part in parts]).reshape(-1, 2)
+    arrive = np.array([part.at_other for part in parts]).reshape(-1, 2)
+    nh = np.array([part.mounted_nh for part in parts])
+    return _Hops(
+        np.concatenate([holes, leave]),
+        np.concatenate([holes, arrive]),
+        np.concatenate([np.zeros(len(holes)), np.hypot(*(arrive - leave).T) + MM_PER_NH * nh]),
+        (*[None] * len(holes), *parts),
+    )
+
+
+def _direct(crossing: Crossing, parts: tuple[PartBridge, ...], own: Terrain) -> list[_Found]:
+    """Ways over one part from the one island to the other."""
+    if not parts:
+        return []
+    leave = np.array([part.at_one for part in parts])
+    arrive = np.array([part.at_other for part in parts])
+    shut = _shut(own, crossing.before, leave) | _shut(own, crossing.after, arrive)
+    found = []
+    for row in np.flatnonzero(~shut).tolist():
+        part = parts[row]
+        path = (crossing.before, part.at_one, part.at_other, crossing.after)
+        length = sum(float(np.hypot(b[0] - a[0], b[1] - a[1])) for a, b in pairwise(path))
+        net = own.plane.islands[crossing.islands[1]].net_name
+        way = Way(length, path, (), net, 0, (part,))
+        found.append(_Found(way.cost_mm, _side(crossing, leave[row], arrive[row]), way))
+    return found
+
+
+def _shut(
+    terrain: Terrain, at: Point, places: Floats
+) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+    return terrain.blocked(np.broadcast_to(np.asarray(at), places.shape), places)
+
+
+def _side(crossing: Crossing, one: Floats, other: Floats) -> int:
+    (dx, dy), (x, y) = heading(crossing), crossing.at
+    mx, my = (one + other) / 2
+    return 1 if (my - y) * dx - (mx - x) * dy >= 0 else -1
+
+
+def _over(
+    crossing: Crossing,
+    hops: tuple[_Hops, _Hops],
+    borrowed: tuple[str, int],
+    own: Terrain,
+    middle: Terrain,
+) -> list[_Found]:
+    """The best way on either side over one borrowed island, with a part at one end at least."""
+    down = _nearest(hops[0], hops[0].leave, crossing.before, own)
+    up = _nearest(hops[1], hops[1].arrive, crossing.after, own)
+    if not down.parts or not up.parts:
+        return []
+    between = np.hypot(*(down.arrive[:, None, :] - up.leave[None, :, :]).transpose(2, 0, 1))
+    first = np.hypot(*(down.leave - crossing.before).T) + down.cost_mm
+    last = np.hypot(*(up.arrive - crossing.after).T) + up.cost_mm
+    total = first[:, None] + between + last[None, :]
+    plain = [np.array([part is None for part in some.parts]) for some in (down, up)]
+    total[plain[0][:, None] & plain[1][None, :]] = inf
+    rows, columns = np.nonzero(total < inf)
+    order = np.argsort(total[rows, columns], kind="stable")
+    rows, columns = rows[order], columns[order]
+    shut = middle.blocked(down.arrive[rows], up.leave[columns])
+    found: dict[int, _Found] = {}
+    for i, j in zip(rows[~shut].tolist(), columns[~shut].tolist(), strict=True):
+        side = _side(crossing, down.leave[i], up.arrive[j])
+        if side not in found:
+            found[side] = _Found(
+                float(total[i, j]), side, _joined(crossing, down, i, up, j, borrowed)
+            )
+        if len(found) == 2:
+            break
+    return list(found.values())
+
+
+def _nearest(hops: _Hops, ends: Floats, at: Point, own: Terrain) -> _Hops:
+    """The holes and parts that can make a way short, a few of each, and reached over copper."""
+    cost = np.hypot(*(ends - at).T) + hops.cost_mm
+    order = np.argsort(cost, kind="stable")
+    is_part = np.array([part is not None for part in hops.parts], dtype=bool)
+    rows = [*order[is_part[order]][:MOST_HOPS], *order[~is_part[order]][:MOST_HOPS]]
+    if not rows:
+        return hops.taken([])
+    open_ = ~_shut(own, at, ends[rows])
+    return hops.taken([int(row) for row, free in zip(rows, open_, strict=True) if free])
+
+
+def _joined(
+    crossing: Crossing, down: _Hops, i: int, up: _Hops, j: int, borrowed: tuple[str, int]
+) -> Way:
+    places = [down.leave[i], down.arrive[i], up.leave[j], up.arrive[j]]
+    path = _path([crossing.before, *(to_point(place) for place in places), crossing.after])
+    length = sum(float(np.hypot(b[0] - a[0], b[1] - a[1])) for a, b in pairwise(path))
+    hops = ((down.parts[i], down.leave[i]), (up.parts[j], up.arrive[j]))
+    return Way(
+        length,
+        path,
+        tuple(to_point(at) for part, at in hops if part is None),
+        *borrowed,
+        tuple(part for part, _ in hops if part is not None),
+    )
+
+
+def _path(points: list[Point]) -> tuple[Point, ...]:
+    """The points, none twice in a row."""
+    return (points[0], *(b for a, b in pairwise(points) if a != b))
