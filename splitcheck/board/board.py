@@ -28,3 +28,5 @@ class Board:
     """Plated holes."""
     components: tuple[Component, ...] = ()
     """Parts on the board, by reference; empty if no file tells them."""
+    references: frozenset[int] = frozenset()
+    """Numbers of the nets that the rules say carry returns, whatever they are called."""

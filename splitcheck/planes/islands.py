@@ -108,8 +108,8 @@ def find_planes(board: Board) -> tuple[Plane, ...]:
     -----
     (1) A piece of copper is plane-like if it has area, is wide on average (2 area / perimeter) and
     is not drawn as a trace.
-    (2) A net carries returns if its name is a ground's or a supply's and it has a plane-like
-    piece, or, whatever its name, if it has a piece as large as only planes are.
+    (2) A net carries returns if its name is a ground's or a supply's, or the rules name it, and it
+    has a plane-like piece, or, whatever its name, if it has a piece as large as only planes are.
     (3) Islands are the plane-like pieces of such nets. Signal copper is never an island.
     """
     nets = reference_nets(board)
@@ -147,14 +147,14 @@ def reference_nets(board: Board) -> frozenset[int]:
     large = max(UNNAMED_AREA_MM2, UNNAMED_SHARE * board.outline.area)
     chosen = set()
     for part in board.parts:
-        name = board.nets[board.net_of[part.id]].name
+        net = board.nets[board.net_of[part.id]]
         if stroked_mm2[part.id] > MOST_STROKED * part.shape.area:
             continue
-        known = is_power(name)
+        known = is_power(net.name) or net.number in board.references
         if (known and is_plane_like(part.shape)) or is_plane_like(
             part.shape, large, UNNAMED_WIDTH_MM
         ):
-            chosen.add(board.net_of[part.id])
+            chosen.add(net.number)
     return frozenset(chosen)
 
 
