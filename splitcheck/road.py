@@ -21,7 +21,7 @@ from splitcheck.board.pairs import Pair, find_pairs
 from splitcheck.board.stack import read_stack_file
 from splitcheck.copper.intake import Export, open_export
 from splitcheck.errors import SplitcheckError
-from splitcheck.loops.bridges import IslandGraph, join_islands
+from splitcheck.loops.bridges import IslandGraph, all_parts, join_islands
 from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
@@ -130,7 +130,7 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judging: b
             crossings, bare = cross(tracks, planes, Spread(options.jobs, few=2))
         with clock.stage("loops"):
             judged = judge(scene, crossings, bare, Spread(options.jobs))
-    seen = Seen(export, assembled, planes, tracks, scene.pairs)
+    seen = Seen(export, assembled, planes, tracks, scene.pairs, tuple(all_parts(graph)))
     return Walked(summarise(seen, judged, clock.seconds()), seen, scene, judged)
 
 

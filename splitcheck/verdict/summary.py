@@ -11,8 +11,10 @@ from splitcheck.board.board import Board
 from splitcheck.board.names import is_power
 from splitcheck.board.pairs import Pair
 from splitcheck.copper.intake import Export
+from splitcheck.loops.bridges import PartBridge
 from splitcheck.planes.islands import Plane, reference_nets
 from splitcheck.planes.tracks import Tracks
+from splitcheck.verdict.coupling import coupling_facts, coupling_unknown
 from splitcheck.verdict.findings import (
     Count,
     Finding,
@@ -42,6 +44,8 @@ class Seen:
     planes: tuple[Plane, ...]
     tracks: tuple[Tracks, ...]
     pairs: tuple[Pair, ...] = ()
+    parts: tuple[PartBridge, ...] = ()
+    """Capacitors and links between islands."""
 
 
 def summarise(
@@ -60,11 +64,12 @@ def summarise(
         assumptions=(
             *_no_plane(seen.planes),
             *_no_names(board),
+            *coupling_unknown(board, seen.planes),
             *seen.assembled.assumptions,
             _drive_sentence(DEFAULT_CLASS),
         ),
         remarks=seen.assembled.remarks,
-        facts=(*_facts(board), *seen.assembled.facts),
+        facts=(*_facts(board), *seen.assembled.facts, *coupling_facts(board, seen.parts)),
         inputs=tuple(
             InputRow(file.name, file.kind, file.sha256, file.reason) for file in seen.export.files
         ),
