@@ -24,6 +24,7 @@ from splitcheck.planes.islands import Gap
 from splitcheck.verdict import around
 from splitcheck.verdict.around import LONG_RUN, exempt, share_of, too_small
 from splitcheck.verdict.bare import bare_findings
+from splitcheck.verdict.by_class import EXEMPT, listed, with_crosstalk
 from splitcheck.verdict.findings import (
     BridgeUse,
     Count,
@@ -32,6 +33,7 @@ from splitcheck.verdict.findings import (
     Kind,
     Source,
 )
+from splitcheck.verdict.listing import worth_a_line
 from splitcheck.verdict.pairs import with_pairs
 from splitcheck.verdict.places import by_place, fingerprint, with_ids, with_shares
 from splitcheck.verdict.plane_changes import (
@@ -42,7 +44,8 @@ from splitcheck.verdict.plane_changes import (
 )
 from splitcheck.verdict.reason import reason
 from splitcheck.verdict.scene import Judged, Scene, Weighed
-from splitcheck.verdict.score import level, noise_mv
+from splitcheck.verdict.score import Noise, level, noise_over_gap, slot_ns_mm
+from splitcheck.verdict.supplies import by_rule
 
 #: A run whose middle lies this near to the same stretch of trace is on it, mm.
 SAME_PLACE_MM = 1e-3
@@ -63,6 +66,7 @@ def judge(
     spread: Spread = map,
     *,
     changes: Sequence[PlaneChange] = (),
+    by_rules: Sequence[Finding] = (),
 ) -> Judged:
     """Turn crossings and bare traces into findings, worst first.
 
@@ -76,6 +80,8 @@ def judge(
         How to call a function on many items: in turn, or on several cores.
     changes
         Plated holes where the return changes planes.
+    by_rules
+        Findings that the rules alone make: see ``supplies.py``.
 
     Returns
     -------
@@ -104,8 +110,10 @@ def judge(
     cases = [Case((change,), 0.0) for change in changes]
     cases += [*from_leaving(scene, bare), *from_long_runs(scene, long_runs)]
     findings.extend(change_findings(scene, cases, dropped))
+    findings = with_pairs(scene, by_place([*findings, *by_rules]))
+    findings = listed(scene, worth_a_line(scene, findings, dropped), dropped)
     counts = tuple(Count(what, number) for what, number in sorted(dropped.items()))
-    numbered, renamed = with_ids(with_shares(with_pairs(scene, by_place(findings))))
+    numbered, renamed = with_ids(with_crosstalk(scene, with_shares(findings)))
     behind = {new: weighed[int(old)] for old, new in renamed.items()}
     return Judged(numbered, counts, behind)
 
@@ -172,6 +180,8 @@ def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
     why_not = exempt(scene, crossing)
     if why_not is not None:
         return why_not
+    if scene.drive_of(crossing.net).exempt:
+        return EXEMPT
     item = _look_at(scene, crossing)
     value = item.estimate
     if value is not None and value.added_nh + value.error_nh < scene.min_nh:
@@ -234,8 +244,21 @@ def _crossing_finding(
     if value is not None and value.added_nh < scene.min_nh:
         return None
     drive = scene.drive_of(item.crossing.net)
-    noise = None if value is None else noise_mv(value.added_nh, drive)
+    noise = None
+    if value is not None:
+        noise = noise_over_gap(value.added_nh, drive, _along_ns(scene, item))
     return _finding(scene, item, value, noise, field, weighed)
+
+
+def _along_ns(scene: Scene, item: Weighed) -> float:
+    """How long a wave runs along the gap to where the return gets round, on the longer side, ns."""
+    crossing, route = item.crossing, item.route
+    ways = [way for way in (route.left, route.right) if way is not None]
+    layers = scene.board.stack.layers
+    below = layers[crossing.plane - 1].er_below if crossing.plane < len(layers) else 1.0
+    above = layers[crossing.plane - 2].er_below if crossing.plane > 1 else 1.0
+    reach_mm = max((_reach_mm(crossing, route, way) for way in ways), default=0.0)
+    return reach_mm * slot_ns_mm(above, below)
 
 
 def _kind(crossing: Crossing, gap: Gap, route: Route) -> Kind:
@@ -311,7 +334,7 @@ def _finding(
     scene: Scene,
     item: Weighed,
     value: Inductance | None,
-    noise: float | None,
+    noise: Noise | None,
     field: Field | None,
     weighed: Sequence[Weighed],
 ) -> Finding:
@@ -323,10 +346,13 @@ def _finding(
     net = scene.board.nets[crossing.net].name
     at = (round(crossing.at[0], 4), round(crossing.at[1], 4))
     apart = _disagreement(item.estimate, field)
+    mv, capped = (None, False) if noise is None else noise
+    by_noise = level(mv, drive, None if value is None else value.added_nh)
+    said, how = by_rule(scene, [island.net_name for island in islands], by_noise)
     return Finding(
         id="",
         kind=item.kind,
-        level=level(noise, drive),
+        level=how,
         net=net,
         net_class=drive.name,
         layer=layers[crossing.layer - 1].name,
@@ -338,7 +364,7 @@ def _finding(
         added_nh=None if value is None else value.added_nh,
         error_nh=None if value is None else value.error_nh,
         method="solved" if field is not None else "none" if value is None else "estimated",
-        noise_mv=noise,
+        noise_mv=mv,
         rise_ns=drive.rise_ns,
         corner_khz=_corner_khz(scene, item, field),
         stray_db=None if field is None else field.stray_db,
@@ -350,9 +376,10 @@ def _finding(
         source=Source(scene.board.layers[crossing.layer - 1].file, crossing.line),
         waived=None,
         fingerprint=fingerprint(item.kind, net, layers[crossing.layer - 1].name, at),
-        reason=reason(scene, item),
+        reason=reason(scene, item) + said,
         estimated_nh=None if apart is None else apart.added_nh,
         estimated_error_nh=None if apart is None else apart.error_nh,
+        capped=capped,
     )
 
 

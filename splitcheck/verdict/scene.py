@@ -12,8 +12,8 @@ from splitcheck.loops.terrain import Terrain
 from splitcheck.loops.ways import Route
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane
-from splitcheck.verdict.findings import Count, Finding, Kind
-from splitcheck.verdict.rules import DEFAULT_CLASS, PLAIN_RULES, Class, Rules
+from splitcheck.verdict.findings import Count, Finding, Kind, WaiverRow
+from splitcheck.verdict.rules import PLAIN_RULES, Class, Rules
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,7 +34,7 @@ class Scene:
 
     def drive_of(self, net: int) -> Class:
         """The class of a net: what drives it and what it bears."""
-        return self.drives[net] if self.drives else DEFAULT_CLASS
+        return self.drives[net] if self.drives else self.rules.default
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,3 +72,5 @@ class Judged:
     """What was seen and is not a finding."""
     weighed: dict[str, Weighed]
     """By id of the finding: the crossing behind it, of those that have one."""
+    waivers: tuple[WaiverRow, ...] = ()
+    """What became of each waiver of the rules."""
