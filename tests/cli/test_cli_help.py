@@ -15,7 +15,7 @@ from splitcheck.cli.commands import app
 Capture = pytest.CaptureFixture[str]
 
 
-@pytest.mark.parametrize("command", ["rank", "read", "demo"])
+@pytest.mark.parametrize("command", ["rank", "read", "gate", "demo"])
 def test_help_of_each_command_has_examples_and_exit_codes(command: str, capsys: Capture) -> None:
     """Each help text shows calls that can be pasted, one a line."""
     assert run([command, "--help"]) == 0
@@ -29,7 +29,7 @@ def test_help_of_the_program_lists_the_commands(capsys: Capture) -> None:
     """``--help`` and no argument at all show the same list."""
     assert run(["--help"]) == 0
     out = capsys.readouterr().out
-    assert all(f"\n  {command} " in out for command in ("rank", "read", "demo"))
+    assert all(f"\n  {command} " in out for command in ("rank", "read", "gate", "demo"))
 
 
 def test_version(capsys: Capture) -> None:
