@@ -10,12 +10,15 @@ from collections.abc import Callable, Iterable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass, replace
+from datetime import date
 from functools import partial
+from hashlib import sha256
 from pathlib import Path
 from time import perf_counter
 from typing import Any, TypeAlias
 
 from splitcheck.board.assemble import Assembled, assemble
+from splitcheck.board.board import Board
 from splitcheck.board.layers import CopperFile, ReadLayer, read_layer
 from splitcheck.board.pairs import Pair, find_pairs
 from splitcheck.board.stack import read_stack_file
@@ -23,13 +26,23 @@ from splitcheck.copper.intake import Export, open_export
 from splitcheck.errors import SplitcheckError
 from splitcheck.loops.bridges import IslandGraph, all_parts, join_islands
 from splitcheck.loops.terrain import Terrain
+from splitcheck.planes.changes import find_changes
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import Tracks, lay_all
-from splitcheck.verdict.findings import Report
+from splitcheck.verdict.classes import Known, know
+from splitcheck.verdict.findings import InputRow, Report
 from splitcheck.verdict.judge import judge
+from splitcheck.verdict.mend import mend as proposals
+from splitcheck.verdict.packs import rules_of, shipped_files, shipped_rules
+from splitcheck.verdict.pictures import draw
+from splitcheck.verdict.rulesfile import RULES_FILE, read_rules
 from splitcheck.verdict.scene import Judged, Scene
 from splitcheck.verdict.summary import Seen, summarise
+from splitcheck.verdict.supplies import supply_findings
+from splitcheck.verdict.tomltext import LARGEST_BYTES
+from splitcheck.verdict.views import Pictures
+from splitcheck.verdict.waivers import waive
 
 Progress: TypeAlias = Callable[[str, int, int], None]
 
@@ -54,6 +67,10 @@ class Options:
     stack: Path | None = None
     jobs: int | None = None
     """Processes that read files; None: one a core."""
+    rules: Path | None = None
+    """The board's own rules; None: its ``splitcheck.toml``, if there is one."""
+    today: date | None = None
+    """The day it is, for waivers that end; None: they hold."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,6 +109,22 @@ def look(path: Path, options: Options, progress: Progress | None = None) -> Walk
         return _walk(path, options, progress, judging=True)
 
 
+def picture(walked: Walked, options: Options, only: Sequence[str] | None = None) -> Pictures:
+    """Draw a board that was looked at: its map, and the worst findings or `only` some."""
+    with _uncollected():
+        seen = walked.seen
+        spread = Spread(options.jobs, few=2)
+        return draw(walked.scene, seen.planes, seen.tracks, walked.judged, spread, only=only)
+
+
+def mend(walked: Walked, ids: Iterable[str]) -> Report:
+    """The report of a board that was looked at, with what would mend some findings of it."""
+    with _uncollected():
+        return proposals(
+            walked.report, walked.seen.tracks, walked.scene, walked.judged, tuple(ids)
+        )
+
+
 def read(path: Path, options: Options, progress: Progress | None = None) -> Report:
     """Say how the files of a board were understood; the report has no findings."""
     with _uncollected():
@@ -118,19 +151,28 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judging: b
         layers = read_copper(export, options.jobs, clock)
     with clock.stage("board"):
         assembled = build(export, layers, options)
+        known = know_rules(path, assembled.board, options)
+        board = replace(assembled.board, references=known.references)
+        assembled = replace(assembled, board=board)
     with clock.stage("planes"):
         planes = find_planes(assembled.board)
         tracks = lay_tracks(assembled, options)
         graph = join_islands(assembled.board, planes)
-        scene = set_scene(assembled, planes, graph, options)
+        scene = set_scene(assembled, planes, graph, options, known)
         scene = replace(scene, pairs=pair_up(scene, tracks))
     judged = Judged((), (), {})
     if judging:
         with clock.stage("crossings"):
             crossings, bare = cross(tracks, planes, Spread(options.jobs, few=2))
+            changes = find_changes(assembled.board, planes, tracks)
         with clock.stage("loops"):
-            judged = judge(scene, crossings, bare, Spread(options.jobs))
-    seen = Seen(export, assembled, planes, tracks, scene.pairs, tuple(all_parts(graph)))
+            by_rules, counts = supply_findings(scene, tracks)
+            spread = Spread(options.jobs)
+            judged = judge(scene, crossings, bare, spread, changes=changes, by_rules=by_rules)
+            findings, waivers = waive(judged.findings, known.rules.waivers, options.today)
+            counts = (*judged.counts, *counts)
+            judged = replace(judged, findings=findings, counts=counts, waivers=waivers)
+    seen = Seen(export, assembled, planes, tracks, scene.pairs, tuple(all_parts(graph)), known)
     return Walked(summarise(seen, judged, clock.seconds()), seen, scene, judged)
 
 
@@ -271,16 +313,57 @@ def _cross_layer(
     return find_crossings(tracks[number], planes)
 
 
+def know_rules(path: Path, board: Board, options: Options) -> Known:
+    """Find the rules, and what they make of the nets of a board.
+
+    The board's own file is the one that the options name; else the ``splitcheck.toml`` in the
+    folder of the export, or in the current directory. One inside an archive is not asked: what is
+    judged does not waive itself.
+    """
+    found = _rules_file(path, options)
+    if found is None:
+        return know(board, shipped_rules())
+    file, where = found
+    if file.is_file() and file.stat().st_size > LARGEST_BYTES:
+        wrong = f"has more than {LARGEST_BYTES} bytes"
+        raise SplitcheckError(str(file), wrong, "a file of rules has some hundred lines")
+    text = _text(file)
+    own = read_rules(text, file.name)
+    row = InputRow(file.name, "rules", sha256(text.encode()).hexdigest(), where)
+    return replace(know(board, rules_of(shipped_files(), own), own), file=row)
+
+
+def _rules_file(path: Path, options: Options) -> tuple[Path, str] | None:
+    """The board's own rules, and where they were found, in words."""
+    if options.rules is not None:
+        return options.rules, "named by --rules"
+    folder = path if path.is_dir() else path.parent
+    for place, words in (
+        (folder, "found in the folder of the export"),
+        (Path.cwd(), "found in the current directory"),
+    ):
+        if (place / RULES_FILE).is_file():
+            return place / RULES_FILE, words
+    return None
+
+
 def set_scene(
-    assembled: Assembled, planes: Sequence[Plane], graph: IslandGraph, options: Options
+    assembled: Assembled,
+    planes: Sequence[Plane],
+    graph: IslandGraph,
+    options: Options,
+    known: Known | None = None,
 ) -> Scene:
     """Bring together what judging needs."""
+    known = known or know(assembled.board, shipped_rules())
     return Scene(
         assembled.board,
         {plane.layer: plane for plane in planes},
         {plane.layer: Terrain(plane) for plane in planes},
         graph,
         options.min_nh,
+        known.rules,
+        known.drives,
     )
 
 

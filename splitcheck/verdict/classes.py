@@ -11,6 +11,7 @@ from typing import Literal, TypeAlias
 from splitcheck.board.board import Board
 from splitcheck.board.components import prefix
 from splitcheck.errors import SplitcheckError
+from splitcheck.verdict.findings import InputRow
 from splitcheck.verdict.patterns import Names, Words, is_pattern, spellings, ways_to_write
 from splitcheck.verdict.rules import Assignment, Class, Rules
 from splitcheck.verdict.rulesfile import RulesFile
@@ -36,11 +37,15 @@ class Known:
     """How the class of each net is known, by its number."""
     references: frozenset[int] = frozenset()
     """Numbers of the nets that the rules say carry returns."""
-    origin: str = "the shipped ones"
-    """Where the rules come from."""
+    file: InputRow | None = None
+    """The board's own file of rules, if it has one."""
+
+    def drive_of(self, net: int) -> Class:
+        """The class of a net."""
+        return self.drives[net] if self.drives else self.rules.default
 
 
-def know(board: Board, rules: Rules, own: RulesFile | None = None, origin: str = "") -> Known:
+def know(board: Board, rules: Rules, own: RulesFile | None = None) -> Known:
     """Find the class of every net, and what else the rules say of this board.
 
     Parameters
@@ -51,8 +56,6 @@ def know(board: Board, rules: Rules, own: RulesFile | None = None, origin: str =
         How it is judged.
     own
         The board's own file, whose names and patterns must all be those of something.
-    origin
-        Where the rules come from, in words.
 
     Notes
     -----
@@ -93,7 +96,6 @@ def know(board: Board, rules: Rules, own: RulesFile | None = None, origin: str =
         frozenset(net.number for net in board.nets if Names(rules.references).match(net.name))
         if rules.references
         else frozenset(),
-        origin or "the shipped ones",
     )
 
 

@@ -14,6 +14,14 @@ from splitcheck.copper.intake import Export
 from splitcheck.loops.bridges import PartBridge
 from splitcheck.planes.islands import Plane, reference_nets
 from splitcheck.planes.tracks import Tracks
+from splitcheck.verdict.class_rows import (
+    class_rows,
+    class_sentences,
+    exempt_counts,
+    exempt_reason,
+    rules_fact,
+)
+from splitcheck.verdict.classes import Known
 from splitcheck.verdict.coupling import coupling_facts, coupling_unknown
 from splitcheck.verdict.findings import (
     Count,
@@ -27,9 +35,11 @@ from splitcheck.verdict.findings import (
 )
 from splitcheck.verdict.journey import MOST_LEGS, Journeys, journeys, sum_nh
 from splitcheck.verdict.pairs import pair_rows
-from splitcheck.verdict.rules import DEFAULT_CLASS, Class
+from splitcheck.verdict.rules import PLAIN_RULES
 from splitcheck.verdict.scene import Judged
 
+#: What is known of nets where nobody asks.
+PLAINLY_KNOWN = Known(PLAIN_RULES)
 #: A layer is a plane from this share of the board on, a signal layer below the second, else mixed.
 PLANE_SHARE = 0.6
 SIGNAL_SHARE = 0.25
@@ -46,6 +56,8 @@ class Seen:
     pairs: tuple[Pair, ...] = ()
     parts: tuple[PartBridge, ...] = ()
     """Capacitors and links between islands."""
+    known: Known = PLAINLY_KNOWN
+    """The rules, and what they make of the nets."""
 
 
 def summarise(
@@ -56,6 +68,8 @@ def summarise(
     """Bring everything into the report."""
     board = seen.assembled.board
     x0, y0, x1, y1 = board.outline.bounds
+    known = seen.known
+    traced = {net for layer in seen.tracks for net in layer.net.tolist()}
     ways = journeys(board, seen.planes, seen.tracks, judged.findings)
     return Report(
         board=board.name,
@@ -66,13 +80,16 @@ def summarise(
             *_no_names(board),
             *coupling_unknown(board, seen.planes),
             *seen.assembled.assumptions,
-            _drive_sentence(DEFAULT_CLASS),
+            *class_sentences(known, traced),
         ),
         remarks=seen.assembled.remarks,
-        facts=(*_facts(board), *seen.assembled.facts, *coupling_facts(board, seen.parts)),
-        inputs=tuple(
-            InputRow(file.name, file.kind, file.sha256, file.reason) for file in seen.export.files
+        facts=(
+            *_facts(board),
+            rules_fact(known, board),
+            *seen.assembled.facts,
+            *coupling_facts(board, seen.parts),
         ),
+        inputs=_inputs(seen),
         islands=tuple(
             IslandRow(
                 island.id,
@@ -85,11 +102,23 @@ def summarise(
         ),
         nets=_nets(board, seen, judged.findings, ways),
         findings=judged.findings,
-        counts=(*_exempt(board), *judged.counts, *_not_told(ways)),
+        counts=(*_exempt(board), *exempt_counts(known, traced), *judged.counts, *_not_told(ways)),
         seconds=seconds,
         corner_mm=(round(x0, 4), round(y0, 4)),
         pairs=pair_rows(board, seen.pairs),
+        classes=class_rows(known, traced),
+        waivers=judged.waivers,
     )
+
+
+def _inputs(seen: Seen) -> tuple[InputRow, ...]:
+    """The files of the export, and the board's own rules: once, if they lie among them."""
+    files = [InputRow(file.name, file.kind, file.sha256, file.reason) for file in seen.export.files]
+    rules = seen.known.file
+    if rules is None:
+        return tuple(files)
+    others = [row for row in files if (row.file, row.sha256) != (rules.file, rules.sha256)]
+    return (*others, rules)
 
 
 def _no_plane(planes: Sequence[Plane]) -> tuple[str, ...]:
@@ -110,14 +139,6 @@ def _no_names(board: Board) -> tuple[str, ...]:
         "every other net is judged as a signal; a netlist (IPC-D-356) or X2 attributes would tell."
     )
     return (sentence,)
-
-
-def _drive_sentence(drive: Class) -> str:
-    return (
-        f"Every net is taken to switch in {drive.rise_ns:g} ns (10 to 90 %) and to launch "
-        f"{drive.wave_mv:g} mV into {drive.line_ohm:g} ohm; an error is {drive.error_mv:g} mV of "
-        f"noise or no way back, a warning {drive.warning_mv:g} mV (common practice, no source)."
-    )
 
 
 def _layers(board: Board, planes: Sequence[Plane]) -> tuple[LayerRow, ...]:
@@ -177,6 +198,7 @@ def _nets(
         by_net[finding.net].append(finding)
     legs = [row.nets for row in pair_rows(board, seen.pairs)]
     partner = dict([*legs, *((other, one) for one, other in legs)])
+    drives = {net.name: seen.known.drive_of(net.number) for net in board.nets}
     rows = []
     for name in sorted(length):
         found = by_net.get(name, [])
@@ -184,7 +206,7 @@ def _nets(
         rows.append(
             NetRow(
                 name,
-                DEFAULT_CLASS.name,
+                drives[name].name,
                 round(length[name], 4),
                 tuple(board.stack.layers[n - 1].name for n in sorted(layers[name])),
                 len(found),
@@ -192,6 +214,7 @@ def _nets(
                 journey=ways.legs.get(name, ()),
                 sum_nh=sum_nh(found),
                 pair=partner.get(name),
+                exempt=exempt_reason(drives[name]),
             )
         )
     return tuple(rows)
