@@ -3,15 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from math import pi
 
 import numpy as np
 import shapely
 from shapely import LineString, Polygon
 
+from splitcheck.loops.cells import Grading
 from splitcheck.loops.kernels import outline_potential, plate_images_squared, wall_source
-from splitcheck.loops.panels import Panels
+from splitcheck.loops.panels import Panels, cut
 from splitcheck.loops.solve import Solution, Strap, TraceOver, ViaBridge
 from splitcheck.loops.sources import Strip, filaments, run_beside
 from splitcheck.units import MU0, Floats
@@ -111,35 +112,41 @@ def flow_of(
     )
 
 
-def without_gaps(flow: Flow) -> Flow:
-    """The return current of the same trace, were the plane whole.
+def over_whole_plane(trace: TraceOver, height_mm: float, above_mm: float | None = None) -> Flow:
+    """The return current of a trace over a plane without gaps.
+
+    Parameters
+    ----------
+    trace
+        The trace.
+    height_mm
+        Its height over the plane, > 0.
+    above_mm
+        Distance of a whole plane on its other side, or None.
 
     Examples
     --------
-    >>> trace = Strip(np.array([[-1e4, 0.0], [1e4, 0.0]]), 0.0, 0.2, None)
-    >>> none, nowhere = np.zeros(0), np.zeros((0, 2))
-    >>> from splitcheck.loops.cells import Grading
-    >>> from splitcheck.loops.panels import cut
-    >>> flow = Flow((trace,), np.ones(1), nowhere, none, (), cut((), Grading((), 1.0)), none, ())
-
     Half of it flows within one height of either side of the trace:
 
-    >>> round(current_across(without_gaps(flow), LineString([(0, 0.2), (0, -0.2)])), 3)
+    >>> trace = TraceOver(LineString([(-1e4, 0.0), (1e4, 0.0)]), 0.0)
+    >>> flow = over_whole_plane(trace, 0.2)
+    >>> round(current_across(flow, LineString([(0, 0.2), (0, -0.2)])), 3)
     0.5
     """
-    mesh = replace(
-        flow.mesh, **{name: getattr(flow.mesh, name)[:0] for name in flow.mesh.__slots__}
-    )
-    return replace(
-        flow,
-        strips=flow.strips[:1],
-        strip_a=flow.strip_a[:1],
-        via_at=flow.via_at[:0],
-        via_a=flow.via_a[:0],
-        gaps=(),
-        mesh=mesh,
-        charge=flow.charge[:0],
-    )
+    strip = Strip(shapely.get_coordinates(trace.line), trace.width_mm, height_mm, above_mm)
+    return _alone((strip,))
+
+
+def without_gaps(flow: Flow) -> Flow:
+    """The return current of the same trace, were the plane whole."""
+    return _alone(flow.strips[:1])
+
+
+def _alone(strips: tuple[Strip, ...]) -> Flow:
+    """A trace with nothing else but its plane."""
+    none = np.zeros(0)
+    nothing = cut((), Grading((), 1.0))
+    return Flow(strips, np.ones(1), np.zeros((0, 2)), none, (), nothing, none, ())
 
 
 def smooth_part(flow: Flow, points: Floats) -> Floats:
