@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import shlex
 import sys
+from os import environ
 from pathlib import Path
 from typing import Annotated
 
@@ -14,6 +15,7 @@ import typer
 
 from splitcheck import __version__
 from splitcheck.cli import results, streams, targets
+from splitcheck.cli.day import today
 from splitcheck.cli.options import (
     BoardPath,
     ColorFlag,
@@ -25,6 +27,7 @@ from splitcheck.cli.options import (
     Nets,
     Out,
     Quiet,
+    Rules,
     Stack,
     Top,
     check_min_nh,
@@ -75,6 +78,7 @@ def rank(
     top: Top = 20,
     min_nh: MinNh = 0.05,
     stack: Stack = None,
+    rules: Rules = None,
     fail_at: FailLevel = "error",
     jobs: Jobs = None,
     out: Out = None,
@@ -92,7 +96,9 @@ def rank(
 
     check_min_nh(min_nh)
     wanted = targets.parse(out or (), path)
-    options = road.Options(tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs)
+    options = road.Options(
+        tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
+    )
     with streams.progress_bar(quiet=quiet) as progress:
         report = road.rank(path, options, progress)
     results.show(report, terminal.render, wanted, top=top, quiet=quiet, color=color, path=path)
@@ -108,6 +114,7 @@ def read(
     path: BoardPath,
     top: Top = 20,
     stack: Stack = None,
+    rules: Rules = None,
     jobs: Jobs = None,
     out: Out = None,
     quiet: Quiet = False,
@@ -122,7 +129,7 @@ def read(
     from splitcheck.report import readout
 
     wanted = targets.parse(out or (), path)
-    options = road.Options(stack=stack, jobs=jobs)
+    options = road.Options(stack=stack, jobs=jobs, rules=rules, today=today(environ))
     with streams.progress_bar(quiet=quiet) as progress:
         report = road.read(path, options, progress)
     results.show(report, readout.render, wanted, top=top, quiet=quiet, color=color)

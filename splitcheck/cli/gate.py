@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from functools import partial
+from os import environ
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
@@ -10,6 +11,7 @@ import typer
 
 from splitcheck.cli import results, streams, targets
 from splitcheck.cli.commands import app
+from splitcheck.cli.day import today
 from splitcheck.cli.options import (
     ColorFlag,
     Debug,
@@ -20,6 +22,7 @@ from splitcheck.cli.options import (
     Nets,
     Out,
     Quiet,
+    Rules,
     Stack,
     Top,
     check_min_nh,
@@ -63,6 +66,7 @@ def gate(
     top: Top = 20,
     min_nh: MinNh = 0.05,
     stack: Stack = None,
+    rules: Rules = None,
     fail_at: FailLevel = "error",
     jobs: Jobs = None,
     out: Out = None,
@@ -81,7 +85,9 @@ def gate(
 
     check_min_nh(min_nh)
     wanted = targets.parse(out or (), new, *(() if was is None else (was,)))
-    options = road.Options(tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs)
+    options = road.Options(
+        tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
+    )
     old = None if was is None else _revision(was, options, "--was ", quiet=quiet)
     report = _revision(new, options, "", quiet=quiet)
     comparison = None if old is None else compare(old, report)

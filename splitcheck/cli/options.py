@@ -65,6 +65,15 @@ Stack = Annotated[
         help="Layers, thicknesses and polarity, where the files do not say them or say them wrong.",
     ),
 ]
+Rules = Annotated[
+    Path | None,
+    typer.Option(
+        "--rules",
+        metavar="FILE.toml",
+        help="Rules of this board: classes, references, waivers. Else the splitcheck.toml beside "
+        "the export or in the current directory.",
+    ),
+]
 FailLevel = Annotated[
     FailAt,
     typer.Option(
