@@ -11,7 +11,7 @@ from io import TextIOWrapper
 from time import monotonic
 from typing import Literal, TextIO, TypeAlias
 
-from splitcheck.report.words import shorten, visible
+from splitcheck.report.words import inert, shorten, visible
 
 Color: TypeAlias = Literal["auto", "always", "never"]
 Progress: TypeAlias = Callable[[str, int, int], None]
@@ -105,7 +105,7 @@ def complain(sentence: str) -> None:
 
 def complain_raw(text: str) -> None:
     """Several lines on standard error: a traceback somebody asked for."""
-    put("".join(visible(line) + "\n" for line in text.splitlines()), sys.stderr)
+    put("".join(inert(visible(line)) + "\n" for line in text.splitlines()), sys.stderr)
 
 
 @contextmanager

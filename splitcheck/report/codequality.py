@@ -6,6 +6,7 @@ import json
 
 from splitcheck.report import sentences
 from splitcheck.report.identity import identities
+from splitcheck.report.words import quiet
 from splitcheck.verdict.changes import Comparison
 from splitcheck.verdict.findings import Finding, Level, Report
 
@@ -42,7 +43,7 @@ def render(report: Report, comparison: Comparison | None = None) -> str:
         }
         for finding in report.findings
     ]
-    return json.dumps(rows, indent=2, allow_nan=False) + "\n"
+    return quiet(json.dumps(rows, indent=2, allow_nan=False)) + "\n"
 
 
 def _severity(finding: Finding) -> str:

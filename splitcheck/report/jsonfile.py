@@ -11,6 +11,7 @@ from typing import TypeAlias, get_args
 
 from splitcheck import __version__
 from splitcheck.report import tally
+from splitcheck.report.words import quiet
 from splitcheck.verdict.changes import VERDICTS, Change, Comparison
 from splitcheck.verdict.findings import (
     LEVELS,
@@ -53,7 +54,7 @@ def render(report: Report, comparison: Comparison | None = None) -> str:
     whole = _report(report)
     if comparison is not None:
         whole["comparison"] = _comparison(comparison)
-    return json.dumps(whole, indent=2, allow_nan=False) + "\n"
+    return quiet(json.dumps(whole, indent=2, allow_nan=False)) + "\n"
 
 
 def _report(report: Report) -> dict[str, Json]:

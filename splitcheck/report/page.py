@@ -10,7 +10,7 @@ from rich.cells import cell_len
 from rich.console import Console
 from rich.text import Text
 
-from splitcheck.report.words import STICKY, shorten
+from splitcheck.report.words import STICKY, inert, shorten
 
 #: Narrower than this no row of numbers fits; a narrower window wraps it by itself.
 NARROWEST = 80
@@ -141,5 +141,5 @@ class Page:
             self.row(columns, widths, row)
 
     def _put(self, line: Text) -> None:
-        line.plain = line.plain.replace(STICKY, " ")
+        line.plain = inert(line.plain.replace(STICKY, " "))
         self._console.print(line, no_wrap=True, overflow="ignore", crop=False, soft_wrap=True)

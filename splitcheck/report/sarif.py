@@ -12,6 +12,7 @@ from splitcheck import __version__
 from splitcheck.report import sentences
 from splitcheck.report.identity import identities
 from splitcheck.report.kinds import CAUTION, RULES
+from splitcheck.report.words import quiet
 from splitcheck.verdict.changes import Change, Comparison, Verdict
 from splitcheck.verdict.findings import Finding, Level, Report
 
@@ -54,7 +55,7 @@ def render(report: Report, comparison: Comparison | None = None) -> str:
     '2.1.0'
     """
     log = {"$schema": SCHEMA, "version": "2.1.0", "runs": [_run(report, comparison)]}
-    return json.dumps(log, indent=1, allow_nan=False) + "\n"
+    return quiet(json.dumps(log, indent=1, allow_nan=False)) + "\n"
 
 
 def _run(report: Report, comparison: Comparison | None) -> dict[str, Any]:

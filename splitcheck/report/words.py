@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import unicodedata
 from math import floor, isfinite, log10
 
@@ -16,7 +17,9 @@ _LEFT_TO_RIGHT_MARK = "\N{LEFT-TO-RIGHT MARK}"
 #: hold it, for `visible` writes characters of private use as escapes.
 STICKY = "\ue000"
 _DOTS = "..."
+_MARKED = re.compile(r"#(?=#(?:\[|vso\[))", re.IGNORECASE)
 _LONGEST = 2000
+_COMMAND = re.compile(r"^(\s*)(?=::)")
 
 
 def visible(text: str) -> str:
@@ -32,9 +35,13 @@ def visible(text: str) -> str:
     'clk\\x1b[31m'
     >>> visible("a\u202eb")
     'a\\u202eb'
+    >>> visible("##[error]x")
+    '\\x23#[error]x'
     >>> visible("")
     ''
     """
+    if "##" in text:  # how some CI hosts know a command, anywhere in a line
+        text = _MARKED.sub(lambda found: _escape(found.group()), text)
     if text.isascii() and text.isprintable():
         return text
     seen = "".join(
@@ -87,6 +94,30 @@ def _ahead(text: str, cells: int) -> str:
     while end and not _fits(text[:end], cells):
         end -= 1
     return text[:end]
+
+
+def inert(line: str) -> str:
+    r"""A line of a log that no CI host takes for a command: it does not begin with two colons.
+
+    A name that two colons begin may come to stand first where a sentence is wrapped.
+
+    Examples
+    --------
+    >>> inert("  ::error::x"), inert("a::b")
+    ('  \\::error::x', 'a::b')
+    """
+    return _COMMAND.sub(r"\1\\", line)
+
+
+def quiet(text: str) -> str:
+    r"""JSON that means the same and holds no command for a CI host that shows it in a log.
+
+    Examples
+    --------
+    >>> quiet('{"net": "##[error]x"}')
+    '{"net": "\\u0023#[error]x"}'
+    """
+    return _MARKED.sub(r"\\u0023", text)
 
 
 def number(value: float) -> str:

@@ -18,7 +18,17 @@ from hypothesis import strategies as st
 from markdown_it import MarkdownIt
 
 from splitcheck.report import annotations as commands
-from splitcheck.report import codequality, csvfile, junit, markdown, sarif
+from splitcheck.report import (
+    codequality,
+    csvfile,
+    gated,
+    jsonfile,
+    junit,
+    markdown,
+    readout,
+    sarif,
+    terminal,
+)
 from splitcheck.report.words import shorten, visible
 from splitcheck.verdict.findings import Report, Source
 from tests.report import made
@@ -28,6 +38,7 @@ HOSTILE = (
     '"\'<>&"',
     "a\nb\r\nc",
     "::error::pwned",
+    "##[error]pwned ##vso[task.setvariable]x",
     "a\n::error file=x,line=1::pwned",
     "%0A::stop-commands::x",
     "=cmd|' /C calc'!A0",
@@ -239,6 +250,31 @@ def test_annotations_show_the_worst_and_count_the_rest() -> None:
     assert lines[-1].endswith(
         "and 6 more gaps (2 error, 2 warning, 2 note): the summary lists them"
     )
+
+
+@hostile
+@example("::error::pwned")
+def test_no_line_of_any_report_is_a_command(name: str) -> None:
+    """Whatever is shown in a log: no line begins with two colons, none holds a marked command."""
+    report = board(name)
+    comparison = compared(report)
+    pages = [
+        terminal.render(report, top=0, width=80, color=False),
+        readout.render(report, top=0, width=80, color=False),
+        gated.render(report, comparison=comparison, fail_at="error", top=0, width=80, color=False),
+        *(
+            module.render(report, comparison)
+            for module in (jsonfile, sarif, codequality, junit, markdown, csvfile)
+        ),
+    ]
+    for text in pages:
+        for line in text.splitlines():
+            assert not line.lstrip().startswith("::")
+            assert "##[" not in line
+            assert "##vso[" not in line
+    for line in commands.render(report, comparison).splitlines():
+        assert "##[" not in line
+        assert "##vso[" not in line
 
 
 @pytest.mark.parametrize("render", [commands.render, markdown.render, junit.render])
