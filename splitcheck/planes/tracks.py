@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 
 from splitcheck.board.board import Board
 from splitcheck.board.parts import CopperLayer
+from splitcheck.copper.marks import Point
 from splitcheck.errors import SplitcheckError
 from splitcheck.units import Floats, segments
 
@@ -79,13 +80,47 @@ def lay(board: Board, layer: CopperLayer, first_part: int, nets: frozenset[int])
         for (x0, y0), (x1, y1) in zip(stroke.points, stroke.points[1:], strict=False):
             if (x0, y0) != (x1, y1):
                 rows.append((x0, y0, x1, y1, stroke.width_mm, net, stroke.line))
-    table = np.array(sorted(set(rows)), dtype=float).reshape(-1, 7)
+    return _laid(layer.number, np.array(sorted(set(rows)), dtype=float).reshape(-1, 7))
+
+
+def redrawn(
+    tracks: Tracks, net: int, lines: Sequence[tuple[Point, ...]] = (), gone: int = -1
+) -> Tracks:
+    """The traces of one net alone, with a piece of them drawn elsewhere.
+
+    Parameters
+    ----------
+    tracks
+        The traces of a layer.
+    net
+        Number of the net to keep.
+    lines
+        Centre lines to add, mm; as wide as the piece that they stand for, or as the first.
+    gone
+        Index of the piece to leave out, -1 for none.
+    """
+    keep = np.flatnonzero(tracks.net == net)
+    like = gone if gone >= 0 else int(keep[0])
+    more = [
+        (*one, *other, float(tracks.width_mm[like]), net, float(tracks.line[like]))
+        for line in lines
+        for one, other in pairwise(line)
+        if one != other
+    ]
+    keep = keep[keep != gone]
+    columns = tracks.start, tracks.end, tracks.width_mm, tracks.net, tracks.line
+    old = np.column_stack([column[keep] for column in columns])
+    return _laid(tracks.layer, np.concatenate([old, np.array(more).reshape(-1, 7)]))
+
+
+def _laid(layer: int, table: Floats) -> Tracks:
+    """Tracks from rows of start, end, width, net and line."""
     table = _split_where_others_end(table)
     start, end = table[:, 0:2], table[:, 2:4]
     nodes = _nodes(start, end, table[:, 5])
     order = np.argsort(nodes.ravel(), kind="stable")
     return Tracks(
-        layer.number,
+        layer,
         start,
         end,
         np.hypot(*(end - start).T),

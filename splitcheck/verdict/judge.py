@@ -205,7 +205,7 @@ def _look_at(scene: Scene, crossing: Crossing) -> Weighed:
 
 def value_again(
     scene: Scene, crossings: Sequence[Crossing], *, all_of_them: bool = False
-) -> tuple[Inductance | None, ...]:
+) -> tuple[tuple[Inductance, float] | None, ...]:
     """Value crossings in a scene that was changed, each by itself, as ``judge`` would.
 
     Parameters
@@ -219,20 +219,22 @@ def value_again(
 
     Returns
     -------
-    What each adds; None where there is no way back. Those that would be no finding are left out.
+    What each adds and the noise in mV; None where there is no way back. Those that would be no
+    finding are left out.
     """
-    if all_of_them:
-        solved = [_solve_all(scene, [_look_at(scene, one)], map) for one in crossings]
-        return tuple(field[0].value for field in solved if field)
-    weighed = [
-        item for item in (_weigh(scene, one) for one in crossings) if not isinstance(item, str)
-    ]
-    values = []
-    for item in _once_a_gap(weighed):
+    weighed = [_look_at(scene, one) if all_of_them else _weigh(scene, one) for one in crossings]
+    values: list[tuple[Inductance, float] | None] = []
+    for item in _once_a_gap([item for item in weighed if not isinstance(item, str)]):
         field = _solve_all(scene, [item], map).get(0)
         value = item.estimate if field is None else field.value
-        if value is None or value.added_nh >= scene.min_nh:
-            values.append(value)
+        if all_of_them and field is None:
+            continue
+        if value is None:
+            values.append(None)
+        elif all_of_them or value.added_nh >= scene.min_nh:
+            drive = scene.drive_of(item.crossing.net)
+            noise = noise_over_gap(value.added_nh, drive, _along_ns(scene, item))
+            values.append((value, noise.mv))
     return tuple(values)
 
 

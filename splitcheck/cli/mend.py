@@ -1,0 +1,85 @@
+"""The command ``mend``: what could be done about the worst findings, or about those named."""
+
+from __future__ import annotations
+
+from functools import partial
+from os import environ
+from typing import Annotated
+
+import typer
+
+from splitcheck.cli import results, streams, targets
+from splitcheck.cli.commands import app
+from splitcheck.cli.day import today
+from splitcheck.cli.options import (
+    BoardPath,
+    ColorFlag,
+    Debug,
+    Jobs,
+    Layers,
+    MinNh,
+    Nets,
+    Out,
+    Quiet,
+    Rules,
+    Stack,
+    check_min_nh,
+    ending,
+)
+
+Findings = Annotated[
+    list[str] | None,
+    typer.Argument(
+        metavar="[FINDING...]", help="Ids of findings as `rank` numbers them, such as F3."
+    ),
+]
+Worst = Annotated[
+    int,
+    typer.Option(
+        "--worst", metavar="N", min=1, help="Mend so many of the worst; if no finding is named."
+    ),
+]
+
+
+@app.command(
+    epilog=ending(
+        "splitcheck mend gerbers/",
+        "splitcheck mend gerbers/ F2 F7",
+        "splitcheck mend board.zip --worst 10 --out json=mended.json",
+    )
+)
+def mend(
+    path: BoardPath,
+    finding: Findings = None,
+    worst: Worst = 3,
+    net: Nets = None,
+    layer: Layers = None,
+    min_nh: MinNh = 0.05,
+    stack: Stack = None,
+    rules: Rules = None,
+    jobs: Jobs = None,
+    out: Out = None,
+    quiet: Quiet = False,
+    color: ColorFlag = "auto",
+    debug: Debug = False,
+) -> None:
+    """Propose what would mend findings; it edits nothing.
+
+    Stitching vias, capacitors, bridges of copper and moved traces, where there is room, each with
+    what is left of the added nH and mV, found by the same solve. Ends with 0 whatever it finds.
+    """
+    from splitcheck import road
+    from splitcheck.report import mending
+
+    check_min_nh(min_nh)
+    wanted = targets.parse(out or (), path)
+    options = road.Options(
+        tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
+    )
+    with streams.progress_bar(quiet=quiet) as progress:
+        walked = road.look(path, options, progress)
+        standing = [f.id for f in walked.report.findings if f.waived is None]
+        ids = tuple(finding or standing[:worst])
+        report = road.mend(walked, ids)
+    render = partial(mending.render, ids=ids)
+    results.show(report, render, wanted, top=0, quiet=quiet, color=color, path=path)

@@ -1,0 +1,102 @@
+"""What would mend findings, as text for people: each proposal with what it leaves, best first."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from rich.text import Text
+
+from splitcheck import __version__
+from splitcheck.report.page import Page
+from splitcheck.report.words import number, shorten, with_error
+from splitcheck.verdict.findings import Finding, Proposal, Report
+
+KEPT = (
+    "Proposals keep 0.2 mm to other nets, 0.25 mm between holes and 0.3 mm to the outline, as far "
+    "as these files tell: bodies of parts, holes that are not plated, rules of the maker and what "
+    "a supply has to carry are not known here. Nothing was changed: draw what you choose in your "
+    "CAD system, export, and run `rank` again."
+)
+ISOLATION = (
+    "CAUTION. Proposals marked (!) lie across two pieces of copper that share no net and no "
+    "bridge: the gap may be an isolation barrier. Parts that bridge one must be safety-rated, and "
+    "the applicable product-safety standard, local code and a qualified engineer decide whether "
+    "anything may."
+)
+NOTHING = (
+    "Nothing to propose: no via, capacitor, bridge of copper or move within reach has room and "
+    "takes away 5 % or more."
+)
+_NAME_CELLS = 40
+
+
+def render(
+    report: Report, *, top: int, width: int, color: bool, ids: Sequence[str] | None = None
+) -> str:
+    """Write what would mend findings as text.
+
+    Parameters
+    ----------
+    top
+        How many proposals to show for each finding; 0 shows all.
+    width
+        Columns of the terminal.
+    color
+        Whether to colour; nothing is said by colour alone.
+    ids
+        Ids of the findings that were asked for; None: those that have proposals.
+    """
+    page = Page(width, color=color)
+    asked = [
+        finding
+        for finding in report.findings
+        if (finding.proposals if ids is None else finding.id in ids)
+    ]
+    wide, high = report.size_mm
+    name = shorten(report.board, _NAME_CELLS)
+    page.say(
+        f"splitcheck {__version__}: {name}, {wide:.2f} x {high:.2f} mm", indent=0, style="bold"
+    )
+    for finding in asked:
+        _finding(page, finding, top)
+    if not asked:
+        page.gap()
+        page.say("Nothing to mend: no finding.", indent=0)
+    page.gap()
+    page.say(KEPT, indent=0)
+    if any(proposal.isolation for finding in asked for proposal in finding.proposals):
+        page.gap()
+        page.say(ISOLATION, indent=0)
+    return str(page)
+
+
+def _finding(page: Page, finding: Finding, top: int) -> None:
+    over = f" over {shorten(finding.plane_layer, _NAME_CELLS)}" if finding.plane_layer else ""
+    net = shorten(finding.net, _NAME_CELLS)
+    page.heading(f"{finding.id}  {finding.level}  {finding.kind}  {net}")
+    x_mm, y_mm = (round(value, 3) + 0.0 for value in finding.at_mm)
+    where = f"{shorten(finding.layer, _NAME_CELLS)}{over}, x {x_mm:.3f} y {y_mm:.3f} mm"
+    page.say(f"{where}: {_now(finding)}")
+    for place, proposal in enumerate(finding.proposals, start=1):
+        if top and place > top:
+            break
+        _proposal(page, place, proposal)
+    if not finding.proposals:
+        page.say(NOTHING)
+
+
+def _now(finding: Finding) -> str:
+    if finding.added_nh is None:
+        return "no way back"
+    noise = "" if finding.noise_mv is None else f", {number(finding.noise_mv)} mV"
+    return f"{with_error(finding.added_nh, finding.error_nh)} nH{noise}"
+
+
+def _proposal(page: Page, place: int, proposal: Proposal) -> None:
+    mark = "(!) " if proposal.isolation else ""
+    left = with_error(proposal.added_nh, proposal.error_nh)
+    page.say_text(
+        Text(f"{mark}{proposal.what}: leaves {left} nH, {number(proposal.noise_mv)} mV"),
+        lead=f"{place}. ",
+    )
+    page.say(proposal.words, indent=5)

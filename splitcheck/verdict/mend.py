@@ -1,0 +1,149 @@
+"""Mend: what could be done about findings, each proposal valued by the road itself, best first."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from dataclasses import replace
+
+import numpy as np
+
+from splitcheck.errors import SplitcheckError
+from splitcheck.planes.changes import find_changes
+from splitcheck.planes.crossings import find_crossings
+from splitcheck.planes.tracks import Tracks, redrawn
+from splitcheck.verdict.around import LONG_RUN, exempt
+from splitcheck.verdict.findings import Finding, Proposal, Report
+from splitcheck.verdict.plane_changes import Case as Change
+from splitcheck.verdict.plane_changes import change_findings, from_leaving, from_long_runs
+from splitcheck.verdict.proposals.capacitors import capacitors
+from splitcheck.verdict.proposals.case import Case
+from splitcheck.verdict.proposals.copper import copper
+from splitcheck.verdict.proposals.handing import return_capacitors, return_vias
+from splitcheck.verdict.proposals.moves import moves
+from splitcheck.verdict.proposals.room import Room
+from splitcheck.verdict.proposals.vias import vias
+from splitcheck.verdict.scene import Judged, Scene
+
+#: No more proposals of one kind are kept for a finding.
+MOST_OF_A_KIND = 2
+
+
+def mend(
+    report: Report,
+    tracks: Sequence[Tracks],
+    scene: Scene,
+    judged: Judged,
+    ids: Iterable[str],
+) -> Report:
+    """Fill in what would mend some findings.
+
+    Parameters
+    ----------
+    report
+        The report; it is left as it is.
+    tracks, scene, judged
+        What lies behind it.
+    ids
+        Ids of findings.
+
+    Returns
+    -------
+    The report with proposals, those that leave least first; a finding that nothing here helps
+    keeps none.
+
+    Raises
+    ------
+    SplitcheckError
+        If there is no finding of such an id.
+
+    Notes
+    -----
+    Nothing is proposed that does not gain, by the same search and solve in the changed board.
+    """
+    wanted = _known(report, ids)
+    room = Room(scene.board, scene.planes)
+    findings = tuple(
+        replace(finding, proposals=proposals_for(finding, tracks, scene, judged, room))
+        if finding.id in wanted
+        else finding
+        for finding in report.findings
+    )
+    return replace(report, findings=findings)
+
+
+def _known(report: Report, ids: Iterable[str]) -> frozenset[str]:
+    wanted = frozenset(ids)
+    strangers = sorted(wanted - {finding.id for finding in report.findings})
+    if strangers:
+        count = len(report.findings)
+        known = f"this report has F1 to F{count}" if count else "this report has no findings"
+        wrong = "there is no such finding"
+        raise SplitcheckError(f"finding {strangers[0]}", wrong, f"{known}; `rank` lists them")
+    return wanted
+
+
+def proposals_for(
+    finding: Finding, tracks: Sequence[Tracks], scene: Scene, judged: Judged, room: Room
+) -> tuple[Proposal, ...]:
+    """What would mend one finding, best first; empty for kinds that nothing here helps."""
+    case = _case(finding, tracks, scene, judged, room)
+    if case is None:
+        return ()
+    kept: list[Proposal] = []
+    for way in _ways(case):
+        kept.extend(sorted(way(case), key=_best_first)[:MOST_OF_A_KIND])
+    return tuple(sorted(kept, key=_best_first))
+
+
+def _ways(case: Case) -> tuple[Callable[[Case], Iterator[Proposal]], ...]:
+    if case.item is not None:
+        return vias, capacitors, copper, moves
+    return (return_vias, return_capacitors) if case.change is not None else (copper,)
+
+
+def _best_first(proposal: Proposal) -> tuple[float, int, str]:
+    """What leaves least; of equals what touches fewer places."""
+    return round(proposal.added_nh, 4), len(proposal.at_mm), proposal.words
+
+
+def _case(
+    finding: Finding, tracks: Sequence[Tracks], scene: Scene, judged: Judged, room: Room
+) -> Case | None:
+    item = judged.weighed.get(finding.id)
+    numbers = {layer.name: layer.number for layer in scene.board.stack.layers}
+    own = next((t for t in tracks if t.layer == numbers[finding.layer]), None)
+    if own is None:
+        return None
+    nets = {net.number for net in scene.board.nets if net.name == finding.net}
+    net = _net_at(own, nets, finding) if item is None else item.crossing.net
+    if item is None and finding.kind == "plane-change":
+        change = _change(scene, tracks, net, finding)
+        return None if change is None else Case(scene, room, finding, net, own, None, change)
+    if item is None and finding.kind != "no-plane":
+        return None
+    return Case(scene, room, finding, net, redrawn(own, net), item)
+
+
+def _change(scene: Scene, tracks: Sequence[Tracks], net: int, finding: Finding) -> Change | None:
+    """The change of planes behind a finding: the one that is told in the same words."""
+    own = [redrawn(t, net) for t in tracks if (t.net == net).any()]
+    planes = tuple(scene.planes.values())
+    cases = [Change((change,), 0.0) for change in find_changes(scene.board, planes, own)]
+    walked = [find_crossings(t, planes) for t in own]
+    runs = [c for found, _ in walked for c in found if exempt(scene, c) == LONG_RUN]
+    leaving = [trace for _, bare in walked for trace in bare]
+    cases += [*from_leaving(scene, leaving), *from_long_runs(scene, runs)]
+    for case in cases:
+        for told in change_findings(scene, [case], defaultdict(int)):
+            if (told.at_mm, told.reason) == (finding.at_mm, finding.reason):
+                return case
+    return None
+
+
+def _net_at(tracks: Tracks, nets: set[int], finding: Finding) -> int:
+    """Which of several nets of one name a finding is on."""
+    pieces = np.flatnonzero(np.isin(tracks.net, sorted(nets)))
+    middles = (tracks.start[pieces] + tracks.end[pieces]) / 2
+    far = np.hypot(*(middles - np.asarray(finding.at_mm)).T)
+    return int(tracks.net[pieces[int(np.argmin(far))]])

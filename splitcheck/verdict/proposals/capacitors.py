@@ -1,0 +1,191 @@
+"""A capacitor across a split between two nets, where its pads and vias have room."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import replace
+from typing import NamedTuple
+
+import numpy as np
+import shapely
+from shapely import LineString
+
+from splitcheck.loops.bridges import with_capacitor
+from splitcheck.loops.mounted import STRIP_MM, mounted_nh
+from splitcheck.loops.ways import heading
+from splitcheck.units import Floats
+from splitcheck.verdict.findings import Point, Proposal
+from splitcheck.verdict.proposals.case import Case, worth_of
+from splitcheck.verdict.proposals.room import HOLE_MM, PAD_MM
+
+#: Pads of an 0603 part: sides, and distance of their middles (common practice, no source).
+PAD_SIDES_MM = (0.8, 0.9)
+PADS_APART_MM = 1.6
+#: Distance from a pad's middle to that of its via: both pads touch, and no hole is in the part's.
+TO_VIA_MM = 0.8
+#: So far to either side of the trace places are looked at, mm, in these steps.
+FARTHEST_MM = 10.0
+STEP_MM = 0.25
+#: Split planes are looked for so far before and after the gap, mm.
+ACROSS_MM = 4.0
+#: So many free places are tried, this far from one another, mm.
+TRIED = 2
+PLACES_APART_MM = 3.0
+
+
+class Mount(NamedTuple):
+    """A place for a capacitor."""
+
+    layer: int
+    """The outer layer that it is on."""
+    pads: tuple[Point, Point]
+    """Middles of its two pads."""
+    down: tuple[Point, Point]
+    """Where its current leaves the one plane and enters the other."""
+    opened: tuple[str, ...]
+    """Foreign pours that must be opened for it."""
+    value_nh: float
+    """Its inductance as mounted."""
+
+
+def capacitors(case: Case) -> Iterator[Proposal]:
+    """Propose a capacitor beside the trace, nearest places first."""
+    one, other = case.islands
+    if one.id == other.id or one.net_name == other.net_name:
+        return
+    for mount in _mounts(case):
+        graph = with_capacitor(
+            case.scene.graph,
+            one.id,
+            other.id,
+            *mount.down,
+            mount.value_nh,
+            layer=mount.layer,
+            ref="a new capacitor",
+        )
+        worth = worth_of(replace(case.scene, graph=graph), case.item.runs if case.item else ())
+        said = mount_words(case, mount, one.net_name, other.net_name)
+        found = case.proposal("capacitor", mount.pads, said, worth)
+        if found is not None:
+            yield found
+
+
+def _mounts(case: Case) -> Iterator[Mount]:
+    """Free places for a capacitor, nearest to the trace first."""
+    outer = (1, len(case.scene.board.stack.layers))
+    taken: list[float] = []
+    for aside in sorted(np.arange(-FARTHEST_MM, FARTHEST_MM + STEP_MM / 2, STEP_MM), key=abs):
+        if any(abs(aside - other) < PLACES_APART_MM for other in taken):
+            continue
+        across = _across(case, float(aside))
+        if across is None:
+            continue
+        for layer in sorted(outer, key=lambda n: (abs(n - case.crossing.plane), n)):
+            mount = _mount(case, layer, *across)
+            if mount is not None:
+                yield mount
+                taken.append(float(aside))
+                break
+        if len(taken) == TRIED:
+            return
+
+
+def _across(case: Case, aside: float) -> tuple[Floats, Floats] | None:
+    """Where both planes begin, so far aside of the trace; None if they do not face each other."""
+    (dx, dy), at = heading(case.crossing), np.array(case.crossing.at)
+    ahead, left = np.array([dx, dy]), np.array([-dy, dx])
+    steps = np.linspace(-ACROSS_MM, ACROSS_MM, 161)
+    places = at + aside * left + steps[:, None] * ahead
+    islands = case.plane.island_at(places[:, 0], places[:, 1])
+    one, other = case.crossing.islands
+    start = np.flatnonzero(islands == one)
+    stop = np.flatnonzero(islands == other)
+    stop = stop[stop > start.max(initial=-1)]
+    if not len(start) or not len(stop):
+        return None
+    start = start[start < stop[0]]
+    return places[start[-1]], places[stop[0]]
+
+
+def _mount(case: Case, layer: int, start: Floats, stop: Floats) -> Mount | None:
+    """A part across the gap on one outer layer, if all of it has room."""
+    gap = float(np.hypot(*(stop - start)))
+    ahead = np.array(heading(case.crossing))
+    middle = (start + stop) / 2
+    on_layer = layer == case.crossing.plane
+    half = PADS_APART_MM / 2
+    if on_layer and gap / 2 + PAD_SIDES_MM[0] / 2 > half + PAD_SIDES_MM[0] / 4:
+        return None  # the pads would not land on the planes
+    reach = half if on_layer else max(half + TO_VIA_MM, gap / 2 + PAD_MM)
+    pads = tuple(_place(middle + sign * half * ahead) for sign in (-1, 1))
+    down = tuple(_place(middle + sign * reach * ahead) for sign in (-1, 1))
+    opened: list[str] = []
+    for end in (0, 1):
+        found = _room(case, layer, end, pads[end], down[end], on_layer=on_layer)
+        if found is None:
+            return None
+        opened.extend(found)
+    stack = case.scene.board.stack
+    depth = 0.0 if on_layer else stack.height_mm(layer, case.crossing.plane)
+    value = mounted_nh(2 * reach, (depth, depth), HOLE_MM)
+    return Mount(layer, (pads[0], pads[1]), (down[0], down[1]), tuple(sorted(set(opened))), value)
+
+
+def _room(
+    case: Case, layer: int, end: int, pad: Point, down: Point, *, on_layer: bool
+) -> tuple[str, ...] | None:
+    """Pours that one end of a capacitor opens; None where it has no room."""
+    number = int(case.plane.island_at(np.array([down[0]]), np.array([down[1]]))[0])
+    if number != case.crossing.islands[end]:
+        return None
+    ahead = heading(case.crossing)
+    return room_for_end(
+        case, layer, case.islands[end].net_name, pad, None if on_layer else down, ahead
+    )
+
+
+def room_for_end(
+    case: Case, layer: int, net: str, pad: Point, down: Point | None, ahead: Point
+) -> tuple[str, ...] | None:
+    """Pours that a pad of a net, its via and the strip between them open; None: no room.
+
+    Parameters
+    ----------
+    layer
+        The outer layer that the part is on.
+    pad, down
+        Middle of the pad, and the via that leads on from it, if one does, mm.
+    ahead
+        Unit vector along the part.
+    """
+    wide, high = PAD_SIDES_MM
+    half = np.array(ahead) * wide / 2
+    copper = LineString([pad - half, pad + half]).buffer(high / 2, cap_style="flat")
+    if down is None:
+        return case.room.openings(copper, layer, net)
+    strip = LineString([pad, down]).buffer(STRIP_MM / 2)
+    found = case.room.openings(shapely.union(copper, strip), layer, net)
+    if found is None:
+        return None
+    through = case.room.via(down, net)
+    return None if through is None else (*found, *through)
+
+
+def _place(at: Floats) -> Point:
+    return round(float(at[0]), 3), round(float(at[1]), 3)
+
+
+def mount_words(case: Case, mount: Mount, one: str, other: str) -> str:
+    """What to put where, in one sentence."""
+    (x0, y0), (x1, y1) = mount.pads
+    said = (
+        f"a capacitor (0603) on {case.layer_name(mount.layer)} from {one} at "
+        f"x {x0:.2f} y {y0:.2f} to {other} at x {x1:.2f} y {y1:.2f}"
+    )
+    if mount.down != mount.pads:
+        (x0, y0), (x1, y1) = mount.down
+        said += f", its vias at x {x0:.2f} y {y0:.2f} and x {x1:.2f} y {y1:.2f}"
+    said += f"; taken as {mount.value_nh:.2f} nH as mounted"
+    if mount.opened:
+        said += f"; opens {', '.join(mount.opened)}"
+    return said
