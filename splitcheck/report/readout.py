@@ -33,6 +33,7 @@ def render(report: Report, *, top: int, width: int, color: bool) -> str:
     _files(page, report)
     _sentences(page, "Facts", report.facts, "None.")
     _islands(page, report, top)
+    _classes(page, report)
     _nets(page, report, top)
     _sentences(page, "Assumed", report.assumptions, "Nothing that changes results.")
     _sentences(page, "Remarks on the files", report.remarks, "None.")
@@ -78,6 +79,37 @@ def _islands(page: Page, report: Report, top: int) -> None:
     )
     rows = [(row.id, row.layer, row.net, number(row.area_mm2)) for row in islands]
     _listed(page, columns, rows, top, "island")
+
+
+def _classes(page: Page, report: Report) -> None:
+    page.heading("Classes of nets, and what their nets are judged by")
+    columns = (
+        Column("class"),
+        Column("nets", "right"),
+        Column("rise\nns", "right"),
+        Column("wave\nmV", "right"),
+        Column("line\nohm", "right"),
+        Column("error\nmV", "right"),
+        Column("warning\nmV", "right"),
+    )
+    rows = [
+        (
+            row.name,
+            str(row.nets),
+            *(
+                ("exempt", "-", "-", "-", "-")
+                if row.exempt
+                else map(
+                    number, (row.rise_ns, row.wave_mv, row.line_ohm, row.error_mv, row.warning_mv)
+                )
+            ),
+        )
+        for row in report.classes
+    ]
+    if not rows:
+        page.say("None.")
+        return
+    page.table(columns, rows)
 
 
 def _nets(page: Page, report: Report, top: int) -> None:

@@ -14,7 +14,15 @@ from splitcheck.report import tally
 from splitcheck.report.page import Column, Page
 from splitcheck.report.sums import say_sums
 from splitcheck.report.words import STICKY, number, plural, shorten, with_error
-from splitcheck.verdict.findings import LEVELS, Finding, Kind, Level, Method, Report
+from splitcheck.verdict.findings import (
+    LEVELS,
+    Finding,
+    Kind,
+    Level,
+    Method,
+    Report,
+    WaiverRow,
+)
 
 #: How each level is coloured; its word always stands beside it.
 LEVEL_STYLES: dict[Level, str] = {"error": "bold red", "warning": "yellow", "note": "cyan"}
@@ -184,7 +192,7 @@ def _where(finding: Finding) -> str:
 
 
 def _extras(finding: Finding) -> str:
-    """What only a field solution knows, and the partner of a pair."""
+    """What only a field solution knows, the partner of a pair, and what others over the gap do."""
     parts = []
     if finding.stray_db is not None:
         parts.append(f"stray field {finding.stray_db:+.1f} dB")
@@ -193,6 +201,13 @@ def _extras(finding: Finding) -> str:
         parts.append(f"above {corner} kHz the return follows inductance, not resistance")
     if finding.pair is not None:
         parts.append(f"pair with {shorten(finding.pair, _NET_CELLS)}")
+    if finding.crosstalk_mv is not None:
+        heard = number(finding.crosstalk_mv)
+        parts.append(f"{heard} mV from the others over the gap when they switch together")
+    if finding.capped:
+        parts.append(
+            "a gap so long for this rise time that the noise stands at its limit as a line"
+        )
     return "; ".join(parts)
 
 
@@ -216,6 +231,13 @@ def _sharers(group: Sequence[Finding], room: int) -> str:
         shown.append(name)
     rest = f" and {len(nets) - len(shown)} more" if len(shown) < len(nets) else ""
     return start + ", ".join(shown) + rest
+
+
+def _idle_waiver(row: WaiverRow) -> str:
+    """A waiver that waives nothing, and why."""
+    where = f"{shorten(row.source.file, 60)}:{row.source.line}"
+    why = f"expired on {row.until}" if row.state == "expired" else "matches nothing"
+    return f"waiver {where} {why}: {shorten(row.reason, _LONGEST_NAME)}"
 
 
 def _in_all(page: Page, report: Report) -> None:
@@ -243,6 +265,9 @@ def _in_all(page: Page, report: Report) -> None:
     waived = len(report.findings) - len(found)
     if waived:
         page.say(f"{plural(waived, 'waived finding')}, not counted above")
+    for row in report.waivers:
+        if row.state != "used":
+            page.say(_idle_waiver(row))
     for count in report.counts:
         if count.number:
             page.say(f"{count.number} {count.what}")
