@@ -36,6 +36,7 @@ from splitcheck.verdict.judge import judge
 from splitcheck.verdict.mend import mend as proposals
 from splitcheck.verdict.packs import rules_of, shipped_files, shipped_rules
 from splitcheck.verdict.pictures import draw
+from splitcheck.verdict.placed import with_capacitors
 from splitcheck.verdict.rulesfile import RULES_FILE, read_rules
 from splitcheck.verdict.scene import Judged, Scene
 from splitcheck.verdict.summary import Seen, summarise
@@ -152,7 +153,8 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judging: b
     with clock.stage("board"):
         assembled = build(export, layers, options)
         known = know_rules(path, assembled.board, options)
-        board = replace(assembled.board, references=known.references)
+        board = with_capacitors(assembled.board, known.placed, known.rules.capacitors)
+        board = replace(board, references=known.references)
         assembled = replace(assembled, board=board)
     with clock.stage("planes"):
         planes = find_planes(assembled.board)

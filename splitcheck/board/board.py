@@ -30,3 +30,5 @@ class Board:
     """Parts on the board, by reference; empty if no file tells them."""
     references: frozenset[int] = frozenset()
     """Numbers of the nets that the rules say carry returns, whatever they are called."""
+    capacitors: tuple[str, ...] = ()
+    """References of components that the rules say are capacitors."""

@@ -10,7 +10,7 @@ from typing import Literal, NamedTuple, TypeAlias
 from splitcheck.copper.marks import Point
 
 #: Where a component is known from.
-Origin: TypeAlias = Literal["attributes", "netlist", "placement"]
+Origin: TypeAlias = Literal["attributes", "netlist", "placement", "rules"]
 
 _REF = re.compile(r"([A-Za-z]+)[\d_?]")
 _ZERO = re.compile(

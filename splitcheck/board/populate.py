@@ -23,6 +23,7 @@ _SOURCES: tuple[tuple[Origin, str], ...] = (
     ("attributes", "X2 attributes of pads"),
     ("netlist", "the netlist"),
     ("placement", "the centres of placed parts"),
+    ("rules", "the rules"),
 )
 
 

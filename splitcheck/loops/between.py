@@ -63,7 +63,7 @@ def standing_between(board: Board, by_part: Mapping[int, Island]) -> Iterator[St
     for each. A part whose pads reach one and the same island joins nothing.
     """
     parts: list[tuple[BridgeKind, Component]] = [
-        *(("capacitor", part) for part in capacitors_of(board.components)),
+        *(("capacitor", part) for part in capacitors_of(board.components, board.capacitors)),
         *(("copper", part) for part in links_of(board.components)),
     ]
     ways = _ways_down(board, {pin.part for _, part in parts for pin in part.pins}, by_part)

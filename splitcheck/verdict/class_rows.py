@@ -35,12 +35,12 @@ def class_sentences(known: Known, judged: Collection[int]) -> tuple[str, ...]:
         more = f" and {len(ranked) - _NAMED} more classes" if len(ranked) > _NAMED else ""
         known_by = Counter(_known_by(known, net) for net in drives)
         by = [
-            f"{known_by[how]} by {words}"
+            f"{words} ({known_by[how]})"
             for how, words in (("name", "name"), ("component", "crystal"), ("rules", "rules"))
             if known_by[how]
         ]
         sentences.append(
-            f"{sum(named.values())} nets are judged by their class, known {' and '.join(by)}: "
+            f"{sum(named.values())} nets are judged by their class, known by {', '.join(by)}: "
             f"{shown}{more}; rise times are the fast limits of the interfaces, and splitcheck.toml "
             "can say otherwise."
         )

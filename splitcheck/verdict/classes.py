@@ -14,7 +14,7 @@ from splitcheck.errors import SplitcheckError
 from splitcheck.verdict.findings import InputRow
 from splitcheck.verdict.patterns import Names, Words, is_pattern, spellings, ways_to_write
 from splitcheck.verdict.rules import Assignment, Class, Rules
-from splitcheck.verdict.rulesfile import RulesFile
+from splitcheck.verdict.rulesfile import PlacedCapacitor, RulesFile
 
 #: How the class of a net is known.
 KnownBy: TypeAlias = Literal["rules", "name", "component", "nothing"]
@@ -37,6 +37,8 @@ class Known:
     """How the class of each net is known, by its number."""
     references: frozenset[int] = frozenset()
     """Numbers of the nets that the rules say carry returns."""
+    placed: tuple[PlacedCapacitor, ...] = ()
+    """Capacitors that the rules place."""
     file: InputRow | None = None
     """The board's own file of rules, if it has one."""
 
@@ -96,6 +98,7 @@ def know(board: Board, rules: Rules, own: RulesFile | None = None) -> Known:
         frozenset(net.number for net in board.nets if Names(rules.references).match(net.name))
         if rules.references
         else frozenset(),
+        () if own is None else own.placed,
     )
 
 

@@ -160,16 +160,20 @@ class Table:
         value = self.data.get(key)
         if value is None:
             return None
-        good = (
-            isinstance(value, list)
-            and len(value) == 2
-            and all(isinstance(v, int | float) and not isinstance(v, bool) for v in value)
-            and all(isfinite(v) and abs(v) < 1e5 for v in value)
-        )
-        if not good:
+        if not _is_place(value):
             wrong = f"{key} = {shown(value)} is no place"
             raise SplitcheckError(self.place(key), wrong, f"write {key} = [x, y], in mm")
         return float(value[0]), float(value[1])
+
+    def points(self, key: str) -> tuple[tuple[float, float], ...] | None:
+        """A list of places, mm; None if the key is not there."""
+        value = self.data.get(key)
+        if value is None:
+            return None
+        if not isinstance(value, list) or not all(_is_place(one) for one in value):
+            wrong = f"{key} = {shown(value)} are no places"
+            raise SplitcheckError(self.place(key), wrong, f"write {key} = [[x, y], [x, y]], in mm")
+        return tuple((float(x), float(y)) for x, y in value)
 
     def day(self, key: str) -> date | None:
         """A day; None if the key is not there."""
@@ -227,6 +231,16 @@ def shown(value: Any) -> str:
     if isinstance(value, str):
         text = f'"{text[1:-1]}"'
     return text if len(text) <= 60 else text[:39] + "..."
+
+
+def _is_place(value: Any) -> bool:
+    """Whether a value is two numbers that can be a place on a board, mm."""
+    return (
+        isinstance(value, list)
+        and len(value) == 2
+        and all(isinstance(v, int | float) and not isinstance(v, bool) for v in value)
+        and all(isfinite(v) and abs(v) < 1e5 for v in value)
+    )
 
 
 def check_pattern(text: str, place: str) -> None:

@@ -11,7 +11,7 @@ from typing import Any, get_args
 
 from splitcheck.errors import SplitcheckError
 from splitcheck.verdict.entries import Table, check_pattern, shown
-from splitcheck.verdict.findings import Kind, Source
+from splitcheck.verdict.findings import Kind, Point, Source
 from splitcheck.verdict.rules import WAIVED_RADIUS_MM, Assignment, SupplyReference, Waiver
 from splitcheck.verdict.tomltext import read_toml
 
@@ -34,9 +34,10 @@ _LISTS = ("words", "names", "unless")
 _FLAGS = ("differential", "exempt")
 _CLASS_KEYS = (*_NUMBERS, *_LISTS, *_FLAGS, "about", "like", "source")
 _FILE_KEYS = (
-    "class", "nets", "reference", "supply_reference", "capacitors", "pair", "waive",
+    "class", "nets", "reference", "supply_reference", "capacitors", "capacitor", "pair", "waive",
     "plane_change", "edge_run", "error_share", "warning_share", "never_exempt", "source",
 )  # fmt: skip
+_PLACED = ("ref", "pads_mm", "side")
 _ASSIGNED = ("class", "rise_ns", "current_ma")
 _WAIVED = ("net", "kind", "at_mm", "radius_mm", "fingerprint", "reason", "until")
 
@@ -73,6 +74,17 @@ class PairEntry:
 
 
 @dataclass(frozen=True, slots=True)
+class PlacedCapacitor:
+    """A capacitor by the places of its two pads."""
+
+    ref: str
+    pads_mm: tuple[Point, Point]
+    top: bool
+    """Whether it is on the upper side of the board."""
+    place: str
+
+
+@dataclass(frozen=True, slots=True)
 class RulesFile:
     """A file of rules, each value checked for itself."""
 
@@ -84,6 +96,7 @@ class RulesFile:
     supply_reference: SupplyReference | None = None
     references: tuple[Listed, ...] = ()
     capacitors: tuple[Listed, ...] = ()
+    placed: tuple[PlacedCapacitor, ...] = ()
     pairs: tuple[PairEntry, ...] = ()
     waivers: tuple[Waiver, ...] = ()
 
@@ -123,6 +136,7 @@ def read_rules(text: str, name: str) -> RulesFile:
         top.choice("supply_reference", get_args(SupplyReference)),
         _listed(top, "reference"),
         _listed(top, "capacitors"),
+        tuple(_placed(table, number) for number, table in enumerate(top.tables("capacitor"), 1)),
         tuple(_pair(table) for table in top.tables("pair")),
         tuple(_waiver(table) for table in top.tables("waive")),
     )
@@ -210,6 +224,18 @@ def _top_numbers(top: Table) -> list[tuple[str, float]]:
         found.append(("edge_heights", edge.number("heights", 0.0, 100.0)))
         found.append(("edge_mm", edge.number("mm", 0.0, 100.0)))
     return [(key, value) for key, value in found if value is not None]
+
+
+def _placed(table: Table, number: int) -> PlacedCapacitor:
+    table.allow(_PLACED)
+    pads = table.points("pads_mm")
+    if pads is None or len(pads) != 2 or pads[0] == pads[1]:
+        wrong = "a capacitor has two pads at two places"
+        do = "write pads_mm = [[x, y], [x, y]], in mm"
+        raise SplitcheckError(table.place("pads_mm"), wrong, do)
+    side = table.choice("side", ("top", "bottom")) or "top"
+    ref = table.pattern("ref") or f"capacitor {number}"
+    return PlacedCapacitor(ref, (pads[0], pads[1]), side == "top", table.place("pads_mm"))
 
 
 def _pair(table: Table) -> PairEntry:

@@ -101,7 +101,7 @@ def by_rule(scene: Scene, plane_nets: Sequence[str], level: Level) -> tuple[str,
     supplies = [name for name in dict.fromkeys(plane_nets) if is_supply_plane(name)]
     if rule == "allowed" or not supplies:
         return "", level
-    said = f"; {' and '.join(supplies)} as a reference is {_by_rule(scene)}"
+    said = f"; a reference on {' and '.join(supplies)} is {_by_rule(scene)}"
     return said, "warning" if rule == "forbidden" and level == "note" else level
 
 
