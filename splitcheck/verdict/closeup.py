@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from itertools import pairwise
 from math import log10
 from typing import TypeAlias
 
@@ -95,6 +94,7 @@ class Closeups:
             whole=whole,
             broken=broken,
             impedance=self._impedance(finding, item, height_mm),
+            fed_mm=_fed(broken, item, window),
             facts=self._facts(finding, item, height_mm),
         )
 
@@ -214,8 +214,8 @@ class Closeups:
         (x0, y0), (x1, y1) = crossing.path[0], crossing.path[-1]
         nearest = f"{own}, {height_mm:.3f} mm from the trace: the nearest before and after the gap"
         missing = (
-            f"from ({x0:.2f}, {y0:.2f}) to ({x1:.2f}, {y1:.2f}): {item.bare_mm:.2f} mm without {own} "
-            f"beneath, over gap {gap}"
+            f"from ({x0:.2f}, {y0:.2f}) to ({x1:.2f}, {y1:.2f}): {item.bare_mm:.2f} mm without "
+            f"{own} beneath, over gap {gap}"
         )
         facts = [
             ("Which plane", nearest),
@@ -257,7 +257,7 @@ _METHODS: dict[Method, str] = {
     "solved": "solved from the field: the gap, the traces over it, the planes beside it, and the "
     "plated holes that bridge it",
     "estimated": "estimated by closed forms: the solve does not see this way round",
-    "none": "there is no number: no way back to put one on",
+    "none": "there is none: no way back, nothing to put a number on",
 }
 
 
@@ -317,6 +317,15 @@ def _cut_corners(path: LineString) -> LineString:
     return LineString(points)
 
 
+def _fed(
+    broken: StreamView | None, item: Weighed, window: Polygon
+) -> tuple[tuple[float, float], ...] | None:
+    """Ends of the stretch in the window."""
+    ends = (item.crossing.stretch[0], item.crossing.stretch[-1])
+    seen = line_of(end for end in ends if window.contains(shapely.Point(end)))
+    return seen if broken is not None and seen else None
+
+
 def _names(
     plane: Plane, crossing: Crossing, window: Polygon
 ) -> tuple[tuple[str, tuple[float, float]], ...]:
@@ -328,9 +337,24 @@ def _names(
         parts = [p for p in shapely.get_parts(clipped) if isinstance(p, Polygon)]
         if parts:
             largest = max(parts, key=lambda part: (part.area, part.bounds))
-            spot = largest.representative_point()
-            found.append((island.net_name, (round(spot.x, 4), round(spot.y, 4))))
+            spot = _roomy(largest, LineString(crossing.stretch), window)
+            found.append((island.net_name, spot))
     return tuple(found)
+
+
+def _roomy(part: Polygon, trace: LineString, window: Polygon) -> tuple[float, float]:
+    """A place on a piece of copper that is far from its rim and from the trace."""
+    x0, y0, x1, y1 = window.bounds
+    share = (np.arange(7) + 0.5) / 7
+    x, y = (a.ravel() for a in np.meshgrid(x0 + share * (x1 - x0), y0 + share * (y1 - y0)))
+    inside = shapely.contains_xy(part, x, y)
+    spots = [shapely.Point(at) for at in zip(x[inside], y[inside], strict=True)]
+    if not spots:
+        spot = part.representative_point()
+        return round(spot.x, 4), round(spot.y, 4)
+    room = np.minimum(shapely.distance(part.exterior, spots), shapely.distance(trace, spots))
+    best = spots[int(np.argmax(room.round(6)))]
+    return round(best.x, 4), round(best.y, 4)
 
 
 def _ways(route: Route) -> tuple[WayView, ...]:
@@ -345,14 +369,3 @@ def _ways(route: Route) -> tuple[WayView, ...]:
         )
         for way in sorted(found, key=lambda way: way.length_mm)
     )
-
-
-def length_mm(line: Line) -> float:
-    """Length of a line that is drawn, mm.
-
-    Examples
-    --------
-    >>> length_mm(((0.0, 0.0), (3.0, 4.0)))
-    5.0
-    """
-    return float(sum(np.hypot(b[0] - a[0], b[1] - a[1]) for a, b in pairwise(line)))

@@ -128,6 +128,9 @@ class FindingView:
     broken: StreamView | None
     """The return current as it is."""
     impedance: ImpedanceView | None
+    fed_mm: tuple[Point, ...] | None
+    """Where the drawing lets the return in and out, if the window shows it: the ends of the
+    stretch that the trace was followed for."""
     facts: tuple[tuple[str, str], ...]
     """What the picture was made from, as question and answer, for the chain of reasoning."""
 
