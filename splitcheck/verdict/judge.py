@@ -204,9 +204,13 @@ def _look_at(scene: Scene, crossing: Crossing) -> Weighed:
 
 
 def value_again(
-    scene: Scene, crossings: Sequence[Crossing], *, all_of_them: bool = False
+    scene: Scene,
+    crossings: Sequence[Crossing],
+    with_them: Sequence[Crossing] = (),
+    *,
+    all_of_them: bool = False,
 ) -> tuple[tuple[Inductance, float] | None, ...]:
-    """Value crossings in a scene that was changed, each by itself, as ``judge`` would.
+    """Value crossings in a scene that was changed, as ``judge`` would.
 
     Parameters
     ----------
@@ -214,6 +218,8 @@ def value_again(
         The scene with another plane, or one more via or capacitor.
     crossings
         What the traces run over there.
+    with_them
+        Crossings of other traces, to be solved together with those that are near.
     all_of_them
         Also those that are no finding, and right beside a gap; by the solve alone.
 
@@ -223,9 +229,11 @@ def value_again(
     finding are left out.
     """
     weighed = [_look_at(scene, one) if all_of_them else _weigh(scene, one) for one in crossings]
+    beside = [item for one in with_them if not isinstance(item := _weigh(scene, one), str)]
+    others = _once_a_gap(beside)
     values: list[tuple[Inductance, float] | None] = []
     for item in _once_a_gap([item for item in weighed if not isinstance(item, str)]):
-        field = _solve_all(scene, [item], map).get(0)
+        field = _solve_all(scene, [item, *others], map).get(0)
         value = item.estimate if field is None else field.value
         if all_of_them and field is None:
             continue

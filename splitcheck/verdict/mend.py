@@ -10,7 +10,7 @@ import numpy as np
 
 from splitcheck.errors import SplitcheckError
 from splitcheck.planes.changes import find_changes
-from splitcheck.planes.crossings import find_crossings
+from splitcheck.planes.crossings import Crossing, find_crossings
 from splitcheck.planes.tracks import Tracks, redrawn
 from splitcheck.verdict.around import LONG_RUN, exempt
 from splitcheck.verdict.findings import Finding, Proposal, Report
@@ -23,7 +23,7 @@ from splitcheck.verdict.proposals.handing import return_capacitors, return_vias
 from splitcheck.verdict.proposals.moves import moves
 from splitcheck.verdict.proposals.room import Room
 from splitcheck.verdict.proposals.vias import vias
-from splitcheck.verdict.scene import Judged, Scene
+from splitcheck.verdict.scene import Judged, Scene, Weighed
 
 #: No more proposals of one kind are kept for a finding.
 MOST_OF_A_KIND = 2
@@ -122,7 +122,19 @@ def _case(
         return None if change is None else Case(scene, room, finding, net, own, None, change)
     if item is None and finding.kind != "no-plane":
         return None
-    return Case(scene, room, finding, net, redrawn(own, net), item)
+    beside = () if item is None else _beside(judged, item)
+    return Case(scene, room, finding, net, redrawn(own, net), item, None, beside)
+
+
+def _beside(judged: Judged, item: Weighed) -> tuple[Crossing, ...]:
+    """Crossings of the same gap from the same layer that other findings stand for."""
+    own = item.crossing
+    return tuple(
+        run
+        for other in judged.weighed.values()
+        for run in other.runs
+        if other is not item and (run.plane, run.gap, run.layer) == (own.plane, own.gap, own.layer)
+    )
 
 
 def _change(scene: Scene, tracks: Sequence[Tracks], net: int, finding: Finding) -> Change | None:

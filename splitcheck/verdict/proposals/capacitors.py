@@ -63,7 +63,9 @@ def capacitors(case: Case) -> Iterator[Proposal]:
             layer=mount.layer,
             ref="a new capacitor",
         )
-        worth = worth_of(replace(case.scene, graph=graph), case.item.runs if case.item else ())
+        assert case.item is not None
+        scene = replace(case.scene, graph=graph)
+        worth = worth_of(scene, case.item.runs, case.beside)
         said = mount_words(case, mount, one.net_name, other.net_name)
         found = case.proposal("capacitor", mount.pads, said, worth)
         if found is not None:

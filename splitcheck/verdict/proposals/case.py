@@ -57,6 +57,8 @@ class Case:
     """The crossing behind it, if it is one."""
     change: Change | None = None
     """The change of planes behind it, if it is one."""
+    beside: tuple[Crossing, ...] = ()
+    """Crossings of other traces over the same gap."""
 
     @property
     def crossing(self) -> Crossing:
@@ -132,9 +134,11 @@ def with_plane(scene: Scene, plane: Plane) -> Scene:
     )
 
 
-def worth_of(scene: Scene, crossings: Sequence[Crossing]) -> Worth | None:
-    """What some crossings add together; None if one of them has no way back."""
-    values = value_again(scene, crossings)
+def worth_of(
+    scene: Scene, crossings: Sequence[Crossing], with_them: Sequence[Crossing] = ()
+) -> Worth | None:
+    """What some crossings add; None if one has no way back. Others are solved with them."""
+    values = value_again(scene, crossings, with_them)
     known = [Worth(v[0].added_nh, v[0].error_nh, v[1]) for v in values if v is not None]
     return together(known) if len(known) == len(values) else None
 

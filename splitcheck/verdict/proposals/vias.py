@@ -40,11 +40,11 @@ def vias(case: Case) -> Iterator[Proposal]:
     """Propose a via at one end of a crossing or at both, nearest places first."""
     ends = [_at_end(case, end) for end in (0, 1)]
     chosen = [[spot] for free in ends for spot in free[:1]]
-    chosen.extend([one, other] for one, other in zip(*ends, strict=False))
+    chosen.extend([one, other] for one in ends[0] for other in ends[1])
     assert case.item is not None
     nets = " and ".join(dict.fromkeys(island.net_name for island in case.islands))
     for places in chosen:
-        worth = worth_of(stitched(case.scene, places), case.item.runs)
+        worth = worth_of(stitched(case.scene, places), case.item.runs, case.beside)
         said = words(case, places, nets, "beside the crossing")
         found = case.proposal("via", [spot.at for spot in places], said, worth)
         if found is not None:
