@@ -82,6 +82,10 @@ class BareTrace:
     """Its straight stretches."""
     leaves: bool = False
     """It has left the plane that carried its return and goes on over a farther one to its end."""
+    rim: Point | None = None
+    """Where it left that plane, mm."""
+    on: Point | None = None
+    """A point of the trace on the plane just before."""
 
 
 #: A node of the walk along a run: what kind of place, its piece or node, and where on the piece.
@@ -150,9 +154,9 @@ def find_crossings(
         for plane in ranked:
             bare = uncovered(tracks, plane, sorted(still))
             further = _both(still, bare)
-            for crossing, bits in _crossings_over(tracks, plane, bare, still):
+            for crossing, bits, rim in _crossings_over(tracks, plane, bare, still):
                 if crossing is None:
-                    leaving.append(_bare_trace(tracks, bits, leaves=True))
+                    leaving.append(_bare_trace(tracks, bits, left=rim))
                     continue
                 crossings.append(crossing)
                 for bit in bits:
@@ -180,8 +184,8 @@ def _both(still: dict[int, list[Span]], bare: Uncovered) -> dict[int, list[Span]
 
 def _crossings_over(
     tracks: Tracks, plane: Plane, bare: Uncovered, still: dict[int, list[Span]]
-) -> list[tuple[Crossing | None, list[_Bit]]]:
-    """Groups of bare bits with their crossing; None for those that leave the plane for good."""
+) -> list[tuple[Crossing | None, list[_Bit], _Rim | None]]:
+    """Groups of bare bits with their crossing, or the rim where they leave the plane for good."""
     bits = [
         _Bit(piece, start, stop, bit.gap)
         for piece, found in bare.items()
@@ -192,8 +196,9 @@ def _crossings_over(
     ends = _Ends(tracks, bare, still)
     for group in _groups(tracks, bits):
         crossing = _crossing(tracks, plane, group, ends)
-        if crossing is not None or ends.leaves(group):
-            found.append((crossing, group))
+        rim = None if crossing is not None else ends.left_at(group)
+        if crossing is not None or rim is not None:
+            found.append((crossing, group, rim))
     return found
 
 
@@ -273,9 +278,10 @@ class _Ends:
             rims.extend(self._rims_at_node(int(self.tracks.nodes[bit.piece, end])))
         return rims
 
-    def leaves(self, group: Sequence[_Bit]) -> bool:
-        """Whether a group of bits comes from the plane and never gets back to it."""
-        return len({rim.key for bit in group for rim in self.of(bit)}) == 1
+    def left_at(self, group: Sequence[_Bit]) -> _Rim | None:
+        """Where a group of bits comes from the plane, if it never gets back to it."""
+        rims = {rim.key: rim for bit in group for rim in self.of(bit)}
+        return next(iter(rims.values())) if len(rims) == 1 else None
 
     def _rims_at_node(self, node: int) -> list[_Rim]:
         rims = []
@@ -400,7 +406,7 @@ def _farthest(
     return best
 
 
-def _bare_trace(tracks: Tracks, group: Sequence[_Bit], *, leaves: bool = False) -> BareTrace:
+def _bare_trace(tracks: Tracks, group: Sequence[_Bit], *, left: _Rim | None = None) -> BareTrace:
     lengths = [(bit.stop - bit.start) * float(tracks.length_mm[bit.piece]) for bit in group]
     longest = group[int(np.argmax(lengths))]
     return BareTrace(
@@ -413,7 +419,9 @@ def _bare_trace(tracks: Tracks, group: Sequence[_Bit], *, leaves: bool = False) 
         tuple(
             (tracks.point(bit.piece, bit.start), tracks.point(bit.piece, bit.stop)) for bit in group
         ),
-        leaves,
+        left is not None,
+        None if left is None else left.at,
+        None if left is None else left.on,
     )
 
 
@@ -448,7 +456,7 @@ def judged_nets(
         for net in board.nets
         if net.number not in carriers
         and (net.given or net.number in joined)
-        and not is_power(net.name)
+        and not (is_power(net.name) or net.number in board.references)
     )
     if not patterns:
         return signals

@@ -23,6 +23,8 @@ CHANGE_STITCH_MM = 3.0
 CHANGE_RATIO = 10.0
 #: ... where it covers this share of the run: antipads do not count.
 MOSTLY = 0.8
+#: Why such a run is no crossing: it is judged as a change of plane.
+LONG_RUN = "long runs over another whole plane (changes of plane)"
 #: A line wider than so many times its height is below some 15 ohm: no signal (common practice).
 SUPPLY_RATIO = 10.0
 #: So many heights along a trace the return takes to come to a farther plane.
@@ -56,7 +58,7 @@ def exempt(scene: Scene, crossing: Crossing) -> str | None:
     if _is_hidden(scene, crossing):
         return "crossings of farther planes inside a gap of a nearer one"
     if crossing.run_mm >= CHANGE_RUN_MM and _changes_plane(scene, crossing):
-        return "long runs over another whole plane (changes of plane, not judged here)"
+        return LONG_RUN
     return None
 
 

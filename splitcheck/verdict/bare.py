@@ -26,9 +26,9 @@ def bare_findings(
     """One finding for each net and layer that runs over no plane at all."""
     groups: dict[tuple[int, int], list[BareTrace]] = defaultdict(list)
     for trace in bare:
-        if trace.leaves:
-            if trace.bare_mm >= OWN_END_MM:
-                dropped["traces that leave a plane for a farther one (changes of plane)"] += 1
+        if trace.leaves:  # judged as a change of plane where it is long enough
+            if trace.bare_mm < OWN_END_MM:
+                dropped[f"ends of traces over a farther plane, shorter than {OWN_END_MM:g} mm"] += 1
         elif trace.bare_mm < OWN_END_MM:
             dropped[f"ends of traces without a plane, shorter than {OWN_END_MM:g} mm"] += 1
         else:

@@ -97,8 +97,14 @@ def _matched(
 
 
 def _same_gap(one: Finding, other: Finding) -> bool:
-    keys = [(f.layer, f.plane_layer, f.gap, frozenset(f.islands)) for f in (one, other)]
-    return keys[0] == keys[1] and (one.kind == "no-plane") == (other.kind == "no-plane")
+    """Whether two findings are over one gap of one plane, or change planes between one pair."""
+    apart = {"no-plane", "plane-change"}
+    if one.kind != other.kind and apart & {one.kind, other.kind}:
+        return False
+    if (one.layer, one.plane_layer) != (other.layer, other.plane_layer):
+        return False
+    same = (one.gap, frozenset(one.islands)) == (other.gap, frozenset(other.islands))
+    return same or one.kind == "plane-change"
 
 
 def _apart_mm(one: Finding, other: Finding) -> float:
@@ -141,7 +147,9 @@ def _judged(
     finding: Finding, other: str, drive: Class, odd: float, unbalance: float | None
 ) -> Finding:
     noise = max(odd_noise_mv(odd, drive), noise_mv(unbalance or 0.0, drive))
-    how = level(noise, drive)
+    if finding.capped and finding.noise_mv is not None:
+        noise = min(noise, finding.noise_mv)  # the gap as a line limits the pair as well
+    how = level(noise, drive, max(odd / 2.0, unbalance or 0.0))
     said = f"{finding.reason}; judged as a pair with {other}: {odd:.2f} nH in odd mode"
     if unbalance is None:
         how = _at_least(how, "warning")
