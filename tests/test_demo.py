@@ -82,7 +82,11 @@ def test_boards_leave_only_the_edge_to_be_assumed() -> None:
         report = rank(FIXTURES / name).report
         layers = [(row["number"], row["name"]) for row in report["board"]["layers"]]
         assert layers == [(1, "L1-top"), (2, "L2-ground"), (3, "L3-supply"), (4, "L4-bottom")]
-        assert all("switch in 1 ns" in text for text in report["assumptions"])
+        assumed = report["assumptions"]
+        assert [("switch in 1 ns" in text, "by their class" in text) for text in assumed] == [
+            (True, False),
+            (False, True),
+        ]
         assert report["board"]["size_mm"] == pytest.approx([80, 55], abs=0.11)
 
 

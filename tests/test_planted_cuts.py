@@ -11,11 +11,17 @@ from shapely import LineString, Point
 
 from splitcheck.copper.intake import open_export
 from splitcheck.errors import SplitcheckError
+from splitcheck.verdict.packs import shipped_rules
+from splitcheck.verdict.rulesfile import RULES_FILE
 from tests.making.cuts import PlantedCut, choose_cuts, plant
 from tests.making.running import Outcome, rank
 
 CLEAN = Path(__file__).parent.parent / "fixtures" / "demo_clean"
 WANTED = 50
+#: Rules that exempt no class of nets: cuts lie under lamps and enables as well.
+ALL_AWAKE = "".join(
+    f"[class.{one.name}]\nexempt = false\n" for one in shipped_rules().classes if one.exempt
+)
 #: How far the reported place may be from the cut, mm.
 NEAR_MM = 0.5
 
@@ -39,6 +45,7 @@ def _planted(folder: Path, tmp_path: Path, seed: int) -> tuple[Path, tuple[Plant
     spoiled = tmp_path / f"{folder.name}-{seed}"
     shutil.copytree(folder, spoiled)
     plant(spoiled, cuts)
+    (spoiled / RULES_FILE).write_text(ALL_AWAKE, encoding="utf-8")
     return spoiled, cuts
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from datetime import date
 from pathlib import Path
 
 import pytest
@@ -12,6 +13,8 @@ from splitcheck.errors import SplitcheckError
 from splitcheck.road import Options
 from tests.cli.conftest import Road
 
+#: The day that the environment states in these tests.
+DAY = date(2030, 3, 17)
 Capture = pytest.CaptureFixture[str]
 
 
@@ -141,8 +144,8 @@ def test_a_wrong_call_is_one_line_and_code_2(
 def test_every_option_reaches_the_road(road: Road) -> None:
     """What is typed is what the road is asked."""
     words = ["--net", "A*", "--net", "B", "--layer", "Top", "--min-nh", "0.2", "--jobs", "2"]
-    assert run(["rank", "b", "--stack", "s.toml", *words]) == 1
-    asked = Options(("A*", "B"), ("Top",), 0.2, Path("s.toml"), 2)
+    assert run(["rank", "b", "--stack", "s.toml", "--rules", "r.toml", *words]) == 1
+    asked = Options(("A*", "B"), ("Top",), 0.2, Path("s.toml"), 2, Path("r.toml"), DAY)
     assert road.asked == [("rank", Path("b"), asked)]
 
 
@@ -150,4 +153,24 @@ def test_the_defaults_are_those_of_the_road(road: Road) -> None:
     """Nothing typed means the defaults that the road states."""
     run(["rank", "b"])
     run(["read", "b"])
-    assert road.asked == [("rank", Path("b"), Options()), ("read", Path("b"), Options())]
+    asked = Options(today=DAY)
+    assert road.asked == [("rank", Path("b"), asked), ("read", Path("b"), asked)]
+
+
+@pytest.fixture(autouse=True)
+def the_day(monkeypatch: pytest.MonkeyPatch) -> None:
+    """The day that the environment states, for waivers that end."""
+    monkeypatch.setenv("SOURCE_DATE_EPOCH", "1900000000")
+
+
+def test_a_day_that_is_no_number_is_the_calls_fault(
+    road: Road, monkeypatch: pytest.MonkeyPatch, capfd: Capture
+) -> None:
+    """Named, with what to do; nothing is read."""
+    monkeypatch.setenv("SOURCE_DATE_EPOCH", "yesterday")
+    assert run(["rank", "b"]) == 2
+    assert capfd.readouterr().err == (
+        "splitcheck: SOURCE_DATE_EPOCH: 'yesterday' is no number of seconds; give seconds since "
+        "1970, or unset it\n"
+    )
+    assert road.asked == []
