@@ -6,6 +6,8 @@ import re
 from collections import defaultdict
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
+from itertools import pairwise
+from math import hypot
 from typing import Literal, NamedTuple, TypeAlias
 
 import numpy as np
@@ -149,16 +151,17 @@ def find_pairs(
     """
     chosen = frozenset(nets)
     sides = _sides(board, chosen)
+    length, widths = _lengths(board, chosen)
     taken: set[int] = set()
     found: list[Pair] = []
 
     def take(one: int, other: int, known_by: KnownBy) -> None:
         taken.update((one, other))
-        found.append(_pair(board, sides, (one, other), known_by))
+        found.append(_pair(sides, length, (one, other), known_by))
 
     for one, other in _explicit(board, explicit):
         take(one, other, "rules")
-    alone = _by_geometry(board, sides, chosen)
+    alone = _by_geometry(sides, length, widths)
     for one, other in _by_name(board, chosen):
         if not taken & {one, other}:
             by_both = _key(one, other) in alone
@@ -210,14 +213,9 @@ def _by_name(board: Board, nets: frozenset[int]) -> list[tuple[int, int]]:
 
 
 def _by_geometry(
-    board: Board, sides: dict[tuple[int, int], Side], nets: frozenset[int]
+    sides: dict[tuple[int, int], Side], length: dict[int, float], widths: dict[int, set[float]]
 ) -> set[tuple[int, int]]:
     """Pairs of nets that run as the legs of a pair do and as nothing else does."""
-    length: dict[int, float] = defaultdict(float)
-    widths: dict[int, set[float]] = defaultdict(set)
-    for net, line_mm, width_mm in _lengths(board, nets):
-        length[net] += line_mm
-        widths[net].add(width_mm)
     beside: dict[int, list[tuple[Side, int]]] = defaultdict(list)
     for (one, other), side in sides.items():
         beside[one].append((side, other))
@@ -243,28 +241,32 @@ def _alone(side: Side, beside: dict[int, list[tuple[Side, int]]], one: int, othe
 
 
 def _pair(
-    board: Board, sides: dict[tuple[int, int], Side], nets: tuple[int, int], known_by: KnownBy
+    sides: dict[tuple[int, int], Side],
+    length: dict[int, float],
+    nets: tuple[int, int],
+    known_by: KnownBy,
 ) -> Pair:
     side = sides.get(_key(*nets))
     if side is None:
         return Pair(nets, known_by, None, 0.0, coupled=False)
-    length = dict.fromkeys(nets, 0.0)
-    for net, line_mm, _ in _lengths(board, frozenset(nets)):
-        length[net] += line_mm
-    enough = side.coupled_mm >= max(COUPLED_MM, COUPLED_SHARE * min(length.values()))
+    enough = side.coupled_mm >= max(COUPLED_MM, COUPLED_SHARE * min(length[n] for n in nets))
     return Pair(nets, known_by, round(side.apart_mm, 4), round(side.coupled_mm, 4), coupled=enough)
 
 
-def _lengths(board: Board, nets: frozenset[int]) -> Iterator[tuple[int, float, float]]:
-    """Net, length and width of every stroke of some nets."""
+def _lengths(board: Board, nets: frozenset[int]) -> tuple[dict[int, float], dict[int, set[float]]]:
+    """Length of the traces of every net, mm, and their widths."""
+    length: dict[int, float] = defaultdict(float)
+    widths: dict[int, set[float]] = defaultdict(set)
     first = 0
     for layer in board.layers:
         for line in layer.lines:
             net = board.net_of[first + line.piece]
             if net in nets:
-                steps = np.diff(np.array(line.points), axis=0)
-                yield net, float(np.hypot(*steps.T).sum()), round(line.width_mm, 4)
+                steps = pairwise(line.points)
+                length[net] += sum(hypot(x1 - x0, y1 - y0) for (x0, y0), (x1, y1) in steps)
+                widths[net].add(round(line.width_mm, 4))
         first += len(layer.pieces)
+    return length, widths
 
 
 def _sides(board: Board, nets: frozenset[int]) -> dict[tuple[int, int], Side]:
@@ -317,13 +319,14 @@ def _beside(ends: Floats, widths: Floats, nets: Floats) -> Floats:
     if len(ends) < 2:
         return np.empty((0, 4))
     reach = np.minimum(SIDE_WIDTHS * widths, SIDE_MOST_MM)
-    lines = segments(ends)
-    i, j = shapely.STRtree(lines).query(lines, predicate="dwithin", distance=reach)
-    keep = nets[i] < nets[j]
-    i, j = i[keep], j[keep]
     step = ends[:, 1] - ends[:, 0]
     length = np.hypot(step[:, 0], step[:, 1])
     ahead = step / length[:, None]
+    low, high = ends.min(axis=1) - reach[:, None], ends.max(axis=1) + reach[:, None]
+    # boxes alone: what is not parallel is sorted out faster below than by true distances
+    i, j = shapely.STRtree(segments(ends)).query(shapely.box(*low.T, *high.T))
+    keep = nets[i] < nets[j]
+    i, j = i[keep], j[keep]
     keep = np.abs((ahead[i] * ahead[j]).sum(axis=1)) >= PARALLEL
     i, j = i[keep], j[keep]
     # where the ends of the second lie along the first
