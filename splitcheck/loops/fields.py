@@ -55,6 +55,8 @@ MOST_CORNERS = 4000
 NEAR_HEIGHTS = 2.0
 #: So many of the nearest vias on either side of a gap are bridges, besides that of the way.
 MOST_VIAS = 10
+#: ... out to here, mm: farther off a part is of no use in 1 ns (S. Weir, si-list, 16 Oct 2008).
+BRIDGES_MM = 25.0
 #: A trace that a window cuts off ends so far inside it, mm.
 ON_RIM_MM = 0.01
 #: Width taken for copper that a way borrows on the trace's side, mm.
@@ -267,15 +269,16 @@ class Fields:
         plane = self.planes[tasks[0].crossing.plane]
         crossed = plane.gaps[tasks[0].crossing.gap]
         lines = [trace.line for trace in traces]
-        window = _window(tasks, crossed)
+        cut = any(_parts_islands(task) for task in tasks)
+        standing = bridges if cut else ()
+        window = _window(tasks, crossed, standing)
         gaps, ends = self._gaps(tasks, window, lines, loose=crossed.open)
         if not crossed.open and _too_ragged(gaps):
             # flux that such a gap lets through nearby finds ample room in the rest of it
-            window = _window(tasks, crossed, OPEN_SIDE_SHUT)
+            window = _window(tasks, crossed, standing, OPEN_SIDE_SHUT)
             gaps, ends = self._gaps(tasks, window, lines, loose=True)
         if _too_ragged(gaps):
             return None
-        cut = any(_parts_islands(task) for task in tasks)
         if cut:
             traces = [
                 _within(trace, task, window) for trace, task in zip(traces, tasks, strict=True)
@@ -415,6 +418,8 @@ class Fields:
         ]
         found: dict[tuple[Point, ...], engine.Strap] = {}
         for i in np.argsort(far, kind="stable")[:MOST_VIAS].tolist():
+            if far[i] > max(BRIDGES_MM, min(far)):
+                break
             part = parts[i]
             apart = (
                 0.0
@@ -435,10 +440,17 @@ class Fields:
 
 
 def _nearest(places: Floats, at: Point, always: Sequence[Point]) -> list[int]:
-    """Rows of the places nearest to one, and of some that are always wanted."""
+    """Rows of the places nearest to one, within reach, and of some that are always wanted."""
     far = np.hypot(*(places - np.asarray(at)).T)
+    order = np.argsort(far, kind="stable")[:MOST_VIAS]
     wanted = np.flatnonzero([tuple(place) in always for place in places.tolist()])
-    return sorted({*np.argsort(far, kind="stable")[:MOST_VIAS].tolist(), *wanted.tolist()})
+    return sorted({*order[far[order] <= BRIDGES_MM].tolist(), *wanted.tolist()})
+
+
+def _feet(bridge: engine.ViaBridge | engine.Strap) -> Floats:
+    """Where a bridge stands on the plane, shape (n, 2)."""
+    shape = bridge.at if isinstance(bridge, engine.ViaBridge) else bridge.line
+    return shapely.get_coordinates(shape)
 
 
 def _via(place: Floats, wide_mm: float, mounted_nh: float = 0.0) -> engine.ViaBridge:
@@ -504,8 +516,13 @@ def _too_ragged(gaps: Sequence[Polygon]) -> bool:
     return sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS
 
 
-def _window(tasks: Sequence[Task], gap: Gap, far_side: float = FAR_SIDE) -> Polygon:
-    """A box round the crossings and their ways round, with room to spare.
+def _window(
+    tasks: Sequence[Task],
+    gap: Gap,
+    bridges: Sequence[engine.ViaBridge | engine.Strap],
+    far_side: float = FAR_SIDE,
+) -> Polygon:
+    """A box round the crossings, their ways round and some bridges, with room to spare.
 
     Where there is no way round on one side, the gap is kept out to some times the length of the
     way on the other, or to its end.
@@ -513,6 +530,7 @@ def _window(tasks: Sequence[Task], gap: Gap, far_side: float = FAR_SIDE) -> Poly
     points = [point for task in tasks for point in task.crossing.path]
     ways = [way for task in tasks for way in (task.route.left, task.route.right)]
     points.extend(point for way in ways if way is not None for point in way.path)
+    points.extend(to_point(at) for bridge in bridges for at in _feet(bridge))
     x0, y0 = np.min(points, axis=0)
     x1, y1 = np.max(points, axis=0)
     size = max(x1 - x0, y1 - y0)

@@ -68,6 +68,10 @@ def _parts_in_words(scene: Scene, item: Weighed, way: Way, over: str) -> str:
     words = " and ".join(named)
     if way.capacitors[0].kind == "capacitor":
         words = f"capacitor{'s' if len(named) > 1 else ''} {words}"
+    if way.bridges:
+        words += " and plated holes at " + " and ".join(
+            f"({x:.2f}, {y:.2f})" for x, y in way.bridges
+        )
     if over:
         words += f" over {way.bridge_net}{over}"
     x, y = item.crossing.at

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from typing import NamedTuple
 
 import shapely
 from shapely import LineString, Polygon
 
 from splitcheck.board.board import Board
+from splitcheck.board.components import Component, Pin
 from splitcheck.board.nets import join, name_nets
 from splitcheck.board.parts import CopperLayer, parts_of
 from splitcheck.board.stack import CopperEntry, from_entries
@@ -79,6 +81,25 @@ def board(
         nets,
         joined,
     )
+
+
+def mounted(made: Board, *parts: tuple[str, int, Point, Point, str | None]) -> Board:
+    """The same board with two-pad parts: reference, layer, places of both pads, value."""
+    components = []
+    for ref, layer, one, other, value in parts:
+        pins = []
+        for number, at in enumerate((one, other), start=1):
+            part = next(
+                (
+                    part.id
+                    for part in made.parts
+                    if part.layer == layer and part.shape.intersects(shapely.Point(at))
+                ),
+                -1,
+            )
+            pins.append(Pin(str(number), at, made.net_of[part] if part >= 0 else -1, part))
+        components.append(Component(ref, layer, tuple(pins), value, "attributes"))
+    return replace(made, components=tuple(components))
 
 
 def _layer(number: int, sheet: Sheet) -> CopperLayer:
