@@ -28,6 +28,7 @@ from splitcheck.loops.bridges import IslandGraph, all_parts, join_islands
 from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.changes import find_changes
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, judged_nets
+from splitcheck.planes.edges import find_edge_runs
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import Tracks, lay_all
 from splitcheck.verdict.classes import Known, know
@@ -47,6 +48,8 @@ from splitcheck.verdict.waivers import waive
 
 Progress: TypeAlias = Callable[[str, int, int], None]
 
+#: Gaps whose worst finding is mended for a page.
+MENDED = 3
 #: Less text than this is read faster by one process than by several.
 ALONE_BYTES = 400_000
 #: Fewer items than this are worked off faster by one process.
@@ -118,12 +121,22 @@ def picture(walked: Walked, options: Options, only: Sequence[str] | None = None)
         return draw(walked.scene, seen.planes, seen.tracks, walked.judged, spread, only=only)
 
 
+def illustrate(walked: Walked, options: Options) -> tuple[Report, Pictures]:
+    """All that a page about a board shows: its report, with proposals for the worst, and pictures.
+
+    Proposals are looked for where they are read first: at the worst finding of the worst gaps.
+    """
+    worst: dict[str, str] = {}
+    for finding in walked.report.findings:
+        if finding.waived is None and len(worst) < MENDED:
+            worst.setdefault(finding.gap, finding.id)
+    return mend(walked, worst.values()), picture(walked, options)
+
+
 def mend(walked: Walked, ids: Iterable[str]) -> Report:
     """The report of a board that was looked at, with what would mend some findings of it."""
     with _uncollected():
-        return proposals(
-            walked.report, walked.seen.tracks, walked.scene, walked.judged, tuple(ids)
-        )
+        return proposals(walked.report, walked.seen.tracks, walked.scene, walked.judged, tuple(ids))
 
 
 def read(path: Path, options: Options, progress: Progress | None = None) -> Report:
@@ -167,10 +180,14 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judging: b
         with clock.stage("crossings"):
             crossings, bare = cross(tracks, planes, Spread(options.jobs, few=2))
             changes = find_changes(assembled.board, planes, tracks)
+            near = (scene.rules.edge_heights, scene.rules.edge_mm)
+            edges = find_edge_runs(assembled.board, planes, tracks, *near)
         with clock.stage("loops"):
             by_rules, counts = supply_findings(scene, tracks)
             spread = Spread(options.jobs)
-            judged = judge(scene, crossings, bare, spread, changes=changes, by_rules=by_rules)
+            judged = judge(
+                scene, crossings, bare, spread, changes=changes, edges=edges, by_rules=by_rules
+            )
             findings, waivers = waive(judged.findings, known.rules.waivers, options.today)
             counts = (*judged.counts, *counts)
             judged = replace(judged, findings=findings, counts=counts, waivers=waivers)

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import shlex
 import sys
+from functools import partial
 from os import environ
 from pathlib import Path
 from typing import Annotated
@@ -100,8 +101,18 @@ def rank(
         tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
     )
     with streams.progress_bar(quiet=quiet) as progress:
-        report = road.rank(path, options, progress)
-    results.show(report, terminal.render, wanted, top=top, quiet=quiet, color=color, path=path)
+        walked = road.look(path, options, progress)
+        report = walked.report
+    results.show(
+        report,
+        terminal.render,
+        wanted,
+        top=top,
+        quiet=quiet,
+        color=color,
+        path=path,
+        draw=partial(road.illustrate, walked, options),
+    )
     raise typer.Exit(results.exit_code(report, fail_at))
 
 
@@ -128,7 +139,7 @@ def read(
     from splitcheck import road
     from splitcheck.report import readout
 
-    wanted = targets.parse(out or (), path)
+    wanted = targets.parse(out or (), path, known=targets.TOLD)
     options = road.Options(stack=stack, jobs=jobs, rules=rules, today=today(environ))
     with streams.progress_bar(quiet=quiet) as progress:
         report = road.read(path, options, progress)

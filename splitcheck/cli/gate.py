@@ -84,7 +84,8 @@ def gate(
     from splitcheck.verdict.compare import compare
 
     check_min_nh(min_nh)
-    wanted = targets.parse(out or (), new, *(() if was is None else (was,)))
+    boards = (new,) if was is None else (new, was)
+    wanted = targets.parse(out or (), *boards, known=targets.TOLD)
     options = road.Options(
         tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
     )

@@ -82,4 +82,13 @@ def mend(
         ids = tuple(finding or standing[:worst])
         report = road.mend(walked, ids)
     render = partial(mending.render, ids=ids)
-    results.show(report, render, wanted, top=0, quiet=quiet, color=color, path=path)
+    results.show(
+        report,
+        render,
+        wanted,
+        top=0,
+        quiet=quiet,
+        color=color,
+        path=path,
+        draw=lambda: (report, road.picture(walked, options)),
+    )

@@ -94,7 +94,8 @@ Out = Annotated[
         "--out",
         metavar="FORMAT=FILE",
         help="Also write the whole result as text, json, sarif, junit, codequality, annotations, "
-        "markdown or csv; FILE - is stdout, and then everything else goes to stderr. Repeatable.",
+        "markdown, csv or html; FILE - is stdout, and then everything else goes to stderr. "
+        "Repeatable.",
     ),
 ]
 Quiet = Annotated[

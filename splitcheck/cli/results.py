@@ -3,20 +3,25 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from pathlib import Path
-from typing import Protocol
+from typing import Protocol, TypeAlias
 
 from splitcheck.cli import streams, targets
 from splitcheck.cli.options import FailAt
 from splitcheck.report import locate, tally
 from splitcheck.verdict.changes import Comparison
 from splitcheck.verdict.findings import LEVELS, Report
+from splitcheck.verdict.views import Pictures
 
 #: Columns of a text report that goes to a file.
 FILE_WIDTH = 100
 #: A text file of the repository that hosts can show where they do not have the export itself.
 ANCHOR = "splitcheck.toml"
+
+
+#: Draws the board, and says what the drawing shows: the report, with proposals for the worst.
+Draw: TypeAlias = Callable[[], tuple[Report, Pictures]]
 
 
 class Render(Protocol):
@@ -36,6 +41,7 @@ def show(
     color: streams.Color,
     path: Path | None = None,
     comparison: Comparison | None = None,
+    draw: Draw | None = None,
 ) -> None:
     """Deliver every ``--out``, then the text for the person before the screen.
 
@@ -47,6 +53,8 @@ def show(
         What was read: hosts are pointed to the files in it.
     comparison
         What became of an earlier revision, if there is one.
+    draw
+        Draws the board, if a format asks for it.
     """
     taken = next((target for target in wanted if target.is_stdout), None)
     if not quiet and (taken is None or taken.format != "text"):
@@ -55,6 +63,11 @@ def show(
         shown = render(report, top=top, width=width, color=streams.color_for(color, stream))
         streams.put(shown, stream)
     for target in wanted:
+        if target.format in targets.DRAWN:
+            assert draw is not None  # no other command lets such a format pass
+            illustrated, pictures = draw()
+            targets.deliver(target, target.drawer()(illustrated, comparison, pictures))
+            continue
         if target.format != "text":
             told = located(report, path) if target.format in targets.HOSTED else report
             targets.deliver(target, target.renderer()(told, comparison))

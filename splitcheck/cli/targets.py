@@ -14,9 +14,12 @@ from splitcheck.cli import streams
 from splitcheck.errors import SplitcheckError
 from splitcheck.verdict.changes import Comparison
 from splitcheck.verdict.findings import Report
+from splitcheck.verdict.views import Pictures
 
 #: Writes a report, and what became of an earlier one if there is one, as a file.
 Renderer: TypeAlias = Callable[[Report, Comparison | None], str | bytes]
+#: Writes a report with pictures of the board.
+Drawer: TypeAlias = Callable[[Report, Comparison | None, Pictures], str | bytes]
 
 #: What ``--out`` can write: each format by the module with its ``render``, which is loaded when
 #: it is asked for. ``text`` is what the command itself shows.
@@ -29,10 +32,15 @@ MODULES = {
     "annotations": "splitcheck.report.annotations",
     "markdown": "splitcheck.report.markdown",
     "csv": "splitcheck.report.csvfile",
+    "html": "splitcheck.report.htmlpage",
 }
 FORMATS = tuple(MODULES)
+#: Formats that are drawn from the board itself: only commands that read one can write them.
+DRAWN = frozenset({"html"})
 #: Formats that point a host to a file of the repository.
 HOSTED = frozenset({"sarif", "junit", "codequality", "annotations"})
+#: What a command writes that has no board at hand.
+TOLD = tuple(name for name in MODULES if name not in DRAWN)
 #: The file name that means standard output.
 STDOUT = "-"
 
@@ -49,19 +57,28 @@ class Target:
         render: Renderer = import_module(MODULES[self.format]).render
         return render
 
+    def drawer(self) -> Drawer:
+        """What writes this format; only for one that is drawn."""
+        draw: Drawer = import_module(MODULES[self.format]).render
+        return draw
+
     @property
     def is_stdout(self) -> bool:
         """Whether it goes to standard output."""
         return self.file == STDOUT
 
 
-def parse(words: Sequence[str], *boards: Path) -> tuple[Target, ...]:
+def parse(
+    words: Sequence[str], *boards: Path, known: Sequence[str] = FORMATS
+) -> tuple[Target, ...]:
     """Read all ``--out`` and make sure that each can be written, long before there is a result.
 
     Parameters
     ----------
     boards
         What is going to be read; a result never goes over it.
+    known
+        Formats that the command can write.
 
     Raises
     ------
@@ -76,7 +93,7 @@ def parse(words: Sequence[str], *boards: Path) -> tuple[Target, ...]:
     >>> parse([], Path("board"))
     ()
     """
-    targets = tuple(_target(word) for word in words)
+    targets = tuple(_target(word, known) for word in words)
     seen: set[str] = set()
     for target in targets:
         place = f"--out {target.format}={target.file}"
@@ -90,13 +107,13 @@ def parse(words: Sequence[str], *boards: Path) -> tuple[Target, ...]:
     return targets
 
 
-def _target(word: str) -> Target:
+def _target(word: str, formats: Sequence[str]) -> Target:
     name, equals, file = word.partition("=")
-    known = ", ".join(FORMATS)
+    known = ", ".join(formats)
     if not equals or not file:
         do = f"write it as FORMAT=FILE, where FORMAT is one of {known} and FILE may be - for stdout"
         raise SplitcheckError(f"--out {word}", "the file is missing", do)
-    if name not in FORMATS:
+    if name not in formats:
         raise SplitcheckError(f"--out {word}", f'no format "{name}"', f"use one of {known}")
     return Target(name, file)
 

@@ -304,7 +304,8 @@ def _filled(
     size = field(points)
     for fixed in (rims, rings):
         if fixed:
-            tree = shapely.STRtree([shapely.Point(at) for at in np.concatenate(list(fixed))])
+            spots = np.asarray(shapely.points(np.concatenate(list(fixed))), dtype=object)
+            tree = shapely.STRtree(spots)
             (which, _), apart = tree.query_nearest(
                 shapely.points(points), return_distance=True, all_matches=False
             )
@@ -332,13 +333,13 @@ def _triangles(flow: Flow, gaps: Sequence[Polygon], plan: _Plan) -> Sheet:
     used = Delaunay(nodes)
     for _ in range(_ROUNDS):
         tri = used.simplices.astype(np.int64)
-        edges = np.unique(_keys(tri[:, [0, 1, 2]], tri[:, [1, 2, 0]]))
+        edges = np.sort(_keys(tri[:, [0, 1, 2]], tri[:, [1, 2, 0]]).ravel())
         extra: list[Floats] = []
         total = len(nodes)
         for k, rim in enumerate(rims):
-            (missing,) = np.nonzero(
-                ~np.isin(_keys(rim[:-1], rim[1:]), edges) & (rim[:-1] != rim[1:])
-            )
+            keys = _keys(rim[:-1], rim[1:])
+            place = np.minimum(np.searchsorted(edges, keys), len(edges) - 1)
+            (missing,) = np.nonzero((edges[place] != keys) & (rim[:-1] != rim[1:]))
             extra.append((nodes[rim[missing]] + nodes[rim[missing + 1]]) / 2)
             rims[k] = np.insert(rim, missing + 1, total + np.arange(len(missing)))
             total += len(missing)
@@ -362,7 +363,9 @@ def _triangles(flow: Flow, gaps: Sequence[Polygon], plan: _Plan) -> Sheet:
     pole_in = np.full(len(corners), -1)
     for number, ring in enumerate(plan.rings):
         if len(ring):
-            pole_in[np.isin(corners, ring).all(axis=1)] = number
+            mine = np.zeros(len(nodes), dtype=bool)
+            mine[ring] = True
+            pole_in[mine[corners].all(axis=1)] = number
     a, b = nodes[corners.ravel()], nodes[corners[:, [1, 2, 0]].ravel()]
     rise = rises(flow, a, b, smooth[corners.ravel()], smooth[corners[:, [1, 2, 0]].ravel()])
     beside = used.neighbors.astype(np.int64)
@@ -415,7 +418,9 @@ def _seeds(sheet: Sheet, pole: int, count: int) -> list[_Seed]:
     if not len(ring) or not count:
         return []
     outer: dict[tuple[int, int], tuple[int, float]] = {}
-    for triangle in np.flatnonzero(np.isin(sheet.corners, ring).sum(axis=1) == 2).tolist():
+    mine = np.zeros(len(sheet.nodes), dtype=bool)
+    mine[ring] = True
+    for triangle in np.flatnonzero(mine[sheet.corners].sum(axis=1) == 2).tolist():
         tri = sheet.corners[triangle].tolist()
         for k in range(3):
             outer[tri[(k + 1) % 3], tri[k]] = (triangle, -float(sheet.rise[triangle, k]))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Callable, Iterable, Sequence
 from functools import partial
 from typing import Any, TypeAlias
@@ -15,9 +16,9 @@ from splitcheck.verdict.findings import Finding
 from splitcheck.verdict.scene import Judged, Scene
 from splitcheck.verdict.views import FindingView, Pictures
 
-#: The return current is looked for in the worst of so many gaps, ...
-MOST_STREAMS = 12
-#: ... and the worst of so many are drawn from near at all.
+#: The return current is looked for in so many of the worst, no more than so many over one gap, ...
+MOST_STREAMS, OVER_ONE_GAP = 10, 2
+#: ... and so many are drawn from near at all.
 MOST_CLOSEUPS = 100
 
 #: Calls a function on every item and gives the results in order, as ``map`` does.
@@ -47,8 +48,8 @@ def draw(
     chosen = _chosen(judged) if only is None else [f for f in judged.findings if f.id in only]
     drawn = [f for f in chosen if f.id in judged.weighed]
     closeups = Closeups(scene, tracks, Fields(scene.board, scene.planes, scene.graph))
-    first = set() if only is not None else {f.id for f in drawn[MOST_STREAMS:]}
-    jobs = [(finding, finding.id not in first) for finding in drawn]
+    closest = {f.id for f in (_closest(drawn) if only is None else drawn)}
+    jobs = [(finding, finding.id in closest) for finding in drawn]
     views = tuple(spread(partial(_one, closeups, judged), jobs))
     return Pictures(
         board_view(scene, planes, tracks, judged.findings),
@@ -71,3 +72,14 @@ def _chosen(judged: Judged) -> list[Finding]:
         (rest if finding.gap in seen else first).append(finding)
         seen.add(finding.gap)
     return [*first, *rest][:MOST_CLOSEUPS]
+
+
+def _closest(drawn: Sequence[Finding]) -> list[Finding]:
+    """Those whose return current is looked for."""
+    over: Counter[str] = Counter()
+    found = []
+    for finding in drawn:
+        if over[finding.gap] < OVER_ONE_GAP:
+            over[finding.gap] += 1
+            found.append(finding)
+    return found[:MOST_STREAMS]
