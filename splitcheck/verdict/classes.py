@@ -208,9 +208,9 @@ def _check(board: Board, own: RulesFile) -> None:
     words = [spelling for name in names for spelling in spellings(name)]
     for entry in own.classes:
         for pattern in entry.listed("names"):
-            _must(Names([pattern]), names, pattern, entry.place)
+            _must(Names([pattern]), names, pattern, entry.place_of("names"))
         for pattern in entry.listed("words"):
-            _must(Words([pattern]), words, pattern, entry.place)
+            _must(Words([pattern]), words, pattern, entry.place_of("words"))
     for told in own.assignments:
         _must(Names([told.key]), names, told.key, f"{told.source.file}:{told.source.line}")
     for one in own.references:

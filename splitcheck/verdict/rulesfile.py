@@ -58,11 +58,17 @@ class ClassEntry:
     place: str
     like: str | None
     changes: tuple[tuple[str, Any], ...]
+    places: tuple[tuple[str, str], ...] = ()
+    """Where each of its lists stands."""
 
     def listed(self, key: str) -> tuple[str, ...]:
         """Patterns of one of its lists."""
         found: tuple[str, ...] = dict(self.changes).get(key, ())
         return found
+
+    def place_of(self, key: str) -> str:
+        """Where one of its lists stands."""
+        return dict(self.places).get(key, self.place)
 
 
 @dataclass(frozen=True, slots=True)
@@ -164,7 +170,8 @@ def _class(classes: Table, name: str, never: tuple[str, ...]) -> ClassEntry:
     _in_order(table, "warning_mv", "error_mv")
     _in_order(table, "warning_nh", "error_nh")
     given = tuple((key, value) for key, value in changes.items() if value is not None)
-    return ClassEntry(name, table.place(), table.words("like"), given)
+    places = tuple((key, table.place(key)) for key in _LISTS if key in table.data)
+    return ClassEntry(name, table.place(), table.words("like"), given, places)
 
 
 def _in_order(table: Table, low: str, high: str) -> None:
