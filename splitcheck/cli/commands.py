@@ -101,8 +101,11 @@ def rank(
         tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
     )
     with streams.progress_bar(quiet=quiet) as progress:
-        walked = road.look(path, options, progress)
-        report = walked.report
+        if targets.are_drawn(wanted):
+            walked = road.look(path, options, progress)
+            report, draw = walked.report, partial(road.illustrate, walked, options)
+        else:
+            report, draw = road.rank(path, options, progress), None
     results.show(
         report,
         terminal.render,
@@ -111,7 +114,7 @@ def rank(
         quiet=quiet,
         color=color,
         path=path,
-        draw=partial(road.illustrate, walked, options),
+        draw=draw,
     )
     raise typer.Exit(results.exit_code(report, fail_at))
 

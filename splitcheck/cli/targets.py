@@ -107,6 +107,17 @@ def parse(
     return targets
 
 
+def are_drawn(targets: Sequence[Target]) -> bool:
+    """Whether any of them needs pictures of the board.
+
+    Examples
+    --------
+    >>> are_drawn(parse(["json=-"], Path("board")))
+    False
+    """
+    return any(target.format in DRAWN for target in targets)
+
+
 def _target(word: str, formats: Sequence[str]) -> Target:
     name, equals, file = word.partition("=")
     known = ", ".join(formats)
