@@ -9,8 +9,9 @@ import numpy as np
 
 from splitcheck.units import Floats
 
-#: Image terms summed one by one; the rest of each series is added in closed form.
-_TERMS = 6
+#: Image terms summed one by one; the rest of the series is added in closed form. With two, f is
+#: within 2e-5 of the sum of 400.
+_TERMS = 2
 #: The image series is tabled up to this many image distances; beyond, its logarithm is exact.
 _TABLED = 3.0
 _STEPS = 4096
@@ -188,29 +189,71 @@ def wall_source(
     its ends measured along it, the wall from z = 0 to z is seen under half of
     T(z) = atan(s2 z / (y R2)) - atan(s1 z / (y R1)), R^2 = s^2 + y^2 + z^2, so f = T(h)/2 pi.
     Between two planes the walls repeat every 2H: f = [T(h) + sum_1^N (T(2nH + h) - T(2nH - h))
-    - (h/H) T((2N + 1)H)]/2 pi; the last term is the rest of the series less the current h/H that
-    the upper plane takes over at the ends of the trace.
+    - (h/H) (T(z) - (H^2 - h^2)/6 T''(z))]/2 pi with z = (2N + 1)H; the last term is the rest of the
+    series by the midpoint rule with its first correction, less the current h/H that the upper plane
+    takes over at the ends of the trace.
     """
-    x1, y1, x2, y2 = segments.T
+    return walls_source(x[:, None], y[:, None], segments, height_mm, above_mm)
+
+
+def walls_source(
+    x: Floats, y: Floats, segments: Floats, height_mm: float, above_mm: float | None
+) -> tuple[Floats, Floats]:
+    """`wall_source` of points and stretches that are matched as numpy broadcasts them.
+
+    Parameters
+    ----------
+    x, y
+        Points of the plane, any shape, mm.
+    segments
+        Stretches, shape (..., 4); all but the last axis broadcasts with `x`.
+    height_mm, above_mm
+        As in `wall_source`.
+
+    Returns
+    -------
+    What each stretch adds to f, and the angle it is seen under, of the common shape.
+
+    Examples
+    --------
+    Beside the middle of a long trace, at its height: atan(1)/pi.
+
+    >>> f, _ = walls_source(np.array(0.0), np.array(0.2), np.array([-1e4, 0, 1e4, 0]), 0.2, None)
+    >>> round(float(f), 4)
+    0.25
+    """
+    x1, y1, x2, y2 = np.moveaxis(segments, -1, 0)
     length = np.hypot(x2 - x1, y2 - y1)
     ux, uy = (x2 - x1) / length, (y2 - y1) / length
-    from_x, from_y = x[:, None] - x1, y[:, None] - y1
+    from_x, from_y = x - x1, y - y1
     off = ux * from_y - uy * from_x
     # a point on the line itself belongs to its left side, in f and in A alike
     off = np.where(np.abs(off) < 1e-12, 1e-12, off)
     first = -(ux * from_x + uy * from_y)
     last = first + length
-    seen = np.arctan2(off * length, first * last + off**2)
+    square = off * off
+    seen = np.arctan2(off * length, first * last + square)
+    early, late = first * first + square, last * last + square
 
     def wall(z: float) -> Floats:
-        flat = off**2 + z * z
-        value: Floats = np.arctan(last * z / (off * np.sqrt(last**2 + flat)))
-        value -= np.arctan(first * z / (off * np.sqrt(first**2 + flat)))
+        value: Floats = np.arctan(last * z / (off * np.sqrt(late + z * z)))
+        value -= np.arctan(first * z / (off * np.sqrt(early + z * z)))
+        return value
+
+    def bend(z: float) -> Floats:
+        """T''(z)."""
+        up = square + z * z
+        value = np.zeros_like(off)
+        for along, reach in ((first, early + z * z), (last, late + z * z)):
+            value = along / np.sqrt(reach) * (1.0 / reach + 2.0 / up) - value
+        value *= off * (-z) / up
         return value
 
     total = wall(height_mm)
     if above_mm is not None:
         for n in range(1, _TERMS + 1):
             total += wall(2 * n * above_mm + height_mm) - wall(2 * n * above_mm - height_mm)
-        total -= height_mm / above_mm * wall((2 * _TERMS + 1) * above_mm)
+        z = (2 * _TERMS + 1) * above_mm
+        slack = (above_mm**2 - height_mm**2) / 6
+        total -= height_mm / above_mm * (wall(z) - slack * bend(z))
     return total / (2.0 * np.pi), seen

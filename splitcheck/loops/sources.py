@@ -11,10 +11,11 @@ from typing import NamedTuple, TypeAlias
 import numpy as np
 import shapely
 from numpy.polynomial.legendre import leggauss
+from numpy.typing import NDArray
 from shapely import LineString, Polygon
 from shapely.ops import split
 
-from splitcheck.loops.kernels import wall_source
+from splitcheck.loops.kernels import wall_source, walls_source
 from splitcheck.loops.outlines import Ints
 from splitcheck.loops.panels import Panels
 from splitcheck.units import Floats
@@ -78,27 +79,101 @@ def strip_sources(
     angle between the ends, followed continuously through the gap, takes the place of A. Panels far
     from a strip see it as one line, from their centre.
     """
-    lines = np.zeros((len(panels), len(strips)))
-    away = np.zeros((len(panels), len(strips)))
-    for height_mm, above_mm in sorted(
-        {(strip.height_mm, strip.above_mm) for strip in strips}, key=str
-    ):
-        where = (height_mm, above_mm)
-        same = [k for k, s in enumerate(strips) if (s.height_mm, s.above_mm) == where]
-        segments = [strips[k].segments for k in same]
-        first = np.cumsum([0, *(len(some) for some in segments[:-1])])
-        every = np.concatenate(segments)
-        value = _smooth(panels.centre, every, strips[same[0]])
-        lines[:, same] = np.add.reduceat(value, first, axis=1)
-        away[:, same] = np.minimum.reduceat(_distances(panels.centre, every), first, axis=1)
-    lines += between.T * [strip.share / (2 * np.pi) for strip in strips]
+    lines = between.T * [strip.share / (2 * np.pi) for strip in strips]
     full = lines.copy()
-    for k, strip in enumerate(strips):
-        scale = max(strip.width_mm, strip.height_mm / 2)
-        near = np.flatnonzero(away[:, k] < _CLOSE * scale + 2 * panels.radius)
-        if len(near):
-            full[near, k], lines[near, k] = _nearby(panels, near, strip, between[k, near])
+    for like in _alike(strips):
+        columns = np.array(like)
+        thin, bundle = _smooth_means(panels, [strips[k] for k in like])
+        lines[:, columns] += thin
+        full[:, columns] += bundle
     return full, lines
+
+
+def _alike(strips: Sequence[Strip]) -> list[list[int]]:
+    """Numbers of strips of one width and height; they are worked off at once."""
+    groups: dict[tuple[float, float, float], list[int]] = {}
+    for k, strip in enumerate(strips):
+        key = (strip.height_mm, strip.above_mm or 0.0, strip.width_mm)
+        groups.setdefault(key, []).append(k)
+    return [groups[key] for key in sorted(groups)]
+
+
+class _Stretches(NamedTuple):
+    """Stretches of strips of one width and height, one after another."""
+
+    centre: Floats
+    """On the centre lines, shape (s, 4)."""
+    bundle: Floats
+    """Those of the filaments, shape (s + 2 t, filaments, 4); the legs from the ends of the t
+    strips to their filaments come last."""
+    weights: Floats
+    """Of the filaments."""
+    owner: Ints
+    """Number of the strip of each, shape (s + 2 t,)."""
+    ends: Floats
+    """Where the legs are, shape (2 t, 2)."""
+    first: Ints
+    """Number of the first stretch of each strip."""
+
+
+def _stretches(strips: Sequence[Strip]) -> _Stretches:
+    places, weights = filaments(strips[0].width_mm, strips[0].height_mm)
+    paths = [run_beside(strip.line, places).transpose(1, 0, 2) for strip in strips]
+    counts = np.array([len(strip.line) - 1 for strip in strips])
+    every = np.arange(len(strips))
+    return _Stretches(
+        centre=np.concatenate([strip.segments for strip in strips]),
+        bundle=np.concatenate(
+            [*(path[1:-1] for path in paths), *(path[[0, -1]] for path in paths)]
+        ),
+        weights=weights,
+        owner=np.concatenate([np.repeat(every, counts), np.repeat(every, 2)]),
+        ends=np.concatenate([strip.line[[0, -1]] for strip in strips]),
+        first=np.concatenate([[0], np.cumsum(counts)[:-1]]),
+    )
+
+
+def _smooth_means(panels: Panels, strips: Sequence[Strip]) -> tuple[Floats, Floats]:
+    """Smooth part of f of centre lines and of whole strips, as means over panels, shape (n, s).
+
+    Stretches that a panel is close to are averaged over its four points, and over the width.
+    """
+    made, one = _stretches(strips), strips[0]
+    value = _smooth(panels.centre[:, None], made.centre, one)
+    lines = np.add.reduceat(value, made.first, axis=1)
+    away = [_distances(panels.centre, made.centre)]
+    away.append(np.hypot(*np.moveaxis(panels.centre[:, None] - made.ends, 2, 0)))
+    reach = _CLOSE * max(one.width_mm, one.height_mm / 2) + 2 * panels.radius
+    i, k = np.nonzero(np.concatenate(away, axis=1) < reach[:, None])
+    spots, owner = panels.points[i], made.owner[k]
+    full = lines.copy()
+    each = _smooth(spots[:, :, None], made.bundle[k][:, None], one) @ made.weights
+    on_line = k < len(made.centre)
+    ii, kk = i[on_line], k[on_line]
+    single = _smooth(spots[on_line], made.centre[kk][:, None], one).mean(axis=1)
+    np.add.at(full, (i, owner), each.mean(axis=1))
+    np.add.at(full, (ii, owner[on_line]), -value[ii, kk])
+    np.add.at(lines, (ii, owner[on_line]), single - value[ii, kk])
+    near, strip = np.nonzero(_marked(lines.shape, i, owner))
+    turn = _end_turns(panels, near, np.array([s.line[[0, -1]] for s in strips])[strip])
+    turn *= one.share / (2 * np.pi)
+    lines[near, strip] += turn
+    full[near, strip] += turn
+    return lines, full
+
+
+def _marked(shape: tuple[int, ...], i: Ints, k: Ints) -> NDArray[np.bool_]:
+    marked = np.zeros(shape, dtype=bool)
+    marked[i, k] = True
+    return marked
+
+
+def _end_turns(panels: Panels, near: Ints, ends: Floats) -> Floats:
+    """By how much the angle between two ends differs in the mean from that at the centre."""
+    spots, middle = panels.points[near], panels.centre[near][:, None, :]
+    turn = _turned(ends[:, 1, None], middle, spots) - _turned(ends[:, 0, None], middle, spots)
+    mean: Floats = turn.mean(axis=1)
+    return mean
 
 
 def still_afar(
@@ -141,25 +216,10 @@ def still_afar(
 
 
 def _smooth(spots: Floats, segments: Floats, strip: Strip) -> Floats:
-    """What stretches add to f, less what they add to the jump, shape (k, s)."""
-    x, y = spots.T
-    value, seen = wall_source(x, y, segments, strip.height_mm, strip.above_mm)
+    """What stretches add to f, less what they add to the jump; points and stretches broadcast."""
+    x, y = np.moveaxis(spots, -1, 0)
+    value, seen = walls_source(x, y, segments, strip.height_mm, strip.above_mm)
     return value - strip.share / (2 * np.pi) * seen
-
-
-def _nearby(panels: Panels, near: Ints, strip: Strip, between: Floats) -> tuple[Floats, Floats]:
-    """Source of a strip and of its centre line on panels close by, from their four points."""
-    spots, middle = panels.points[near], panels.centre[near][:, None, :]
-    turn = _turned(strip.line[-1], middle, spots) - _turned(strip.line[0], middle, spots)
-    angle = strip.share / (2 * np.pi) * (between + turn.mean(axis=1))
-    flat = spots.reshape(-1, 2)
-    places, weights = filaments(strip.width_mm, strip.height_mm)
-    paths = run_beside(strip.line, places)
-    bundle = paths.reshape(-1, 4)
-    each = np.repeat(weights, paths.shape[1])
-    full = _smooth(flat, bundle, strip) @ each
-    thin = _smooth(flat, strip.segments, strip).sum(axis=1)
-    return angle + full.reshape(-1, 4).mean(axis=1), angle + thin.reshape(-1, 4).mean(axis=1)
 
 
 def _distances(spots: Floats, segments: Floats) -> Floats:
