@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
+from functools import cached_property
 from math import hypot
-from typing import Literal, NamedTuple, TypeAlias
+from typing import TYPE_CHECKING, Literal, NamedTuple, TypeAlias
 
 import numpy as np
 
@@ -13,7 +14,9 @@ from splitcheck.board.components import Component, Pin, capacitors_of, links_of
 from splitcheck.copper.marks import Point
 from splitcheck.loops.mounted import BARREL_MM, mounted_nh
 from splitcheck.planes.islands import Island
-from splitcheck.units import Floats
+
+if TYPE_CHECKING:
+    from scipy.spatial import KDTree
 
 #: A capacitor, or a link of no resistance.
 BridgeKind: TypeAlias = Literal["capacitor", "copper"]
@@ -66,58 +69,80 @@ def standing_between(board: Board, by_part: Mapping[int, Island]) -> Iterator[St
         *(("capacitor", part) for part in capacitors_of(board.components, board.capacitors)),
         *(("copper", part) for part in links_of(board.components)),
     ]
-    ways = _ways_down(board, {pin.part for _, part in parts for pin in part.pins}, by_part)
+    holes = _holes_through(board, {pin.part for _, part in parts for pin in part.pins}, by_part)
     for kind, part in parts:
-        one, other = (_reached(pin, ways, by_part) for pin in part.pins)
+        one, other = (_reached(pin, holes, by_part) for pin in part.pins)
         for start in one:
             for stop in other:
                 if start.island.id != stop.island.id:
                     yield _standing(kind, board, part, start, stop)
 
 
-def _ways_down(
+class _Holes:
+    """Plated holes through one piece of copper that lead to islands."""
+
+    def __init__(self) -> None:
+        self.places: list[Point] = []
+        self.barrels_mm: list[float] = []
+        self.islands: list[list[Island]] = []
+
+    def add(self, at: Point, barrel_mm: float, islands: list[Island]) -> None:
+        """One more hole."""
+        self.places.append(at)
+        self.barrels_mm.append(barrel_mm)
+        self.islands.append(islands)
+
+    @cached_property
+    def tree(self) -> KDTree:
+        """Their places, to be asked for the nearest."""
+        from scipy.spatial import KDTree  # noqa: PLC0415 (0.1 s, only where needed)
+
+        return KDTree(np.array(self.places))
+
+    def near(self, at: Point, reach_mm: float) -> list[tuple[float, int]]:
+        """Distances and numbers of those within reach, nearest first."""
+        rows = self.tree.query_ball_point(at, reach_mm)
+        return sorted(
+            (hypot(self.places[i][0] - at[0], self.places[i][1] - at[1]), i) for i in rows
+        )
+
+
+def _holes_through(
     board: Board, parts: set[int], by_part: Mapping[int, Island]
-) -> dict[int, list[tuple[Island, Floats]]]:
-    """For pieces of copper, the islands that plated holes through them lead to, and the holes.
-
-    The holes have shape (n, 3): place and diameter, mm, sorted.
-    """
-    found: dict[int, dict[str, list[tuple[float, float, float]]]] = {}
-    islands = {island.id: island for island in by_part.values()}
+) -> dict[int, _Holes]:
+    """For pieces of copper, the plated holes through them that lead to islands."""
+    found: dict[int, _Holes] = {}
     for hole in board.holes:
-        met = [by_part[part] for part in hole.parts if part in by_part]
-        for part in hole.parts if met else ():
-            if part not in parts:
-                continue
-            down = found.setdefault(part, {})
-            for island in met:
-                if island.part != part:
-                    down.setdefault(island.id, []).append((*hole.at, hole.hole.diameter_mm))
-    return {
-        part: [(islands[name], np.array(sorted(holes))) for name, holes in sorted(down.items())]
-        for part, down in found.items()
-    }
+        mine = [part for part in hole.parts if part in parts]
+        met = [by_part[part] for part in hole.parts if part in by_part] if mine else []
+        for part in mine:
+            islands = [island for island in met if island.part != part]
+            if islands:
+                through = found.setdefault(part, _Holes())
+                through.add(hole.at, hole.hole.diameter_mm, islands)
+    return found
 
 
-def _reached(
-    pin: Pin, ways: Mapping[int, list[tuple[Island, Floats]]], by_part: Mapping[int, Island]
-) -> list[_Reach]:
+def _reached(pin: Pin, holes: Mapping[int, _Holes], by_part: Mapping[int, Island]) -> list[_Reach]:
     """The islands that a pad reaches, by layer, each by the nearest hole.
 
     Left out are those whose nearest hole is much farther off than the nearest of all: the current
     comes down there before, and goes on by other holes.
     """
-    met = []
+    found: dict[str, _Reach] = {}
+    nearest = 0.0
     if pin.part in by_part:
-        met.append((0.0, _Reach(by_part[pin.part], pin.at, BARREL_MM)))
-    for island, holes in ways.get(pin.part, ()):
-        far = np.hypot(holes[:, 0] - pin.at[0], holes[:, 1] - pin.at[1])
-        nearest = int(np.argmin(far))
-        x, y, wide = holes[nearest].tolist()
-        met.append((float(far[nearest]), _Reach(island, (x, y), wide)))
-    enough = max(NEAR_MM, MUCH_FARTHER * min((far for far, _ in met), default=0.0))
-    found = [reach for far, reach in met if far <= enough]
-    return sorted(found, key=lambda reach: (reach.island.layer, reach.island.id))
+        island = by_part[pin.part]
+        found[island.id] = _Reach(island, pin.at, BARREL_MM)
+    elif pin.part in holes:
+        nearest = float(holes[pin.part].tree.query(pin.at)[0])
+    if pin.part in holes:
+        through = holes[pin.part]
+        for _, row in through.near(pin.at, max(NEAR_MM, MUCH_FARTHER * nearest)):
+            for island in through.islands[row]:
+                reach = _Reach(island, through.places[row], through.barrels_mm[row])
+                found.setdefault(island.id, reach)
+    return sorted(found.values(), key=lambda reach: (reach.island.layer, reach.island.id))
 
 
 def _standing(
