@@ -98,7 +98,7 @@ class Rules:
     change_mm: float = 1.27
     """A return via at most this far from a via that changes planes serves it, mm."""
     change_warning_nh: float = 0.5
-    """A change of plane that adds this much is at least a warning, nH."""
+    """A change of plane that adds this much is at least a warning, nH, for edges of 1 ns."""
     edge_heights: float = 1.0
     """A trace nearer to the edge of its plane than so many heights runs along the edge ..."""
     edge_mm: float = 0.0
@@ -122,9 +122,19 @@ class Rules:
         return self.change_mm if net_class.change_mm is None else net_class.change_mm
 
     def change_warning_nh_of(self, net_class: Class) -> float:
-        """From where on a change of plane is at least a warning for a class, nH."""
+        """From where on a change of plane is at least a warning for a class, nH.
+
+        That of the rules is meant for edges of 1 ns and faster; for slower ones it grows with the
+        rise time, as the same noise takes so much more.
+
+        Examples
+        --------
+        >>> slow = Class("i2c", 20.0, 1650.0, 50.0, 99.0, 33.0)
+        >>> Rules().change_warning_nh_of(DEFAULT_CLASS), Rules().change_warning_nh_of(slow)
+        (0.5, 10.0)
+        """
         own = net_class.change_warning_nh
-        return self.change_warning_nh if own is None else own
+        return self.change_warning_nh * max(1.0, net_class.rise_ns) if own is None else own
 
 
 #: What is judged by where nobody gives rules: one class for all nets.
