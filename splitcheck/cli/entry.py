@@ -10,12 +10,12 @@ from typing import NoReturn
 
 import typer
 
-from splitcheck.cli import gate, mend, streams
+from splitcheck.cli import gate, mend, show, streams
 from splitcheck.cli.commands import app
 from splitcheck.errors import SplitcheckError
 
 #: Rooms that add commands of their own to the app when they are imported.
-MORE_COMMANDS = (gate, mend)
+MORE_COMMANDS = (gate, mend, show)
 #: Exit codes; they are told in every help text and in README.
 CLEAN, FOUND, AT_FAULT, CRASHED, STOPPED = 0, 1, 2, 3, 130
 

@@ -364,7 +364,7 @@ def _ways(route: Route) -> tuple[WayView, ...]:
         WayView(
             line_of(way.path),
             round(way.length_mm, 4),
-            line_of(way.bridges),
+            line_of([*way.bridges, *(part.at for part in way.capacitors)]),
             way is best,
         )
         for way in sorted(found, key=lambda way: way.length_mm)
