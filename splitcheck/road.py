@@ -359,7 +359,7 @@ def _rules_file(path: Path, options: Options) -> tuple[Path, str] | None:
     folder = path if path.is_dir() else path.parent
     for place, words in (
         (folder, "found in the folder of the export"),
-        (Path.cwd(), "found in the current directory"),
+        (Path(), "found in the current directory"),
     ):
         if (place / RULES_FILE).is_file():
             return place / RULES_FILE, words
