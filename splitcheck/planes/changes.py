@@ -60,6 +60,8 @@ class PlaneChange:
     after: tuple[Carry, ...]
     line: int
     """Line in the Gerber file of the first of the two layers."""
+    width_mm: float = 0.0
+    """Width of the trace: of the narrower one of the two layers."""
 
     @property
     def moved(self) -> dict[tuple[int, int], float]:
@@ -82,6 +84,7 @@ class _Look(NamedTuple):
     hole: int
     layer: int
     line: int
+    width_mm: float
     reach_mm: float
     """How far the traces go, at most to where looking ends."""
     places: list[Point]
@@ -129,6 +132,7 @@ def find_changes(
                 carried[one],
                 carried[other],
                 looks[one].line,
+                min(looks[one].width_mm, looks[other].width_mm),
             )
             if carried[one] and carried[other] and change.share >= LEAST_SHARE:
                 found.append(change)
@@ -151,7 +155,7 @@ def carries_at(
     -------
     For every stretch its islands, empty where no plane covers most of its places.
     """
-    looks = [_Look(0, layer, 0, 0.0, list(places)) for layer, places in stretches]
+    looks = [_Look(0, layer, 0, 0.0, 0.0, list(places)) for layer, places in stretches]
     return _carried(board, planes, looks)
 
 
@@ -215,7 +219,8 @@ def _look(board: Board, hole: int, tracks: Tracks, nodes: Sequence[int]) -> _Loo
             farthest = max(farthest, min(walked + length, LOOK_TO_MM))
             if walked + length < LOOK_TO_MM:
                 walk.append((int(tracks.nodes[piece, 1 if first else 0]), walked + length))
-    return _Look(hole, tracks.layer, line, farthest, places)
+    width = float(tracks.width_mm[sorted(seen)].min(initial=np.inf))
+    return _Look(hole, tracks.layer, line, width, farthest, places)
 
 
 def _carried(

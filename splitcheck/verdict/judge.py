@@ -20,11 +20,13 @@ from splitcheck.loops.routes import find_route
 from splitcheck.loops.ways import Route, Way
 from splitcheck.planes.changes import PlaneChange
 from splitcheck.planes.crossings import BareTrace, Crossing
+from splitcheck.planes.edges import EdgeRun
 from splitcheck.planes.islands import Gap
 from splitcheck.verdict import around
 from splitcheck.verdict.around import LONG_RUN, exempt, share_of, too_small
 from splitcheck.verdict.bare import bare_findings
 from splitcheck.verdict.by_class import EXEMPT, listed, with_crosstalk
+from splitcheck.verdict.edge_runs import common_of, edge_findings, with_common
 from splitcheck.verdict.findings import (
     BridgeUse,
     Count,
@@ -66,6 +68,7 @@ def judge(
     spread: Spread = map,
     *,
     changes: Sequence[PlaneChange] = (),
+    edges: Sequence[EdgeRun] = (),
     by_rules: Sequence[Finding] = (),
 ) -> Judged:
     """Turn crossings and bare traces into findings, worst first.
@@ -80,6 +83,8 @@ def judge(
         How to call a function on many items: in turn, or on several cores.
     changes
         Plated holes where the return changes planes.
+    edges
+        Traces along the edges of planes.
     by_rules
         Findings that the rules alone make: see ``supplies.py``.
 
@@ -105,8 +110,10 @@ def judge(
         if finding is None:
             dropped[too_small(scene)] += 1
         else:
-            findings.append(replace(finding, id=str(number)))
+            findings.append(_with_common(scene, item, replace(finding, id=str(number))))
     findings.extend(bare_findings(scene, bare, dropped))
+    crossed = [item.crossing for item in weighed]
+    findings.extend(edge_findings(scene, edges, crossed, dropped))
     cases = [Case((change,), 0.0) for change in changes]
     cases += [*from_leaving(scene, bare), *from_long_runs(scene, long_runs)]
     findings.extend(change_findings(scene, cases, dropped))
@@ -186,8 +193,6 @@ def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
     value = item.estimate
     if value is not None and value.added_nh + value.error_nh < scene.min_nh:
         return too_small(scene)
-    if item.kind == "edge-run":
-        return "runs beyond the rim of a plane (edge runs)"
     return item
 
 
@@ -258,6 +263,15 @@ def _crossing_finding(
     if value is not None:
         noise = noise_over_gap(value.added_nh, drive, _along_ns(scene, item))
     return _finding(scene, item, value, noise, field, weighed)
+
+
+def _with_common(scene: Scene, item: Weighed, finding: Finding) -> Finding:
+    """A run beyond the edge of a plane with what it shares with the plane."""
+    common = common_of(scene, item.crossing) if item.kind == "edge-run" else None
+    if common is None:
+        return finding
+    why = f"{finding.reason}; it hangs beyond the edge: {with_common(common)}"
+    return replace(finding, common_nh=common, reason=why)
 
 
 def _along_ns(scene: Scene, item: Weighed) -> float:

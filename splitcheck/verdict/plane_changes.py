@@ -20,6 +20,7 @@ from splitcheck.planes.changes import LOOK_STEP_MM, LOOK_TO_MM, Carry, PlaneChan
 from splitcheck.planes.crossings import BareTrace, Crossing
 from splitcheck.planes.islands import Island
 from splitcheck.units import INCH_MM
+from splitcheck.verdict.around import SUPPLY_RATIO
 from splitcheck.verdict.findings import LEVELS, BridgeUse, Finding, Source
 from splitcheck.verdict.listing import gathered, near_enough
 from splitcheck.verdict.places import fingerprint
@@ -41,6 +42,9 @@ ERRORS = {"via": 0.3, "capacitor": 0.5, "plates": 1.0}
 LEAST_SHARE = 0.1
 #: Barrel of a part's hole, mm (common practice, no source).
 PART_HOLE_MM = 0.3
+SUPPLY_LINES = (
+    f"changes of plane of lines wider than {SUPPLY_RATIO:g} times their height (supply lines)"
+)
 #: Traces that leave a plane for less than this go to their own pad there, mm.
 OWN_END_MM = 3.0
 
@@ -97,7 +101,9 @@ def from_leaving(scene: Scene, bare: Sequence[BareTrace]) -> list[Case]:
     for number, trace in enumerate(traces):
         assert trace.rim is not None
         before, after = carried[2 * number : 2 * number + 2]
-        change = _in_layer(trace.net, trace.rim, trace.layer, before, after, trace.line)
+        change = _in_layer(
+            trace.net, trace.rim, trace.layer, before, after, trace.line, trace.width_mm
+        )
         cases.append(Case((change,), trace.bare_mm))
     return cases
 
@@ -133,17 +139,23 @@ def from_long_runs(scene: Scene, crossings: Sequence[Crossing]) -> list[Case]:
     for number, c in enumerate(crossings):
         before, entered, after, left = carried[4 * number : 4 * number + 4]
         changes = (
-            _in_layer(c.net, c.path[0], c.layer, before, entered, c.line),
-            _in_layer(c.net, c.path[-1], c.layer, after, left, c.line),
+            _in_layer(c.net, c.path[0], c.layer, before, entered, c.line, c.width_mm),
+            _in_layer(c.net, c.path[-1], c.layer, after, left, c.line, c.width_mm),
         )
         cases.append(Case(changes, c.run_mm))
     return cases
 
 
 def _in_layer(
-    net: int, at: Point, layer: int, before: tuple[Carry, ...], after: tuple[Carry, ...], line: int
+    net: int,
+    at: Point,
+    layer: int,
+    before: tuple[Carry, ...],
+    after: tuple[Carry, ...],
+    line: int,
+    width_mm: float,
 ) -> PlaneChange:
-    return PlaneChange(net, at, None, (layer, layer), before, after, line)
+    return PlaneChange(net, at, None, (layer, layer), before, after, line, width_mm)
 
 
 def change_findings(scene: Scene, cases: Sequence[Case], dropped: dict[str, int]) -> list[Finding]:
@@ -185,6 +197,9 @@ def _judge(scene: Scene, case: Case, nets: _Nets, dropped: dict[str, int]) -> li
     if any(not change.before or not change.after for change in case.changes):
         dropped["changes to where no plane covers most of the trace, not judged as such"] += 1
         return None
+    if any(_is_supply(scene, change) for change in case.changes):
+        dropped[SUPPLY_LINES] += 1
+        return None
     if all(_has_coplanar(scene, change) for change in case.changes):
         dropped["changes of plane beside reference copper of the trace's own layer"] += 1
         return None
@@ -202,6 +217,16 @@ def _judge(scene: Scene, case: Case, nets: _Nets, dropped: dict[str, int]) -> li
         dropped[near_enough("plane-change")] += 1
         return None
     return ways
+
+
+def _is_supply(scene: Scene, change: PlaneChange) -> bool:
+    """Whether the line is so wide for its height that it carries supply, not signals."""
+    height = min(
+        scene.board.stack.height_mm(layer, carry.layer)
+        for layer, carries in zip(change.layers, (change.before, change.after), strict=True)
+        for carry in carries
+    )
+    return change.width_mm > SUPPLY_RATIO * height
 
 
 def _has_coplanar(scene: Scene, change: PlaneChange) -> bool:
