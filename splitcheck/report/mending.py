@@ -14,7 +14,8 @@ from splitcheck.verdict.findings import Finding, Proposal, Report
 KEPT = (
     "Proposals keep 0.2 mm to other nets, 0.25 mm between holes and 0.3 mm to the outline, as far "
     "as these files tell: bodies of parts, holes that are not plated, rules of the maker and what "
-    "a supply has to carry are not known here. Nothing was changed: draw what you choose in your "
+    "a supply has to carry are not known here. A void under a connector, a coupling capacitor, "
+    "magnetics or an antenna is mostly meant. Nothing was changed: draw what you choose in your "
     "CAD system, export, and run `rank` again."
 )
 ISOLATION = (

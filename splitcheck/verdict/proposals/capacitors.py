@@ -4,25 +4,31 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import replace
+from math import hypot
 from typing import NamedTuple
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 from shapely import LineString
 
 from splitcheck.loops.bridges import with_capacitor
 from splitcheck.loops.mounted import STRIP_MM, mounted_nh
 from splitcheck.loops.ways import heading
+from splitcheck.planes.islands import Island
 from splitcheck.units import Floats
 from splitcheck.verdict.findings import Point, Proposal
 from splitcheck.verdict.proposals.case import Case, worth_of
 from splitcheck.verdict.proposals.room import HOLE_MM, PAD_MM
+from splitcheck.verdict.proposals.vias import circles
 
 #: Pads of an 0603 part: sides, and distance of their middles (common practice, no source).
 PAD_SIDES_MM = (0.8, 0.9)
 PADS_APART_MM = 1.6
 #: Distance from a pad's middle to that of its via: both pads touch, and no hole is in the part's.
 TO_VIA_MM = 0.8
+#: Directions in which a part is laid where it need not lie along the trace.
+ORIENTATIONS: tuple[Point, ...] = ((1.0, 0.0), (0.0, 1.0), (-1.0, 0.0), (0.0, -1.0))
 #: So far to either side of the trace places are looked at, mm, in these steps.
 FARTHEST_MM = 10.0
 STEP_MM = 0.25
@@ -53,7 +59,7 @@ def capacitors(case: Case) -> Iterator[Proposal]:
     one, other = case.islands
     if one.id == other.id or one.net_name == other.net_name:
         return
-    for mount in _mounts(case):
+    for mount in list(_mounts(case)) or mounts_near(case, case.crossing.at, case.islands):
         graph = with_capacitor(
             case.scene.graph,
             one.id,
@@ -70,6 +76,71 @@ def capacitors(case: Case) -> Iterator[Proposal]:
         found = case.proposal("capacitor", mount.pads, said, worth)
         if found is not None:
             yield found
+
+
+def mounts_near(case: Case, start: Point, islands: tuple[Island, Island]) -> Iterator[Mount]:
+    """Free places round another one for a part whose vias go down to two islands, nearest first.
+
+    Parameters
+    ----------
+    start
+        Where it should be, mm.
+    islands
+        What it joins: beside one another in one plane, or one over the other.
+    """
+    stack = case.scene.board.stack
+    outer = [n for n in (1, len(stack.layers)) if n not in {island.layer for island in islands}]
+    outer.sort(key=lambda n: (sum(abs(n - island.layer) for island in islands), n))
+    xs, ys = circles(start)
+    reach = PADS_APART_MM / 2 + TO_VIA_MM
+    taken: list[Point] = []
+    lands = {
+        ahead: _lands(case, islands, xs, ys, reach * np.array(ahead)) for ahead in ORIENTATIONS
+    }
+    for i, place in enumerate(zip(xs.tolist(), ys.tolist(), strict=True)):
+        if any(hypot(place[0] - x, place[1] - y) < PLACES_APART_MM for x, y in taken):
+            continue
+        ways = [(layer, ahead) for layer in outer for ahead in ORIENTATIONS if lands[ahead][i]]
+        mounts = (_mount_at(case, place, layer, ahead, islands) for layer, ahead in ways)
+        mount = next((mount for mount in mounts if mount is not None), None)
+        if mount is not None:
+            yield mount
+            taken.append(place)
+        if len(taken) == TRIED:
+            return
+
+
+def _lands(
+    case: Case, islands: tuple[Island, Island], xs: Floats, ys: Floats, reach: Floats
+) -> NDArray[np.bool_]:
+    """For each place whether vias so far before and after it would come down on the islands."""
+    on = np.ones(len(xs), dtype=np.bool_)
+    for sign, island in zip((-1, 1), islands, strict=True):
+        plane = case.scene.planes[island.layer]
+        found = plane.island_at(xs + sign * reach[0], ys + sign * reach[1])
+        ids = np.array([each.id == island.id for each in plane.islands] + [False])
+        on &= ids[found]
+    return on
+
+
+def _mount_at(
+    case: Case, middle: Point, layer: int, ahead: Point, islands: tuple[Island, Island]
+) -> Mount | None:
+    """A part in one place and direction, if all of it has room."""
+    half, reach = PADS_APART_MM / 2, PADS_APART_MM / 2 + TO_VIA_MM
+    at, along = np.array(middle), np.array(ahead)
+    pads = (_place(at - half * along), _place(at + half * along))
+    down = (_place(at - reach * along), _place(at + reach * along))
+    opened: list[str] = []
+    for end, island in enumerate(islands):
+        found = room_for_end(case, layer, island.net_name, pads[end], down[end], ahead)
+        if found is None:
+            return None
+        opened.extend(found)
+    # what a hole runs on between two planes is the spreading between them, counted there
+    depth = min(case.scene.board.stack.height_mm(layer, island.layer) for island in islands)
+    value = mounted_nh(2 * reach, (depth, depth), HOLE_MM)
+    return Mount(layer, pads, down, tuple(sorted(set(opened))), value)
 
 
 def _mounts(case: Case) -> Iterator[Mount]:

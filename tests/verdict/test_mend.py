@@ -1,0 +1,294 @@
+"""What is proposed and what is not, on boards whose answer one can see."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from dataclasses import replace
+from itertools import pairwise
+from math import hypot
+
+import pytest
+import shapely
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from shapely import Polygon
+
+from splitcheck.board.board import Board
+from splitcheck.copper.holes import Hole
+from splitcheck.errors import SplitcheckError
+from splitcheck.loops.bridges import with_capacitor
+from splitcheck.planes.crossings import judged_nets
+from splitcheck.planes.islands import reference_nets
+from splitcheck.planes.tracks import lay_all
+from splitcheck.verdict.findings import Finding, Proposal
+from splitcheck.verdict.judge import judge
+from splitcheck.verdict.mend import mend, proposals_for
+from splitcheck.verdict.proposals.room import Room
+from splitcheck.verdict.scene import Judged, Scene
+from tests.making.hand import Line, Sheet, board, crossings, scene, via
+from tests.planes.test_changes import changes
+from tests.report.made import pump
+
+WHOLE = shapely.box(0, 0, 40, 30)
+#: 1 mm wide, 6 mm long, upright, middle of the board.
+SLOT = shapely.box(19.5, 12, 20.5, 18)
+#: Right through.
+SPLIT = shapely.box(19.7, -1, 20.3, 31)
+
+
+def _plane(*holes: Polygon, net: str = "GND") -> Sheet:
+    left = WHOLE.difference(shapely.union_all(holes))
+    return Sheet(tuple((net, piece) for piece in shapely.get_parts(left)))
+
+
+def _split(one: str, other: str) -> Sheet:
+    left = shapely.get_parts(WHOLE.difference(SPLIT))
+    return Sheet(tuple(zip((one, other), left, strict=True)))
+
+
+def _across(y: float = 15.0, net: str = "CLK") -> Line:
+    return Line(net, ((2, y), (38, y)))
+
+
+def _made(*sheets: Sheet, holes: Sequence[Hole] = ()) -> Board:
+    heights = [0.2, 0.5, 0.2][: len(sheets) - 1]
+    return board(*sheets, holes=holes, heights_mm=heights, outline=WHOLE)
+
+
+def _seen(made: Board, seen: Scene | None = None) -> tuple[Judged, tuple[Proposal, ...]]:
+    """What is judged, and what would mend the worst of it."""
+    seen = seen or scene(made)
+    judged = judge(seen, *crossings(made), changes=changes(made))
+    tracks = lay_all(made, judged_nets(made, reference_nets(made)), ())
+    worst = judged.findings[0]
+    room = Room(made, seen.planes)
+    return judged, proposals_for(worst, tracks, seen, judged, room)
+
+
+def _of(found: Sequence[Proposal], what: str) -> list[Proposal]:
+    return [proposal for proposal in found if proposal.what == what]
+
+
+def _worst(made: Board) -> Finding:
+    return judge(scene(made), *crossings(made), changes=changes(made)).findings[0]
+
+
+def test_vias_to_the_plane_beyond_are_put_at_both_ends_and_hold_their_promise() -> None:
+    """A slot over a whole plane of the same net: the same board with those vias says the same."""
+    slotted, whole = _plane(SLOT), _plane()
+    judged, found = _seen(_made(Sheet(lines=(_across(),)), slotted, whole))
+    best = _of(found, "via")[0]
+    assert len(best.at_mm) == 2
+    before = judged.findings[0].added_nh or 0.0
+    for x, y in best.at_mm:
+        assert abs(y - 15.0) >= 0.1 + 0.2 + 0.3 - 1e-6  # half a trace, a clearance, half a pad
+        assert abs(x - 20.0) > 0.5  # beside the slot, not in it
+    assert {x > 20 for x, _ in best.at_mm} == {False, True}
+    holes = [via(*at) for at in best.at_mm]
+    after = _worst(_made(Sheet(lines=(_across(),)), slotted, whole, holes=holes))
+    assert best.added_nh == pytest.approx(after.added_nh, rel=1e-3)
+    assert best.added_nh < 0.8 * before
+    assert not best.isolation
+
+
+def test_no_via_where_the_plane_beyond_is_of_another_net() -> None:
+    """The twin of the above: joining them would be a short."""
+    _, found = _seen(_made(Sheet(lines=(_across(),)), _plane(SLOT), _plane(net="VCC")))
+    assert not _of(found, "via")
+
+
+def test_no_via_where_foreign_copper_leaves_no_room() -> None:
+    """The same board, with traces so near to one another on the bottom that no pad fits between."""
+    lines = tuple(Line(f"N{i}", ((2, 5 + 0.7 * i), (38, 5 + 0.7 * i))) for i in range(30))
+    sheets = Sheet(lines=(_across(),)), _plane(SLOT), _plane()
+    room = _seen(_made(*sheets, Sheet(lines=(Line("N", ((2, 2), (38, 2))),))))[1]
+    assert _of(room, "via")
+    assert not _of(_seen(_made(*sheets, Sheet(lines=lines)))[1], "via")
+
+
+def test_no_via_nearer_than_allowed_to_another_hole() -> None:
+    """Walls of holes stay 0.25 mm apart."""
+    holes = [via(19.0, 14.35), via(21.0, 15.65)]
+    made = _made(Sheet(lines=(_across(),)), _plane(SLOT), _plane(), holes=holes)
+    for proposal in _of(_seen(made)[1], "via"):
+        for x, y in proposal.at_mm:
+            for hole in holes:
+                assert hypot(x - hole.path[0][0], y - hole.path[0][1]) >= 0.55 - 1e-6
+
+
+def test_a_bridge_of_copper_closes_a_slot() -> None:
+    """Nothing is in the way: hardly anything is left, and the ends lie on either side."""
+    _, found = _seen(_made(Sheet(lines=(_across(),)), _plane(SLOT)))
+    (bridge,) = _of(found, "copper")
+    assert bridge.added_nh < 0.05
+    assert sorted(x for x, _ in bridge.at_mm) == pytest.approx([19.2, 20.8])
+    assert "GND on L2" in bridge.words
+
+
+def test_no_bridge_over_a_foreign_trace() -> None:
+    """A trace runs along the slot: copper would lie across it."""
+    slotted = _plane(SLOT)
+    inner = Line("LEAK", ((20, 12.5), (20, 17.5)))
+    made = _made(Sheet(lines=(_across(),)), replace_lines(slotted, inner))
+    assert not _of(_seen(made)[1], "copper")
+
+
+def replace_lines(sheet: Sheet, *lines: Line) -> Sheet:
+    """The same areas with traces."""
+    return Sheet(sheet.areas, lines)
+
+
+def test_no_bridge_between_two_nets() -> None:
+    """Copper between GND and VCC is a short; a capacitor is not."""
+    _, found = _seen(_made(Sheet(lines=(_across(),)), _split("GND", "VCC")))
+    assert {proposal.what for proposal in found} == {"capacitor"}
+
+
+def test_the_trace_is_moved_past_the_end_of_the_slot() -> None:
+    """2.5 or 3.5 mm to its ends, 5 heights of 0.2 mm beyond, half a width: 3.6 or 4.6 mm.
+
+    A trace in the way on one side leaves the other.
+    """
+    sheets = Sheet(lines=(_across(14.5),)), _plane(SLOT)
+    moves = _of(_seen(_made(*sheets))[1], "move")
+    assert sorted(_shift(move) for move in moves) == [3.6, 4.6]
+    assert all(move.added_nh < 0.02 for move in moves)
+    below = Line("N", ((2, 11.5), (38, 11.5)))
+    made = _made(Sheet(lines=(_across(14.5), below)), _plane(SLOT))
+    assert [_shift(move) for move in _of(_seen(made)[1], "move")] == [4.6]
+
+
+def _shift(move: Proposal) -> float:
+    found = re.search(r"by (\d+\.\d+) mm", move.words)
+    assert found is not None
+    return float(found[1])
+
+
+def test_a_slot_too_long_is_not_walked_round() -> None:
+    """Nobody moves a trace by 14 mm."""
+    long = shapely.box(19.5, 1, 20.5, 29)
+    assert not _of(_seen(_made(Sheet(lines=(_across(),)), _plane(long)))[1], "move")
+
+
+def test_a_capacitor_across_a_gap_without_any_bridge_may_cross_a_barrier() -> None:
+    """GND and VCC share nothing: every proposal says so; with one capacitor far off none does."""
+    made = _made(Sheet(lines=(_across(),)), _split("GND", "VCC"))
+    judged, found = _seen(made)
+    assert judged.findings[0].added_nh is None
+    assert found
+    assert all(proposal.isolation for proposal in found)
+    seen = scene(made)
+    one, other = judged.findings[0].islands
+    graph = with_capacitor(seen.graph, one, other, (18.0, 3.0), (22.0, 3.0), 1.5)
+    _, found = _seen(made, replace(seen, graph=graph))
+    assert found
+    assert not any(proposal.isolation for proposal in found)
+
+
+def _full(name: str) -> Sheet:
+    """A layer with traces so near to one another that nothing fits between."""
+    return Sheet(
+        lines=tuple(Line(f"{name}{i}", ((2, 1 + 0.7 * i), (38, 1 + 0.7 * i))) for i in range(40))
+    )
+
+
+def test_a_capacitor_lies_across_the_gap_beside_the_trace() -> None:
+    """Pads on either side, nearest to the trace; what it leaves is about its own inductance."""
+    below = Sheet(lines=(_across(net="M"),))
+    _, found = _seen(_made(Sheet(lines=(_across(),)), _split("GND", "VCC"), below))
+    (x0, y0), (x1, y1) = found[0].at_mm
+    assert x0 < 19.7
+    assert x1 > 20.3
+    assert y0 == pytest.approx(y1)
+    assert 0.1 + 0.2 + 0.3 <= abs(y0 - 15.0) <= 2.0
+    mounted = re.search(r"taken as (\d+\.\d+) nH", found[0].words)
+    assert mounted is not None
+    assert float(mounted[1]) < found[0].added_nh < float(mounted[1]) + 2.5
+
+
+def test_no_capacitor_where_its_pads_have_no_room() -> None:
+    """The twin: both outer layers are full of foreign traces."""
+    made = _made(_full("N"), _split("GND", "VCC"), _full("M"))
+    assert _seen(made)[1] == ()
+
+
+def test_a_return_via_is_put_beside_a_change_of_plane() -> None:
+    """Both planes are ground: a via within the distance that guides ask for, or near it."""
+    antipad = shapely.Point(20, 15).buffer(0.5)
+    sheets = [
+        Sheet(lines=(Line("CLK", ((2, 15), (20, 15))),)),
+        _plane(antipad),
+        _plane(antipad),
+        Sheet(lines=(Line("CLK", ((20, 15), (38, 15))),)),
+    ]
+    holes = [via(20, 15), via(5, 3)]
+    made = board(*sheets, holes=holes, heights_mm=(0.2, 1.0, 0.2), outline=WHOLE)
+    judged, found = _seen(made)
+    assert judged.findings[0].kind == "plane-change"
+    (x, y), *_ = found[0].at_mm
+    assert found[0].what == "via"
+    assert hypot(x - 20, y - 15) <= 1.27
+    assert found[0].added_nh < 0.1 * (judged.findings[0].added_nh or 0.0)
+
+
+def test_planes_of_two_nets_get_a_capacitor_and_no_via() -> None:
+    """The twin: ground above, supply below."""
+    antipad = shapely.Point(20, 15).buffer(0.5)
+    sheets = [
+        Sheet(lines=(Line("CLK", ((2, 15), (20, 15))),)),
+        _plane(antipad),
+        _plane(antipad, net="VCC"),
+        Sheet(lines=(Line("CLK", ((20, 15), (38, 15))),)),
+    ]
+    made = board(*sheets, holes=[via(20, 15)], heights_mm=(0.2, 1.0, 0.2), outline=WHOLE)
+    _, found = _seen(made)
+    assert {proposal.what for proposal in found} == {"capacitor"}
+    assert all(proposal.isolation for proposal in found)
+
+
+def test_plane_is_drawn_under_a_bare_trace() -> None:
+    """The last 12 mm hang over nothing: plane is added there, and the finding is gone."""
+    bare = shapely.box(26, -1, 41, 31)
+    judged, found = _seen(_made(Sheet(lines=(_across(),)), _plane(bare)))
+    assert judged.findings[0].kind == "no-plane"
+    assert [proposal.what for proposal in found] == ["copper"]
+    assert found[0].added_nh == 0.0
+
+
+@settings(max_examples=12, deadline=None)
+@given(
+    st.floats(3.0, 14.0),
+    st.floats(0.3, 2.0),
+    st.floats(-0.8, 0.8),
+    st.booleans(),
+)
+def test_no_proposal_adds_and_the_best_comes_first(
+    length: float, width: float, off: float, beyond: bool
+) -> None:
+    """Whatever the slot: less than before by 5 % at least, in order, at most two of a kind."""
+    slot = shapely.box(20 - width / 2, 15 - length / 2, 20 + width / 2, 15 + length / 2)
+    sheets = [Sheet(lines=(_across(15 + off * length / 2),)), _plane(slot)]
+    made = _made(*sheets, *([_plane()] if beyond else []))
+    if not judge(scene(made), *crossings(made)).findings:
+        return
+    judged, found = _seen(made)
+    before = judged.findings[0].added_nh
+    assert before is not None
+    assert all(0.0 <= proposal.added_nh <= 0.95 * before for proposal in found)
+    assert all(one.added_nh <= other.added_nh + 1e-4 for one, other in pairwise(found))
+    kinds = [proposal.what for proposal in found]
+    assert max((kinds.count(kind) for kind in kinds), default=0) <= 2
+
+
+def test_same_board_same_proposals() -> None:
+    """Nothing depends on the order of a set."""
+    made = _made(Sheet(lines=(_across(),)), _plane(SLOT), _plane())
+    assert _seen(made)[1] == _seen(made)[1]
+
+
+def test_an_unknown_finding_is_refused() -> None:
+    """With what there is instead."""
+    made = _made(Sheet(lines=(_across(),)), _plane(SLOT))
+    with pytest.raises(SplitcheckError, match=r"finding F99: there is no such finding; .*`rank`"):
+        mend(pump(), (), scene(made), Judged((), (), {}), ["F99"])
