@@ -47,7 +47,7 @@ from splitcheck.verdict.plane_changes import (
 from splitcheck.verdict.reason import reason
 from splitcheck.verdict.scene import Judged, Scene, Weighed
 from splitcheck.verdict.score import Noise, level, noise_over_gap, slot_ns_mm
-from splitcheck.verdict.supplies import by_rule
+from splitcheck.verdict.supplies import with_rule
 
 #: A run whose middle lies this near to the same stretch of trace is on it, mm.
 SAME_PLACE_MM = 1e-3
@@ -117,8 +117,9 @@ def judge(
     cases = [Case((change,), 0.0) for change in changes]
     cases += [*from_leaving(scene, bare), *from_long_runs(scene, long_runs)]
     findings.extend(change_findings(scene, cases, dropped))
-    findings = with_pairs(scene, by_place([*findings, *by_rules]))
-    findings = listed(scene, worth_a_line(scene, findings, dropped), dropped)
+    findings = with_pairs(scene, by_place(findings))
+    findings = with_rule(scene, worth_a_line(scene, findings, dropped))
+    findings = listed(scene, [*findings, *by_rules], dropped)
     counts = tuple(Count(what, number) for what, number in sorted(dropped.items()))
     numbered, renamed = with_ids(with_crosstalk(scene, with_shares(findings)))
     behind = {new: weighed[int(old)] for old, new in renamed.items()}
@@ -371,12 +372,10 @@ def _finding(
     at = (round(crossing.at[0], 4), round(crossing.at[1], 4))
     apart = _disagreement(item.estimate, field)
     mv, capped = (None, False) if noise is None else noise
-    by_noise = level(mv, drive, None if value is None else value.added_nh)
-    said, how = by_rule(scene, [island.net_name for island in islands], by_noise)
     return Finding(
         id="",
         kind=item.kind,
-        level=how,
+        level=level(mv, drive, None if value is None else value.added_nh),
         net=net,
         net_class=drive.name,
         layer=layers[crossing.layer - 1].name,
@@ -400,7 +399,7 @@ def _finding(
         source=Source(scene.board.layers[crossing.layer - 1].file, crossing.line),
         waived=None,
         fingerprint=fingerprint(item.kind, net, layers[crossing.layer - 1].name, at),
-        reason=reason(scene, item) + said,
+        reason=reason(scene, item),
         estimated_nh=None if apart is None else apart.added_nh,
         estimated_error_nh=None if apart is None else apart.error_nh,
         capped=capped,

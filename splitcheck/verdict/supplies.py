@@ -4,13 +4,14 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Sequence
+from dataclasses import replace
 from typing import NamedTuple
 
 from splitcheck.board.names import is_ground, is_power
 from splitcheck.planes.carriers import carried
 from splitcheck.planes.islands import Plane
 from splitcheck.planes.tracks import Tracks
-from splitcheck.verdict.findings import Count, Finding, Level, Point, Source
+from splitcheck.verdict.findings import Count, Finding, Point, Source
 from splitcheck.verdict.places import fingerprint
 from splitcheck.verdict.scene import Scene
 
@@ -95,14 +96,32 @@ def supply_findings(
     return tuple(_finding(scene, stretch) for stretch in stretches), counts
 
 
-def by_rule(scene: Scene, plane_nets: Sequence[str], level: Level) -> tuple[str, Level]:
-    """What the rules add to the reason of a finding on these planes, and its level by them."""
-    rule = scene.rules.supply_reference
-    supplies = [name for name in dict.fromkeys(plane_nets) if is_supply_plane(name)]
-    if rule == "allowed" or not supplies:
-        return "", level
-    said = f"; a reference on {' and '.join(supplies)} is {_by_rule(scene)}"
-    return said, "warning" if rule == "forbidden" and level == "note" else level
+def with_rule(scene: Scene, findings: Sequence[Finding]) -> list[Finding]:
+    """Findings on supply planes say what the rules make of that; forbidden, none is a mere note."""
+    if scene.rules.supply_reference == "allowed":
+        return list(findings)
+    supplies = {
+        island.id: island.net_name
+        for plane in scene.planes.values()
+        for island in plane.islands
+        if is_supply_plane(island.net_name)
+    }
+    told = []
+    for finding in findings:
+        names = [supplies[island] for island in finding.islands if island in supplies]
+        if names:
+            said = f"a reference on {' and '.join(dict.fromkeys(names))} is {_by_rule(scene)}"
+            raised = scene.rules.supply_reference == "forbidden" and finding.level == "note"
+            told.append(
+                replace(
+                    finding,
+                    reason=f"{finding.reason}; {said}",
+                    level="warning" if raised else finding.level,
+                )
+            )
+        else:
+            told.append(finding)
+    return told
 
 
 def _by_rule(scene: Scene) -> str:
