@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from itertools import pairwise
 from math import inf
-from typing import NamedTuple
+from typing import NamedTuple, TypeAlias
 
 import networkx as nx
 import numpy as np
+from numpy.typing import NDArray
 
 from splitcheck.copper.marks import Point
 from splitcheck.loops.bridges import (
@@ -19,9 +21,12 @@ from splitcheck.loops.bridges import (
     parts_between,
 )
 from splitcheck.loops.terrain import Terrain
-from splitcheck.loops.ways import MM_PER_NH, Way, heading, to_point
+from splitcheck.loops.ways import MM_PER_NH, OTHER_SIDE, Way, heading, to_point
 from splitcheck.planes.crossings import Crossing
 from splitcheck.units import Floats
+
+#: Which straight legs a plane's gaps are in the way of.
+_Blocked: TypeAlias = Callable[[Terrain, Floats, Floats], NDArray[np.bool_]]
 
 #: So many of the holes and so many of the parts that make a way shortest are looked at.
 MOST_HOPS = 12
@@ -63,6 +68,8 @@ def add_coupled_ways(
     islands: tuple[str, str],
     terrains: dict[int, Terrain],
     graph: IslandGraph,
+    *,
+    past_gaps: bool = False,
 ) -> None:
     """Put in ways over capacitors from one island to another, where they are worth more.
 
@@ -78,6 +85,8 @@ def add_coupled_ways(
         Obstacles by layer number.
     graph
         The island graph.
+    past_gaps
+        Whether legs may run past large gaps: for where no straight ones are free of them.
 
     Notes
     -----
@@ -90,16 +99,25 @@ def add_coupled_ways(
     if one not in parts and other not in parts:
         return
     own = terrains[crossing.plane]
-    found = _direct(crossing, parts_between(graph, one, other), own)
+    shut = _nothing if past_gaps else Terrain.blocked
+    _keep_best(sides, _direct(crossing, parts_between(graph, one, other), own, shut))
     near = [
         set(known[end]) if end in known else set() for end in islands for known in (graph, parts)
     ]
     middles = ((near[0] | near[1]) & (near[2] | near[3])) - {one, other}
     for middle in sorted(middles & (near[1] | near[3])):
         island = graph.nodes[middle]["island"]
-        hops = _hops(graph, one, middle), _hops(graph, middle, other)
-        found += _over(crossing, hops, (island.net_name, island.layer), own, terrains[island.layer])
-    for candidate in sorted(found, key=lambda found: found.cost_mm):
+        enough = _enough(sides)
+        hops = (
+            _shortest(_hops(graph, one, middle), crossing, enough),
+            _shortest(_hops(graph, middle, other), crossing, enough),
+        )
+        borrowed = (island.net_name, island.layer)
+        _keep_best(sides, _over(crossing, hops, borrowed, (own, terrains[island.layer]), shut))
+
+
+def _keep_best(sides: dict[int, Way], found: list[_Found]) -> None:
+    for candidate in found:
         known = sides.get(candidate.side)
         if known is None or candidate.cost_mm < known.cost_mm:
             sides[candidate.side] = candidate.way
@@ -150,13 +168,21 @@ def _hops(graph: IslandGraph, one: str, other: str) -> _Hops:
     )
 
 
-def _direct(crossing: Crossing, parts: tuple[PartBridge, ...], own: Terrain) -> list[_Found]:
+def _nothing(_terrain: Terrain, starts: Floats, _stops: Floats) -> NDArray[np.bool_]:
+    """Nothing is in the way of legs."""
+    return np.zeros(len(starts), dtype=np.bool_)
+
+
+def _direct(
+    crossing: Crossing, parts: tuple[PartBridge, ...], own: Terrain, blocked: _Blocked
+) -> list[_Found]:
     """Ways over one part from the one island to the other."""
     if not parts:
         return []
     leave = np.array([part.at_one for part in parts])
     arrive = np.array([part.at_other for part in parts])
-    shut = _shut(own, crossing.before, leave) | _shut(own, crossing.after, arrive)
+    shut = blocked(own, _all_at(crossing.before, leave), leave)
+    shut |= blocked(own, _all_at(crossing.after, arrive), arrive)
     found = []
     for row in np.flatnonzero(~shut).tolist():
         part = parts[row]
@@ -168,10 +194,9 @@ def _direct(crossing: Crossing, parts: tuple[PartBridge, ...], own: Terrain) -> 
     return found
 
 
-def _shut(
-    terrain: Terrain, at: Point, places: Floats
-) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
-    return terrain.blocked(np.broadcast_to(np.asarray(at), places.shape), places)
+def _all_at(at: Point, like: Floats) -> Floats:
+    """One place as often as there are others."""
+    return np.broadcast_to(np.asarray(at), like.shape)
 
 
 def _side(crossing: Crossing, one: Floats, other: Floats) -> int:
@@ -184,12 +209,21 @@ def _over(
     crossing: Crossing,
     hops: tuple[_Hops, _Hops],
     borrowed: tuple[str, int],
-    own: Terrain,
-    middle: Terrain,
+    terrains: tuple[Terrain, Terrain],
+    blocked: _Blocked,
 ) -> list[_Found]:
     """The best way on either side over one borrowed island, with a part at one end at least."""
-    down = _nearest(hops[0], hops[0].leave, crossing.before, own)
-    up = _nearest(hops[1], hops[1].arrive, crossing.after, own)
+    if not hops[0].parts or not hops[1].parts:
+        return []
+    own, middle = terrains
+    reached = [
+        some.taken(np.flatnonzero(~blocked(own, _all_at(at, ends), ends)).tolist())
+        for some, ends, at in (
+            (hops[0], hops[0].leave, crossing.before),
+            (hops[1], hops[1].arrive, crossing.after),
+        )
+    ]
+    down, up = reached
     if not down.parts or not up.parts:
         return []
     between = np.hypot(*(down.arrive[:, None, :] - up.leave[None, :, :]).transpose(2, 0, 1))
@@ -201,7 +235,7 @@ def _over(
     rows, columns = np.nonzero(total < inf)
     order = np.argsort(total[rows, columns], kind="stable")
     rows, columns = rows[order], columns[order]
-    shut = middle.blocked(down.arrive[rows], up.leave[columns])
+    shut = blocked(middle, down.arrive[rows], up.leave[columns])
     found: dict[int, _Found] = {}
     for i, j in zip(rows[~shut].tolist(), columns[~shut].tolist(), strict=True):
         side = _side(crossing, down.leave[i], up.arrive[j])
@@ -214,16 +248,24 @@ def _over(
     return list(found.values())
 
 
-def _nearest(hops: _Hops, ends: Floats, at: Point, own: Terrain) -> _Hops:
-    """The holes and parts that can make a way short, a few of each, and reached over copper."""
-    cost = np.hypot(*(ends - at).T) + hops.cost_mm
+def _enough(sides: dict[int, Way]) -> float:
+    """No way worth less than this is looked for: the other side's would carry hardly anything."""
+    known = [way.cost_mm for way in sides.values()]
+    worst = max(known) if len(known) == 2 else inf
+    return min(worst, OTHER_SIDE * min(known, default=inf))
+
+
+def _shortest(hops: _Hops, crossing: Crossing, enough_mm: float) -> _Hops:
+    """The holes and parts that can make a way short, a few of each."""
+    cost = (
+        np.hypot(*(hops.leave - crossing.before).T)
+        + hops.cost_mm
+        + np.hypot(*(hops.arrive - crossing.after).T)
+    )
     order = np.argsort(cost, kind="stable")
-    is_part = np.array([part is not None for part in hops.parts], dtype=bool)
-    rows = [*order[is_part[order]][:MOST_HOPS], *order[~is_part[order]][:MOST_HOPS]]
-    if not rows:
-        return hops.taken([])
-    open_ = ~_shut(own, at, ends[rows])
-    return hops.taken([int(row) for row, free in zip(rows, open_, strict=True) if free])
+    order = order[cost[order] < enough_mm]
+    is_part = np.array([part is not None for part in hops.parts], dtype=bool)[order]
+    return hops.taken([*order[is_part][:MOST_HOPS].tolist(), *order[~is_part][:MOST_HOPS].tolist()])
 
 
 def _joined(

@@ -56,6 +56,8 @@ def find_route(
     if not sides and joined_by_copper(graph, one, other):
         sides[1] = _chain(graph, one, other, start, goal)
     add_coupled_ways(sides, crossing, (one, other), terrains, graph)
+    if not sides:
+        add_coupled_ways(sides, crossing, (one, other), terrains, graph, past_gaps=True)
     chain = None if sides else coupled_chain(graph, one, other, start, goal)
     left = sides.get(1, chain)
     return Route(straight, left, sides.get(-1), joined=bool(sides) or chain is not None)
