@@ -28,6 +28,10 @@ NOTHING = (
     "Nothing to propose: no via, capacitor, bridge of copper or move within reach has room and "
     "takes away 5 % or more."
 )
+EDGE = (
+    "Nothing is worked out for edge runs: move the trace inwards by some heights over its plane, "
+    "or let the plane reach farther out."
+)
 _NAME_CELLS = 40
 
 
@@ -83,7 +87,7 @@ def _finding(page: Page, finding: Finding, top: int) -> None:
             break
         _proposal(page, place, proposal)
     if not finding.proposals:
-        page.say(NOTHING)
+        page.say(EDGE if finding.kind == "edge-run" else NOTHING)
 
 
 def _now(finding: Finding) -> str:
