@@ -56,7 +56,7 @@ DARK = {
     "error": "#ff9aa8",
     "warning": "#f0c060",
     "note": "#8fc1ef",
-    "chosen": "#5c4a12",
+    "chosen": "#473910",
 }
 
 
