@@ -37,7 +37,8 @@ def sketch(view: FindingView, wide: int = WIDE, high: int = HIGH) -> tuple[str, 
     y = y1 - (np.arange(rows) + 0.5) * (y1 - y0) / rows
     xs, ys = (grid.ravel() for grid in np.meshgrid(x, y))
     signs = np.full(len(xs), ".")
-    cells = shapely.box(xs - cell / 2, ys - cell, xs + cell / 2, ys + cell)
+    across, down = (x1 - x0) / columns / 2, (y1 - y0) / rows / 2
+    cells = shapely.box(xs - across, ys - down, xs + across, ys + down)
     gaps = shapely.union_all([_polygon(shape) for shape in view.gaps])
     signs[shapely.contains_xy(gaps, xs, ys)] = " "
     # the gap in question is seen however thin it is
