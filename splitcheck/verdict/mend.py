@@ -123,7 +123,9 @@ def _case(
     if item is None and finding.kind != "no-plane":
         return None
     beside = () if item is None else _beside(judged, item)
-    return Case(scene, room, finding, net, redrawn(own, net), item, None, beside)
+    alone = redrawn(own, net)
+    before = find_crossings(alone, tuple(scene.planes.values()))
+    return Case(scene, room, finding, net, alone, item, None, beside, before)
 
 
 def _beside(judged: Judged, item: Weighed) -> tuple[Crossing, ...]:

@@ -59,6 +59,8 @@ class Case:
     """The change of planes behind it, if it is one."""
     beside: tuple[Crossing, ...] = ()
     """Crossings of other traces over the same gap."""
+    before: tuple[tuple[Crossing, ...], tuple[BareTrace, ...]] = ((), ())
+    """What the net's traces on the layer cross, and where they are bare, as the board is."""
 
     @property
     def crossing(self) -> Crossing:
@@ -84,8 +86,7 @@ class Case:
 
     def bare_spans(self) -> list[tuple[Point, Point]]:
         """Stretches of the net's traces on its layer with no plane at all."""
-        _, bare = find_crossings(self.tracks, tuple(self.scene.planes.values()))
-        told = [t for t in bare if not t.leaves and t.bare_mm >= OWN_END_MM]
+        told = [t for t in self.before[1] if not t.leaves and t.bare_mm >= OWN_END_MM]
         return [span for trace in told for span in trace.spans]
 
     def layer_name(self, number: int) -> str:
@@ -175,9 +176,8 @@ def worth_after(case: Case, scene: Scene, tracks: Tracks, where: shapely.Geometr
     The finding's share of what is left: crossings that were not there before, and gaps beside the
     trace where it no longer crosses them; None if one has no way back.
     """
-    before = find_crossings(case.tracks, tuple(case.scene.planes.values()))
     after = find_crossings(tracks, tuple(scene.planes.values()))
-    known = {(c.plane, c.path) for c in before[0]}
+    known = {(c.plane, c.path) for c in case.before[0]}
     new = [c for c in after[0] if (c.plane, c.path) not in known or _is_of(case, c)]
     added = worth_of(scene, new)
     bare = _bare_worth(scene, after[1])
@@ -185,7 +185,7 @@ def worth_after(case: Case, scene: Scene, tracks: Tracks, where: shapely.Geometr
         return None
     beside = NOTHING
     if case.item is not None:
-        old = _bare_worth(case.scene, before[1])
+        old = _bare_worth(case.scene, case.before[1])
         bare = bare if bare.added_nh > old.added_nh + 1e-9 else NOTHING
         if not any(shapely.dwithin(where, shapely.LineString(c.path), 0.5) for c in new):
             beside = beside_worth(scene, case.item, tracks, where)

@@ -33,6 +33,8 @@ def copper(case: Case) -> Iterator[Proposal]:
     for proposal in found:
         if best is None or proposal.added_nh < best.added_nh - WORTH_WIDENING_NH:
             best = proposal
+        if best.added_nh <= WORTH_WIDENING_NH:
+            break
     if best is not None:
         yield best
 

@@ -54,6 +54,10 @@ class Room:
             board.nets[hole.net].name if hole.net >= 0 else "" for hole in board.holes
         ]
         self._hole_tree = cKDTree(self._holes) if len(self._holes) else None
+        outer = (board.layers[0], board.layers[-1])
+        self._pads = np.array(
+            [(*pad.at, pad.size_mm) for layer in outer for pad in layer.pads]
+        ).reshape(-1, 3)
         self._widest = float(self._radii.max(initial=0.0))
 
     def openings(self, shape: shapely.Geometry, layer: int, net: str) -> tuple[str, ...] | None:
@@ -142,12 +146,8 @@ class Room:
 
     def _on_pad(self, at: Point) -> bool:
         """Whether a via would lie in a pad of an outer layer: solder would run down it."""
-        for layer in (self.board.layers[0], self.board.layers[-1]):
-            for pad in layer.pads:
-                reach = pad.size_mm / 2 + PAD_MM / 2
-                if abs(pad.at[0] - at[0]) < reach and abs(pad.at[1] - at[1]) < reach:
-                    return True
-        return False
+        far = np.abs(self._pads[:, :2] - np.asarray(at)).max(axis=1)
+        return bool((far < self._pads[:, 2] / 2 + PAD_MM / 2).any())
 
 
 def _radius(hole: object) -> float:
