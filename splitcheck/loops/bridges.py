@@ -23,6 +23,8 @@ IslandGraph: TypeAlias = "nx.Graph[str]"
 #: Keys of the graphs of two-pad parts, and of all bridges, among the attributes of an island graph.
 _PARTS = "parts"
 _ALL = "all"
+#: Key of what others keep of a graph; a graph with other bridges begins with nothing.
+KEPT = "kept"
 
 
 class PartBridge(NamedTuple):
@@ -110,6 +112,7 @@ def _put_parts(graph: IslandGraph, bridges: Iterable[PartBridge]) -> None:
         parts.add_edge(one, other, parts=tuple(sorted(some)))
     graph.graph[_PARTS] = parts
     graph.graph[_ALL] = nx.Graph([*graph.edges, *parts.edges])
+    graph.graph[KEPT] = {}
 
 
 def bridges_between(graph: IslandGraph, one: str, other: str) -> Floats:

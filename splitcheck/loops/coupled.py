@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 
 from splitcheck.copper.marks import Point
 from splitcheck.loops.bridges import (
+    KEPT,
     IslandGraph,
     PartBridge,
     all_bridges,
@@ -155,6 +156,14 @@ def coupled_chain(
 
 
 def _hops(graph: IslandGraph, one: str, other: str) -> _Hops:
+    """All that leads from one island to another; made once for each two of a graph."""
+    kept: dict[tuple[str, str], _Hops] = graph.graph.setdefault(KEPT, {})
+    if (one, other) not in kept:
+        kept[one, other] = _gathered(graph, one, other)
+    return kept[one, other]
+
+
+def _gathered(graph: IslandGraph, one: str, other: str) -> _Hops:
     holes = bridges_between(graph, one, other)
     parts = parts_between(graph, one, other)
     leave = np.array([part.at_one for part in parts]).reshape(-1, 2)
@@ -190,7 +199,8 @@ def _direct(
         length = sum(float(np.hypot(b[0] - a[0], b[1] - a[1])) for a, b in pairwise(path))
         net = own.plane.islands[crossing.islands[1]].net_name
         way = Way(length, path, (), net, 0, (part,))
-        found.append(_Found(way.cost_mm, _side(crossing, leave[row], arrive[row]), way))
+        side = 1 if _left(crossing, leave[row], arrive[row]) else -1
+        found.append(_Found(way.cost_mm, side, way))
     return found
 
 
@@ -199,10 +209,11 @@ def _all_at(at: Point, like: Floats) -> Floats:
     return np.broadcast_to(np.asarray(at), like.shape)
 
 
-def _side(crossing: Crossing, one: Floats, other: Floats) -> int:
+def _left(crossing: Crossing, one: Floats, other: Floats) -> NDArray[np.bool_]:
+    """Whether the middle of two places lies on the left of the trace; shape of all but the last."""
     (dx, dy), (x, y) = heading(crossing), crossing.at
-    mx, my = (one + other) / 2
-    return 1 if (my - y) * dx - (mx - x) * dy >= 0 else -1
+    middle = (one + other) / 2
+    return np.asarray((middle[..., 1] - y) * dx - (middle[..., 0] - x) * dy >= 0)
 
 
 def _over(
@@ -235,17 +246,19 @@ def _over(
     rows, columns = np.nonzero(total < inf)
     order = np.argsort(total[rows, columns], kind="stable")
     rows, columns = rows[order], columns[order]
-    shut = blocked(middle, down.arrive[rows], up.leave[columns])
-    found: dict[int, _Found] = {}
-    for i, j in zip(rows[~shut].tolist(), columns[~shut].tolist(), strict=True):
-        side = _side(crossing, down.leave[i], up.arrive[j])
-        if side not in found:
-            found[side] = _Found(
-                float(total[i, j]), side, _joined(crossing, down, i, up, j, borrowed)
-            )
-        if len(found) == 2:
-            break
-    return list(found.values())
+    left = _left(crossing, down.leave[rows], up.arrive[columns])
+    found = []
+    for side, there in ((1, left), (-1, ~left)):
+        for first_of in range(0, int(there.sum()), MOST_HOPS):
+            i = rows[there][first_of : first_of + MOST_HOPS]
+            j = columns[there][first_of : first_of + MOST_HOPS]
+            free = np.flatnonzero(~blocked(middle, down.arrive[i], up.leave[j]))
+            if len(free):
+                a, b = int(i[free[0]]), int(j[free[0]])
+                way = _joined(crossing, down, a, up, b, borrowed)
+                found.append(_Found(float(total[a, b]), side, way))
+                break
+    return found
 
 
 def _enough(sides: dict[int, Way]) -> float:
