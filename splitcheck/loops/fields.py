@@ -47,7 +47,7 @@ MOST_TRACES = 40
 ENDS = 10.0
 #: At most so many other gaps near the crossed one are looked at.
 MOST_NEIGHBOURS = 12
-#: A solve whose panels had to be made coarser than this is worth less than a closed form.
+#: A solve whose panels would have to be made coarser than this is worth less than a closed form.
 MOST_COARSER = 3.0
 #: Gaps with more corners than this in the window are not solved: the mesh would be too coarse.
 MOST_CORNERS = 4000
@@ -207,7 +207,7 @@ class Fields:
         traces = [_trace(task, plane.gaps[first.gap].shape) for task in tasks]
         bridges = self._bridges(tasks)
         solution = self._solution(tasks, traces, bridges)
-        if solution is None or solution.coarser > MOST_COARSER:
+        if solution is None:
             nearer = _near_one_another(tasks, 0.0)
             if len(nearer) < 2:
                 return {}
@@ -240,7 +240,7 @@ class Fields:
         traces = [_trace(task, self.planes[crossing.plane].gaps[crossing.gap].shape)]
         bridges = self._bridges([task])
         solution = self._solution([task], traces, bridges)
-        if solution is None or solution.coarser > MOST_COARSER:
+        if solution is None:
             return None
         return flow_of(
             solution,
@@ -294,6 +294,7 @@ class Fields:
                 outside=_outside(plane, window, cut=cut),
                 ends=ends,
                 disjoint=True,
+                coarsest=MOST_COARSER,
             )
         except SplitcheckError:
             return None
