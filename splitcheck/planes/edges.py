@@ -5,9 +5,11 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 from shapely import Polygon
 
 from splitcheck.board.board import Board
@@ -95,6 +97,7 @@ def find_edge_runs(
     that one would carry the return, or keep it. What hangs beyond the edge is a crossing.
     """
     found: list[EdgeRun] = []
+    rims: dict[int, _Rims] = {}
     for layer in tracks:
         if not len(layer.net):
             continue
@@ -105,17 +108,33 @@ def find_edge_runs(
                 height = board.stack.height_mm(layer.layer, plane.layer)
                 reach = max(heights * height, least_mm)
                 others = [p for p in planes if p.layer not in {layer.layer, plane.layer}]
-                found.extend(_along(layer, plane, others, height, reach))
+                if plane.layer not in rims:
+                    rims[plane.layer] = _rims(plane)
+                known = rims[plane.layer]
+                found.extend(_along(layer, plane, known, others, height, reach))
     return tuple(sorted(found, key=lambda run: (run.net, run.layer, run.plane, run.gap)))
 
 
+class _Rims(NamedTuple):
+    """Straight pieces of all rims of a plane that can be edges."""
+
+    lines: NDArray[np.object_]
+    gaps: Ints
+    """The gap of each."""
+    tree: shapely.STRtree
+
+
 def _along(
-    tracks: Tracks, plane: Plane, others: Sequence[Plane], height: float, reach: float
+    tracks: Tracks,
+    plane: Plane,
+    known: _Rims,
+    others: Sequence[Plane],
+    height: float,
+    reach: float,
 ) -> Iterator[EdgeRun]:
-    rims, gaps = _rims(plane)
+    rims, gaps, tree = known
     if not len(rims):
         return
-    tree = shapely.STRtree(rims)
     pieces = _near(tracks, tree, reach)
     if not len(pieces):
         return
@@ -158,8 +177,7 @@ def _along(
         )
 
 
-def _rims(plane: Plane) -> tuple[np.ndarray, Ints]:
-    """Straight pieces of all rims that can be edges, and the gap of each."""
+def _rims(plane: Plane) -> _Rims:
     ends: list[Floats] = []
     owner: list[Ints] = []
     for number, gap in enumerate(plane.gaps):
@@ -169,9 +187,9 @@ def _rims(plane: Plane) -> tuple[np.ndarray, Ints]:
             corners = shapely.get_coordinates(ring)
             ends.append(np.stack([corners[:-1], corners[1:]], axis=1))
             owner.append(np.full(len(corners) - 1, number, dtype=np.intp))
-    if not ends:
-        return np.empty(0, dtype=object), np.empty(0, dtype=np.intp)
-    return segments(np.concatenate(ends)), np.concatenate(owner)
+    lines = segments(np.concatenate(ends)) if ends else np.empty(0, dtype=object)
+    gaps = np.concatenate(owner) if owner else np.empty(0, dtype=np.intp)
+    return _Rims(lines, gaps, shapely.STRtree(lines))
 
 
 def _near(tracks: Tracks, tree: shapely.STRtree, reach: float) -> Ints:

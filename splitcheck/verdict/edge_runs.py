@@ -25,6 +25,8 @@ IN_SOLVE_MM = 1e-3
 #: How far the closed form may be off: the edge is taken as straight and the plane as half of one.
 ERROR = 0.3
 SUPPLY_LINES = f"edge runs of lines wider than {SUPPLY_RATIO:g} times their height (supply lines)"
+#: Where another plane covers a run beyond the edge of the nearest one, it is none of the board's.
+COVERED = "runs beyond the rim of a plane that another whole plane covers (edge runs)"
 #: The common mode is reckoned at no more places than this along a run.
 MOST_PLACES = 40
 

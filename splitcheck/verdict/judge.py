@@ -26,7 +26,7 @@ from splitcheck.verdict import around
 from splitcheck.verdict.around import LONG_RUN, exempt, share_of, too_small
 from splitcheck.verdict.bare import bare_findings
 from splitcheck.verdict.by_class import EXEMPT, listed, with_crosstalk
-from splitcheck.verdict.edge_runs import common_of, edge_findings, with_common
+from splitcheck.verdict.edge_runs import COVERED, common_of, edge_findings, with_common
 from splitcheck.verdict.findings import (
     BridgeUse,
     Count,
@@ -194,6 +194,8 @@ def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
     value = item.estimate
     if value is not None and value.added_nh + value.error_nh < scene.min_nh:
         return too_small(scene)
+    if item.kind == "edge-run" and (item.other is not None or item.beyond is not None):
+        return COVERED
     return item
 
 

@@ -127,13 +127,13 @@ def _both(
 ) -> tuple[Finding, Finding]:
     """Both legs of a pair at one place, judged together."""
     one, other = legs
-    gap_mm = min(one.gap_mm, other.gap_mm)
+    gap_mm = max(one.gap_mm, other.gap_mm)
     unbalance = None
     if one.added_nh is not None and other.added_nh is not None:
         unbalance = abs(one.added_nh - other.added_nh)
     elif one.added_nh is not None or other.added_nh is not None:
         return _alone(one, other.net), _alone(other, one.net)
-    if unbalance is None or one.kind == "no-plane":
+    if unbalance is None or one.kind == "no-plane" or _beyond_edge(one, other):
         odd = open_odd_nh(pair.apart_mm or 0.0, height_mm, gap_mm)
     else:
         odd = odd_nh(one.added_nh or 0.0, other.added_nh or 0.0, mutual_nh(one, other))
@@ -141,6 +141,14 @@ def _both(
         _judged(one, other.net, drives[0], odd, unbalance),
         _judged(other, one.net, drives[1], odd, unbalance),
     )
+
+
+def _beyond_edge(one: Finding, other: Finding) -> bool:
+    """Whether both legs hang beyond one edge, and no solve says how they couple there."""
+    solved = any(
+        share.net == other.net and share.mutual_nh is not None for share in one.shares_gap_with
+    )
+    return one.kind == other.kind == "edge-run" and not solved
 
 
 def _judged(

@@ -42,6 +42,8 @@ ERRORS = {"via": 0.3, "capacitor": 0.5, "plates": 1.0}
 LEAST_SHARE = 0.1
 #: Barrel of a part's hole, mm (common practice, no source).
 PART_HOLE_MM = 0.3
+#: A board without capacitors is hardly one; where no file tells them there is nothing to judge by.
+UNKNOWN = "changes of plane between two nets, not judged: no file tells where capacitors are"
 SUPPLY_LINES = (
     f"changes of plane of lines wider than {SUPPLY_RATIO:g} times their height (supply lines)"
 )
@@ -216,7 +218,20 @@ def _judge(scene: Scene, case: Case, nets: _Nets, dropped: dict[str, int]) -> li
     if added < scene.min_nh:
         dropped[near_enough("plane-change")] += 1
         return None
-    return ways
+    known = [way for way in ways if not _is_unknown(way, nets)]
+    if sum(way.added_nh for way in known) < scene.min_nh:
+        dropped[UNKNOWN] += 1
+        return None
+    return known
+
+
+def _is_unknown(way: _Way, nets: _Nets) -> bool:
+    """Whether the planes are of two nets and nobody knows of any capacitor on the board."""
+    return (
+        way.kind == "plates"
+        and not nets.parts
+        and way.cavity.one.net_name != way.cavity.other.net_name
+    )
 
 
 def _is_supply(scene: Scene, change: PlaneChange) -> bool:
@@ -443,8 +458,6 @@ def _finding(scene: Scene, case: Case, ways: Sequence[_Way], nets: _Nets) -> Fin
     how = level(noise, drive, added)
     if added >= scene.rules.change_warning_nh_of(drive):
         how = min(how, "warning", key=LEVELS.index)
-    if worst.kind == "plates" and not nets.parts:
-        how = "note"  # nobody knows whether there are capacitors
     layers = scene.board.stack.layers
     net = scene.board.nets[first.net].name
     name = layers[first.layers[0] - 1].name
@@ -511,8 +524,8 @@ def _way_in_words(way: _Way, nets: _Nets) -> str:
     if way.kind == "plates":
         one, other = way.cavity.one.net, way.cavity.other.net
         farads = f"the {1000 * plates_nf(*nets.facing(one, other)):.0f} pF of the two planes"
-        if not nets.parts:
-            return f"no file tells where capacitors are: reckoned with {farads} alone"
+        if one == other or way.cavity.one.net_name == way.cavity.other.net_name:
+            return f"no plated hole joins the two: {farads} alone do"
         if way.far_mm is None:
             return f"no capacitor joins them near enough: {farads} alone do"
         return (

@@ -13,6 +13,7 @@ from hypothesis import strategies as st
 
 from splitcheck.board.board import Board
 from splitcheck.loops.finite_plane import common_nh_mm
+from splitcheck.verdict.edge_runs import COVERED
 from splitcheck.verdict.findings import Finding
 from splitcheck.verdict.judge import judge
 from splitcheck.verdict.listing import near_enough
@@ -104,3 +105,13 @@ def test_nearer_to_the_edge_is_never_better(one: float, other: float) -> None:
     if inner:
         assert (outer[0].added_nh or 0) >= (inner[0].added_nh or 0) - 1e-9
         assert (outer[0].common_nh or 0) >= (inner[0].common_nh or 0) - 1e-9
+
+
+def test_run_beyond_an_edge_that_another_plane_covers_is_counted() -> None:
+    """The plane below reaches farther out: not the edge of the board's planes."""
+    trace, near = _sheets((15, 5), (20, 5), (20, -0.5), (23.5, -0.5), (23.5, 5), (45, 5))
+    far = Sheet((("GND", shapely.box(0, -10, 60, 40)),))
+    made = board(trace, near, far, heights_mm=[1.0, 1.0])
+    judged = judge(scene(made), *crossings(made))
+    assert [f for f in judged.findings if f.kind == "edge-run"] == []
+    assert COVERED in {count.what for count in judged.counts}

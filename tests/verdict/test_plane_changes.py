@@ -20,6 +20,7 @@ from splitcheck.loops.handover import between_plates_nh, line_nh, plates_nf
 from splitcheck.verdict.findings import Finding
 from splitcheck.verdict.judge import judge
 from splitcheck.verdict.listing import near_enough
+from splitcheck.verdict.plane_changes import UNKNOWN
 from splitcheck.verdict.rules import DEFAULT_CLASS, Rules
 from splitcheck.verdict.scene import Judged, Scene
 from splitcheck.verdict.score import noise_mv
@@ -124,25 +125,32 @@ def test_thin_core_makes_it_harmless() -> None:
     assert _judged(_made(_far(10.0), apart_mm=0.1)).findings == ()
 
 
-def test_planes_of_two_nets_without_any_part_have_their_capacitance_alone() -> None:
-    """Ground to supply, 1 mm apart, nothing between: spreading, and tr^2 / 2 C."""
-    made = _made(nets=("GND", "+3V3"))
-    found = _one(made)
-    area = scene(made).planes[2].islands[0].shape.area
-    alone = between_plates_nh(0.3, 1.0, area, 1.0, plates_nf(area, 1.0, 4.3))
-    alone -= line_nh(1.27, 0.3, 1.0)
-    assert found.added_nh == pytest.approx(alone, rel=1e-3)
-    assert found.plane_net == "GND to +3V3"
-    assert (found.bridges, found.detour_mm, found.level) == ((), None, "note")
-    assert "no file tells where capacitors are" in found.reason
-
-
 def _with_capacitors(made: Board, *places: Point, mounted_nh: float = 1.0) -> Scene:
     seen = scene(made)
     graph = seen.graph
     for number, at in enumerate(places):
         graph = with_capacitor(graph, "L2.1", "L3.1", at, at, mounted_nh, ref=f"C{number}")
     return replace(seen, graph=graph)
+
+
+def test_planes_of_two_nets_without_a_part_near_have_their_capacitance_alone() -> None:
+    """Ground to supply, 1 mm apart, the only capacitor 38 mm away: spreading, and tr^2 / 2 C."""
+    made = _made(nets=("GND", "+3V3"))
+    found = _one(made, _with_capacitors(made, (58.0, 15.0)))
+    area = scene(made).planes[2].islands[0].shape.area
+    alone = between_plates_nh(0.3, 1.0, area, 1.0, plates_nf(area, 1.0, 4.3))
+    alone -= line_nh(1.27, 0.3, 1.0)
+    assert found.added_nh == pytest.approx(alone, rel=1e-3)
+    assert found.plane_net == "GND to +3V3"
+    assert (found.bridges, found.detour_mm) == ((), None)
+    assert "no capacitor joins them near enough" in found.reason
+
+
+def test_planes_of_two_nets_are_not_judged_where_no_file_tells_capacitors() -> None:
+    """The same board without any part: counted, not listed."""
+    judged = _judged(_made(nets=("GND", "+3V3")))
+    assert judged.findings == ()
+    assert UNKNOWN in {count.what for count in judged.counts}
 
 
 def test_capacitor_between_two_nets_is_the_way() -> None:
