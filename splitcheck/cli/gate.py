@@ -85,12 +85,16 @@ def gate(
 
     check_min_nh(min_nh)
     boards = (new,) if was is None else (new, was)
-    wanted = targets.parse(out or (), *boards, known=targets.TOLD)
+    known = targets.TOLD if _is_kept(new) else targets.FORMATS
+    wanted = targets.parse(out or (), *boards, known=known)
     options = road.Options(
         tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
     )
-    old = None if was is None else _revision(was, options, "--was ", quiet=quiet)
-    report = _revision(new, options, "", quiet=quiet)
+    old = None
+    if was is not None:
+        old, _ = _revision(was, options, "--was ", quiet=quiet)
+    drawn = targets.are_drawn(wanted)
+    report, draw = _revision(new, options, "", quiet=quiet, drawn=drawn)
     comparison = None if old is None else compare(old, report)
     render = partial(
         gated.render, comparison=comparison, fail_at=None if fail_at == "never" else fail_at
@@ -104,12 +108,15 @@ def gate(
         color=color,
         path=new,
         comparison=comparison,
+        draw=draw,
     )
     raise typer.Exit(results.exit_code(report, fail_at, comparison))
 
 
-def _revision(path: Path, options: Options, option: str, *, quiet: bool) -> Report:
-    """One revision, ranked now or read from the report that was kept of it."""
+def _revision(
+    path: Path, options: Options, option: str, *, quiet: bool, drawn: bool = False
+) -> tuple[Report, results.Draw | None]:
+    """One revision, ranked now or read from a kept report; and what draws it, if that is asked."""
     from splitcheck import road
 
     if not path.exists():
@@ -118,10 +125,17 @@ def _revision(path: Path, options: Options, option: str, *, quiet: bool) -> Repo
             "splitcheck rank PATH --fail-at never --out json=FILE"
         )
         raise SplitcheckError(f"{option}{path}", "there is no such file or folder", do)
-    if path.suffix.lower() == ".json" and path.is_file():
-        return _kept(path)
+    if _is_kept(path):
+        return _kept(path), None
     with streams.progress_bar(quiet=quiet) as progress:
-        return road.rank(path, options, progress)
+        if drawn:
+            walked = road.look(path, options, progress)
+            return walked.report, partial(road.illustrate, walked, options)
+        return road.rank(path, options, progress), None
+
+
+def _is_kept(path: Path) -> bool:
+    return path.suffix.lower() == ".json" and path.is_file()
 
 
 def _kept(path: Path) -> Report:

@@ -17,7 +17,7 @@ from tests.cli.conftest import Road
 from tests.report import made
 
 Capture = pytest.CaptureFixture[str]
-FORMATS = [name for name in targets.FORMATS if name != "text"]
+FORMATS = [name for name in targets.TOLD if name != "text"]
 
 
 def keep(report: Report, file: str) -> str:
@@ -158,6 +158,12 @@ def test_the_text_of_a_gate_can_be_written_too(road: Road, was: str, capsys: Cap
         color=False,
     )
     assert Path("gate.txt").read_text(encoding="utf-8") == expected
+
+
+def test_a_kept_report_cannot_be_drawn(road: Road, was: str, capsys: Capture) -> None:
+    """There is no board behind it."""
+    assert run(["gate", was, "--was", was, "--out", "html=a.html"]) == 2
+    assert 'no format "html"' in capsys.readouterr().err
 
 
 def test_hosts_are_pointed_to_the_file_in_the_repository(road: Road, was: str) -> None:
