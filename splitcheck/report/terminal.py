@@ -49,6 +49,12 @@ _METHODS: dict[Method, str] = {
     "estimated": "estimated by closed forms",
     "none": "without a way back to put a number on",
 }
+#: How nets that are told together are so, where not over one gap.
+_SHARED: dict[Kind, str] = {
+    "no-plane": "without a plane",
+    "plane-change": "changing planes at one place",
+    "edge-run": "along one edge",
+}
 _NET = 3
 _ASSUMPTIONS_SHOWN = 10
 _FACTS_SHOWN = 12
@@ -200,7 +206,9 @@ def _extras(finding: Finding) -> str:
         corner = number(finding.corner_khz)
         parts.append(f"above {corner} kHz the return follows inductance, not resistance")
     if finding.pair is not None:
-        parts.append(f"pair with {shorten(finding.pair, _NET_CELLS)}")
+        parts.append(_as_pair(finding, finding.pair))
+    if finding.common_nh is not None:
+        parts.append(f"{number(finding.common_nh)} nH in common mode along the plane")
     if finding.crosstalk_mv is not None:
         heard = number(finding.crosstalk_mv)
         parts.append(f"{heard} mV from the others over the gap when they switch together")
@@ -211,6 +219,16 @@ def _extras(finding: Finding) -> str:
     return "; ".join(parts)
 
 
+def _as_pair(finding: Finding, other: str) -> str:
+    """The other leg, and what both are worth together."""
+    said = f"pair with {shorten(other, _NET_CELLS)}"
+    if finding.odd_nh is not None:
+        said += f": {number(finding.odd_nh)} nH in odd mode"
+    if finding.unbalance_nh is not None:
+        said += f", {number(finding.unbalance_nh)} nH unbalanced"
+    return said
+
+
 def _sharers(group: Sequence[Finding], room: int) -> str:
     """All nets over a gap in at most ``room`` columns, or as many as fit and the count of the rest.
 
@@ -219,7 +237,7 @@ def _sharers(group: Sequence[Finding], room: int) -> str:
     nets = tally.nets_of(group)
     levels = ", ".join(f"{count} {level}" for level, count in tally.by_level(group))
     places = f" at {len(group)} places" if len(group) > len(nets) else ""
-    shared = "without a plane" if group[0].kind == "no-plane" else "over one gap"
+    shared = _SHARED.get(group[0].kind, "over one gap")
     start = f"{plural(len(nets), 'net')} {shared}{places} ({levels}): "
     taken = len(start)
     shown: list[str] = []
