@@ -161,6 +161,6 @@ def bars(shown: Sequence[Bar]) -> tuple[str, int, int]:
             data = f"M{low:.1f} {y + 4}v12m0-6H{high:.1f}m0-6v12"
             parts.append(element("path", d=data, cls="whisker"))
         end = left + round((bar.value + (bar.error or 0.0)) / most * room, 1)
-        words = f"{with_error(bar.value, bar.error)} nH"
+        words = f"{with_error(bar.value, bar.error)} nH".replace("+-", "\u00b1")
         parts.append(element("text", words, x=end + 8, y=y + 15, cls="said"))
     return joined(parts), _WIDE, _ROW * len(shown) + 6

@@ -52,7 +52,8 @@ def render(finding: Finding, view: FindingView) -> str:
     """
     parts: list[str] = []
     y = 44
-    head = f"{finding.id}  {shorten(finding.net, 50)}: {cost(finding)}"
+    price = cost(finding).replace("+-", "\u00b1")
+    head = f"{finding.id}  {shorten(finding.net, 50)}: {price}"
     parts.append(element("text", text(head), x=_GAP, y=y, cls="h"))
     y += 28
     parts.append(element("text", text(f"{finding.kind}, {place(finding)}"), x=_GAP, y=y, cls="m"))
@@ -94,7 +95,7 @@ def _numbers(parts: list[str], finding: Finding, view: FindingView, y: int) -> i
         inner, wide, high = charts.impedance(view.impedance)
         parts.append(element("g", inner, transform=f"translate({_WIDE - wide - _GAP} {y})"))
         right += high
-    for line in rows(paragraph(finding), 70 if right > y else 150):
+    for line in rows(paragraph(finding).replace("+-", "\u00b1"), 70 if right > y else 150):
         parts.append(element("text", text(line), x=_GAP, y=left, cls="m"))
         left += 21
     return max(left, right) + 10

@@ -75,7 +75,10 @@ class Closeups:
         window = _window(item, height_mm)
         fine = SEEN * box_size_mm(window)
         missing = self._missing(plane, window, fine)
-        crossed = shapely.clip_by_rect(plane.gaps[crossing.gap].shape, *window.bounds)
+        gap = plane.gaps[crossing.gap]
+        crossed = [shapely.clip_by_rect(gap.shape, *window.bounds)]
+        if gap.open:
+            crossed.append(_beyond(plane, window))
         own, others = self._traces(finding, crossing, window)
         whole = broken = None
         if streams:
@@ -105,7 +108,7 @@ class Closeups:
             shape for shape in (plane.gaps[k].shape for k in near) if box_size_mm(shape) > fine
         ]
         clipped = shapely.clip_by_rect(np.array(shapes, dtype=object), *window.bounds)
-        return [part for part in clipped if not part.is_empty]
+        return [part for part in [*clipped, _beyond(plane, window)] if not part.is_empty]
 
     def _foreign(self, plane: Plane, window: Polygon, fine: float) -> tuple[Shape, ...]:
         """Copper of the plane's layer that carries no return, in the window."""
@@ -232,6 +235,13 @@ class Closeups:
             facts.append(("Plane beyond", whole))
         facts.append(("Where the number is from", _METHODS[finding.method]))
         return tuple(facts)
+
+
+def _beyond(plane: Plane, window: Polygon) -> shapely.Geometry:
+    """What of the window lies so far outside the board that no gap reaches there."""
+    if not plane.gaps or not plane.gaps[0].open:
+        return Polygon()
+    return window.difference(shapely.box(*plane.gaps[0].shape.bounds))
 
 
 def _sides(plane: Plane, crossing: Crossing) -> str:

@@ -16,7 +16,8 @@ from splitcheck.verdict.findings import Finding
 from splitcheck.verdict.scene import Judged, Scene
 from splitcheck.verdict.views import FindingView, Pictures
 
-#: The return current is looked for in so many of the worst, no more than so many over one gap, ...
+#: The return current is looked for in so many of the worst that were solved, no more than so many
+#: of them over one gap, ...
 MOST_STREAMS, OVER_ONE_GAP = 10, 2
 #: ... and so many are drawn from near at all.
 MOST_CLOSEUPS = 100
@@ -75,11 +76,11 @@ def _chosen(judged: Judged) -> list[Finding]:
 
 
 def _closest(drawn: Sequence[Finding]) -> list[Finding]:
-    """Those whose return current is looked for."""
+    """Those whose return current is looked for: of what was solved, the worst."""
     over: Counter[str] = Counter()
     found = []
     for finding in drawn:
-        if over[finding.gap] < OVER_ONE_GAP:
+        if finding.method == "solved" and over[finding.gap] < OVER_ONE_GAP:
             over[finding.gap] += 1
             found.append(finding)
     return found[:MOST_STREAMS]

@@ -143,7 +143,7 @@ class Pictures:
     findings: tuple[FindingView, ...]
     """Worst first; not every finding of a long list."""
     with_streams: int
-    """For how many of the worst the return current was looked for."""
+    """For how many of them the return current was looked for."""
 
     def of(self, finding: str) -> FindingView | None:
         """The view of a finding, if it was drawn."""

@@ -50,7 +50,13 @@ def words(svg: str) -> str:
 def test_a_figure_is_xml_and_says_what_it_shows() -> None:
     """Net, cost with its error, place, reason."""
     shown = words(figure.render(finding(1, "CLK"), VIEW))
-    for part in ("CLK", "+3.21 +-0.64 nH", "x 12.300 y 45.100 mm", "35 mm long", "corner 50 kHz"):
+    for part in (
+        "CLK",
+        "+3.21 \u00b10.64 nH",
+        "x 12.300 y 45.100 mm",
+        "35 mm long",
+        "corner 50 kHz",
+    ):
         assert part in shown
 
 

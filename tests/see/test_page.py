@@ -106,7 +106,7 @@ def test_what_is_left_out_is_said(demo: tuple[Report, Pictures], page: Path) -> 
     text = " ".join(page.read_text(encoding="utf-8").split())
     _, pictures = demo
     assert f"{len(pictures.findings)} of {len(demo[0].findings)} findings are drawn" in text
-    assert f"in the worst {pictures.with_streams} of them" in text
+    assert f"was looked for in {pictures.with_streams} of them" in text
 
 
 def test_paths_hold_the_shape() -> None:
