@@ -22,7 +22,7 @@ def test_a_pair_is_one_row_that_names_both_legs() -> None:
         for n, net, other in ((1, "TX_P", "TX_N"), (2, "TX_N", "TX_P"))
     ]
     text = _text(*legs)
-    assert "pair with TX_N: 0.61 nH in odd mode, 0.12 nH unbalanced" in text
+    assert "pair with TX_N: 0.610 nH in odd mode, 0.120 nH unbalanced" in text
     assert "2 nets over one gap (2 note): TX_P, TX_N" in text
     assert "pair with TX_P" not in text
 
