@@ -76,7 +76,7 @@ class Closeups:
         fine = SEEN * box_size_mm(window)
         missing = self._missing(plane, window, fine)
         gap = plane.gaps[crossing.gap]
-        crossed = [shapely.clip_by_rect(gap.shape, *window.bounds)]
+        crossed: list[shapely.Geometry] = [shapely.clip_by_rect(gap.shape, *window.bounds)]
         if gap.open:
             crossed.append(_beyond(plane, window))
         own, others = self._traces(finding, crossing, window)
