@@ -32,6 +32,7 @@ from fixtures.making.plan import (
 from fixtures.making.write import write_board
 from splitcheck import road
 from splitcheck.verdict.findings import Finding
+from splitcheck.verdict.pairs import odd_nh
 
 FOLDER = Path(__file__).parent / "loops"
 #: A Gerber stroke has a width; this is as good as none 0.2 mm over a plane.
@@ -152,13 +153,15 @@ def test_a_void_that_the_trace_passes_by_is_told_if_it_counts(
     assert near(told, truth) or max(told, truth) <= LISTED_NH, (told, truth)
 
 
+@pytest.mark.parametrize("way", [1.0, -1.0], ids=["drawn-alike", "drawn-against"])
 @pytest.mark.parametrize("row", COUPLED, ids=lambda row: row["case"])
 def test_two_nets_over_one_slot_couple_as_the_other_solver_says(
-    row: dict[str, str], tmp_path: Path
+    row: dict[str, str], way: float, tmp_path: Path
 ) -> None:
-    """Own and mutual inductance of both within 5 % or 0.02 nH."""
+    """Own and mutual inductance of both within 5 % or 0.02 nH, whichever way they are drawn."""
     aside = float(row["spacing_mm"]) / 2
-    lanes = {f"SIG{n}": ((-25.0, y), (25.0, y)) for n, y in enumerate((-aside, aside))}
+    lanes = {"SIG0": ((-25.0, -aside), (25.0, -aside))}
+    lanes["SIG1"] = ((-25.0 * way, aside), (25.0 * way, aside))
     plane = box(-40.0, -30.0, 40.0, 30.0)
     found = ranked(board_of(row, plane, lanes, FILAMENT_MM), tmp_path)
     assert sorted(finding.net for finding in found) == ["SIG0", "SIG1"]
@@ -166,3 +169,7 @@ def test_two_nets_over_one_slot_couple_as_the_other_solver_says(
         (share,) = finding.shares_gap_with
         assert near(finding.added_nh, float(row["self_nh"])), finding.added_nh
         assert near(share.mutual_nh, float(row["mutual_nh"])), share.mutual_nh
+    one, other = (finding.added_nh or 0.0 for finding in found)
+    odd = odd_nh(one, other, found[0].shares_gap_with[0].mutual_nh or 0.0)
+    truth = 2 * (float(row["self_nh"]) - float(row["mutual_nh"]))
+    assert odd == pytest.approx(truth, rel=0.05, abs=0.04)

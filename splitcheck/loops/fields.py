@@ -88,7 +88,8 @@ class Field:
 
     value: Inductance
     mutual_nh: tuple[tuple[int, float], ...]
-    """Mutual added inductance with other crossings of the same gap, by their number."""
+    """Mutual added inductance with other crossings of the same gap, by their number: for currents
+    that run the same way over the gap, whichever way the traces were drawn."""
     stray_db: float | None = None
     """How much more field a probe finds above the crossing; None under another plane."""
 
@@ -219,7 +220,11 @@ class Fields:
                     task.part**2 * float(solution.error_nh[i, i]),
                 ),
                 tuple(
-                    (other.number, task.part * other.part * float(solution.added_nh[i, j]))
+                    (
+                        other.number,
+                        _same_way(task, other)
+                        * (task.part * other.part * float(solution.added_nh[i, j])),
+                    )
                     for j, other in enumerate(tasks)
                     if j != i and not solution.cut_off[j]
                 ),
@@ -438,6 +443,12 @@ class Fields:
         height = self.board.stack.height_mm(crossing.plane, layer)
         line = LineString(ends)
         return engine.Strap(line, STRAP_MM, height, via_pair_nh(line.length, BARREL_MM, height))
+
+
+def _same_way(one: Task, other: Task) -> float:
+    """1 if two traces are drawn the same way over their gap, -1 if they run against one another."""
+    ahead = [np.subtract(task.crossing.after, task.crossing.before) for task in (one, other)]
+    return 1.0 if float(ahead[0] @ ahead[1]) >= 0.0 else -1.0
 
 
 def _nearest(places: Floats, at: Point, always: Sequence[Point]) -> list[int]:

@@ -223,3 +223,17 @@ def test_a_gap_that_runs_round_the_board_is_its_outside() -> None:
     by_outline = added([notch], [across()], 0.2, outside=board)
     by_ring = added([ring], [across()], 0.2, outside=board, disjoint=True)
     assert pair(by_ring)[0] == pytest.approx(pair(by_outline)[0], rel=0.01)
+
+
+@pytest.mark.parametrize("apart", [1.0, 3.0, 8.0])
+@pytest.mark.parametrize("beyond", [None, 0.3])
+def test_a_hairpin_adds_what_its_legs_do_in_odd_mode(apart: float, beyond: float | None) -> None:
+    """One trace there and back over a slot is two legs in series against one another."""
+    slot = [box(-0.3, -6, 0.3, 7)]
+    legs = [LineString([(-12, y), (12, y)]) for y in (-apart / 2, apart / 2)]
+    (x1, y1), (x2, y2) = legs[0].coords
+    hairpin = LineString([(x1, y1), (x2, y2), (x2, -y2), (x1, -y1)])
+    matrix = added(slot, [TraceOver(leg, 0.3) for leg in legs], 0.2, beyond_mm=beyond).added_nh
+    whole = added(slot, [TraceOver(hairpin, 0.3)], 0.2, beyond_mm=beyond).added_nh
+    odd_nh = matrix[0, 0] + matrix[1, 1] - 2 * matrix[0, 1]
+    assert whole[0, 0] == pytest.approx(odd_nh, rel=0.02)
