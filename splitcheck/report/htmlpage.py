@@ -15,7 +15,7 @@ from splitcheck.errors import SplitcheckError
 from splitcheck.report import charts, closeups, mapdrawing, tally
 from splitcheck.report.drawing import DARK, LIGHT, variables
 from splitcheck.report.kinds import CAUTION, RULES
-from splitcheck.report.pagedata import SENTENCE, data
+from splitcheck.report.pagedata import SENTENCE, data, sentence
 from splitcheck.report.sentences import cost, place, source
 from splitcheck.report.words import plural, shorten
 from splitcheck.verdict.changes import Comparison
@@ -139,7 +139,7 @@ def _worst(report: Report) -> dict[str, str] | None:
         "title": RULES[finding.kind].title,
         "place": place(finding),
         "source": source(finding),
-        "why": shorten(finding.reason, SENTENCE),
+        "why": sentence(finding.reason),
         "others": others.replace("net cross", "net crosses"),
         "mend": shorten(mend, SENTENCE),
     }

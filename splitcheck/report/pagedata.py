@@ -51,6 +51,18 @@ def embedded(content: Json) -> str:
     return plain.replace("<", "\\u003c").replace(">", "\\u003e").replace("&", "\\u0026")
 
 
+def sentence(words: str) -> str:
+    """A sentence as it stands by itself: safe, not too long, with a capital.
+
+    Examples
+    --------
+    >>> sentence("the trace goes on")
+    'The trace goes on'
+    """
+    shown = shorten(words, SENTENCE)
+    return shown[:1].upper() + shown[1:]
+
+
 def _name(words: str) -> str:
     return shorten(words, NAME)
 
@@ -73,7 +85,7 @@ def _finding(finding: Finding, pictures: Pictures, change: str) -> Json:
         "noise": _pair(finding.noise_mv),
         "place": place(finding),
         "source": source(finding),
-        "reason": shorten(finding.reason, SENTENCE),
+        "reason": sentence(finding.reason),
         "more": _more(finding),
         "shares": [
             [_name(s.net), None if s.mutual_nh is None else number(s.mutual_nh)]
