@@ -97,14 +97,14 @@ def _matched(
 
 
 def _same_gap(one: Finding, other: Finding) -> bool:
-    """Whether two findings are over one gap of one plane, or change planes between one pair."""
-    apart = {"no-plane", "plane-change"}
-    if one.kind != other.kind and apart & {one.kind, other.kind}:
-        return False
-    if (one.layer, one.plane_layer) != (other.layer, other.plane_layer):
-        return False
-    same = (one.gap, frozenset(one.islands)) == (other.gap, frozenset(other.islands))
-    return same or one.kind == "plane-change"
+    """Whether two findings are over one gap of one plane, or both change planes."""
+    if "plane-change" in {one.kind, other.kind}:
+        return one.kind == other.kind
+    keys = [
+        (f.layer, f.plane_layer, f.gap, frozenset(f.islands), f.kind == "no-plane")
+        for f in (one, other)
+    ]
+    return keys[0] == keys[1]
 
 
 def _apart_mm(one: Finding, other: Finding) -> float:
@@ -229,7 +229,8 @@ def mutual_nh(one: Finding, other: Finding) -> float:
     """
     for share in one.shares_gap_with:
         if share.net == other.net and share.mutual_nh is not None:
-            return min(share.mutual_nh, _most_mutual_nh(one, other))
+            # its sign tells which way either leg happens to be drawn over the gap
+            return min(abs(share.mutual_nh), _most_mutual_nh(one, other))
     if one.kind == "plane-change":
         return ((one.added_nh or 0.0) + (other.added_nh or 0.0)) / 2.0
     return coupling(_apart_mm(one, other), one.detour_mm) * _most_mutual_nh(one, other)

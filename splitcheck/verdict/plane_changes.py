@@ -22,7 +22,7 @@ from splitcheck.planes.islands import Island
 from splitcheck.units import INCH_MM
 from splitcheck.verdict.around import SUPPLY_RATIO
 from splitcheck.verdict.findings import LEVELS, BridgeUse, Finding, Source
-from splitcheck.verdict.listing import gathered, near_enough
+from splitcheck.verdict.listing import gathered, near_enough, worth_listing
 from splitcheck.verdict.places import fingerprint
 from splitcheck.verdict.rules import Class
 from splitcheck.verdict.scene import Scene
@@ -183,7 +183,9 @@ def change_findings(scene: Scene, cases: Sequence[Case], dropped: dict[str, int]
     share the current; islands of two nets by capacitors; else there is the capacitance of the two
     planes alone. (3) A change costs something in any case: what counts is what it costs more than
     with one return via at ``Rules.change_mm``, the distance that layout guides ask for (TI SNLA426,
-    AMD UG863: 50 mil). (4) Energies of parts of a return go with the square of the part.
+    AMD UG863: 50 mil). (4) Energies of parts of a return go with the square of the part. (5) The
+    level is that of the noise; where a return via is missing between planes of one net, it is a
+    warning from ``Rules.change_warning_nh`` on, unless the net is too slow for a note.
     """
     nets = _Nets(scene)
     judged = [
@@ -456,7 +458,8 @@ def _finding(scene: Scene, case: Case, ways: Sequence[_Way], nets: _Nets) -> Fin
     added = sum(way.added_nh for way in ways)
     noise = noise_mv(added, drive)
     how = level(noise, drive, added)
-    if added >= scene.rules.change_warning_nh_of(drive):
+    stitched = sum(way.added_nh for way in ways if way.kind == "via")
+    if stitched >= scene.rules.change_warning_nh_of(drive) and worth_listing(noise, drive):
         how = min(how, "warning", key=LEVELS.index)
     layers = scene.board.stack.layers
     net = scene.board.nets[first.net].name

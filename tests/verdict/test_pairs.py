@@ -126,3 +126,11 @@ def test_tight_pair_hardly_needs_a_plane(apart: float, height: float, gap: float
     assert open_odd_nh(apart, height, gap) <= open_odd_nh(2 * apart, height, gap)
     assert open_odd_nh(apart, height, 2 * gap) == pytest.approx(2 * open_odd_nh(apart, height, gap))
     assert open_odd_nh(apart, None, gap) == 0.0
+
+
+def test_how_the_legs_are_drawn_does_not_matter() -> None:
+    """One leg drawn from the right to the left: its mutual inductance has the other sign."""
+    there = _judged(_legs(14.8, 15.2), SLOT)["TX_P"]
+    legs = _legs(14.8, 15.2)
+    back = _judged([legs[0], Line(legs[1].net, legs[1].points[::-1])], SLOT)["TX_P"]
+    assert back.odd_nh == pytest.approx(there.odd_nh, rel=1e-3)

@@ -87,6 +87,7 @@ def test_far_return_via_is_told_with_its_distance_and_cost() -> None:
     assert [(use.kind, use.at_mm) for use in found.bridges] == [("via", (20.0, 25.0))]
     assert found.islands == ("L2.1", "L3.1")
     assert "10.0 mm away" in found.reason
+    assert found.level == "warning"  # 27 mV are none, but 0.5 nH of missing via are
 
 
 @pytest.mark.parametrize("mm", [0.6, 1.27, 1.6])
@@ -109,7 +110,7 @@ def test_slow_net_says_nothing() -> None:
     """The same far via and an edge of 20 ns."""
     made = _made(_far(10.0))
     slow = replace(DEFAULT_CLASS, name="slow", rise_ns=20.0)
-    seen = replace(scene(made), drives=(slow,) * len(made.nets), rules=Rules(change_warning_nh=2.0))
+    seen = replace(scene(made), drives=(slow,) * len(made.nets))
     assert _judged(made, seen).findings == ()
 
 
@@ -158,6 +159,7 @@ def test_capacitor_between_two_nets_is_the_way() -> None:
     made = _made(nets=("GND", "+3V3"))
     found = _one(made, _with_capacitors(made, (20.0, 20.0)))
     expected = 1.0 + line_nh(5.0, 0.3, 1.0) - line_nh(1.27, 0.3, 1.0)
+    assert found.level == ("warning" if noise_mv(expected, DEFAULT_CLASS) >= 33.0 else "note")
     assert found.added_nh == pytest.approx(expected, rel=1e-3)
     assert [(use.kind, use.at_mm, use.net) for use in found.bridges] == [
         ("capacitor", (20.0, 20.0), "C0")
