@@ -26,6 +26,8 @@ BridgeKind: TypeAlias = Literal["capacitor", "copper"]
 #: within so many times the distance of the nearest (common practice, no source).
 NEAR_MM = 3.0
 MUCH_FARTHER = 1.5
+#: More islands than this are not looked for from one pad: what a part joins is their product.
+MOST_ISLANDS = 16
 
 
 class Standing(NamedTuple):
@@ -142,6 +144,8 @@ def _reached(pin: Pin, holes: Mapping[int, _Holes], by_part: Mapping[int, Island
             for island in through.islands[row]:
                 reach = _Reach(island, through.places[row], through.barrels_mm[row])
                 found.setdefault(island.id, reach)
+            if len(found) >= MOST_ISLANDS:
+                break
     return sorted(found.values(), key=lambda reach: (reach.island.layer, reach.island.id))
 
 
