@@ -77,7 +77,7 @@ class Words:
         >>> [words.match(name) for name in ("I2C1_SCL", "SCL2", "SCLK", "USB_OTG_D_P", "USB2_D_P")]
         [True, True, False, False, True]
         """
-        return self._any is not None and self._any.search(spelling) is not None
+        return bool(spelling and self._any and self._any.search(spelling))
 
 
 def _in_words(pattern: str) -> str:
