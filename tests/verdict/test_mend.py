@@ -233,7 +233,7 @@ def test_a_return_via_is_put_beside_a_change_of_plane() -> None:
 
 
 def test_planes_of_two_nets_get_a_capacitor_and_no_via() -> None:
-    """The twin: ground above, supply below."""
+    """The twin: ground above, supply below, and a capacitor far off."""
     antipad = shapely.Point(20, 15).buffer(0.5)
     sheets = [
         Sheet(lines=(Line("CLK", ((2, 15), (20, 15))),)),
@@ -242,9 +242,14 @@ def test_planes_of_two_nets_get_a_capacitor_and_no_via() -> None:
         Sheet(lines=(Line("CLK", ((20, 15), (38, 15))),)),
     ]
     made = board(*sheets, holes=[via(20, 15)], heights_mm=(0.2, 1.0, 0.2), outline=WHOLE)
-    _, found = _seen(made)
+    seen = scene(made)
+    graph = with_capacitor(seen.graph, "L2.1", "L3.1", (38.0, 28.0), (38.0, 28.0), 1.5)
+    judged, found = _seen(made, replace(seen, graph=graph))
+    assert judged.findings[0].kind == "plane-change"
     assert {proposal.what for proposal in found} == {"capacitor"}
-    assert all(proposal.isolation for proposal in found)
+    assert not any(proposal.isolation for proposal in found)
+    (x0, y0), (x1, y1) = found[0].at_mm
+    assert hypot((x0 + x1) / 2 - 20, (y0 + y1) / 2 - 15) < 4.0
 
 
 def test_plane_is_drawn_under_a_bare_trace() -> None:

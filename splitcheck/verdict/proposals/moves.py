@@ -57,11 +57,27 @@ def _moved(case: Case, piece: int, side: int) -> Proposal | None:
         shift = _shift_mm(case, aside, beyond)
         if shift > FARTHEST_MM:
             continue
-        pairs = [(one, other) for one in ROOMS_MM for other in ROOMS_MM]
-        for rooms in sorted(pairs, key=lambda pair: (sum(pair), pair)):
-            found = _tried(case, piece, aside * shift, rooms)
-            if found is not None:
-                return found
+        free = _free(case, piece, aside * shift)
+        found = None if free is None else _valued(case, piece, shift, *free)
+        if found is not None:
+            return found
+    return None
+
+
+def _free(
+    case: Case, piece: int, shift: Floats
+) -> tuple[tuple[Point, ...], tuple[str, ...]] | None:
+    """The shortest moved way that has room, and the pours it opens."""
+    pairs = [(one, other) for one in ROOMS_MM for other in ROOMS_MM]
+    for rooms in sorted(pairs, key=lambda pair: (sum(pair), pair)):
+        ends = _ends(case, piece, rooms)
+        if ends is None:
+            continue
+        there = (ends[0], _shifted(ends[0], shift), _shifted(ends[1], shift), ends[1])
+        shape = LineString(there).buffer(case.crossing.width_mm / 2, quad_segs=4)
+        opened = case.room.openings(shape, case.crossing.layer, case.finding.net)
+        if opened is not None:
+            return there, opened
     return None
 
 
@@ -98,29 +114,22 @@ def _ends(case: Case, piece: int, rooms: tuple[float, float]) -> tuple[Point, Po
     return (round(a.x, 4), round(a.y, 4)), (round(b.x, 4), round(b.y, 4))
 
 
-def _tried(case: Case, piece: int, shift: Floats, rooms: tuple[float, float]) -> Proposal | None:
-    """The trace moved, if there is room for it and it gains."""
-    ends = _ends(case, piece, rooms)
-    if ends is None:
-        return None
-    crossing = case.crossing
-    there = (ends[0], _shifted(ends[0], shift), _shifted(ends[1], shift), ends[1])
-    shape = LineString(there).buffer(crossing.width_mm / 2, quad_segs=4)
-    opened = case.room.openings(shape, crossing.layer, case.finding.net)
-    if opened is None:
-        return None
+def _valued(
+    case: Case, piece: int, shift_mm: float, there: tuple[Point, ...], opened: tuple[str, ...]
+) -> Proposal | None:
+    """The trace moved, if it gains."""
     start, end = (_place(at[piece]) for at in (case.tracks.start, case.tracks.end))
-    lines = ((start, ends[0]), there, (ends[1], end))
+    lines = ((start, there[0]), there, (there[-1], end))
     tracks = redrawn(case.tracks, case.net, lines, piece)
     worth = worth_after(case, case.scene, tracks, LineString(there[1:3]))
     way = ", ".join(f"x {x:.2f} y {y:.2f}" for x, y in there)
     words = (
-        f"move the trace on {case.layer_name(crossing.layer)} by {float(np.hypot(*shift)):.2f} mm, "
+        f"move the trace on {case.layer_name(case.crossing.layer)} by {shift_mm:.2f} mm, "
         f"past the end of the gap: {way}"
     )
     if opened:
         words += f"; opens {', '.join(opened)}"
-    return case.proposal("move", (ends[0], ends[1]), words, worth)
+    return case.proposal("move", (there[0], there[-1]), words, worth)
 
 
 def _shifted(at: Point, shift: Floats) -> Point:

@@ -30,8 +30,11 @@ PLACES_APART_MM = 0.8
 class Spot:
     """A free place for a via: which islands it joins, and which pours it opens."""
 
-    def __init__(self, at: Point, islands: frozenset[str], opened: tuple[str, ...]) -> None:
+    def __init__(
+        self, at: Point, net: str, islands: frozenset[str], opened: tuple[str, ...]
+    ) -> None:
         self.at = at
+        self.net = net
         self.islands = islands
         self.opened = opened
 
@@ -39,16 +42,21 @@ class Spot:
 def vias(case: Case) -> Iterator[Proposal]:
     """Propose a via at one end of a crossing or at both, nearest places first."""
     ends = [_at_end(case, end) for end in (0, 1)]
-    chosen = [[spot] for free in ends for spot in free[:1]]
-    chosen.extend([one, other] for one in ends[0] for other in ends[1])
+    pairs = [[one, other] for one in ends[0] for other in ends[1]]
+    found = [proposal for places in pairs if (proposal := _valued(case, places)) is not None]
+    if found or not pairs:  # where two do not help, one of them does not
+        singles = [[spot] for free in ends for spot in free[:1]]
+        found.extend(p for places in singles if (p := _valued(case, places)) is not None)
+    yield from found
+
+
+def _valued(case: Case, places: list[Spot]) -> Proposal | None:
+    """Vias in some places, if they gain."""
     assert case.item is not None
-    nets = " and ".join(dict.fromkeys(island.net_name for island in case.islands))
-    for places in chosen:
-        worth = worth_of(stitched(case.scene, places), case.item.runs, case.beside)
-        said = words(case, places, nets, "beside the crossing")
-        found = case.proposal("via", [spot.at for spot in places], said, worth)
-        if found is not None:
-            yield found
+    worth = worth_of(stitched(case.scene, places), case.item.runs, case.beside)
+    nets = " and ".join(dict.fromkeys(spot.net for spot in places))
+    said = words(case, places, nets, "beside the crossing")
+    return case.proposal("via", [spot.at for spot in places], said, worth)
 
 
 def _at_end(case: Case, end: int) -> list[Spot]:
@@ -85,7 +93,7 @@ def spots(
             continue
         opened = case.room.via(at, net)
         if opened is not None:
-            found.append(Spot(at, islands, opened))
+            found.append(Spot(at, net, islands, opened))
         if len(found) == TRIED:
             break
     return found
