@@ -15,6 +15,8 @@ from typing import Any
 import pytest
 import yaml
 
+from splitcheck.cli.targets import FORMATS
+
 ROOT = Path(__file__).parents[2]
 README = (ROOT / "README.md").read_text(encoding="utf-8")
 FIXTURES = ROOT / "fixtures"
@@ -97,6 +99,12 @@ def test_pipelines_are_valid_by_the_schemas_of_their_hosts(
     words = [sys.executable, "-m", "check_jsonschema", "--builtin-schema", schema, str(file)]
     done = subprocess.run(words, check=False, capture_output=True, text=True)
     assert done.returncode == 0, done.stdout
+
+
+@pytest.mark.parametrize("name", FORMATS)
+def test_every_format_has_a_row(name: str) -> None:
+    """What ``--out`` can write is explained."""
+    assert f"\n| `{name}` | " in README.split("### Formats")[1].split("### Recipes")[0]
 
 
 def test_a_kept_report_lets_old_faults_pass(repository: Path, environment: dict[str, str]) -> None:
