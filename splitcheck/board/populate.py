@@ -92,6 +92,8 @@ def populate(
     assumptions: list[str] = []
     if not found:
         for one in lists:
+            if 2 * sum(part.ref in found for part in one.parts) > len(one.parts):
+                continue  # the same parts in another form
             laid = find_pads(one, layers, holes, corner)
             assumptions.extend(laid.assumptions)
             remarks.extend(laid.remarks)
