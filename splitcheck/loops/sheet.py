@@ -33,7 +33,7 @@ _CLEAR = 1.0
 #: Pieces of rim are this many smallest triangles long before they are cut as they ask for.
 _PIECES = 8.0
 #: A rim is cut where a triangle would cross it, at most so often.
-_ROUNDS = 2
+_ROUNDS = 5
 #: More nodes than this are not laid: the triangles are made larger instead.
 _MOST_NODES = 9_000
 #: Nodes on the ring about a pole.
@@ -143,7 +143,7 @@ def lay(
     -------
     The sheet.
     """
-    gaps = [*flow.gaps, *_apart(obstacles, flow.gaps)]
+    gaps, owners = _merged(obstacles, flow.gaps)
     focus = window if focus is None else focus
     least = max(_FINE * box_size_mm(focus), _FINE_HEIGHTS * flow.strips[0].height_mm)
     for _ in range(8):
@@ -151,16 +151,25 @@ def lay(
         if len(plan.nodes) <= _MOST_NODES:
             break
         least *= 1.6
-    return _triangles(flow, gaps, plan)
+    return _triangles(flow, gaps, owners, plan)
 
 
-def _apart(obstacles: Sequence[Polygon], gaps: Sequence[Polygon]) -> list[Polygon]:
-    """Obstacles that are not part of a gap."""
-    if not obstacles or not gaps:
-        return list(obstacles)
-    whole = shapely.union_all(list(gaps))
-    shapely.prepare(whole)
-    return [shape for shape in obstacles if not whole.intersects(shape)]
+def _merged(
+    obstacles: Sequence[Polygon], gaps: Sequence[Polygon]
+) -> tuple[list[Polygon], list[Ints]]:
+    """Gaps and obstacles in pieces that do not touch, and the numbers of the gaps in each.
+
+    A solve cuts gaps off at its window; what is left of them beyond it is an obstacle.
+    """
+    if not obstacles:
+        return list(gaps), [np.array([k]) for k in range(len(gaps))]
+    united = shapely.union_all([*gaps, *obstacles])
+    pieces = [part for part in shapely.get_parts(united) if isinstance(part, Polygon)]
+    owners: list[list[int]] = [[] for _ in pieces]
+    spots = [gap.representative_point() for gap in gaps]
+    for spot, piece in zip(*shapely.STRtree(pieces).query(spots, "intersects"), strict=True):
+        owners[int(piece)].append(int(spot))
+    return pieces, [np.array(some, dtype=np.int64) for some in owners]
 
 
 class _Plan(NamedTuple):
@@ -327,7 +336,7 @@ def _frame(near: Polygon, step: float) -> Floats:
     return shapely.get_coordinates(near.exterior.segmentize(step))[:-1]
 
 
-def _triangles(flow: Flow, gaps: Sequence[Polygon], plan: _Plan) -> Sheet:
+def _triangles(flow: Flow, gaps: Sequence[Polygon], owners: Sequence[Ints], plan: _Plan) -> Sheet:
     """Join the nodes; cut rims where a triangle would cross them."""
     nodes, rims = plan.nodes, list(plan.rims)
     used = Delaunay(nodes)
@@ -350,7 +359,7 @@ def _triangles(flow: Flow, gaps: Sequence[Polygon], plan: _Plan) -> Sheet:
     corners = used.simplices.astype(np.int64)
     smooth = smooth_part(flow, nodes)
     for rim, owner in zip(rims, plan.owner, strict=True):
-        _still(flow, nodes, smooth, rim, owner)
+        _still(flow, nodes, smooth, rim, owners[owner])
     copper = np.ones(len(corners), dtype=bool)
     if gaps:
         # a triangle in a gap has all its corners on rims, or on the border of the window
@@ -378,7 +387,7 @@ def _keys(one: Ints, other: Ints) -> Ints:
     return keys
 
 
-def _still(flow: Flow, nodes: Floats, smooth: Floats, rim: Ints, owner: int) -> None:
+def _still(flow: Flow, nodes: Floats, smooth: Floats, rim: Ints, owners: Ints) -> None:
     """Set the stream function on a rim to what it is in the gap, in place.
 
     At the rim the panels' even density is at its worst, while its mean over each panel in the gap
@@ -387,7 +396,7 @@ def _still(flow: Flow, nodes: Floats, smooth: Floats, rim: Ints, owner: int) -> 
     at = nodes[rim]
     zero = np.zeros(len(at))
     turned = np.concatenate([[0.0], np.cumsum(rises(flow, at[:-1], at[1:], zero[1:], zero[1:]))])
-    mine = np.flatnonzero(flow.mesh.gap == owner) if owner < len(flow.gaps) else np.zeros(0, int)
+    mine = np.flatnonzero(np.isin(flow.mesh.gap, owners))
     if len(mine):
         centre = flow.mesh.centre[mine]
         nearest = np.argmin(np.hypot(*(at[:, None] - centre).transpose(2, 0, 1)), axis=1)

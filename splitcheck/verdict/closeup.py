@@ -82,7 +82,7 @@ class Closeups:
         own, others = self._traces(finding, crossing, window)
         whole = broken = None
         if streams:
-            whole, broken = self._streams(item, height_mm, window, missing)
+            whole, broken = self._streams(item, height_mm, window)
         return FindingView(
             id=finding.id,
             window_mm=rounded_box(window.bounds),
@@ -155,7 +155,6 @@ class Closeups:
         item: Weighed,
         height_mm: float,
         window: Polygon,
-        missing: Sequence[shapely.Geometry],
     ) -> tuple[StreamView | None, StreamView | None]:
         """Lines of the return current, were the plane whole and as it is."""
         paths = tuple(run.path for run in item.runs)
@@ -166,22 +165,20 @@ class Closeups:
         whole = _drawn(stream_lines(alone, around, LINES, focus=window), window, (), ())
         if flow is None:
             return whole, None
-        small = [
-            part
-            for gap in missing
-            for part in shapely.get_parts(gap)
-            if isinstance(part, Polygon)
-            and box_size_mm(part) > LEAST_OBSTACLE * box_size_mm(window)
-        ]
-        small = sorted(small, key=lambda part: (-part.area, part.bounds))[:MOST_OBSTACLES]
         around = _around(flow, window)
-        broken = stream_lines(flow, around, LINES, obstacles=small, focus=window)
+        size = box_size_mm(window)
+        missing = self._missing(self.scene.planes[item.crossing.plane], around, SEEN * size)
+        parts = [p for p in shapely.get_parts(missing) if isinstance(p, Polygon)]
+        seen = [p for p in parts if box_size_mm(p) > LEAST_OBSTACLE * size]
+        seen = sorted(seen, key=lambda part: (-part.area, part.bounds))[:MOST_OBSTACLES]
+        plain = shapely.get_parts(shapely.simplify(np.array(seen, dtype=object), SEEN * size))
+        hard = [*flow.gaps, *(part for part in plain if isinstance(part, Polygon))]
+        broken = stream_lines(flow, around, LINES, obstacles=hard, focus=window)
         vias = tuple(
             ((round(float(x), 4), round(float(y), 4)), round(abs(float(amps)), 4))
             for (x, y), amps in zip(flow.via_at, flow.via_a, strict=True)
             if abs(amps) > 0.005
         )
-        hard = [*flow.gaps, *small]
         return whole, _drawn(broken, window, hard, vias)
 
     def _impedance(self, finding: Finding, item: Weighed, height_mm: float) -> ImpedanceView | None:
