@@ -86,7 +86,10 @@ def arrange(
     lines = [shapely.remove_repeated_points(line, 1e-9) for line in lines]
     chosen, weight, left_out = _chosen(clean, lines, [*lines, *kept], height_mm, endless)
     finer = [_plainer(clean[k], height_mm / 50) for k in chosen]
-    trimmed = [_on_copper(line, finer) for line in lines]
+    short = _ending_in_gaps(lines, finer)
+    trimmed = [
+        _on_copper(line, finer) if k in short else (line, 0.0) for k, line in enumerate(lines)
+    ]
     return Scene(
         gaps=tuple(finer),
         weight=tuple(weight),
@@ -173,6 +176,16 @@ def _plainer(gap: Polygon, tolerance_mm: float) -> Polygon:
     return shapely.orient_polygons(plain) if same else gap
 
 
+def _ending_in_gaps(lines: Sequence[LineString], gaps: Sequence[Polygon]) -> set[int]:
+    """Which lines have an end in a gap; few have."""
+    if not gaps or not lines:
+        return set()
+    # the points that `_on_copper` starts from
+    ends = [shapely.line_interpolate_point(lines, part, normalized=True) for part in (0.0, 1.0)]
+    hits = shapely.STRtree(gaps).query(np.concatenate(ends), predicate="intersects")[0]
+    return {int(hit) % len(lines) for hit in hits}
+
+
 def _on_copper(line: LineString, gaps: Sequence[Polygon]) -> tuple[LineString | None, float]:
     """Cut off what the line runs over a gap without reaching copper, at either end."""
     whole = line.length
@@ -221,7 +234,7 @@ def _chosen(
     if not gaps or not lines:
         return [], [], 0.0
     shapes = np.array(gaps, dtype=object)
-    swaths = shapely.union_all([line.buffer(3 * height_mm, quad_segs=2) for line in lines])
+    swaths = shapely.buffer(shapely.multilinestrings(list(lines)), 3 * height_mm, quad_segs=2)
     shapely.prepare(swaths)
     main = [int(k) for k in np.flatnonzero(shapely.intersects(swaths, shapes))]
     if endless is not None and endless not in main:
