@@ -161,8 +161,10 @@ def _by_estimate(item: Weighed) -> tuple[float, float, tuple[float, float]]:
     return (-added, -item.crossing.run_mm, item.crossing.at)
 
 
-def _solve_all(scene: Scene, weighed: Sequence[Weighed], spread: Spread) -> dict[int, Field]:
-    """Solve for every crossing that has a way back, those over one gap together."""
+def _solve_all(
+    scene: Scene, weighed: Sequence[Weighed], spread: Spread, only: int | None = None
+) -> dict[int, Field]:
+    """Solve for every crossing that has a way back, or `only` one, those over one gap together."""
     tasks = [
         Task(
             number,
@@ -178,7 +180,9 @@ def _solve_all(scene: Scene, weighed: Sequence[Weighed], spread: Spread) -> dict
     ]
     solved: dict[int, Field] = {}
     fields = Fields(scene.board, scene.planes, scene.graph)
-    for result in spread(fields.solve, cluster([task for task in tasks if can_solve(task)])):
+    clusters = cluster([task for task in tasks if can_solve(task)])
+    wanted = [c for c in clusters if only is None or any(task.number == only for task in c)]
+    for result in spread(fields.solve, wanted):
         solved.update(result)
     return solved
 
@@ -241,7 +245,7 @@ def value_again(
     others = _once_a_gap(beside)
     values: list[tuple[Inductance, float] | None] = []
     for item in _once_a_gap([item for item in weighed if not isinstance(item, str)]):
-        field = _solve_all(scene, [item, *others], map).get(0)
+        field = _solve_all(scene, [item, *others], map, only=0).get(0)
         value = item.estimate if field is None else field.value
         if all_of_them and field is None:
             continue

@@ -5,10 +5,12 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import replace
+from math import dist
 
 import numpy as np
 
 from splitcheck.errors import SplitcheckError
+from splitcheck.loops.fields import TOGETHER_MOST_MM
 from splitcheck.planes.changes import find_changes
 from splitcheck.planes.crossings import Crossing, find_crossings
 from splitcheck.planes.tracks import Tracks, redrawn
@@ -129,13 +131,15 @@ def _case(
 
 
 def _beside(judged: Judged, item: Weighed) -> tuple[Crossing, ...]:
-    """Crossings of the same gap from the same layer that other findings stand for."""
+    """Crossings of the same gap from the same layer near enough to be solved together with one."""
     own = item.crossing
     return tuple(
         run
         for other in judged.weighed.values()
         for run in other.runs
-        if other is not item and (run.plane, run.gap, run.layer) == (own.plane, own.gap, own.layer)
+        if other is not item
+        and (run.plane, run.gap, run.layer) == (own.plane, own.gap, own.layer)
+        and dist(run.at, own.at) <= TOGETHER_MOST_MM
     )
 
 
