@@ -43,6 +43,9 @@ def git(folder: Path, *words: str) -> str:
 @pytest.fixture
 def repository(tmp_path: Path) -> Path:
     """A clone whose origin/main has the clean board, with the faulty one on a branch."""
+    missing = [name for name in ("git", "bash") if shutil.which(name) is None]
+    if missing:
+        pytest.skip(f"the hosts' scripts need {' and '.join(missing)}")
     origin, clone = tmp_path / "origin", tmp_path / "clone"
     shutil.copytree(FIXTURES / "demo_clean", origin / "gerbers")
     git(origin, "init", "-q", "-b", "main")
