@@ -2,46 +2,28 @@
 
 from __future__ import annotations
 
-from collections import defaultdict
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
-from itertools import pairwise
-from math import hypot
-from typing import NamedTuple
 
-import networkx as nx
 import numpy as np
 import shapely
 
 from splitcheck.copper.marks import Point
-from splitcheck.loops.bridges import all_parts, bridges_between
-from splitcheck.loops.handover import between_plates_nh, line_nh, plates_nf, shared_nh
+from splitcheck.loops.handover import plates_nf
 from splitcheck.planes.changes import LOOK_STEP_MM, LOOK_TO_MM, Carry, PlaneChange, carries_at
 from splitcheck.planes.crossings import BareTrace, Crossing
-from splitcheck.planes.islands import Island
-from splitcheck.units import INCH_MM
 from splitcheck.verdict.around import SUPPLY_RATIO
 from splitcheck.verdict.findings import LEVELS, BridgeUse, Finding, Source
 from splitcheck.verdict.listing import gathered, near_enough, worth_listing
 from splitcheck.verdict.places import fingerprint
-from splitcheck.verdict.rules import Class
+from splitcheck.verdict.return_ways import Nets, ReturnWay, cavities, cheapest_way
 from splitcheck.verdict.scene import Scene
 from splitcheck.verdict.score import level, noise_mv
 
-#: So many of the nearest holes, or of the nearest parts, share a return.
-MOST_HOLES = 8
-MOST_PARTS = 12
-#: Capacitors farther away than this, mm for each ns of rise time, come too late (S. Weir, si-list,
-#: 16 Oct 2008: 1 inch a ns).
-PARTS_MM_NS = INCH_MM
 #: Changes between the same islands within this distance of the worst of them are one place, mm.
 TOGETHER_MM = 3.0
 #: How far the closed forms may be off: over vias, over parts, between the plates alone.
 ERRORS = {"via": 0.3, "capacitor": 0.5, "plates": 1.0}
-#: A change of less than this share of the return counts for nothing.
-LEAST_SHARE = 0.1
-#: Barrel of a part's hole, mm (common practice, no source).
-PART_HOLE_MM = 0.3
 #: A board without capacitors is hardly one; where no file tells them there is nothing to judge by.
 UNKNOWN = "changes of plane between two nets, not judged: no file tells where capacitors are"
 SUPPLY_LINES = (
@@ -58,32 +40,6 @@ class Case:
     changes: tuple[PlaneChange, ...]
     gap_mm: float
     """Length of the trace without its first plane; 0 at a hole."""
-
-
-#: Layer of a plane and index of an island in it.
-_Key = tuple[int, int]
-
-
-class _Cavity(NamedTuple):
-    """Two islands, one over the other, between which a part of the return must go."""
-
-    one: Island
-    other: Island
-    current: float
-    plates_mm: float
-
-
-class _Way(NamedTuple):
-    """What one cavity costs, and the way that is taken."""
-
-    cavity: _Cavity
-    added_nh: float
-    """Above what a return via at the distance of the rules would cost."""
-    kind: str
-    """``via``, ``capacitor`` or ``plates``."""
-    at: Point | None
-    far_mm: float | None
-    net: str
 
 
 def from_leaving(scene: Scene, bare: Sequence[BareTrace]) -> list[Case]:
@@ -187,7 +143,7 @@ def change_findings(scene: Scene, cases: Sequence[Case], dropped: dict[str, int]
     level is that of the noise; where a return via is missing between planes of one net, it is a
     warning from ``Rules.change_warning_nh`` on, unless the net is too slow for a note.
     """
-    nets = _Nets(scene)
+    nets = Nets(scene)
     judged = [
         (case, way) for case in cases if (way := _judge(scene, case, nets, dropped)) is not None
     ]
@@ -195,7 +151,7 @@ def change_findings(scene: Scene, cases: Sequence[Case], dropped: dict[str, int]
     return gathered(findings, lambda f: f"change {f.islands[0]} to {f.islands[1]}", TOGETHER_MM)
 
 
-def _judge(scene: Scene, case: Case, nets: _Nets, dropped: dict[str, int]) -> list[_Way] | None:
+def _judge(scene: Scene, case: Case, nets: Nets, dropped: dict[str, int]) -> list[ReturnWay] | None:
     """The ways of a case, worst first; None if it is no finding."""
     drive = scene.drive_of(case.changes[0].net)
     if any(not change.before or not change.after for change in case.changes):
@@ -208,9 +164,9 @@ def _judge(scene: Scene, case: Case, nets: _Nets, dropped: dict[str, int]) -> li
         dropped["changes of plane beside reference copper of the trace's own layer"] += 1
         return None
     ways = [
-        _way(scene, change, cavity, nets, drive)
+        cheapest_way(scene, change, cavity, nets, drive)
         for change in case.changes
-        for cavity in _cavities(scene, change)
+        for cavity in cavities(scene, change)
     ]
     if not ways:
         dropped["changes of plane that move less than a tenth of the return"] += 1
@@ -227,7 +183,7 @@ def _judge(scene: Scene, case: Case, nets: _Nets, dropped: dict[str, int]) -> li
     return known
 
 
-def _is_unknown(way: _Way, nets: _Nets) -> bool:
+def _is_unknown(way: ReturnWay, nets: Nets) -> bool:
     """Whether the planes are of two nets and nobody knows of any capacitor on the board."""
     return (
         way.kind == "plates"
@@ -260,199 +216,7 @@ def _has_coplanar(scene: Scene, change: PlaneChange) -> bool:
     return any(shapely.dwithin(island.shape, at, farthest / 2) for island in own.islands)
 
 
-def _cavities(scene: Scene, change: PlaneChange) -> Iterator[_Cavity]:
-    """Between which islands how much of the return must go.
-
-    What islands of one net lose goes to islands of that net first, past planes of other nets in
-    between; only what is left goes from net to net.
-    """
-    islands = {key: scene.planes[key[0]].islands[key[1]] for key in change.moved}
-    left = dict(change.moved)
-    for net in sorted({island.net for island in islands.values()}):
-        own = {key: share for key, share in left.items() if islands[key].net == net}
-        lost = -sum(share for share in own.values() if share < 0)
-        gained = sum(share for share in own.values() if share > 0)
-        both = min(lost, gained)
-        if both <= 0:
-            continue
-        part = {key: share * both / (gained if share > 0 else lost) for key, share in own.items()}
-        yield from _stacked(scene, change, islands, part)
-        left.update({key: left[key] - share for key, share in part.items()})
-    yield from _stacked(scene, change, islands, left)
-
-
-def _stacked(
-    scene: Scene,
-    change: PlaneChange,
-    islands: dict[_Key, Island],
-    moved: dict[_Key, float],
-) -> Iterator[_Cavity]:
-    """What a plane loses goes to its neighbours, plate by plate: the cumulated sum from the top."""
-    stack, carried = scene.board.stack, 0.0
-    by_layer: dict[int, dict[_Key, float]] = defaultdict(dict)
-    for key, share in sorted(moved.items()):
-        if abs(share) > 1e-9:
-            by_layer[key[0]][key] = share
-    layers = sorted(by_layer)
-    for number, layer in enumerate(layers):
-        here = by_layer[layer]
-        lost = -sum(share for share in here.values() if share < 0)
-        gained = sum(share for share in here.values() if share > 0)
-        if min(lost, gained) >= LEAST_SHARE:
-            height = min(stack.height_mm(layer, t) for t in change.layers if t != layer)
-            one, other = min(here, key=here.__getitem__), max(here, key=here.__getitem__)
-            yield _Cavity(islands[one], islands[other], min(lost, gained), height)
-        carried += gained - lost
-        if number + 1 < len(layers) and abs(carried) >= LEAST_SHARE:
-            below = by_layer[layers[number + 1]]
-            one, other = (max(some, key=lambda key: abs(some[key])) for some in (here, below))
-            apart = stack.height_mm(layer, layers[number + 1])
-            yield _Cavity(islands[one], islands[other], abs(carried), apart)
-
-
-class _Part(NamedTuple):
-    """A part between two nets, or two parts over a third net."""
-
-    at: Point
-    ref: str
-    mounted_nh: float
-
-
-class _Nets:
-    """What joins two nets besides holes: parts, and the capacitance of their planes."""
-
-    def __init__(self, scene: Scene) -> None:
-        self.scene = scene
-        self.islands: dict[int, list[Island]] = defaultdict(list)
-        nets: dict[str, int] = {}
-        for plane in scene.planes.values():
-            for island in plane.islands:
-                self.islands[island.net].append(island)
-                nets[island.id] = island.net
-        found: dict[tuple[int, int], dict[str, _Part]] = defaultdict(dict)
-        for bridge in all_parts(scene.graph):
-            one, other = sorted((nets[bridge.one], nets[bridge.other]))
-            part = _Part(bridge.at, bridge.ref, bridge.mounted_nh)
-            known = found[one, other].get(bridge.ref)
-            if one != other and (known is None or part.mounted_nh < known.mounted_nh):
-                found[one, other][bridge.ref] = part
-        self.parts = {
-            key: tuple(parts[ref] for ref in sorted(parts)) for key, parts in found.items()
-        }
-        self._facing: dict[tuple[int, int], tuple[float, float, float]] = {}
-
-    def between(self, one: int, other: int) -> tuple[_Part, ...]:
-        """Parts that join two nets."""
-        return self.parts.get((min(one, other), max(one, other)), ())
-
-    def facing(self, one: int, other: int) -> tuple[float, float, float]:
-        """Area, distance and permittivity of the two islands with the most capacitance, mm2, mm.
-
-        A small piece of a net that holes join to its planes has their capacitance.
-        """
-        key = (min(one, other), max(one, other))
-        if key not in self._facing:
-            stack = self.scene.board.stack
-            self._facing[key] = max(
-                (
-                    (
-                        min(a.shape.area, b.shape.area),
-                        stack.height_mm(a.layer, b.layer),
-                        stack.layers[min(a.layer, b.layer) - 1].er_below,
-                    )
-                    for a in self.islands[one]
-                    for b in self.islands[other]
-                    if a.layer != b.layer
-                ),
-                key=lambda pair: plates_nf(*pair),
-                default=(1.0, 1.0, 1.0),
-            )
-        return self._facing[key]
-
-
-def _parts_between(nets: _Nets, one: int, other: int, at: Point) -> list[_Part]:
-    """Parts from one net to another, or else the nearest two over a third net as one."""
-    direct = nets.between(one, other)
-    if direct:
-        return list(direct)
-    over = []
-    for third in sorted({net for key in nets.parts for net in key} - {one, other}):
-        legs = [nets.between(net, third) for net in (one, other)]
-        if legs[0] and legs[1]:
-            first, second = (min(leg, key=lambda part: _far_mm(at, part.at)) for leg in legs)
-            farther = max(first, second, key=lambda part: _far_mm(at, part.at))
-            both = first.mounted_nh + second.mounted_nh
-            over.append(_Part(farther.at, f"{first.ref} and {second.ref}", both))
-    return over
-
-
-def _far_mm(one: Point, other: Point) -> float:
-    return hypot(one[0] - other[0], one[1] - other[1])
-
-
-def _way(scene: Scene, change: PlaneChange, cavity: _Cavity, nets: _Nets, drive: Class) -> _Way:
-    """The cheapest way between the two islands of a cavity."""
-    wide = change.hole_mm or 2.0 * min(
-        scene.board.stack.height_mm(change.layers[0], layer)
-        for layer in (cavity.one.layer, cavity.other.layer)
-        if layer != change.layers[0]
-    )
-    square = cavity.current**2
-    base = line_nh(scene.rules.change_mm_of(drive), wide, cavity.plates_mm)
-    if cavity.one.net == cavity.other.net:
-        holes = _holes(scene, cavity, change.at)
-        if holes:
-            value = shared_nh(change.at, wide, holes, cavity.plates_mm)
-            at = holes[0][0]
-            added = square * max(value - base, 0.0)
-            return _Way(cavity, added, "via", at, _far_mm(change.at, at), cavity.one.net_name)
-    area_mm2, facing_mm, er = nets.facing(cavity.one.net, cavity.other.net)
-    plates = between_plates_nh(
-        wide, cavity.plates_mm, area_mm2, drive.rise_ns, plates_nf(area_mm2, facing_mm, er)
-    )
-    best = _Way(cavity, square * max(plates - base, 0.0), "plates", None, None, "")
-    near = sorted(
-        (_far_mm(change.at, part.at), part)
-        for part in _parts_between(nets, cavity.one.net, cavity.other.net, change.at)
-    )[:MOST_PARTS]
-    near = [(far, part) for far, part in near if far <= PARTS_MM_NS * drive.rise_ns]
-    if near:
-        ways = [(part.at, PART_HOLE_MM, part.mounted_nh) for _, part in near]
-        value = shared_nh(change.at, wide, ways, cavity.plates_mm)
-        added = square * max(value - base, 0.0)
-        far, part = near[0]
-        if added <= best.added_nh:
-            return _Way(cavity, added, "capacitor", part.at, far, part.ref)
-        best = best._replace(net=part.ref, far_mm=far)
-    return best
-
-
-def _holes(scene: Scene, cavity: _Cavity, at: Point) -> list[tuple[Point, float, float]]:
-    """Plated holes that join two islands of one net, nearest first; over others if none does."""
-    graph = scene.graph
-    places = bridges_between(graph, cavity.one.id, cavity.other.id)
-    if len(places):
-        wide_mm = graph.edges[cavity.one.id, cavity.other.id]["wide_mm"]
-        far = np.hypot(*(places - np.asarray(at)).T)
-        order = np.argsort(far, kind="stable")[:MOST_HOLES].tolist()
-        return [
-            ((float(places[i, 0]), float(places[i, 1])), max(float(wide_mm[i]), 0.05), 0.0)
-            for i in order
-        ]
-    if cavity.one.id == cavity.other.id or not nx.has_path(graph, cavity.one.id, cavity.other.id):
-        return []
-    # over other islands: as far as the farthest of the holes on the way
-    steps = nx.shortest_path(graph, cavity.one.id, cavity.other.id)
-    nearest = []
-    for one, other in pairwise(steps):
-        places = bridges_between(graph, one, other)
-        far = np.hypot(*(places - np.asarray(at)).T)
-        best = int(np.argmin(far))
-        nearest.append((float(far[best]), (float(places[best, 0]), float(places[best, 1]))))
-    return [(max(nearest)[1], PART_HOLE_MM, 0.0)]
-
-
-def _finding(scene: Scene, case: Case, ways: Sequence[_Way], nets: _Nets) -> Finding:
+def _finding(scene: Scene, case: Case, ways: Sequence[ReturnWay], nets: Nets) -> Finding:
     first, worst = case.changes[0], ways[0]
     drive = scene.drive_of(first.net)
     added = sum(way.added_nh for way in ways)
@@ -498,13 +262,13 @@ def _finding(scene: Scene, case: Case, ways: Sequence[_Way], nets: _Nets) -> Fin
     )
 
 
-def _bridge(way: _Way) -> BridgeUse:
+def _bridge(way: ReturnWay) -> BridgeUse:
     assert way.at is not None
     at = (round(way.at[0], 4), round(way.at[1], 4))
     return BridgeUse("capacitor" if way.kind == "capacitor" else "via", at, way.net)
 
 
-def _reason(scene: Scene, case: Case, way: _Way, nets: _Nets) -> str:
+def _reason(scene: Scene, case: Case, way: ReturnWay, nets: Nets) -> str:
     names = [layer.name for layer in scene.board.stack.layers]
     first, cavity = case.changes[0], way.cavity
     one, other = cavity.one, cavity.other
@@ -523,7 +287,7 @@ def _reason(scene: Scene, case: Case, way: _Way, nets: _Nets) -> str:
     return f"{start}; {_way_in_words(way, nets)}"
 
 
-def _way_in_words(way: _Way, nets: _Nets) -> str:
+def _way_in_words(way: ReturnWay, nets: Nets) -> str:
     if way.kind == "plates":
         one, other = way.cavity.one.net, way.cavity.other.net
         farads = f"the {1000 * plates_nf(*nets.facing(one, other)):.0f} pF of the two planes"
