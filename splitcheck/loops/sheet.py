@@ -143,7 +143,7 @@ def lay(
     -------
     The sheet.
     """
-    gaps, owners = _merged(obstacles, flow.gaps)
+    gaps, owners = _merged(_without_poles(obstacles, flow), flow.gaps)
     focus = window if focus is None else focus
     least = max(_FINE * box_size_mm(focus), _FINE_HEIGHTS * flow.strips[0].height_mm)
     for _ in range(8):
@@ -170,6 +170,15 @@ def _merged(
     for spot, piece in zip(*shapely.STRtree(pieces).query(spots, "intersects"), strict=True):
         owners[int(piece)].append(int(spot))
     return pieces, [np.array(some, dtype=np.int64) for some in owners]
+
+
+def _without_poles(obstacles: Sequence[Polygon], flow: Flow) -> list[Polygon]:
+    """Obstacles but for those in which current gets in or out.
+
+    A trace ends at a pad of its own, often within its antipad; the solve does not see that either.
+    """
+    at = shapely.multipoints(flow.poles[0])
+    return [shape for shape in obstacles if not shape.intersects(at)]
 
 
 class _Plan(NamedTuple):

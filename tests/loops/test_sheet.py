@@ -120,6 +120,24 @@ def test_small_gaps_that_the_solve_left_out_are_passed_by() -> None:
         assert not [s for s in streams if s.path.intersects(hole.buffer(-0.05))]
 
 
+def test_an_antipad_at_the_end_of_the_trace_takes_no_lines_away() -> None:
+    """The pad that a trace ends at lies in a gap of its own, which the solve does not see."""
+    flow = flowing([SLOT])
+    holes = [Point(14, 0).buffer(0.8), Point(-14, 0).buffer(0.8)]
+    plain = stream_lines(flow, WINDOW, MANY)
+    assert len(stream_lines(flow, WINDOW, MANY, obstacles=holes)) == len(plain)
+
+
+def test_as_many_lines_arrive_as_leave() -> None:
+    """On either side of the slot, where a small window cuts off its ends as well."""
+    flow = flowing([SLOT])
+    for window in (WINDOW, box(-16, -4, 16, 6)):
+        streams = stream_lines(flow, window, MANY)
+        before, after = (crossing(streams, LineString([(x, -14), (x, 14)])) for x in (-6.0, 6.0))
+        assert before == pytest.approx(after, abs=1.5 / MANY)
+        assert before > 0.8
+
+
 def test_triangles_fill_the_window() -> None:
     """With none missing: their areas add up to it."""
     sheet = lay(flowing([SLOT]), WINDOW)
