@@ -218,11 +218,19 @@ def added(
     raw = _solved(job, mesh)
     mesh_nh = _LOST_BY_MERGING * np.abs(raw.added_nh - raw.merged_nh)
     if not _settled(raw, mesh_nh):
-        finer, _ = _panels(job, fineness * _FINER, _REFINE_UP_TO)
-        if len(finer) >= 1.5 * len(mesh):
+        finer = _finer(job, fineness)
+        if finer is not None and len(finer) >= 1.5 * len(mesh):
             before, raw = raw, _solved(job, finer)
             mesh_nh = np.abs(raw.added_nh - before.added_nh)
     return _judged(job, raw, mesh_nh, coarser)
+
+
+def _finer(job: _Job, fineness: float) -> Panels | None:
+    """Panels of half the size, if those are not too many."""
+    try:
+        return _panels(job, fineness * _FINER, _REFINE_UP_TO, coarsest=1.0)[0]
+    except SplitcheckError:
+        return None
 
 
 def _settled(raw: _Raw, mesh_nh: Floats) -> bool:
