@@ -18,7 +18,7 @@ UNITS = 2000
 #: Height of letters, and thickness of thin lines, in the same.
 LETTER, THIN = 58, 5
 _MOST_LABELS = 6
-_FED = "It is let in and out where the trace was followed to."
+_FED = "It is let in and out where the trace was followed to; a gap right there is left to itself."
 
 #: How everything in a panel looks; the colours are variables of the page or written out.
 STYLE = """
