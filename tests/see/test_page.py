@@ -10,6 +10,7 @@ from pathlib import Path
 import pytest
 
 from splitcheck import road
+from splitcheck.cli.entry import run
 from splitcheck.errors import SplitcheckError
 from splitcheck.report import drawing, htmlpage
 from splitcheck.report.drawing import DARK, LIGHT
@@ -142,3 +143,20 @@ def test_the_page_of_the_largest_board_is_small() -> None:
     walked = road.look(largest_board(), options)
     text = htmlpage.render(walked.report, None, road.picture(walked, options))
     assert len(text.encode()) < LARGEST
+
+
+def test_rank_writes_the_page(tmp_path: Path, page: Path) -> None:
+    """From the command line, the same bytes as from Python."""
+    file = tmp_path / "demo.html"
+    demo = str(road.fixtures_folder() / "demo")
+    assert run(["rank", demo, "-q", "--jobs", "1", "--out", f"html={file}"]) == 1
+    assert file.read_bytes() == page.read_bytes()
+
+
+def test_what_reads_no_findings_writes_no_page(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """Said before the work, not after it."""
+    demo = str(road.fixtures_folder() / "demo")
+    assert run(["read", demo, "--out", f"html={tmp_path / 'x.html'}"]) == 2
+    assert 'no format "html"' in capsys.readouterr().err
