@@ -78,7 +78,7 @@ class Closeups:
         gap = plane.gaps[crossing.gap]
         crossed: list[shapely.Geometry] = [shapely.clip_by_rect(gap.shape, *window.bounds)]
         if gap.open:
-            crossed.append(_beyond(plane, window))
+            crossed = [shapely.union_all([*crossed, _beyond(plane, window)])]
         own, others = self._traces(finding, crossing, window)
         whole = broken = None
         if streams:
