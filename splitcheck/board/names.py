@@ -67,6 +67,18 @@ def is_power(name: str) -> bool:
     return any(is_ground(one) or is_supply(one) for one in name.split("|"))
 
 
+def in_words(name: str) -> str:
+    """A net's name in a sentence: of names that copper ties together, the first tells.
+
+    Examples
+    --------
+    >>> in_words("+3V3"), in_words("GND|GNDA|ANT1")
+    ('+3V3', 'GND and 2 more')
+    """
+    first, *others = name.split("|")
+    return f"{first} and {len(others)} more" if others else name
+
+
 #: A supply's name followed by one of these is a logic signal about that supply.
 _CONTROL = re.compile(
     r"[_\-./ ](?:EN|ENA|ENABLE|PG|PGOOD|OK|GOOD|SENSE|SNS|FB|CTRL|ON|OFF|FLT|FAULT|"

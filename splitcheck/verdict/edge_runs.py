@@ -8,6 +8,7 @@ from collections.abc import Sequence
 import numpy as np
 import shapely
 
+from splitcheck.board.names import in_words
 from splitcheck.loops.estimate import beside_edge_nh_mm
 from splitcheck.loops.finite_plane import common_nh_mm
 from splitcheck.planes.crossings import Crossing
@@ -201,7 +202,7 @@ def _reason(
     nearest = float(run.inside_mm[rows].min())
     said = (
         f"{length:.1f} mm of the trace run along the edge of "
-        f"{scene.board.stack.layers[run.plane - 1].name} ({island.net_name}), as near as "
+        f"{scene.board.stack.layers[run.plane - 1].name} ({in_words(island.net_name)}), as near as "
         f"{nearest:.2f} mm at a height of {height:.2f} mm, and no other plane is there"
     )
     return said if common is None else f"{said}; {with_common(common)}"

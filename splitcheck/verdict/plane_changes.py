@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 import shapely
 
+from splitcheck.board.names import in_words
 from splitcheck.copper.marks import Point
 from splitcheck.loops.handover import plates_nf
 from splitcheck.planes.changes import LOOK_STEP_MM, LOOK_TO_MM, Carry, PlaneChange, carries_at
@@ -279,8 +280,8 @@ def _reason(scene: Scene, case: Case, way: ReturnWay, nets: Nets) -> str:
     else:
         start = f"the trace goes from {names[first.layers[0] - 1]} to {names[first.layers[1] - 1]}"
     start += (
-        f"; its return must change between {names[one.layer - 1]} ({one.net_name}) and "
-        f"{names[other.layer - 1]} ({other.net_name}), {cavity.plates_mm:.2f} mm apart"
+        f"; its return must change between {names[one.layer - 1]} ({in_words(one.net_name)}) and "
+        f"{names[other.layer - 1]} ({in_words(other.net_name)}), {cavity.plates_mm:.2f} mm apart"
     )
     if cavity.current < 0.995:
         start += f", {100 * cavity.current:.0f} % of it"
@@ -302,4 +303,6 @@ def _way_in_words(way: ReturnWay, nets: Nets) -> str:
     where = f"{way.far_mm:.1f} mm away at ({way.at[0]:.2f}, {way.at[1]:.2f})"
     if way.kind == "via":
         return f"the nearest plated hole that joins them is {where}"
+    if " and " in way.net:
+        return f"the nearest capacitors that join them, {way.net}, are {where}"
     return f"the nearest capacitor that joins them, {way.net}, is {where}"

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from math import hypot
 
+from splitcheck.board.names import in_words
 from splitcheck.loops.ways import Way
 from splitcheck.verdict.around import layers_beyond
 from splitcheck.verdict.scene import Scene, Weighed
@@ -21,11 +22,13 @@ def reason(scene: Scene, item: Weighed) -> str:
     name = scene.board.stack.layers[crossing.plane - 1].name
     if item.kind == "split-crossing":
         start = (
-            f"{name} is split here between {one.net_name} ({one.id}) and "
-            f"{other.net_name} ({other.id})"
+            f"{name} is split here between {in_words(one.net_name)} ({one.id}) and "
+            f"{in_words(other.net_name)} ({other.id})"
         )
     else:
-        start = f"{name} ({one.net_name}) is open for {item.bare_mm:.2f} mm under the trace"
+        start = (
+            f"{name} ({in_words(one.net_name)}) is open for {item.bare_mm:.2f} mm under the trace"
+        )
         if len(item.runs) > 1:
             start += f", in {len(item.runs)} places"
     return "; ".join([start, _way_in_words(scene, item), *_extras(scene, item)])
@@ -35,16 +38,21 @@ def _way_in_words(scene: Scene, item: Weighed) -> str:
     route = item.route
     best = route.best
     if not route.joined or best is None:
+        islands = scene.planes[item.crossing.plane].islands
+        one, other = (islands[i] for i in item.crossing.islands)
+        copper = "plane copper" if one.net == other.net else "copper"
         nothing = (
-            "neither copper, a plated hole nor a capacitor"
+            f"neither {copper}, a plated hole nor a capacitor"
             if scene.board.components
-            else "neither copper nor a plated hole"
+            else f"neither {copper} nor a plated hole"
         )
         if item.share < 1.0:
             return (
                 f"{nothing} joins the two sides: the return must leave for the plane on the "
                 "trace's other side"
             )
+        if one.net == other.net:
+            return f"{nothing} joins the two sides: the net comes together by traces elsewhere"
         return f"{nothing} joins the two sides: no galvanic way back"
     more = f"the return walks {route.detour_mm or 0.0:.1f} mm more"
     over = ""
@@ -55,7 +63,8 @@ def _way_in_words(scene: Scene, item: Weighed) -> str:
     if not best.bridges:
         return f"{more} round the gap"
     x, y = best.bridges[0]
-    return f"{more} through plated holes from ({x:.2f}, {y:.2f}) over {best.bridge_net}{over}"
+    over = f"over {in_words(best.bridge_net)}{over}"
+    return f"{more} through plated holes from ({x:.2f}, {y:.2f}) {over}"
 
 
 def _parts_in_words(scene: Scene, item: Weighed, way: Way, over: str) -> str:
@@ -73,7 +82,7 @@ def _parts_in_words(scene: Scene, item: Weighed, way: Way, over: str) -> str:
             f"({x:.2f}, {y:.2f})" for x, y in way.bridges
         )
     if over:
-        words += f" over {way.bridge_net}{over}"
+        words += f" over {in_words(way.bridge_net)}{over}"
     x, y = item.crossing.at
     words += f", {way.parts_nh:.1f} nH as mounted"
     far = max(hypot(part.at[0] - x, part.at[1] - y) for part in way.capacitors)
