@@ -31,6 +31,7 @@ from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings, jud
 from splitcheck.planes.edges import find_edge_runs
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import Tracks, lay_all
+from splitcheck.report.tally import worst_ids
 from splitcheck.verdict.classes import Known, know
 from splitcheck.verdict.findings import InputRow, Report
 from splitcheck.verdict.judge import judge
@@ -126,11 +127,7 @@ def illustrate(walked: Walked, options: Options) -> tuple[Report, Pictures]:
 
     Proposals are looked for where they are read first: at the worst finding of the worst gaps.
     """
-    worst: dict[str, str] = {}
-    for finding in walked.report.findings:
-        if finding.waived is None and len(worst) < MENDED:
-            worst.setdefault(finding.gap, finding.id)
-    return mend(walked, worst.values()), picture(walked, options)
+    return mend(walked, worst_ids(walked.report, MENDED)), picture(walked, options)
 
 
 def mend(walked: Walked, ids: Iterable[str]) -> Report:

@@ -36,7 +36,10 @@ Findings = Annotated[
 Worst = Annotated[
     int,
     typer.Option(
-        "--worst", metavar="N", min=1, help="Mend so many of the worst; if no finding is named."
+        "--worst",
+        metavar="N",
+        min=1,
+        help="If no finding is named, mend the worst finding of the N worst gaps.",
     ),
 ]
 
@@ -70,6 +73,7 @@ def mend(
     """
     from splitcheck import road
     from splitcheck.report import mending
+    from splitcheck.report.tally import worst_ids
 
     check_min_nh(min_nh)
     wanted = targets.parse(out or (), path)
@@ -78,8 +82,7 @@ def mend(
     )
     with streams.progress_bar(quiet=quiet) as progress:
         walked = road.look(path, options, progress)
-        standing = [f.id for f in walked.report.findings if f.waived is None]
-        ids = tuple(finding or standing[:worst])
+        ids = tuple(finding or worst_ids(walked.report, worst))
         report = road.mend(walked, ids)
     render = partial(mending.render, ids=ids)
     results.show(

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from splitcheck.verdict.findings import LEVELS, Finding, Level
+from splitcheck.verdict.findings import LEVELS, Finding, Level, Report
 
 
 def standing(findings: Sequence[Finding]) -> tuple[Finding, ...]:
@@ -32,6 +32,11 @@ def over_one_gap(findings: Sequence[Finding]) -> tuple[tuple[Finding, ...], ...]
     for finding in findings:
         groups.setdefault(finding.gap or f"\0{finding.id}", []).append(finding)
     return tuple(tuple(group) for group in groups.values())
+
+
+def worst_ids(report: Report, gaps: int) -> tuple[str, ...]:
+    """Ids of the worst standing findings of so many gaps, worst first."""
+    return tuple(group[0].id for group in over_one_gap(standing(report.findings))[:gaps])
 
 
 def nets_of(findings: Sequence[Finding]) -> tuple[str, ...]:
