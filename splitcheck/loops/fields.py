@@ -22,19 +22,18 @@ from splitcheck.loops.mounted import BARREL_MM, LOWEST_MM, STRIP_MM
 from splitcheck.loops.stray import stray_db
 from splitcheck.loops.streams import Flow, flow_of, over_whole_plane
 from splitcheck.loops.ways import Route, Way, to_point
+from splitcheck.loops.windows import (
+    ALONG_MM,
+    along_rim,
+    clipped,
+    cut_ends,
+    span_mm,
+    windows_of,
+)
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Gap, Plane, box_size_mm
 from splitcheck.units import Floats
 
-#: The window of a solve reaches this much beyond the ways round the gap: in mm and as a share.
-BEYOND_MM = 2.0
-BEYOND_SHARE = 0.3
-#: A gap with a way round on one side only is kept on the other out to this many times the size of
-#: that way: if it leads outside, for flux may leave where it is cut off; with another plane, which
-#: keeps the flux near; and else, if that is not too ragged.
-OPEN_SIDE = 2.0
-OPEN_SIDE_SHUT = 8.0
-FAR_SIDE = 30.0
 #: Crossings of one gap this near to one another are solved together, mm; and those no further
 #: apart than so many of their detours, as they couple (by 0.3 of the lesser value at one of them,
 #: K_10 of tests/loops/reference_coupling.csv), out to where one mesh can hardly serve both, mm ...
@@ -50,7 +49,7 @@ MOST_NEIGHBOURS = 12
 #: A solve whose panels would have to be made coarser than this is worth less than a closed form.
 MOST_COARSER = 3.0
 #: Gaps with more corners than this in the window are not solved: the mesh would be too coarse.
-MOST_CORNERS = 4000
+MOST_CORNERS = 5000
 #: Gaps smaller than the height do not matter unless this many heights near, or crossed.
 NEAR_HEIGHTS = 2.0
 #: So many of the nearest vias on either side of a gap are bridges, besides that of the way.
@@ -118,6 +117,28 @@ def can_solve(task: Task) -> bool:
 def _is_straight(way: Way) -> bool:
     """Whether a way goes over one part from the one island to the other."""
     return len(way.capacitors) == 1 and not way.bridges
+
+
+def _stays(way: Way) -> bool:
+    """Whether a way stays on the plane."""
+    return not way.bridges and not way.capacitors
+
+
+def _is_seen(task: Task, way: Way) -> bool:
+    """Whether the solve knows what a way goes over.
+
+    That is the plane itself, a part straight over the gap, two vias or parts to the plane beyond,
+    or two vias to copper on the trace's side that is not the plane there.
+    """
+    if _stays(way) or _is_straight(way):
+        return True
+    if len(way.bridges) + len(way.capacitors) != 2:
+        return False
+    if way.bridge_layer == task.beyond:
+        return True
+    crossing = task.crossing
+    on_side = (way.bridge_layer > crossing.plane) == (crossing.layer > crossing.plane)
+    return on_side and not way.capacitors and way.bridge_layer != task.other
 
 
 def _as_strap(task: Task, part: PartBridge) -> bool:
@@ -208,11 +229,13 @@ class Fields:
         traces = [_trace(task, plane.gaps[first.gap].shape) for task in tasks]
         bridges = self._bridges(tasks)
         solution = self._solution(tasks, traces, bridges)
-        if solution is None:
-            nearer = _near_one_another(tasks, 0.0)
-            if len(nearer) < 2:
-                return {}
+        nearer = [] if solution is not None else _near_one_another(tasks, 0.0)
+        if len(nearer) > 1:
             return {number: field for part in nearer for number, field in self.solve(part).items()}
+        if solution is None:
+            solution = self._solution(tasks, traces, bridges, narrow=True)
+        if solution is None:
+            return {}
         return {
             task.number: Field(
                 Inductance(
@@ -246,6 +269,8 @@ class Fields:
         bridges = self._bridges([task])
         solution = self._solution([task], traces, bridges)
         if solution is None:
+            solution = self._solution([task], traces, bridges, narrow=True)
+        if solution is None:
             return None
         return flow_of(
             solution,
@@ -269,19 +294,21 @@ class Fields:
         tasks: Sequence[Task],
         traces: Sequence[engine.TraceOver],
         bridges: Sequence[engine.ViaBridge | engine.Strap],
+        *,
+        narrow: bool = False,
     ) -> engine.Solution | None:
-        """One solve; None if the gaps are too ragged for it."""
+        """One solve, looking no further than it must if `narrow`; None if gaps are too ragged."""
         plane = self.planes[tasks[0].crossing.plane]
         crossed = plane.gaps[tasks[0].crossing.gap]
         lines = [trace.line for trace in traces]
         cut = any(_parts_islands(task) for task in tasks)
         standing = bridges if cut else ()
-        window = _window(tasks, crossed, standing)
-        gaps, ends = self._gaps(tasks, window, lines, loose=crossed.open)
-        if not crossed.open and _too_ragged(gaps):
-            # flux that such a gap lets through nearby finds ample room in the rest of it
-            window = _window(tasks, crossed, standing, OPEN_SIDE_SHUT)
-            gaps, ends = self._gaps(tasks, window, lines, loose=True)
+        windows = _windows(tasks, crossed, standing, narrow=narrow)
+        if windows is None:
+            return None
+        window, inner = windows
+        # flux that a ragged gap lets through nearby finds ample room in the rest of it
+        gaps, ends = self._gaps(tasks, window, lines, loose=crossed.open or narrow)
         if _too_ragged(gaps):
             return None
         if cut:
@@ -300,6 +327,7 @@ class Fields:
                 ends=ends,
                 disjoint=True,
                 coarsest=MOST_COARSER,
+                inner=None if window.contains(crossed.shape) else inner,
             )
         except SplitcheckError:
             return None
@@ -334,14 +362,17 @@ class Fields:
         gaps: list[Polygon] = []
         ends: list[shapely.Point] = []
         for gap in (crossed, *chosen):
-            clipped = _clipped(gap.shape, window)
-            if _too_ragged(_polygons(clipped)):
+            inside = clipped(gap.shape, window)
+            if _too_ragged(_polygons(inside)):
                 # foreign copper in it only adds corners; taking it out would be in vain
-                return _polygons(clipped), []
-            pieces = _polygons(shapely.difference(clipped, foreign))
+                return _polygons(inside), []
+            free = shapely.difference(inside, foreign)
+            pieces = _polygons(free)
+            if gap is not crossed and _too_ragged([*gaps, *pieces]):
+                break
             gaps.extend(pieces)
             if loose if gap is crossed else gap.open:
-                ends.extend(end for piece in pieces if (end := _end(piece, window)) is not None)
+                ends.extend(cut_ends(pieces, window))
         return gaps, ends
 
     def _foreign_copper(self, plane: Plane, window: Polygon) -> shapely.Geometry:
@@ -369,19 +400,13 @@ class Fields:
         straps: dict[tuple[Point, ...], engine.Strap] = {}
         for task in tasks:
             for way in (task.route.left, task.route.right):
-                if way is None or len(way.bridges) + len(way.capacitors) > 2:
+                if way is None or not _is_seen(task, way) or _stays(way):
                     continue
                 if _is_straight(way):
                     straps.update(self._straight_straps(task))
-                elif len(way.bridges) + len(way.capacitors) < 2:
-                    continue
                 elif way.bridge_layer == task.beyond:
                     vias.update(self._vias_like(task, way))
-                elif way.capacitors:
-                    continue
-                elif way.bridge_layer != task.other and (
-                    (way.bridge_layer > crossing.plane) == (crossing.layer > crossing.plane)
-                ):
+                else:
                     straps[way.bridges] = self._strap(crossing, way.bridges, way.bridge_layer)
         return [
             *(strap for _, strap in sorted(straps.items())),
@@ -507,55 +532,53 @@ def _outside(plane: Plane, window: Polygon, *, cut: bool) -> Polygon | None:
         return window if cut else None
     frame: Polygon = shapely.box(*plane.gaps[0].shape.bounds)
     if cut:
-        return shapely.box(
-            *np.maximum(frame.bounds, window.bounds)[:2],
-            *np.minimum(frame.bounds, window.bounds)[2:],
-        )
+        inside = shapely.intersection(frame, window)
+        return inside if isinstance(inside, Polygon) else window
     return None if frame.contains_properly(window) else frame
-
-
-def _end(piece: Polygon, window: Polygon) -> shapely.Point | None:
-    """Where a window cuts off a gap: the middle of the longest cut."""
-    along = shapely.get_parts(shapely.line_merge(shapely.intersection(piece, window.exterior)))
-    cuts = along[shapely.get_type_id(along) == shapely.GeometryType.LINESTRING]
-    if not len(cuts):
-        return None
-    longest: LineString = cuts[int(np.argmax(shapely.length(cuts).round(6)))]
-    return longest.interpolate(0.5, normalized=True)
 
 
 def _too_ragged(gaps: Sequence[Polygon]) -> bool:
     return sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS
 
 
-def _window(
+def _windows(
     tasks: Sequence[Task],
     gap: Gap,
     bridges: Sequence[engine.ViaBridge | engine.Strap],
-    far_side: float = FAR_SIDE,
-) -> Polygon:
-    """A box round the crossings, their ways round and some bridges, with room to spare.
+    *,
+    narrow: bool,
+) -> tuple[Polygon, Polygon] | None:
+    """How far a solve looks: at the crossings, some bridges, and the ways round that it sees.
 
-    Where there is no way round on one side, the gap is kept out to some times the length of the
-    way on the other, or to its end.
+    In place of a way that it does not see it takes that along the rim, if it is not too long.
+    None if a crossing has neither: a window would close the gap where nothing does.
     """
     points = [point for task in tasks for point in task.crossing.path]
-    ways = [way for task in tasks for way in (task.route.left, task.route.right)]
-    points.extend(point for way in ways if way is not None for point in way.path)
     points.extend(to_point(at) for bridge in bridges for at in _feet(bridge))
-    x0, y0 = np.min(points, axis=0)
-    x1, y1 = np.max(points, axis=0)
-    size = max(x1 - x0, y1 - y0)
-    room = BEYOND_MM + BEYOND_SHARE * size + 5 * tasks[0].height_mm
-    box = shapely.box(x0 - room, y0 - room, x1 + room, y1 + room)
-    if None in ways:
-        shut = tasks[0].beyond is not None or tasks[0].other is not None
-        times = OPEN_SIDE_SHUT if shut else OPEN_SIDE if gap.open else far_side
-        far = shapely.box(*box.bounds).buffer(times * size, join_style="mitre")
-        whole = shapely.box(*gap.shape.bounds).buffer(BEYOND_MM, join_style="mitre")
-        box = box.union(far.intersection(whole)).envelope
-    window: Polygon = box
-    return window
+    one_sided = False
+    for task in tasks:
+        found = [way for way in (task.route.left, task.route.right) if way is not None]
+        seen = [way for way in found if _is_seen(task, way)]
+        points.extend(point for way in seen for point in way.path)
+        # flux goes on beyond a bridge as long as the gap does, for no bridge is a short circuit
+        held = seen if _parts_islands(task) or narrow else [way for way in seen if _stays(way)]
+        all_held = len(held) == len(found)
+        along = [] if narrow or all_held else _along_rim(task, gap)
+        points.extend((x, y) for way in along for x, y in way.coords)
+        if not seen and not along:
+            return None
+        one_sided |= len(found) < 2 or not (all_held or len(along) == 2)
+    shut = tasks[0].beyond is not None or tasks[0].other is not None
+    return windows_of(
+        points, gap, tasks[0].height_mm, one_sided=one_sided, shut=shut, narrow=narrow
+    )
+
+
+def _along_rim(task: Task, gap: Gap) -> list[LineString]:
+    """The ways along the rim of a gap that are not too long."""
+    path = task.crossing.path
+    ways = along_rim(gap.shape, path[0], path[-1])
+    return [way for way in ways if span_mm(way) <= ALONG_MM]
 
 
 def _trace(task: Task, gap: Polygon) -> engine.TraceOver:
@@ -612,13 +635,6 @@ def _beyond_rim_mm(crossing: Crossing, ends: Sequence[Point]) -> float:
     line = LineString(ends)
     rims = (line.project(shapely.Point(rim)) for rim in (crossing.path[0], crossing.path[-1]))
     return float(line.length - max(rims))
-
-
-def _clipped(shape: Polygon, window: Polygon) -> shapely.Geometry:
-    if window.contains(shapely.box(*shape.bounds)):
-        return shape
-    clipped = shapely.clip_by_rect(shape, *window.bounds)
-    return clipped if clipped.is_valid else shapely.make_valid(clipped)
 
 
 def _polygons(shape: shapely.Geometry) -> list[Polygon]:

@@ -15,7 +15,7 @@ from hypothesis import strategies as st
 from splitcheck.board.board import Board
 from splitcheck.copper.marks import Point
 from splitcheck.errors import SplitcheckError
-from splitcheck.loops import fields
+from splitcheck.loops import windows
 from splitcheck.loops.bridges import (
     IslandGraph,
     all_parts,
@@ -264,7 +264,7 @@ def test_value_does_not_hang_on_the_window(monkeypatch: pytest.MonkeyPatch) -> N
     ]
     graph = _with(islands_joined(made), *four)
     near = _one(made, graph)
-    monkeypatch.setattr(fields, "BEYOND_MM", 15.0)
+    monkeypatch.setattr(windows, "BEYOND_MM", 15.0)
     far = _one(made, graph)
     assert near.method == far.method == "solved"
     assert near.added_nh == pytest.approx(far.added_nh, rel=0.03)

@@ -1,0 +1,172 @@
+"""Crossings, ways that a solve sees and a gap in, how far the solve looks out: its window.
+
+A window is a convex region round points of the board, so that it turns with the board. What the
+solve does not see, such as a way over a plane that it does not know, has no part in it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+
+import numpy as np
+import shapely
+from shapely import LinearRing, LineString, MultiPoint, Point, Polygon
+from shapely.ops import substring
+
+from splitcheck.copper import marks
+from splitcheck.planes.islands import Gap
+
+#: A window reaches this much beyond the ways round the gap: in mm, as a share of their size, and
+#: in heights of the trace.
+BEYOND_MM = 3.0
+BEYOND_SHARE = 0.5
+BEYOND_HEIGHTS = 5.0
+#: A gap with a way round on one side only is kept on the other out to this many times the size of
+#: that way: if it leads outside, for flux may leave where it is cut off; with another plane, which
+#: keeps the flux near; and else, if that is not too ragged.
+OPEN_SIDE = 2.0
+OPEN_SIDE_SHUT = 8.0
+FAR_SIDE = 30.0
+#: ... and out to this at least, mm: a trace over the very end of a gap has a short way there.
+FAR_LEAST_MM = 10.0
+#: A closed gap is taken whole if it is no longer than this, mm, with no more corners than that.
+WHOLE_MM = 30.0
+WHOLE_CORNERS = 1000
+#: The way along the rim on a side without a way that the solve sees is followed if it spans no
+#: more than this, mm.
+ALONG_MM = 60.0
+#: Corners of a quarter of the round ends of windows: more would only cost.
+_ROUND = 4
+#: What counts as on the rim of a gap, mm.
+_ON_RIM_MM = 1e-3
+
+
+def span_mm(shape: shapely.Geometry) -> float:
+    """Diameter of the smallest circle round a shape, mm: the same however it is turned.
+
+    Examples
+    --------
+    >>> span_mm(shapely.box(0, 0, 3, 4))
+    5.0
+    """
+    return float(2 * shapely.minimum_bounding_radius(shape))
+
+
+def windows_of(
+    points: Sequence[marks.Point],
+    gap: Gap,
+    height_mm: float,
+    *,
+    one_sided: bool,
+    shut: bool,
+    narrow: bool = False,
+) -> tuple[Polygon, Polygon]:
+    """The region round the crossings, their ways round and some bridges, with room to spare.
+
+    Parameters
+    ----------
+    points
+        Points of all that must be in it, mm.
+    gap
+        The crossed gap.
+    height_mm
+        Height of the traces over the plane.
+    one_sided
+        Whether there is a side without a way round: there the gap is kept out to some times the
+        size of the points, or to its end.
+    shut
+        Whether another plane keeps the flux near.
+    narrow
+        The gap is too ragged for all that room.
+
+    Returns
+    -------
+    A convex polygon, and one that goes half as far beyond the points.
+    """
+    hull = MultiPoint(points).convex_hull
+    size = span_mm(hull)
+    room = BEYOND_MM + BEYOND_SHARE * size + BEYOND_HEIGHTS * height_mm
+    parts: list[shapely.Geometry] = [_round(hull, room)]
+    inner: list[shapely.Geometry] = [_round(hull, room / 2)]
+    whole = _round(gap.shape.convex_hull, BEYOND_MM)
+    if _is_moderate(gap):
+        parts.append(whole)
+    elif one_sided:
+        times = OPEN_SIDE if gap.open and not shut else FAR_SIDE
+        times = min(times, OPEN_SIDE_SHUT) if shut or narrow else times
+        far = room + max(times * size, 0.0 if narrow else FAR_LEAST_MM)
+        parts.append(shapely.intersection(_round(hull, far), whole))
+        inner.append(shapely.intersection(_round(hull, far / 2), whole))
+    return _together(parts), _together(inner)
+
+
+def along_rim(gap: Polygon, start: marks.Point, stop: marks.Point) -> Iterator[LineString]:
+    """Both ways along the rim of a gap from one place on it to another.
+
+    The way round in the copper, drawn taut, lies within the hull of the rim that it goes along.
+    There is none between places on different rims.
+
+    Examples
+    --------
+    >>> slot = shapely.box(0, 0, 1, 10)
+    >>> sorted(line.length for line in along_rim(slot, (0, 2), (1, 2)))
+    [5.0, 17.0]
+    """
+    ends = [Point(start), Point(stop)]
+    for ring in (gap.exterior, *gap.interiors):
+        if all(shapely.dwithin(ring, end, _ON_RIM_MM) for end in ends):
+            yield from _both_ways(ring, *sorted(ring.project(end) for end in ends))
+            return
+
+
+def _both_ways(ring: LinearRing, first_mm: float, last_mm: float) -> Iterator[LineString]:
+    line = LineString(ring.coords)
+    yield LineString(substring(line, first_mm, last_mm).coords)
+    rest = [substring(line, last_mm, line.length), substring(line, 0.0, first_mm)]
+    yield LineString([point for part in rest for point in part.coords])
+
+
+def cut_ends(pieces: Sequence[Polygon], window: Polygon) -> list[Point]:
+    """Where a window cuts off pieces of a gap: the middle of the longest cut through each."""
+    ends = (_longest_cut(piece, window) for piece in pieces)
+    return [end for end in ends if end is not None]
+
+
+def _longest_cut(piece: Polygon, window: Polygon) -> Point | None:
+    if window.contains_properly(piece):
+        return None
+    # a hair inside, for what lies on a slanting rim is rounded off it
+    rim = shapely.buffer(window, -_ON_RIM_MM, join_style="mitre").exterior
+    along = shapely.get_parts(shapely.line_merge(shapely.intersection(piece, rim)))
+    cuts = along[shapely.get_type_id(along) == shapely.GeometryType.LINESTRING]
+    if not len(cuts):
+        return None
+    longest: LineString = cuts[int(np.argmax(shapely.length(cuts).round(6)))]
+    return longest.interpolate(0.5, normalized=True)
+
+
+def clipped(shape: Polygon, window: Polygon) -> shapely.Geometry:
+    """What of a gap is in a window."""
+    if window.contains(shapely.box(*shape.bounds)):
+        return shape
+    # by far faster than an intersection where the gap is intricate
+    near = shapely.clip_by_rect(shape, *window.bounds)
+    near = near if near.is_valid else shapely.make_valid(near)
+    return near if window.contains(near) else shapely.intersection(near, window)
+
+
+def _is_moderate(gap: Gap) -> bool:
+    """Whether a gap is taken whole, however little of it the ways round need."""
+    if gap.open or int(shapely.get_num_coordinates(gap.shape)) > WHOLE_CORNERS:
+        return False
+    return span_mm(gap.shape) <= WHOLE_MM
+
+
+def _round(shape: shapely.Geometry, room_mm: float) -> Polygon:
+    return shapely.buffer(shape, room_mm, quad_segs=_ROUND)
+
+
+def _together(shapes: Sequence[shapely.Geometry]) -> Polygon:
+    hull = shapely.union_all(shapes).convex_hull
+    assert isinstance(hull, Polygon)
+    return hull
