@@ -24,6 +24,7 @@ from splitcheck.loops.streams import Flow, flow_of, over_whole_plane
 from splitcheck.loops.ways import Route, Way, to_point
 from splitcheck.loops.windows import (
     ALONG_MM,
+    Windows,
     along_rim,
     clipped,
     cut_ends,
@@ -306,9 +307,9 @@ class Fields:
         windows = _windows(tasks, crossed, standing, narrow=narrow)
         if windows is None:
             return None
-        window, inner = windows
+        window = windows.outer
         # flux that a ragged gap lets through nearby finds ample room in the rest of it
-        gaps, ends = self._gaps(tasks, window, lines, loose=crossed.open or narrow)
+        gaps, ends = self._gaps(tasks, windows, lines, loose=crossed.open or narrow)
         if _too_ragged(gaps):
             return None
         if cut:
@@ -327,7 +328,7 @@ class Fields:
                 ends=ends,
                 disjoint=True,
                 coarsest=MOST_COARSER,
-                inner=None if window.contains(crossed.shape) else inner,
+                inner=None if window.contains(crossed.shape) else windows.half,
             )
         except SplitcheckError:
             return None
@@ -336,21 +337,28 @@ class Fields:
         return None if other is None else self.board.stack.height_mm(plane, other)
 
     def _gaps(
-        self, tasks: Sequence[Task], window: Polygon, lines: Sequence[LineString], *, loose: bool
+        self,
+        tasks: Sequence[Task],
+        windows: Windows,
+        lines: Sequence[LineString],
+        *,
+        loose: bool,
     ) -> tuple[list[Polygon], list[shapely.Point]]:
         """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out.
 
         Returned with the places where the window cuts off what leads to the outside; the crossed
         gap does if it is `loose`.
         """
+        window = windows.outer
+        shapely.prepare(windows.beside)
         plane = self.planes[tasks[0].crossing.plane]
         across = shapely.union_all(lines)
         height = tasks[0].height_mm
         crossed = plane.gaps[tasks[0].crossing.gap]
         beside = []
-        for number in sorted(plane.gap_boxes.intersection(window.bounds)):
+        for number in sorted(plane.gap_boxes.intersection(windows.beside.bounds)):
             shape = plane.gaps[number].shape
-            if shape is crossed.shape:
+            if shape is crossed.shape or not windows.beside.intersects(shape):
                 continue
             apart = shape.distance(across)
             small = box_size_mm(shape) < height
@@ -547,7 +555,7 @@ def _windows(
     bridges: Sequence[engine.ViaBridge | engine.Strap],
     *,
     narrow: bool,
-) -> tuple[Polygon, Polygon] | None:
+) -> Windows | None:
     """How far a solve looks: at the crossings, some bridges, and the ways round that it sees.
 
     In place of a way that it does not see it takes that along the rim, if it is not too long.
@@ -564,7 +572,8 @@ def _windows(
         held = seen if _parts_islands(task) or narrow else [way for way in seen if _stays(way)]
         all_held = len(held) == len(found)
         along = [] if narrow or all_held else _along_rim(task, gap)
-        points.extend((x, y) for way in along for x, y in way.coords)
+        hulls = (shapely.get_coordinates(way.convex_hull) for way in along)
+        points.extend(to_point(at) for hull in hulls for at in hull)
         if not seen and not along:
             return None
         one_sided |= len(found) < 2 or not (all_held or len(along) == 2)

@@ -7,11 +7,11 @@ solve does not see, such as a way over a plane that it does not know, has no par
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
+from typing import NamedTuple
 
 import numpy as np
 import shapely
 from shapely import LinearRing, LineString, MultiPoint, Point, Polygon
-from shapely.ops import substring
 
 from splitcheck.copper import marks
 from splitcheck.planes.islands import Gap
@@ -21,6 +21,9 @@ from splitcheck.planes.islands import Gap
 BEYOND_MM = 3.0
 BEYOND_SHARE = 0.5
 BEYOND_HEIGHTS = 5.0
+#: Neighbours of the gap are taken out to this beyond the ways round, in the same measures.
+BESIDE_MM = 2.0
+BESIDE_SHARE = 0.3
 #: A gap with a way round on one side only is kept on the other out to this many times the size of
 #: that way: if it leads outside, for flux may leave where it is cut off; with another plane, which
 #: keeps the flux near; and else, if that is not too ragged.
@@ -39,6 +42,18 @@ ALONG_MM = 60.0
 _ROUND = 4
 #: What counts as on the rim of a gap, mm.
 _ON_RIM_MM = 1e-3
+
+
+class Windows(NamedTuple):
+    """How far a solve looks; all convex."""
+
+    outer: Polygon
+    """What gaps are cut off at."""
+    half: Polygon
+    """Half as far beyond the ways round."""
+    beside: Polygon
+    """Where gaps that are not crossed count: what those add that lie beside the trace further
+    along is not owed to this crossing."""
 
 
 def span_mm(shape: shapely.Geometry) -> float:
@@ -60,8 +75,8 @@ def windows_of(
     one_sided: bool,
     shut: bool,
     narrow: bool = False,
-) -> tuple[Polygon, Polygon]:
-    """The region round the crossings, their ways round and some bridges, with room to spare.
+) -> Windows:
+    """The regions round the crossings, their ways round and some bridges, with room to spare.
 
     Parameters
     ----------
@@ -81,13 +96,14 @@ def windows_of(
 
     Returns
     -------
-    A convex polygon, and one that goes half as far beyond the points.
+    The windows.
     """
     hull = MultiPoint(points).convex_hull
     size = span_mm(hull)
     room = BEYOND_MM + BEYOND_SHARE * size + BEYOND_HEIGHTS * height_mm
+    beside = BESIDE_MM + BESIDE_SHARE * size + BEYOND_HEIGHTS * height_mm
     parts: list[shapely.Geometry] = [_round(hull, room)]
-    inner: list[shapely.Geometry] = [_round(hull, room / 2)]
+    half: list[shapely.Geometry] = [_round(hull, room / 2)]
     whole = _round(gap.shape.convex_hull, BEYOND_MM)
     if _is_moderate(gap):
         parts.append(whole)
@@ -96,8 +112,8 @@ def windows_of(
         times = min(times, OPEN_SIDE_SHUT) if shut or narrow else times
         far = room + max(times * size, 0.0 if narrow else FAR_LEAST_MM)
         parts.append(shapely.intersection(_round(hull, far), whole))
-        inner.append(shapely.intersection(_round(hull, far / 2), whole))
-    return _together(parts), _together(inner)
+        half.append(shapely.intersection(_round(hull, far / 2), whole))
+    return Windows(_together(parts), _together(half), _round(hull, beside))
 
 
 def along_rim(gap: Polygon, start: marks.Point, stop: marks.Point) -> Iterator[LineString]:
@@ -120,10 +136,14 @@ def along_rim(gap: Polygon, start: marks.Point, stop: marks.Point) -> Iterator[L
 
 
 def _both_ways(ring: LinearRing, first_mm: float, last_mm: float) -> Iterator[LineString]:
-    line = LineString(ring.coords)
-    yield LineString(substring(line, first_mm, last_mm).coords)
-    rest = [substring(line, last_mm, line.length), substring(line, 0.0, first_mm)]
-    yield LineString([point for part in rest for point in part.coords])
+    corners = shapely.get_coordinates(ring)
+    far = np.cumsum(np.hypot(*np.diff(corners, axis=0, prepend=corners[:1]).T))
+    places = (ring.interpolate(along_mm) for along_mm in (first_mm, last_mm))
+    first, last = (shapely.get_coordinates(place) for place in places)
+    before, beyond = far < first_mm, far > last_mm
+    between = ~before & ~beyond
+    yield LineString(np.concatenate([first, corners[between], last]))
+    yield LineString(np.concatenate([last, corners[beyond], corners[before], first]))
 
 
 def cut_ends(pieces: Sequence[Polygon], window: Polygon) -> list[Point]:
@@ -133,11 +153,12 @@ def cut_ends(pieces: Sequence[Polygon], window: Polygon) -> list[Point]:
 
 
 def _longest_cut(piece: Polygon, window: Polygon) -> Point | None:
-    if window.contains_properly(piece):
-        return None
     # a hair inside, for what lies on a slanting rim is rounded off it
-    rim = shapely.buffer(window, -_ON_RIM_MM, join_style="mitre").exterior
-    along = shapely.get_parts(shapely.line_merge(shapely.intersection(piece, rim)))
+    within = shapely.buffer(window, -_ON_RIM_MM, join_style="mitre")
+    if within.contains(piece):
+        return None
+    rim = shapely.intersection(piece, within.exterior)
+    along = shapely.get_parts(shapely.line_merge(rim))
     cuts = along[shapely.get_type_id(along) == shapely.GeometryType.LINESTRING]
     if not len(cuts):
         return None
