@@ -24,6 +24,7 @@ from splitcheck.board.pairs import Pair, find_pairs
 from splitcheck.board.stack import read_stack_file
 from splitcheck.copper.intake import Export, open_export
 from splitcheck.errors import SplitcheckError
+from splitcheck.loops.beside import find_beside
 from splitcheck.loops.bridges import IslandGraph, all_parts, join_islands
 from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.changes import find_changes
@@ -32,6 +33,7 @@ from splitcheck.planes.edges import find_edge_runs
 from splitcheck.planes.islands import Plane, find_planes, reference_nets
 from splitcheck.planes.tracks import Tracks, lay_all
 from splitcheck.report.tally import worst_ids
+from splitcheck.verdict.beside import LEAST_BESIDE_NH
 from splitcheck.verdict.classes import Known, know
 from splitcheck.verdict.findings import InputRow, Report
 from splitcheck.verdict.judge import judge
@@ -176,6 +178,7 @@ def _walk(path: Path, options: Options, progress: Progress | None, *, judging: b
     if judging:
         with clock.stage("crossings"):
             crossings, bare = cross(tracks, planes, Spread(options.jobs, few=2))
+            crossings += pass_by(tracks, planes, scene, Spread(options.jobs, few=2))
             changes = find_changes(assembled.board, planes, tracks)
             near = (scene.rules.edge_heights, scene.rules.edge_mm)
             edges = find_edge_runs(assembled.board, planes, tracks, *near)
@@ -327,6 +330,26 @@ def _cross_layer(
     tracks: Sequence[Tracks], planes: Sequence[Plane], number: int
 ) -> tuple[tuple[Crossing, ...], tuple[BareTrace, ...]]:
     return find_crossings(tracks[number], planes)
+
+
+def pass_by(
+    tracks: Sequence[Tracks], planes: Sequence[Plane], scene: Scene, spread: Spread
+) -> tuple[Crossing, ...]:
+    """Find the gaps that traces pass by, layer by layer."""
+    least = max(scene.min_nh, LEAST_BESIDE_NH)
+    height = scene.board.stack.height_mm
+    found = list(spread(partial(_pass_by_layer, tracks, planes, height, least), range(len(tracks))))
+    return tuple(place for places in found for place in places)
+
+
+def _pass_by_layer(
+    tracks: Sequence[Tracks],
+    planes: Sequence[Plane],
+    height_mm: Callable[[int, int], float],
+    least_nh: float,
+    number: int,
+) -> tuple[Crossing, ...]:
+    return find_beside(tracks[number], planes, height_mm, least_nh)
 
 
 def know_rules(path: Path, board: Board, options: Options) -> Known:

@@ -86,6 +86,38 @@ def beside_edge_nh_mm(inside_mm: float, height_mm: float) -> float:
     return MU0 / (2.0 * pi) * log(2.0 * sqrt(rho * less / 2.0) / height_mm)
 
 
+def beside_void_nh(edge_nh: float, aside_mm: float, deep_mm: float, height_mm: float) -> float:
+    """What a closed gap beside a trace adds, nH.
+
+    Parameters
+    ----------
+    edge_nh
+        What the rim along the trace would add were it the edge of the plane: the sum of
+        ``beside_edge_nh_mm`` along it, nH.
+    aside_mm
+        Distance of the rim from the centre line, mm, >= 0.
+    deep_mm
+        How far the gap reaches away from the trace, mm, > 0.
+    height_mm
+        Height of the trace, mm, > 0.
+
+    Notes
+    -----
+    (E + 0.31 h (B/h)^0.47 e) / (1 + 3.4 (h/B)^1.7), e the edge's nH/mm at the nearest place: a deep
+    gap is an edge, its corners let through some more, and a shallow one fades. Fitted to 36 runs of
+    this package's own field solve (rectangles of 0.3 to 8 by 1 to 8 heights, 0.1 to 1 h off): 8 %
+    low to 69 % high, the latter where little is added; not a law.
+
+    Examples
+    --------
+    >>> round(beside_void_nh(8.0 * beside_edge_nh_mm(0.5, 1.0), 0.5, 8.0, 1.0), 3)
+    0.26
+    """
+    corners = 0.31 * height_mm * (deep_mm / height_mm) ** 0.47
+    whole = edge_nh + corners * beside_edge_nh_mm(aside_mm, height_mm)
+    return float(whole / (1.0 + 3.4 * (height_mm / deep_mm) ** 1.7))
+
+
 def shielding(beyond_mm: float | None, gap_mm: float, reach_mm: float, height_mm: float) -> float:
     """Share of a gap's inductance that is left with a whole plane beyond it at some distance.
 

@@ -152,12 +152,15 @@ def _as_strap(task: Task, part: PartBridge) -> bool:
 def cluster(tasks: Sequence[Task]) -> tuple[tuple[Task, ...], ...]:
     """Put together crossings that one solve serves.
 
-    They are over one gap, from one layer, under the same planes, and near one another.
+    They are over one gap, from one layer, under the same planes, and near one another. A trace that
+    only passes by a gap is solved by itself: what it crosses nearby is not to be left out of the
+    others.
     """
     groups: dict[tuple[object, ...], list[Task]] = defaultdict(list)
     for task in tasks:
         c = task.crossing
-        groups[c.plane, c.gap, c.layer, task.beyond or 0, task.other or 0].append(task)
+        alone = task.number + 1 if c.aside_mm else 0
+        groups[c.plane, c.gap, c.layer, task.beyond or 0, task.other or 0, alone].append(task)
     clusters: list[tuple[Task, ...]] = []
     for _, members in sorted(groups.items()):
         clusters.extend(_near_one_another(members))

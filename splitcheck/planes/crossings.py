@@ -56,9 +56,13 @@ class Crossing:
     islands: tuple[int, int]
     """Indexes of the islands where the run starts and ends."""
     run_mm: float
+    """Length of the run over the gap, mm; 0 where the gap lies beside the trace."""
     width_mm: float
     line: int
     """Line in the Gerber file of the trace's layer."""
+    aside_mm: float = 0.0
+    """How far beside the centre line the gap lies, mm; 0 where the trace runs over it. The path is
+    then the stretch of trace that passes by, over copper."""
 
     @property
     def at(self) -> Point:
@@ -171,6 +175,23 @@ def find_crossings(
     ]
     traces = tuple(_bare_trace(tracks, group) for group in _groups(tracks, bare_everywhere))
     return tuple(crossings), (*traces, *_over_farther(leaving, traces))
+
+
+def runs_through(tracks: Tracks, plane: Plane, zones: Uncovered) -> tuple[Crossing, ...]:
+    """Runs of traces through zones of a plane, from copper outside them to copper outside them.
+
+    Parameters
+    ----------
+    tracks
+        The traces of one layer.
+    plane
+        The plane.
+    zones
+        Stretches of the traces by piece; stretches of one number that meet are one run.
+    """
+    everywhere = {piece: [(0.0, 1.0)] for piece in range(len(tracks.net))}
+    found = _crossings_over(tracks, plane, zones, everywhere)
+    return tuple(crossing for crossing, _, _ in found if crossing is not None)
 
 
 def _both(still: dict[int, list[Span]], bare: Uncovered) -> dict[int, list[Span]]:

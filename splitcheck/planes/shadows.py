@@ -59,7 +59,7 @@ def uncovered(tracks: Tracks, plane: Plane, pieces: Sequence[int]) -> Uncovered:
     found: dict[int, dict[int, list[Span]]] = defaultdict(lambda: defaultdict(list))
     for hit, tile, overlap in zip(hits.tolist(), tiles.tolist(), overlaps, strict=True):
         piece = int(which[hit])
-        for start, stop in _spans(tracks, piece, overlap):
+        for start, stop in spans_of(tracks, piece, overlap):
             found[piece][plane.tiles[tile].gap].append((start, stop))
     result: Uncovered = {}
     for piece, by_gap in sorted(found.items()):
@@ -75,7 +75,8 @@ def uncovered(tracks: Tracks, plane: Plane, pieces: Sequence[int]) -> Uncovered:
     return result
 
 
-def _spans(tracks: Tracks, piece: int, overlap: shapely.Geometry) -> list[Span]:
+def spans_of(tracks: Tracks, piece: int, overlap: shapely.Geometry) -> list[Span]:
+    """Where along a piece, in fractions of it, its common part with some shape lies."""
     (x0, y0), (x1, y1) = tracks.start[piece], tracks.end[piece]
     dx, dy = x1 - x0, y1 - y0
     square = dx * dx + dy * dy

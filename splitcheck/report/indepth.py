@@ -81,7 +81,9 @@ def of_finding(
 def _numbers(finding: Finding) -> list[str]:
     """Every number of a finding with its unit and error."""
     told = [f"{number(finding.gap_mm)} mm of the trace have no plane"]
-    if finding.detour_mm is None:
+    if finding.kind == "void-crossing" and not finding.gap_mm:
+        told = ["the gap lies beside the trace, not under its centre line"]
+    elif finding.detour_mm is None:
         told.append("no way back was found for the return")
     else:
         told.append(f"the return walks {number(finding.detour_mm)} mm more")

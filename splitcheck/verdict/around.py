@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import shapely
+from shapely import Polygon
 
 from splitcheck.loops import estimate
 from splitcheck.loops.bridges import stitched_near
@@ -53,7 +54,7 @@ def exempt(scene: Scene, crossing: Crossing) -> str | None:
         return f"crossings of lines wider than {SUPPLY_RATIO:g} times their height (supply lines)"
     if not gap.open and _own_antipad(scene, crossing, gap):
         return "antipads at a net's own holes"
-    if not gap.open and _ceiling_nh(scene, crossing, gap) < scene.min_nh:
+    if not (gap.open or crossing.aside_mm) and _ceiling_nh(scene, crossing, gap) < scene.min_nh:
         return f"crossings that add less than {scene.min_nh:g} nH"
     if _is_hidden(scene, crossing):
         return "crossings of farther planes inside a gap of a nearer one"
@@ -215,6 +216,8 @@ def _places_in_gap(
 ) -> tuple[np.ndarray[tuple[int], np.dtype[np.float64]], ...]:
     """The run itself and places of the gap to its left and right, as far as it matters."""
     gap = scene.planes[crossing.plane].gaps[crossing.gap].shape
+    if crossing.aside_mm:
+        return _places_beside(crossing, gap)
     dx = crossing.after[0] - crossing.before[0]
     dy = crossing.after[1] - crossing.before[1]
     length = float(np.hypot(dx, dy)) or 1.0
@@ -225,3 +228,14 @@ def _places_in_gap(
     if not inside.any():
         return np.array([crossing.at[0]]), np.array([crossing.at[1]])
     return xs[inside], ys[inside]
+
+
+def _places_beside(
+    crossing: Crossing, gap: Polygon
+) -> tuple[np.ndarray[tuple[int], np.dtype[np.float64]], ...]:
+    """Places in a gap beside the trace: its rim nearest to the trace, and a little further in."""
+    line = shapely.LineString(crossing.path)
+    near = shapely.intersection(gap, line.buffer(2.0 * crossing.aside_mm, quad_segs=4))
+    points = [part.representative_point() for part in shapely.get_parts(near)]
+    at = shapely.get_coordinates(points)
+    return at[:, 0], at[:, 1]

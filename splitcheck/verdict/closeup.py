@@ -185,6 +185,8 @@ class Closeups:
         """Impedance of both ways; None where no number was solved."""
         if finding.added_nh is None or finding.detour_mm is None or finding.added_nh <= 0:
             return None
+        if item.crossing.aside_mm:
+            return None  # there is no other way round
         copper_um = self.scene.board.stack.layers[item.crossing.plane - 1].copper_um
         direct, detour = ways(
             item.route.straight_mm,
@@ -213,15 +215,17 @@ class Closeups:
         gap = plane.gaps[crossing.gap].id
         (x0, y0), (x1, y1) = crossing.path[0], crossing.path[-1]
         nearest = f"{own}, {height_mm:.3f} mm from the trace: the nearest before and after the gap"
-        missing = (
-            f"from ({x0:.2f}, {y0:.2f}) to ({x1:.2f}, {y1:.2f}): {item.bare_mm:.2f} mm without "
-            f"{own} beneath, over gap {gap}"
-        )
+        where = f"from ({x0:.2f}, {y0:.2f}) to ({x1:.2f}, {y1:.2f})"
+        missing = f"{where}: {item.bare_mm:.2f} mm without {own} beneath, over gap {gap}"
+        way = _way_in_words(item.route, names)
+        if crossing.aside_mm:
+            missing = f"{where}: gap {gap} lies {crossing.aside_mm:.2f} mm beside the centre line"
+            way = "none is needed: the return is crowded onto the copper that is left"
         facts = [
             ("Which plane", nearest),
             ("Where it is missing", missing),
             ("Copper on either side", _sides(plane, crossing)),
-            ("Way round", _way_in_words(item.route, names)),
+            ("Way round", way),
         ]
         if item.share < 1.0:
             part = f"{100 * item.share:.0f} % of the return flows on this plane"

@@ -23,8 +23,15 @@ from splitcheck.planes.crossings import BareTrace, Crossing
 from splitcheck.planes.edges import EdgeRun
 from splitcheck.planes.islands import Gap
 from splitcheck.verdict import around
-from splitcheck.verdict.around import LONG_RUN, exempt, share_of, too_small
+from splitcheck.verdict.around import LONG_RUN, exempt, share_of
 from splitcheck.verdict.bare import bare_findings
+from splitcheck.verdict.beside import (
+    estimate_beside,
+    least_nh,
+    once_a_place,
+    straight_on,
+    too_small,
+)
 from splitcheck.verdict.by_class import EXEMPT, listed, with_crosstalk
 from splitcheck.verdict.edge_runs import COVERED, common_of, edge_findings, with_common
 from splitcheck.verdict.findings import (
@@ -102,13 +109,13 @@ def judge(
             dropped[result] += 1
         else:
             weighed.append(result)
-    weighed = _once_a_gap(weighed)
+    weighed = once_a_place(scene, _once_a_gap(weighed))
     solved = _solve_all(scene, weighed, spread)
     findings: list[Finding] = []
     for number, item in enumerate(weighed):
         finding = _crossing_finding(scene, item, solved.get(number), weighed)
         if finding is None:
-            dropped[too_small(scene)] += 1
+            dropped[too_small(scene, item.crossing)] += 1
         else:
             findings.append(_with_common(scene, item, replace(finding, id=str(number))))
     findings.extend(bare_findings(scene, bare, dropped))
@@ -196,8 +203,8 @@ def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
         return EXEMPT
     item = _look_at(scene, crossing)
     value = item.estimate
-    if value is not None and value.added_nh + value.error_nh < scene.min_nh:
-        return too_small(scene)
+    if value is not None and value.added_nh + value.error_nh < least_nh(scene, crossing):
+        return too_small(scene, crossing)
     if item.kind == "edge-run" and (item.other is not None or item.beyond is not None):
         return COVERED
     return item
@@ -205,14 +212,22 @@ def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
 
 def _look_at(scene: Scene, crossing: Crossing) -> Weighed:
     """The way round of a crossing, what lies about it, and its estimate, finding or not."""
-    route = find_route(crossing, scene.planes, scene.terrains, scene.graph)
+    route = straight_on(scene, crossing) if crossing.aside_mm else _route(scene, crossing)
     other = around.other_side(scene, crossing)
     beyond = around.beyond(scene, crossing)
     beside = around.beside(scene, crossing)
     share = share_of(scene, crossing, other if beside is None else beside)
-    value = _estimate(scene, crossing, route, share, beyond, other)
+    value = (
+        estimate_beside(scene, crossing, share, beyond, other)
+        if crossing.aside_mm
+        else _estimate(scene, crossing, route, share, beyond, other)
+    )
     kind = _kind(crossing, scene.planes[crossing.plane].gaps[crossing.gap], route)
     return Weighed(crossing, route, beyond, other, beside, share, value, kind, (crossing,))
+
+
+def _route(scene: Scene, crossing: Crossing) -> Route:
+    return find_route(crossing, scene.planes, scene.terrains, scene.graph)
 
 
 def value_again(
@@ -263,7 +278,7 @@ def _crossing_finding(
 ) -> Finding | None:
     """The finding of a crossing; None if it adds too little."""
     value = item.estimate if field is None else field.value
-    if value is not None and value.added_nh < scene.min_nh:
+    if value is not None and value.added_nh < least_nh(scene, item.crossing):
         return None
     drive = scene.drive_of(item.crossing.net)
     noise = None
@@ -293,6 +308,8 @@ def _along_ns(scene: Scene, item: Weighed) -> float:
 
 
 def _kind(crossing: Crossing, gap: Gap, route: Route) -> Kind:
+    if crossing.aside_mm:
+        return "void-crossing"
     if crossing.islands[0] != crossing.islands[1]:
         return "split-crossing"
     left, right = (min(route.reach_mm(way), 1e3) for way in (route.left, route.right))
@@ -415,7 +432,7 @@ def _finding(
 def _corner_khz(scene: Scene, item: Weighed, field: Field | None) -> float | None:
     """From where on the return follows inductance; None if nothing was solved."""
     detour_mm = item.route.detour_mm
-    if field is None or detour_mm is None:
+    if field is None or detour_mm is None or item.crossing.aside_mm:
         return None
     stack, crossing = scene.board.stack, item.crossing
     layer = item.other if item.beside is None else item.beside

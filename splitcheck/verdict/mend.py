@@ -99,6 +99,8 @@ def proposals_for(
 
 
 def _ways(case: Case) -> tuple[Callable[[Case], Iterator[Proposal]], ...]:
+    if case.item is not None and case.item.crossing.aside_mm:
+        return (copper,)
     if case.item is not None:
         return vias, capacitors, copper, moves
     return (return_vias, return_capacitors) if case.change is not None else (copper,)

@@ -25,6 +25,9 @@ def reason(scene: Scene, item: Weighed) -> str:
             f"{name} is split here between {in_words(one.net_name)} ({one.id}) and "
             f"{in_words(other.net_name)} ({other.id})"
         )
+    elif crossing.aside_mm:
+        start = beside_in_words(scene, item)
+        return "; ".join([start, *_extras(scene, item)])
     else:
         start = (
             f"{name} ({in_words(one.net_name)}) is open for {item.bare_mm:.2f} mm under the trace"
@@ -32,6 +35,21 @@ def reason(scene: Scene, item: Weighed) -> str:
         if len(item.runs) > 1:
             start += f", in {len(item.runs)} places"
     return "; ".join([start, _way_in_words(scene, item), *_extras(scene, item)])
+
+
+def beside_in_words(scene: Scene, item: Weighed) -> str:
+    """What is missing where the centre line stays over copper."""
+    crossing = item.crossing
+    plane = scene.planes[crossing.plane]
+    name = scene.board.stack.layers[crossing.plane - 1].name
+    height = scene.board.stack.height_mm(crossing.layer, crossing.plane)
+    start = (
+        f"{name} ({plane.islands[crossing.islands[0]].net_name}) is open beside the trace, "
+        f"{crossing.aside_mm:.2f} mm from its centre line, which is {height:.2f} mm high"
+    )
+    if len(item.runs) > 1:
+        start += f", in {len(item.runs)} places"
+    return f"{start}; the return is crowded onto the copper that is left"
 
 
 def _way_in_words(scene: Scene, item: Weighed) -> str:
