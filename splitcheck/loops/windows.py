@@ -57,14 +57,15 @@ class Windows(NamedTuple):
 
 
 def span_mm(shape: shapely.Geometry) -> float:
-    """Diameter of the smallest circle round a shape, mm: the same however it is turned.
+    """The largest distance between two points of a shape, mm: the same however it is turned.
 
     Examples
     --------
     >>> span_mm(shapely.box(0, 0, 3, 4))
     5.0
     """
-    return float(2 * shapely.minimum_bounding_radius(shape))
+    corners = shapely.get_coordinates(shapely.convex_hull(shape))
+    return float(np.hypot(*(corners[:, None] - corners).T).max())
 
 
 def windows_of(
@@ -98,22 +99,22 @@ def windows_of(
     -------
     The windows.
     """
-    hull = MultiPoint(points).convex_hull
-    size = span_mm(hull)
+    seen = MultiPoint(points)
+    size = span_mm(seen)
     room = BEYOND_MM + BEYOND_SHARE * size + BEYOND_HEIGHTS * height_mm
     beside = BESIDE_MM + BESIDE_SHARE * size + BEYOND_HEIGHTS * height_mm
-    parts: list[shapely.Geometry] = [_round(hull, room)]
-    half: list[shapely.Geometry] = [_round(hull, room / 2)]
-    whole = _round(gap.shape.convex_hull, BEYOND_MM)
+    parts: list[shapely.Geometry] = [_round(seen, room)]
+    half: list[shapely.Geometry] = [_round(seen, room / 2)]
     if _is_moderate(gap):
-        parts.append(whole)
+        parts.append(_round(gap.shape, BEYOND_MM))
     elif one_sided:
+        whole = _round(gap.shape, BEYOND_MM)
         times = OPEN_SIDE if gap.open and not shut else FAR_SIDE
         times = min(times, OPEN_SIDE_SHUT) if shut or narrow else times
         far = room + max(times * size, 0.0 if narrow else FAR_LEAST_MM)
-        parts.append(shapely.intersection(_round(hull, far), whole))
-        half.append(shapely.intersection(_round(hull, far / 2), whole))
-    return Windows(_together(parts), _together(half), _round(hull, beside))
+        parts.append(shapely.intersection(_round(seen, far), whole))
+        half.append(shapely.intersection(_round(seen, far / 2), whole))
+    return Windows(_together(parts), _together(half), _round(seen, beside))
 
 
 def along_rim(gap: Polygon, start: marks.Point, stop: marks.Point) -> Iterator[LineString]:
@@ -184,7 +185,13 @@ def _is_moderate(gap: Gap) -> bool:
 
 
 def _round(shape: shapely.Geometry, room_mm: float) -> Polygon:
-    return shapely.buffer(shape, room_mm, quad_segs=_ROUND)
+    """The hull of a shape with round room about it; a buffer may lose hulls of no width."""
+    turn = np.arange(4 * _ROUND) * (np.pi / 2 / _ROUND)
+    circle = room_mm * np.stack([np.cos(turn), np.sin(turn)], axis=1)
+    corners = shapely.get_coordinates(shapely.convex_hull(shape))
+    hull = shapely.convex_hull(shapely.multipoints((corners[:, None] + circle).reshape(-1, 2)))
+    assert isinstance(hull, Polygon)
+    return hull
 
 
 def _together(shapes: Sequence[shapely.Geometry]) -> Polygon:
