@@ -19,6 +19,14 @@ _SUPPLY = re.compile(
     r")$"
 )
 
+#: What a schematic program makes up where nobody names a net: a reference and a pin's name.
+_MADE_UP = re.compile(r"^NET-\([^-]+-(?P<pin>[^)]+)\)$")
+#: Pins that are supplies whatever the part is: VIN, VOUT and VREF can be signals of a converter.
+_SUPPLY_PIN = re.compile(
+    r"^(?:[A-Z]{0,3}(?:VCC|VDD|VEE|VPP|VTT)[A-Z0-9]{0,6}|V(?:BAT|BATT|BUS|SYS|CORE|IO|PLL))"
+    r"\d*(?:[_\-./+ ].*)?$"
+)
+
 
 def last_part(name: str) -> str:
     """The name without the path of its sheet, in upper case, overbars dropped.
@@ -51,8 +59,13 @@ def is_supply(name: str) -> bool:
     [True, True, True, True, True, True]
     >>> [is_supply(name) for name in ("VSYNC", "SDA", "USB_D+", "GPIO12", "VIDEO1", "5V_EN")]
     [False, False, False, False, False, False]
+    >>> [is_supply(name) for name in ("Net-(U3-VDDIO_18)", "Net-(U3-VOUT)", "Net-(R1-Pad2)")]
+    [True, False, False]
     """
     name = last_part(name)
+    made_up = _MADE_UP.match(name)
+    if made_up is not None:
+        return bool(_SUPPLY_PIN.match(made_up["pin"])) and not _CONTROL.search(made_up["pin"])
     return bool(_SUPPLY.match(name)) and not _CONTROL.search(name)
 
 
