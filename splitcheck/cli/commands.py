@@ -7,16 +7,13 @@ from __future__ import annotations
 
 import shlex
 import sys
-from functools import partial
-from os import environ
 from pathlib import Path
 from typing import Annotated
 
 import typer
 
 from splitcheck import __version__
-from splitcheck.cli import results, streams, targets
-from splitcheck.cli.day import today
+from splitcheck.cli import results, streams, targets, walking
 from splitcheck.cli.options import (
     BoardPath,
     ColorFlag,
@@ -31,7 +28,6 @@ from splitcheck.cli.options import (
     Rules,
     Stack,
     Top,
-    check_min_nh,
     ending,
 )
 
@@ -92,20 +88,13 @@ def rank(
     One row a gap, with its worst net: what the return current must walk more, what that adds in
     nH, what it makes in mV. Only traces and planes that the files hold are judged.
     """
-    from splitcheck import road
     from splitcheck.report import terminal
 
-    check_min_nh(min_nh)
-    wanted = targets.parse(out or (), path)
-    options = road.Options(
-        tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
+    options = walking.asked(
+        net=net, layer=layer, min_nh=min_nh, stack=stack, rules=rules, jobs=jobs
     )
-    with streams.progress_bar(quiet=quiet) as progress:
-        if targets.are_drawn(wanted):
-            walked = road.look(path, options, progress)
-            report, draw = walked.report, partial(road.illustrate, walked, options)
-        else:
-            report, draw = road.rank(path, options, progress), None
+    wanted = targets.parse(out or (), path)
+    report, draw = walking.ranked(path, options, quiet=quiet, drawn=targets.are_drawn(wanted))
     results.show(
         report,
         terminal.render,
@@ -143,7 +132,7 @@ def read(
     from splitcheck.report import readout
 
     wanted = targets.parse(out or (), path, known=targets.TOLD)
-    options = road.Options(stack=stack, jobs=jobs, rules=rules, today=today(environ))
+    options = walking.asked(stack=stack, rules=rules, jobs=jobs)
     with streams.progress_bar(quiet=quiet) as progress:
         report = road.read(path, options, progress)
     results.show(report, readout.render, wanted, top=top, quiet=quiet, color=color)

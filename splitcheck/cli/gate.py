@@ -3,15 +3,13 @@
 from __future__ import annotations
 
 from functools import partial
-from os import environ
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from splitcheck.cli import results, streams, targets
+from splitcheck.cli import results, targets, walking
 from splitcheck.cli.commands import app
-from splitcheck.cli.day import today
 from splitcheck.cli.options import (
     ColorFlag,
     Debug,
@@ -25,7 +23,6 @@ from splitcheck.cli.options import (
     Rules,
     Stack,
     Top,
-    check_min_nh,
     ending,
 )
 from splitcheck.errors import SplitcheckError
@@ -79,17 +76,15 @@ def gate(
     What the earlier revision had already does not count. Findings are known again where the board
     was moved or turned, nets or files were renamed, or a trace was shifted by some mm.
     """
-    from splitcheck import road
     from splitcheck.report import gated
     from splitcheck.verdict.compare import compare
 
-    check_min_nh(min_nh)
+    options = walking.asked(
+        net=net, layer=layer, min_nh=min_nh, stack=stack, rules=rules, jobs=jobs
+    )
     boards = (new,) if was is None else (new, was)
     known = targets.TOLD if _is_kept(new) else targets.FORMATS
     wanted = targets.parse(out or (), *boards, known=known)
-    options = road.Options(
-        tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
-    )
     old = None
     if was is not None:
         old, _ = _revision(was, options, "--was ", quiet=quiet)
@@ -117,8 +112,6 @@ def _revision(
     path: Path, options: Options, option: str, *, quiet: bool, drawn: bool = False
 ) -> tuple[Report, results.Draw | None]:
     """One revision, ranked now or read from a kept report; and what draws it, if that is asked."""
-    from splitcheck import road
-
     if not path.exists():
         do = (
             "check out or unpack that revision, or keep a report of it: "
@@ -127,11 +120,7 @@ def _revision(
         raise SplitcheckError(f"{option}{path}", "there is no such file or folder", do)
     if _is_kept(path):
         return _kept(path), None
-    with streams.progress_bar(quiet=quiet) as progress:
-        if drawn:
-            walked = road.look(path, options, progress)
-            return walked.report, partial(road.illustrate, walked, options)
-        return road.rank(path, options, progress), None
+    return walking.ranked(path, options, quiet=quiet, drawn=drawn)
 
 
 def _is_kept(path: Path) -> bool:

@@ -3,14 +3,12 @@
 from __future__ import annotations
 
 from functools import partial
-from os import environ
 from typing import Annotated
 
 import typer
 
-from splitcheck.cli import results, streams, targets
+from splitcheck.cli import results, streams, targets, walking
 from splitcheck.cli.commands import app
-from splitcheck.cli.day import today
 from splitcheck.cli.options import (
     BoardPath,
     ColorFlag,
@@ -23,7 +21,6 @@ from splitcheck.cli.options import (
     Quiet,
     Rules,
     Stack,
-    check_min_nh,
     ending,
 )
 
@@ -75,11 +72,10 @@ def mend(
     from splitcheck.report import mending
     from splitcheck.report.tally import worst_ids
 
-    check_min_nh(min_nh)
-    wanted = targets.parse(out or (), path)
-    options = road.Options(
-        tuple(net or ()), tuple(layer or ()), min_nh, stack, jobs, rules, today(environ)
+    options = walking.asked(
+        net=net, layer=layer, min_nh=min_nh, stack=stack, rules=rules, jobs=jobs
     )
+    wanted = targets.parse(out or (), path)
     with streams.progress_bar(quiet=quiet) as progress:
         walked = road.look(path, options, progress)
         ids = tuple(finding or worst_ids(walked.report, worst))

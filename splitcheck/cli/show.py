@@ -4,14 +4,12 @@ from __future__ import annotations
 
 import sys
 from difflib import get_close_matches
-from os import environ
 from typing import TYPE_CHECKING, Annotated, TextIO
 
 import typer
 
-from splitcheck.cli import streams, targets
+from splitcheck.cli import streams, targets, walking
 from splitcheck.cli.commands import app
-from splitcheck.cli.day import today
 from splitcheck.cli.options import (
     BoardPath,
     ColorFlag,
@@ -21,7 +19,6 @@ from splitcheck.cli.options import (
     Quiet,
     Rules,
     Stack,
-    check_min_nh,
     ending,
 )
 from splitcheck.errors import SplitcheckError
@@ -76,9 +73,8 @@ def show(
     """
     from splitcheck import road
 
-    check_min_nh(min_nh)
     wanted = targets.parse(out or (), path, known=FORMATS)
-    options = road.Options(min_nh=min_nh, stack=stack, jobs=jobs, rules=rules, today=today(environ))
+    options = walking.asked(min_nh=min_nh, stack=stack, rules=rules, jobs=jobs)
     with streams.progress_bar(quiet=quiet) as progress:
         walked = road.look(path, options, progress)
         found = _found(walked.report, what)
