@@ -14,6 +14,10 @@ import shapely
 from shapely import LinearRing, LineString, MultiPoint, Point, Polygon
 
 from splitcheck.copper import marks
+from splitcheck.loops import solve as engine
+from splitcheck.loops.spans import feet
+from splitcheck.loops.tasks import Task, is_seen, parts_islands, stays
+from splitcheck.loops.ways import to_point
 from splitcheck.planes.islands import Gap
 
 #: A window reaches this much beyond the ways round the gap: in mm, as a share of their size, and
@@ -66,6 +70,47 @@ def span_mm(shape: shapely.Geometry) -> float:
     """
     corners = shapely.get_coordinates(shapely.convex_hull(shape))
     return float(np.hypot(*(corners[:, None] - corners).T).max())
+
+
+def look_at(
+    tasks: Sequence[Task],
+    gap: Gap,
+    bridges: Sequence[engine.ViaBridge | engine.Strap],
+    *,
+    narrow: bool,
+) -> Windows | None:
+    """How far a solve looks: at the crossings, some bridges, and the ways round that it sees.
+
+    In place of a way that it does not see it takes that along the rim, if it is not too long.
+    None if a crossing has neither: a window would close the gap where nothing does.
+    """
+    points = [point for task in tasks for point in task.crossing.path]
+    points.extend(to_point(at) for bridge in bridges for at in feet(bridge))
+    one_sided = False
+    for task in tasks:
+        found = [way for way in (task.route.left, task.route.right) if way is not None]
+        seen = [way for way in found if is_seen(task, way)]
+        points.extend(point for way in seen for point in way.path)
+        # flux goes on beyond a bridge as long as the gap does, for no bridge is a short circuit
+        held = seen if parts_islands(task) or narrow else [way for way in seen if stays(way)]
+        all_held = len(held) == len(found)
+        along = [] if narrow or all_held else _along_rim(task, gap)
+        hulls = (shapely.get_coordinates(way.convex_hull) for way in along)
+        points.extend(to_point(at) for hull in hulls for at in hull)
+        if not seen and not along:
+            return None
+        one_sided |= len(found) < 2 or not (all_held or len(along) == 2)
+    shut = tasks[0].beyond is not None or tasks[0].other is not None
+    return windows_of(
+        points, gap, tasks[0].height_mm, one_sided=one_sided, shut=shut, narrow=narrow
+    )
+
+
+def _along_rim(task: Task, gap: Gap) -> list[LineString]:
+    """The ways along the rim of a gap that are not too long."""
+    path = task.crossing.path
+    ways = along_rim(gap.shape, path[0], path[-1])
+    return [way for way in ways if span_mm(way) <= ALONG_MM]
 
 
 def windows_of(

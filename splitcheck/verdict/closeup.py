@@ -11,9 +11,10 @@ import shapely
 from shapely import LineString, Polygon
 
 from splitcheck.loops.corner import impedance_ohm, ways
-from splitcheck.loops.fields import Fields, Task, can_solve
+from splitcheck.loops.fields import Fields
 from splitcheck.loops.sheet import Stream, stream_lines
 from splitcheck.loops.streams import Flow, without_gaps
+from splitcheck.loops.tasks import Task, can_solve
 from splitcheck.loops.ways import Route, Way
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane, box_size_mm

@@ -13,10 +13,12 @@ import numpy as np
 import shapely
 
 from splitcheck.loops import estimate
+from splitcheck.loops.clusters import cluster
 from splitcheck.loops.corner import detour_corner_khz
 from splitcheck.loops.estimate import Inductance
-from splitcheck.loops.fields import Field, Fields, Task, can_solve, cluster
+from splitcheck.loops.fields import Field, Fields
 from splitcheck.loops.routes import find_route
+from splitcheck.loops.tasks import Task, can_solve
 from splitcheck.loops.ways import Route, Way
 from splitcheck.planes.changes import PlaneChange
 from splitcheck.planes.crossings import BareTrace, Crossing

@@ -10,7 +10,7 @@ from math import dist
 import numpy as np
 
 from splitcheck.errors import SplitcheckError
-from splitcheck.loops.fields import TOGETHER_MOST_MM
+from splitcheck.loops.clusters import TOGETHER_MOST_MM
 from splitcheck.planes.changes import find_changes
 from splitcheck.planes.crossings import Crossing, find_crossings
 from splitcheck.planes.tracks import Tracks, redrawn

@@ -11,7 +11,7 @@ import networkx as nx
 import numpy as np
 import shapely
 
-from splitcheck.loops.fields import together_mm
+from splitcheck.loops.clusters import together_mm
 from splitcheck.verdict.findings import Finding, GapShare
 from splitcheck.verdict.score import worst_first
 

@@ -18,7 +18,7 @@ from fixtures.making.plan import BoardPlan, Hole, Placing
 from fixtures.making.write import write_board
 from fixtures.tide_logger import tide_logger
 from splitcheck import road
-from splitcheck.loops import fields
+from splitcheck.loops import windows
 from splitcheck.loops.windows import (
     BEYOND_MM,
     Windows,
@@ -150,7 +150,7 @@ def test_a_larger_window_moves_no_value(
         found = plain(*args, **how)
         return found._replace(outer=found.outer.buffer(span_mm(found.outer) / 2))
 
-    monkeypatch.setattr(fields, "windows_of", larger)
+    monkeypatch.setattr(windows, "windows_of", larger)
     _assert_within_errors(_solved(road.fixtures_folder() / "demo"), demo)
 
 
