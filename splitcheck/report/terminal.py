@@ -70,7 +70,7 @@ def render(report: Report, *, top: int, width: int, color: bool) -> str:
     Parameters
     ----------
     top
-        How many gaps to show, worst first; 0 shows all.
+        How many rows to show, worst first; 0 shows all.
     width
         Columns of the terminal.
     color
@@ -128,25 +128,91 @@ def _more(page: Page, left: int, thing: str) -> None:
 
 def _found(page: Page, report: Report, top: int) -> None:
     page.heading("Found, worst first")
-    groups = tally.over_one_gap(report.findings)
-    if not groups:
+    repeated = _alike(tally.over_one_gap(report.findings))
+    if not repeated:
         page.say("Nothing: no finding within what was read and assumed above.")
         return
-    shown = groups[:top] if top else groups
-    rows = [_cells(group[0]) for group in shown]
+    shown = repeated[:top] if top else repeated
+    rows = [_cells(groups[0][0]) for groups in shown]
     widths = page.widths(_COLUMNS, rows)
     page.titles(_COLUMNS, widths)
-    for place, (group, row) in enumerate(zip(shown, rows, strict=True)):
+    for place, (groups, row) in enumerate(zip(shown, rows, strict=True)):
+        group = groups[0]
         page.row(_COLUMNS, widths, row, ["", LEVEL_STYLES[group[0].level]])
         name = shorten(row[_NET], _LONGEST_NAME)
         if cell_len(name) > widths[_NET]:
             page.say_text(Text(f"net {name}"), indent=widths[0] + 4)
         _below(page, group, widths[0] + 4, why=place < _REASONS_SHOWN)
-    hidden = groups[len(shown) :]
+        for line in _repeats(groups, 2 * (page.width - widths[0] - 4)):
+            page.say_text(Text(line), indent=widths[0] + 4)
+    hidden = [group for groups in repeated[len(shown) :] for group in groups]
     if hidden:
         places = sum(len(group) for group in hidden)
         gaps = plural(len(hidden), "more gap")
         page.say(f"and {plural(places, 'finding')} over {gaps}: --top 0 shows all of them")
+
+
+def _alike(groups: Sequence[Sequence[Finding]]) -> list[list[Sequence[Finding]]]:
+    """Gaps whose worst findings are one thing to a reader, each in one row.
+
+    They are at one place, where both planes of a stripline are open, or read the same, as those of
+    channels laid out alike.
+    """
+    rows: dict[tuple[object, ...], list[Sequence[Finding]]] = {}
+    places: dict[tuple[object, ...], list[Sequence[Finding]]] = {}
+    for group in groups:
+        worst = group[0]
+        cells = (cell for place, cell in enumerate(_cells(worst)) if place not in {0, _NET})
+        seen = (
+            worst.layer,
+            worst.plane_layer,
+            worst.plane_net,
+            worst.net_class,
+            worst.pair is None,
+        )
+        alone = worst.id if len(group) > 1 or not worst.gap else ""  # told in full
+        read = (*cells, *seen, worst.waived, alone)
+        row = places.get(_place(worst)) or rows.get(read) or []
+        places.setdefault(_place(worst), row)
+        rows.setdefault(read, row)
+        row.append(group)
+    return list({id(row): row for row in rows.values()}.values())
+
+
+def _place(finding: Finding) -> tuple[object, ...]:
+    alone = "" if finding.gap else finding.id
+    return finding.net, finding.layer, finding.at_mm, finding.waived, alone
+
+
+def _repeats(groups: Sequence[Sequence[Finding]], room: int) -> list[str]:
+    """The other gaps of a row: over the other plane at its place, and elsewhere alike."""
+    here = _place(groups[0][0])
+    others = [group[0] for group in groups[1:]]
+    told = [
+        f"over {shorten(finding.plane_layer or '', _NET_CELLS)} at the same place as well:"
+        f" {finding.id}, {_added(finding)} nH"
+        for finding in others
+        if _place(finding) == here
+    ]
+    alike = [finding for finding in others if _place(finding) != here]
+    if alike:
+        named = [f"{finding.id} {shorten(finding.net, _NET_CELLS)}" for finding in alike]
+        start = f"the same at {plural(len(alike), 'more place')}: "
+        told.append(_as_many_as_fit(start, named, room))
+    return told
+
+
+def _as_many_as_fit(start: str, names: Sequence[str], room: int) -> str:
+    """A list of at least one name and at most so many columns, and the count of the rest."""
+    taken = len(start)
+    shown: list[str] = []
+    for name in names:
+        taken += len(name) + 2
+        if shown and taken > room - len(" and 99999 more"):
+            break
+        shown.append(name)
+    rest = f" and {len(names) - len(shown)} more" if len(shown) < len(names) else ""
+    return start + ", ".join(shown) + rest
 
 
 def _cells(worst: Finding) -> tuple[str, ...]:
@@ -239,16 +305,7 @@ def _sharers(group: Sequence[Finding], room: int) -> str:
     places = f" at {len(group)} places" if len(group) > len(nets) else ""
     shared = _SHARED.get(group[0].kind, "over one gap")
     start = f"{plural(len(nets), 'net')} {shared}{places} ({levels}): "
-    taken = len(start)
-    shown: list[str] = []
-    for net in nets:
-        name = shorten(net, _NET_CELLS)
-        taken += len(name) + 2
-        if shown and taken > room - len(" and 99999 more"):
-            break
-        shown.append(name)
-    rest = f" and {len(nets) - len(shown)} more" if len(shown) < len(nets) else ""
-    return start + ", ".join(shown) + rest
+    return _as_many_as_fit(start, [shorten(net, _NET_CELLS) for net in nets], room)
 
 
 def _idle_waiver(row: WaiverRow) -> str:

@@ -99,6 +99,29 @@ def test_findings_without_a_gap_are_not_thrown_together(pump: Report) -> None:
     assert len([line for line in text.splitlines() if line.startswith("  F")]) == 2
 
 
+def test_channels_laid_out_alike_are_one_row(pump: Report) -> None:
+    """Four channels with the same hole under the same trace are one thing to read, not four."""
+    alike = tuple(
+        made.finding(n, f"CH{n}_IN", gap=f"L2.g{n}", at_mm=(10.0 * n, 5.0)) for n in range(1, 5)
+    )
+    worse = made.finding(5, "CH5_IN", gap="L2.g5", at_mm=(50.0, 5.0), added_nh=9.9)
+    text = plain(replace(pump, findings=(*alike, worse)))
+    rows = [line for line in text.splitlines() if line.startswith("  F")]
+    assert [row.split()[0] for row in rows] == ["F1", "F5"]
+    assert "      the same at 3 more places: F2 CH2_IN, F3 CH3_IN, F4 CH4_IN\n" in text
+    assert "5 findings over 5 gaps on 5 nets" in text
+
+
+def test_both_planes_of_a_stripline_at_one_place_are_one_row(pump: Report) -> None:
+    """A slot through both planes is one place on the board; each plane keeps its number."""
+    above = made.finding(1, "CLK", gap="L2.g1", plane_layer="In1")
+    below = made.finding(2, "CLK", gap="L4.g1", plane_layer="In3", added_nh=0.5, error_nh=0.1)
+    text = plain(replace(pump, findings=(above, below)))
+    rows = [line for line in text.splitlines() if line.startswith("  F")]
+    assert [row.split()[0] for row in rows] == ["F1"]
+    assert "      over In3 at the same place as well: F2, 0.50 +-0.10 nH\n" in text
+
+
 def test_top_says_what_it_hides(pump: Report) -> None:
     """What is not shown is counted."""
     assert "and 2 findings over 2 more gaps: --top 0 shows all of them\n" in plain(pump, top=1)
