@@ -7,7 +7,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from splitcheck.loops.tasks import Task
+from splitcheck.loops.tasks import Task, parts_islands
 
 #: Crossings of one gap this near to one another are solved together, mm; and those no further
 #: apart than so many of their detours, as they couple (by 0.3 of the lesser value at one of them,
@@ -24,13 +24,16 @@ def cluster(tasks: Sequence[Task]) -> tuple[tuple[Task, ...], ...]:
 
     They are over one gap, from one layer, under the same planes, and near one another. A trace that
     only passes by a gap is solved by itself: what it crosses nearby is not to be left out of the
-    others.
+    others. Splits whose islands come together by holes to the plane on the trace's other side are
+    solved apart from the rest, in a world that ends with the window.
     """
     groups: dict[tuple[object, ...], list[Task]] = defaultdict(list)
     for task in tasks:
         c = task.crossing
         alone = task.number + 1 if c.aside_mm else 0
-        groups[c.plane, c.gap, c.layer, task.beyond or 0, task.other or 0, alone].append(task)
+        over = parts_islands(task) and bool(task.stitches)
+        key = (c.plane, c.gap, c.layer, task.beyond or 0, task.other or 0, alone, over)
+        groups[key].append(task)
     clusters: list[tuple[Task, ...]] = []
     for _, members in sorted(groups.items()):
         clusters.extend(near_one_another(members))

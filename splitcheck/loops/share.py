@@ -11,19 +11,21 @@ from splitcheck.units import MU0, Floats
 
 
 def share_out(
-    energy: Floats, own_nh: Floats, rows: Floats, count: int, vias: int
+    energy: Floats, own_nh: Floats, rows: Floats, count: int, cavities: Sequence[int]
 ) -> tuple[Floats, NDArray[np.bool_]]:
     """Current in each source per ampere in each trace: what must balance does, the rest is least.
 
-    Returns the currents, shape (sources, traces), and which traces have no way back.
+    The sources end with the vias, cavity by cavity; `cavities` counts those of each. Returns the
+    currents, shape (sources, traces), and which traces have no way back.
     """
     bridges = energy.shape[0] - count
-    balance = rows
-    if vias:
-        # the plane beyond keeps no current
-        onto = np.zeros((1, energy.shape[0]))
-        onto[0, -vias:] = 1.0
-        balance = np.concatenate([rows, onto])
+    # the plane on the other side of a cavity keeps no current
+    onto = np.zeros((len(cavities), energy.shape[0]))
+    last = energy.shape[0] - sum(cavities)
+    for row, vias in zip(onto, cavities, strict=True):
+        row[last : last + vias] = 1.0
+        last += vias
+    balance = np.concatenate([rows, onto[onto.any(axis=1)]])
     need, can = -balance[:, :count], balance[:, count:]
     forced = np.linalg.pinv(can) @ need if bridges and len(balance) else np.zeros((bridges, count))
     short = (

@@ -79,12 +79,16 @@ class TraceOver:
 
 @dataclass(frozen=True, slots=True)
 class ViaBridge:
-    """A plated hole that joins this plane and the plane beyond, or a part that does."""
+    """A plated hole that joins this plane and the plane beyond, or a part that does.
+
+    Or else one to the plane above, if `above`.
+    """
 
     at: Point
     diameter_mm: float
     mounted_nh: float = 0.0
     """Inductance of a part in its way, as mounted; 0 for a mere hole."""
+    above: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -163,7 +167,8 @@ def added(
         Distance to a whole plane on the traces' side, > `height_mm`, or None. It takes its share
         of the current, and is taken to be joined to this plane at the ends of the traces.
     bridges
-        What can carry current from one side of a gap to the other.
+        What can carry current from one side of a gap to the other: over it, or by way of the plane
+        beyond or above.
     outside
         Outline of the plane: all outside it counts as a gap. None: the plane has no end.
     ends
@@ -194,7 +199,10 @@ def added(
     The unknown is the flux density b normal to the plane in the gaps. It makes the tangential
     field continuous there: integral of (g_up + g_down) b / (2 pi mu0) = f + c in each gap, with no
     net flux through any gap, g = 1/r with its images in the planes, and f the source function of
-    the traces over a whole plane. The added inductance is the integral of f b.
+    the traces over a whole plane. The added inductance is the integral of f b. Bridges share the
+    current so that the energy is least (Thomson's principle). Vias have the field of line currents
+    between the two planes that they join; a trace between those has none of it, for its ends give
+    each plane just its share.
 
     Examples
     --------
@@ -288,6 +296,8 @@ class _Job:
     """These traces, then the straps."""
     vias: Floats
     """Places of the vias that count, shape (v, 2)."""
+    cavities: tuple[int, int]
+    """How many of them lead to the plane beyond, and then how many to that above."""
     bridges: tuple[int, ...]
     """Which bridges count, straps first."""
     bridge_count: int
@@ -338,7 +348,7 @@ def _job(
             remarks.append(f"bridge {k + 1} does not stand on copper and is left out")
         elif isinstance(bridge, Strap):
             straps.append(k)
-        elif beyond_mm is None:
+        elif (above_mm if bridge.above else beyond_mm) is None:
             remarks.append(f"bridge {k + 1} leads to a plane that is not there and is left out")
         else:
             vias.append(k)
@@ -347,16 +357,21 @@ def _job(
         assert isinstance(strap, Strap)
         line = shapely.get_coordinates(strap.line)
         strips.append(Strip(line, strap.width_mm, strap.height_mm, above_mm))
-    chosen = [b for b in (bridges[k] for k in vias) if isinstance(b, ViaBridge)]
-    places = np.array([b.at.coords[0][:2] for b in chosen]).reshape(-1, 2)
-    own = np.zeros((len(straps) + len(vias),) * 2)
-    for row, k in enumerate(straps):
-        own[row, row] = getattr(bridges[k], "mounted_nh", 0.0)
-    if beyond_mm is not None and chosen:
-        own[len(straps) :, len(straps) :] = via_matrix(
-            places, [b.diameter_mm for b in chosen], beyond_mm
-        )
-        own[len(straps) :, len(straps) :] += np.diag([b.mounted_nh for b in chosen])
+    standing = [(k, b) for k in vias if isinstance(b := bridges[k], ViaBridge)]
+    standing.sort(key=lambda pair: pair[1].above)
+    chosen = [via for _, via in standing]
+    places = np.array([via.at.coords[0][:2] for via in chosen]).reshape(-1, 2)
+    upward = sum(via.above for via in chosen)
+    cavities = (len(chosen) - upward, upward)
+    own = np.diag([bridges[k].mounted_nh for k in straps] + [via.mounted_nh for via in chosen])
+    first = len(straps)
+    for plate_mm, several in zip((beyond_mm, above_mm), cavities, strict=True):
+        if plate_mm is not None and several:
+            mine = slice(first - len(straps), first - len(straps) + several)
+            wide_mm = [via.diameter_mm for via in chosen[mine]]
+            both = slice(first, first + several)
+            own[both, both] += via_matrix(places[mine], wide_mm, plate_mm)
+        first += several
     for k, short in enumerate(scene.cut_short_mm):
         if scene.lines[k] is None:
             remarks.append(f"trace {k + 1} is nowhere over copper of this plane")
@@ -368,7 +383,8 @@ def _job(
         traces=tuple(on),
         strips=tuple(strips),
         vias=places,
-        bridges=(*straps, *vias),
+        cavities=cavities,
+        bridges=(*straps, *(k for k, _ in standing)),
         bridge_count=len(bridges),
         own_nh=own,
         plates_mm=tuple(d for d in (above_mm, beyond_mm) if d is not None),
@@ -462,7 +478,7 @@ def _within_nh(
 def _shared(job: _Job, energy: Floats, rows: Floats) -> tuple[Floats, Floats, NDArray[np.bool_]]:
     """Share the current among the bridges; the inductance, the currents, and who has no way."""
     count = len(job.traces)
-    way, cut_off = share_out(energy, job.own_nh, rows, count, len(job.vias))
+    way, cut_off = share_out(energy, job.own_nh, rows, count, job.cavities)
     full = energy.copy()
     full[count:, count:] += job.own_nh
     added_nh = way.T @ full @ way
@@ -487,7 +503,7 @@ def _lost(job: _Job) -> NDArray[np.bool_]:
     _, rows = _balances(job)
     count, bridges = len(job.traces), len(job.bridges)
     nothing = np.zeros((count + bridges,) * 2)
-    return share_out(nothing, np.eye(bridges), rows, count, len(job.vias))[1]
+    return share_out(nothing, np.eye(bridges), rows, count, job.cavities)[1]
 
 
 def _nothing(job: _Job) -> _Raw:

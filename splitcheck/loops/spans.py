@@ -1,4 +1,4 @@
-"""The bridges that a solve takes: vias and parts to the plane beyond, straps over the gap."""
+"""The bridges that a solve takes: vias and parts to the planes beside, straps over the gap."""
 
 from __future__ import annotations
 
@@ -37,9 +37,9 @@ class Spans:
         self.graph = graph
 
     def of(self, tasks: Sequence[Task]) -> list[engine.ViaBridge | engine.Strap]:
-        """Bridges that the ways round can take: vias and parts to the plane beyond, or straps.
+        """Bridges that the ways round can take: vias and parts to the planes beside, or straps.
 
-        A plane on the trace's other side is in the solve already and needs no strap.
+        A plane on the trace's other side is in the solve already: it needs vias and no strap.
         """
         crossing = tasks[0].crossing
         vias: dict[Point, engine.ViaBridge] = {}
@@ -57,6 +57,12 @@ class Spans:
         return [
             *(strap for _, strap in sorted(straps.items())),
             *(via for _, via in sorted(vias.items())),
+            *(
+                engine.ViaBridge(shapely.Point(at), wide_mm, above=True)
+                for at, wide_mm in sorted(
+                    {stitch[:2] for task in tasks for stitch in task.stitches}
+                )
+            ),
         ]
 
     def _vias_like(self, task: Task, way: Way) -> dict[Point, engine.ViaBridge]:

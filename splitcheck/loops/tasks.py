@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 from splitcheck.copper.marks import Point
 from splitcheck.loops.bridges import PartBridge
+from splitcheck.loops.stitches import Stitch
 from splitcheck.loops.ways import Route, Way
 from splitcheck.planes.crossings import Crossing
 
@@ -27,6 +28,8 @@ class Task:
     """Layer number of the whole plane on the trace's other side."""
     part: float = 1.0
     """Part of the current that the solve would see which really returns on this plane."""
+    stitches: tuple[Stitch, ...] = ()
+    """Holes to the plane on the trace's other side."""
 
 
 def can_solve(task: Task) -> bool:
@@ -34,9 +37,10 @@ def can_solve(task: Task) -> bool:
 
     A gap inside one island always has a way round in the plane. Where the islands are cut apart,
     the bridges carry all of the return: the solve then knows vias and capacitors to the plane
-    beyond, capacitors from one island straight to the other, and nothing else well enough.
+    beyond, vias to a plane on the trace's other side, capacitors from one island straight to the
+    other, and nothing else well enough.
     """
-    if task.crossing.islands[0] == task.crossing.islands[1]:
+    if task.crossing.islands[0] == task.crossing.islands[1] or task.stitches:
         return True
     best = task.route.best
     if best is None:

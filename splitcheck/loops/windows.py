@@ -97,7 +97,7 @@ def look_at(
         along = [] if narrow or all_held else _along_rim(task, gap)
         hulls = (shapely.get_coordinates(way.convex_hull) for way in along)
         points.extend(to_point(at) for hull in hulls for at in hull)
-        if not seen and not along:
+        if not (seen or along or (parts_islands(task) and task.stitches)):
             return None
         one_sided |= len(found) < 2 or not (all_held or len(along) == 2)
     shut = tasks[0].beyond is not None or tasks[0].other is not None

@@ -159,7 +159,10 @@ class Closeups:
     ) -> tuple[StreamView | None, StreamView | None]:
         """Lines of the return current, were the plane whole and as it is."""
         paths = tuple(run.path for run in item.runs)
-        task = Task(0, item.crossing, item.route, paths, height_mm, item.beyond, item.other)
+        task = Task(
+            0, item.crossing, item.route, paths, height_mm, item.beyond, item.other,
+            stitches=item.stitches,
+        )  # fmt: skip
         flow = self.fields.flow(task) if can_solve(task) else None
         alone = self.fields.undisturbed(task) if flow is None else without_gaps(flow)
         around = _around(alone, window)

@@ -18,6 +18,7 @@ from splitcheck.loops.corner import detour_corner_khz
 from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.fields import Field, Fields
 from splitcheck.loops.routes import find_route
+from splitcheck.loops.stitches import stitches
 from splitcheck.loops.tasks import Task, can_solve
 from splitcheck.loops.ways import Route, Way
 from splitcheck.planes.changes import PlaneChange
@@ -161,7 +162,8 @@ def _once_a_gap(weighed: Sequence[Weighed]) -> list[Weighed]:
             ]
             left = [item for item in left if item not in same]
             runs = (worst.crossing, *(item.crossing for item in same))
-            kept.append(replace(worst, runs=runs))
+            every = sorted({stitch for item in (worst, *same) for stitch in item.stitches})
+            kept.append(replace(worst, runs=runs, stitches=tuple(every)))
     return kept
 
 
@@ -184,6 +186,7 @@ def _solve_all(
             item.beyond,
             item.other,
             item.share / share_of(scene, item.crossing, item.other),
+            item.stitches,
         )
         for number, item in enumerate(weighed)
     ]
@@ -225,7 +228,8 @@ def _look_at(scene: Scene, crossing: Crossing) -> Weighed:
         else _estimate(scene, crossing, route, share, beyond, other)
     )
     kind = _kind(crossing, scene.planes[crossing.plane].gaps[crossing.gap], route)
-    return Weighed(crossing, route, beyond, other, beside, share, value, kind, (crossing,))
+    holes = stitches(crossing, scene.planes, other, scene.graph)
+    return Weighed(crossing, route, beyond, other, beside, share, value, kind, (crossing,), holes)
 
 
 def _route(scene: Scene, crossing: Crossing) -> Route:

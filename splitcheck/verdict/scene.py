@@ -8,6 +8,7 @@ from splitcheck.board.board import Board
 from splitcheck.board.pairs import Pair
 from splitcheck.loops.bridges import IslandGraph
 from splitcheck.loops.estimate import Inductance
+from splitcheck.loops.stitches import Stitch
 from splitcheck.loops.terrain import Terrain
 from splitcheck.loops.ways import Route
 from splitcheck.planes.crossings import Crossing
@@ -55,6 +56,8 @@ class Weighed:
     kind: Kind
     runs: tuple[Crossing, ...]
     """All runs that it stands for: one trace may pass over one gap several times."""
+    stitches: tuple[Stitch, ...] = ()
+    """Plated holes near them that join the plane with that on the trace's other side."""
 
     @property
     def bare_mm(self) -> float:
