@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from math import acosh, e, log, pi, sqrt
+from math import acosh, e, log, pi, sin, sqrt
 
 import numpy as np
 
 from splitcheck.copper.marks import Point
+from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.share import via_matrix
 from splitcheck.units import MU0
 
@@ -15,6 +16,8 @@ from splitcheck.units import MU0
 E0_NF = 8.8541878128e-6
 #: Two barrels are at least this many diameters apart: nearer ones would touch.
 LEAST_APART = 1.05
+#: How far ``over_holes`` may be off.
+HOLES_ERROR = 0.35
 
 
 def line_nh(apart_mm: float, diameter_mm: float, plates_mm: float) -> float:
@@ -89,6 +92,65 @@ def shared_nh(
     )
     back = solved[:, 0] * ((ones @ solved[:, 1] - 1.0) / (ones @ solved[:, 0])) - solved[:, 1]
     return float(matrix[0, 0] + 2 * matrix[1:, 0] @ back + back @ inner @ back)
+
+
+def over_holes(
+    ends: Sequence[tuple[Point, Sequence[tuple[Point, float]]]],
+    run_mm: float,
+    height_mm: float,
+    width_mm: float,
+    planes_mm: float,
+) -> Inductance:
+    """What a gap adds when the return gets past it on the plane on the trace's other side.
+
+    Parameters
+    ----------
+    ends
+        For either end of the run over the gap: its place on the rim, and place and diameter of the
+        plated holes near it that join the two planes, one or more, mm.
+    run_mm
+        Length of the run, mm, > 0.
+    height_mm, width_mm
+        Height of the trace over the broken plane, and its width, mm, > 0.
+    planes_mm
+        Distance between the two planes, mm, > `height_mm`.
+
+    Notes
+    -----
+    By Thomson's principle (currents in perfect conductors flow so that the energy is least;
+    textbook, from memory) no way that the current can take has less energy than the true
+    one, so that each is a bound. On this way the part k = 1 - h/d of the return that flows on the
+    broken plane comes up at the rim, on a width of two spreads of the return, 2 (h + w/4), and
+    goes between the planes to the holes: `shared_nh`. Along the run all of it flows on the other
+    plane, and the loop per length is that of a trace d - h above that plane in place of a trace
+    between two:
+
+        mu0/(2 pi) ln(pi (d - h)/(d sin(pi h/d)))
+
+    (images of a thin line between planes: ln(2 d sin(pi h/d)/(pi r)) with both, ln(2 (d - h)/r)
+    with one; textbook). What the rim takes of the room between the planes is left out, so that it
+    is a bound only nearly: 17 % below to 63 % above 120 of this package's own field solves of
+    splits (h 0.1 to 0.3, d 0.2 to 1.3, runs of 0.5 to 8, holes within 4 mm), in the middle 8 %
+    above.
+
+    Examples
+    --------
+    A split of 2 mm under a trace 0.2 mm above, the other plane 0.8 mm off, two holes at each end:
+
+    >>> one = ((-1.0, 0.0), [((-2.0, y), 0.47) for y in (-1.0, 1.0)])
+    >>> other = ((1.0, 0.0), [((2.0, y), 0.47) for y in (-1.0, 1.0)])
+    >>> round(over_holes([one, other], 2.0, 0.2, 0.4, 0.8).added_nh, 2)
+    0.88
+    """
+    wide_mm = 2.0 * (height_mm + width_mm / 4.0)
+    far_mm = planes_mm - height_mm
+    part = far_mm / planes_mm
+    between = sum(
+        shared_nh(at, wide_mm, [(*hole, 0.0) for hole in holes], planes_mm) for at, holes in ends
+    )
+    along = log(pi * far_mm / (planes_mm * sin(pi * height_mm / planes_mm)))
+    value = part**2 * between + run_mm * MU0 / (2.0 * pi) * along
+    return Inductance(value, HOLES_ERROR * value + 0.01)
 
 
 def plates_nf(area_mm2: float, plates_mm: float, er: float) -> float:

@@ -9,40 +9,31 @@ from functools import partial
 from math import inf
 from typing import Any, TypeAlias
 
-import numpy as np
 import shapely
 
-from splitcheck.loops import estimate
 from splitcheck.loops.clusters import cluster
 from splitcheck.loops.corner import detour_corner_khz
 from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.fields import Field, Fields
-from splitcheck.loops.routes import find_route
-from splitcheck.loops.stitches import stitches
 from splitcheck.loops.tasks import Task, can_solve
-from splitcheck.loops.ways import Route, Way
+from splitcheck.loops.ways import Way
 from splitcheck.planes.changes import PlaneChange
 from splitcheck.planes.crossings import BareTrace, Crossing
 from splitcheck.planes.edges import EdgeRun
-from splitcheck.planes.islands import Gap
-from splitcheck.verdict import around
-from splitcheck.verdict.around import LONG_RUN, exempt, share_of
+from splitcheck.verdict.around import LONG_RUN, share_of
 from splitcheck.verdict.bare import bare_findings
 from splitcheck.verdict.beside import (
-    estimate_beside,
     least_nh,
     once_a_place,
-    straight_on,
     too_small,
 )
-from splitcheck.verdict.by_class import EXEMPT, listed, with_crosstalk
-from splitcheck.verdict.edge_runs import COVERED, common_of, edge_findings, with_common
+from splitcheck.verdict.by_class import listed, with_crosstalk
+from splitcheck.verdict.edge_runs import common_of, edge_findings, with_common
 from splitcheck.verdict.findings import (
     BridgeUse,
     Count,
     Finding,
     GapShare,
-    Kind,
     Source,
 )
 from splitcheck.verdict.listing import worth_a_line
@@ -58,13 +49,10 @@ from splitcheck.verdict.reason import reason
 from splitcheck.verdict.scene import Judged, Scene, Weighed
 from splitcheck.verdict.score import Noise, level, noise_over_gap, slot_ns_mm
 from splitcheck.verdict.supplies import with_rule
+from splitcheck.verdict.weighing import look_at, reach_mm, weigh
 
 #: A run whose middle lies this near to the same stretch of trace is on it, mm.
 SAME_PLACE_MM = 1e-3
-#: From this ratio of length across the trace to length along it a closed gap is a slot.
-SLOT_RATIO = 2.5
-#: A trace this near the rim of a gap, as a share of its run, clips the gap rather than crosses it.
-EDGE_RATIO = 0.25
 
 
 #: Calls a function on every item and gives the results in order, as ``map`` does.
@@ -105,7 +93,7 @@ def judge(
     dropped: dict[str, int] = defaultdict(int)
     weighed: list[Weighed] = []
     long_runs: list[Crossing] = []
-    for crossing, result in zip(crossings, spread(partial(_weigh, scene), crossings), strict=True):
+    for crossing, result in zip(crossings, spread(partial(weigh, scene), crossings), strict=True):
         if result == LONG_RUN:
             long_runs.append(crossing)
         elif isinstance(result, str):
@@ -199,43 +187,6 @@ def _solve_all(
     return solved
 
 
-def _weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
-    """Find the way round of a crossing and estimate it; the reason if it is no finding."""
-    why_not = exempt(scene, crossing)
-    if why_not is not None:
-        return why_not
-    if scene.drive_of(crossing.net).exempt:
-        return EXEMPT
-    item = _look_at(scene, crossing)
-    value = item.estimate
-    if value is not None and value.added_nh + value.error_nh < least_nh(scene, crossing):
-        return too_small(scene, crossing)
-    if item.kind == "edge-run" and (item.other is not None or item.beyond is not None):
-        return COVERED
-    return item
-
-
-def _look_at(scene: Scene, crossing: Crossing) -> Weighed:
-    """The way round of a crossing, what lies about it, and its estimate, finding or not."""
-    route = straight_on(scene, crossing) if crossing.aside_mm else _route(scene, crossing)
-    other = around.other_side(scene, crossing)
-    beyond = around.beyond(scene, crossing)
-    beside = around.beside(scene, crossing)
-    share = share_of(scene, crossing, other if beside is None else beside)
-    value = (
-        estimate_beside(scene, crossing, share, beyond, other)
-        if crossing.aside_mm
-        else _estimate(scene, crossing, route, share, beyond, other)
-    )
-    kind = _kind(crossing, scene.planes[crossing.plane].gaps[crossing.gap], route)
-    holes = stitches(crossing, scene.planes, other, scene.graph)
-    return Weighed(crossing, route, beyond, other, beside, share, value, kind, (crossing,), holes)
-
-
-def _route(scene: Scene, crossing: Crossing) -> Route:
-    return find_route(crossing, scene.planes, scene.terrains, scene.graph)
-
-
 def value_again(
     scene: Scene,
     crossings: Sequence[Crossing],
@@ -261,8 +212,8 @@ def value_again(
     What each adds and the noise in mV; None where there is no way back. Those that would be no
     finding are left out.
     """
-    weighed = [_look_at(scene, one) if all_of_them else _weigh(scene, one) for one in crossings]
-    beside = [item for one in with_them if not isinstance(item := _weigh(scene, one), str)]
+    weighed = [look_at(scene, one) if all_of_them else weigh(scene, one) for one in crossings]
+    beside = [item for one in with_them if not isinstance(item := weigh(scene, one), str)]
     others = _once_a_gap(beside)
     values: list[tuple[Inductance, float] | None] = []
     for item in _once_a_gap([item for item in weighed if not isinstance(item, str)]):
@@ -309,79 +260,8 @@ def _along_ns(scene: Scene, item: Weighed) -> float:
     layers = scene.board.stack.layers
     below = layers[crossing.plane - 1].er_below if crossing.plane < len(layers) else 1.0
     above = layers[crossing.plane - 2].er_below if crossing.plane > 1 else 1.0
-    reach_mm = max((_reach_mm(crossing, route, way) for way in ways), default=0.0)
-    return reach_mm * slot_ns_mm(above, below)
-
-
-def _kind(crossing: Crossing, gap: Gap, route: Route) -> Kind:
-    if crossing.aside_mm:
-        return "void-crossing"
-    if crossing.islands[0] != crossing.islands[1]:
-        return "split-crossing"
-    left, right = (min(route.reach_mm(way), 1e3) for way in (route.left, route.right))
-    if min(left, right) < EDGE_RATIO * crossing.run_mm:
-        return "edge-run" if gap.open else "void-crossing"
-    return "slot-crossing" if left + right >= SLOT_RATIO * crossing.run_mm else "void-crossing"
-
-
-def _estimate(
-    scene: Scene,
-    crossing: Crossing,
-    route: Route,
-    share: float,
-    beyond: int | None,
-    other: int | None,
-) -> Inductance | None:
-    heights = scene.board.stack
-    above = None if other is None else heights.height_mm(crossing.plane, other)
-    over = None
-    if above is not None and crossing.islands[0] != crossing.islands[1]:
-        islands = scene.planes[crossing.plane].islands
-        smaller = min(islands[i].shape.area for i in crossing.islands)
-        over = estimate.handed_over(above, smaller, share)
-    if not route.joined:
-        return over
-    round_gap = estimate.added(
-        (_reach_mm(crossing, route, route.left), _reach_mm(crossing, route, route.right)),
-        (_bridge_nh(scene, crossing, route.left), _bridge_nh(scene, crossing, route.right)),
-        crossing.run_mm,
-        heights.height_mm(crossing.layer, crossing.plane),
-        crossing.width_mm,
-        beyond_mm=None if beyond is None else heights.height_mm(crossing.plane, beyond),
-        above_mm=above,
-        share=share,
-    )
-    known = [value for value in (over, round_gap) if value is not None]
-    return min(known, key=lambda value: value.added_nh) if known else None
-
-
-def _reach_mm(crossing: Crossing, route: Route, way: Way | None) -> float:
-    """How far along the gap a way goes before it crosses, mm.
-
-    Over bridges that is where the leg between them crosses the gap: the way to them and back runs
-    along the trace, over copper that is whole.
-    """
-    ends = None if way is None else way.off_plane
-    if ends is None:
-        return route.reach_mm(way)
-    ahead = np.subtract(crossing.after, crossing.before)
-    ahead = ahead / (float(np.hypot(*ahead)) or 1.0)
-    (one, other) = (np.subtract(at, crossing.at) for at in ends)
-    before, after = float(one @ ahead), float(other @ ahead)
-    part = 0.5 if before == after else min(max(-before / (after - before), 0.0), 1.0)
-    x, y = one + part * (other - one)
-    return abs(float(y * ahead[0] - x * ahead[1]))
-
-
-def _bridge_nh(scene: Scene, crossing: Crossing, way: Way | None) -> float:
-    """What the bridges of a way add: parts as mounted, and the field between the two planes."""
-    if way is None or not (way.bridges or way.capacitors):
-        return 0.0
-    if way.bridge_layer in {0, crossing.plane}:
-        return way.parts_nh
-    (x0, y0), (x1, y1) = way.path[1], way.path[-2]
-    height = scene.board.stack.height_mm(crossing.plane, way.bridge_layer)
-    return way.parts_nh + estimate.via_pair_nh(float(np.hypot(x1 - x0, y1 - y0)), 0.3, height)
+    along_mm = max((reach_mm(crossing, route, way) for way in ways), default=0.0)
+    return along_mm * slot_ns_mm(above, below)
 
 
 def _finding(

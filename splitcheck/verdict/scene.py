@@ -58,6 +58,8 @@ class Weighed:
     """All runs that it stands for: one trace may pass over one gap several times."""
     stitches: tuple[Stitch, ...] = ()
     """Plated holes near them that join the plane with that on the trace's other side."""
+    by_holes: bool = False
+    """Whether the estimate is that of a return which goes over to the other plane by them."""
 
     @property
     def bare_mm(self) -> float:
