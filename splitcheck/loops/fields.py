@@ -37,6 +37,9 @@ class Field:
     that run the same way over the gap, whichever way the traces were drawn."""
     stray_db: float | None = None
     """How much more field a probe finds above the crossing; None under another plane."""
+    handed_over: float = 0.0
+    """Part of the trace's current that comes back over holes to the plane on its other side in
+    place of the broken one."""
 
 
 class Fields:
@@ -90,6 +93,7 @@ class Fields:
                     if j != i and not solution.cut_off[j]
                 ),
                 _stray_db(task, solution, i, traces[i], bridges),
+                task.part * _handed_over(solution, i, bridges),
             )
             for i, task in enumerate(tasks)
             if not solution.cut_off[i] and isfinite(float(solution.added_nh[i, i]))
@@ -179,6 +183,17 @@ def _same_way(one: Task, other: Task) -> float:
     """1 if two traces are drawn the same way over their gap, -1 if they run against one another."""
     ahead = [np.subtract(task.crossing.after, task.crossing.before) for task in (one, other)]
     return 1.0 if float(ahead[0] @ ahead[1]) >= 0.0 else -1.0
+
+
+def _handed_over(
+    solution: engine.Solution, number: int, bridges: Sequence[engine.ViaBridge | engine.Strap]
+) -> float:
+    """Current that leaves for the plane above, which is all that comes back from there."""
+    return sum(
+        max(float(amps), 0.0)
+        for bridge, amps in zip(bridges, solution.bridge_a[:, number], strict=True)
+        if isinstance(bridge, engine.ViaBridge) and bridge.above
+    )
 
 
 def _stray_db(

@@ -308,7 +308,7 @@ def _finding(
         source=Source(scene.board.layers[crossing.layer - 1].file, crossing.line),
         waived=None,
         fingerprint=fingerprint(item.kind, net, layers[crossing.layer - 1].name, at),
-        reason=reason(scene, item),
+        reason=reason(scene, item, _handed_over(item, field)),
         estimated_nh=None if apart is None else apart.added_nh,
         estimated_error_nh=None if apart is None else apart.error_nh,
         capped=capped,
@@ -329,6 +329,13 @@ def _corner_khz(scene: Scene, item: Weighed, field: Field | None) -> float | Non
         copper_um=stack.layers[crossing.plane - 1].copper_um,
         above_mm=None if layer is None else stack.height_mm(crossing.plane, layer),
     )
+
+
+def _handed_over(item: Weighed, field: Field | None) -> float:
+    """Part of the return on the broken plane that gets past the gap on the other plane."""
+    if field is None:
+        return 1.0 if item.by_holes else 0.0
+    return min(field.handed_over / item.share, 1.0)
 
 
 def _disagreement(first: Inductance | None, field: Field | None) -> Inductance | None:

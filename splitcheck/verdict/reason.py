@@ -12,10 +12,21 @@ from splitcheck.verdict.scene import Scene, Weighed
 #: A capacitor helps if it is no farther off than this for each ns of rise time, mm/ns: 1 inch
 #: (S. Weir, si-list, 16 Oct 2008; L. Smith there on 22 Sep 1999 has three inches, to and fro).
 MM_PER_NS = 25.0
+#: A part of the return that is less than this is not told, and one that is more is all of it.
+LEAST_SHARE, MOST = 0.1, 0.995
 
 
-def reason(scene: Scene, item: Weighed) -> str:
-    """What is missing, where the return goes instead, and what else bears on it."""
+def reason(scene: Scene, item: Weighed, handed_over: float = 0.0) -> str:
+    """What is missing, where the return goes instead, and what else bears on it.
+
+    Parameters
+    ----------
+    scene, item
+        The board and the crossing.
+    handed_over
+        Part of the return on the broken plane, 0 to 1, that gets past the gap on the plane on the
+        trace's other side.
+    """
     crossing = item.crossing
     plane = scene.planes[crossing.plane]
     one, other = (plane.islands[i] for i in crossing.islands)
@@ -27,14 +38,15 @@ def reason(scene: Scene, item: Weighed) -> str:
         )
     elif crossing.aside_mm:
         start = beside_in_words(scene, item)
-        return "; ".join([start, *_extras(scene, item)])
+        return "; ".join([start, *_extras(scene, item, handed_over)])
     else:
         start = (
             f"{name} ({in_words(one.net_name)}) is open for {item.bare_mm:.2f} mm under the trace"
         )
         if len(item.runs) > 1:
             start += f", in {len(item.runs)} places"
-    return "; ".join([start, _way_in_words(scene, item), *_extras(scene, item)])
+    way = _way_in_words(scene, item)
+    return "; ".join([start, way, *_extras(scene, item, handed_over)])
 
 
 def beside_in_words(scene: Scene, item: Weighed) -> str:
@@ -113,11 +125,29 @@ def _parts_in_words(scene: Scene, item: Weighed, way: Way, over: str) -> str:
     return words
 
 
-def _extras(scene: Scene, item: Weighed) -> list[str]:
+def _over_in_words(scene: Scene, item: Weighed, handed_over: float) -> str:
+    """How much of the return gets past the gap on the other plane, and where it goes over."""
+    assert item.other is not None
+    ends = (item.crossing.path[0], item.crossing.path[-1])
+    far, (x, y) = min(
+        (min(hypot(hole.at[0] - end[0], hole.at[1] - end[1]) for end in ends), hole.at)
+        for hole in item.stitches
+    )
+    much = "all" if handed_over > MOST else f"{100 * handed_over:.0f} %"
+    name = scene.board.stack.layers[item.other - 1].name
+    return (
+        f"{much} of that gets past the gap on {name}, over plated holes of which the nearest is "
+        f"{far:.1f} mm from it at ({x:.2f}, {y:.2f})"
+    )
+
+
+def _extras(scene: Scene, item: Weighed, handed_over: float) -> list[str]:
     extras = []
     names = [layer.name for layer in scene.board.stack.layers]
     if item.share < 1.0:
         extras.append(f"{100 * item.share:.0f} % of the return flows on this plane")
+        if handed_over >= LEAST_SHARE and item.stitches:
+            extras.append(_over_in_words(scene, item, handed_over))
     if item.beyond is not None:
         apart = scene.board.stack.height_mm(item.crossing.plane, item.beyond)
         extras.append(
