@@ -281,3 +281,85 @@ def test_judging_twice_gives_the_same() -> None:
     lines = [_across(11 + n, f"D{n}") for n in range(6)]
     made = _made(lines, _cut(SLOT, shapely.box(10, 4, 10.5, 22)))
     assert _judged(made) == _judged(made)
+
+
+def _stripline(cut: Polygon, *holes: tuple[float, float], over: str = "GND") -> Board:
+    """A trace 0.2 mm over a broken plane and 0.6 mm under a whole one, of this net.
+
+    Where that is another net than the broken plane's, holes go through antipads in it.
+    """
+    top = WHOLE if over == "GND" else WHOLE.difference(_dots(holes))
+    return board(
+        Sheet(((over, top),)),
+        Sheet(lines=(_across(),)),
+        _cut(cut),
+        holes=[via(x, y) for x, y in holes],
+        heights_mm=(0.6, 0.2),
+        outline=WHOLE,
+    )
+
+
+def _dots(places: Sequence[tuple[float, float]]) -> shapely.Geometry:
+    return shapely.union_all([_disc(x, y, 1.0) for x, y in places])
+
+
+#: Plated holes 1 mm from either rim of the slot, beside the trace.
+STITCHED = [(x, y) for x in (18.5, 21.5) for y in (14.0, 16.0)]
+
+
+def test_stripline_stitched_close_by_gets_past_the_slot_on_the_other_plane() -> None:
+    """Twins: the same slot, with and without plated holes between the two planes."""
+    (bare,), _ = _judged(_stripline(SLOT))
+    (stitched,), _ = _judged(_stripline(SLOT, *STITCHED))
+    assert (bare.method, stitched.method) == ("solved", "solved")
+    assert bare.added_nh is not None
+    assert stitched.added_nh is not None
+    assert stitched.added_nh < 0.75 * bare.added_nh
+    assert "gets past the gap on L1" in stitched.reason
+    assert "the nearest is 1.4 mm from it" in stitched.reason
+    assert "gets past" not in bare.reason
+    # closed forms and solve agree, as they know the same ways
+    assert (bare.estimated_nh, stitched.estimated_nh) == (None, None)
+
+
+@pytest.mark.parametrize(
+    "made",
+    [
+        pytest.param(_stripline(SLOT, *[(x, 5.0) for x in (2.0, 38.0)]), id="stitched far away"),
+        pytest.param(_stripline(SLOT, *STITCHED, over="VCC"), id="of another net"),
+        pytest.param(_stripline(SLOT, (18.5, 14.0)), id="stitched on one side"),
+    ],
+)
+def test_stripline_whose_other_plane_is_not_stitched_nearby_keeps_its_value(made: Board) -> None:
+    """A whole plane is no way back by itself."""
+    (bare,), _ = _judged(_stripline(SLOT))
+    (found,), _ = _judged(made)
+    assert bare.added_nh is not None
+    assert found.added_nh == pytest.approx(bare.added_nh, rel=0.03)
+    assert "gets past" not in found.reason
+
+
+def test_split_under_a_stripline_is_solved_over_the_holes() -> None:
+    """Twins again, the islands apart: with holes a solved number, without the old bound."""
+    split = shapely.box(19.5, -1, 20.5, 31)
+    (stitched,), _ = _judged(_stripline(split, *STITCHED))
+    (bare,), _ = _judged(_stripline(split))
+    assert (stitched.kind, bare.kind) == ("split-crossing", "split-crossing")
+    assert (stitched.method, bare.method) == ("solved", "estimated")
+    assert "all of that gets past the gap on L1" in stitched.reason
+    (slot,), _ = _judged(_stripline(SLOT, *STITCHED))
+    assert slot.added_nh is not None
+    assert stitched.added_nh is not None
+    assert slot.added_nh < stitched.added_nh < 1.0
+    assert stitched.estimated_nh is None
+
+
+def test_more_holes_to_the_other_plane_never_make_it_worse() -> None:
+    """Holes farther off help less than those close by, and all together most."""
+    far = [(x, y) for x in (16.0, 24.0) for y in (11.0, 19.0)]
+    values = []
+    for holes in ([], far, STITCHED, [*far, *STITCHED]):
+        (found,), _ = _judged(_stripline(SLOT, *holes))
+        assert found.added_nh is not None
+        values.append(found.added_nh)
+    assert values[0] > values[1] > values[2] >= values[3] - 1e-9
