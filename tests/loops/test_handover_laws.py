@@ -74,9 +74,11 @@ def test_holes_to_either_plane_do_not_hinder_one_another() -> None:
     down = [ViaBridge(Point(at), 0.3) for at in _holes(1.0, 1.0, 0.7)]
     up = [ViaBridge(Point(at), 0.3, above=True) for at in _holes(1.0, 1.0, 0.7)]
     strap = Strap(LineString([(-1, 3), (1, 3)]), 0.5, 0.3, 0.5)
+    several: list[list[ViaBridge | Strap]] = [[], [*down], [*up], [*up, *down]]
+    several.append([strap, *up, *down])
     values = [
         added([gap], [trace], HIGH, above_mm=APART, beyond_mm=0.5, bridges=some).of(0)
-        for some in ([], down, up, [*up, *down], [strap, *up, *down])
+        for some in several
     ]
     none, below, above, both, all_three = (value or 0.0 for value in values)
     assert 0 < all_three < both < min(below, above)

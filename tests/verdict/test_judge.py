@@ -289,6 +289,7 @@ def _stripline(cut: Polygon, *holes: tuple[float, float], over: str = "GND") -> 
     Where that is another net than the broken plane's, holes go through antipads in it.
     """
     top = WHOLE if over == "GND" else WHOLE.difference(_dots(holes))
+    assert isinstance(top, Polygon)
     return board(
         Sheet(((over, top),)),
         Sheet(lines=(_across(),)),
