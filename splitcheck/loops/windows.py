@@ -97,9 +97,11 @@ def look_at(
         along = [] if narrow or all_held else _along_rim(task, gap)
         hulls = (shapely.get_coordinates(way.convex_hull) for way in along)
         points.extend(to_point(at) for hull in hulls for at in hull)
-        if not (seen or along or (parts_islands(task) and task.stitches)):
+        # holes to the plane on the other side are ways on both sides, and both planes keep flux near
+        stitched = parts_islands(task) and bool(task.stitches)
+        if not (seen or along or stitched):
             return None
-        one_sided |= len(found) < 2 or not (all_held or len(along) == 2)
+        one_sided |= not stitched and (len(found) < 2 or not (all_held or len(along) == 2))
     shut = tasks[0].beyond is not None or tasks[0].other is not None
     return windows_of(
         points, gap, tasks[0].height_mm, one_sided=one_sided, shut=shut, narrow=narrow
