@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from splitcheck.loops.outlines import Ints
 from splitcheck.units import Floats
 
 #: Image terms summed one by one; the rest of the series is added in closed form. With two, f is
@@ -54,17 +55,48 @@ def outline_potential(x: Floats, y: Floats, edges: Floats) -> Floats:
     >>> outline_potential(np.array([[0.5]]), np.array([[0.5]]), square).round(4)
     array([[3.5255]])
     """
-    total = np.zeros_like(x)
-    for number in range(edges.shape[1]):
-        x1, y1, x2, y2 = (edges[:, number, axis, None] for axis in range(4))
-        along_x, along_y = x2 - x1, y2 - y1
-        length = np.hypot(along_x, along_y)
-        from_x, from_y = x - x1, y - y1
-        reach = np.sqrt(from_x**2 + from_y**2) + np.sqrt((x - x2) ** 2 + (y - y2) ** 2)
-        ratio = length / np.maximum(reach, 1e-300)
-        ratio = np.minimum(ratio, 1.0 - 1e-15)
-        distance = (along_x * from_y - along_y * from_x) / np.maximum(length, 1e-300)
-        total += 2.0 * distance * np.arctanh(ratio)
+    real = (edges[:, :, :2] != edges[:, :, 2:]).any(axis=2)
+    # one edge each at least, so that every sum has a term
+    real[:, 0] = True
+    count = real.sum(axis=1)
+    return edges_potential(x, y, edges[real], np.cumsum(count) - count)
+
+
+def edges_potential(x: Floats, y: Floats, edges: Floats, first: Ints) -> Floats:
+    """`outline_potential` of outlines of any number of edges, laid one after another.
+
+    Parameters
+    ----------
+    x, y
+        Points, shape (k, p), mm.
+    edges
+        Edges of all outlines, shape (e, 4).
+    first
+        Number of the first edge of each outline, rising, shape (k,).
+
+    Returns
+    -------
+    Integral of 1/r over the sheets, shape (k, p), mm.
+    """
+    if not len(first):
+        return np.zeros_like(x)
+    owner = np.repeat(np.arange(len(first)), np.diff(first, append=len(edges)))
+    x1, y1, x2, y2 = edges.T[:, :, None]
+    along_x, along_y = x2 - x1, y2 - y1
+    length = np.sqrt(along_x * along_x + along_y * along_y)
+    x, y = x[owner], y[owner]
+    from_x, from_y = x - x1, y - y1
+    reach = np.sqrt(from_x * from_x + from_y * from_y)
+    distance = along_x * from_y
+    distance -= along_y * from_x
+    distance /= np.maximum(length, 1e-300)
+    x -= x2
+    y -= y2
+    reach += np.sqrt(x * x + y * y)
+    np.maximum(reach, 1e-300, out=reach)
+    ratio = (reach + length) / np.maximum(reach - length, 1e-15 * reach)
+    distance *= np.log(ratio)
+    total: Floats = np.add.reduceat(distance, first, axis=0)
     return total
 
 
@@ -107,12 +139,27 @@ def plate_images_squared(square: Floats, plate_mm: float) -> Floats:
     place -= step
     place *= np.take(_TABLE_RISE, step)
     place += np.take(_TABLE, step)
-    far = np.flatnonzero(x2 >= _TABLED**2)
-    if len(far):
-        beyond = x2.ravel()[far]
-        place.ravel()[far] = -np.log(beyond) - 1.0 / np.sqrt(beyond)
+    far = x2 >= _TABLED**2
+    if far.any():
+        beyond = x2[far]
+        place[far] = -np.log(beyond) - 1.0 / np.sqrt(beyond)
     place /= 2.0 * plate_mm
     return place
+
+
+def images_rise(square: Floats, plate_mm: float) -> tuple[Floats, Floats]:
+    """First and second derivative of `plate_images_squared` by the square, 1/mm^3 and 1/mm^5."""
+    per_mm2 = 0.25 / plate_mm**2
+    x2 = square * per_mm2
+    place = np.clip(x2 * _PER_STEP, 0.5, _STEPS - 1.5)
+    step = place.astype(np.int32)
+    place -= step
+    # a rise is that of the middle of its step
+    before = np.where(place < 0.5, np.maximum(step - 1, 0), step)
+    low, high = np.take(_TABLE_RISE, before), np.take(_TABLE_RISE, before + 1)
+    first = low + (high - low) * np.where(place < 0.5, place + 0.5, place - 0.5)
+    scale = _PER_STEP * per_mm2 / (2.0 * plate_mm)
+    return first * scale, (high - low) * _PER_STEP * per_mm2 * scale
 
 
 def _tabled_images() -> tuple[Floats, Floats]:

@@ -8,7 +8,13 @@ import numpy as np
 from numpy.polynomial.legendre import leggauss
 from numpy.typing import NDArray
 
-from splitcheck.loops.kernels import outline_potential, plate_images_squared, rectangle_self
+from splitcheck.loops.kernels import (
+    edges_potential,
+    images_rise,
+    outline_potential,
+    plate_images_squared,
+    rectangle_self,
+)
 from splitcheck.loops.outlines import Ints
 from splitcheck.loops.panels import Panels
 from splitcheck.units import Floats
@@ -17,48 +23,57 @@ from splitcheck.units import Floats
 _TOUCHING = 1.05
 #: these by four points each, and all others by their second moments.
 _NEARBY = 2.0
+#: Panels whose radii add up to less than this part of the distance of a plane see its images by
+#: their second moments as well.
+_SMALL = 1.0
 #: Rows of the matrix that are filled at a time.
 _BLOCK = 48
 
 
 def interaction(panels: Panels, plates_mm: Sequence[float]) -> Floats:
-    """Mean of g_up + g_down between all pairs of panels, shape (n, n), 1/mm."""
-    matrix = _free(panels)
-    matrix *= 2.0
-    if plates_mm:
-        matrix += _images(panels, plates_mm)
-    return matrix
+    """Mean of g_up + g_down between all pairs of panels, shape (n, n), 1/mm.
 
-
-def _free(panels: Panels) -> Floats:
-    """Mean of 1/r between all pairs, by how far apart they are."""
+    With planes it is so up to a constant, which counts nothing for gaps without net flux.
+    """
     count = len(panels)
     matrix = np.empty((count, count))
     if not count:
         return matrix
+    constant = _constant(panels, plates_mm)
     pairs: list[tuple[Ints, Ints, NDArray[np.bool_]]] = []
     for start in range(0, count, _BLOCK):
         # only the upper half, a strip of rows at a time that stays in the cache
         rows, block = slice(start, start + _BLOCK), slice(start, None)
-        far, close, touching = _by_moments(panels, rows, block)
+        far, square, close, touching = _by_moments(panels, rows, block)
+        far *= 2.0
+        for plate in plates_mm:
+            far += plate_images_squared(square, plate)
+        far += constant
         matrix[rows, block] = far
         matrix[block, rows] = far.T
-        first, second = np.nonzero(np.triu(close, 1))
+        first, second = np.nonzero(close)
+        ahead = second > first
+        first, second = first[ahead], second[ahead]
         pairs.append((first + start, second + start, touching[first, second]))
-    first, second, touch = (np.concatenate(part) for part in zip(*pairs, strict=True))
-    i, j = first[~touch], second[~touch]
-    matrix[i, j] = matrix[j, i] = _by_points(panels, i, j)
-    i, j = first[touch], second[touch]
-    matrix[i, j] = matrix[j, i] = _by_outline(panels, i, j)
-    diagonal = np.arange(count)
-    matrix[diagonal, diagonal] = _self(panels)
+    i, j, touch = (np.concatenate(part) for part in zip(*pairs, strict=True))
+    own = np.arange(count)
+    by_points = _by_points(panels, i[~touch], j[~touch])
+    by_outline, by_own = _by_outline(panels, i[touch], j[touch])
+    matrix[i[~touch], j[~touch]] = 2.0 * by_points
+    matrix[i[touch], j[touch]] = 2.0 * by_outline
+    matrix[own, own] = 2.0 * by_own + constant
+    matrix[i, j] += constant
+    for plate in plates_mm:
+        matrix[i, j] += _images(panels, i, j, plate)
+        matrix[own, own] += _own_images(panels, plate)
+    matrix[j, i] = matrix[i, j]
     return matrix
 
 
 def _by_moments(
     panels: Panels, rows: slice, block: slice
-) -> tuple[Floats, NDArray[np.bool_], NDArray[np.bool_]]:
-    """Mean of 1/r by second moments, and which pairs are too close for it, or even touch.
+) -> tuple[Floats, Floats, NDArray[np.bool_], NDArray[np.bool_]]:
+    """Mean of 1/r by second moments, squares of r, and pairs too close for it, or even touching.
 
     With the second moments T of both panels <1/r> = 1/R + (T : grad grad 1/R)/2.
     """
@@ -81,53 +96,47 @@ def _by_moments(
     bend /= square
     bend += 1.0
     bend /= np.sqrt(square)
-    return bend, close, touching
+    return bend, square, close, touching
 
 
 def _by_points(panels: Panels, i: Ints, j: Ints) -> Floats:
     total = np.zeros(len(i))
-    for a in range(4):
-        dx = panels.points[i, a, None, 0] - panels.points[j, :, 0]
-        dy = panels.points[i, a, None, 1] - panels.points[j, :, 1]
-        total += (1.0 / np.sqrt(dx * dx + dy * dy)).sum(axis=1)
+    for square in _squares(panels, i, j):
+        total += (1.0 / np.sqrt(square)).sum(axis=0)
     return total / 16.0
 
 
-def _by_outline(panels: Panels, i: Ints, j: Ints) -> Floats:
-    """Closed form of the larger panel at the points of the smaller."""
+def _squares(panels: Panels, i: Ints, j: Ints) -> Sequence[Floats]:
+    """Squared distances of each of the four points of one panel from all four of the other."""
+    (x1, y1), (x2, y2) = panels.points[i].T, panels.points[j].T
+    return [(x1[a] - x2) ** 2 + (y1[a] - y2) ** 2 for a in range(4)]
+
+
+def _by_outline(panels: Panels, i: Ints, j: Ints) -> tuple[Floats, Floats]:
+    """Closed form of the larger panel at the points of the smaller; and of each at its own."""
     swap = panels.area[i] > panels.area[j]
     small, large = np.where(swap, j, i), np.where(swap, i, j)
-    return _potential_at(panels, small, large)
+    own = np.arange(len(panels))
+    mean = _potential_at(panels, np.concatenate([small, own]), np.concatenate([large, own]))
+    # four points read the mean of a rectangle's own potential a little high: take that out
+    a, b = panels.sides.T
+    own_mean = mean[len(i) :] * rectangle_self(a, b) / _four_points(a, b)
+    return mean[: len(i)], own_mean
 
 
 def _potential_at(panels: Panels, target: Ints, source: Ints) -> Floats:
-    sides = _sides(panels)[source]
-    out = np.zeros(len(target))
-    at = panels.points[target]
-    for low, high in ((0, 4), (4, 6), (6, 10), (10, 10**6)):
-        pick = np.flatnonzero((sides > low) & (sides <= high))
-        if len(pick):
-            width = min(high, panels.edges.shape[1])
-            value = outline_potential(
-                at[pick, :, 0], at[pick, :, 1], panels.edges[source[pick], :width]
-            )
-            out[pick] = value.mean(axis=1)
-    return out / panels.area[source]
-
-
-def _sides(panels: Panels) -> Ints:
-    e = panels.edges
-    real = (e[:, :, 0] != e[:, :, 2]) | (e[:, :, 1] != e[:, :, 3])
-    return np.where(real.any(1), e.shape[1] - np.argmax(real[:, ::-1], axis=1), 0)
-
-
-def _self(panels: Panels) -> Floats:
-    own = np.arange(len(panels))
-    rough = _potential_at(panels, own, own)
-    # four points read the mean of a rectangle's own potential a little high: take that out
-    a, b = panels.sides.T
-    own_mean: Floats = rough * rectangle_self(a, b) / _four_points(a, b)
-    return own_mean
+    """Mean potential of panels over the four points of others."""
+    real = (panels.edges[:, :, :2] != panels.edges[:, :, 2:]).any(axis=2)
+    real[:, 0] = True
+    count = real.sum(axis=1)
+    begin = np.cumsum(count) - count
+    first = np.cumsum(count[source]) - count[source]
+    which = np.repeat(begin[source] - first, count[source])
+    which += np.arange(len(which))
+    x, y = np.moveaxis(panels.points[target], 2, 0)
+    value = edges_potential(x, y, panels.edges[real][which], first)
+    mean: Floats = value.mean(axis=1) / panels.area[source]
+    return mean
 
 
 def _four_points(a: Floats, b: Floats) -> Floats:
@@ -142,39 +151,32 @@ def _four_points(a: Floats, b: Floats) -> Floats:
     return mean
 
 
-def _images(panels: Panels, plates_mm: Sequence[float]) -> Floats:
-    """Mean of the image series between all pairs, up to a constant."""
-    count = len(panels)
-    total = np.empty((count, count))
-    pairs: list[tuple[Ints, Ints]] = []
-    constant = _constant(panels, plates_mm)
-    for start in range(0, count, _BLOCK):
-        rows, block = slice(start, start + _BLOCK), slice(start, None)
-        at, moved = panels.centre[rows, None], panels.centre[None, block]
-        square = (at[:, :, 0] - moved[:, :, 0]) ** 2 + (at[:, :, 1] - moved[:, :, 1]) ** 2
-        reach = panels.radius[rows, None] + panels.radius[None, block]
-        first, second = np.nonzero(np.triu(square < (_NEARBY * reach) ** 2, 1))
-        pairs.append((first + start, second + start))
-        far = sum((plate_images_squared(square, plate) for plate in plates_mm), constant)
-        total[rows, block] = far
-        total[block, rows] = far.T
-    first, second = (np.concatenate(part) for part in zip(*pairs, strict=True))
-    close = np.zeros(len(first))
-    for a in range(4):
-        dx, dy = np.moveaxis(panels.points[first, a, None] - panels.points[second], 2, 0)
-        square = dx * dx + dy * dy
-        close += sum(plate_images_squared(square, plate).sum(axis=1) for plate in plates_mm)
-    total[first, second] = total[second, first] = close / 16.0 + constant
-    own = np.arange(count)
-    total[own, own] = sum((_own_images(panels, plate) for plate in plates_mm), constant)
-    return total
+def _images(panels: Panels, i: Ints, j: Ints, plate: float) -> Floats:
+    """Mean of the image series between pairs of panels that are close.
+
+    A function of the square s of the distance d has the mean K + K' tr T + 2 K'' d.T d over panels
+    with the second moments T; images are smooth where panels are small against their distance.
+    """
+    small = panels.radius[i] + panels.radius[j] < _SMALL * plate
+    value = np.empty(len(i))
+    k, m = i[small], j[small]
+    x, y = (panels.centre[k] - panels.centre[m]).T
+    xx, xy, yy = (panels.spread[k] + panels.spread[m]).T
+    square = x * x + y * y
+    rise, bend = images_rise(square, plate)
+    value[small] = plate_images_squared(square, plate) + rise * (xx + yy)
+    value[small] += 2.0 * bend * (x * x * xx + 2.0 * x * y * xy + y * y * yy)
+    total = np.zeros(len(i) - len(k))
+    for square in _squares(panels, i[~small], j[~small]):
+        total += plate_images_squared(square, plate).sum(axis=0)
+    value[~small] = total / 16.0
+    return value
 
 
-def _constant(panels: Panels, plates_mm: Sequence[float]) -> Floats:
+def _constant(panels: Panels, plates_mm: Sequence[float]) -> float:
     """A constant that keeps the sum positive; it counts nothing for gaps without net flux."""
-    far = float(np.hypot(*np.ptp(panels.centre, axis=0))) if len(panels) else 1.0
-    parts = [(np.log(max(far / (2 * plate), 1.0)) + 4.0) / plate for plate in plates_mm]
-    return np.array(sum(parts))
+    far = float(np.hypot(*np.ptp(panels.centre, axis=0)))
+    return float(sum((np.log(max(far / (2 * plate), 1.0)) + 4.0) / plate for plate in plates_mm))
 
 
 def _own_images(panels: Panels, plate: float) -> Floats:

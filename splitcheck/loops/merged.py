@@ -29,7 +29,7 @@ def merged(panels: Panels) -> Ints:
     Examples
     --------
     >>> from shapely import LineString, box
-    >>> from splitcheck.loops.cells import Grading
+    >>> from splitcheck.loops.grading import Grading
     >>> from splitcheck.loops.panels import cut
     >>> slot, trace = box(-0.2, -4, 0.2, 4), LineString([(-9, 0), (9, 0)])
     >>> panels = cut([slot], Grading((trace,), near_mm=0.2))

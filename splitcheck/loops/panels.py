@@ -10,8 +10,10 @@ import shapely
 from numpy.typing import NDArray
 from shapely import Polygon
 
-from splitcheck.loops.cells import Cuts, Grading, laid, stacked
+from splitcheck.loops.cells import laid
+from splitcheck.loops.grading import Grading
 from splitcheck.loops.outlines import Ints, axes, edges_of, moments
+from splitcheck.loops.pieces import Cuts, stacked
 from splitcheck.units import Floats
 
 #: A panel at the rim is widened by this part of its thickness there. The density rises towards

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from shapely import LineString, Point, Polygon
 
 from splitcheck.errors import SplitcheckError
-from splitcheck.loops.cells import Grading, TooManyPanelsError
+from splitcheck.loops.grading import Grading, TooManyPanelsError
 from splitcheck.loops.matrix import interaction
 from splitcheck.loops.merged import merged, on_merged
 from splitcheck.loops.outlines import Ints

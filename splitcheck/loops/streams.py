@@ -10,7 +10,7 @@ import numpy as np
 import shapely
 from shapely import LineString, Polygon
 
-from splitcheck.loops.cells import Grading
+from splitcheck.loops.grading import Grading
 from splitcheck.loops.kernels import outline_potential, plate_images_squared, wall_source
 from splitcheck.loops.panels import Panels, cut
 from splitcheck.loops.solve import Solution, Strap, TraceOver, ViaBridge

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from shapely import LineString, box
 
-from splitcheck.loops.cells import Grading
+from splitcheck.loops.grading import Grading
 from splitcheck.loops.matrix import interaction
 from splitcheck.loops.merged import merged, on_merged
 from splitcheck.loops.panels import cut

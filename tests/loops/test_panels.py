@@ -10,7 +10,7 @@ from hypothesis import strategies as st
 from shapely import LineString, Point, Polygon, box
 from shapely.affinity import rotate
 
-from splitcheck.loops.cells import Grading, TooManyPanelsError
+from splitcheck.loops.grading import Grading, TooManyPanelsError
 from splitcheck.loops.panels import Panels, cut
 
 TRACE = LineString([(-20, 0), (20, 0)])

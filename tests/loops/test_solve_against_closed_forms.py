@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from shapely import LineString, Point, Polygon, box
 
-from splitcheck.loops.cells import Grading
+from splitcheck.loops.grading import Grading
 from splitcheck.loops.matrix import interaction
 from splitcheck.loops.panels import cut
 from splitcheck.loops.share import via_matrix

@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 from shapely import LineString, Point, Polygon, box
 from shapely.affinity import rotate, translate
 
-from splitcheck.loops.cells import Grading
+from splitcheck.loops.grading import Grading
 from splitcheck.loops.matrix import interaction
 from splitcheck.loops.panels import cut
 from splitcheck.loops.solve import Solution, Strap, TraceOver, added
