@@ -38,15 +38,18 @@ def reason(scene: Scene, item: Weighed, handed_over: float = 0.0) -> str:
         )
     elif crossing.aside_mm:
         start = beside_in_words(scene, item)
-        return "; ".join([start, *_extras(scene, item, handed_over)])
+        return "; ".join([start, *_shares(scene, item, handed_over), *_extras(scene, item)])
     else:
         start = (
             f"{name} ({in_words(one.net_name)}) is open for {item.bare_mm:.2f} mm under the trace"
         )
         if len(item.runs) > 1:
             start += f", in {len(item.runs)} places"
-    way = _way_in_words(scene, item)
-    return "; ".join([start, way, *_extras(scene, item, handed_over)])
+    shares, extras = _shares(scene, item, handed_over), _extras(scene, item)
+    if len(shares) < 2:
+        return "; ".join([start, _way_in_words(scene, item), *shares, *extras])
+    who = "it would else walk" if handed_over > MOST else "the rest walks"
+    return "; ".join([start, *shares, _way_in_words(scene, item, who), *extras])
 
 
 def beside_in_words(scene: Scene, item: Weighed) -> str:
@@ -64,7 +67,7 @@ def beside_in_words(scene: Scene, item: Weighed) -> str:
     return f"{start}; the return is crowded onto the copper that is left"
 
 
-def _way_in_words(scene: Scene, item: Weighed) -> str:
+def _way_in_words(scene: Scene, item: Weighed, who: str = "the return walks") -> str:
     route = item.route
     best = route.best
     if not route.joined or best is None:
@@ -84,7 +87,7 @@ def _way_in_words(scene: Scene, item: Weighed) -> str:
         if one.net == other.net:
             return f"{nothing} joins the two sides: the net comes together by traces elsewhere"
         return f"{nothing} joins the two sides: no galvanic way back"
-    more = f"the return walks {route.detour_mm or 0.0:.1f} mm more"
+    more = f"{who} {route.detour_mm or 0.0:.1f} mm more"
     over = ""
     if best.bridge_layer:
         over = f" on {scene.board.stack.layers[best.bridge_layer - 1].name}"
@@ -141,13 +144,19 @@ def _over_in_words(scene: Scene, item: Weighed, handed_over: float) -> str:
     )
 
 
-def _extras(scene: Scene, item: Weighed, handed_over: float) -> list[str]:
+def _shares(scene: Scene, item: Weighed, handed_over: float) -> list[str]:
+    """How much of the return is concerned, and how much of it gets past on the other plane."""
+    if item.share >= 1.0:
+        return []
+    shares = [f"{100 * item.share:.0f} % of the return flows on this plane"]
+    if handed_over >= LEAST_SHARE and item.stitches:
+        shares.append(_over_in_words(scene, item, handed_over))
+    return shares
+
+
+def _extras(scene: Scene, item: Weighed) -> list[str]:
     extras = []
     names = [layer.name for layer in scene.board.stack.layers]
-    if item.share < 1.0:
-        extras.append(f"{100 * item.share:.0f} % of the return flows on this plane")
-        if handed_over >= LEAST_SHARE and item.stitches:
-            extras.append(_over_in_words(scene, item, handed_over))
     if item.beyond is not None:
         apart = scene.board.stack.height_mm(item.crossing.plane, item.beyond)
         extras.append(
