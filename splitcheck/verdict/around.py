@@ -12,6 +12,7 @@ from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Gap
 from splitcheck.planes.shadows import nearest_cover
 from splitcheck.units import Floats
+from splitcheck.verdict.coplanar import carries_past
 from splitcheck.verdict.scene import Scene
 
 #: A net's own antipad is at most this much wider than its hole, mm; more is a field of antipads.
@@ -26,6 +27,8 @@ CHANGE_RATIO = 10.0
 MOSTLY = 0.8
 #: Why such a run is no crossing: it is judged as a change of plane.
 LONG_RUN = "long runs over another whole plane (changes of plane)"
+#: Why a crossing with copper beside the trace is none.
+COPLANAR = "crossings beside reference copper of the trace's own layer"
 #: A line wider than so many times its height is below some 15 ohm: no signal (common practice).
 SUPPLY_RATIO = 10.0
 #: So many heights along a trace the return takes to come to a farther plane.
@@ -46,6 +49,7 @@ def exempt(scene: Scene, crossing: Crossing) -> str | None:
     (4) The line is so wide for its height that it carries supply, not signals.
     (5) A nearer plane carries the return before or after: the run lies in a gap of that plane, and
     over so short a way the return does not come down to this one.
+    (6) Copper beside the trace, in its own layer, carries the return past the gap.
     """
     plane = scene.planes[crossing.plane]
     gap = plane.gaps[crossing.gap]
@@ -60,6 +64,8 @@ def exempt(scene: Scene, crossing: Crossing) -> str | None:
         return "crossings of farther planes inside a gap of a nearer one"
     if crossing.run_mm >= CHANGE_RUN_MM and _changes_plane(scene, crossing):
         return LONG_RUN
+    if carries_past(scene, crossing):
+        return COPLANAR
     return None
 
 
