@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from math import isfinite
+from typing import NamedTuple
 
 import numpy as np
 
@@ -14,13 +15,13 @@ from splitcheck.loops import solve as engine
 from splitcheck.loops.bridges import IslandGraph
 from splitcheck.loops.clusters import near_one_another
 from splitcheck.loops.estimate import Inductance
-from splitcheck.loops.openings import Openings, outside_of, too_ragged
+from splitcheck.loops.openings import Openings, outside_of
 from splitcheck.loops.spans import Spans
 from splitcheck.loops.stray import stray_db
 from splitcheck.loops.streams import Flow, flow_of, over_whole_plane
 from splitcheck.loops.stretches import trace_over, within_window
 from splitcheck.loops.tasks import Task, parts_islands
-from splitcheck.loops.windows import look_at
+from splitcheck.loops.windows import Windows, look_at
 from splitcheck.planes.islands import Plane
 
 #: A solve whose panels would have to be made coarser than this is worth less than a closed form.
@@ -40,6 +41,21 @@ class Field:
     handed_over: float = 0.0
     """Part of the trace's current that comes back over holes to the plane on its other side in
     place of the broken one."""
+
+
+class _Look(NamedTuple):
+    """How far a solve looks."""
+
+    windows: Windows
+    loose: bool
+    """Whether flux may leave where the window cuts the crossed gap off."""
+
+
+class _Solved(NamedTuple):
+    """A solve, and the traces as they would be if no window had cut them off."""
+
+    solution: engine.Solution
+    traces: Sequence[engine.TraceOver]
 
 
 class Fields:
@@ -65,18 +81,17 @@ class Fields:
         back for, because the way it would have to take leads over more layers than it knows, and
         those with more gaps round them than it can take.
         """
-        first = tasks[0].crossing
-        plane = self.planes[first.plane]
-        traces = [trace_over(task, plane.gaps[first.gap].shape) for task in tasks]
         bridges = self._spans.of(tasks)
-        solution = self._solution(tasks, traces, bridges)
-        nearer = [] if solution is not None else near_one_another(tasks, 0.0)
+        wide = self._look_at(tasks, bridges, narrow=False)
+        solved = self._solved(tasks, bridges, wide)
+        nearer = [] if solved is not None else near_one_another(tasks, 0.0)
         if len(nearer) > 1:
             return {number: field for part in nearer for number, field in self.solve(part).items()}
-        if solution is None:
-            solution = self._solution(tasks, traces, bridges, narrow=True)
-        if solution is None:
+        if solved is None:
+            solved = self._solved_narrowly(tasks, bridges, wide)
+        if solved is None:
             return {}
+        solution, traces = solved
         return {
             task.number: Field(
                 Inductance(
@@ -107,17 +122,17 @@ class Fields:
         The flow; None where `solve` leaves the crossing out as well.
         """
         crossing = task.crossing
-        traces = [trace_over(task, self.planes[crossing.plane].gaps[crossing.gap].shape)]
         bridges = self._spans.of([task])
-        solution = self._solution([task], traces, bridges)
-        if solution is None:
-            solution = self._solution([task], traces, bridges, narrow=True)
-        if solution is None:
+        wide = self._look_at([task], bridges, narrow=False)
+        solved = self._solved([task], bridges, wide)
+        if solved is None:
+            solved = self._solved_narrowly([task], bridges, wide)
+        if solved is None:
             return None
         return flow_of(
-            solution,
+            solved.solution,
             0,
-            traces,
+            solved.traces,
             task.height_mm,
             beyond_mm=self._apart_mm(crossing.plane, task.beyond),
             above_mm=self._apart_mm(crossing.plane, task.other),
@@ -127,53 +142,76 @@ class Fields:
     def undisturbed(self, task: Task) -> Flow:
         """The return current of the trace of a crossing, were the plane whole."""
         crossing = task.crossing
-        trace = trace_over(task, self.planes[crossing.plane].gaps[crossing.gap].shape)
+        trace = trace_over(task, self.planes[crossing.plane])
         above_mm = self._apart_mm(crossing.plane, task.other)
         return over_whole_plane(trace, task.height_mm, above_mm)
 
-    def _solution(
+    def _look_at(
         self,
         tasks: Sequence[Task],
-        traces: Sequence[engine.TraceOver],
         bridges: Sequence[engine.ViaBridge | engine.Strap],
         *,
-        narrow: bool = False,
-    ) -> engine.Solution | None:
-        """One solve, looking no further than it must if `narrow`; None if gaps are too ragged."""
-        plane = self.planes[tasks[0].crossing.plane]
-        crossed = plane.gaps[tasks[0].crossing.gap]
-        lines = [trace.line for trace in traces]
-        cut = any(parts_islands(task) for task in tasks)
-        standing = bridges if cut else ()
-        windows = look_at(tasks, crossed, standing, narrow=narrow)
-        if windows is None:
-            return None
-        window = windows.outer
+        narrow: bool,
+    ) -> _Look | None:
+        """How far to look, no further than one must if `narrow`; None if there is no telling."""
+        plane, number = self.planes[tasks[0].crossing.plane], tasks[0].crossing.gap
+        gap = plane.gaps[number]
+        standing = bridges if any(parts_islands(task) for task in tasks) else ()
+        hull = self._openings.hull_of(plane, number)
+        windows = look_at(tasks, gap, standing, narrow=narrow, hull=hull)
         # flux that a ragged gap lets through nearby finds ample room in the rest of it
-        gaps, ends = self._openings.within(tasks, windows, lines, loose=crossed.open or narrow)
-        if too_ragged(gaps):
+        return None if windows is None else _Look(windows, gap.open or narrow)
+
+    def _solved_narrowly(
+        self,
+        tasks: Sequence[Task],
+        bridges: Sequence[engine.ViaBridge | engine.Strap],
+        wide: _Look | None,
+    ) -> _Solved | None:
+        """One solve that looks no further than it must, unless that is what was done already."""
+        narrow = self._look_at(tasks, bridges, narrow=True)
+        if wide is not None and narrow is not None and wide.windows == narrow.windows:
             return None
-        if cut:
-            traces = [
-                within_window(trace, task, window)
-                for trace, task in zip(traces, tasks, strict=True)
-            ]
+        return self._solved(tasks, bridges, narrow)
+
+    def _solved(
+        self,
+        tasks: Sequence[Task],
+        bridges: Sequence[engine.ViaBridge | engine.Strap],
+        look: _Look | None,
+    ) -> _Solved | None:
+        """One solve; None if gaps are too ragged."""
+        plane, number = self.planes[tasks[0].crossing.plane], tasks[0].crossing.gap
+        if look is None or self._openings.is_hopeless(plane, number, look.windows.outer):
+            return None
+        traces = [trace_over(task, plane) for task in tasks]
+        lines = [trace.line for trace in traces]
+        seen = self._openings.within(tasks, look.windows, lines, loose=look.loose)
+        if seen is None:
+            return None
+        cut = any(parts_islands(task) for task in tasks)
+        window = look.windows.outer
+        ending = [
+            within_window(trace, task, window) if cut else trace
+            for trace, task in zip(traces, tasks, strict=True)
+        ]
         try:
-            return engine.added(
-                gaps,
-                traces,
+            solution = engine.added(
+                seen.gaps,
+                ending,
                 tasks[0].height_mm,
                 beyond_mm=self._apart_mm(plane.layer, tasks[0].beyond),
                 above_mm=self._apart_mm(plane.layer, tasks[0].other),
                 bridges=bridges,
                 outside=outside_of(plane, window, cut=cut),
-                ends=ends,
+                ends=seen.ends,
                 disjoint=True,
                 coarsest=MOST_COARSER,
-                inner=None if window.contains(crossed.shape) else windows.half,
+                inner=seen.inner,
             )
         except SplitcheckError:
             return None
+        return _Solved(solution, traces)
 
     def _apart_mm(self, plane: int, other: int | None) -> float | None:
         return None if other is None else self.board.stack.height_mm(plane, other)

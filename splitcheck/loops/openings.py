@@ -3,15 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import NamedTuple
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.board.board import Board
+from splitcheck.loops.outlines import Ints
 from splitcheck.loops.tasks import Task
 from splitcheck.loops.windows import Windows, clipped, cut_ends
-from splitcheck.planes.islands import Plane, box_size_mm
+from splitcheck.planes.islands import Plane
+from splitcheck.units import Floats
 
 #: At most so many other gaps near the crossed one are looked at.
 MOST_NEIGHBOURS = 12
@@ -19,15 +23,67 @@ MOST_NEIGHBOURS = 12
 MOST_CORNERS = 5000
 #: Gaps smaller than the height do not matter unless this many heights near, or crossed.
 NEAR_HEIGHTS = 2.0
+#: Pieces of gaps smaller than this are rounding, mm^2.
+_SPECK_MM2 = 1e-9
+
+
+class _Foreign(NamedTuple):
+    """Copper of a plane's layer that carries no return: no flux goes through it either."""
+
+    shapes: NDArray[np.object_]
+    boxes: Floats
+    gap: Ints
+    """Number of the gap that each lies in; -1 where that is not sure."""
+    plain: NDArray[np.bool_]
+    """Which have no holes."""
+
+
+class _Rings(NamedTuple):
+    """A gap taken to pieces, so that only what is near is put together again."""
+
+    outer: shapely.LinearRing
+    inner: NDArray[np.object_]
+    boxes: Floats
+    """Of the inner rings, shape (n, 4)."""
+    corners: Floats
+
+
+class Seen(NamedTuple):
+    """What a solve sees of a plane."""
+
+    gaps: list[Polygon]
+    ends: list[shapely.Point]
+    """Where windows cut off what leads to the outside."""
+    inner: Polygon | None
+    """A region that ends half way to where gaps were cut off; None where none was."""
 
 
 class Openings:
-    """The gaps of all planes as solves see them."""
+    """The gaps of all planes as solves see them; what does not hang on the crossing is kept."""
 
     def __init__(self, board: Board, planes: dict[int, Plane]) -> None:
         self.board = board
         self.planes = planes
-        self._foreign: dict[int, shapely.STRtree] = {}
+        self._foreign: dict[int, _Foreign] = {}
+        self._rings: dict[tuple[int, int], _Rings] = {}
+        self._shapes: dict[int, NDArray[np.object_]] = {}
+        self._hulls: dict[tuple[int, int], Polygon] = {}
+
+    def hull_of(self, plane: Plane, number: int) -> Polygon:
+        """Convex hull of a gap."""
+        key = (plane.layer, number)
+        if key not in self._hulls:
+            hull = shapely.convex_hull(plane.gaps[number].shape)
+            assert isinstance(hull, Polygon)
+            self._hulls[key] = hull
+        return self._hulls[key]
+
+    def is_hopeless(self, plane: Plane, number: int, window: Polygon) -> bool:
+        """Whether what of a gap is in a window is too ragged for a solve: told without cutting it.
+
+        Foreign copper in it would only add corners.
+        """
+        return self._corners_in(plane, number, window) > MOST_CORNERS
 
     def within(
         self,
@@ -36,60 +92,120 @@ class Openings:
         lines: Sequence[LineString],
         *,
         loose: bool,
-    ) -> tuple[list[Polygon], list[shapely.Point]]:
+    ) -> Seen | None:
         """The crossed gap and uncrossed neighbours, in the window, foreign copper taken out.
 
-        Returned with the places where the window cuts off what leads to the outside; the crossed
-        gap does if it is `loose`.
+        The crossed gap leads to the outside where it is cut off if it is `loose`. None if the gaps
+        are too ragged for a solve.
         """
-        window = windows.outer
-        shapely.prepare(windows.beside)
         plane = self.planes[tasks[0].crossing.plane]
-        across = shapely.union_all(lines)
-        height = tasks[0].height_mm
-        crossed = plane.gaps[tasks[0].crossing.gap]
-        beside = []
-        for number in sorted(plane.gap_boxes.intersection(windows.beside.bounds)):
-            shape = plane.gaps[number].shape
-            if shape is crossed.shape or not windows.beside.intersects(shape):
-                continue
-            apart = shape.distance(across)
-            small = box_size_mm(shape) < height
-            if apart == 0 or (small and apart > NEAR_HEIGHTS * height):
-                continue
-            beside.append((apart, number))
-        chosen = [plane.gaps[number] for _, number in sorted(beside)[:MOST_NEIGHBOURS]]
-        foreign = self._foreign_copper(plane, window)
+        crossed = tasks[0].crossing.gap
         gaps: list[Polygon] = []
         ends: list[shapely.Point] = []
-        for gap in (crossed, *chosen):
-            inside = clipped(gap.shape, window)
-            if too_ragged(_polygons(inside)):
-                # foreign copper in it only adds corners; taking it out would be in vain
-                return _polygons(inside), []
-            free = shapely.difference(inside, foreign)
-            pieces = _polygons(free)
-            if gap is not crossed and too_ragged([*gaps, *pieces]):
+        for number in (crossed, *self._beside(plane, crossed, windows, lines, tasks[0].height_mm)):
+            pieces = polygons(self._free(plane, number, windows.outer))
+            if too_ragged([*gaps, *pieces]):
+                if number == crossed:
+                    return None
                 break
             gaps.extend(pieces)
-            if loose if gap is crossed else gap.open:
-                ends.extend(cut_ends(pieces, window))
-        return gaps, ends
+            if loose if number == crossed else plane.gaps[number].open:
+                ends.extend(cut_ends(pieces, windows.outer))
+        whole = windows.outer.contains(plane.gaps[crossed].shape)
+        return Seen(gaps, ends, None if whole else windows.half)
 
-    def _foreign_copper(self, plane: Plane, window: Polygon) -> shapely.Geometry:
-        """Copper of the plane's layer that carries no return: no flux goes through it either."""
+    def _beside(
+        self,
+        plane: Plane,
+        crossed: int,
+        windows: Windows,
+        lines: Sequence[LineString],
+        height_mm: float,
+    ) -> list[int]:
+        """Numbers of the nearest gaps that no trace crosses and that matter."""
+        found = np.array(
+            sorted(plane.gap_boxes.intersection(windows.beside.bounds)), dtype=np.int64
+        )
+        numbers = found[found != crossed]
+        if plane.layer not in self._shapes:
+            self._shapes[plane.layer] = np.array([gap.shape for gap in plane.gaps], dtype=object)
+        shapes = self._shapes[plane.layer][numbers]
+        across = shapely.multilinestrings(list(lines))
+        shapely.prepare([across, windows.beside])
+        boxes = shapely.bounds(shapes).reshape(-1, 4)
+        small = (boxes[:, 2:] - boxes[:, :2]).max(axis=1) < height_mm
+        counts = np.ones(len(shapes), dtype=np.bool_)
+        counts[small] = shapely.dwithin(across, shapes[small], NEAR_HEIGHTS * height_mm)
+        counts[counts] = shapely.intersects(windows.beside, shapes[counts])
+        apart = shapely.distance(across, shapes[counts])
+        rows = sorted(zip(apart.tolist(), numbers[counts].tolist(), strict=True))
+        return [number for far, number in rows if far > 0.0][:MOST_NEIGHBOURS]
+
+    def _free(self, plane: Plane, number: int, window: Polygon) -> shapely.Geometry:
+        """What of a gap is in a window, foreign copper taken out.
+
+        Copper without holes is a hole of the gap: it touches neither the planes nor other copper.
+        """
+        gap, foreign = self._rings_of(plane, number), self._foreign_on(plane)
+        near = _meets(foreign.boxes, window)
+        holes = near & foreign.plain & (foreign.gap == number)
+        inner = np.concatenate(
+            [
+                gap.inner[_meets(gap.boxes, window)],
+                shapely.get_exterior_ring(foreign.shapes[holes]),
+            ]
+        )
+        free = clipped(shapely.polygons(gap.outer, inner), window)
+        rest = near & ~holes & ((foreign.gap == number) | (foreign.gap < 0))
+        if rest.any():
+            free = shapely.difference(free, MultiPolygon(list(foreign.shapes[rest])))
+        return free
+
+    def _corners_in(self, plane: Plane, number: int, window: Polygon) -> int:
+        """How many corners of a gap lie in a window, as far as that is more than may be."""
+        x, y = self._rings_of(plane, number).corners.T
+        if len(x) <= MOST_CORNERS:
+            return len(x)
+        west, south, east, north = window.bounds
+        near = (x >= west) & (x <= east) & (y >= south) & (y <= north)
+        if int(near.sum()) <= MOST_CORNERS:
+            return int(near.sum())
+        # on the one side of every side of the window, which is convex
+        ring = shapely.get_coordinates(shapely.orient_polygons(window))
+        dx, dy = np.diff(ring, axis=0).T
+        ahead = dx * (y[near, None] - ring[:-1, 1]) - dy * (x[near, None] - ring[:-1, 0])
+        return int((ahead >= 0.0).all(axis=1).sum())
+
+    def _rings_of(self, plane: Plane, number: int) -> _Rings:
+        """A gap taken to pieces."""
+        key = (plane.layer, number)
+        if key not in self._rings:
+            shape = plane.gaps[number].shape
+            rings = np.array(shapely.get_rings(shape), dtype=object)
+            boxes = shapely.bounds(rings).reshape(-1, 4)
+            self._rings[key] = _Rings(
+                rings[0], rings[1:], boxes[1:], shapely.get_coordinates(shape)
+            )
+        return self._rings[key]
+
+    def _foreign_on(self, plane: Plane) -> _Foreign:
+        """The foreign copper of a plane's layer, and the gaps that it lies in."""
         if plane.layer not in self._foreign:
             islands = {island.part for island in plane.islands}
-            self._foreign[plane.layer] = shapely.STRtree(
-                [
-                    part.shape
-                    for part in self.board.parts
-                    if part.layer == plane.layer and part.id not in islands
-                ]
-            )
-        tree = self._foreign[plane.layer]
-        # pieces of copper do not touch one another, so that they are a multipolygon as they stand
-        return MultiPolygon(list(tree.geometries[np.sort(tree.query(window))]))
+            found = [
+                part.shape
+                for part in self.board.parts
+                if part.layer == plane.layer and part.id not in islands
+            ]
+            shapes = np.array(found, dtype=object)
+            places = shapely.get_point(shapely.get_exterior_ring(shapes), 0)
+            gap = np.full(len(shapes), -1)
+            rows, tiles = plane.tiles_over(places)
+            gap[rows] = np.array([tile.gap for tile in plane.tiles], dtype=np.int64)[tiles]
+            plain = shapely.get_num_interior_rings(shapes) == 0
+            boxes = shapely.bounds(shapes).reshape(-1, 4)
+            self._foreign[plane.layer] = _Foreign(shapes, boxes, gap, plain)
+        return self._foreign[plane.layer]
 
 
 def outside_of(plane: Plane, window: Polygon, *, cut: bool) -> Polygon | None:
@@ -109,11 +225,19 @@ def outside_of(plane: Plane, window: Polygon, *, cut: bool) -> Polygon | None:
 
 def too_ragged(gaps: Sequence[Polygon]) -> bool:
     """Whether gaps have too many corners to be worth a solve."""
-    return sum(int(shapely.get_num_coordinates(gap)) for gap in gaps) > MOST_CORNERS
+    return int(shapely.get_num_coordinates(gaps).sum()) > MOST_CORNERS
 
 
-def _polygons(shape: shapely.Geometry) -> list[Polygon]:
-    parts = getattr(shape, "geoms", [shape])
-    return [part for part in parts if isinstance(part, Polygon) and part.area > 1e-9] + [
-        inner for part in parts if isinstance(part, MultiPolygon) for inner in _polygons(part)
-    ]
+def polygons(shape: shapely.Geometry) -> list[Polygon]:
+    """The polygons that a shape is made of, but for specks."""
+    parts = shapely.get_parts(shapely.get_parts(shape))
+    flat = shapely.get_type_id(parts) == shapely.GeometryType.POLYGON
+    kept: list[Polygon] = parts[flat & (shapely.area(parts) > _SPECK_MM2)].tolist()
+    return kept
+
+
+def _meets(boxes: Floats, window: Polygon) -> NDArray[np.bool_]:
+    """Which boxes meet that of a window."""
+    west, south, east, north = window.bounds
+    meets = (boxes[:, 0] <= east) & (boxes[:, 1] <= north)
+    return meets & (boxes[:, 2] >= west) & (boxes[:, 3] >= south)

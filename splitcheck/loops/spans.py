@@ -124,9 +124,12 @@ class Spans:
 
 def _nearest(places: Floats, at: Point, always: Sequence[Point]) -> list[int]:
     """Rows of the places nearest to one, within reach, and of some that are always wanted."""
+    if not len(places):
+        return []
     far = np.hypot(*(places - np.asarray(at)).T)
     order = np.argsort(far, kind="stable")[:MOST_VIAS]
-    wanted = np.flatnonzero([tuple(place) in always for place in places.tolist()])
+    same = places[:, None] == np.array(always).reshape(-1, 2)
+    wanted = np.flatnonzero(same.all(axis=2).any(axis=1))
     return sorted({*order[far[order] <= BRIDGES_MM].tolist(), *wanted.tolist()})
 
 

@@ -13,6 +13,7 @@ from splitcheck.copper.marks import Point
 from splitcheck.loops import solve as engine
 from splitcheck.loops.tasks import Task
 from splitcheck.planes.crossings import Crossing
+from splitcheck.planes.islands import Plane
 
 #: A trace is solved with at least this many heights of it beyond either rim of its gap.
 ENDS = 10.0
@@ -20,14 +21,16 @@ ENDS = 10.0
 ON_RIM_MM = 0.01
 
 
-def trace_over(task: Task, gap: Polygon) -> engine.TraceOver:
+def trace_over(task: Task, plane: Plane) -> engine.TraceOver:
     """The trace over its runs and on either side of them.
 
     Where it comes over the same gap again in a run that is judged by itself, it is cut short. A
     short end goes straight on, if on copper: the source of a trace that ends right at the rim
     would be that of its end, not of its length.
     """
-    points: list[Point] = [(x, y) for x, y in _own_stretch(task, gap).coords]
+    points: list[Point] = [(x, y) for x, y in _own_stretch(task, plane).coords]
+    gap = plane.gaps[task.crossing.gap].shape
+    shapely.prepare(gap)
     for ahead in (False, True):
         ends = points if ahead else points[::-1]
         missing = ENDS * task.height_mm - _beyond_rim_mm(task.crossing, ends)
@@ -37,7 +40,7 @@ def trace_over(task: Task, gap: Polygon) -> engine.TraceOver:
             continue
         x, y = np.asarray(ends[-1]) + step / length * missing
         end = (float(x), float(y))
-        if not LineString([ends[-1], end]).intersects(gap):
+        if not gap.intersects(LineString([ends[-1], end])):
             points = [*points, end] if ahead else [end, *points]
     return engine.TraceOver(LineString(points), task.crossing.width_mm)
 
@@ -51,11 +54,13 @@ def within_window(trace: engine.TraceOver, task: Task, window: Polygon) -> engin
     return engine.TraceOver(line, trace.width_mm)
 
 
-def _own_stretch(task: Task, gap: Polygon) -> LineString:
+def _own_stretch(task: Task, plane: Plane) -> LineString:
     """The stretch of a crossing up to where it would count another finding's run."""
     stretch = LineString(task.crossing.stretch)
     own = shapely.union_all([LineString(path) for path in task.runs])
-    bare = shapely.intersection(stretch, gap)
+    met = [plane.tiles[tile] for tile in np.sort(plane.tiles_over(np.array([stretch]))[1])]
+    tiles = [tile.shape for tile in met if tile.gap == task.crossing.gap]
+    bare = shapely.line_merge(shapely.union_all(shapely.intersection(stretch, tiles)))
     mine: list[tuple[float, float]] = []
     others: list[tuple[float, float]] = []
     for part in getattr(bare, "geoms", [bare]):

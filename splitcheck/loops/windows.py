@@ -11,7 +11,7 @@ from typing import NamedTuple
 
 import numpy as np
 import shapely
-from shapely import LinearRing, LineString, MultiPoint, Point, Polygon
+from shapely import LinearRing, LineString, Point, Polygon
 
 from splitcheck.copper import marks
 from splitcheck.loops import solve as engine
@@ -78,11 +78,13 @@ def look_at(
     bridges: Sequence[engine.ViaBridge | engine.Strap],
     *,
     narrow: bool,
+    hull: Polygon | None = None,
 ) -> Windows | None:
     """How far a solve looks: at the crossings, some bridges, and the ways round that it sees.
 
     In place of a way that it does not see it takes that along the rim, if it is not too long.
-    None if a crossing has neither: a window would close the gap where nothing does.
+    None if a crossing has neither: a window would close the gap where nothing does. The hull of the
+    gap may be given, to save time.
     """
     points = [point for task in tasks for point in task.crossing.path]
     points.extend(to_point(at) for bridge in bridges for at in feet(bridge))
@@ -97,14 +99,14 @@ def look_at(
         along = [] if narrow or all_held else _along_rim(task, gap)
         hulls = (shapely.get_coordinates(way.convex_hull) for way in along)
         points.extend(to_point(at) for hull in hulls for at in hull)
-        # holes to the plane on the other side are ways on both sides, and both planes keep flux near
+        # holes to the plane on the other side are ways on both sides; both planes keep flux near
         stitched = parts_islands(task) and bool(task.stitches)
         if not (seen or along or stitched):
             return None
         one_sided |= not stitched and (len(found) < 2 or not (all_held or len(along) == 2))
     shut = tasks[0].beyond is not None or tasks[0].other is not None
     return windows_of(
-        points, gap, tasks[0].height_mm, one_sided=one_sided, shut=shut, narrow=narrow
+        points, gap, tasks[0].height_mm, one_sided=one_sided, shut=shut, narrow=narrow, hull=hull
     )
 
 
@@ -123,6 +125,7 @@ def windows_of(
     one_sided: bool,
     shut: bool,
     narrow: bool = False,
+    hull: Polygon | None = None,
 ) -> Windows:
     """The regions round the crossings, their ways round and some bridges, with room to spare.
 
@@ -141,21 +144,24 @@ def windows_of(
         Whether another plane keeps the flux near.
     narrow
         The gap is too ragged for all that room.
+    hull
+        Convex hull of the gap, if known: some gaps have very many corners.
 
     Returns
     -------
     The windows.
     """
-    seen = MultiPoint(points)
+    seen = shapely.multipoints(np.array(points))
     size = span_mm(seen)
     room = BEYOND_MM + BEYOND_SHARE * size + BEYOND_HEIGHTS * height_mm
     beside = BESIDE_MM + BESIDE_SHARE * size + BEYOND_HEIGHTS * height_mm
     parts: list[shapely.Geometry] = [_round(seen, room)]
     half: list[shapely.Geometry] = [_round(seen, room / 2)]
-    if _is_moderate(gap):
-        parts.append(_round(gap.shape, BEYOND_MM))
+    about = shapely.convex_hull(gap.shape) if hull is None else hull
+    if _is_moderate(gap, about):
+        parts.append(_round(about, BEYOND_MM))
     elif one_sided:
-        whole = _round(gap.shape, BEYOND_MM)
+        whole = _round(about, BEYOND_MM)
         times = OPEN_SIDE if gap.open and not shut else FAR_SIDE
         times = min(times, OPEN_SIDE_SHUT) if shut or narrow else times
         far = room + max(times * size, 0.0 if narrow else FAR_LEAST_MM)
@@ -196,16 +202,17 @@ def _both_ways(ring: LinearRing, first_mm: float, last_mm: float) -> Iterator[Li
 
 def cut_ends(pieces: Sequence[Polygon], window: Polygon) -> list[Point]:
     """Where a window cuts off pieces of a gap: the middle of the longest cut through each."""
-    ends = (_longest_cut(piece, window) for piece in pieces)
+    # a hair inside, for what lies on a slanting rim is rounded off it
+    within = shapely.buffer(window, -_ON_RIM_MM, join_style="mitre")
+    shapely.prepare(within)
+    cut = np.array(pieces, dtype=object)[~shapely.contains(within, pieces)]
+    rim = shapely.boundary(within)
+    ends = (_longest(shapely.intersection(rim, piece)) for piece in cut)
     return [end for end in ends if end is not None]
 
 
-def _longest_cut(piece: Polygon, window: Polygon) -> Point | None:
-    # a hair inside, for what lies on a slanting rim is rounded off it
-    within = shapely.buffer(window, -_ON_RIM_MM, join_style="mitre")
-    if within.contains(piece):
-        return None
-    rim = shapely.intersection(piece, within.exterior)
+def _longest(rim: shapely.Geometry) -> Point | None:
+    """The middle of the longest line."""
     along = shapely.get_parts(shapely.line_merge(rim))
     cuts = along[shapely.get_type_id(along) == shapely.GeometryType.LINESTRING]
     if not len(cuts):
@@ -224,11 +231,11 @@ def clipped(shape: Polygon, window: Polygon) -> shapely.Geometry:
     return near if window.contains(near) else shapely.intersection(near, window)
 
 
-def _is_moderate(gap: Gap) -> bool:
+def _is_moderate(gap: Gap, hull: shapely.Geometry) -> bool:
     """Whether a gap is taken whole, however little of it the ways round need."""
     if gap.open or int(shapely.get_num_coordinates(gap.shape)) > WHOLE_CORNERS:
         return False
-    return span_mm(gap.shape) <= WHOLE_MM
+    return span_mm(hull) <= WHOLE_MM
 
 
 def _round(shape: shapely.Geometry, room_mm: float) -> Polygon:
@@ -242,6 +249,6 @@ def _round(shape: shapely.Geometry, room_mm: float) -> Polygon:
 
 
 def _together(shapes: Sequence[shapely.Geometry]) -> Polygon:
-    hull = shapely.union_all(shapes).convex_hull
+    hull = shapely.convex_hull(shapely.multipoints(shapely.get_coordinates(shapes)))
     assert isinstance(hull, Polygon)
     return hull
