@@ -36,7 +36,12 @@ def class_sentences(known: Known, judged: Collection[int]) -> tuple[str, ...]:
         known_by = Counter(_known_by(known, net) for net in drives)
         by = [
             f"{words} ({known_by[how]})"
-            for how, words in (("name", "name"), ("component", "crystal"), ("rules", "rules"))
+            for how, words in (
+                ("name", "name"),
+                ("component", "crystal"),
+                ("width", "the width of their lines"),
+                ("rules", "rules"),
+            )
             if known_by[how]
         ]
         sentences.append(

@@ -10,19 +10,32 @@ from typing import Literal, TypeAlias
 
 from splitcheck.board.board import Board
 from splitcheck.board.components import prefix
+from splitcheck.board.nets import Net
 from splitcheck.errors import SplitcheckError
 from splitcheck.verdict.findings import InputRow
-from splitcheck.verdict.patterns import Names, Words, is_pattern, spellings, ways_to_write
+from splitcheck.verdict.patterns import (
+    Names,
+    Words,
+    is_pattern,
+    part_spelling,
+    spellings,
+    ways_to_write,
+)
 from splitcheck.verdict.rules import Assignment, Class, Rules
 from splitcheck.verdict.rulesfile import PlacedCapacitor, RulesFile
+from splitcheck.verdict.wide import wide_nets
 
 #: How the class of a net is known.
-KnownBy: TypeAlias = Literal["rules", "name", "component", "nothing"]
+KnownBy: TypeAlias = Literal["rules", "name", "component", "width", "nothing"]
 
 #: References of crystals and oscillators begin with these letters (IEEE 315, IEC 81346-2: Y, X).
 _CRYSTALS = frozenset({"Y", "X", "XTAL", "OSC"})
 #: A crystal has no more pins than this; what has more and is called X is a connector.
 _CRYSTAL_PINS = 4
+
+
+#: Classes of memory that are called as other names of a board tell them.
+_GENERATIONS = ("ddr3", "ddr4")
 
 
 @dataclass(frozen=True, slots=True)
@@ -64,9 +77,13 @@ def know(board: Board, rules: Rules, own: RulesFile | None = None) -> Known:
     (1) An assignment by a net's very name has it; else the first assignment whose pattern matches.
     (2) Else every name of the net is asked of the classes in their order. Of several classes it has
     the fastest, where a name that no class knows counts as ``default``; it is exempt only if all
-    its names are.
+    its names are. Of a name that a schematic program made up from a pad, the part's own name is
+    asked, if it is a word (``DBG_UART1``); no net is exempt by it. What other nets of the board are
+    called bears on two names: see `_by_others`.
     (3) Else, of a net at a crystal, the class ``clock``, if there is one.
-    (4) Else the class ``default``.
+    (4) Else, of a net whose name says nothing and whose lines are far wider than the usual ones,
+    the class ``wide``, if there is one: see ``wide.py``.
+    (5) Else the class ``default``.
 
     Raises
     ------
@@ -78,14 +95,19 @@ def know(board: Board, rules: Rules, own: RulesFile | None = None) -> Known:
     if own is not None:
         _check(board, own)
     crystals = _at_crystals(board)
+    wide = wide_nets(board)
     by_name = {one.name: one for one in rules.classes}
     assigned = _assigned(board, rules)
+    others = frozenset(spelling for net in board.nets for spelling in _spelled(net))
     drives: list[Class] = []
     known_by: list[KnownBy] = []
     for net in board.nets:
         found, how = class_of(net.name if net.given else "", rules)
         if how == "nothing" and net.number in crystals and "clock" in by_name:
             found, how = by_name["clock"], "component"
+        elif how == "nothing" and net.number in wide and "wide" in by_name and not _spelled(net):
+            found, how = by_name["wide"], "width"
+        found = _by_others(net, found, others, by_name)
         told = assigned.get(net.number)
         if told is not None:
             found, how = _told(told, found, by_name), "rules"
@@ -100,6 +122,29 @@ def know(board: Board, rules: Rules, own: RulesFile | None = None) -> Known:
         else frozenset(),
         () if own is None else own.placed,
     )
+
+
+def _spelled(net: Net) -> tuple[str, ...]:
+    """All names of a net as words; none if the files give it none."""
+    return tuple(s for one in net.name.split("|") for s in spellings(one)) if net.given else ()
+
+
+def _by_others(net: Net, found: Class, others: frozenset[str], by_name: dict[str, Class]) -> Class:
+    """What the names of other nets make of the class of one.
+
+    (1) A serial clock beside a net that is called the same but for ``SDA`` is the clock of that
+    two-wire bus, not of SPI. (2) Memory whose name does not say which is of the generation that
+    other names of the board tell (``VREF_DDR3``), if they tell but one. Common practice, no source.
+    """
+    if found.name == "spi" and "i2c" in by_name:
+        clocks = [one for one in _spelled(net) if one.endswith("SCK")]
+        if clocks and all(one.removesuffix("SCK") + "SDA" in others for one in clocks):
+            return by_name["i2c"]
+    if found.name == "ddr":
+        told = [one for one in _GENERATIONS if any(one.upper() in other for other in others)]
+        if len(told) == 1 and told[0] in by_name:
+            return by_name[told[0]]
+    return found
 
 
 def class_of(name: str, rules: Rules) -> tuple[Class, KnownBy]:
@@ -120,6 +165,10 @@ def class_of(name: str, rules: Rules) -> tuple[Class, KnownBy]:
         asked.extend(_first(rules, spelling, whole) for spelling in words)
     known = [one for one in asked if one is not None]
     if not known:
+        parts = [_first(rules, part_spelling(part), ()) for part in name.split("|")]
+        told = [one for one in parts if one is not None and not one.exempt]
+        if told:
+            return min(told, key=lambda one: one.rise_ns), "name"
         return rules.default, "nothing"
     all_of = [rules.default if one is None else one for one in asked]
     awake = [one for one in all_of if not one.exempt]

@@ -16,11 +16,14 @@ from splitcheck.board.names import last_part
 
 #: Longer patterns are refused; with so few characters a match takes no time to speak of.
 LONGEST_PATTERN = 120
+#: Names of parts with fewer letters are designators.
+LEAST_LETTERS = 4
 #: Longer names are cut before they are compared with words.
 LONGEST_NAME = 300
 
 #: What a schematic program makes up where nobody names a net: a reference and a pin.
 _MADE_UP = re.compile(r"^(?:NET|UNCONNECTED)-\([^-]+-(?P<pin>.+)\)$")
+_MADE_UP_PAD = re.compile(r"^(?:NET|UNCONNECTED)-\((?P<part>.+)-PAD[A-Z]{0,2}\d*(?:\.\d+)?\)$")
 _PAD_ONLY = re.compile(r"^(?:PAD[A-Z]{0,2}\d*(?:\.\d+)?|.)$")
 _NOT_WORD = re.compile(r"[^A-Z0-9]+")
 _PLUS = re.compile(r"\+(?=$|[^A-Z0-9+])")
@@ -53,6 +56,23 @@ def spellings(name: str) -> tuple[str, ...]:
                 continue
         found.extend(_words(part) for part in plain.split("\\"))
     return tuple(dict.fromkeys(word for word in found if word))
+
+
+def part_spelling(name: str) -> str:
+    """The name of the part that a made-up name of a net tells, if it is a word; else "".
+
+    Designators of one to three letters (R, FB, LED, CON) say what a part is, not what it carries.
+
+    Examples
+    --------
+    >>> [part_spelling(name) for name in ("Net-(DBG_UART1-Pad1)", "Net-(R12-Pad2)", "Net-(U3-SW)")]
+    ['DBG_UART1', '', '']
+    """
+    made_up = _MADE_UP_PAD.match(name[:LONGEST_NAME].upper())
+    if made_up is None:
+        return ""
+    part = last_part(made_up["part"])
+    return _words(part) if sum(map(str.isalpha, part)) >= LEAST_LETTERS else ""
 
 
 def _words(name: str) -> str:

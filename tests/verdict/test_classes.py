@@ -33,7 +33,7 @@ NAMES: dict[str, tuple[tuple[str, ...], str]] = {
     "rgmii": (("RGMII_TXD0", "ETH0_RGMII_RXC", "GTXD3"), "RGMII_RST"),
     "rmii": (("RMII_TXD0", "ETH_REF_CLK", "TX_EN"), "ETH_RST"),
     "mdi": (("MDI[0]+", "MDI0_N", "TRD1_P", "ETH_TXP"), "MDIO"),
-    "flash": (("SDIO_CLK", "QSPI_DQ0", "SD0_D3", "EMMC_CMD"), "SD_CD"),
+    "flash": (("SDIO_CLK", "QSPI_DQ0", "SD0_D3", "EMMC_CMD", "Net-(MICRO_SD1-Pad5)"), "SD_CD"),
     "sdram": (("SDRAM_D15",), "DRAM_ON"),
     "ddr4": (("DDR4_DQ3", "DDR4_A0"), "DDR4_VREF"),
     "ddr3": (("DDR3_DQS0_P", "DDR3_CAS"), "DDR3_VREF"),
@@ -43,17 +43,18 @@ NAMES: dict[str, tuple[tuple[str, ...], str]] = {
     "i2c": (("SDA", "I2C1_SCL", "/pmu/TWI0-SDA", "SMB_DAT"), "I2C_INT"),
     "jtag": (("TCK", "SWDIO", "JTAG_TDO"), "TDIP"),
     "spi": (("SPI1_MOSI", "SCK", "FLASH_CS", "ADC_SCLK"), "SPI_EN"),
-    "uart": (("TX", "UART3_RX", "U2_TXD", "RXD"), "RADIO_TX"),
-    "clock": (("CLK50", "MCLK", "XTAL_IN", "/osc/24MHZ", "RTC_CLK"), "CLKREQ#"),
+    "uart": (("TX", "UART3_RX", "U2_TXD", "RXD", "Net-(DBG_UART1-Pad1)"), "RADIO_TX"),
+    "clock": (("CLK50", "MCLK", "XTAL_IN", "/osc/24MHZ", "RTC_CLK", "AP-CK32KO"), "CLKREQ#"),
     "reset": (("NRST", "PCIE_PERST#", "/cpu/~{RESET}", "RST_N"), "FIRST"),
-    "gpio": (("GPIO5", "FAN_PWM", "IRQ", "MDIO"), "GPIO_P"),
+    "gpio": (("GPIO5", "FAN_PWM", "IRQ", "MDIO", "DSI-BKL"), "GPIO_P"),
     "switcher": (("Net-(U3-SW)", "BUCK_SW", "LX1"), "SW1"),
-    "enable": (("EN", "RADIO_EN", "/power/EN_5V", "PWREN"), "CLK_EN"),
+    "enable": (("EN", "RADIO_EN", "/power/EN_5V", "PWREN", "USB0-DRV"), "CLK_EN"),
     "power-good": (("PGOOD", "PG_1V8", "FE_PG"), "PG7"),
     "led": (("LED1", "STATUS_LED", "PWRLED"), "LED_DIN"),
     "strap": (("BOOT0", "BOARD_ID2", "PHYAD1"), "BOOT_CLK"),
     "analog": (("VBAT_SENSE", "NTC", "Net-(U3-FB)", "AIN3"), "ADC_SCLK"),
     "slow": (("SD_DET", "BUTTON1", "HPD", "CC1"), "DETECT_CLK"),
+    "wide": ((), "WIDE"),  # by the width of lines alone: test_wide.py
     "default": (("D7", "MISC", "RADIO_TX", "LCD_EN"), "SDA"),
 }
 
@@ -286,3 +287,33 @@ def test_references_are_nets_by_pattern() -> None:
     """Named by the rules, and no others."""
     known = _known("reference = ['PE*']", "PE", "PE2", "X")
     assert known.references == {0, 1}
+
+
+def _classes(*names: str) -> dict[str, str]:
+    """The classes of nets that a board has together."""
+    lines = tuple(Line(name, ((0.0, float(y)), (30.0, float(y)))) for y, name in enumerate(names))
+    made = board(Sheet(lines=lines), Sheet((("GND", shapely.box(0, 0, 30, 30)),)))
+    known = know(made, shipped_rules())
+    return {net.name: known.drive_of(net.number).name for net in made.nets if net.name in names}
+
+
+def test_a_serial_clock_beside_its_data_line_is_of_the_two_wire_bus() -> None:
+    """PMU_SCK with PMU_SDA is no SPI; without it, or with that of another bus, it is."""
+    assert _classes("PMU_SCK", "PMU_SDA") == {"PMU_SCK": "i2c", "PMU_SDA": "i2c"}
+    assert _classes("PMU_SCK", "RTC_SDA")["PMU_SCK"] == "spi"
+    assert _classes("PMU_SCK", "PMU_MOSI")["PMU_SCK"] == "spi"
+
+
+def test_memory_is_of_the_generation_that_other_names_tell() -> None:
+    """DQ3 alone may be DDR4; beside VREF_DDR3 it is DDR3; where both are told it stays open."""
+    assert _classes("DQ3")["DQ3"] == "ddr"
+    assert _classes("DQ3", "VREF_DDR3")["DQ3"] == "ddr3"
+    assert _classes("DQ3", "VPP_DDR4")["DQ3"] == "ddr4"
+    assert _classes("DQ3", "VREF_DDR3", "VPP_DDR4")["DQ3"] == "ddr"
+
+
+def test_names_of_parts_tell_classes_but_make_no_net_exempt() -> None:
+    """A lamp's pin may be its supply or its data; designators of a few letters say nothing."""
+    assert _class("Net-(HSIC1-Pad2)") == "usb-high"
+    for name in ("Net-(PWRLED1-Pad2)", "Net-(FB1-Pad1)", "Net-(SCK-Pad1)"):
+        assert _class(name) == "default"
