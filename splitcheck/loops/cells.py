@@ -96,8 +96,7 @@ def _frame_angles(
         if len(ends) > 1:
             angle[k] = np.arctan2(*(ends[1] - ends[0])[::-1])
     lines = np.array(grading.lines, dtype=object)
-    bent = np.flatnonzero(~straight) if len(lines) else []
-    for k in bent:
+    for k in np.flatnonzero(~straight):
         over = lines[shapely.intersects(gaps[k], lines)]
         if len(over):
             over = shapely.intersection(local[k], over)

@@ -148,7 +148,8 @@ def wanted(sizes: Sizes, middle: Floats, gap: Ints) -> Floats:
     a, b = 1.0 / (along_mm * along_mm), 1.0 / (across_mm * across_mm)
     wide = (cross_x * a + cross_y * b).max(axis=1)
     high = (cross_y * a + cross_x * b).max(axis=1)
-    return 1.0 / np.sqrt(np.stack([wide, high], axis=1))
+    most: Floats = 1.0 / np.sqrt(np.stack([wide, high], axis=1))
+    return most
 
 
 def _squares(sizes: Sizes, x: Floats, y: Floats) -> Floats:
@@ -163,5 +164,5 @@ def _squares(sizes: Sizes, x: Floats, y: Floats) -> Floats:
     from_y -= along * uy
     from_x *= from_x
     from_y *= from_y
-    from_x += from_y
-    return from_x
+    square: Floats = from_x + from_y
+    return square

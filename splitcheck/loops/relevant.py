@@ -85,7 +85,7 @@ def arrange(
     clean, endless = _merged(gaps, outside, reach, disjoint=disjoint)
     lines = [shapely.remove_repeated_points(line, 1e-9) for line in lines]
     chosen, weight, left_out = _chosen(clean, lines, [*lines, *kept], height_mm, endless)
-    finer = [_plainer(clean[k], height_mm / 50) for k in chosen]
+    finer = _plainer([clean[k] for k in chosen], height_mm / 50)
     short = _ending_in_gaps(lines, finer)
     trimmed = [
         _on_copper(line, finer) if k in short else (line, 0.0) for k, line in enumerate(lines)
@@ -165,15 +165,16 @@ def _joined(shapes: NDArray[np.object_]) -> NDArray[np.object_]:
     return out
 
 
-def _plainer(gap: Polygon, tolerance_mm: float) -> Polygon:
+def _plainer(gaps: Sequence[Polygon], tolerance_mm: float) -> list[Polygon]:
     """Drop corners that the field does not see."""
-    if len(gap.exterior.coords) < 9 and not gap.interiors:
-        return gap
-    plain = gap.simplify(tolerance_mm)
-    if not isinstance(plain, Polygon) or plain.is_empty or not plain.is_valid:
-        return gap
-    same = len(plain.interiors) == len(gap.interiors)
-    return shapely.orient_polygons(plain) if same else gap
+    shapes = np.array(gaps, dtype=object)
+    holes = shapely.get_num_interior_rings(shapes)
+    many = np.flatnonzero((shapely.get_num_coordinates(shapes) > 8) | (holes > 0))
+    plain = shapely.simplify(shapes[many], tolerance_mm)
+    fit = shapely.get_num_interior_rings(plain) == holes[many]
+    fit &= ~shapely.is_empty(plain) & shapely.is_valid(plain)
+    shapes[many[fit]] = shapely.orient_polygons(plain[fit])
+    return list(shapes)
 
 
 def _ending_in_gaps(lines: Sequence[LineString], gaps: Sequence[Polygon]) -> set[int]:
@@ -241,16 +242,15 @@ def _chosen(
         main.append(endless)
     others = np.setdiff1d(np.arange(len(gaps)), main)
     alone = _alone_nh(shapes[others], traces, height_mm)
-    around = shapely.union_all([gaps[k] for k in main if k != endless]) if main else Polygon()
-    if around.is_empty:
-        close = np.zeros(len(others), dtype=bool)
-    else:
-        size = np.sqrt(shapely.area(shapes[others]))
-        # a gap far from the traces has little flux to hand on, whatever lies beside it
-        close = np.zeros(len(others), dtype=bool)
-        maybe = np.flatnonzero(alone > _NEGLIGIBLE_NH / 50)
-        shapely.prepare(around)
-        close[maybe] = shapely.distance(around, shapes[others[maybe]]) < 2.5 * size[maybe]
+    around = [gaps[k] for k in main if k != endless]
+    close = np.zeros(len(others), dtype=bool)
+    # a gap far from the traces has little flux to hand on, whatever lies beside it
+    maybe = np.flatnonzero(alone > _NEGLIGIBLE_NH / 50)
+    if around and len(maybe):
+        near = shapely.multipolygons(around)
+        shapely.prepare(near)
+        size = np.sqrt(shapely.area(shapes[others[maybe]]))
+        close[maybe] = shapely.distance(near, shapes[others[maybe]]) < 2.5 * size
     matters = (alone > _NEGLIGIBLE_NH) | close
     if not main and not matters.any():
         # nothing counts for much: solve for what counts most

@@ -13,7 +13,7 @@ from shapely import Point as Place
 
 from splitcheck.copper.marks import Point
 from splitcheck.loops.panels import Panels
-from splitcheck.loops.solve import Solution, Strap, TraceOver, ViaBridge
+from splitcheck.loops.solution import Solution, Strap, TraceOver, ViaBridge
 from splitcheck.units import MU0, Floats
 
 #: Height of the loop probe over the trace, mm.

@@ -13,7 +13,7 @@ from shapely import LineString, Polygon
 from splitcheck.loops.grading import Grading
 from splitcheck.loops.kernels import outline_potential, plate_images_squared, wall_source
 from splitcheck.loops.panels import Panels, cut
-from splitcheck.loops.solve import Solution, Strap, TraceOver, ViaBridge
+from splitcheck.loops.solution import Solution, Strap, TraceOver, ViaBridge
 from splitcheck.loops.sources import Strip, filaments, run_beside
 from splitcheck.units import MU0, Floats
 
