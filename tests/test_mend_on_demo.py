@@ -15,7 +15,7 @@ from splitcheck.verdict.findings import Finding, Proposal
 from splitcheck.verdict.proposals.case import beside_worth
 from tests.making.mended import mended, nearest
 
-NETS = ("D0", "D3", "D7", "LCD_E", "SDA", "RTC_CLK", "BUZZ")
+NETS = (*(f"D{bit}" for bit in range(8)), "LCD_E", "SDA", "RTC_CLK", "BUZZ")
 OPTIONS = road.Options(jobs=1)
 
 
