@@ -10,6 +10,7 @@ from rich.cells import cell_len
 from rich.text import Text
 
 from splitcheck import __version__
+from splitcheck.board.names import in_words
 from splitcheck.report import tally
 from splitcheck.report.page import Column, Page
 from splitcheck.report.sums import say_sums
@@ -255,7 +256,8 @@ def _where(finding: Finding) -> str:
     layer = shorten(finding.layer, _NET_CELLS)
     over = ""
     if finding.plane_layer:
-        net = f" ({shorten(finding.plane_net, _PLANE_CELLS)})" if finding.plane_net else ""
+        nets = " to ".join(in_words(net) for net in finding.plane_net.split(" to "))
+        net = f" ({shorten(nets, _PLANE_CELLS)})" if nets else ""
         over = f" over {shorten(finding.plane_layer, _NET_CELLS)}{net}"
     x_mm, y_mm = (round(value, 3) + 0.0 for value in finding.at_mm)
     source = f"{shorten(finding.source.file, 60)}:{finding.source.line}".replace(" ", STICKY)
