@@ -6,10 +6,7 @@ from collections import defaultdict
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import replace
 from functools import partial
-from math import inf
 from typing import Any, TypeAlias
-
-import shapely
 
 from splitcheck.loops.clusters import cluster
 from splitcheck.loops.corner import detour_corner_khz
@@ -37,6 +34,7 @@ from splitcheck.verdict.findings import (
     Source,
 )
 from splitcheck.verdict.listing import worth_a_line
+from splitcheck.verdict.once import once_a_gap
 from splitcheck.verdict.pairs import with_pairs
 from splitcheck.verdict.places import by_place, fingerprint, with_ids, with_shares
 from splitcheck.verdict.plane_changes import (
@@ -50,10 +48,6 @@ from splitcheck.verdict.scene import Judged, Scene, Weighed
 from splitcheck.verdict.score import Noise, level, noise_over_gap, slot_ns_mm
 from splitcheck.verdict.supplies import with_rule
 from splitcheck.verdict.weighing import look_at, reach_mm, weigh
-
-#: A run whose middle lies this near to the same stretch of trace is on it, mm.
-SAME_PLACE_MM = 1e-3
-
 
 #: Calls a function on every item and gives the results in order, as ``map`` does.
 Spread: TypeAlias = Callable[[Callable[[Any], Any], Iterable[Any]], Iterable[Any]]
@@ -100,7 +94,7 @@ def judge(
             dropped[result] += 1
         else:
             weighed.append(result)
-    weighed = once_a_place(scene, _once_a_gap(weighed))
+    weighed = once_a_place(scene, once_a_gap(scene, weighed))
     solved = _solve_all(scene, weighed, spread)
     findings: list[Finding] = []
     for number, item in enumerate(weighed):
@@ -122,42 +116,6 @@ def judge(
     numbered, renamed = with_ids(with_crosstalk(scene, with_shares(findings)))
     behind = {new: weighed[int(old)] for old, new in renamed.items()}
     return Judged(numbered, counts, behind)
-
-
-def _once_a_gap(weighed: Sequence[Weighed]) -> list[Weighed]:
-    """Join the runs of one stretch of trace over one gap of one island into the worst of them.
-
-    The return has to go round once for all of them, or not at all where the trace comes back; the
-    solve sees the whole stretch. Adding their values up would count it several times.
-    """
-    groups: dict[tuple[int, ...], list[Weighed]] = defaultdict(list)
-    for item in weighed:
-        c = item.crossing
-        groups[c.net, c.layer, c.plane, c.gap, *c.islands].append(item)
-    kept: list[Weighed] = []
-    for key, members in sorted(groups.items()):
-        left = sorted(members, key=_by_estimate)
-        if key[-1] != key[-2]:
-            kept.extend(left)
-            continue
-        while left:
-            worst = left.pop(0)
-            stretch = shapely.LineString(worst.crossing.stretch)
-            same = [
-                item
-                for item in left
-                if shapely.dwithin(stretch, shapely.Point(item.crossing.at), SAME_PLACE_MM)
-            ]
-            left = [item for item in left if item not in same]
-            runs = (worst.crossing, *(item.crossing for item in same))
-            every = sorted({stitch for item in (worst, *same) for stitch in item.stitches})
-            kept.append(replace(worst, runs=runs, stitches=tuple(every)))
-    return kept
-
-
-def _by_estimate(item: Weighed) -> tuple[float, float, tuple[float, float]]:
-    added = inf if item.estimate is None else item.estimate.added_nh
-    return (-added, -item.crossing.run_mm, item.crossing.at)
 
 
 def _solve_all(
@@ -214,9 +172,9 @@ def value_again(
     """
     weighed = [look_at(scene, one) if all_of_them else weigh(scene, one) for one in crossings]
     beside = [item for one in with_them if not isinstance(item := weigh(scene, one), str)]
-    others = _once_a_gap(beside)
+    others = once_a_gap(scene, beside)
     values: list[tuple[Inductance, float] | None] = []
-    for item in _once_a_gap([item for item in weighed if not isinstance(item, str)]):
+    for item in once_a_gap(scene, [item for item in weighed if not isinstance(item, str)]):
         field = _solve_all(scene, [item, *others], map, only=0).get(0)
         value = item.estimate if field is None else field.value
         if all_of_them and field is None:

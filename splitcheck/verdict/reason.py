@@ -36,6 +36,8 @@ def reason(scene: Scene, item: Weighed, handed_over: float = 0.0) -> str:
             f"{name} is split here between {in_words(one.net_name)} ({one.id}) and "
             f"{in_words(other.net_name)} ({other.id})"
         )
+        if len(item.runs) > 1:
+            start += f", and again close by, {len(item.runs)} times in all"
     elif crossing.aside_mm:
         start = beside_in_words(scene, item)
         return "; ".join([start, *_shares(scene, item, handed_over), *_extras(scene, item)])

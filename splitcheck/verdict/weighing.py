@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from splitcheck.copper.marks import Point
 from splitcheck.loops import estimate
 from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.handover import over_holes
@@ -126,19 +127,40 @@ def _handed_over(
     """
     if other is None:
         return None
-    planes_mm = scene.board.stack.height_mm(crossing.plane, other)
     if holes:
         one, two = (
-            [(hole.at, hole.wide_mm) for hole in holes if hole.side == side] for side in (0, 1)
+            (crossing.path[0 if side == 0 else -1], ends_of(holes, side)) for side in (0, 1)
         )
-        ends = ((crossing.path[0], one), (crossing.path[-1], two))
-        height_mm = scene.board.stack.height_mm(crossing.layer, crossing.plane)
-        return over_holes(ends, crossing.run_mm, height_mm, crossing.width_mm, planes_mm)
+        return past_by_holes(scene, crossing, other, (one, two), crossing.run_mm)
     if crossing.islands[0] == crossing.islands[1]:
         return None
     islands = scene.planes[crossing.plane].islands
     smaller = min(islands[i].shape.area for i in crossing.islands)
+    planes_mm = scene.board.stack.height_mm(crossing.plane, other)
     return estimate.handed_over(planes_mm, smaller, share)
+
+
+def ends_of(holes: Sequence[Stitch], side: int) -> tuple[tuple[Point, float], ...]:
+    """Place and diameter of the holes at one end of a run."""
+    return tuple((hole.at, hole.wide_mm) for hole in holes if hole.side == side)
+
+
+def past_by_holes(
+    scene: Scene,
+    crossing: Crossing,
+    other: int,
+    ends: Sequence[tuple[Point, Sequence[tuple[Point, float]]]],
+    run_mm: float,
+) -> Inductance:
+    """What it costs the return of a trace to get past a run on another plane: see `over_holes`."""
+    height = scene.board.stack.height_mm
+    return over_holes(
+        ends,
+        run_mm,
+        height(crossing.layer, crossing.plane),
+        crossing.width_mm,
+        height(crossing.plane, other),
+    )
 
 
 def reach_mm(crossing: Crossing, route: Route, way: Way | None) -> float:

@@ -364,3 +364,35 @@ def test_more_holes_to_the_other_plane_never_make_it_worse() -> None:
         assert found.added_nh is not None
         values.append(found.added_nh)
     assert values[0] > values[1] > values[2] >= values[3] - 1e-9
+
+
+def _strip(*holes: tuple[float, float]) -> Board:
+    """A stripline over two splits 1 mm wide and the island of 1 mm between them, from 19 to 20."""
+    splits = shapely.union_all([shapely.box(x, -1, x + 1, 31) for x in (18.0, 20.0)])
+    outer = [(x, y) for x in (17.0, 22.0) for y in (14.0, 16.0)]
+    made = board(
+        Sheet((("GND", WHOLE),)),
+        Sheet(lines=(_across(),)),
+        _cut(splits),
+        holes=[via(x, y) for x, y in [*outer, *holes]],
+        heights_mm=(0.6, 0.2),
+        outline=WHOLE,
+    )
+    assert isinstance(made, Board)
+    return made
+
+
+def test_splits_on_either_side_of_a_narrow_island_are_gone_past_at_once() -> None:
+    """Twins: the island's own holes far away, and so near that the return may well come back."""
+    (once,), _ = _judged(_strip((19.5, 8.0), (19.5, 22.0)))
+    assert once.kind == "split-crossing"
+    assert once.gap_mm == pytest.approx(2.0)
+    assert "2 times in all" in once.reason
+    whole = shapely.box(18, -1, 21, 31)
+    (as_one,), _ = _judged(_stripline(whole, *[(x, y) for x in (17.0, 22.0) for y in (14.0, 16.0)]))
+    assert once.added_nh is not None
+    assert as_one.added_nh is not None
+    # the island takes some of the return, or none of it
+    assert 0.5 * as_one.added_nh < once.added_nh <= as_one.added_nh * 1.05
+    each, _ = _judged(_strip((19.5, 15.6), (19.5, 14.4)))
+    assert len(each) == 2
