@@ -17,6 +17,8 @@ from splitcheck.planes.islands import Plane
 
 #: A trace is solved with at least this many heights of it beyond either rim of its gap.
 ENDS = 10.0
+#: Parts of what is missing that are tried for a longer end.
+FARTHEST_FIRST = (1.0, 0.75, 0.5, 0.25)
 #: A trace that a window cuts off ends so far inside it, mm.
 ON_RIM_MM = 0.01
 
@@ -25,8 +27,8 @@ def trace_over(task: Task, plane: Plane) -> engine.TraceOver:
     """The trace over its runs and on either side of them.
 
     Where it comes over the same gap again in a run that is judged by itself, it is cut short. A
-    short end goes straight on, if on copper: the source of a trace that ends right at the rim
-    would be that of its end, not of its length.
+    short end goes straight on over copper, as far as it keeps a height away from the gap: the
+    source of a trace that ends right at the rim would be that of its end, not of its length.
     """
     points: list[Point] = [(x, y) for x, y in _own_stretch(task, plane).coords]
     gap = plane.gaps[task.crossing.gap].shape
@@ -38,10 +40,13 @@ def trace_over(task: Task, plane: Plane) -> engine.TraceOver:
         length = float(np.hypot(*step))
         if missing <= 0 or length <= 0:
             continue
-        x, y = np.asarray(ends[-1]) + step / length * missing
-        end = (float(x), float(y))
-        if not gap.intersects(LineString([ends[-1], end])):
-            points = [*points, end] if ahead else [end, *points]
+        for share in FARTHEST_FIRST:
+            x, y = np.asarray(ends[-1]) + step / length * missing * share
+            end = (float(x), float(y))
+            near = shapely.dwithin(gap, shapely.Point(end), task.height_mm)
+            if not near and not gap.intersects(LineString([ends[-1], end])):
+                points = [*points, end] if ahead else [end, *points]
+                break
     return engine.TraceOver(LineString(points), task.crossing.width_mm)
 
 
