@@ -8,6 +8,7 @@ from splitcheck.board.names import in_words
 from splitcheck.loops.ways import Way
 from splitcheck.verdict.around import layers_beyond
 from splitcheck.verdict.scene import Scene, Weighed
+from splitcheck.verdict.under import net_under
 
 #: A capacitor helps if it is no farther off than this for each ns of rise time, mm/ns: 1 inch
 #: (S. Weir, si-list, 16 Oct 2008; L. Smith there on 22 Sep 1999 has three inches, to and fro).
@@ -31,11 +32,14 @@ def reason(scene: Scene, item: Weighed, handed_over: float = 0.0) -> str:
     plane = scene.planes[crossing.plane]
     one, other = (plane.islands[i] for i in crossing.islands)
     name = scene.board.stack.layers[crossing.plane - 1].name
+    between = net_under(scene, crossing)
     if item.kind == "split-crossing":
         start = (
             f"{name} is split here between {in_words(one.net_name)} ({one.id}) and "
             f"{in_words(other.net_name)} ({other.id})"
         )
+        if between is not None:
+            start += f", with copper of {in_words(between)} between them"
         if len(item.runs) > 1:
             start += f", and again close by, {len(item.runs)} times in all"
     elif crossing.aside_mm:
@@ -45,6 +49,8 @@ def reason(scene: Scene, item: Weighed, handed_over: float = 0.0) -> str:
         start = (
             f"{name} ({in_words(one.net_name)}) is open for {item.bare_mm:.2f} mm under the trace"
         )
+        if between is not None:
+            start += f", where copper of {in_words(between)} lies"
         if len(item.runs) > 1:
             start += f", in {len(item.runs)} places"
     shares, extras = _shares(scene, item, handed_over), _extras(scene, item)
