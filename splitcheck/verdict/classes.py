@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from difflib import get_close_matches
@@ -34,6 +35,8 @@ _CRYSTALS = frozenset({"Y", "X", "XTAL", "OSC"})
 _CRYSTAL_PINS = 4
 
 
+#: What chips call their pins: it says nothing of what the pin is used for.
+_PORT = re.compile(r"^P[A-Z]_?\d{1,2}$")
 #: Classes of memory that are called as other names of a board tell them.
 _GENERATIONS = ("ddr3", "ddr4")
 
@@ -155,8 +158,8 @@ def class_of(name: str, rules: Rules) -> tuple[Class, KnownBy]:
     >>> from splitcheck.verdict.packs import shipped_rules
     >>> def named(name):
     ...     return class_of(name, shipped_rules())[0].name
-    >>> [named(name) for name in ("/mcu/I2C_SDA", "LED2", "LED_CLK", "PE17\\LED2", "RAIN")]
-    ['i2c', 'led', 'clock', 'default', 'default']
+    >>> [named(name) for name in ("/mcu/I2C_SDA", "LED2", "LED_CLK", "PE17\\LED2", "PE17\\INT")]
+    ['i2c', 'led', 'clock', 'default', 'gpio']
     """
     asked: list[Class | None] = []
     for part in name.split("|"):
@@ -171,6 +174,14 @@ def class_of(name: str, rules: Rules) -> tuple[Class, KnownBy]:
             return min(told, key=lambda one: one.rise_ns), "name"
         return rules.default, "nothing"
     all_of = [rules.default if one is None else one for one in asked]
+    if any(not one.exempt for one in known):  # then a port's name is no second use of the net
+        ports = [bool(_PORT.match(word)) for part in name.split("|") for word in spellings(part)]
+        if len(ports) == len(asked):
+            all_of = [
+                one
+                for one, raw, port in zip(all_of, asked, ports, strict=True)
+                if not (port and raw is None)
+            ]
     awake = [one for one in all_of if not one.exempt]
     best = min(awake or all_of, key=lambda one: one.rise_ns)
     return best, "name" if best in known else "nothing"

@@ -279,10 +279,17 @@ def _reason(scene: Scene, case: Case, way: ReturnWay, nets: Nets) -> str:
         start = f"the trace leaves its plane {start}{ends} while another one goes on"
     else:
         start = f"the trace goes from {names[first.layers[0] - 1]} to {names[first.layers[1] - 1]}"
-    start += (
-        f"; its return must change between {names[one.layer - 1]} ({in_words(one.net_name)}) and "
-        f"{names[other.layer - 1]} ({in_words(other.net_name)}), {cavity.plates_mm:.2f} mm apart"
-    )
+    if one.layer == other.layer:
+        start += (
+            f"; its return must change on {names[one.layer - 1]} from {in_words(one.net_name)} to "
+            f"{in_words(other.net_name)}"
+        )
+    else:
+        start += (
+            f"; its return must change between {names[one.layer - 1]} ({in_words(one.net_name)}) "
+            f"and {names[other.layer - 1]} ({in_words(other.net_name)}), "
+            f"{cavity.plates_mm:.2f} mm apart"
+        )
     if cavity.current < 0.995:
         start += f", {100 * cavity.current:.0f} % of it"
     return f"{start}; {_way_in_words(way, nets)}"

@@ -317,3 +317,10 @@ def test_names_of_parts_tell_classes_but_make_no_net_exempt() -> None:
     assert _class("Net-(HSIC1-Pad2)") == "usb-high"
     for name in ("Net-(PWRLED1-Pad2)", "Net-(FB1-Pad1)", "Net-(SCK-Pad1)"):
         assert _class(name) == "default"
+
+
+def test_what_a_chip_calls_its_pin_says_nothing_of_its_use() -> None:
+    """The other name tells; but a pin with a second use is not exempt for the first."""
+    assert _class("PH8\\TOUCH-RST") == "reset"
+    assert _class("PE17\\LED2") == "default"
+    assert _class("LCD_D7\\TOUCH-RST") == "default"

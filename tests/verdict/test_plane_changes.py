@@ -20,7 +20,7 @@ from splitcheck.loops.handover import between_plates_nh, line_nh, plates_nf
 from splitcheck.verdict.findings import Finding
 from splitcheck.verdict.judge import judge
 from splitcheck.verdict.listing import near_enough
-from splitcheck.verdict.plane_changes import UNKNOWN
+from splitcheck.verdict.plane_changes import UNKNOWN, Case, change_findings
 from splitcheck.verdict.rules import DEFAULT_CLASS, Rules
 from splitcheck.verdict.scene import Judged, Scene
 from splitcheck.verdict.score import noise_mv
@@ -165,6 +165,29 @@ def test_capacitor_between_two_nets_is_the_way() -> None:
         ("capacitor", (20.0, 20.0), "C0")
     ]
     assert "the nearest capacitor that joins them, C0, is 5.0 mm away" in found.reason
+
+
+def test_islands_of_one_layer_are_not_told_as_so_far_apart() -> None:
+    """Down past the seam of a split layer, from over one island to under the other."""
+    left, right = shapely.box(0, 0, 20.9, 40), shapely.box(21.1, 0, 60, 40)
+    hole = shapely.Point(AT).buffer(0.5)
+    kept = left.difference(hole)
+    assert isinstance(kept, shapely.Polygon)
+    made = board(
+        Sheet(lines=(Line("CLK", ((5.0, 15.0), AT)),)),
+        Sheet((("+5V", kept), ("GND", right))),
+        Sheet(lines=(Line("CLK", (AT, (55.0, 15.0))),)),
+        holes=[via(*AT)],
+        heights_mm=(0.2, 0.2),
+        outline=WHOLE,
+    )
+    seen = scene(made)
+    islands = {island.net_name: island.id for island in seen.planes[2].islands}
+    at = (20.0, 35.0)
+    graph = with_capacitor(seen.graph, islands["+5V"], islands["GND"], at, at, 3.0, ref="C1")
+    (found,) = change_findings(replace(seen, graph=graph), [Case(changes(made), 0.0)], {})
+    assert "its return must change on L2 from +5V to GND; " in found.reason
+    assert "apart" not in found.reason
 
 
 def test_more_capacitors_never_make_it_worse() -> None:
