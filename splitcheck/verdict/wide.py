@@ -40,7 +40,7 @@ def wide_nets(board: Board) -> frozenset[int]:
     Notes
     -----
     The usual width is the median of all lines by length. A line counts as wide from three times
-    that on, unless its width over its height over the next copper layer makes it a line of some 40
+    that on, unless its width over its height over the nearest copper layer makes it a line of some 40
     to 65 ohm. Common practice, no source: who routes a board draws its supplies wide.
     """
     lines = _lines(board)
@@ -73,10 +73,10 @@ def _lines(board: Board) -> list[_Line]:
     first = 0
     for layer in board.layers:
         next_to = [n for n in (layer.number - 1, layer.number + 1) if 1 <= n <= last]
-        heights = [stack.height_mm(layer.number, n) for n in next_to]
+        height = min((stack.height_mm(layer.number, n) for n in next_to), default=float("inf"))
         for line in layer.lines:
             length = sum(hypot(x1 - x0, y1 - y0) for (x0, y0), (x1, y1) in pairwise(line.points))
-            like = any(LINE_LIKE[0] * h <= line.width_mm <= LINE_LIKE[1] * h for h in heights)
+            like = LINE_LIKE[0] * height <= line.width_mm <= LINE_LIKE[1] * height
             found.append(_Line(line.width_mm, length, board.net_of[first + line.piece], like))
         first += len(layer.pieces)
     return found

@@ -70,3 +70,15 @@ def test_they_are_counted_and_said() -> None:
 def test_without_lines_nothing_is_wide() -> None:
     """No median, no answer."""
     assert wide_nets(board(Sheet((("GND", GROUND),)), Sheet((("GND", GROUND),)))) == frozenset()
+
+
+def test_the_nearest_layer_says_whether_it_is_a_line() -> None:
+    """2.3 mm, 1.06 mm under one layer and 0.2 mm over another: no line of 50 ohm to the latter."""
+    made = board(
+        Sheet((("GND", GROUND),)),
+        Sheet(lines=(Line("", ((5, 40), (55, 40)), 2.3),)),
+        Sheet(lines=tuple(Line("", ((5, 5 + y), (55, 5 + y)), 0.2) for y in range(6))),
+        heights_mm=(1.06, 0.2),
+    )
+    known = _known(made)
+    assert [known.drive_of(net).name for net in wide_nets(made)] == ["wide"]
