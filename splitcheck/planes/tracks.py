@@ -84,9 +84,9 @@ def lay(board: Board, layer: CopperLayer, first_part: int, nets: frozenset[int])
 
 
 def redrawn(
-    tracks: Tracks, net: int, lines: Sequence[tuple[Point, ...]] = (), gone: int = -1
+    tracks: Tracks, net: int, lines: Sequence[tuple[Point, ...]] = (), gone: Sequence[int] = ()
 ) -> Tracks:
-    """The traces of one net alone, with a piece of them drawn elsewhere.
+    """The traces of one net alone, with some pieces of them drawn elsewhere.
 
     Parameters
     ----------
@@ -95,19 +95,19 @@ def redrawn(
     net
         Number of the net to keep.
     lines
-        Centre lines to add, mm; as wide as the piece that they stand for, or as the first.
+        Centre lines to add, mm; as wide as the first piece that they stand for, or as the first.
     gone
-        Index of the piece to leave out, -1 for none.
+        Indexes of the pieces to leave out.
     """
     keep = np.flatnonzero(tracks.net == net)
-    like = gone if gone >= 0 else int(keep[0])
+    like = gone[0] if gone else int(keep[0])
     more = [
         (*one, *other, float(tracks.width_mm[like]), net, float(tracks.line[like]))
         for line in lines
         for one, other in pairwise(line)
         if one != other
     ]
-    keep = keep[keep != gone]
+    keep = keep[~np.isin(keep, list(gone))]
     columns = tracks.start, tracks.end, tracks.width_mm, tracks.net, tracks.line
     old = np.column_stack([column[keep] for column in columns])
     return _laid(tracks.layer, np.concatenate([old, np.array(more).reshape(-1, 7)]))

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import TypeAlias
 
 from rich.text import Text
 
 from splitcheck import __version__
 from splitcheck.report.page import Page
 from splitcheck.report.words import number, shorten, with_error
-from splitcheck.verdict.findings import Finding, Proposal, Report
+from splitcheck.verdict.findings import Finding, Point, Proposal, Report
 
 KEPT = (
     "Proposals keep 0.2 mm to other nets, 0.25 mm between holes and 0.3 mm to the outline, as far "
@@ -28,11 +29,10 @@ NOTHING = (
     "Nothing to propose: no via, capacitor, bridge of copper or move within reach has room and "
     "takes away 5 % or more."
 )
-EDGE = (
-    "Nothing is worked out for edge runs: move the trace inwards by some heights over its plane, "
-    "or let the plane reach farther out."
-)
 _NAME_CELLS = 40
+
+#: What makes two proposals the same: gap, kind and places.
+_Key: TypeAlias = tuple[str, str, tuple[Point, ...]]
 
 
 def render(
@@ -62,8 +62,9 @@ def render(
     page.say(
         f"splitcheck {__version__}: {name}, {wide:.2f} x {high:.2f} mm", indent=0, style="bold"
     )
+    told: dict[_Key, str] = {}
     for finding in asked:
-        _finding(page, finding, top)
+        _finding(page, finding, top, told)
     if not asked:
         page.gap()
         page.say("Nothing to mend: no finding.", indent=0)
@@ -75,7 +76,7 @@ def render(
     return str(page)
 
 
-def _finding(page: Page, finding: Finding, top: int) -> None:
+def _finding(page: Page, finding: Finding, top: int, told: dict[_Key, str]) -> None:
     over = f" over {shorten(finding.plane_layer, _NAME_CELLS)}" if finding.plane_layer else ""
     net = shorten(finding.net, _NAME_CELLS)
     page.heading(f"{finding.id}  {finding.level}  {finding.kind}  {net}")
@@ -85,9 +86,11 @@ def _finding(page: Page, finding: Finding, top: int) -> None:
     for place, proposal in enumerate(finding.proposals, start=1):
         if top and place > top:
             break
-        _proposal(page, place, proposal)
+        key = (finding.gap, proposal.what, proposal.at_mm)
+        _proposal(page, place, proposal, told.get(key))
+        told.setdefault(key, f"the same as {finding.id}, {place}.")
     if not finding.proposals:
-        page.say(EDGE if finding.kind == "edge-run" else NOTHING)
+        page.say(NOTHING)
 
 
 def _now(finding: Finding) -> str:
@@ -97,11 +100,15 @@ def _now(finding: Finding) -> str:
     return f"{with_error(finding.added_nh, finding.error_nh)} nH{noise}"
 
 
-def _proposal(page: Page, place: int, proposal: Proposal) -> None:
+def _proposal(page: Page, place: int, proposal: Proposal, same: str | None) -> None:
+    """A proposal with what it leaves; one that was told of another net over the gap in short."""
     mark = "(!) " if proposal.isolation else ""
+    page.say_text(Text(f"{mark}{proposal.what}: {_left(proposal)}"), lead=f"{place}. ")
+    page.say(same or proposal.words, indent=5)
+
+
+def _left(proposal: Proposal) -> str:
+    if proposal.added_nh == 0.0:
+        return "leaves nothing that would be a finding"
     left = with_error(proposal.added_nh, proposal.error_nh)
-    page.say_text(
-        Text(f"{mark}{proposal.what}: leaves {left} nH, {number(proposal.noise_mv)} mV"),
-        lead=f"{place}. ",
-    )
-    page.say(proposal.words, indent=5)
+    return f"leaves {left} nH, {number(proposal.noise_mv)} mV"

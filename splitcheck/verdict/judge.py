@@ -182,10 +182,36 @@ def value_again(
         if value is None:
             values.append(None)
         elif all_of_them or value.added_nh >= scene.min_nh:
-            drive = scene.drive_of(item.crossing.net)
-            noise = noise_over_gap(value.added_nh, drive, _along_ns(scene, item))
-            values.append((value, noise.mv))
+            values.append((value, _noise(scene, item, value).mv))
     return tuple(values)
+
+
+def value_together(
+    scene: Scene, crossings: Sequence[Crossing]
+) -> tuple[tuple[Crossing, Inductance | None, float | None], ...]:
+    """Value the crossings of several traces in a changed scene, those over one gap in one solve.
+
+    Returns
+    -------
+    For each stretch of trace over a gap the crossing that stands for it, what it adds and its noise
+    in mV, both None where there is no way back. Those that would be no finding are left out.
+    """
+    weighed = [item for one in crossings if not isinstance(item := weigh(scene, one), str)]
+    items = once_a_gap(scene, weighed)
+    solved = _solve_all(scene, items, map)
+    values: list[tuple[Crossing, Inductance | None, float | None]] = []
+    for number, item in enumerate(items):
+        value = solved[number].value if number in solved else item.estimate
+        if value is None:
+            values.append((item.crossing, None, None))
+        elif value.added_nh >= scene.min_nh:
+            values.append((item.crossing, value, _noise(scene, item, value).mv))
+    return tuple(values)
+
+
+def _noise(scene: Scene, item: Weighed, value: Inductance) -> Noise:
+    drive = scene.drive_of(item.crossing.net)
+    return noise_over_gap(value.added_nh, drive, _along_ns(scene, item))
 
 
 def _crossing_finding(

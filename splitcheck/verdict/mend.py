@@ -21,6 +21,7 @@ from splitcheck.verdict.plane_changes import change_findings, from_leaving, from
 from splitcheck.verdict.proposals.capacitors import capacitors
 from splitcheck.verdict.proposals.case import Case
 from splitcheck.verdict.proposals.copper import copper
+from splitcheck.verdict.proposals.edges import find_edges, inwards, widened
 from splitcheck.verdict.proposals.handing import return_capacitors, return_vias
 from splitcheck.verdict.proposals.moves import moves
 from splitcheck.verdict.proposals.room import Room
@@ -103,6 +104,8 @@ def _ways(case: Case) -> tuple[Callable[[Case], Iterator[Proposal]], ...]:
         return (copper,)
     if case.item is not None:
         return vias, capacitors, copper, moves
+    if case.edges:
+        return inwards, widened
     return (return_vias, return_capacitors) if case.change is not None else (copper,)
 
 
@@ -124,25 +127,34 @@ def _case(
     if item is None and finding.kind == "plane-change":
         change = _change(scene, tracks, net, finding)
         return None if change is None else Case(scene, room, finding, net, own, None, change)
-    if item is None and finding.kind != "no-plane":
+    if item is None and finding.kind not in {"no-plane", "edge-run"}:
         return None
-    beside = () if item is None else _beside(judged, item)
+    others = {} if item is None else _others(judged, item)
+    beside = tuple(run for runs in others.values() for run in runs)
+    neighbours = tuple(f for f in judged.findings if f.id in others)
     alone = redrawn(own, net)
     before = find_crossings(alone, tuple(scene.planes.values()))
-    return Case(scene, room, finding, net, alone, item, None, beside, before)
+    edges = find_edges(scene, alone) if item is None and finding.kind == "edge-run" else ()
+    return Case(scene, room, finding, net, alone, item, None, beside, neighbours, before, edges)
 
 
-def _beside(judged: Judged, item: Weighed) -> tuple[Crossing, ...]:
-    """Crossings of the same gap from the same layer near enough to be solved together with one."""
+def _others(judged: Judged, item: Weighed) -> dict[str, tuple[Crossing, ...]]:
+    """By id of the finding, crossings of the same gap from the same layer that are near.
+
+    Those near enough to be solved together with one.
+    """
     own = item.crossing
-    return tuple(
-        run
-        for other in judged.weighed.values()
-        for run in other.runs
+    found = {
+        name: tuple(
+            run
+            for run in other.runs
+            if (run.plane, run.gap, run.layer) == (own.plane, own.gap, own.layer)
+            and dist(run.at, own.at) <= TOGETHER_MOST_MM
+        )
+        for name, other in judged.weighed.items()
         if other is not item
-        and (run.plane, run.gap, run.layer) == (own.plane, own.gap, own.layer)
-        and dist(run.at, own.at) <= TOGETHER_MOST_MM
-    )
+    }
+    return {name: runs for name, runs in found.items() if runs}
 
 
 def _change(scene: Scene, tracks: Sequence[Tracks], net: int, finding: Finding) -> Change | None:

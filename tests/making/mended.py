@@ -55,24 +55,22 @@ def _vias(plan: BoardPlan, proposal: Proposal) -> BoardPlan:
 
 
 def _capacitor(plan: BoardPlan, proposal: Proposal, layers: dict[str, int]) -> BoardPlan:
-    layer = layers[_word(r"\(0603\) on (\S+) from", proposal.words)]
-    nets = (_word(r"from (\S+) at", proposal.words), _word(r" to (\S+) at", proposal.words))
-    places = _places(proposal.words)
-    pads = tuple(
-        Pad(layer, net, at, SIDES_MM, "C99", pin)
-        for net, at, pin in zip(nets, places[:2], "12", strict=True)
-    )
-    down = tuple(zip(nets, places[2:4], strict=True))
-    holes = tuple(_via(net, at) for net, at in down)
-    strips = tuple(
-        Trace(layer, net, (pad.at, at), STRIP_MM) for pad, (net, at) in zip(pads, down, strict=True)
-    )
-    return replace(
-        plan,
-        pads=(*plan.pads, *pads),
-        holes=(*plan.holes, *holes),
-        traces=(*plan.traces, *strips),
-    )
+    """Each capacitor with its pads, its vias and the copper between them."""
+    said = rf"on (\S+) from (\S+) at {PLACE} to (\S+) at {PLACE}, its vias at {PLACE} and {PLACE}"
+    found = re.findall(said, proposal.words)
+    assert 2 * len(found) == len(proposal.at_mm), proposal.words
+    for number, (name, one, x0, y0, other, x1, y1, *down) in enumerate(found):
+        layer, ref = layers[name], f"C{99 - number}"
+        ends = ((one, x0, y0, *down[:2]), (other, x1, y1, *down[2:]))
+        for pin, (net, *numbers) in zip("12", ends, strict=True):
+            x, y, via_x, via_y = map(float, numbers)
+            plan = replace(
+                plan,
+                pads=(*plan.pads, Pad(layer, net, (x, y), SIDES_MM, ref, pin)),
+                holes=(*plan.holes, _via(net, (via_x, via_y))),
+                traces=(*plan.traces, Trace(layer, net, ((x, y), (via_x, via_y)), STRIP_MM)),
+            )
+    return plan
 
 
 def _moved(

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import replace
 from math import hypot
 from typing import NamedTuple
@@ -12,13 +12,13 @@ import shapely
 from numpy.typing import NDArray
 from shapely import LineString
 
-from splitcheck.loops.bridges import with_capacitor
+from splitcheck.loops.bridges import IslandGraph, with_capacitor
 from splitcheck.loops.mounted import STRIP_MM, mounted_nh
 from splitcheck.loops.ways import heading
 from splitcheck.planes.islands import Island
 from splitcheck.units import Floats
 from splitcheck.verdict.findings import Point, Proposal
-from splitcheck.verdict.proposals.case import Case, worth_of
+from splitcheck.verdict.proposals.case import Case, Shared, best_of, worth_with_neighbours
 from splitcheck.verdict.proposals.room import HOLE_MM, PAD_MM
 from splitcheck.verdict.proposals.vias import circles
 
@@ -55,27 +55,52 @@ class Mount(NamedTuple):
 
 
 def capacitors(case: Case) -> Iterator[Proposal]:
-    """Propose a capacitor beside the trace, nearest places first."""
+    """Propose a capacitor beside the trace, nearest places first.
+
+    Where one leaves more than a note, two are tried: one on either side of the trace, or of all
+    the traces that cross the gap side by side, where there is room.
+    """
     one, other = case.islands
     if one.id == other.id or one.net_name == other.net_name:
         return
-    for mount in list(_mounts(case)) or mounts_near(case, case.crossing.at, case.islands):
+    left, right = _mounts(case, 1), _mounts(case, -1)
+    if not left and not right:
+        left = list(mounts_near(case, case.crossing.at, case.islands))
+    singles = [*left[:1], *right[:1]] if left and right else left + right
+    tried = [_valued(case, [mount]) for mount in singles]
+    best = best_of(shared for shared, _ in tried)
+    if len(singles) == 2 and (best is None or not case.is_enough(best.own)):
+        shared, proposal = _valued(case, singles)
+        if best is None or shared.gains_on(best):
+            tried.append((shared, proposal))
+    yield from (proposal for _, proposal in tried if proposal is not None)
+
+
+def _valued(case: Case, mounts: Sequence[Mount]) -> tuple[Shared, Proposal | None]:
+    """Capacitors in some places: what they leave, and the proposal if they gain."""
+    one, other = case.islands
+    graph = with_mounts(case.scene.graph, one, other, mounts)
+    shared = worth_with_neighbours(case, replace(case.scene, graph=graph))
+    said = mount_words(case, mounts, one.net_name, other.net_name)
+    places = [pad for mount in mounts for pad in mount.pads]
+    return shared, case.proposal("capacitor", places, said + shared.words, shared.own)
+
+
+def with_mounts(
+    graph: IslandGraph, one: Island, other: Island, mounts: Sequence[Mount]
+) -> IslandGraph:
+    """The graph of islands with capacitors between two of them in some places."""
+    for number, mount in enumerate(mounts, start=1):
         graph = with_capacitor(
-            case.scene.graph,
+            graph,
             one.id,
             other.id,
             *mount.down,
             mount.value_nh,
             layer=mount.layer,
-            ref="a new capacitor",
+            ref=f"new capacitor {number}",
         )
-        assert case.item is not None
-        scene = replace(case.scene, graph=graph)
-        worth = worth_of(scene, case.item.runs, case.beside)
-        said = mount_words(case, mount, one.net_name, other.net_name)
-        found = case.proposal("capacitor", mount.pads, said, worth)
-        if found is not None:
-            yield found
+    return graph
 
 
 def mounts_near(case: Case, start: Point, islands: tuple[Island, Island]) -> Iterator[Mount]:
@@ -116,6 +141,7 @@ def _lands(
     """For each place whether vias so far before and after it would come down on the islands."""
     on = np.ones(len(xs), dtype=np.bool_)
     for sign, island in zip((-1, 1), islands, strict=True):
+        on &= ~case.room.hopeless_vias(xs + sign * reach[0], ys + sign * reach[1])
         plane = case.scene.planes[island.layer]
         found = plane.island_at(xs + sign * reach[0], ys + sign * reach[1])
         ids = np.array([each.id == island.id for each in plane.islands] + [False])
@@ -143,24 +169,37 @@ def _mount_at(
     return Mount(layer, pads, down, tuple(sorted(set(opened))), value)
 
 
-def _mounts(case: Case) -> Iterator[Mount]:
-    """Free places for a capacitor, nearest to the trace first."""
+def _mounts(case: Case, side: int) -> list[Mount]:
+    """Free places for a capacitor on one side of the trace (1 left, -1 right), nearest first.
+
+    They are looked for so far beyond the outermost trace that crosses the gap nearby.
+    """
     outer = (1, len(case.scene.board.stack.layers))
-    taken: list[float] = []
-    for aside in sorted(np.arange(-FARTHEST_MM, FARTHEST_MM + STEP_MM / 2, STEP_MM), key=abs):
-        if any(abs(aside - other) < PLACES_APART_MM for other in taken):
+    layers = sorted(outer, key=lambda n: (abs(n - case.crossing.plane), n))
+    found: list[Mount] = []
+    last = -PLACES_APART_MM
+    farthest = _bus_mm(case, side) + FARTHEST_MM
+    for aside in np.arange(0.0 if side > 0 else STEP_MM, farthest + STEP_MM / 2, STEP_MM).tolist():
+        if aside - last < PLACES_APART_MM:
             continue
-        across = _across(case, float(aside))
+        across = _across(case, side * aside)
         if across is None:
             continue
-        for layer in sorted(outer, key=lambda n: (abs(n - case.crossing.plane), n)):
-            mount = _mount(case, layer, *across)
-            if mount is not None:
-                yield mount
-                taken.append(float(aside))
-                break
-        if len(taken) == TRIED:
-            return
+        mounts = (_mount(case, layer, *across) for layer in layers)
+        mount = next((mount for mount in mounts if mount is not None), None)
+        if mount is not None:
+            found.append(mount)
+            last = aside
+        if len(found) == TRIED:
+            break
+    return found
+
+
+def _bus_mm(case: Case, side: int) -> float:
+    """How far the other crossings of the gap reach to one side of the trace, mm."""
+    (dx, dy), (x, y) = heading(case.crossing), case.crossing.at
+    off = [((c.at[1] - y) * dx - (c.at[0] - x) * dy) * side for c in case.beside]
+    return max(0.0, *off) if off else 0.0
 
 
 def _across(case: Case, aside: float) -> tuple[Floats, Floats] | None:
@@ -248,17 +287,23 @@ def _place(at: Floats) -> Point:
     return round(float(at[0]), 3), round(float(at[1]), 3)
 
 
-def mount_words(case: Case, mount: Mount, one: str, other: str) -> str:
+def mount_words(case: Case, mounts: Sequence[Mount], one: str, other: str) -> str:
     """What to put where, in one sentence."""
+    placed = [_place_words(case, mount, one, other) for mount in mounts]
+    said = "a capacitor (0603) " + ", and another ".join(placed)
+    values = " and ".join(dict.fromkeys(f"{mount.value_nh:.2f} nH" for mount in mounts))
+    said += f"; taken as {values}{' each' if len(mounts) > 1 else ''} as mounted"
+    opened = sorted({name for mount in mounts for name in mount.opened})
+    return f"{said}; opens {', '.join(opened)}" if opened else said
+
+
+def _place_words(case: Case, mount: Mount, one: str, other: str) -> str:
     (x0, y0), (x1, y1) = mount.pads
     said = (
-        f"a capacitor (0603) on {case.layer_name(mount.layer)} from {one} at "
+        f"on {case.layer_name(mount.layer)} from {one} at "
         f"x {x0:.2f} y {y0:.2f} to {other} at x {x1:.2f} y {y1:.2f}"
     )
     if mount.down != mount.pads:
         (x0, y0), (x1, y1) = mount.down
         said += f", its vias at x {x0:.2f} y {y0:.2f} and x {x1:.2f} y {y1:.2f}"
-    said += f"; taken as {mount.value_nh:.2f} nH as mounted"
-    if mount.opened:
-        said += f"; opens {', '.join(mount.opened)}"
     return said

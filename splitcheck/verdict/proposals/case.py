@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from math import hypot
 from typing import NamedTuple
@@ -16,20 +16,24 @@ from shapely.ops import nearest_points
 from splitcheck.loops.bridges import joined_by_copper, over_parts
 from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings
+from splitcheck.planes.edges import EdgeRun
 from splitcheck.planes.islands import Island, Plane
 from splitcheck.planes.tracks import Tracks
 from splitcheck.units import segments
 from splitcheck.verdict.bare import OWN_END_MM, bare_findings
 from splitcheck.verdict.findings import Finding, Point, Proposal
-from splitcheck.verdict.judge import value_again
+from splitcheck.verdict.judge import value_again, value_together
 from splitcheck.verdict.plane_changes import Case as Change
 from splitcheck.verdict.proposals.room import Room
 from splitcheck.verdict.scene import Scene, Weighed
+from splitcheck.verdict.score import level
 
 #: A gap this many heights beside a trace still adds something (5 h: 0.002 nH for 4 mm).
 BESIDE_HEIGHTS = 5.0
 #: A proposal must take away at least this share of what the finding adds.
 LEAST_GAIN = 0.05
+#: More of a kind (two capacitors for one) must take away this share of what the fewer leave.
+LEAST_MORE = 0.1
 
 
 class Worth(NamedTuple):
@@ -59,8 +63,12 @@ class Case:
     """The change of planes behind it, if it is one."""
     beside: tuple[Crossing, ...] = ()
     """Crossings of other traces over the same gap."""
+    neighbours: tuple[Finding, ...] = ()
+    """The findings that these crossings are."""
     before: tuple[tuple[Crossing, ...], tuple[BareTrace, ...]] = ((), ())
     """What the net's traces on the layer cross, and where they are bare, as the board is."""
+    edges: tuple[EdgeRun, ...] = ()
+    """Where they run along edges of planes, if the finding is such a run."""
 
     @property
     def crossing(self) -> Crossing:
@@ -83,6 +91,13 @@ class Case:
         """The island of an id."""
         found: Island = self.scene.graph.nodes[name]["island"]
         return found
+
+    def is_enough(self, worth: Worth | None) -> bool:
+        """Whether what is left is no more than a note."""
+        if worth is None:
+            return False
+        drive = self.scene.drive_of(self.net)
+        return level(worth.noise_mv, drive, worth.added_nh) == "note"
 
     def bare_spans(self) -> list[tuple[Point, Point]]:
         """Stretches of the net's traces on its layer with no plane at all."""
@@ -142,6 +157,65 @@ def worth_of(
     values = value_again(scene, crossings, with_them)
     known = [Worth(v[0].added_nh, v[0].error_nh, v[1]) for v in values if v is not None]
     return together(known) if len(known) == len(values) else None
+
+
+class Shared(NamedTuple):
+    """What is left of a finding, and of all that cross its gap nearby."""
+
+    own: Worth | None
+    """None: no way back."""
+    all_nh: float | None
+    """The sum over all of them, nH; None if one of them has no way back."""
+    words: str
+    """The sum in words; empty where no other net crosses the gap nearby."""
+
+    def gains_on(self, other: Shared) -> bool:
+        """Whether more of a kind is worth it: for the net itself, or for all of them together."""
+        if self.own is None or other.own is None:
+            return self.own is not None
+        if self.own.added_nh <= (1.0 - LEAST_MORE) * other.own.added_nh:
+            return True
+        if self.all_nh is None or other.all_nh is None:
+            return self.all_nh is not None
+        return self.all_nh <= (1.0 - LEAST_MORE) * other.all_nh
+
+
+def best_of(tried: Iterable[Shared]) -> Shared | None:
+    """The one that leaves least; None if none has a way back."""
+    known = [(each.own.added_nh, each) for each in tried if each.own is not None]
+    return min(known, key=lambda pair: pair[0], default=(0.0, None))[1]
+
+
+def worth_with_neighbours(case: Case, scene: Scene) -> Shared:
+    """What a finding adds in a changed scene, and what all nets over its gap add there."""
+    assert case.item is not None
+    values = value_together(scene, [*case.item.runs, *case.beside])
+    own = [(value, mv) for crossing, value, mv in values if crossing in case.item.runs]
+    if any(value is None for value, _ in own):
+        return Shared(None, None, "")
+    worth = together([Worth(v.added_nh, v.error_nh, mv or 0.0) for v, mv in own if v is not None])
+    others = [None if v is None else v.added_nh for c, v, _ in values if c not in case.item.runs]
+    known = [added for added in others if added is not None]
+    all_nh = worth.added_nh + sum(known) if len(known) == len(others) else None
+    return Shared(worth, all_nh, with_all(case, [worth.added_nh, *others]))
+
+
+def with_all(case: Case, left_nh: Sequence[float | None]) -> str:
+    """What is left for all nets over a gap, in words that follow those of a proposal."""
+    if not case.neighbours:
+        return ""
+    many = len(case.neighbours)
+    said = f"; with the {many} other nets" if many > 1 else "; with the other net"
+    said += " near it over this gap"
+    before = [finding.added_nh for finding in (case.finding, *case.neighbours)]
+    lost = sum(1 for added in left_nh if added is None)
+    left = sum(added for added in left_nh if added is not None)
+    if lost:
+        return f"{said} {left:.2f} nH left, and {lost} still without a way back"
+    was_lost = sum(1 for added in before if added is None)
+    if was_lost:
+        return f"{said} {left:.2f} nH left, where {was_lost} had no way back"
+    return f"{said} {left:.2f} nH left of {sum(added or 0.0 for added in before):.2f}"
 
 
 def together(parts: Sequence[Worth]) -> Worth:

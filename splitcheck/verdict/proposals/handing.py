@@ -3,17 +3,20 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import replace
+from functools import partial
 from math import hypot
+from typing import TypeVar
 
-from splitcheck.loops.bridges import with_capacitor
 from splitcheck.verdict.findings import Point, Proposal
 from splitcheck.verdict.plane_changes import change_findings
-from splitcheck.verdict.proposals.capacitors import mount_words, mounts_near
-from splitcheck.verdict.proposals.case import Case, Worth, worth_of_findings
-from splitcheck.verdict.proposals.vias import circles, met_by, spots, stitched, words
+from splitcheck.verdict.proposals.capacitors import Mount, mount_words, mounts_near, with_mounts
+from splitcheck.verdict.proposals.case import LEAST_MORE, Case, Worth, worth_of_findings
+from splitcheck.verdict.proposals.vias import Spot, circles, met_by, spots, stitched, words
 from splitcheck.verdict.scene import Scene
+
+T = TypeVar("T")
 
 
 def return_vias(case: Case) -> Iterator[Proposal]:
@@ -27,13 +30,16 @@ def return_vias(case: Case) -> Iterator[Proposal]:
             frozenset(ids) if {one.id, other.id} <= ids else frozenset()
             for ids in met_by(case, one.net_name, xs, ys)
         ]
-        for spot in spots(case, one.net_name, xs, ys, joined)[:1]:
-            apart = hypot(spot.at[0] - start[0], spot.at[1] - start[1])
-            said = words(case, [spot], one.net_name, f"{apart:.2f} mm from the change")
-            worth = _worth(case, stitched(case.scene, [spot]))
-            found = case.proposal("via", [spot.at], said, worth)
-            if found is not None:
-                yield found
+        free = spots(case, one.net_name, xs, ys, joined)
+        yield from _fewest(case, free, partial(_vias, case, start))
+
+
+def _vias(case: Case, start: Point, places: Sequence[Spot]) -> tuple[Worth, Proposal | None]:
+    """Vias in some places: what they leave, and the proposal if they gain."""
+    far = [f"{hypot(s.at[0] - start[0], s.at[1] - start[1]):.2f} mm" for s in places]
+    said = words(case, places, places[0].net, f"{' and '.join(far)} from the change")
+    worth = _worth(case, stitched(case.scene, places))
+    return worth, case.proposal("via", [spot.at for spot in places], said, worth)
 
 
 def return_capacitors(case: Case) -> Iterator[Proposal]:
@@ -42,21 +48,31 @@ def return_capacitors(case: Case) -> Iterator[Proposal]:
     if one.net_name == other.net_name:
         return
     for start in _starts(case):
-        for mount in mounts_near(case, start, (one, other)):
-            graph = with_capacitor(
-                case.scene.graph,
-                one.id,
-                other.id,
-                *mount.down,
-                mount.value_nh,
-                layer=mount.layer,
-                ref="a new capacitor",
-            )
-            worth = _worth(case, replace(case.scene, graph=graph))
-            said = mount_words(case, mount, one.net_name, other.net_name)
-            found = case.proposal("capacitor", mount.pads, said, worth)
-            if found is not None:
-                yield found
+        free = list(mounts_near(case, start, (one, other)))
+        yield from _fewest(case, free, partial(_capacitors, case))
+
+
+def _capacitors(case: Case, mounts: Sequence[Mount]) -> tuple[Worth, Proposal | None]:
+    """Capacitors in some places: what they leave, and the proposal if they gain."""
+    one, other = (case.island(name) for name in case.finding.islands)
+    graph = with_mounts(case.scene.graph, one, other, mounts)
+    worth = _worth(case, replace(case.scene, graph=graph))
+    said = mount_words(case, mounts, one.net_name, other.net_name)
+    places = [pad for mount in mounts for pad in mount.pads]
+    return worth, case.proposal("capacitor", places, said, worth)
+
+
+def _fewest(
+    case: Case, free: Sequence[T], valued: Callable[[Sequence[T]], tuple[Worth, Proposal | None]]
+) -> Iterator[Proposal]:
+    """One in each of some places, and one in two of them if one leaves more than a note."""
+    tried = [valued([place]) for place in free]
+    best = min((worth.added_nh for worth, _ in tried), default=0.0)
+    if len(free) > 1 and not any(case.is_enough(worth) for worth, _ in tried):
+        worth, proposal = valued(free[:2])
+        if worth.added_nh <= (1.0 - LEAST_MORE) * best:
+            tried.append((worth, proposal))
+    yield from (proposal for _, proposal in tried if proposal is not None)
 
 
 def _starts(case: Case) -> list[Point]:

@@ -2,15 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
+from itertools import pairwise
 from math import inf
+from typing import NamedTuple
 
+import networkx as nx
 import numpy as np
 import shapely
 from shapely import LineString
+from shapely.ops import substring
 
 from splitcheck.loops.ways import heading
-from splitcheck.planes.tracks import redrawn
+from splitcheck.planes.tracks import Tracks, redrawn
 from splitcheck.units import Floats, segments
 from splitcheck.verdict.findings import Point, Proposal
 from splitcheck.verdict.proposals.case import Case, worth_after
@@ -22,32 +26,68 @@ FARTHEST_MM = 10.0
 HEIGHTS_BEYOND = (5.0, 2.0, 1.0)
 #: The piece that is moved begins and ends one of these far beyond the gap, mm.
 ROOMS_MM = (1.0, 1.5, 2.0, 3.0, 4.0)
+#: A path lies along a piece of trace from this much in common on, mm.
+ALONG_MM = 5e-3
 
 
 def moves(case: Case) -> Iterator[Proposal]:
     """Propose the shortest move to either side that leaves the gap behind and has room."""
-    piece = _piece(case)
-    if piece is None or case.islands[0].id != case.islands[1].id:
+    if case.islands[0].id != case.islands[1].id:
+        return
+    chain = chain_over(case.tracks, LineString(case.crossing.path))
+    if chain is None:
         return
     for side in (1, -1):
-        proposal = _moved(case, piece, side)
+        proposal = _moved(case, chain, side)
         if proposal is not None:
             yield proposal
 
 
-def _piece(case: Case) -> int | None:
-    """The straight piece of trace that the crossing lies on, if it is on one alone."""
-    path = case.crossing.path
-    if len(path) != 2:
+class Chain(NamedTuple):
+    """Pieces of trace in a row, without a branch between its ends."""
+
+    line: LineString
+    pieces: tuple[int, ...]
+
+
+def chain_over(tracks: Tracks, path: LineString) -> Chain | None:
+    """The pieces of trace in a row that a path runs along; None if it branches off or ends there.
+
+    Parameters
+    ----------
+    tracks
+        The traces of one net on one layer.
+    path
+        A path along them, mm.
+    """
+    lines = segments(np.stack([tracks.start, tracks.end], axis=1))
+    thin = path.buffer(1e-3)
+    along = shapely.length(shapely.intersection(lines, thin))
+    on = np.flatnonzero(along > ALONG_MM).tolist()
+    if not on or not shapely.union_all(lines[on]).buffer(2e-3).covers(path):
         return None
-    t = case.tracks
-    lines = segments(np.stack([t.start, t.end], axis=1))
-    whole = LineString(path)
-    on = [i for i, line in enumerate(lines.tolist()) if line.buffer(1e-3).covers(whole)]
-    return on[0] if len(on) == 1 else None
+    graph: nx.Graph[int] = nx.Graph([(*tracks.nodes[i].tolist(), {"piece": i}) for i in on])
+    ends = sorted(node for node, degree in graph.degree() if degree == 1)
+    if len(ends) != 2 or len(graph.edges) != len(on) or not nx.is_connected(graph):
+        return None
+    nodes = nx.shortest_path(graph, ends[0], ends[1])
+    if len(nodes) != len(on) + 1:
+        return None
+    inner = nodes[1:-1]
+    if any(len(tracks.at_node(node)) != 2 for node in inner):
+        return None  # something branches off
+    pieces = tuple(graph.edges[pair]["piece"] for pair in pairwise(nodes))
+    points = [_node_at(tracks, piece, node) for piece, node in zip(pieces, nodes, strict=False)]
+    points.append(_node_at(tracks, pieces[-1], nodes[-1]))
+    return Chain(LineString(points), pieces)
 
 
-def _moved(case: Case, piece: int, side: int) -> Proposal | None:
+def _node_at(tracks: Tracks, piece: int, node: int) -> Point:
+    ends = tracks.start, tracks.end
+    return _place(ends[int(tracks.nodes[piece, 1] == node)][piece])
+
+
+def _moved(case: Case, chain: Chain, side: int) -> Proposal | None:
     crossing = case.crossing
     height = case.scene.board.stack.height_mm(crossing.layer, crossing.plane)
     (dx, dy) = heading(crossing)
@@ -57,28 +97,44 @@ def _moved(case: Case, piece: int, side: int) -> Proposal | None:
         shift = _shift_mm(case, aside, beyond)
         if shift > FARTHEST_MM:
             continue
-        free = _free(case, piece, aside * shift)
-        found = None if free is None else _valued(case, piece, shift, *free)
+        free = _free(case, chain, aside * shift)
+        found = None if free is None else _valued(case, chain, shift, *free)
         if found is not None:
             return found
     return None
 
 
 def _free(
-    case: Case, piece: int, shift: Floats
+    case: Case, chain: Chain, shift: Floats
 ) -> tuple[tuple[Point, ...], tuple[str, ...]] | None:
     """The shortest moved way that has room, and the pours it opens."""
     pairs = [(one, other) for one in ROOMS_MM for other in ROOMS_MM]
     for rooms in sorted(pairs, key=lambda pair: (sum(pair), pair)):
-        ends = _ends(case, piece, rooms)
+        ends = _ends(case, chain.line, rooms)
         if ends is None:
             continue
-        there = (ends[0], _shifted(ends[0], shift), _shifted(ends[1], shift), ends[1])
+        there = carried(chain.line, ends, shift)
         shape = LineString(there).buffer(case.crossing.width_mm / 2, quad_segs=4)
+        if not LineString(there).is_simple:
+            continue
         opened = case.room.openings(shape, case.crossing.layer, case.finding.net)
         if opened is not None:
             return there, opened
     return None
+
+
+def carried(line: LineString, ends: tuple[float, float], shift: Floats) -> tuple[Point, ...]:
+    """The way that leaves a line at one place along it, runs beside it and comes back.
+
+    Examples
+    --------
+    >>> carried(LineString([(0, 0), (9, 0)]), (2.0, 5.0), np.array([0.0, 1.0]))
+    ((2.0, 0.0), (2.0, 1.0), (5.0, 1.0), (5.0, 0.0))
+    """
+    part = substring(line, *ends)
+    inner = [(round(x, 4), round(y, 4)) for x, y in part.coords]
+    moved = [(round(x + shift[0].item(), 4), round(y + shift[1].item(), 4)) for x, y in inner]
+    return (inner[0], *moved, inner[-1])
 
 
 def _shift_mm(case: Case, aside: Floats, beyond: float) -> float:
@@ -97,43 +153,57 @@ def _shift_mm(case: Case, aside: Floats, beyond: float) -> float:
     ]
     if not inside:
         return inf
-    corners = shapely.get_coordinates(inside) - np.array(crossing.at)
-    reach = float((corners @ aside).max())
+    rims = shapely.get_coordinates(inside) - np.array(crossing.at)
+    back = float(((np.array(crossing.path) - np.array(crossing.at)) @ aside).min())
+    reach = float((rims @ aside).max()) - min(back, 0.0)
     return float(np.ceil((reach + beyond) / 0.05) * 0.05)
 
 
-def _ends(case: Case, piece: int, rooms: tuple[float, float]) -> tuple[Point, Point] | None:
-    """Where the trace leaves its old way and comes back, in the order of its straight piece."""
-    t = case.tracks
-    line = LineString([t.start[piece], t.end[piece]])
+def _ends(case: Case, line: LineString, rooms: tuple[float, float]) -> tuple[float, float] | None:
+    """How far along its pieces the trace leaves its old way and comes back, mm."""
     rims = sorted(line.project(shapely.Point(rim)) for rim in case.crossing.path)
     start, stop = rims[0] - rooms[0], rims[-1] + rooms[1]
-    if start < 0.0 or stop > line.length:
-        return None
-    a, b = line.interpolate(start), line.interpolate(stop)
-    return (round(a.x, 4), round(a.y, 4)), (round(b.x, 4), round(b.y, 4))
+    return None if start < 0.0 or stop > line.length else (start, stop)
 
 
 def _valued(
-    case: Case, piece: int, shift_mm: float, there: tuple[Point, ...], opened: tuple[str, ...]
+    case: Case, chain: Chain, shift_mm: float, there: tuple[Point, ...], opened: tuple[str, ...]
 ) -> Proposal | None:
     """The trace moved, if it gains."""
-    start, end = (_place(at[piece]) for at in (case.tracks.start, case.tracks.end))
-    lines = ((start, there[0]), there, (there[-1], end))
-    tracks = redrawn(case.tracks, case.net, lines, piece)
-    worth = worth_after(case, case.scene, tracks, LineString(there[1:3]))
-    way = ", ".join(f"x {x:.2f} y {y:.2f}" for x, y in there)
+    tracks = moved_tracks(case, chain, there)
+    worth = worth_after(case, case.scene, tracks, LineString(there[1:-1]))
     words = (
         f"move the trace on {case.layer_name(case.crossing.layer)} by {shift_mm:.2f} mm, "
-        f"past the end of the gap: {way}"
+        f"past the end of the gap: {way_in_words(there)}"
     )
     if opened:
         words += f"; opens {', '.join(opened)}"
     return case.proposal("move", (there[0], there[-1]), words, worth)
 
 
-def _shifted(at: Point, shift: Floats) -> Point:
-    return round(at[0] + float(shift[0]), 4), round(at[1] + float(shift[1]), 4)
+def moved_tracks(case: Case, chain: Chain, there: tuple[Point, ...]) -> Tracks:
+    """The traces of the net with a chain of pieces on another way between two of its places."""
+    line = chain.line
+    start, stop = (line.project(shapely.Point(at)) for at in (there[0], there[-1]))
+    before, after = substring(line, 0.0, start), substring(line, stop, line.length)
+    rest = [corners(part) for part in (before, after) if part.length > 0]
+    return redrawn(case.tracks, case.net, (*rest, there), chain.pieces)
+
+
+def corners(line: shapely.Geometry) -> tuple[Point, ...]:
+    """The corners of a line, mm."""
+    return tuple((round(x, 4), round(y, 4)) for x, y in shapely.get_coordinates(line).tolist())
+
+
+def way_in_words(there: Sequence[Point]) -> str:
+    """The corners of a way, from end to end.
+
+    Examples
+    --------
+    >>> way_in_words([(0.0, 1.0), (2.5, 1.0)])
+    'x 0.00 y 1.00, x 2.50 y 1.00'
+    """
+    return ", ".join(f"x {x:.2f} y {y:.2f}" for x, y in there)
 
 
 def _place(row: Floats) -> Point:

@@ -6,12 +6,14 @@ from collections import defaultdict
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 from scipy.spatial import cKDTree
 from shapely import Point as Place
 
 from splitcheck.board.board import Board
 from splitcheck.copper.marks import Point
 from splitcheck.planes.islands import Plane
+from splitcheck.units import Floats
 
 #: Copper of different nets is kept this far apart, mm (common practice, no source).
 CLEAR_MM = 0.2
@@ -87,6 +89,46 @@ class Room:
         if any(name != net for name in self._holes_near(shape, HOLES_APART_MM)):
             return None
         return tuple(sorted(opened))
+
+    def hopeless_vias(self, xs: Floats, ys: Floats) -> NDArray[np.bool_]:
+        """Which places are out of the question for a via: too near to a hole, or in a pad.
+
+        A quick look at many places at once; ``via`` says of one whether it has room.
+        """
+        places = np.column_stack([xs, ys])
+        hopeless = np.zeros(len(places), dtype=np.bool_)
+        if self._hole_tree is not None:
+            reach = self._widest + HOLE_MM / 2 + HOLES_APART_MM
+            for i, near in enumerate(self._hole_tree.query_ball_point(places, reach)):
+                far = np.hypot(*(self._holes[near] - places[i]).T) - self._radii[near]
+                hopeless[i] = bool((far < HOLE_MM / 2 + HOLES_APART_MM - 1e-2).any())
+        if len(self._pads):
+            for i in np.flatnonzero(~hopeless).tolist():
+                hopeless[i] = self._on_pad((float(xs[i]), float(ys[i])))
+        return hopeless
+
+    def hopeless(
+        self, xs: Floats, ys: Floats, layer: int, net: str, half_mm: float
+    ) -> NDArray[np.bool_]:
+        """Which places foreign copper that is no pour makes hopeless for copper round them.
+
+        Parameters
+        ----------
+        half_mm
+            Radius of a disc that the copper covers at least, mm.
+        """
+        hopeless = np.zeros(len(xs), dtype=np.bool_)
+        tree = self._trees.get(layer)
+        if tree is None or not len(xs):
+            return hopeless
+        reach = half_mm + CLEAR_MM - 1e-2
+        place, part = tree.query(shapely.points(xs, ys), predicate="dwithin", distance=reach)
+        ids = np.array(self._parts[layer], dtype=np.intp)[part]
+        foreign = np.array(
+            [i not in self._pours and self._names[i] != net for i in ids.tolist()], dtype=np.bool_
+        )
+        hopeless[place[foreign]] = True
+        return hopeless
 
     def via(self, at: Point, net: str) -> tuple[str, ...] | None:
         """Names of the foreign pours that a through via of a net would open; None: no room."""

@@ -12,7 +12,7 @@ from splitcheck.loops.bridges import with_via
 from splitcheck.loops.ways import heading
 from splitcheck.units import Floats
 from splitcheck.verdict.findings import Point, Proposal
-from splitcheck.verdict.proposals.case import Case, worth_of
+from splitcheck.verdict.proposals.case import Case, Shared, best_of, worth_with_neighbours
 from splitcheck.verdict.proposals.room import ANTIPAD_MM, HOLE_MM, PAD_MM
 from splitcheck.verdict.scene import Scene
 
@@ -25,6 +25,7 @@ GRID_MM = 0.05
 #: So many free places are tried at either end, this far from one another, mm.
 TRIED = 2
 PLACES_APART_MM = 0.8
+COUNTS = {2: "two", 4: "four"}
 
 
 class Spot:
@@ -40,33 +41,45 @@ class Spot:
 
 
 def vias(case: Case) -> Iterator[Proposal]:
-    """Propose a via at one end of a crossing or at both, nearest places first."""
-    ends = [_at_end(case, end) for end in (0, 1)]
-    pairs = [[one, other] for one in ends[0] for other in ends[1]]
-    found = [proposal for places in pairs if (proposal := _valued(case, places)) is not None]
-    if found or not pairs:  # where two do not help, one of them does not
-        singles = [[spot] for free in ends for spot in free[:1]]
-        found.extend(p for places in singles if (p := _valued(case, places)) is not None)
-    yield from found
+    """Propose a via at either end of a crossing, on one side of it or on both, or at one end.
+
+    Four, on both sides at both ends, are tried where two leave more than a note.
+    """
+    sides = [[_at_end(case, end, side)[:1] for end in (0, 1)] for side in (1, -1)]
+    pairs = [[*one, *other] for one, other in sides if one and other]
+    if not pairs:
+        ends = [(*one, *other) for one, other in zip(*sides, strict=True)]
+        pairs = [[one[0], other[0]] for one, other in [ends] if one and other]
+    tried = [_valued(case, places) for places in pairs]
+    helping = [each for each in tried if each[1] is not None]
+    if helping or not pairs:  # where two do not help, one of them does not
+        free = [(*one, *other) for one, other in zip(*sides, strict=True)]
+        helping += [_valued(case, [spots[0]]) for spots in free if spots]
+    best = best_of(shared for shared, _ in helping)
+    if len(pairs) == 2 and best is not None and not case.is_enough(best.own):
+        shared, proposal = _valued(case, [spot for pair in pairs for spot in pair])
+        if shared.gains_on(best):
+            helping.append((shared, proposal))
+    yield from (proposal for _, proposal in helping if proposal is not None)
 
 
-def _valued(case: Case, places: list[Spot]) -> Proposal | None:
-    """Vias in some places, if they gain."""
-    assert case.item is not None
-    worth = worth_of(stitched(case.scene, places), case.item.runs, case.beside)
+def _valued(case: Case, places: list[Spot]) -> tuple[Shared, Proposal | None]:
+    """Vias in some places: what they leave, and the proposal if they gain."""
+    shared = worth_with_neighbours(case, stitched(case.scene, places))
     nets = " and ".join(dict.fromkeys(spot.net for spot in places))
-    said = words(case, places, nets, "beside the crossing")
-    return case.proposal("via", [spot.at for spot in places], said, worth)
+    said = words(case, places, nets, "beside the crossing") + shared.words
+    return shared, case.proposal("via", [spot.at for spot in places], said, shared.own)
 
 
-def _at_end(case: Case, end: int) -> list[Spot]:
-    """Free places at one end of the crossing, nearest first."""
+def _at_end(case: Case, end: int, side: int) -> list[Spot]:
+    """Free places at one end of the crossing, on one side (1 left, -1 right), nearest first."""
     crossing = case.crossing
     start = crossing.after if end else crossing.before
     (dx, dy), (x, y) = heading(crossing), crossing.at
     xs, ys = circles(start)
-    ahead = ((xs - x) * dx + (ys - y) * dy) * (1 if end else -1) > 0
-    xs, ys = xs[ahead], ys[ahead]
+    wanted = ((xs - x) * dx + (ys - y) * dy) * (1 if end else -1) > 0
+    wanted &= ((ys - y) * dx - (xs - x) * dy) * side > 0
+    xs, ys = xs[wanted], ys[wanted]
     return spots(case, case.islands[end].net_name, xs, ys, _joined(case, end, xs, ys))
 
 
@@ -86,10 +99,11 @@ def spots(
 ) -> list[Spot]:
     """The first free places for a via of a net among some that join islands."""
     found: list[Spot] = []
-    for x, y, islands in zip(xs.tolist(), ys.tolist(), joined, strict=True):
+    hopeless = case.room.hopeless_vias(xs, ys).tolist()
+    for x, y, islands, no in zip(xs.tolist(), ys.tolist(), joined, hopeless, strict=True):
         at = (round(x, 4), round(y, 4))
         near = any(hypot(x - spot.at[0], y - spot.at[1]) < PLACES_APART_MM for spot in found)
-        if len(islands) < 2 or near:
+        if len(islands) < 2 or near or no:
             continue
         opened = case.room.via(at, net)
         if opened is not None:
@@ -147,7 +161,7 @@ def words(case: Case, chosen: Sequence[Spot], net: str, why: str) -> str:
     layers = sorted({case.island(island).layer for island in islands})
     joined = " and ".join(case.layer_name(layer) for layer in layers)
     places = " and ".join(f"x {spot.at[0]:.2f} y {spot.at[1]:.2f}" for spot in chosen)
-    count = "one stitching via" if len(chosen) == 1 else "two stitching vias"
+    count = "one stitching via" if len(chosen) == 1 else f"{COUNTS[len(chosen)]} stitching vias"
     said = (
         f"{count} of {net} ({HOLE_MM:g} mm hole, {PAD_MM:g} mm pad) at {places}, "
         f"joining {joined} {why}"
