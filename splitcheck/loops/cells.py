@@ -124,7 +124,10 @@ def _clipped(gaps: NDArray[np.object_], sizes: Sizes, least: Floats) -> Cuts:
         size = boxes[:, 2:] - boxes[:, :2]
         middle = (boxes[:, :2] + boxes[:, 2:]) / 2
         most = np.minimum(wanted(sizes, middle, gap), limit[gap])
-        over = (size > most * 1.2) | _swallows(boxes, most.min(axis=1), gap, holes)[:, None]
+        over = size > most * 1.2
+        open_ = np.flatnonzero(~over.all(axis=1))
+        swallow = _swallows(boxes[open_], most[open_].min(axis=1), gap[open_], holes)
+        over[open_[swallow]] = True
         fine = ~over.any(axis=1)
         done.append((boxes[fine], shapes[fine], gap[fine]))
         count += int(fine.sum())
@@ -192,9 +195,12 @@ def _swallows(
     for number, hole in holes:
         mine = np.flatnonzero(gap == number)
         if len(mine):
-            box = boxes[mine, None]
-            inside = (box[:, :, :2] < hole[:, :2]) & (box[:, :, 2:] > hole[:, 2:])
-            side = np.maximum((boxes[mine, 2:] - boxes[mine, :2]).min(axis=1), most[mine])
-            large = (hole[:, 2:] - hole[:, :2]).max(axis=1) > _HOLE * side[:, None]
-            swallowed[mine] = (inside.all(axis=2) & large).any(axis=1)
+            west, south, east, north = boxes[mine].T[:, :, None]
+            inside = (west < hole[:, 0]) & (south < hole[:, 1])
+            inside &= (east > hole[:, 2]) & (north > hole[:, 3])
+            cell, which = np.nonzero(inside)
+            box = boxes[mine[cell]]
+            side = np.maximum((box[:, 2:] - box[:, :2]).min(axis=1), most[mine[cell]])
+            large = (hole[which, 2:] - hole[which, :2]).max(axis=1) > _HOLE * side
+            swallowed[mine[cell[large]]] = True
     return swallowed

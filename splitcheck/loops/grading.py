@@ -76,7 +76,7 @@ def sizes_for(gaps: NDArray[np.object_], cos: Floats, sin: Floats, grading: Grad
     To be asked by `wanted`.
     """
     lines, along, first = _segments(grading)
-    return Sizes(cos, sin, lines, along, first, _entries(gaps, grading), grading)
+    return Sizes(cos, sin, lines, along, first, _entries(gaps, lines), grading)
 
 
 def _segments(grading: Grading) -> tuple[Floats, Floats, Ints]:
@@ -95,16 +95,39 @@ def _segments(grading: Grading) -> tuple[Floats, Floats, Ints]:
     return lines[order], along[order], np.concatenate([[0], np.flatnonzero(new) + 1])
 
 
-def _entries(gaps: NDArray[np.object_], grading: Grading) -> Floats:
-    """Where the traces cross the rim of each gap."""
-    bundle = shapely.multilinestrings(list(grading.lines)) if grading.lines else LineString()
-    met = shapely.intersection(shapely.boundary(gaps), bundle)
-    points, owner = shapely.get_coordinates(met, return_index=True)
-    counts = np.bincount(owner, minlength=len(gaps))
-    first = np.concatenate([[0], np.cumsum(counts)[:-1]])
+def _entries(gaps: NDArray[np.object_], lines: Floats) -> Floats:
+    """Where stretches of traces cross the rim of each gap, shape (gaps, k, 2); far off if none."""
+    parts, owner = shapely.get_parts(gaps, return_index=True)
+    rims, part = shapely.get_rings(parts, return_index=True)
+    points, rim = shapely.get_coordinates(rims, return_index=True)
+    edges = np.concatenate([points[:-1], points[1:]], axis=1)
+    (same,) = np.nonzero(rim[1:] == rim[:-1])
+    edges, gap = edges[same], owner[part[rim[same]]]
+    at, number = _crossings(edges, lines)
+    gap = gap[number]
+    order = np.argsort(gap, kind="stable")
+    counts = np.bincount(gap, minlength=len(gaps))
+    first = np.cumsum(counts) - counts
     entries = np.full((len(gaps), max(int(counts.max(initial=0)), 1), 2), 1e9)
-    entries[owner, np.arange(len(owner)) - first[owner]] = points
+    entries[gap[order], np.arange(len(order)) - first[gap[order]]] = at[order]
     return entries
+
+
+def _crossings(edges: Floats, lines: Floats) -> tuple[Floats, Ints]:
+    """Where edges cross stretches, shape (k, 2), and the number of the edge."""
+    u, v = lines[:, 2] - lines[:, 0], lines[:, 3] - lines[:, 1]
+    level = u * lines[:, 1] - v * lines[:, 0]
+    start = u * edges[:, 1, None] - v * edges[:, 0, None] - level
+    stop = u * edges[:, 3, None] - v * edges[:, 2, None] - level
+    # an edge runs from one side of a stretch to the other, and the stretch from side to side of it
+    number, which = np.nonzero((start <= 0) != (stop <= 0))
+    x, y = (edges[number, :2] - lines[which, :2]).T
+    dx, dy = (edges[number, 2:] - edges[number, :2]).T
+    before, after = dx * y - dy * x, dx * (y - v[which]) - dy * (x - u[which])
+    met = np.flatnonzero(before * after <= 0)
+    number, which = number[met], which[met]
+    part = start[number, which] / (start[number, which] - stop[number, which])
+    return edges[number, :2] + part[:, None] * (edges[number, 2:] - edges[number, :2]), number
 
 
 def wanted(sizes: Sizes, middle: Floats, gap: Ints) -> Floats:

@@ -141,7 +141,11 @@ def job_of(
         if shapely.intersects(list(scene.gaps), feet).any():
             remarks.append(f"bridge {k + 1} does not stand on copper and is left out")
         elif isinstance(bridge, Strap):
-            straps.append(k)
+            plate_mm = beyond_mm if bridge.beyond else above_mm
+            if plate_mm is not None and bridge.height_mm >= plate_mm:
+                remarks.append(f"bridge {k + 1} stands beyond another plane and is left out")
+            else:
+                straps.append(k)
         elif (above_mm if bridge.above else beyond_mm) is None:
             remarks.append(f"bridge {k + 1} leads to a plane that is not there and is left out")
         else:
@@ -150,7 +154,8 @@ def job_of(
         strap = bridges[k]
         assert isinstance(strap, Strap)
         line = shapely.get_coordinates(strap.line)
-        strips.append(Strip(line, strap.width_mm, strap.height_mm, above_mm))
+        over_mm = beyond_mm if strap.beyond else above_mm
+        strips.append(Strip(line, strap.width_mm, strap.height_mm, over_mm))
     standing = [(k, b) for k in vias if isinstance(b := bridges[k], ViaBridge)]
     standing.sort(key=lambda pair: pair[1].above)
     chosen = [via for _, via in standing]

@@ -5,6 +5,9 @@ Everything here is numpy on plain arrays. The letters are those of the docstring
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from typing import NamedTuple
+
 import numpy as np
 
 from splitcheck.loops.outlines import Ints
@@ -240,39 +243,10 @@ def wall_source(
     series by the midpoint rule with its first correction, less the current h/H that the upper plane
     takes over at the ends of the trace.
     """
-    return walls_source(x[:, None], y[:, None], segments, height_mm, above_mm)
-
-
-def walls_source(
-    x: Floats, y: Floats, segments: Floats, height_mm: float, above_mm: float | None
-) -> tuple[Floats, Floats]:
-    """`wall_source` of points and stretches that are matched as numpy broadcasts them.
-
-    Parameters
-    ----------
-    x, y
-        Points of the plane, any shape, mm.
-    segments
-        Stretches, shape (..., 4); all but the last axis broadcasts with `x`.
-    height_mm, above_mm
-        As in `wall_source`.
-
-    Returns
-    -------
-    What each stretch adds to f, and the angle it is seen under, of the common shape.
-
-    Examples
-    --------
-    Beside the middle of a long trace, at its height: atan(1)/pi.
-
-    >>> f, _ = walls_source(np.array(0.0), np.array(0.2), np.array([-1e4, 0, 1e4, 0]), 0.2, None)
-    >>> round(float(f), 4)
-    0.25
-    """
-    x1, y1, x2, y2 = np.moveaxis(segments, -1, 0)
+    x1, y1, x2, y2 = segments.T
     length = np.hypot(x2 - x1, y2 - y1)
     ux, uy = (x2 - x1) / length, (y2 - y1) / length
-    from_x, from_y = x - x1, y - y1
+    from_x, from_y = x[:, None] - x1, y[:, None] - y1
     off = ux * from_y - uy * from_x
     # a point on the line itself belongs to its left side, in f and in A alike
     off = np.where(np.abs(off) < 1e-12, 1e-12, off)
@@ -287,20 +261,100 @@ def walls_source(
         value -= np.arctan(first * z / (off * np.sqrt(early + z * z)))
         return value
 
-    def bend(z: float) -> Floats:
-        """T''(z)."""
-        up = square + z * z
-        value = np.zeros_like(off)
-        for along, reach in ((first, early + z * z), (last, late + z * z)):
-            value = along / np.sqrt(reach) * (1.0 / reach + 2.0 / up) - value
-        value *= off * (-z) / up
+    ends = _Ends(off, first, last, square, early, late)
+    total = _repeated(ends, wall, height_mm, above_mm)
+    return total / (2.0 * np.pi), seen
+
+
+def smooth_source(
+    x: Floats, y: Floats, segments: Floats, height_mm: float, above_mm: float | None
+) -> Floats:
+    """What stretches of a trace add to f, less what they add to its jump: f - s A/2 pi.
+
+    Parameters
+    ----------
+    x, y
+        Points of the plane, any shape, mm.
+    segments
+        Stretches, shape (..., 4); all but the last axis broadcasts with `x`.
+    height_mm, above_mm
+        As in `wall_source`, with s = 1 - h/H.
+
+    Returns
+    -------
+    The smooth part of the source function, of the common shape.
+
+    Notes
+    -----
+    A is T at an endless wall, so that each end of a stretch adds the difference of two angles that
+    lie in one quadrant: atan(s z/(y R)) - atan(s/y) = -atan(s y (R - z)/(y^2 R + s^2 z)).
+
+    Examples
+    --------
+    Beside the middle of a long trace, at its height: (atan(1) - pi/2)/pi.
+
+    >>> value = smooth_source(np.array(0.0), np.array(0.2), np.array([-1e4, 0, 1e4, 0]), 0.2, None)
+    >>> round(float(value), 4)
+    -0.25
+    """
+    x1, y1, x2, y2 = np.moveaxis(segments, -1, 0)
+    ux, uy = x2 - x1, y2 - y1
+    length = np.sqrt(ux * ux + uy * uy)
+    ux, uy = ux / length, uy / length
+    from_x, from_y = x - x1, y - y1
+    off = ux * from_y - uy * from_x
+    first = -(ux * from_x + uy * from_y)
+    last = first + length
+    square = off * off
+    early, late = first * first, last * last
+    ends = _Ends(off, first, last, square, early + square, late + square)
+    up_first, up_last = off * first * ends.early, off * last * ends.late
+
+    def wall(z: float) -> Floats:
+        reach = np.sqrt(ends.early + z * z)
+        value: Floats = np.arctan(
+            up_first / np.maximum((square * reach + early * z) * (reach + z), 1e-300)
+        )
+        reach = np.sqrt(ends.late + z * z)
+        value -= np.arctan(up_last / np.maximum((square * reach + late * z) * (reach + z), 1e-300))
         return value
 
+    return _repeated(ends, wall, height_mm, above_mm) / (2.0 * np.pi)
+
+
+class _Ends(NamedTuple):
+    """Where the ends of stretches lie from points."""
+
+    off: Floats
+    """Distance of the line of a stretch, to its left."""
+    first: Floats
+    last: Floats
+    """Its ends measured along it."""
+    square: Floats
+    early: Floats
+    late: Floats
+    """Squared distances of the line and of the ends."""
+
+
+def _repeated(
+    ends: _Ends, wall: Callable[[float], Floats], height_mm: float, above_mm: float | None
+) -> Floats:
+    """The wall under a trace, and those that a plane above it repeats; see `wall_source`."""
     total = wall(height_mm)
     if above_mm is not None:
         for n in range(1, _TERMS + 1):
             total += wall(2 * n * above_mm + height_mm) - wall(2 * n * above_mm - height_mm)
         z = (2 * _TERMS + 1) * above_mm
         slack = (above_mm**2 - height_mm**2) / 6
-        total -= height_mm / above_mm * (wall(z) - slack * bend(z))
-    return total / (2.0 * np.pi), seen
+        total -= height_mm / above_mm * (wall(z) - slack * _bend(ends, z))
+    return total
+
+
+def _bend(ends: _Ends, z: float) -> Floats:
+    """T''(z)."""
+    up = ends.square + z * z
+    value = np.zeros_like(ends.off)
+    for along, reach in ((ends.first, ends.early + z * z), (ends.last, ends.late + z * z)):
+        value = along / np.sqrt(reach) * (1.0 / reach + 2.0 / up) - value
+    value *= ends.off * (-z) / up
+    return value

@@ -110,38 +110,44 @@ def _quarters(gaps: NDArray[np.object_], numbers: Ints) -> Cuts:
 
 def _measured(cuts: Cuts) -> Panels:
     """Widen panels at the rim, up to what their true area asks for, and measure them."""
-    area, centre, _ = moments(cuts.edges)
+    area, centre, spread = moments(cuts.edges)
+    edges = cuts.edges.copy()
     # a lump keeps its moments rather than its area
-    part = np.where(cuts.rim.any(axis=1), (1 + _WIDEN) * cuts.area / area - 1, 0.0)
-    edges = _widened(cuts.edges, cuts.rim, part, centre)
-    area, centre, spread = moments(edges)
+    some = np.flatnonzero(cuts.rim.any(axis=1))
+    if len(some):
+        part = (1 + _WIDEN) * cuts.area[some] / area[some] - 1
+        edges[some] = _widened(edges[some], cuts.rim[some], part, centre[some])
+        area[some], centre[some], spread[some] = moments(edges[some])
     u, v = axes(spread)
     points = centre[:, None, :] + np.stack([u + v, u - v, v - u, -u - v], axis=1)
-    reach = np.hypot(edges[:, :, 0] - centre[:, None, 0], edges[:, :, 1] - centre[:, None, 1])
+    x, y = edges[:, :, 0] - centre[:, :1], edges[:, :, 1] - centre[:, 1:]
+    radius = np.sqrt((x * x + y * y).max(axis=1, initial=0.0))
     sides = np.sqrt(12.0) * np.stack([np.hypot(*u.T), np.hypot(*v.T)], axis=1)
-    radius = reach.max(axis=1) if len(edges) else np.zeros(0)
     return Panels(edges, area, centre, spread, sides, points, radius, cuts.inside, cuts.gap)
 
 
 def _widened(edges: Floats, rim: NDArray[np.bool_], part: Floats, centre: Floats) -> Floats:
     """Stretch panels across the rim by a part of them, away from their inner side."""
-    dx, dy = edges[:, :, 2] - edges[:, :, 0], edges[:, :, 3] - edges[:, :, 1]
-    length = np.where(rim, np.hypot(dx, dy), 0.0)
-    whole = np.maximum(length.sum(axis=1), 1e-300)
-    square = np.maximum(length, 1e-300)
-    nx, ny = dy / square, -dx / square
-    weight = length / whole[:, None]
-    pull = np.stack(
-        [(weight * nx * nx).sum(1), (weight * nx * ny).sum(1), (weight * ny * ny).sum(1)]
-    )
-    middle = (edges[:, :, :2] + edges[:, :, 2:]) / 2
-    rim_at = (weight[:, :, None] * middle).sum(axis=1)
-    touched = length.sum(axis=1) > 0
-    fixed = np.where(touched[:, None], 2 * centre - rim_at, centre)
-    out = edges.copy()
+    row, place = np.nonzero(rim)
+    x1, y1, x2, y2 = edges[row, place].T
+    dx, dy = x2 - x1, y2 - y1
+    length = np.hypot(dx, dy)
+    whole = np.bincount(row, length, minlength=len(edges))
+    weight = length / whole[row]
+    square = np.maximum(length * length, 1e-300)
+
+    def mean(values: Floats) -> Floats:
+        return np.bincount(row, weight * values, minlength=len(edges)).astype(np.float64)
+
+    # the mean of n n over the rim, with n the normal on each of its edges
+    xx, xy = part * mean(dy * dy / square), part * mean(-dx * dy / square)
+    yy = part * mean(dx * dx / square)
+    fixed_x = 2 * centre[:, 0] - mean((x1 + x2) / 2)
+    fixed_y = 2 * centre[:, 1] - mean((y1 + y2) / 2)
+    out = np.empty_like(edges)
     for first in (0, 2):
-        x = edges[:, :, first] - fixed[:, None, 0]
-        y = edges[:, :, first + 1] - fixed[:, None, 1]
-        out[:, :, first] += part[:, None] * (pull[0][:, None] * x + pull[1][:, None] * y)
-        out[:, :, first + 1] += part[:, None] * (pull[1][:, None] * x + pull[2][:, None] * y)
+        x, y = edges[:, :, first], edges[:, :, first + 1]
+        away_x, away_y = x - fixed_x[:, None], y - fixed_y[:, None]
+        out[:, :, first] = x + xx[:, None] * away_x + xy[:, None] * away_y
+        out[:, :, first + 1] = y + xy[:, None] * away_x + yy[:, None] * away_y
     return out

@@ -170,10 +170,13 @@ def _plainer(gaps: Sequence[Polygon], tolerance_mm: float) -> list[Polygon]:
     shapes = np.array(gaps, dtype=object)
     holes = shapely.get_num_interior_rings(shapes)
     many = np.flatnonzero((shapely.get_num_coordinates(shapes) > 8) | (holes > 0))
-    plain = shapely.simplify(shapes[many], tolerance_mm)
-    fit = shapely.get_num_interior_rings(plain) == holes[many]
-    fit &= ~shapely.is_empty(plain) & shapely.is_valid(plain)
-    shapes[many[fit]] = shapely.orient_polygons(plain[fit])
+    # what heeds the topology is slow, and rarely needed for so little
+    for heeding in (False, True):
+        plain = shapely.simplify(shapes[many], tolerance_mm, preserve_topology=heeding)
+        fit = shapely.get_num_interior_rings(plain) == holes[many]
+        fit &= ~shapely.is_empty(plain) & shapely.is_valid(plain)
+        shapes[many[fit]] = shapely.orient_polygons(plain[fit])
+        many = many[~fit]
     return list(shapes)
 
 

@@ -44,6 +44,8 @@ class Strap:
     """Height of its current over the plane."""
     mounted_nh: float
     """Inductance of the part as mounted over a whole plane."""
+    beyond: bool = False
+    """It stands on the plane's other side than the traces, where `beyond_mm` lies above it."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -12,7 +12,7 @@ from numpy.polynomial.legendre import leggauss
 from numpy.typing import NDArray
 
 from splitcheck.loops.angles import turned
-from splitcheck.loops.kernels import wall_source, walls_source
+from splitcheck.loops.kernels import smooth_source, wall_source
 from splitcheck.loops.outlines import Ints
 from splitcheck.loops.panels import Panels
 from splitcheck.units import Floats
@@ -223,8 +223,7 @@ def still_afar(
 def _smooth(spots: Floats, segments: Floats, strip: Strip) -> Floats:
     """What stretches add to f, less what they add to the jump; points and stretches broadcast."""
     x, y = np.moveaxis(spots, -1, 0)
-    value, seen = walls_source(x, y, segments, strip.height_mm, strip.above_mm)
-    return value - strip.share / (2 * np.pi) * seen
+    return smooth_source(x, y, segments, strip.height_mm, strip.above_mm)
 
 
 def _distances(spots: Floats, segments: Floats) -> Floats:

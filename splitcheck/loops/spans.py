@@ -110,8 +110,12 @@ class Spans:
                 else self.board.stack.height_mm(crossing.plane, part.layer)
             )
             ends = (part.at_one, part.at_other)
+            # parts stand on either face of the board
+            under = part.layer != crossing.plane and (part.layer > crossing.plane) != (
+                crossing.layer > crossing.plane
+            )
             found[ends] = engine.Strap(
-                LineString(ends), STRIP_MM, max(apart, LOWEST_MM), part.mounted_nh
+                LineString(ends), STRIP_MM, max(apart, LOWEST_MM), part.mounted_nh, beyond=under
             )
         return found
 

@@ -165,7 +165,7 @@ def stray_db(
     straps = [
         Wire(np.asarray(bridge.line.coords)[:, :2], bridge.height_mm, float(amps))
         for bridge, amps in zip(bridges, solution.bridge_a[:, number], strict=False)
-        if isinstance(bridge, Strap)
+        if isinstance(bridge, Strap) and not bridge.beyond
     ]
     added = field_of_gaps(places, solution.mesh, solution.flux_nwb[:, number])
     added += field_of_wires(places, straps)

@@ -98,7 +98,8 @@ def flow_of(
             via_a.append(float(current))
         elif abs(current) > 0.0:
             path = shapely.get_coordinates(bridge.line)
-            strips.append(Strip(path, bridge.width_mm, bridge.height_mm, above_mm))
+            over_mm = beyond_mm if bridge.beyond else above_mm
+            strips.append(Strip(path, bridge.width_mm, bridge.height_mm, over_mm))
             amps.append(float(current))
     return Flow(
         strips=tuple(strips),

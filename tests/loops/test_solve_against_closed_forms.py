@@ -157,3 +157,36 @@ def test_a_strap_right_under_the_trace_costs_its_own_inductance() -> None:
     solution = added([cut_], [whole], 0.2, bridges=[strap], outside=plane)
     assert solution.bridge_a[0, 0] == pytest.approx(-1)
     assert solution.of(0) == pytest.approx(1.25, abs=1e-6)
+
+
+def test_a_strap_on_the_other_side_of_the_plane_does_as_much() -> None:
+    """What opens a gap is the whole current of the sheet, whichever face it is induced on."""
+    plane, cut_ = box(-40, -40, 40, 40), box(-0.5, -50, 0.5, 50)
+    straps = [
+        Strap(LineString([(-1, 3), (1, 3)]), 0.5, 0.3, 0.5, beyond=beyond)
+        for beyond in (False, True)
+    ]
+    one, other = (
+        added([cut_], [trace(30)], 0.2, bridges=[strap], outside=plane).of(0) for strap in straps
+    )
+    assert one is not None
+    assert one == pytest.approx(other, rel=1e-12)
+
+
+def test_a_strap_has_the_planes_of_its_own_side() -> None:
+    """Far under the plane, none of the plane above is near it; beyond that one it bridges nothing.
+
+    With the plane above 0.25 mm up, a link 1.5 mm high can only stand on the other side.
+    """
+    plane, cut_ = box(-40, -40, 40, 40), box(-0.5, -50, 0.5, 50)
+    line = LineString([(-1, 3), (1, 3)])
+    under, over = (Strap(line, 0.5, 1.5, 0.5, beyond=beyond) for beyond in (True, False))
+    value = added([cut_], [trace(30)], 0.2, above_mm=0.25, bridges=[under], outside=plane).of(0)
+    alone = added([cut_], [trace(30)], 0.2, bridges=[under], outside=plane).of(0)
+    assert value is not None
+    assert alone is not None
+    # a fifth of the current is left to this plane, and with it 1/25 of the energy
+    assert 0 < value < 0.2 * alone
+    lost = added([cut_], [trace(30)], 0.2, above_mm=0.25, bridges=[over], outside=plane)
+    assert lost.of(0) is None
+    assert lost.remarks == ("bridge 1 stands beyond another plane and is left out",)
