@@ -4,13 +4,15 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Sequence
-from math import inf
+from math import inf, pi
 
+import numpy as np
 import shapely
 
 from splitcheck.loops import estimate
 from splitcheck.loops.estimate import Inductance
 from splitcheck.planes.crossings import BareTrace
+from splitcheck.units import MU0
 from splitcheck.verdict.findings import Finding, Source
 from splitcheck.verdict.places import fingerprint
 from splitcheck.verdict.scene import Scene
@@ -18,6 +20,8 @@ from splitcheck.verdict.score import level, noise_mv
 
 #: Bare trace shorter than this at a net's own pads and vias is not a finding, mm.
 OWN_END_MM = 3.0
+#: How far apart the places are where copper is looked for beside a trace, mm.
+STEP_MM = 0.5
 
 
 def bare_findings(
@@ -88,19 +92,37 @@ def _bare_estimate(scene: Scene, traces: Sequence[BareTrace]) -> Inductance | No
     """What running past the rim of the nearest plane costs; None if the board has no plane.
 
     The rim is taken as straight and as far away as the nearest reference copper of any layer.
+    Copper of the trace's own layer beside it carries the return as well as copper beneath would
+    from half a height on: a wire of radius a that is e away from the rim of a half plane in its own
+    layer has mu0/(2 pi) ln(4 e / a) (see ``coplanar.py``), which is ln(2 e / h) more than over a
+    plane at the height h.
     """
     total = 0.0
     for trace in traces:
         for start, stop in trace.spans:
             line = shapely.LineString([start, stop])
-            best = inf
+            best, over_mm = inf, inf
             for plane in scene.planes.values():
                 if plane.layer == trace.layer:
                     continue
                 height = scene.board.stack.height_mm(trace.layer, plane.layer)
                 away = min(island.shape.distance(line) for island in plane.islands)
                 best = min(best, estimate.beside_edge_nh_mm(-away, height))
+                over_mm = min(over_mm, height)
             if best == inf:
                 return None
-            total += best * line.length
+            total += min(best, _beside_nh_mm(scene, trace.layer, line, over_mm)) * line.length
     return Inductance(total, 0.6 * total)
+
+
+def _beside_nh_mm(scene: Scene, layer: int, line: shapely.LineString, height_mm: float) -> float:
+    """What the return costs more in copper beside a line, in its own layer, nH/mm; mean of it."""
+    own = scene.planes.get(layer)
+    if own is None:
+        return inf
+    count = max(int(line.length / STEP_MM), 1)
+    along = (np.arange(count) + 0.5) / count
+    places = line.interpolate(along, normalized=True)
+    away = np.min([shapely.distance(island.shape, places) for island in own.islands], axis=0)
+    more = np.log(np.maximum(2.0 * away / height_mm, 1.0))
+    return float(MU0 / (2.0 * pi) * np.mean(more))
