@@ -40,8 +40,8 @@ def wide_nets(board: Board) -> frozenset[int]:
     Notes
     -----
     The usual width is the median of all lines by length. A line counts as wide from three times
-    that on, unless its width over its height over the nearest copper layer makes it a line of some 40
-    to 65 ohm. Common practice, no source: who routes a board draws its supplies wide.
+    that on, unless its width over its height over the nearest copper layer makes it a line of some
+    40 to 65 ohm. Common practice, no source: who routes a board draws its supplies wide.
     """
     lines = _lines(board)
     usual = _usual_mm(lines)

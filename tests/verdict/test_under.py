@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import pytest
 import shapely
 
 from splitcheck.board.board import Board
+from splitcheck.verdict.around import ALONG_SUPPLY
 from splitcheck.verdict.judge import judge
 from tests.making.hand import Line, Sheet, board, crossings, scene, via
 
@@ -56,3 +58,38 @@ def test_two_boards_in_turn_are_not_taken_for_one_another() -> None:
     for _ in range(2):
         assert "+5V" in _reason(with_line, "slot-crossing")
         assert "+5V" not in _reason(without, "slot-crossing")
+
+
+def _along(width_mm: float, net: str = "+5V", long_mm: float = 20.0) -> Board:
+    """A trace for so long over a gap in ground in which a line of another net runs along it."""
+    gap = shapely.box(30 - long_mm / 2, 15, 30 + long_mm / 2, 25)
+    line = Line(net, ((31.2 - long_mm / 2, 20), (28.8 + long_mm / 2, 20)), width_mm)
+    return _made(gap, line)
+
+
+def _counted(made: Board) -> int:
+    counts = judge(scene(made), *crossings(made)).counts
+    return sum(count.number for count in counts if count.what == ALONG_SUPPLY)
+
+
+def test_a_long_run_along_a_supply_is_counted_not_listed() -> None:
+    """A line of 2 mm under a trace 0.2 mm high, for 20 mm."""
+    assert _counted(_along(2.0)) == 1
+    assert not judge(scene(_along(2.0)), *crossings(_along(2.0))).findings
+
+
+@pytest.mark.parametrize(
+    "made",
+    [
+        _along(0.2),  # no wider than the trace
+        _along(2.0, net="DATA"),  # a signal
+        _along(2.0, long_mm=4.0),  # a short way, as of a crossing
+        _made(shapely.box(20, 15, 40, 25)),  # nothing there
+        # across the trace, not along it
+        _made(shapely.box(20, 15, 40, 25), Line("+5V", ((30, 16), (30, 24)), 2.0)),
+    ],
+)
+def test_its_twins_are_found(made: Board) -> None:
+    """What carries no return leaves the place as it is."""
+    assert _counted(made) == 0
+    assert judge(scene(made), *crossings(made)).findings
