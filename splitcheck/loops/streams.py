@@ -36,7 +36,7 @@ class Flow:
     strip_a: Floats
     """Current in each of them, shape (s,)."""
     via_at: Floats
-    """Vias to the plane beyond, shape (v, 2), mm."""
+    """Vias to the planes beside, shape (v, 2), mm."""
     via_a: Floats
     """Current from the plane into each, shape (v,)."""
     gaps: tuple[Polygon, ...]
