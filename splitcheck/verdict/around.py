@@ -14,7 +14,7 @@ from splitcheck.planes.shadows import nearest_cover
 from splitcheck.units import Floats
 from splitcheck.verdict.coplanar import carries_past
 from splitcheck.verdict.scene import Scene
-from splitcheck.verdict.under import runs_along_a_supply
+from splitcheck.verdict.under import ALONG_SUPPLY, runs_along_a_supply
 
 #: A net's own antipad is at most this much wider than its hole, mm; more is a field of antipads.
 OWN_ANTIPAD_MM = 2.0
@@ -30,8 +30,6 @@ MOSTLY = 0.8
 LONG_RUN = "long runs over another whole plane (changes of plane)"
 #: Why a crossing with copper beside the trace is none.
 COPLANAR = "crossings beside reference copper of the trace's own layer"
-#: Why a run along a supply's line is none.
-ALONG_SUPPLY = "long runs along lines of supplies, which carry the return (changes, not judged)"
 #: A line wider than so many times its height is below some 15 ohm: no signal (common practice).
 SUPPLY_RATIO = 10.0
 #: So many heights along a trace the return takes to come to a farther plane.
@@ -53,7 +51,7 @@ def exempt(scene: Scene, crossing: Crossing) -> str | None:
     (5) A nearer plane carries the return before or after: the run lies in a gap of that plane, and
     over so short a way the return does not come down to this one.
     (6) Copper beside the trace, in its own layer, carries the return past the gap.
-    (7) A long run lies along the line of a supply, in this layer or a nearer one, which carries the
+    (7) The run lies along the line of a supply, in this layer or a nearer one, which carries the
     return there.
     """
     plane = scene.planes[crossing.plane]

@@ -17,6 +17,7 @@ from splitcheck.verdict.findings import Finding, Source
 from splitcheck.verdict.places import fingerprint
 from splitcheck.verdict.scene import Scene
 from splitcheck.verdict.score import level, noise_mv
+from splitcheck.verdict.under import ALONG_SUPPLY, lies_over_a_supply
 
 #: Bare trace shorter than this at a net's own pads and vias is not a finding, mm.
 OWN_END_MM = 3.0
@@ -37,8 +38,20 @@ def bare_findings(
             dropped[f"ends of traces without a plane, shorter than {OWN_END_MM:g} mm"] += 1
         else:
             groups[trace.layer, trace.net].append(trace)
-    found = (_bare_finding(scene, traces) for _, traces in sorted(groups.items()))
+    for key, traces in groups.items():
+        groups[key] = [trace for trace in traces if not _over_a_supply(scene, trace)]
+        if len(traces) > len(groups[key]):
+            dropped[ALONG_SUPPLY] += len(traces) - len(groups[key])
+    found = (_bare_finding(scene, traces) for _, traces in sorted(groups.items()) if traces)
     return [finding for finding in found if finding is not None]
+
+
+def _over_a_supply(scene: Scene, trace: BareTrace) -> bool:
+    """Whether the line of a supply in a layer next to it carries its return."""
+    lines = [shapely.LineString(span) for span in trace.spans if span[0] != span[1]]
+    last = len(scene.board.stack.layers)
+    layers = [n for n in (trace.layer - 1, trace.layer + 1) if 1 <= n <= last]
+    return any(lies_over_a_supply(scene, trace.layer, other, lines) for other in layers)
 
 
 def _bare_finding(scene: Scene, traces: Sequence[BareTrace]) -> Finding | None:

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 import shapely
 from shapely import LineString, STRtree
+from shapely.ops import substring
 
 from splitcheck.board.board import Board
 from splitcheck.board.names import is_power
@@ -17,6 +20,10 @@ MOST_OF_IT = 0.5
 ALONG_MM = 5.0
 #: ... if it covers this share of what lies within a height of the trace.
 COVERS = 0.8
+#: So many heights of the trace the line of a supply must go on beyond a run over a farther plane.
+ON_HEIGHTS = 3.0
+#: Why such a run is no finding.
+ALONG_SUPPLY = "runs along lines of supplies, which carry the return (changes of plane, not judged)"
 #: The class of nets that are supplies by their width: see ``wide.py``.
 WIDE = "wide"
 
@@ -74,7 +81,7 @@ def net_under(scene: Scene, crossing: Crossing) -> str | None:
 
 
 def runs_along_a_supply(scene: Scene, crossing: Crossing) -> bool:
-    """Whether a long run has the line of a supply under it that carries its return there.
+    """Whether a run has the line of a supply under it that carries its return there.
 
     Parameters
     ----------
@@ -85,9 +92,11 @@ def runs_along_a_supply(scene: Scene, crossing: Crossing) -> bool:
 
     Returns
     -------
-    True if a run of 5 mm or more lies along copper of one net that is a supply by its name or by
-    the width of its lines, in the layer of the broken plane or in a nearer one, and four fifths of
-    what lies within a height of the trace are that copper.
+    True if copper of one net that is a supply, by its name or by the width of its lines, makes up
+    four fifths of what lies within a height of the trace, along
+
+    (1) a run of 5 mm or more, in the layer of the broken plane, or
+    (2) a run and three heights of the trace on either side of it, in a nearer layer.
 
     Notes
     -----
@@ -95,22 +104,52 @@ def runs_along_a_supply(scene: Scene, crossing: Crossing) -> bool:
     no wider than that all of it: to the trace such a line is a plane, whether or not it is one to
     the board (common practice, no source).
     """
-    if crossing.aside_mm or crossing.run_mm < ALONG_MM:
+    if crossing.aside_mm:
         return False
+    path = LineString(crossing.path)
+    if crossing.run_mm >= ALONG_MM and lies_over_a_supply(
+        scene, crossing.layer, crossing.plane, [path]
+    ):
+        return True
     step = 1 if crossing.plane > crossing.layer else -1
-    for layer in range(crossing.layer + step, crossing.plane + step, step):
-        height = scene.board.stack.height_mm(crossing.layer, layer)
-        near = LineString(crossing.path).buffer(height, cap_style="flat")
-        tree, nets = _copper(scene, layer)
-        covered: dict[int, float] = {}
-        for number in np.sort(tree.query(near, predicate="intersects")).tolist():
-            net = nets[number]
-            if is_power(scene.board.nets[net].name) or scene.drive_of(net).name == WIDE:
-                area = float(shapely.area(shapely.intersection(near, tree.geometries[number])))
-                covered[net] = covered.get(net, 0.0) + area
-        if max(covered.values(), default=0.0) >= COVERS * near.area:
+    for layer in range(crossing.layer + step, crossing.plane, step):
+        beyond = ON_HEIGHTS * scene.board.stack.height_mm(crossing.layer, layer)
+        if lies_over_a_supply(scene, crossing.layer, layer, [_longer(crossing, beyond)]):
             return True
     return False
+
+
+def lies_over_a_supply(scene: Scene, layer: int, other: int, lines: Sequence[LineString]) -> bool:
+    """Whether the line of a supply on another layer lies under a trace: see `runs_along_a_supply`.
+
+    Parameters
+    ----------
+    scene
+        The board with the classes of its nets.
+    layer, other
+        Numbers of the trace's layer and of that which is looked at.
+    lines
+        Centre lines of the trace.
+    """
+    height = scene.board.stack.height_mm(layer, other)
+    near = shapely.union_all([line.buffer(height, cap_style="flat") for line in lines])
+    tree, nets = _copper(scene, other)
+    covered: dict[int, float] = {}
+    for number in np.sort(tree.query(near, predicate="intersects")).tolist():
+        net = nets[number]
+        if is_power(scene.board.nets[net].name) or scene.drive_of(net).name == WIDE:
+            area = float(shapely.area(shapely.intersection(near, tree.geometries[number])))
+            covered[net] = covered.get(net, 0.0) + area
+    return max(covered.values(), default=0.0) >= COVERS * near.area > 0.0
+
+
+def _longer(crossing: Crossing, beyond_mm: float) -> LineString:
+    """A run with so much of the trace on either side of it, as far as it was followed."""
+    stretch = LineString(crossing.stretch)
+    ends = sorted(stretch.project(shapely.Point(end)) for end in (crossing.before, crossing.after))
+    return substring(
+        stretch, max(ends[0] - beyond_mm, 0.0), min(ends[1] + beyond_mm, stretch.length)
+    )
 
 
 def _copper(scene: Scene, layer: int) -> tuple[STRtree, list[int]]:

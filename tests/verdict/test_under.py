@@ -6,8 +6,8 @@ import pytest
 import shapely
 
 from splitcheck.board.board import Board
-from splitcheck.verdict.around import ALONG_SUPPLY
 from splitcheck.verdict.judge import judge
+from splitcheck.verdict.under import ALONG_SUPPLY
 from tests.making.hand import Line, Sheet, board, crossings, scene, via
 
 OUTLINE = shapely.box(0, 0, 60, 40)
@@ -93,3 +93,38 @@ def test_its_twins_are_found(made: Board) -> None:
     """What carries no return leaves the place as it is."""
     assert _counted(made) == 0
     assert judge(scene(made), *crossings(made)).findings
+
+
+def _nearer(start: float, stop: float) -> Board:
+    """A trace over a slot of a farther plane, and a supply's line on the layer between."""
+    ground = OUTLINE.difference(SLOT)
+    assert isinstance(ground, shapely.Polygon)
+    return board(
+        Sheet(lines=(Line("CLK", ((5, 20), (55, 20))),)),
+        Sheet(lines=(Line("+5V", ((start, 20), (stop, 20)), 2.0),)),
+        Sheet((("GND", ground),)),
+        heights_mm=[0.2, 1.0],
+        outline=OUTLINE,
+    )
+
+
+def test_a_supply_nearer_than_the_broken_plane_carries_the_return_past_it() -> None:
+    """From 9 mm before the slot to 9 mm after it; and ending right at its rims, which does not."""
+    assert _counted(_nearer(20, 40)) == 1
+    assert _counted(_nearer(30, 30.5)) == 0
+
+
+def test_a_trace_without_a_plane_along_a_supply_is_counted() -> None:
+    """40 mm with no ground, over a line of 2 mm; over a line of 0.2 mm it is told."""
+    for width, counted in ((2.0, 1), (0.2, 0)):
+        made = board(
+            Sheet(lines=(Line("CLK", ((10, 30), (50, 30))),)),
+            Sheet(
+                (("GND", shapely.box(0, 0, 60, 20)),), (Line("+5V", ((5, 30), (55, 30)), width),)
+            ),
+            heights_mm=[0.2],
+            outline=OUTLINE,
+        )
+        judged = judge(scene(made), *crossings(made))
+        assert sum(c.number for c in judged.counts if c.what == ALONG_SUPPLY) == counted
+        assert len([f for f in judged.findings if f.kind == "no-plane"]) == 1 - counted
