@@ -20,7 +20,7 @@ from splitcheck.verdict.plane_changes import Case as Change
 from splitcheck.verdict.plane_changes import change_findings, from_leaving, from_long_runs
 from splitcheck.verdict.proposals.capacitors import capacitors
 from splitcheck.verdict.proposals.case import Case
-from splitcheck.verdict.proposals.copper import copper
+from splitcheck.verdict.proposals.copper import copper, copper_for_all
 from splitcheck.verdict.proposals.edges import find_edges, inwards, widened
 from splitcheck.verdict.proposals.handing import return_capacitors, return_vias
 from splitcheck.verdict.proposals.moves import moves
@@ -103,7 +103,7 @@ def _ways(case: Case) -> tuple[Callable[[Case], Iterator[Proposal]], ...]:
     if case.item is not None and case.item.crossing.aside_mm:
         return (copper,)
     if case.item is not None:
-        return vias, capacitors, copper, moves
+        return vias, capacitors, copper, copper_for_all, moves
     if case.edges:
         return inwards, widened
     return (return_vias, return_capacitors) if case.change is not None else (copper,)
@@ -131,11 +131,13 @@ def _case(
         return None
     others = {} if item is None else _others(judged, item)
     beside = tuple(run for runs in others.values() for run in runs)
-    neighbours = tuple(f for f in judged.findings if f.id in others)
+    neighbours = tuple((f, judged.weighed[f.id]) for f in judged.findings if f.id in others)
     alone = redrawn(own, net)
     before = find_crossings(alone, tuple(scene.planes.values()))
     edges = find_edges(scene, alone) if item is None and finding.kind == "edge-run" else ()
-    return Case(scene, room, finding, net, alone, item, None, beside, neighbours, before, edges)
+    return Case(
+        scene, room, finding, net, alone, item, None, beside, neighbours, own, before, edges
+    )
 
 
 def _others(judged: Judged, item: Weighed) -> dict[str, tuple[Crossing, ...]]:

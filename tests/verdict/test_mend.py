@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections import defaultdict
 from collections.abc import Sequence
 from dataclasses import replace
 from itertools import pairwise
@@ -19,8 +20,10 @@ from splitcheck.copper.holes import Hole
 from splitcheck.errors import SplitcheckError
 from splitcheck.loops.bridges import with_capacitor
 from splitcheck.planes.crossings import judged_nets
-from splitcheck.planes.islands import reference_nets
+from splitcheck.planes.edges import EdgeRun, find_edge_runs
+from splitcheck.planes.islands import find_planes, reference_nets
 from splitcheck.planes.tracks import lay_all
+from splitcheck.verdict.edge_runs import edge_findings
 from splitcheck.verdict.findings import Finding, Proposal
 from splitcheck.verdict.judge import judge
 from splitcheck.verdict.mend import mend, proposals_for
@@ -59,11 +62,16 @@ def _made(*sheets: Sheet, holes: Sequence[Hole] = ()) -> Board:
 def _seen(made: Board, seen: Scene | None = None) -> tuple[Judged, tuple[Proposal, ...]]:
     """What is judged, and what would mend the worst of it."""
     seen = seen or scene(made)
-    judged = judge(seen, *crossings(made), changes=changes(made))
+    judged = judge(seen, *crossings(made), changes=changes(made), edges=_edges(made))
     tracks = lay_all(made, judged_nets(made, reference_nets(made)), ())
     worst = judged.findings[0]
     room = Room(made, seen.planes)
     return judged, proposals_for(worst, tracks, seen, judged, room)
+
+
+def _edges(made: Board) -> tuple[EdgeRun, ...]:
+    nets = judged_nets(made, reference_nets(made))
+    return find_edge_runs(made, find_planes(made), lay_all(made, nets, ()))
 
 
 def _of(found: Sequence[Proposal], what: str) -> list[Proposal]:
@@ -186,10 +194,165 @@ def test_a_capacitor_across_a_gap_without_any_bridge_may_cross_a_barrier() -> No
     assert not any(proposal.isolation for proposal in found)
 
 
+def test_two_capacitors_where_one_leaves_more_than_a_note() -> None:
+    """One on either side of the trace: less than either alone, as the same board with both says."""
+    made = _made(Sheet(lines=(_across(),)), _split("GND", "VCC"), Sheet(lines=(_across(net="M"),)))
+    seen = scene(made)
+    judged, found = _seen(made)
+    both, alone = found
+    assert (len(both.at_mm), len(alone.at_mm)) == (4, 2)
+    sides = {y > 15.0 for _, y in both.at_mm}
+    assert sides == {True, False}
+    assert both.added_nh < 0.9 * alone.added_nh
+    graph = seen.graph
+    one, other = judged.findings[0].islands
+    value = re.search(r"taken as (\d+\.\d+) nH each", both.words)
+    assert value is not None
+    down = re.findall(r"its vias at x (\S+) y (\S+) and x ([\d.]+) y ([\d.]+)", both.words)
+    assert len(down) == 2
+    for x0, y0, x1, y1 in down:
+        ends = (float(x0), float(y0)), (float(x1), float(y1))
+        graph = with_capacitor(graph, one, other, *ends, float(value[1]), layer=1)
+    after = judge(replace(seen, graph=graph), *crossings(made)).findings
+    (left,) = (f.added_nh for f in after if f.net == "CLK")
+    assert both.added_nh == pytest.approx(left, rel=0.01)
+
+
+def test_what_a_mend_leaves_for_all_nets_over_the_gap_is_said() -> None:
+    """Four traces 1 mm apart over one slot: the sum of their values in the board as mended.
+
+    And one piece of copper serves all of them.
+    """
+    ys = (13.5, 14.5, 15.5, 16.5)
+    slotted, whole = _plane(shapely.box(19.5, 5, 20.5, 25)), _plane()
+    bus = Sheet(lines=tuple(_across(y, f"D{i}") for i, y in enumerate(ys)))
+    judged, found = _seen(_made(bus, slotted, whole))
+    best = _of(found, "via")[0]
+    told = re.search(
+        r"with the 3 other nets near it over this gap (\S+) nH left of (\S+)", best.words
+    )
+    assert told is not None
+    before = sum(f.added_nh or 0.0 for f in judged.findings)
+    assert float(told[2]) == pytest.approx(before, abs=0.006)
+    holes = [via(*at) for at in best.at_mm]
+    after = judge(scene(made := _made(bus, slotted, whole, holes=holes)), *crossings(made))
+    left = sum(f.added_nh or 0.0 for f in after.findings)
+    assert float(told[1]) == pytest.approx(left, rel=1e-3, abs=0.006)
+    assert left < 0.95 * before
+    piece = next(p for p in _of(found, "copper") if "under all 4 nets" in p.words)
+    assert "3 other nets" in piece.words
+    closed = slotted.areas[0][1].union(Polygon(piece.at_mm))
+    after = judge(scene(made := _made(bus, Sheet((("GND", closed),)))), *crossings(made))
+    assert after.findings == ()
+    assert piece.added_nh < 0.02
+
+
+def test_one_trace_over_a_gap_is_told_without_others() -> None:
+    """The twin of the above."""
+    _, found = _seen(_made(Sheet(lines=(_across(),)), _plane(SLOT), _plane()))
+    assert found
+    assert not any("over this gap" in proposal.words for proposal in found)
+
+
+def test_four_vias_where_two_leave_more_than_a_note() -> None:
+    """A long slot: both ends, both sides of the trace; and the twin, a short one, gets two."""
+    long = shapely.box(19.5, 5, 20.5, 25)
+    sheets = Sheet(lines=(_across(),)), _plane(long), _plane()
+    thick = (0.3, 2.0)
+    judged, found = _seen(board(*sheets, heights_mm=thick, outline=WHOLE))
+    best = _of(found, "via")[0]
+    assert judged.findings[0].level != "note"
+    assert {(x > 20, y > 15) for x, y in best.at_mm} == {
+        (True, True),
+        (True, False),
+        (False, True),
+        (False, False),
+    }
+    assert best.words.startswith("four stitching vias of GND")
+    holes = [via(*at) for at in best.at_mm]
+    after = _worst(board(*sheets, holes=holes, heights_mm=thick, outline=WHOLE))
+    assert best.added_nh == pytest.approx(after.added_nh, rel=1e-3)
+    short = shapely.box(19.8, 14, 20.2, 16)
+    _, found = _seen(_made(Sheet(lines=(_across(),)), _plane(short), _plane()))
+    assert all(len(proposal.at_mm) <= 2 for proposal in _of(found, "via"))
+
+
+def test_a_trace_that_bends_over_the_slot_is_moved_with_its_bends() -> None:
+    """It steps up by 0.4 mm over the slot: so does it after the move, and nothing is left."""
+    bent = Line("CLK", ((2, 14.3), (19.9, 14.3), (20.1, 14.7), (38, 14.7)))
+    made = _made(Sheet(lines=(bent,)), _plane(SLOT))
+    judged, found = _seen(made)
+    moves = _of(found, "move")
+    assert moves
+    for move in moves:
+        way = [(float(x), float(y)) for x, y in re.findall(r"x ([\d.]+) y ([\d.]+)", move.words)]
+        assert len(way) == 6
+        assert way[3][1] - way[2][1] == pytest.approx(0.4)
+        points = ((2.0, 14.3), *way, (38.0, 14.7))
+        drawn = _made(Sheet(lines=(Line("CLK", points),)), _plane(SLOT))
+        assert judge(scene(drawn), *crossings(drawn)).findings == ()
+        assert move.added_nh < 0.05 * (judged.findings[0].added_nh or 0.0)
+
+
+def _along_edge(y: float = 0.2, net: str = "CLK") -> Line:
+    return Line(net, ((5, y), (35, y)))
+
+
+def test_a_trace_along_the_edge_is_moved_inwards_and_holds_its_promise() -> None:
+    """0.2 mm within the edge and above the plane: some heights farther in, hardly a trace of it."""
+    plane = Sheet((("GND", shapely.box(0, 10, 40, 30)),))
+    judged, found = _seen(_made(Sheet(lines=(_along_edge(10.1),)), plane))
+    assert judged.findings[0].kind == "edge-run"
+    (move,) = _of(found, "move")
+    way = [(float(x), float(y)) for x, y in re.findall(r"x ([\d.]+) y ([\d.]+)", move.words)]
+    assert _shift(move) == pytest.approx(0.9)  # five heights of 0.2 mm from the edge
+    assert way[1][1] == pytest.approx(11.0)
+    assert move.added_nh < 0.1 * (judged.findings[0].added_nh or 0.0)
+    drawn = _made(Sheet(lines=(Line("CLK", tuple(way)),)), plane)
+    runs = find_edge_runs(drawn, find_planes(drawn), lay_all(drawn, _nets(drawn), ()), 12.0)
+    seen = replace(scene(drawn), min_nh=0.0)
+    left = sum(f.added_nh or 0.0 for f in edge_findings(seen, runs, (), defaultdict(int)))
+    assert move.added_nh == pytest.approx(left, rel=0.1)
+
+
+def test_a_plane_is_let_out_beneath_a_trace_along_its_edge() -> None:
+    """There is room beyond the edge: the trace stays where it is."""
+    plane = Sheet((("GND", shapely.box(0, 10, 40, 30)),))
+    judged, found = _seen(_made(Sheet(lines=(_along_edge(10.1),)), plane))
+    (let_out,) = _of(found, "copper")
+    assert "plane of GND on L2 let out" in let_out.words
+    assert let_out.added_nh < 0.1 * (judged.findings[0].added_nh or 0.0)
+    half = re.search(r"(\d+\.\d+) mm to either side", let_out.words)
+    assert half is not None
+    more = shapely.box(5, 10.1 - float(half[1]), 35, 10.1 + float(half[1]))
+    whole = shapely.union(plane.areas[0][1], more)
+    drawn = _made(Sheet(lines=(_along_edge(10.1),)), Sheet((("GND", whole),)))
+    runs = find_edge_runs(drawn, find_planes(drawn), lay_all(drawn, _nets(drawn), ()), 12.0)
+    seen = replace(scene(drawn), min_nh=0.0)
+    left = sum(f.added_nh or 0.0 for f in edge_findings(seen, runs, (), defaultdict(int)))
+    assert let_out.added_nh == pytest.approx(left, rel=0.1)
+
+
+def test_along_the_edge_of_the_board_the_trace_is_moved_and_no_plane_let_out() -> None:
+    """The outline ends there; and a trace in the way leaves the move less far."""
+    plane = Sheet((("GND", shapely.box(0, 0.3, 40, 30)),))
+    _, found = _seen(_made(Sheet(lines=(_along_edge(0.4),)), plane))
+    assert {proposal.what for proposal in found} == {"move"}
+    near = Line("N", ((2, 1.2), (38, 1.2)))
+    _, less = _seen(_made(Sheet(lines=(_along_edge(0.4), near)), plane))
+    assert all(_shift(move) < _shift(found[0]) for move in less)
+    full = Line("N", ((2, 0.75), (38, 0.75)))
+    assert _seen(_made(Sheet(lines=(_along_edge(0.4), full)), plane))[1] == ()
+
+
+def _nets(made: Board) -> frozenset[int]:
+    return judged_nets(made, reference_nets(made))
+
+
 def _full(name: str) -> Sheet:
     """A layer with traces so near to one another that nothing fits between."""
     return Sheet(
-        lines=tuple(Line(f"{name}{i}", ((2, 1 + 0.7 * i), (38, 1 + 0.7 * i))) for i in range(40))
+        lines=tuple(Line(f"{name}{i}", ((2, 1 + 0.7 * i), (38, 1 + 0.7 * i))) for i in range(42))
     )
 
 
@@ -197,6 +360,7 @@ def test_a_capacitor_lies_across_the_gap_beside_the_trace() -> None:
     """Pads on either side, nearest to the trace; what it leaves is about its own inductance."""
     below = Sheet(lines=(_across(net="M"),))
     _, found = _seen(_made(Sheet(lines=(_across(),)), _split("GND", "VCC"), below))
+    found = tuple(proposal for proposal in found if len(proposal.at_mm) == 2)
     (x0, y0), (x1, y1) = found[0].at_mm
     assert x0 < 19.7
     assert x1 > 20.3

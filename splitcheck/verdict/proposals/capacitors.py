@@ -37,6 +37,8 @@ ACROSS_MM = 4.0
 #: So many free places are tried, this far from one another, mm.
 TRIED = 2
 PLACES_APART_MM = 3.0
+#: Two parts side by side are this far apart: their pads keep the clearance, mm.
+PARTS_APART_MM = 1.2
 
 
 class Mount(NamedTuple):
@@ -66,7 +68,7 @@ def capacitors(case: Case) -> Iterator[Proposal]:
     left, right = _mounts(case, 1), _mounts(case, -1)
     if not left and not right:
         left = list(mounts_near(case, case.crossing.at, case.islands))
-    singles = [*left[:1], *right[:1]] if left and right else left + right
+    singles = (left[:1] + _apart(left[:1], right))[:2] if left and right else left + right
     tried = [_valued(case, [mount]) for mount in singles]
     best = best_of(shared for shared, _ in tried)
     if len(singles) == 2 and (best is None or not case.is_enough(best.own)):
@@ -74,6 +76,20 @@ def capacitors(case: Case) -> Iterator[Proposal]:
         if best is None or shared.gains_on(best):
             tried.append((shared, proposal))
     yield from (proposal for _, proposal in tried if proposal is not None)
+
+
+def _apart(left: Sequence[Mount], right: Sequence[Mount]) -> list[Mount]:
+    """Those on the right that do not lie across one on the left."""
+    (x0, y0), (x1, y1) = left[0].pads
+    at = (x0 + x1) / 2, (y0 + y1) / 2
+    return [
+        mount
+        for mount in right
+        if hypot(
+            sum(x for x, _ in mount.pads) / 2 - at[0], sum(y for _, y in mount.pads) / 2 - at[1]
+        )
+        >= PARTS_APART_MM
+    ]
 
 
 def _valued(case: Case, mounts: Sequence[Mount]) -> tuple[Shared, Proposal | None]:

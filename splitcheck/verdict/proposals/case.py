@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from math import hypot
 from typing import NamedTuple
@@ -18,7 +18,7 @@ from splitcheck.loops.terrain import Terrain
 from splitcheck.planes.crossings import BareTrace, Crossing, find_crossings
 from splitcheck.planes.edges import EdgeRun
 from splitcheck.planes.islands import Island, Plane
-from splitcheck.planes.tracks import Tracks
+from splitcheck.planes.tracks import Tracks, redrawn
 from splitcheck.units import segments
 from splitcheck.verdict.bare import OWN_END_MM, bare_findings
 from splitcheck.verdict.findings import Finding, Point, Proposal
@@ -63,8 +63,10 @@ class Case:
     """The change of planes behind it, if it is one."""
     beside: tuple[Crossing, ...] = ()
     """Crossings of other traces over the same gap."""
-    neighbours: tuple[Finding, ...] = ()
-    """The findings that these crossings are."""
+    neighbours: tuple[tuple[Finding, Weighed], ...] = ()
+    """The findings that these crossings are, with what is behind each."""
+    all_tracks: Tracks | None = None
+    """The traces of all nets on its layer."""
     before: tuple[tuple[Crossing, ...], tuple[BareTrace, ...]] = ((), ())
     """What the net's traces on the layer cross, and where they are bare, as the board is."""
     edges: tuple[EdgeRun, ...] = ()
@@ -86,6 +88,15 @@ class Case:
         """Where the return leaves, and where it must arrive."""
         one, other = self.crossing.islands
         return self.plane.islands[one], self.plane.islands[other]
+
+    def of_neighbours(self) -> Iterator[Case]:
+        """The findings of the other nets that cross the gap nearby, each as a case of its own."""
+        assert self.all_tracks is not None
+        for finding, item in self.neighbours:
+            net = item.crossing.net
+            tracks = redrawn(self.all_tracks, net)
+            before = find_crossings(tracks, tuple(self.scene.planes.values()))
+            yield Case(self.scene, self.room, finding, net, tracks, item, before=before)
 
     def island(self, name: str) -> Island:
         """The island of an id."""
@@ -207,7 +218,7 @@ def with_all(case: Case, left_nh: Sequence[float | None]) -> str:
     many = len(case.neighbours)
     said = f"; with the {many} other nets" if many > 1 else "; with the other net"
     said += " near it over this gap"
-    before = [finding.added_nh for finding in (case.finding, *case.neighbours)]
+    before = [finding.added_nh for finding in (case.finding, *(f for f, _ in case.neighbours))]
     lost = sum(1 for added in left_nh if added is None)
     left = sum(added for added in left_nh if added is not None)
     if lost:

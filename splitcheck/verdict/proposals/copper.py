@@ -8,10 +8,12 @@ import numpy as np
 import shapely
 from shapely import LineString, Polygon
 
+from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane
 from splitcheck.planes.patched import patched
 from splitcheck.verdict.findings import Proposal
-from splitcheck.verdict.proposals.case import Case, with_plane, worth_after
+from splitcheck.verdict.proposals.case import Case, with_all, with_plane, worth_after
+from splitcheck.verdict.proposals.moves import way_in_words
 from splitcheck.verdict.proposals.room import CLEAR_MM
 
 #: Widths of bridges that are tried, mm.
@@ -24,6 +26,8 @@ NARROWEST_MM = 0.2
 ONTO_MM = 0.3
 #: New plane under a bare trace reaches the nearest island this far away at most, mm.
 REACH_MM = 2.0
+#: Copper for all nets over a gap is looked at for so many of them.
+MOST_NETS = 16
 
 
 def copper(case: Case) -> Iterator[Proposal]:
@@ -44,13 +48,7 @@ def _over_gap(case: Case) -> Iterator[Proposal]:
     if one.net_name != other.net_name:
         return
     crossing = case.crossing
-    line = LineString(
-        [
-            _beyond(crossing.path[0], crossing.before),
-            *crossing.path,
-            _beyond(crossing.path[-1], crossing.after),
-        ]
-    )
+    line = _over(crossing)
     for width in WIDTHS_MM:
         patch = _from_end_to_end(
             cleared(
@@ -77,6 +75,53 @@ def _over_gap(case: Case) -> Iterator[Proposal]:
         proposal = case.proposal("copper", ((x0, y0), (x1, y1)), words, worth)
         if proposal is not None:
             yield proposal
+
+
+def copper_for_all(case: Case) -> Iterator[Proposal]:
+    """Propose one piece of copper that closes the gap under all the traces over it nearby."""
+    one, other = case.islands
+    many = len(case.neighbours) + 1
+    if one.net_name != other.net_name or not 1 < many <= MOST_NETS:
+        return
+    crossing = case.crossing
+    runs = [*case.beside, crossing]
+    if any(set(run.islands) != set(crossing.islands) for run in runs):
+        return
+    lines = shapely.union_all([_over(run) for run in runs])
+    corners = shapely.get_coordinates(
+        shapely.oriented_envelope(lines).buffer(WIDTHS_MM[0] / 2, join_style="mitre")
+    )[:-1].round(2)
+    area = cleared(case, Polygon(corners), crossing.plane, one.net_name)
+    patch = _from_end_to_end(area, _over(crossing))
+    plane = None if patch is None else patched(case.plane, sorted(set(crossing.islands)), patch)
+    if plane is None:
+        return
+    scene = with_plane(case.scene, plane)
+    worth = worth_after(case, scene, case.tracks, _over(crossing))
+    if worth is None:
+        return
+    left = [
+        worth_after(each, scene, each.tracks, _over(each.crossing)) for each in case.of_neighbours()
+    ]
+    places = [(float(x), float(y)) for x, y in corners.tolist()]
+    words = (
+        f"copper of {one.net_name} on {case.layer_name(crossing.plane)} under all {many} nets that "
+        f"cross here, within {way_in_words(places)}, {CLEAR_MM:g} mm clear of other nets"
+    ) + with_all(case, [worth.added_nh, *(None if w is None else w.added_nh for w in left)])
+    proposal = case.proposal("copper", places, words, worth)
+    if proposal is not None:
+        yield proposal
+
+
+def _over(crossing: Crossing) -> LineString:
+    """The way of a trace over the gap, with a little of it over the copper on either side."""
+    return LineString(
+        [
+            _beyond(crossing.path[0], crossing.before),
+            *crossing.path,
+            _beyond(crossing.path[-1], crossing.after),
+        ]
+    )
 
 
 def _beyond(rim: tuple[float, float], on: tuple[float, float]) -> tuple[float, float]:

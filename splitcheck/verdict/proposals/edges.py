@@ -34,6 +34,7 @@ from splitcheck.verdict.proposals.moves import (
     chain_over,
     corners,
     moved_tracks,
+    on_grid,
     way_in_words,
 )
 from splitcheck.verdict.proposals.room import CLEAR_MM
@@ -124,7 +125,7 @@ def inwards(case: Case) -> Iterator[Proposal]:
 def _moved(
     case: Case, run: EdgeRun, chain: Chain, ends: tuple[float, float], within_mm: float
 ) -> Proposal | None:
-    shift_mm = float(np.ceil((within_mm - float(run.inside_mm.min())) / 0.05) * 0.05)
+    shift_mm = on_grid(within_mm - float(run.inside_mm.min()))
     if not SHIFTS_MM[0] <= shift_mm <= SHIFTS_MM[1]:
         return None
     there = carried(chain.line, ends, shift_mm * _inward(case, run))
@@ -173,8 +174,8 @@ def widened(case: Case) -> Iterator[Proposal]:
 def _poured(case: Case, run: EdgeRun, line: LineString, half_mm: float) -> Proposal | None:
     plane = case.scene.planes[run.plane]
     island = plane.islands[run.island]
-    half_mm = float(np.ceil(half_mm / 0.05) * 0.05)
-    grown = line.buffer(half_mm, quad_segs=4, join_style="mitre")
+    half_mm = on_grid(half_mm)
+    grown = line.buffer(half_mm, cap_style="flat", join_style="mitre")
     new = cleared(case, grown, plane.layer, island.net_name)
     after = patched(plane, [run.island], new)
     if after is None:

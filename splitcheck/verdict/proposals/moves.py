@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from itertools import pairwise
-from math import inf
+from math import ceil, inf
 from typing import NamedTuple
 
 import networkx as nx
@@ -28,6 +28,8 @@ HEIGHTS_BEYOND = (5.0, 2.0, 1.0)
 ROOMS_MM = (1.0, 1.5, 2.0, 3.0, 4.0)
 #: A path lies along a piece of trace from this much in common on, mm.
 ALONG_MM = 5e-3
+#: Lengths are rounded up to this, mm.
+GRID_MM = 0.05
 
 
 def moves(case: Case) -> Iterator[Proposal]:
@@ -90,11 +92,11 @@ def _node_at(tracks: Tracks, piece: int, node: int) -> Point:
 def _moved(case: Case, chain: Chain, side: int) -> Proposal | None:
     crossing = case.crossing
     height = case.scene.board.stack.height_mm(crossing.layer, crossing.plane)
-    (dx, dy) = heading(crossing)
-    aside = np.array([-dy * side, dx * side])
+    ahead = _ahead(case, chain.line)
+    aside = np.array([-ahead[1] * side, ahead[0] * side])
     for heights in HEIGHTS_BEYOND:
         beyond = heights * height + crossing.width_mm / 2
-        shift = _shift_mm(case, aside, beyond)
+        shift = _shift_mm(case, ahead, aside, beyond)
         if shift > FARTHEST_MM:
             continue
         free = _free(case, chain, aside * shift)
@@ -102,6 +104,17 @@ def _moved(case: Case, chain: Chain, side: int) -> Proposal | None:
         if found is not None:
             return found
     return None
+
+
+def _ahead(case: Case, line: LineString) -> Floats:
+    """The direction in which the trace goes past the gap, its bends over it left out."""
+    rims = sorted(line.project(shapely.Point(rim)) for rim in case.crossing.path)
+    ends = [line.interpolate(s) for s in (rims[0] - ROOMS_MM[-1], rims[-1] + ROOMS_MM[-1])]
+    if rims[0] < ROOMS_MM[-1]:
+        ends[0] = line.interpolate(0.0)
+    way = np.array([ends[1].x - ends[0].x, ends[1].y - ends[0].y])
+    length = float(np.hypot(*way))
+    return way / length if length > 0 else np.array(heading(case.crossing))
 
 
 def _free(
@@ -137,15 +150,19 @@ def carried(line: LineString, ends: tuple[float, float], shift: Floats) -> tuple
     return (inner[0], *moved, inner[-1])
 
 
-def _shift_mm(case: Case, aside: Floats, beyond: float) -> float:
+def _shift_mm(case: Case, ahead: Floats, aside: Floats, beyond: float) -> float:
     """How far aside the gap ends, for a band as long as the run, and the distance beyond; mm."""
     crossing = case.crossing
     gap = case.plane.gaps[crossing.gap].shape
-    (x0, y0), (x1, y1) = crossing.path[0], crossing.path[-1]
+    at = np.array(crossing.at)
+    along = (np.array(crossing.path) - at) @ ahead
     far = aside * (FARTHEST_MM + 1.0)
-    ahead = np.subtract((x1, y1), (x0, y0)) / max(crossing.run_mm, 1e-9)
-    start, stop = np.array([x0, y0]) - ahead * ROOMS_MM[0], np.array([x1, y1]) + ahead * ROOMS_MM[0]
-    band = shapely.Polygon([start, stop, stop + far, start + far])
+    start, stop = (
+        at + ahead * (float(s) + sign * ROOMS_MM[0])
+        for s, sign in ((along.min(), -1.0), (along.max(), 1.0))
+    )
+    back = float(((np.array(crossing.path) - at) @ aside).min()) * aside
+    band = shapely.Polygon([start + back, stop + back, stop + far, start + far])
     inside = [
         piece
         for piece in shapely.get_parts(shapely.intersection(gap, band))
@@ -154,9 +171,19 @@ def _shift_mm(case: Case, aside: Floats, beyond: float) -> float:
     if not inside:
         return inf
     rims = shapely.get_coordinates(inside) - np.array(crossing.at)
-    back = float(((np.array(crossing.path) - np.array(crossing.at)) @ aside).min())
-    reach = float((rims @ aside).max()) - min(back, 0.0)
-    return float(np.ceil((reach + beyond) / 0.05) * 0.05)
+    reach = float((rims @ aside).max()) - float(back @ aside)
+    return on_grid(reach + beyond)
+
+
+def on_grid(length_mm: float) -> float:
+    """A length rounded up to what one draws, mm.
+
+    Examples
+    --------
+    >>> on_grid(0.91), on_grid(1.0 - 0.1)
+    (0.95, 0.9)
+    """
+    return round(ceil(round(length_mm / GRID_MM, 6)) * GRID_MM, 4)
 
 
 def _ends(case: Case, line: LineString, rooms: tuple[float, float]) -> tuple[float, float] | None:
