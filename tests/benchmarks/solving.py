@@ -3,24 +3,27 @@
 ``OPENBLAS_NUM_THREADS=1 python -m tests.benchmarks.solving FOLDER_OF_BOARDS``. Crossings that are
 solved together share the time of their solve evenly; finding the ways round is counted apart. Times
 are of the processor, so that other work on the machine matters less, though it still does. After
-the boards: a bus over one slot, one case beside PyPEEC if that is installed, and all references.
+the boards: judging the largest with the solve and without it, a bus over one slot, one case beside
+PyPEEC if that is installed, and all references.
 """
 
 from __future__ import annotations
 
 import sys
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Sequence
 from functools import partial
 from pathlib import Path
 from statistics import median
 from time import process_time
 from typing import Any, NamedTuple
+from unittest.mock import patch
 
 import pytest
 from shapely import LineString, Polygon, box, wkt
 
 from splitcheck.errors import SplitcheckError
 from splitcheck.loops.bridges import join_islands
+from splitcheck.loops.fields import Fields
 from splitcheck.loops.solve import Solution, TraceOver, added
 from splitcheck.planes.islands import find_planes
 from splitcheck.road import (
@@ -41,6 +44,9 @@ from tests.benchmarks.measure import table
 from tests.loops.test_solve_against_field_solvers import bridges_of, gaps_of
 from tests.loops.test_solve_against_field_solvers import rows as references
 
+#: So many of the largest boards are judged with the solve and without it.
+_LARGEST = 3
+
 
 class Call(NamedTuple):
     """One call of a stage of judging: a crossing weighed, or a cluster of crossings solved."""
@@ -49,7 +55,17 @@ class Call(NamedTuple):
     ms: float
 
 
-def timed(folder: Path) -> tuple[list[Call], list[Call], Judged]:
+class Timed(NamedTuple):
+    """A board, judged."""
+
+    weighed: list[Call]
+    solves: list[Call]
+    judged: Judged
+    again: Callable[[], Judged]
+    """Judges it once more, in one process."""
+
+
+def timed(folder: Path) -> Timed:
     """Times of all weighings and of all solves of a board, and what was found."""
     options = Options(jobs=1)
     export = load(folder, options)
@@ -72,34 +88,61 @@ def timed(folder: Path) -> tuple[list[Call], list[Call], Judged]:
 
     judged = judge(scene, crossings, bare, spread)
     weighed, *solves = stages
-    return weighed, [call for stage in solves for call in stage], judged
+    each = [call for stage in solves for call in stage]
+    return Timed(weighed, each, judged, partial(judge, scene, crossings, bare))
 
 
-def why_estimated(judged: Judged) -> str:
-    """Findings whose value is a closed form: over parted islands, or over gaps too ragged."""
-    behind = [judged.weighed[f.id] for f in judged.findings if f.method == "estimated"
-              and f.id in judged.weighed]  # fmt: skip
+def shares(judged: Judged) -> tuple[str, str, str]:
+    """Of the findings about gaps: how many are solved, how many are estimated, and why.
+
+    A closed form stands for crossings from one island to another whose way back the solve does not
+    know, and for those over gaps with too many others round them.
+    """
+    over_gaps = [finding for finding in judged.findings if finding.id in judged.weighed]
+    solved = [finding for finding in over_gaps if finding.method == "solved"]
+    behind = [judged.weighed[f.id] for f in over_gaps if f.method == "estimated"]
     apart = sum(item.crossing.islands[0] != item.crossing.islands[1] for item in behind)
-    return f"{apart} apart, {len(behind) - apart} ragged"
+    why = f"{apart} islands apart, {len(behind) - apart} too ragged"
+    return _part(solved, over_gaps), _part(behind, over_gaps), why
+
+
+def _part(some: Sequence[object], of: Sequence[object]) -> str:
+    return f"{len(some)} ({100 * len(some) / len(of):.0f} %)" if of else "0"
+
+
+def with_and_without(judged: Sequence[tuple[str, Timed]]) -> None:
+    """Judge the largest boards once more, and once with a solve that finds nothing."""
+    print()
+    largest = sorted(judged, key=lambda pair: -len(pair[1].weighed))[:_LARGEST]
+    for name, board in largest:
+        with_s = _timed(board.again) / 1000
+        with patch.object(Fields, "solve", lambda self, tasks: {}):
+            without_s = _timed(board.again) / 1000
+        print(
+            f"{name}: judge with the solve against without {with_s:.2f} s against"
+            f" {without_s:.2f} s: {with_s / without_s:.2f} x"
+        )
 
 
 def boards(folder: Path) -> None:
     """Measure all boards and print the table."""
-    head = ["board", "crossings", "findings", "solved", "estimated", "tasks", "solves", "median ms",
-            "p90", "worst", "worst solve", "all solves s", "weigh s"]  # fmt: skip
+    head = ["board", "crossings", "findings", "solved", "estimated", "because", "tasks", "solves",
+            "median ms", "p90", "worst", "worst solve", "all solves s", "weigh s"]  # fmt: skip
     rows, everything = [], []
+    all_boards: list[tuple[str, Timed]] = []
     for path in sorted(path for path in folder.iterdir() if path.is_dir()):
         try:
-            weighed, solves, judged = timed(path)
+            board = timed(path)
         except SplitcheckError as error:
             print(f"{path.name}: left out, {error}")
             continue
+        all_boards.append((path.name, board))
+        weighed, solves, judged, _ = board
         each = [call.ms / call.crossings for call in solves for _ in range(call.crossings)]
         everything += each
-        solved = sum(finding.method == "solved" for finding in judged.findings)
         rows.append([
-            path.name, str(len(weighed)), str(len(judged.findings)), str(solved),
-            why_estimated(judged), str(len(each)), str(len(solves)), _middle(each), _most_of(each),
+            path.name, str(len(weighed)), str(len(judged.findings)), *shares(judged),
+            str(len(each)), str(len(solves)), _middle(each), _most_of(each),
             _most(each), _most([call.ms for call in solves]),
             f"{sum(call.ms for call in solves) / 1000:.2f}",
             f"{sum(call.ms for call in weighed) / 1000:.2f}",
@@ -109,6 +152,7 @@ def boards(folder: Path) -> None:
         f"\nall {len(everything)}: median {_middle(everything)} ms, p90 {_most_of(everything)},"
         f" worst {_most(everything)} ms a crossing"
     )
+    with_and_without(all_boards)
 
 
 def bus() -> None:
@@ -222,4 +266,9 @@ def _most(values: list[float]) -> str:
 
 
 if __name__ == "__main__":
+    if len(sys.argv) != 2 or not Path(sys.argv[1]).is_dir():
+        sys.exit(
+            "usage: OPENBLAS_NUM_THREADS=1 python -m tests.benchmarks.solving FOLDER_OF_BOARDS\n"
+            "       a folder with one folder of exported files for each board"
+        )
     main(Path(sys.argv[1]))
