@@ -147,9 +147,9 @@ def _longer(crossing: Crossing, beyond_mm: float) -> LineString:
     """A run with so much of the trace on either side of it, as far as it was followed."""
     stretch = LineString(crossing.stretch)
     ends = sorted(stretch.project(shapely.Point(end)) for end in (crossing.before, crossing.after))
-    return substring(
-        stretch, max(ends[0] - beyond_mm, 0.0), min(ends[1] + beyond_mm, stretch.length)
-    )
+    first, last = max(ends[0] - beyond_mm, 0.0), min(ends[1] + beyond_mm, stretch.length)
+    longer = substring(stretch, first, last)
+    return longer if isinstance(longer, LineString) else stretch
 
 
 def _copper(scene: Scene, layer: int) -> tuple[STRtree, list[int]]:
