@@ -46,8 +46,9 @@ def stitches(
 
     Returns
     -------
-    The holes nearest to either end of the run, sorted. None at all where they would be no way past
-    the gap: where the other plane is in pieces there, or one end has no hole nearby.
+    The holes nearest to either end of the run, sorted; those on this side of its middle as the
+    trace goes, if the gap does not part islands. None at all where they would be no way past the
+    gap: where the other plane is in pieces there, or one end has no hole nearby.
     """
     if layer is None:
         return ()
@@ -57,24 +58,31 @@ def stitches(
     if len(numbers) != 1:
         return ()
     whole = planes[layer].islands[numbers.pop()].id
+    parted = crossing.islands[0] != crossing.islands[1]
     found: list[Stitch] = []
     for side, at in enumerate((crossing.before, crossing.after)):
         island = planes[crossing.plane].islands[crossing.islands[side]].id
-        near = _nearest(graph, island, whole, at, side)
+        ahead = (0.0, 0.0) if parted else (at[0] - crossing.at[0], at[1] - crossing.at[1])
+        near = _nearest(graph, island, whole, at, ahead, side)
         if not near:
             return ()
         found.extend(near)
     return tuple(sorted(found))
 
 
-def _nearest(graph: IslandGraph, one: str, other: str, at: Point, side: int) -> list[Stitch]:
+def _nearest(
+    graph: IslandGraph, one: str, other: str, at: Point, ahead: Point, side: int
+) -> list[Stitch]:
+    """The holes nearest to a place, none of them on the other side of where `ahead` leads from."""
     places = bridges_between(graph, one, other)
     if not len(places):
         return []
-    far = np.hypot(*(places - np.asarray(at)).T)
-    order = np.argsort(far, kind="stable")[:MOST_STITCHES]
+    away = places - np.asarray(at)
+    far = np.hypot(*away.T)
+    there = (far <= STITCHES_MM) & (away @ ahead >= -np.dot(ahead, ahead))
+    order = np.argsort(far, kind="stable")
     wide_mm = graph.edges[one, other]["wide_mm"]
     return [
         Stitch((float(places[i, 0]), float(places[i, 1])), float(wide_mm[i]), side)
-        for i in order[far[order] <= STITCHES_MM].tolist()
+        for i in order[there[order]][:MOST_STITCHES].tolist()
     ]

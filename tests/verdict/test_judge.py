@@ -396,3 +396,16 @@ def test_splits_on_either_side_of_a_narrow_island_are_gone_past_at_once() -> Non
     assert 0.5 * as_one.added_nh < once.added_nh <= as_one.added_nh * 1.05
     each, _ = _judged(_strip((19.5, 15.6), (19.5, 14.4)))
     assert len(each) == 2
+
+
+def test_a_crowd_of_holes_on_one_side_hides_none_on_the_other() -> None:
+    """A slot cuts no islands apart: both ends of the run find the same nearest holes."""
+    crowd = [(x, y) for x in (17.5, 18.5) for y in (11.0, 13.0, 14.0, 16.0, 17.0)]
+    across = [(24.0, 14.0), (24.0, 16.0)]
+    bare, left, both = (
+        _judged(_stripline(SLOT, *holes))[0][0].added_nh for holes in ([], crowd, [*crowd, *across])
+    )
+    assert bare is not None
+    assert left == pytest.approx(bare, rel=1e-6)
+    assert both is not None
+    assert both < 0.9 * bare
