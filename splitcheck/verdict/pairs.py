@@ -117,7 +117,12 @@ def _apart(finding: Finding, other: str) -> Finding:
 
 
 def _alone(finding: Finding, other: str) -> Finding:
-    why = f"{finding.reason}; the other leg, {other}, is not broken here: all of it is unbalanced"
+    whole = (
+        "keeps its plane here or finds a way near enough: all of it is taken as unbalanced"
+        if finding.kind == "plane-change"
+        else "is not broken here: all of it is unbalanced"
+    )
+    why = f"{finding.reason}; the other leg, {other}, {whole}"
     added = finding.added_nh
     return replace(finding, pair=other, reason=why, odd_nh=added, unbalance_nh=added)
 

@@ -12,7 +12,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from splitcheck.board.board import Board
-from splitcheck.board.pairs import find_pairs
+from splitcheck.board.pairs import Pair, find_pairs
 from splitcheck.copper.holes import Hole
 from splitcheck.copper.marks import Point
 from splitcheck.loops.bridges import with_capacitor
@@ -226,6 +226,16 @@ def test_pair_that_changes_together_carries_its_own_return() -> None:
     nets = [net.number for net in made.nets if net.name != "GND"]
     assert _judged(made).findings != ()
     assert _judged(made, replace(scene(made), pairs=find_pairs(made, nets))).findings == ()
+
+
+def test_a_leg_with_its_way_near_is_not_told_as_whole() -> None:
+    """One leg changes 10 mm from a return via, the other 1 mm from another one."""
+    made = _made([(20.0, 25.0), (20.0, 36.0)], at=[AT, (20.0, 35.0)], names=("TX_P", "TX_N"))
+    one, other = (next(n.number for n in made.nets if n.name == name) for name in ("TX_P", "TX_N"))
+    pair = Pair((one, other), "rules", 0.4, 30.0, coupled=True)
+    found = _one(made, replace(scene(made), pairs=(pair,)))
+    assert found.net == "TX_P"
+    assert "TX_N, keeps its plane here or finds a way near enough: all of it is" in found.reason
 
 
 def test_long_run_over_another_plane_changes_at_both_ends() -> None:
