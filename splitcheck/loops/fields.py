@@ -15,7 +15,7 @@ from splitcheck.loops import solve as engine
 from splitcheck.loops.bridges import IslandGraph
 from splitcheck.loops.clusters import near_one_another
 from splitcheck.loops.estimate import Inductance
-from splitcheck.loops.openings import Openings, outside_of
+from splitcheck.loops.openings import Openings
 from splitcheck.loops.spans import Spans
 from splitcheck.loops.stray import stray_db
 from splitcheck.loops.streams import Flow, flow_of, over_whole_plane
@@ -203,7 +203,7 @@ class Fields:
                 beyond_mm=self._apart_mm(plane.layer, tasks[0].beyond),
                 above_mm=self._apart_mm(plane.layer, tasks[0].other),
                 bridges=bridges,
-                outside=outside_of(plane, window, cut=cut),
+                outside=seen.outside,
                 ends=seen.ends,
                 disjoint=True,
                 coarsest=MOST_COARSER,

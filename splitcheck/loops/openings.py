@@ -12,8 +12,8 @@ from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.board.board import Board
 from splitcheck.loops.outlines import Ints
-from splitcheck.loops.tasks import Task
-from splitcheck.loops.windows import Windows, clipped, cut_ends
+from splitcheck.loops.tasks import Task, parts_islands
+from splitcheck.loops.windows import Windows, clipped, cut_ends, is_moderate
 from splitcheck.planes.islands import Plane
 from splitcheck.units import Floats
 
@@ -56,6 +56,8 @@ class Seen(NamedTuple):
     """Where windows cut off what leads to the outside."""
     inner: Polygon | None
     """A region that ends half way to where gaps were cut off; None where none was."""
+    outside: Polygon | None
+    """What the plane's layer may hold copper in, if a gap leads out of it."""
 
 
 class Openings:
@@ -100,19 +102,43 @@ class Openings:
         """
         plane = self.planes[tasks[0].crossing.plane]
         crossed = tasks[0].crossing.gap
+        beside = self._beside(plane, crossed, windows, lines, tasks[0].height_mm)
+        # where a gap cuts islands apart the world ends with the window
+        apart = any(parts_islands(task) for task in tasks)
         gaps: list[Polygon] = []
         ends: list[shapely.Point] = []
-        for number in (crossed, *self._beside(plane, crossed, windows, lines, tasks[0].height_mm)):
-            pieces = polygons(self._free(plane, number, windows.outer))
-            if too_ragged([*gaps, *pieces]):
-                if number == crossed:
-                    return None
-                break
+        inner = None
+        outside = outside_of(plane, windows.outer, cut=True) if apart else None
+        for number in (crossed, *beside):
+            gap = plane.gaps[number]
+            far = number != crossed and not apart
+            cut = self._cut(plane, number, (windows.far, windows.outer)[not far :], gaps)
+            if cut is None and number == crossed:
+                return None
+            if cut is None:
+                continue
+            pieces, window = cut
             gaps.extend(pieces)
-            if loose if number == crossed else plane.gaps[number].open:
-                ends.extend(cut_ends(pieces, windows.outer))
-        whole = windows.outer.contains(plane.gaps[crossed].shape)
-        return Seen(gaps, ends, None if whole else windows.half)
+            if loose if number == crossed else gap.open:
+                ends.extend(cut_ends(pieces, window))
+            if gap.open and not apart:
+                outside = outside_of(plane, window, cut=False)
+            if not window.contains(gap.shape):
+                inner = windows.half if window is windows.outer else inner or windows.outer
+        return Seen(gaps, ends, inner, outside)
+
+    def _cut(
+        self, plane: Plane, number: int, windows: Sequence[Polygon], beside: Sequence[Polygon]
+    ) -> tuple[list[Polygon], Polygon] | None:
+        """What of a gap is in the first of some windows where it is not too ragged, and which."""
+        gap = plane.gaps[number]
+        if len(windows) > 1 and is_moderate(gap, self.hull_of(plane, number)):
+            windows = [shapely.box(*gap.shape.bounds), *windows]
+        for window in windows:
+            pieces = polygons(self._free(plane, number, window))
+            if not too_ragged([*beside, *pieces]):
+                return pieces, window
+        return None
 
     def _beside(
         self,
@@ -122,11 +148,9 @@ class Openings:
         lines: Sequence[LineString],
         height_mm: float,
     ) -> list[int]:
-        """Numbers of the nearest gaps that no trace crosses and that matter."""
-        found = np.array(
-            sorted(plane.gap_boxes.intersection(windows.beside.bounds)), dtype=np.int64
-        )
-        numbers = found[found != crossed]
+        """Numbers of the nearest gaps that no trace crosses and that matter, open ones first."""
+        near = sorted(plane.gap_boxes.intersection(windows.beside.bounds))
+        numbers = np.array([number for number in near if number != crossed], dtype=np.int64)
         if plane.layer not in self._shapes:
             self._shapes[plane.layer] = np.array([gap.shape for gap in plane.gaps], dtype=object)
         shapes = self._shapes[plane.layer][numbers]
@@ -137,9 +161,13 @@ class Openings:
         counts = np.ones(len(shapes), dtype=np.bool_)
         counts[small] = shapely.dwithin(across, shapes[small], NEAR_HEIGHTS * height_mm)
         counts[counts] = shapely.intersects(windows.beside, shapes[counts])
-        apart = shapely.distance(across, shapes[counts])
-        rows = sorted(zip(apart.tolist(), numbers[counts].tolist(), strict=True))
-        return [number for far, number in rows if far > 0.0][:MOST_NEIGHBOURS]
+        apart = shapely.distance(across, shapes[counts]).tolist()
+        rows = [
+            (not plane.gaps[number].open, far, number)
+            for number, far in zip(numbers[counts].tolist(), apart, strict=True)
+            if far > 0.0
+        ]
+        return [number for *_, number in sorted(rows)[:MOST_NEIGHBOURS]]
 
     def _free(self, plane: Plane, number: int, window: Polygon) -> shapely.Geometry:
         """What of a gap is in a window, foreign copper taken out.

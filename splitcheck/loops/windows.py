@@ -11,7 +11,7 @@ from typing import NamedTuple
 
 import numpy as np
 import shapely
-from shapely import LinearRing, LineString, Point, Polygon
+from shapely import LinearRing, LineString, MultiPoint, Point, Polygon
 
 from splitcheck.copper import marks
 from splitcheck.loops import solve as engine
@@ -28,6 +28,8 @@ BEYOND_HEIGHTS = 5.0
 #: Neighbours of the gap are taken out to this beyond the ways round, in the same measures.
 BESIDE_MM = 2.0
 BESIDE_SHARE = 0.3
+#: ... and cut off so many times further out than the crossed gap, if they are not taken whole.
+BESIDE_FAR = 2.0
 #: A gap with a way round on one side only is kept on the other out to this many times the size of
 #: that way: if it leads outside, for flux may leave where it is cut off; with another plane, which
 #: keeps the flux near; and else, if that is not too ragged.
@@ -39,6 +41,9 @@ FAR_LEAST_MM = 10.0
 #: A closed gap is taken whole if it is no longer than this, mm, with no more corners than that.
 WHOLE_MM = 30.0
 WHOLE_CORNERS = 1000
+#: ... and a plain one up to this length.
+PLAIN_MM = 60.0
+PLAIN_CORNERS = 400
 #: The way along the rim on a side without a way that the solve sees is followed if it spans no
 #: more than this, mm.
 ALONG_MM = 60.0
@@ -52,12 +57,14 @@ class Windows(NamedTuple):
     """How far a solve looks; all convex."""
 
     outer: Polygon
-    """What gaps are cut off at."""
+    """What the crossed gap is cut off at."""
     half: Polygon
     """Half as far beyond the ways round."""
     beside: Polygon
     """Where gaps that are not crossed count: what those add that lie beside the trace further
     along is not owed to this crossing."""
+    far: Polygon
+    """What those are cut off at: flux that comes in through one goes out through the rest of it."""
 
 
 def span_mm(shape: shapely.Geometry) -> float:
@@ -152,13 +159,14 @@ def windows_of(
     The windows.
     """
     seen = shapely.multipoints(np.array(points))
+    assert isinstance(seen, MultiPoint)
     size = span_mm(seen)
     room = BEYOND_MM + BEYOND_SHARE * size + BEYOND_HEIGHTS * height_mm
     beside = BESIDE_MM + BESIDE_SHARE * size + BEYOND_HEIGHTS * height_mm
     parts: list[shapely.Geometry] = [_round(seen, room)]
     half: list[shapely.Geometry] = [_round(seen, room / 2)]
     about = shapely.convex_hull(gap.shape) if hull is None else hull
-    if _is_moderate(gap, about):
+    if is_moderate(gap, about):
         parts.append(_round(about, BEYOND_MM))
     elif one_sided:
         whole = _round(about, BEYOND_MM)
@@ -167,7 +175,9 @@ def windows_of(
         far = room + max(times * size, 0.0 if narrow else FAR_LEAST_MM)
         parts.append(shapely.intersection(_round(seen, far), whole))
         half.append(shapely.intersection(_round(seen, far / 2), whole))
-    return Windows(_together(parts), _together(half), _round(seen, beside))
+    outer = _together(parts)
+    beyond = _together([outer, _round(seen, BESIDE_FAR * room)])
+    return Windows(outer, _together(half), _round(seen, beside), beyond)
 
 
 def along_rim(gap: Polygon, start: marks.Point, stop: marks.Point) -> Iterator[LineString]:
@@ -231,11 +241,12 @@ def clipped(shape: Polygon, window: Polygon) -> shapely.Geometry:
     return near if window.contains(near) else shapely.intersection(near, window)
 
 
-def _is_moderate(gap: Gap, hull: shapely.Geometry) -> bool:
-    """Whether a gap is taken whole, however little of it the ways round need."""
-    if gap.open or int(shapely.get_num_coordinates(gap.shape)) > WHOLE_CORNERS:
+def is_moderate(gap: Gap, hull: shapely.Geometry) -> bool:
+    """Whether a gap with some hull is taken whole, however little of it the ways round need."""
+    corners = int(shapely.get_num_coordinates(gap.shape))
+    if gap.open or corners > WHOLE_CORNERS:
         return False
-    return span_mm(hull) <= WHOLE_MM
+    return span_mm(hull) <= (PLAIN_MM if corners <= PLAIN_CORNERS else WHOLE_MM)
 
 
 def _round(shape: shapely.Geometry, room_mm: float) -> Polygon:

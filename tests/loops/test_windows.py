@@ -30,6 +30,8 @@ from splitcheck.loops.windows import (
 )
 from splitcheck.planes.islands import Gap
 from splitcheck.verdict.findings import Finding
+from splitcheck.verdict.judge import judge
+from tests.making.hand import Line, Sheet, board, crossings, scene
 
 spots = st.tuples(st.floats(-20, 20), st.floats(-20, 20))
 #: Crossings and ways round lie on their gap or near its ends.
@@ -61,10 +63,11 @@ def test_window_has_room_round_its_points_and_holds_the_inner_one(
     """Convex, with room on all sides; a small gap is in it whole."""
     slot = box(-12, -0.3, 12, 0.3)
     for gap in (_gap(slot), _gap(slot, opened=True)):
-        window, half, beside = windows_of(points, gap, 0.2, one_sided=one_sided, shut=shut)
+        window, half, beside, far = windows_of(points, gap, 0.2, one_sided=one_sided, shut=shut)
         hull = shapely.MultiPoint(points).convex_hull
         assert window.buffer(1e-6).contains(half)
         assert window.buffer(1e-6).contains(beside)
+        assert far.buffer(1e-6).contains(window)
         assert window.contains(hull.buffer(0.9 * BEYOND_MM))
         assert window.convex_hull.area == pytest.approx(window.area)
     closed = windows_of(points, _gap(slot), 0.2, one_sided=one_sided, shut=shut)
@@ -140,18 +143,55 @@ def test_a_board_that_was_turned_has_the_same_values(
     _assert_within_errors(_of_plan(tmp_path, tide_logger(faulty=True), placing=placing), demo)
 
 
+def _twice_as_large(*args: Any, **how: Any) -> Windows:
+    """Windows that cut gaps off further out; what counts as beside a crossing stays the same."""
+    found = windows_of(*args, **how)
+    more = span_mm(found.outer) / 2
+    return found._replace(outer=found.outer.buffer(more), far=found.far.buffer(more))
+
+
 def test_a_larger_window_moves_no_value(
     demo: dict[str, Finding], monkeypatch: pytest.MonkeyPatch
 ) -> None:
     """Each window twice as large."""
-    plain = windows_of
-
-    def larger(*args: Any, **how: Any) -> Windows:
-        found = plain(*args, **how)
-        return found._replace(outer=found.outer.buffer(span_mm(found.outer) / 2))
-
-    monkeypatch.setattr(windows, "windows_of", larger)
+    monkeypatch.setattr(windows, "windows_of", _twice_as_large)
     _assert_within_errors(_solved(road.fixtures_folder() / "demo"), demo)
+
+
+def _beside_long_gap(height_mm: float, aside_mm: float, long_mm: float) -> Finding:
+    """A trace over a slot whose end comes near a long gap that runs along the trace."""
+    slot = box(59.6, 34, 60.4, 34.7 + aside_mm)
+    second = box(65 - long_mm / 2, 35 + aside_mm, 65 + long_mm / 2, 35.8 + aside_mm)
+    ground = box(0, 0, 140, 70).difference(shapely.union(slot, second))
+    assert isinstance(ground, Polygon)
+    made = board(
+        Sheet(lines=(Line("CLK", ((20.0, 35.0), (120.0, 35.0)), 0.3),)),
+        Sheet(areas=(("GND", ground),)),
+        heights_mm=[height_mm],
+    )
+    (found,) = judge(scene(made, 0.001), *crossings(made)).findings
+    assert found.method == "solved"
+    return found
+
+
+@pytest.mark.parametrize("height_mm", [0.3, 1.2])
+@pytest.mark.parametrize("aside_mm", [1.0, 2.0, 3.0])
+@pytest.mark.parametrize("long_mm", [50.0, 100.0])
+def test_a_neighbour_that_a_window_cuts_off_is_in_the_error(
+    height_mm: float, aside_mm: float, long_mm: float, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """The second gap is taken whole, or what is left out of it is in the error bar.
+
+    A neighbour cut off at the window of the crossing lets no flux out: it added up to 0.27 nH, five
+    times the value, as the window grew.
+    """
+    plain = _beside_long_gap(height_mm, aside_mm, long_mm)
+    monkeypatch.setattr(windows, "windows_of", _twice_as_large)
+    larger = _beside_long_gap(height_mm, aside_mm, long_mm)
+    assert plain.added_nh is not None
+    assert plain.error_nh is not None
+    assert larger.added_nh == pytest.approx(plain.added_nh, abs=plain.error_nh)
+    assert plain.error_nh < 0.5 * plain.added_nh
 
 
 def _near_slot(hole: Hole) -> bool:
