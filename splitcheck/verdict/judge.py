@@ -9,45 +9,38 @@ from functools import partial
 from typing import Any, TypeAlias
 
 from splitcheck.loops.clusters import cluster
-from splitcheck.loops.corner import detour_corner_khz
 from splitcheck.loops.estimate import Inductance
 from splitcheck.loops.fields import Field, Fields
 from splitcheck.loops.tasks import Task, can_solve
-from splitcheck.loops.ways import Way
 from splitcheck.planes.changes import PlaneChange
 from splitcheck.planes.crossings import BareTrace, Crossing
 from splitcheck.planes.edges import EdgeRun
 from splitcheck.verdict.around import LONG_RUN, share_of
 from splitcheck.verdict.bare import bare_findings
 from splitcheck.verdict.beside import (
-    least_nh,
     once_a_place,
     too_small,
 )
 from splitcheck.verdict.by_class import listed, with_crosstalk
+from splitcheck.verdict.crossed import crossing_finding, noise_of
 from splitcheck.verdict.edge_runs import common_of, edge_findings, with_common
 from splitcheck.verdict.findings import (
-    BridgeUse,
     Count,
     Finding,
-    GapShare,
-    Source,
 )
 from splitcheck.verdict.listing import worth_a_line
 from splitcheck.verdict.once import once_a_gap
 from splitcheck.verdict.pairs import with_pairs
-from splitcheck.verdict.places import by_place, fingerprint, with_ids, with_shares
+from splitcheck.verdict.places import by_place, with_ids, with_shares
 from splitcheck.verdict.plane_changes import (
     Case,
     change_findings,
     from_leaving,
     from_long_runs,
 )
-from splitcheck.verdict.reason import reason
 from splitcheck.verdict.scene import Judged, Scene, Weighed
-from splitcheck.verdict.score import Noise, level, noise_over_gap, slot_ns_mm
 from splitcheck.verdict.supplies import with_rule
-from splitcheck.verdict.weighing import look_at, reach_mm, weigh
+from splitcheck.verdict.weighing import look_at, weigh
 
 #: Calls a function on every item and gives the results in order, as ``map`` does.
 Spread: TypeAlias = Callable[[Callable[[Any], Any], Iterable[Any]], Iterable[Any]]
@@ -98,7 +91,7 @@ def judge(
     solved = _solve_all(scene, weighed, spread)
     findings: list[Finding] = []
     for number, item in enumerate(weighed):
-        finding = _crossing_finding(scene, item, solved.get(number), weighed)
+        finding = crossing_finding(scene, item, solved.get(number), weighed)
         if finding is None:
             dropped[too_small(scene, item.crossing)] += 1
         else:
@@ -182,7 +175,7 @@ def value_again(
         if value is None:
             values.append(None)
         elif all_of_them or value.added_nh >= scene.min_nh:
-            values.append((value, _noise(scene, item, value).mv))
+            values.append((value, noise_of(scene, item, value).mv))
     return tuple(values)
 
 
@@ -205,27 +198,8 @@ def value_together(
         if value is None:
             values.append((item.crossing, None, None))
         elif value.added_nh >= scene.min_nh:
-            values.append((item.crossing, value, _noise(scene, item, value).mv))
+            values.append((item.crossing, value, noise_of(scene, item, value).mv))
     return tuple(values)
-
-
-def _noise(scene: Scene, item: Weighed, value: Inductance) -> Noise:
-    drive = scene.drive_of(item.crossing.net)
-    return noise_over_gap(value.added_nh, drive, _along_ns(scene, item))
-
-
-def _crossing_finding(
-    scene: Scene, item: Weighed, field: Field | None, weighed: Sequence[Weighed]
-) -> Finding | None:
-    """The finding of a crossing; None if it adds too little."""
-    value = item.estimate if field is None else field.value
-    if value is not None and value.added_nh < least_nh(scene, item.crossing):
-        return None
-    drive = scene.drive_of(item.crossing.net)
-    noise = None
-    if value is not None:
-        noise = noise_over_gap(value.added_nh, drive, _along_ns(scene, item))
-    return _finding(scene, item, value, noise, field, weighed)
 
 
 def _with_common(scene: Scene, item: Weighed, finding: Finding) -> Finding:
@@ -235,126 +209,3 @@ def _with_common(scene: Scene, item: Weighed, finding: Finding) -> Finding:
         return finding
     why = f"{finding.reason}; it hangs beyond the edge: {with_common(common)}"
     return replace(finding, common_nh=common, reason=why)
-
-
-def _along_ns(scene: Scene, item: Weighed) -> float:
-    """How long a wave runs along the gap to where the return gets round, on the longer side, ns."""
-    crossing, route = item.crossing, item.route
-    ways = [way for way in (route.left, route.right) if way is not None]
-    layers = scene.board.stack.layers
-    below = layers[crossing.plane - 1].er_below if crossing.plane < len(layers) else 1.0
-    above = layers[crossing.plane - 2].er_below if crossing.plane > 1 else 1.0
-    along_mm = max((reach_mm(crossing, route, way) for way in ways), default=0.0)
-    return along_mm * slot_ns_mm(above, below)
-
-
-def _finding(
-    scene: Scene,
-    item: Weighed,
-    value: Inductance | None,
-    noise: Noise | None,
-    field: Field | None,
-    weighed: Sequence[Weighed],
-) -> Finding:
-    crossing, route = item.crossing, item.route
-    drive = scene.drive_of(crossing.net)
-    plane = scene.planes[crossing.plane]
-    layers = scene.board.stack.layers
-    islands = [plane.islands[i] for i in crossing.islands]
-    net = scene.board.nets[crossing.net].name
-    at = (round(crossing.at[0], 4), round(crossing.at[1], 4))
-    apart = _disagreement(item.estimate, field)
-    mv, capped = (None, False) if noise is None else noise
-    return Finding(
-        id="",
-        kind=item.kind,
-        level=level(mv, drive, None if value is None else value.added_nh),
-        net=net,
-        net_class=drive.name,
-        layer=layers[crossing.layer - 1].name,
-        plane_layer=layers[crossing.plane - 1].name,
-        plane_net=" to ".join(dict.fromkeys(island.net_name for island in islands)),
-        at_mm=at,
-        gap_mm=item.bare_mm,
-        detour_mm=route.detour_mm if route.joined else None,
-        added_nh=None if value is None else value.added_nh,
-        error_nh=None if value is None else value.error_nh,
-        method="solved" if field is not None else "none" if value is None else "estimated",
-        noise_mv=mv,
-        rise_ns=drive.rise_ns,
-        corner_khz=_corner_khz(scene, item, field),
-        stray_db=None if field is None else field.stray_db,
-        islands=(islands[0].id, islands[1].id),
-        bridges=_bridges(scene, route.best),
-        gap=plane.gaps[crossing.gap].id,
-        shares_gap_with=_mutual(scene, crossing.net, field, weighed),
-        pair=None,
-        source=Source(scene.board.layers[crossing.layer - 1].file, crossing.line),
-        waived=None,
-        fingerprint=fingerprint(item.kind, net, layers[crossing.layer - 1].name, at),
-        reason=reason(scene, item, _handed_over(item, field)),
-        estimated_nh=None if apart is None else apart.added_nh,
-        estimated_error_nh=None if apart is None else apart.error_nh,
-        capped=capped,
-    )
-
-
-def _corner_khz(scene: Scene, item: Weighed, field: Field | None) -> float | None:
-    """From where on the return follows inductance; None if nothing was solved."""
-    detour_mm = item.route.detour_mm
-    if field is None or detour_mm is None or item.crossing.aside_mm:
-        return None
-    stack, crossing = scene.board.stack, item.crossing
-    layer = item.other if item.beside is None else item.beside
-    return detour_corner_khz(
-        detour_mm,
-        field.value.added_nh,
-        height_mm=stack.height_mm(crossing.layer, crossing.plane),
-        copper_um=stack.layers[crossing.plane - 1].copper_um,
-        above_mm=None if layer is None else stack.height_mm(crossing.plane, layer),
-    )
-
-
-def _handed_over(item: Weighed, field: Field | None) -> float:
-    """Part of the return on the broken plane that gets past the gap on the other plane."""
-    if field is None:
-        return 1.0 if item.by_holes else 0.0
-    return min(field.handed_over / item.share, 1.0)
-
-
-def _disagreement(first: Inductance | None, field: Field | None) -> Inductance | None:
-    """The closed-form value, to be kept beside a solved one that it does not agree with."""
-    if first is None or field is None:
-        return None
-    agree = abs(first.added_nh - field.value.added_nh) <= first.error_nh + field.value.error_nh
-    return None if agree else first
-
-
-def _mutual(
-    scene: Scene, own: int, field: Field | None, weighed: Sequence[Weighed]
-) -> tuple[GapShare, ...]:
-    """The largest mutual inductance with every other net that shares the gap."""
-    best: dict[str, float] = {}
-    for number, mutual in field.mutual_nh if field is not None else ():
-        net = weighed[number].crossing.net
-        name = scene.board.nets[net].name
-        if net != own and abs(mutual) > abs(best.get(name, 0.0)):
-            best[name] = mutual
-    return tuple(GapShare(name, mutual) for name, mutual in sorted(best.items()))
-
-
-def _bridges(scene: Scene, way: Way | None) -> tuple[BridgeUse, ...]:
-    if way is None:
-        return ()
-    holes = (BridgeUse("via", (round(x, 4), round(y, 4)), way.bridge_net) for x, y in way.bridges)
-    parts = (
-        BridgeUse(
-            part.kind,
-            (round(part.at[0], 4), round(part.at[1], 4)),
-            " to ".join(
-                scene.graph.nodes[end]["island"].net_name for end in (part.one, part.other)
-            ),
-        )
-        for part in way.capacitors
-    )
-    return (*holes, *parts)
