@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from math import inf
+from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
 from splitcheck.copper.marks import Point
-from splitcheck.loops.bridges import IslandGraph, bridges_between
+from splitcheck.loops.bridges import KEPT, IslandGraph, bridges_between
 from splitcheck.loops.terrain import Terrain
 from splitcheck.loops.ways import OTHER_SIDE, Way, heading, to_point
 from splitcheck.planes.crossings import Crossing
@@ -28,7 +31,9 @@ def add_borrowed_ways(
     """Put in shorter ways over a plated hole, another layer's island and a plated hole back."""
     plane = planes[crossing.plane]
     one, other = (plane.islands[i].id for i in crossing.islands)
-    for middle in sorted(set(graph.adj[one]) & set(graph.adj[other])):
+    for middle, least_mm in _middles(crossing, graph, one, other):
+        if least_mm >= _enough({side: way.length_mm for side, way in sides.items()}):
+            continue
         island = graph.nodes[middle]["island"]
         search = _Search(crossing, terrains[crossing.plane], terrains[island.layer], sides)
         down = search.candidates(bridges_between(graph, one, middle), -1)
@@ -36,6 +41,65 @@ def add_borrowed_ways(
         for length, side, a, b in search.pairs(down, up):
             path = (crossing.before, a, b, crossing.after)
             sides[side] = Way(length, path, (a, b), island.net_name, island.layer)
+
+
+class _Leading(NamedTuple):
+    """Everything that leads from an island by plated holes to islands that can be borrowed."""
+
+    places: Floats
+    """The holes, each once, shape (n, 2), mm."""
+    islands: tuple[str, ...]
+    """Ids of the islands that they lead to, sorted."""
+    hole: NDArray[np.intp]
+    """Numbers of holes: those that lead to the first island, then to the second, and so on."""
+    start: NDArray[np.intp]
+    """Where those of each island begin in ``hole``."""
+
+
+def _leading(graph: IslandGraph, island: str) -> _Leading:
+    """What leads from an island; found once for each island of a graph."""
+    kept: dict[tuple[str, ...], _Leading] = graph.graph.setdefault(KEPT, {})
+    if (island,) not in kept:
+        others = tuple(sorted(graph.adj[island]))
+        holes = [bridges_between(graph, island, other) for other in others]
+        places, hole = np.unique(
+            np.concatenate([np.empty((0, 2)), *holes]), axis=0, return_inverse=True
+        )
+        start = np.cumsum([0, *(len(some) for some in holes)])[:-1]
+        kept[(island,)] = _Leading(places, others, hole.reshape(-1), start)
+    return kept[(island,)]
+
+
+def _middles(
+    crossing: Crossing, graph: IslandGraph, one: str, other: str
+) -> list[tuple[str, float]]:
+    """Islands that may be borrowed, sorted, and the least length of a way over each, mm."""
+    found: list[dict[str, float]] = []
+    for end, island in ((-1, one), (1, other)):
+        leading = _leading(graph, island)
+        if not len(leading.places):
+            return []
+        through = _through(crossing, leading.places)
+        if one == other:
+            through = np.where(_on_side(crossing, leading.places, end), through, inf)
+        least = np.minimum.reduceat(through[leading.hole], leading.start)
+        found.append(dict(zip(leading.islands, least.tolist(), strict=True)))
+    down, up = found
+    return [(middle, max(down[middle], up[middle])) for middle in down if middle in up]
+
+
+def _on_side(crossing: Crossing, places: Floats, end: int) -> NDArray[np.bool_]:
+    """Which places lie before the middle of the run (-1) or after it (1)."""
+    (dx, dy), (x, y) = heading(crossing), crossing.at
+    return np.asarray(((places[:, 0] - x) * dx + (places[:, 1] - y) * dy) * end > 0)
+
+
+def _enough(known_mm: Mapping[int, float]) -> float:
+    """No way longer than this is looked for: the other side's would carry hardly anything."""
+    if not known_mm:
+        return inf
+    worst = max(known_mm.values()) if len(known_mm) == 2 else inf
+    return min(worst, OTHER_SIDE * min(known_mm.values()))
 
 
 def _through(crossing: Crossing, places: Floats) -> Floats:
@@ -67,8 +131,7 @@ class _Search:
         through = _through(self.crossing, places)
         near = through < self._enough()
         if self.crossing.islands[0] == self.crossing.islands[1]:
-            (dx, dy), (x, y) = heading(self.crossing), self.crossing.at
-            near &= ((places[:, 0] - x) * dx + (places[:, 1] - y) * dy) * end > 0
+            near &= _on_side(self.crossing, places, end)
         which = np.flatnonzero(near)
         return places[which[np.argsort(through[which], kind="stable")]]
 
@@ -95,11 +158,7 @@ class _Search:
         return [found[side] for side in sorted(found)]
 
     def _enough(self) -> float:
-        """No way longer than this is looked for: the other side's would carry hardly anything."""
-        if not self.known:
-            return inf
-        worst = max(self.known.values()) if len(self.known) == 2 else inf
-        return min(worst, OTHER_SIDE * min(self.known.values()))
+        return _enough(self.known)
 
     def _reached(self, places: Floats, end: int) -> Floats:
         at = np.asarray(self.crossing.before if end < 0 else self.crossing.after)

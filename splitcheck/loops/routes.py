@@ -83,7 +83,7 @@ def _add_own_ways(sides: dict[int, Way], crossing: Crossing, terrain: Terrain) -
             terrain,
             crossing.before,
             crossing.after,
-            wall(crossing, -side),
+            wall(crossing, -side, _across_mm(crossing, terrain, rims[side])),
             (crossing.gap,),
             longest,
             least,
@@ -96,6 +96,12 @@ def _rim_distance(crossing: Crossing, terrain: Terrain, side: int) -> float:
     """How far it is from the middle of the run to the gap's rim straight aside, mm."""
     dx, dy = heading(crossing)
     return terrain.rim_distance_mm(crossing.gap, crossing.at, (-dy * side, dx * side))
+
+
+def _across_mm(crossing: Crossing, terrain: Terrain, rim_mm: float) -> float:
+    """How far a wall may reach across the gap itself: no way can pass there, which is soon seen."""
+    within = shapely.contains_xy(terrain.shape(crossing.gap), *crossing.at)
+    return max(rim_mm - RIM_MM, 0.0) if within and rim_mm < inf else 0.0
 
 
 def _parted(crossing: Crossing, terrain: Terrain, side: int) -> bool:

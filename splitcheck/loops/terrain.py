@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from math import floor, inf
 from typing import TypeAlias
@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.copper.marks import Point
+from splitcheck.loops.sights import Patch, Step
 from splitcheck.planes.islands import Plane, box_size_mm
 from splitcheck.units import Floats, segments
 
@@ -27,6 +28,10 @@ TILE_MM = 12.0
 #: ... and room for the next corner: chords of an arc of radius r that leaves them by c are
 #: 2 sqrt(2 r c) long, times this by sqrt(c) for arcs of the trade's sizes, mm^0.5.
 WIDE_ARC = 4.0
+#: So many steps between corners are kept of a plane: some 20 MB.
+MOST_STEPS = 200_000
+#: Steps between all corners of a patch are found at once if it has no more of them than this.
+SMALL_PATCH = 200
 
 
 Box: TypeAlias = tuple[float, float, float, float]
@@ -39,7 +44,8 @@ class Terrain:
     """The gaps of one plane as obstacles, and the corners at which ways bend round them."""
 
     plane: Plane
-    _corners: dict[tuple[int, float, Tile], Floats] = field(default_factory=dict)
+    _patches: dict[tuple[int, float, Tile], Patch] = field(default_factory=dict)
+    _steps: int = 0
     _rims: dict[int, Floats] = field(default_factory=dict)
     _outlines: dict[int, Floats] = field(default_factory=dict)
     _large: MultiPolygon | None = None
@@ -50,28 +56,87 @@ class Terrain:
         shapely.prepare(shape)
         return shape
 
-    def corners(self, gap: int, clear_mm: float, box: Box) -> Iterator[Floats]:
-        """Places just off a gap's rim at which a taut way round it may bend; shape (n, 3, 2) each.
+    def patches(self, gap: int, clear_mm: float, box: Box) -> Iterator[Patch]:
+        """Places just off a gap's rim at which a taut way round it may bend.
 
-        Each comes with the corners of the rim before and after it. All those in the box are given,
-        and some others.
+        All those in the box are given, and some others.
 
         The gap is widened by a little more than the rim is then thinned by: a way from corner to
         corner stays clear of it.
         """
         for tile in self._tiles(gap, box):
             key = (gap, clear_mm, tile)
-            if key not in self._corners:
-                self._corners[key] = self._corners_in(gap, clear_mm, tile)
-            yield self._corners[key]
+            if key not in self._patches:
+                self._patches[key] = Patch.of(gap, self._corners_in(gap, clear_mm, tile))
+            yield self._patches[key]
+
+    def steps(self, patch: Patch, corner: int, patches: Sequence[Patch]) -> list[list[Step]]:
+        """Taut steps from a corner of a patch to those of others, for each of them.
+
+        Steps that run into the gaps of the two patches are left out.
+        """
+        if self._steps > MOST_STEPS:
+            self._steps = 0
+            for other in self._patches.values():
+                for some in other.known:
+                    some.clear()
+        known = patch.known[corner]
+        fresh = [other for other in patches if other not in known]
+        if patch in fresh and len(patch) <= SMALL_PATCH:
+            self._find_pairs(patch)
+            fresh.remove(patch)
+        if fresh:
+            self._find_steps(patch, corner, fresh)
+        return [known[other] for other in patches]
+
+    def _find_pairs(self, patch: Patch) -> None:
+        """Find the steps between all corners of a patch at once."""
+        pairs = patch.pairs()
+        free = ~shapely.intersects(self.shape(patch.gap), segments(pairs.ends))
+        rows: list[list[Step]] = [[] for _ in patch.known]
+        own = 1 << patch.gap
+        for one, other, length in zip(
+            pairs.start[free].tolist(),
+            pairs.to[free].tolist(),
+            pairs.length_mm[free].tolist(),
+            strict=True,
+        ):
+            rows[one].append(Step(length, other, own))
+            rows[other].append(Step(length, one, own))
+        for known, row in zip(patch.known, rows, strict=True):
+            known[patch] = row
+        self._steps += len(rows) + sum(len(row) for row in rows)
+
+    def _find_steps(self, patch: Patch, corner: int, patches: Sequence[Patch]) -> None:
+        touching = patch.touching(corner, patches)
+        lines = segments(touching.ends)
+        free = ~shapely.intersects(self.shape(patch.gap), lines)
+        gaps = np.array([other.gap for other in patches])[touching.start]
+        for gap in np.unique(gaps[gaps != patch.gap]).tolist():
+            there = np.flatnonzero(free & (gaps == gap))
+            free[there] = ~shapely.intersects(self.shape(gap), lines[there])
+        found: list[list[Step]] = [[] for _ in patches]
+        own = 1 << patch.gap
+        for number, to, length in zip(
+            touching.start[free].tolist(),
+            touching.to[free].tolist(),
+            touching.length_mm[free].tolist(),
+            strict=True,
+        ):
+            found[number].append(Step(length, to, own | 1 << patches[number].gap))
+        patch.known[corner].update(zip(patches, found, strict=True))
+        self._steps += len(patches) + sum(len(steps) for steps in found)
+
+    def is_plain(self, gap: int) -> bool:
+        """Whether a gap is so simple that all its corners are found at once."""
+        return bool(shapely.get_num_coordinates(self.plane.gaps[gap].shape) <= TILED_POINTS)
 
     def _tiles(self, gap: int, box: Box) -> Iterator[Tile]:
         """The tiles of an intricate gap that a box meets; None for the whole of a simple gap."""
-        shape = self.plane.gaps[gap].shape
-        if shapely.get_num_coordinates(shape) <= TILED_POINTS:
+        if self.is_plain(gap):
             yield None
             return
-        x0, y0, x1, y1 = shape.bounds
+        x0, y0, x1, y1 = self.plane.gaps[gap].shape.bounds
         low = max(box[0], x0 - 1.0), max(box[1], y0 - 1.0)
         high = min(box[2], x1 + 1.0), min(box[3], y1 + 1.0)
         for i in range(floor(low[0] / TILE_MM), floor(high[0] / TILE_MM) + 1):

@@ -91,11 +91,11 @@ def heading(crossing: Crossing) -> tuple[float, float]:
     return dx / length, dy / length
 
 
-def wall(crossing: Crossing, side: int) -> LineString:
-    """A wall from the middle of the run out to one side (1 left, -1 right)."""
+def wall(crossing: Crossing, side: int, across_mm: float = 0.0) -> LineString:
+    """A wall from the middle of the run, or farther across, out to one side (1 left, -1 right)."""
     (dx, dy), (x, y) = heading(crossing), crossing.at
-    far = 2000.0 * side
-    return LineString([(x, y), (x - dy * far, y + dx * far)])
+    ends = [(x - dy * far, y + dx * far) for far in (-across_mm * side, 2000.0 * side)]
+    return LineString(ends)
 
 
 def side_of(crossing: Crossing, a: Point, b: Point) -> int:
