@@ -220,11 +220,11 @@ def test_no_text_of_a_file_can_reach_the_terminal_raw(
 def test_copper_that_ties_many_nets_is_told_by_the_first_of_their_names(pump: Report) -> None:
     """As sentences do; a single name, and two islands of a split, are told whole."""
     nets = "GND|GNDA|Net-(ANT1-Pad1)"
-    for given, shown in (
+    for plane, shown in (
         (nets, "(GND and 2 more)"),
         (f"{nets} to +3V3", "(GND and 2 more to +3V3)"),
     ):
-        worst = replace(pump.findings[0], plane_net=given)
+        worst = replace(pump.findings[0], plane_net=plane)
         text = plain(replace(pump, findings=(worst,)), width=140)
         assert shown in text
         assert "ANT1" not in text
