@@ -8,6 +8,7 @@ from typing import NamedTuple, TypeAlias
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 from shapely import LineString, Polygon
 from shapely.ops import split
 
@@ -94,22 +95,32 @@ def point_angles(
     angle is followed from piece to piece over the cuts that a line from the point (to that first
     point, or else to where it meets the gap least) makes in it.
     """
-    angles = np.zeros((len(points), len(panels)))
-    for number, gap in enumerate(gaps):
-        mine = np.flatnonzero(panels.gap == number)
-        inside, centre = panels.inside[mine], panels.centre[mine]
-        shapely.prepare(gap)
-        bases = _bases(points, number, held)
-        outer = np.flatnonzero(bases < 0)
-        if len(outer):
-            sides = _outer_sides(gap, points, [(number, int(k)) for k in outer], known)
-            angles[np.ix_(outer, mine)] = _from_outside(points[outer], sides, inside, centre)
-        for k in np.flatnonzero((bases >= 0) & (bases != np.arange(len(points)))):
-            at, base = points[k], points[bases[k]]
-            if (number, int(k)) not in known:
-                cut = LineString([at, _way_over(at, base), base])
-                known[number, int(k)] = _parted(gap, cut, 0.0)
-            angles[k, mine] = _between(at, base, known[number, int(k)], inside, centre)
+    if not gaps:
+        return np.zeros((len(points), len(panels)))
+    shapes = np.array(gaps, dtype=object)
+    shapely.prepare(shapes)
+    bases = np.stack([_bases(points, number, held) for number in range(len(gaps))])
+    outer = bases < 0
+    direction = _directions(shapes, points, outer, known)
+    inside, centre, gap = panels.inside, panels.centre, panels.gap
+    away = inside - points[:, None, :]
+    start = direction[gap].T
+    angles: Floats = start + np.mod(np.arctan2(away[:, :, 1], away[:, :, 0]) - start, 2 * np.pi)
+    angles += turned(points[:, None, :], inside, centre)
+    angles[~outer[gap].T] = 0.0
+    for number, k in np.argwhere(outer | (bases != np.arange(len(points)))).tolist():
+        if outer[number, k]:
+            # turning left over its ray an angle falls from a full turn to none
+            if len(known[number, k].pieces) > 1:
+                mine = np.flatnonzero(gap == number)
+                angles[k, mine] += _turns(known[number, k], inside[mine])
+            continue
+        at, base = points[k], points[bases[number, k]]
+        if (number, k) not in known:
+            cut = LineString([at, _way_over(at, base), base])
+            known[number, k] = _parted(gaps[number], cut, 0.0)
+        mine = np.flatnonzero(gap == number)
+        angles[k, mine] = _between(at, base, known[number, k], inside[mine], centre[mine])
     return angles
 
 
@@ -149,43 +160,32 @@ def turned(at: Floats, before: Floats, after: Floats) -> Floats:
     return _seen(before, after, at)
 
 
-def _outer_sides(
-    gap: Polygon, points: Floats, keys: Sequence[tuple[int, int]], known: Known
-) -> list[_Sides]:
-    """Cuts for points that the gap does not surround: rays that meet it least."""
-    new = [key for key in keys if key not in known]
-    if new:
-        west, south, east, north = gap.bounds
-        at = points[[k for _, k in new]]
-        out = at - np.array([(west + east) / 2, (south + north) / 2])
-        direction = np.arctan2(out[:, 1], out[:, 0]) + _ASKEW
-        far = 2 * np.hypot(*out.T) + 2 * float(np.hypot(east - west, north - south))
-        ends = at + far[:, None] * np.stack([np.cos(direction), np.sin(direction)], axis=1)
-        blocked = shapely.intersects(gap, shapely.linestrings(np.stack([at, ends], axis=1)))
-        whole = (gap,), np.zeros(1)
-        known.update(
-            (key, _Sides(start, *whole)) for key, start in zip(new, direction, strict=True)
-        )
-        for n in np.flatnonzero(blocked):
-            ray, start = _clearest_ray(gap, at[n], float(direction[n]), float(far[n]))
-            known[new[n]] = _parted(gap, ray, start)
-    return [known[key] for key in keys]
-
-
-def _from_outside(
-    points: Floats, sides: Sequence[_Sides], inside: Floats, centre: Floats
+def _directions(
+    gaps: NDArray[np.object_], points: Floats, outer: NDArray[np.bool_], known: Known
 ) -> Floats:
-    """Angles about points that the gap does not surround, shape (k, n)."""
-    direction = np.array([side.direction for side in sides])
-    away = inside - points[:, None, :]
-    ahead = np.arctan2(away[:, :, 1], away[:, :, 0]) - direction[:, None]
-    angle: Floats = direction[:, None] + np.mod(ahead, 2 * np.pi)
-    # turning left over its ray an angle falls from a full turn to none
-    for k, side in enumerate(sides):
-        if len(side.pieces) > 1 or side.turns[0]:
-            angle[k] += _turns(side, inside)
-    angle += turned(points[:, None, :], inside, centre)
-    return angle
+    """Where angles about points start that gaps do not surround: at the rays that meet them least.
+
+    Returns shape (gaps, points), 0 for the others; `known` gains the cuts that the rays make.
+    """
+    number, which = np.nonzero(outer)
+    keys = list(zip(number.tolist(), which.tolist(), strict=True))
+    new = [n for n, key in enumerate(keys) if key not in known]
+    if new:
+        gap, at = gaps[number[new]], points[which[new]]
+        west, south, east, north = shapely.bounds(gap).T
+        out = at - np.stack([(west + east) / 2, (south + north) / 2], axis=1)
+        start = np.arctan2(out[:, 1], out[:, 0]) + _ASKEW
+        far = 2 * np.hypot(*out.T) + 2 * np.hypot(east - west, north - south)
+        ends = at + far[:, None] * np.stack([np.cos(start), np.sin(start)], axis=1)
+        blocked = shapely.intersects(gap, shapely.linestrings(np.stack([at, ends], axis=1)))
+        for k, n in enumerate(new):
+            known[keys[n]] = _Sides(float(start[k]), (gap[k],), np.zeros(1))
+            if blocked[k]:
+                ray, clear = _clearest_ray(gap[k], at[k], float(start[k]), float(far[k]))
+                known[keys[n]] = _parted(gap[k], ray, clear)
+    direction = np.zeros(outer.shape)
+    direction[number, which] = [known[key].direction for key in keys]
+    return direction
 
 
 def _clearest_ray(gap: Polygon, at: Floats, start: float, far: float) -> tuple[LineString, float]:

@@ -26,6 +26,8 @@ _NEARBY = 2.0
 #: Panels whose radii add up to less than this part of the distance of a plane see its images by
 #: their second moments as well.
 _SMALL = 1.0
+#: Places and weights of the Gauss rule from 0 to 1 along either side of a panel.
+_NODES, _WEIGHTS = (leggauss(6)[0] + 1) / 2, leggauss(6)[1] / 2
 #: Rows of the matrix that are filled at a time.
 _BLOCK = 48
 
@@ -181,8 +183,7 @@ def _constant(panels: Panels, plates_mm: Sequence[float]) -> float:
 
 def _own_images(panels: Panels, plate: float) -> Floats:
     """Mean of the image series over all pairs of points of the equivalent rectangle."""
-    nodes, weights = leggauss(6)
-    u, w = (nodes + 1) / 2, weights / 2
+    u, w = _NODES, _WEIGHTS
     a, b = panels.sides.T[:, :, None] * u
     value = plate_images_squared(a[:, :, None] ** 2 + b[:, None, :] ** 2, plate)
     weight = 2 * w * (1 - u)
