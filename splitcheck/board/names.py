@@ -3,6 +3,10 @@
 from __future__ import annotations
 
 import re
+from functools import lru_cache
+
+#: Names whose meaning is remembered: each is asked for by several stages, part by part.
+MOST_NAMES = 1 << 14
 
 _GROUND = re.compile(
     r"(?:^|[^A-Z])[ADPSCEIHR]?(?:GND|GROUND|EARTH|VSS|CHASSIS|SHIELD)(?:[^A-Z]|$|A|D|P|S|REF|PLANE)"
@@ -39,6 +43,7 @@ def last_part(name: str) -> str:
     return name.rsplit("/", 1)[-1].strip().upper().replace("~{", "").replace("}", "").strip("~")
 
 
+@lru_cache(MOST_NAMES)
 def is_ground(name: str) -> bool:
     """Whether a net name is a ground by the habits of the trade (common practice, no source).
 
@@ -50,6 +55,7 @@ def is_ground(name: str) -> bool:
     return bool(_GROUND.search(last_part(name)))
 
 
+@lru_cache(MOST_NAMES)
 def is_supply(name: str) -> bool:
     """Whether a net name is a supply by the habits of the trade (common practice, no source).
 
@@ -69,6 +75,7 @@ def is_supply(name: str) -> bool:
     return bool(_SUPPLY.match(name)) and not _CONTROL.search(name)
 
 
+@lru_cache(MOST_NAMES)
 def is_power(name: str) -> bool:
     """Whether any of the names of a net, joined by ``|`` where copper ties several, is power.
 

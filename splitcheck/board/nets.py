@@ -62,7 +62,7 @@ def join(
     The holes with the parts they join, and for every part the number of its net.
     """
     touched: list[list[int]] = [[] for _ in holes]
-    barrels = np.array([_barrel(hole) for hole in holes], dtype=object)
+    barrels = _barrels(holes)
     offset = 0
     for layer in layers:
         through = [
@@ -86,9 +86,14 @@ def join(
     return joined, net_of
 
 
-def _barrel(hole: Hole) -> shapely.Geometry:
-    path = shapely.Point(hole.path[0]) if len(hole.path) == 1 else shapely.LineString(hole.path)
-    return path.buffer(max(hole.diameter_mm, 0.02) / 2, quad_segs=4)
+def _barrels(holes: Sequence[Hole]) -> np.ndarray[tuple[int], np.dtype[np.object_]]:
+    paths = [
+        shapely.Point(hole.path[0]) if len(hole.path) == 1 else shapely.LineString(hole.path)
+        for hole in holes
+    ]
+    radii_mm = np.array([max(hole.diameter_mm, 0.02) / 2 for hole in holes])
+    made = shapely.buffer(np.array(paths, dtype=object), radii_mm, quad_segs=4)
+    return np.asarray(made, dtype=object)
 
 
 def _touches(

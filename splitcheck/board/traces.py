@@ -51,11 +51,7 @@ def centre_lines(marks: Sequence[Mark], pieces: Sequence[Polygon]) -> tuple[Cent
     sides, those along its rim on one. A trace that runs inside copper of its own net carries its
     return nowhere else and is rightly left out with them.
     """
-    strokes = [
-        mark
-        for mark in marks
-        if isinstance(mark, Stroke) and mark.dark and mark.width_mm > 0 and _length_mm(mark) > 1e-6
-    ]
+    strokes = _drawn(marks)
     if not strokes or not pieces:
         return ()
     centre, left, right = _looks(strokes)
@@ -70,19 +66,22 @@ def centre_lines(marks: Sequence[Mark], pieces: Sequence[Polygon]) -> tuple[Cent
     first_look[np.arange(len(strokes))[inside.any(axis=1)]] = piece[
         inside.any(axis=1), inside.argmax(axis=1)[inside.any(axis=1)]
     ]
-    bare = ~_on_piece(left, first_look, pieces) & ~_on_piece(right, first_look, pieces)
-    free = (inside & bare).sum(axis=1) * 2 > len(LOOK_AT)
+    free = _free(inside, (left, right), first_look, pieces)
     return tuple(
         CentreLine(strokes[i].points, strokes[i].width_mm, int(first_look[i]), strokes[i].line)
         for i in np.flatnonzero(free & (first_look >= 0)).tolist()
     )
 
 
-def _length_mm(stroke: Stroke) -> float:
-    (x0, y0), (x1, y1) = stroke.points[0], stroke.points[-1]
-    if len(stroke.points) > 2:
-        return float(shapely.length(shapely.linestrings(stroke.points)))
-    return float(np.hypot(x1 - x0, y1 - y0))
+def _drawn(marks: Sequence[Mark]) -> list[Stroke]:
+    """Dark strokes longer than nothing."""
+    drawn = [mark for mark in marks if type(mark) is Stroke and mark.dark and mark.width_mm > 0]
+    ends = np.array([(*mark.points[0], *mark.points[-1]) for mark in drawn]).reshape(-1, 4)
+    lengths = np.hypot(ends[:, 2] - ends[:, 0], ends[:, 3] - ends[:, 1])
+    for number, mark in enumerate(drawn):
+        if len(mark.points) > 2:
+            lengths[number] = shapely.length(shapely.linestrings(mark.points))
+    return [drawn[number] for number in np.flatnonzero(lengths > 1e-6).tolist()]
 
 
 def _looks(strokes: Sequence[Stroke]) -> tuple[Floats, Floats, Floats]:
@@ -144,38 +143,62 @@ def locate(
     >>> locate(np.array([0.5, 5.0]), np.array([0.5, 5.0]), [shapely.box(0, 0, 1, 1)])
     array([ 0, -1])
     """
-    found = np.full(len(xs), -1, dtype=np.intp)
-    if not len(xs) or not pieces:
+    return Pieces(pieces).at(xs, ys)
+
+
+class Pieces:
+    """Disjoint polygons that are asked more than once what lies at some points."""
+
+    def __init__(self, pieces: Sequence[Polygon]) -> None:
+        self._pieces = pieces
+        self._tree = shapely.STRtree(list(pieces))
+
+    def at(self, xs: Floats, ys: Floats) -> np.ndarray[tuple[int], np.dtype[np.intp]]:
+        """Index of the piece that contains each point, -1 where none does; as ``locate``."""
+        found = np.full(len(xs), -1, dtype=np.intp)
+        if not len(xs) or not len(self._pieces):
+            return found
+        points, hits = self._tree.query(shapely.points(xs, ys))
+        order = np.argsort(hits, kind="stable")
+        points, hits = points[order], hits[order]
+        for start, stop in runs(hits):
+            polygon, which = self._pieces[hits[start]], points[start:stop]
+            if len(which) > 8:  # preparing costs more than a few plain tests
+                shapely.prepare(polygon)
+            inside = shapely.contains_xy(polygon, xs[which], ys[which])
+            found[which[inside]] = hits[start]
         return found
-    tree = shapely.STRtree(list(pieces))
-    points, hits = tree.query(shapely.points(xs, ys))
-    order = np.argsort(hits, kind="stable")
-    points, hits = points[order], hits[order]
-    for start, stop in runs(hits):
-        polygon, which = pieces[hits[start]], points[start:stop]
-        if len(which) > 8:  # preparing costs more than a few plain tests
-            shapely.prepare(polygon)
-        inside = shapely.contains_xy(polygon, xs[which], ys[which])
-        found[which[inside]] = hits[start]
-    return found
 
 
-def _on_piece(
-    points: Floats,
+def _free(
+    inside: np.ndarray[tuple[int, int], np.dtype[np.bool_]],
+    sides: tuple[Floats, Floats],
     piece: np.ndarray[tuple[int], np.dtype[np.intp]],
     pieces: Sequence[Polygon],
-) -> np.ndarray[tuple[int, int], np.dtype[np.bool_]]:
-    """Whether each point lies on the piece that its stroke belongs to."""
-    on = np.zeros(points.shape[:-1], dtype=np.bool_)
-    order = np.argsort(piece, kind="stable")
-    ranked = piece[order]
-    for start, stop in runs(ranked):
-        if ranked[start] < 0:
-            continue
-        rows = order[start:stop]
-        polygon = pieces[ranked[start]]
-        if len(rows) > 1:
+) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+    """Which strokes are bare on both sides at most looks; asks only until that is settled."""
+    rank = np.argsort(piece, kind="stable")
+    bare = np.zeros(len(piece), dtype=np.intp)
+    left = np.full(len(piece), len(LOOK_AT))
+    for look in range(len(LOOK_AT)):
+        # Neither settled as free, nor beyond reach of it.
+        open_ = (bare * 2 <= len(LOOK_AT)) & ((bare + left) * 2 > len(LOOK_AT))
+        rows = rank[(open_ & inside[:, look] & (piece >= 0))[rank]]
+        for side in sides:
+            rows = rows[~_on_own(side[rows, look], piece[rows], pieces)]
+        bare[rows] += 1
+        left -= 1
+    return bare * 2 > len(LOOK_AT)
+
+
+def _on_own(
+    points: Floats, piece: np.ndarray[tuple[int], np.dtype[np.intp]], pieces: Sequence[Polygon]
+) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+    """Whether each point lies on its piece; sorted by piece."""
+    on = np.zeros(len(points), dtype=np.bool_)
+    for start, stop in runs(piece):
+        polygon = pieces[piece[start]]
+        if stop - start > 1:
             shapely.prepare(polygon)
-        at = points[rows]
-        on[rows] = shapely.contains_xy(polygon, at[..., 0], at[..., 1])
-    return on  # type: ignore[return-value]
+        on[start:stop] = shapely.contains_xy(polygon, points[start:stop, 0], points[start:stop, 1])
+    return on

@@ -1,4 +1,8 @@
-"""The rare commands of a Gerber file, by pygerber's grammar and, where it says no, by ours."""
+"""The rare commands of a Gerber file: plain ones at once, the rest by pygerber's grammar or ours.
+
+What nearly every file writes (``FSLAX46Y46``, ``ADD10C,0.2``) has one reading, and a pattern finds
+it in a microsecond; pygerber takes milliseconds for each and a third of a second to be imported.
+"""
 
 from __future__ import annotations
 
@@ -66,6 +70,7 @@ def token(command: str) -> Any:
     return None
 
 
+_PLAIN_FORMAT = re.compile(r"FSLAX\d\dY\d\d", re.ASCII)
 _FORMAT = re.compile(r"FS([LTD]?)([AI]?)(?:N\d+)?(?:G\d+)?X(\d)(\d)Y(\d)(\d)(?:D\d+)?(?:M\d+)?$")
 
 
@@ -77,7 +82,7 @@ def read_format(command: str) -> Format | None:
     >>> read_format("FSLAX45Y45")
     Format(decimals=(5, 5), digits=(9, 9), trailing_omitted=False, incremental=False)
     """
-    found = token(command)
+    found = None if _PLAIN_FORMAT.fullmatch(command) else token(command)
     if found is not None:
         x, y = found.x_format, found.y_format
         return Format(
@@ -97,11 +102,22 @@ def read_format(command: str) -> Format | None:
 
 def read_unit(command: str) -> float | None:
     """Read MO: one file unit in mm."""
+    units = {"MM": 1.0, "IN": INCH_MM}
+    if command[2:] in units:
+        return units[command[2:]]
     found = token(command)
-    name = found.unit.value if found is not None else command[2:].strip()
-    return {"MM": 1.0, "IN": INCH_MM}.get(name)
+    return units.get(found.unit.value if found is not None else command[2:].strip())
 
 
+_SIZE = r"\d{1,9}(?:\.\d{1,15})?"
+#: A circle, rectangle or obround with or without a hole, or a macro of two letters or more.
+_PLAIN_DEFINITION = re.compile(
+    r"ADD(?P<code>[1-9]\d{1,8})"
+    rf"(?:(?P<round>C),(?P<diameter>{_SIZE}(?:X{_SIZE})?)"
+    rf"|(?P<long>[RO]),(?P<sides>{_SIZE}X{_SIZE}(?:X{_SIZE})?)"
+    rf"|(?P<macro>[A-Za-z_]\w+)(?:,(?P<values>-?{_SIZE}(?:X-?{_SIZE})*))?)",
+    re.ASCII,
+)
 _DEFINITION = re.compile(r"AD\s*D0*(\d+)\s*([^,\s][^,]*?)\s*(?:,(.*))?$", re.DOTALL)
 
 
@@ -115,6 +131,12 @@ def read_definition(command: str) -> Definition | None:
     >>> read_definition("ADD11A-B,.5X")
     Definition(code=11, template='A-B', parameters=(0.5,))
     """
+    plain = _PLAIN_DEFINITION.fullmatch(command)
+    if plain is not None:
+        template = plain["round"] or plain["long"] or plain["macro"]
+        values = plain["diameter"] or plain["sides"] or plain["values"]
+        numbers = tuple(map(float, values.split("X"))) if values else ()
+        return Definition(int(plain["code"]), template, numbers)
     found = token(command)
     if found is not None:
         return _definition(found)
@@ -168,9 +190,12 @@ def read_repeat(command: str) -> Repeat | None:
         return None
 
 
+_PLAIN_NUMBER = re.compile(r"-?\d{1,9}(?:\.\d{1,15})?", re.ASCII)
+
+
 def read_number(command: str) -> float | None:
     """Read the number of LR or LS."""
-    found = token(command)
+    found = None if _PLAIN_NUMBER.fullmatch(command[2:]) else token(command)
     if found is not None:
         return float(found.rotation if command[:2] == "LR" else found.scaling)
     try:
@@ -181,6 +206,8 @@ def read_number(command: str) -> float | None:
 
 def read_word(command: str, words: tuple[str, ...]) -> str | None:
     """Read the one word of LP, LM or IP; ``None`` if it is none of those allowed."""
+    if command[2:] in words:
+        return command[2:]
     found = token(command)
     if found is not None:
         value = getattr(

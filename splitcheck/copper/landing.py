@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import pairwise
 
 import numpy as np
 import shapely
@@ -38,15 +39,28 @@ def landed(
     asked = [
         number for number, mark in enumerate(marks) if mark.dark and (mark.tag.net or not named)
     ]
-    found: list[set[int]] = [set() for _ in marks]
+    found: list[tuple[int, ...]] = [()] * len(marks)
+    owner, piece = _landings(marks, pieces, asked)
+    starts = np.flatnonzero(np.diff(owner, prepend=-1)).tolist()
+    whole = tuple((number,) for number in range(len(pieces)))
+    owners, on = owner.tolist(), piece.tolist()
+    for start, stop in pairwise([*starts, len(owners)]):
+        found[owners[start]] = whole[on[start]] if stop - start == 1 else tuple(on[start:stop])
+    return tuple(found)
+
+
+def _landings(
+    marks: Sequence[Mark], pieces: Sequence[Polygon], asked: list[int]
+) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Pairs of a mark and a piece it lies on, each once, sorted."""
     owners, points = _witnesses(marks, asked)
-    if len(points) and len(pieces):
-        # The tree holds points, so that each piece is prepared once and asks for all of its own.
-        tree = shapely.STRtree(points)
-        piece, point = tree.query(np.array(pieces, dtype=object), predicate="intersects")
-        for number, owner in zip(piece.tolist(), owners[point].tolist(), strict=True):
-            found[owner].add(number)
-    return tuple(tuple(sorted(numbers)) for numbers in found)
+    if not len(points) or not len(pieces):
+        return np.empty(0, dtype=np.int64), np.empty(0, dtype=np.int64)
+    # The tree holds points, so that each piece is prepared once and asks for all of its own.
+    tree = shapely.STRtree(points)
+    piece, point = tree.query(np.array(pieces, dtype=object), predicate="intersects")
+    pairs = np.unique(owners[point] * len(pieces) + piece)
+    return pairs // len(pieces), pairs % len(pieces)
 
 
 def names(marks: Sequence[Mark], pieces: Sequence[Polygon]) -> tuple[tuple[str, ...], ...]:
@@ -65,10 +79,11 @@ def names(marks: Sequence[Mark], pieces: Sequence[Polygon]) -> tuple[tuple[str, 
     (``None``) and none (``""``) do not count.
     """
     found: list[set[str]] = [set() for _ in pieces]
-    for mark, numbers in zip(marks, landed(marks, pieces, named=True), strict=True):
-        if mark.tag.net:
-            for number in numbers:
-                found[number].add(mark.tag.net)
+    asked = [number for number, mark in enumerate(marks) if mark.dark and mark.tag.net]
+    for number, piece in zip(*map(np.ndarray.tolist, _landings(marks, pieces, asked)), strict=True):
+        net = marks[number].tag.net
+        assert net is not None
+        found[piece].add(net)
     return tuple(tuple(sorted(held)) for held in found)
 
 

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Iterable, Sequence
-from itertools import pairwise
+from itertools import chain, pairwise
 from typing import Any, TypeAlias
 
 import numpy as np
 import shapely
 from numpy.typing import NDArray
-from shapely import LineString, Polygon
+from shapely import Polygon
 
 from splitcheck.copper import curves, fills
 from splitcheck.copper.marks import Fill, Flash, Mark, Point, Stroke
@@ -92,11 +92,18 @@ def thick(paths: Sequence[tuple[Point, ...]], width_mm: float) -> Shapes:
         return np.full(len(paths), Polygon(), dtype=object)
     quarter = curves.corners_of_quarter(width_mm / 2)
     made: Shapes = shapely.buffer(
-        np.array([LineString(path) for path in paths], dtype=object),
+        _lines(paths),
         width_mm / 2,
         quad_segs=quarter,
     )
     return made
+
+
+def _lines(paths: Sequence[tuple[Point, ...]]) -> Shapes:
+    counts = np.fromiter(map(len, paths), dtype=np.intp, count=len(paths))
+    corners = np.array(list(chain.from_iterable(paths)), dtype=np.float64).reshape(-1, 2)
+    numbers = np.repeat(np.arange(len(paths)), counts)
+    return np.asarray(shapely.linestrings(corners, indices=numbers), dtype=object)
 
 
 def _stamped(shape: Polygon, places: Sequence[Point]) -> Shapes:

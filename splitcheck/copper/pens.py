@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Iterator, Sequence
-from itertools import pairwise
+from itertools import groupby
 
 import numpy as np
 import shapely
@@ -68,42 +68,43 @@ def outlines_to_unite(marks: Sequence[Mark]) -> Shapes:
 
 def _sorted_out(marks: Sequence[Mark]) -> tuple[list[tuple[float, Path]], list[Mark]]:
     """Long runs as width and path, and all marks that are neither in one nor fills."""
+    strokes: list[Stroke] = []
+    others: list[Mark] = []
+    for mark in marks:
+        if type(mark) is Stroke and mark.shape is None and mark.width_mm > 0:
+            strokes.append(mark)
+        elif type(mark) is not Fill:
+            others.append(mark)
     runs: list[tuple[float, Path]] = []
     single: list[Mark] = []
-    for run in _runs(marks):
+    for run in _runs(strokes):
         if len(run) < FEWEST_IN_RUN:
             single.extend(run)
             continue
         corners = [point for mark in run for point in mark.points[:-1]]
-        runs.append((run[0].width_mm, _path((*corners, run[-1].points[-1]))))
-    single.extend(m for m in marks if not isinstance(m, Fill) and not _by_round_pen(m))
-    return runs, single
+        corners.append(run[-1].points[-1])
+        runs.append((run[0].width_mm, _path(corners)))
+    return runs, [*single, *others]
 
 
-def _by_round_pen(mark: Mark) -> bool:
-    return isinstance(mark, Stroke) and mark.shape is None and mark.width_mm > 0
-
-
-def _runs(marks: Sequence[Mark]) -> Iterator[list[Stroke]]:
+def _runs(strokes: Sequence[Stroke]) -> Iterator[Sequence[Stroke]]:
     """Consecutive round strokes of one width, each starting at the end of the last."""
-    run: list[Stroke] = []
-    for mark in marks:
-        if not isinstance(mark, Stroke) or not _by_round_pen(mark):
-            continue
-        if run and run[-1].width_mm == mark.width_mm and run[-1].points[-1] == mark.points[0]:
-            run.append(mark)
-            continue
-        if run:
-            yield run
-        run = [mark]
-    if run:
-        yield run
+    first, width, end = 0, -1.0, None
+    for number, mark in enumerate(strokes):
+        points = mark.points
+        if points[0] != end or mark.width_mm != width:
+            if number:
+                yield strokes[first:number]
+            first, width = number, mark.width_mm
+        end = points[-1]
+    if strokes:
+        yield strokes[first:]
 
 
-def _path(points: Path) -> Path:
+def _path(points: Sequence[Point]) -> Path:
     """Points without those that repeat the last; a dot keeps two."""
-    kept = [points[0], *(b for a, b in pairwise(points) if a != b)]
-    return tuple(kept) if len(kept) > 1 else (points[0], points[0])
+    kept = tuple(point for point, _ in groupby(points))
+    return kept if len(kept) > 1 else (points[0], points[0])
 
 
 def _grown(area: BaseGeometry, path: Path, width_mm: float) -> list[BaseGeometry]:

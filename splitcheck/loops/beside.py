@@ -180,8 +180,11 @@ def _zones(
     grown = shapely.buffer([plane.tiles[n].shape for n in unique.tolist()], reach, quad_segs=2)
     overlaps = shapely.intersection(lines[near.piece], np.asarray(grown, dtype=object)[back])
     spans: dict[int, list[tuple[float, float]]] = defaultdict(list)
-    for piece, overlap in zip(near.piece.tolist(), overlaps, strict=True):
-        spans[piece].extend(spans_of(tracks, piece, overlap))
+    owner, starts, stops = spans_of(tracks, near.piece, overlaps)
+    for piece, *span in zip(
+        near.piece[owner].tolist(), starts.tolist(), stops.tolist(), strict=True
+    ):
+        spans[piece].append((span[0], span[1]))
     rows = [(piece, *span) for piece in sorted(spans) for span in merged(spans[piece])]
     places = np.array([tracks.point(piece, (a + b) / 2) for piece, a, b in rows]).reshape(-1, 2)
     carried = plane.island_at(places[:, 0], places[:, 1]) >= 0

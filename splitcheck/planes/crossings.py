@@ -213,28 +213,42 @@ def _crossings_over(
         for bit in found
         for start, stop in common([(bit.start, bit.stop)], still[piece])
     ]
-    found = []
     ends = _Ends(tracks, bare, still)
-    for group in _groups(tracks, bits):
-        crossing = _crossing(tracks, plane, group, ends)
-        rim = None if crossing is not None else ends.left_at(group)
-        if crossing is not None or rim is not None:
-            found.append((crossing, group, rim))
+    groups = _groups(tracks, bits)
+    rims = [[rim for bit in group for rim in ends.of(bit)] for group in groups]
+    runs = [_run(tracks, *both) for both in zip(groups, rims, strict=True)]
+    places = [place for run in runs if run is not None for place in (run.entry.on, run.leave.on)]
+    on = plane.island_at(*np.array(places).reshape(-1, 2).T).reshape(-1, 2).tolist()
+    islands = iter(on)
+    found: list[tuple[Crossing | None, list[_Bit], _Rim | None]] = []
+    for group, around, run in zip(groups, rims, runs, strict=True):
+        if run is not None:
+            one, other = next(islands)
+            if min(one, other) >= 0 and run.run_mm > 0:
+                found.append((_crossing(tracks, plane, group, run, (one, other)), group, None))
+        elif (left := _left_at(around)) is not None:
+            found.append((None, group, left))
     return found
 
 
 def _groups(tracks: Tracks, bits: Sequence[_Bit]) -> list[list[_Bit]]:
     """Bits over one gap that hang together where pieces of trace meet."""
-    graph: nx.Graph[tuple[str, int, int]] = nx.Graph()
+    above = list(range(len(bits)))
+
+    def root(number: int) -> int:
+        while above[number] != number:
+            above[number] = above[above[number]]
+            number = above[number]
+        return number
+
+    first: dict[tuple[int, int], int] = {}
     for number, bit in enumerate(bits):
-        graph.add_node(("bit", number, 0))
         for node in _nodes_of(tracks, bit):
-            graph.add_edge(("bit", number, 0), ("node", node, bit.gap))
-    groups = [
-        sorted(bits[number] for kind, number, _ in members if kind == "bit")
-        for members in nx.connected_components(graph)
-    ]
-    return sorted(groups)
+            above[root(number)] = root(first.setdefault((node, bit.gap), number))
+    groups: dict[int, list[_Bit]] = defaultdict(list)
+    for number, bit in enumerate(bits):
+        groups[root(number)].append(bit)
+    return sorted(sorted(group) for group in groups.values())
 
 
 def _nodes_of(tracks: Tracks, bit: _Bit) -> list[int]:
@@ -262,29 +276,39 @@ class _Rim(NamedTuple):
     """Which end of that piece leads away: 0 its start, 1 its end."""
 
 
+class _Run(NamedTuple):
+    """The way of a group of bits from the plane to the plane."""
+
+    entry: _Rim
+    leave: _Rim
+    path: tuple[Point, ...]
+    run_mm: float
+
+
 class _Ends:
-    """Where groups of bits end: on the plane's copper, on a nearer plane, or nowhere."""
+    """Where bits end: on the plane's copper, on a nearer plane, or nowhere."""
 
     def __init__(self, tracks: Tracks, bare: Uncovered, still: dict[int, list[Span]]) -> None:
         self.tracks = tracks
         self.bare = bare
         self.still = still
+        self._at_nodes: dict[int, list[_Rim]] = {}
 
-    def _seen(self, piece: int, at: float) -> bool:
-        """Whether no nearer plane hides this place."""
+    def _on_plane(self, piece: int, at: float) -> bool:
+        """Whether this place is on the plane's copper and no nearer plane hides it."""
+        for bit in self.bare.get(piece, ()):
+            if bit.start <= at <= bit.stop:
+                return False
         return any(start <= at <= stop for start, stop in self.still.get(piece, ()))
-
-    def _covered(self, piece: int, at: float) -> bool:
-        return not any(bit.start <= at <= bit.stop for bit in self.bare.get(piece, ()))
 
     def of(self, bit: _Bit) -> list[_Rim]:
         """The rims of a bit."""
-        rims = []
-        step = PROBE_MM / float(self.tracks.length_mm[bit.piece])
+        rims: list[_Rim] = []
         for at, sign, end in ((bit.start, -1, 0), (bit.stop, 1, 1)):
-            beyond = at + sign * min(step, at if sign < 0 else 1 - at)
             if 0.0 < at < 1.0:
-                if self._covered(bit.piece, beyond) and self._seen(bit.piece, beyond):
+                step = PROBE_MM / float(self.tracks.length_mm[bit.piece])
+                beyond = at + sign * min(step, at if sign < 0 else 1 - at)
+                if self._on_plane(bit.piece, beyond):
                     rims.append(
                         _Rim(
                             self.tracks.point(bit.piece, at),
@@ -296,13 +320,11 @@ class _Ends:
                         )
                     )
                 continue
-            rims.extend(self._rims_at_node(int(self.tracks.nodes[bit.piece, end])))
+            node = int(self.tracks.nodes[bit.piece, end])
+            if node not in self._at_nodes:
+                self._at_nodes[node] = self._rims_at_node(node)
+            rims.extend(self._at_nodes[node])
         return rims
-
-    def left_at(self, group: Sequence[_Bit]) -> _Rim | None:
-        """Where a group of bits comes from the plane, if it never gets back to it."""
-        rims = {rim.key: rim for bit in group for rim in self.of(bit)}
-        return next(iter(rims.values())) if len(rims) == 1 else None
 
     def _rims_at_node(self, node: int) -> list[_Rim]:
         rims = []
@@ -310,7 +332,7 @@ class _Ends:
             first = int(self.tracks.nodes[other, 0]) == node
             step = min(PROBE_MM / float(self.tracks.length_mm[other]), 0.5)
             beyond = step if first else 1.0 - step
-            if self._covered(other, beyond) and self._seen(other, beyond):
+            if self._on_plane(other, beyond):
                 at = self.tracks.point(other, 0.0 if first else 1.0)
                 on = self.tracks.point(other, beyond)
                 rims.append(
@@ -319,40 +341,54 @@ class _Ends:
         return rims
 
 
-def _crossing(tracks: Tracks, plane: Plane, group: Sequence[_Bit], ends: _Ends) -> Crossing | None:
-    """Make a crossing of a group that starts and ends on the plane; else None."""
+def _left_at(found: Sequence[_Rim]) -> _Rim | None:
+    """Where a group of bits comes from the plane, if it never gets back to it."""
+    rims = {rim.key: rim for rim in found}
+    return next(iter(rims.values())) if len(rims) == 1 else None
+
+
+def _run(tracks: Tracks, group: Sequence[_Bit], found: Sequence[_Rim]) -> _Run | None:
+    """The longest way through a group from one of its rims to another; else None."""
     rims: dict[Place, _Rim] = {}
-    for bit in group:
-        for rim in ends.of(bit):
-            rims.setdefault(rim.key, rim)
+    for rim in found:
+        rims.setdefault(rim.key, rim)
     if len(rims) < 2:
         return None
+    if len(group) == 1 and len(rims) == 2:
+        # Most runs are one straight stretch: there is one way, and nothing to compare.
+        (bit,) = group
+        (one, entry), (_, leave) = sorted(rims.items())
+        ends = tracks.point(bit.piece, bit.start), tracks.point(bit.piece, bit.stop)
+        ahead = one == _key(tracks, bit, 0)
+        run_mm = (bit.stop - bit.start) * float(tracks.length_mm[bit.piece])
+        return _Run(entry, leave, ends if ahead else ends[::-1], run_mm)
     graph = _walk(tracks, group)
     best = _farthest(graph, sorted(rims))
     if best is None:
         return None
-    entry, leave, keys, run_mm = best
-    path = tuple(graph.nodes[key]["at"] for key in keys)
-    before, after = rims[entry].on, rims[leave].on
-    islands = plane.island_at(np.array([before[0], after[0]]), np.array([before[1], after[1]]))
-    if islands.min() < 0 or run_mm <= 0:
-        return None
+    first, last, keys, run_mm = best
+    return _Run(rims[first], rims[last], tuple(graph.nodes[key]["at"] for key in keys), run_mm)
+
+
+def _crossing(
+    tracks: Tracks, plane: Plane, group: Sequence[_Bit], run: _Run, islands: tuple[int, int]
+) -> Crossing:
     first = max(group, key=lambda bit: (bit.stop - bit.start) * float(tracks.length_mm[bit.piece]))
     return Crossing(
         net=int(tracks.net[first.piece]),
         layer=tracks.layer,
         plane=plane.layer,
         gap=first.gap,
-        path=path,
+        path=run.path,
         stretch=(
-            *reversed(_followed(tracks, rims[entry])),
-            *path,
-            *_followed(tracks, rims[leave]),
+            *reversed(_followed(tracks, run.entry)),
+            *run.path,
+            *_followed(tracks, run.leave),
         ),
-        before=before,
-        after=after,
-        islands=(int(islands[0]), int(islands[1])),
-        run_mm=run_mm,
+        before=run.entry.on,
+        after=run.leave.on,
+        islands=islands,
+        run_mm=run.run_mm,
         width_mm=float(tracks.width_mm[first.piece]),
         line=int(tracks.line[first.piece]),
     )
@@ -390,20 +426,21 @@ def _turn(tracks: Tracks, piece: int, toward: int, other: int, node: int) -> tup
     return round(1.0 - along, 9), other
 
 
+def _key(tracks: Tracks, bit: _Bit, end: int) -> Place:
+    """The node of an end of a bit in the walk graph: 0 its start, 1 its stop."""
+    at = bit.stop if end else bit.start
+    if 0.0 < at < 1.0:
+        return "rim", bit.piece, at
+    return "node", int(tracks.nodes[bit.piece, end]), 0.0
+
+
 def _walk(tracks: Tracks, group: Sequence[_Bit]) -> nx.Graph[Place]:
     """The bits of a group as a graph of places, edges weighted by length in mm."""
     graph: nx.Graph[Place] = nx.Graph()
     for bit in group:
-        keys = []
-        for at, end in ((bit.start, 0), (bit.stop, 1)):
-            inside = 0.0 < at < 1.0
-            key = (
-                ("rim", bit.piece, at)
-                if inside
-                else ("node", int(tracks.nodes[bit.piece, end]), 0.0)
-            )
-            graph.add_node(key, at=tracks.point(bit.piece, at))
-            keys.append(key)
+        keys = [_key(tracks, bit, 0), _key(tracks, bit, 1)]
+        graph.add_node(keys[0], at=tracks.point(bit.piece, bit.start))
+        graph.add_node(keys[1], at=tracks.point(bit.piece, bit.stop))
         length = (bit.stop - bit.start) * float(tracks.length_mm[bit.piece])
         graph.add_edge(keys[0], keys[1], weight=length)
     return graph

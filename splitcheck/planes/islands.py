@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
+from collections.abc import Iterable
 from dataclasses import dataclass
 from itertools import pairwise
 from math import hypot
@@ -16,7 +17,7 @@ from shapely import MultiPolygon, Polygon
 from splitcheck.board.board import Board
 from splitcheck.board.names import is_power
 from splitcheck.board.parts import Part
-from splitcheck.board.traces import locate
+from splitcheck.board.traces import Pieces
 from splitcheck.units import Floats
 
 #: A piece of copper counts as plane-like from this area and mean width on (common practice).
@@ -79,12 +80,12 @@ class Plane:
             for shape in _tiles(gap.shape)
         )
         self._tile_tree = shapely.STRtree([tile.shape for tile in self.tiles])
-        self._shapes = [island.shape for island in islands]
+        self._islands = Pieces([island.shape for island in islands])
         self.gap_boxes = _box_index(gap.shape for gap in self.gaps)
 
     def island_at(self, xs: Floats, ys: Floats) -> NDArray[np.intp]:
         """Index of the island under each point, -1 where copper is missing; shape (n,)."""
-        return locate(xs, ys, self._shapes)
+        return self._islands.at(xs, ys)
 
     def tiles_over(self, lines: NDArray[np.object_]) -> NDArray[np.intp]:
         """Pairs (line, tile) that meet, shape (2, n)."""
@@ -113,14 +114,9 @@ def find_planes(board: Board) -> tuple[Plane, ...]:
     (3) Islands are the plane-like pieces of such nets. Signal copper is never an island.
     """
     nets = reference_nets(board)
-    stroked_mm2 = _stroked_mm2(board)
     chosen: dict[int, list[Part]] = defaultdict(list)
-    for part in board.parts:
-        if (
-            board.net_of[part.id] in nets
-            and is_plane_like(part.shape)
-            and stroked_mm2[part.id] <= MOST_STROKED * part.shape.area
-        ):
+    for part in _not_drawn(board):
+        if board.net_of[part.id] in nets:
             chosen[part.layer].append(part)
     box = shapely.box(*_bounds(board)).buffer(FRAME_MM, join_style="mitre")
     return tuple(
@@ -143,19 +139,23 @@ def is_plane_like(
 
 def reference_nets(board: Board) -> frozenset[int]:
     """Numbers of the nets whose copper can carry a return current."""
-    stroked_mm2 = _stroked_mm2(board)
     large = max(UNNAMED_AREA_MM2, UNNAMED_SHARE * board.outline.area)
     chosen = set()
-    for part in board.parts:
+    for part in _not_drawn(board):
         net = board.nets[board.net_of[part.id]]
-        if stroked_mm2[part.id] > MOST_STROKED * part.shape.area:
-            continue
         known = is_power(net.name) or net.number in board.references
-        if (known and is_plane_like(part.shape)) or is_plane_like(
-            part.shape, large, UNNAMED_WIDTH_MM
-        ):
+        if known or is_plane_like(part.shape, large, UNNAMED_WIDTH_MM):
             chosen.add(net.number)
     return frozenset(chosen)
+
+
+def _not_drawn(board: Board) -> list[Part]:
+    """Plane-like pieces of copper that are not drawn as traces."""
+    shapes = np.array([part.shape for part in board.parts], dtype=object)
+    area, length = shapely.area(shapes), shapely.length(shapes)
+    wide = (area >= LEAST_AREA_MM2) & (2 * area >= LEAST_WIDTH_MM * length)
+    drawn = np.array(_stroked_mm2(board)) > MOST_STROKED * area
+    return [board.parts[number] for number in np.flatnonzero(wide & ~drawn).tolist()]
 
 
 def _stroked_mm2(board: Board) -> list[float]:
@@ -164,20 +164,20 @@ def _stroked_mm2(board: Board) -> list[float]:
     first = 0
     for layer in board.layers:
         for line in layer.lines:
-            length = sum(hypot(x1 - x0, y1 - y0) for (x0, y0), (x1, y1) in pairwise(line.points))
+            if len(line.points) == 2:
+                (x0, y0), (x1, y1) = line.points
+                length = hypot(x1 - x0, y1 - y0)
+            else:
+                length = sum(hypot(c - a, d - b) for (a, b), (c, d) in pairwise(line.points))
             areas[first + line.piece] += length * line.width_mm
         first += len(layer.pieces)
     return areas
 
 
 def _bounds(board: Board) -> tuple[float, float, float, float]:
-    boxes = [board.outline.bounds, *(part.shape.bounds for part in board.parts)]
-    return (
-        min(box[0] for box in boxes),
-        min(box[1] for box in boxes),
-        max(box[2] for box in boxes),
-        max(box[3] for box in boxes),
-    )
+    shapes = np.array([board.outline, *(part.shape for part in board.parts)], dtype=object)
+    x0, y0, x1, y1 = shapely.total_bounds(shapes).tolist()
+    return x0, y0, x1, y1
 
 
 def _number(board: Board, layer: int, parts: list[Part]) -> tuple[Island, ...]:
@@ -200,21 +200,28 @@ def _gaps(layer: int, islands: tuple[Island, ...], box: Polygon) -> tuple[Gap, .
     holes = [
         (ring, number) for number, island in enumerate(islands) for ring in island.shape.interiors
     ]
-    shapes = [Polygon(ring) for ring, _ in holes]
+    rings = np.array([ring for ring, _ in holes], dtype=object)
+    shapes = np.atleast_1d(np.asarray(shapely.polygons(rings), dtype=object)).tolist()
     within = _holes_holding(islands, shapes, [number for _, number in holes])
     inner: dict[int, list[shapely.LinearRing]] = defaultdict(list)
     for number, island in enumerate(islands):
         inner[within[number]].append(island.shape.exterior)
-    gaps = [Polygon(box.exterior, inner[-1])]
-    gaps.extend(Polygon(shape.exterior, inner[i]) for i, shape in enumerate(shapes))
-    valid = [piece for gap in gaps for piece in _polygons(gap if gap.is_valid else gap.buffer(0))]
-    edge = box.exterior
-    opened = [piece.intersects(edge) for piece in valid]
-    order = sorted(
-        range(len(valid)), key=lambda i: (not opened[i], -round(valid[i].area, 6), valid[i].bounds)
-    )
+    gaps = [Polygon(box.exterior, inner[-1]), *shapes]
+    for number, hollow in inner.items():
+        if number >= 0:
+            gaps[1 + number] = Polygon(shapes[number].exterior, hollow)
+    sound = shapely.is_valid(np.array(gaps, dtype=object)).tolist()
+    valid = [
+        piece
+        for gap, whole in zip(gaps, sound, strict=True)
+        for piece in ([gap] if whole and not gap.is_empty else _polygons(gap.buffer(0)))
+    ]
+    pieces = np.array(valid, dtype=object)
+    opened = shapely.intersects(pieces, box.exterior).tolist()
+    areas, boxes = shapely.area(pieces).tolist(), shapely.bounds(pieces).tolist()
+    order = sorted(range(len(valid)), key=lambda i: (not opened[i], -round(areas[i], 6), boxes[i]))
     return tuple(
-        Gap(f"L{layer}.g{rank}", layer, valid[i], bool(opened[i]))
+        Gap(f"L{layer}.g{rank}", layer, valid[i], opened[i])
         for rank, i in enumerate(order, start=1)
     )
 
@@ -263,8 +270,8 @@ def _tiles(shape: Polygon) -> list[Polygon]:
     ]
 
 
-def _box_index(shapes: object) -> index.Index:
-    boxes = [shape.bounds for shape in shapes]  # type: ignore[attr-defined]
+def _box_index(shapes: Iterable[Polygon]) -> index.Index:
+    boxes = shapely.bounds(np.array(list(shapes), dtype=object)).tolist()
     if not boxes:
         return index.Index()
     return index.Index((number, box, None) for number, box in enumerate(boxes))

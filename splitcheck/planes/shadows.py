@@ -8,13 +8,17 @@ from typing import NamedTuple, TypeAlias
 
 import numpy as np
 import shapely
+from numpy.typing import NDArray
 
 from splitcheck.planes.islands import Plane
-from splitcheck.planes.tracks import Tracks
+from splitcheck.planes.tracks import Ints, Tracks
 from splitcheck.units import Floats, segments
 
 #: Stretches of uncovered trace shorter than this are noise of the polygons, mm.
 LEAST_RUN_MM = 2e-3
+
+_LINE_STRING = 1
+"""Number of that kind of geometry in shapely."""
 
 Span: TypeAlias = tuple[float, float]
 
@@ -57,10 +61,16 @@ def uncovered(tracks: Tracks, plane: Plane, pieces: Sequence[int]) -> Uncovered:
     shapes = np.array([plane.tiles[tile].shape for tile in tiles], dtype=object)
     overlaps = shapely.intersection(lines[hits], shapes)
     found: dict[int, dict[int, list[Span]]] = defaultdict(lambda: defaultdict(list))
-    for hit, tile, overlap in zip(hits.tolist(), tiles.tolist(), overlaps, strict=True):
-        piece = int(which[hit])
-        for start, stop in spans_of(tracks, piece, overlap):
-            found[piece][plane.tiles[tile].gap].append((start, stop))
+    owner, starts, stops = spans_of(tracks, which[hits], overlaps)
+    gaps = np.array([tile.gap for tile in plane.tiles], dtype=np.intp)[tiles]
+    for piece, gap, start, stop in zip(
+        which[hits][owner].tolist(),
+        gaps[owner].tolist(),
+        starts.tolist(),
+        stops.tolist(),
+        strict=True,
+    ):
+        found[piece][gap].append((start, stop))
     result: Uncovered = {}
     for piece, by_gap in sorted(found.items()):
         slack = LEAST_RUN_MM / float(tracks.length_mm[piece])
@@ -75,18 +85,42 @@ def uncovered(tracks: Tracks, plane: Plane, pieces: Sequence[int]) -> Uncovered:
     return result
 
 
-def spans_of(tracks: Tracks, piece: int, overlap: shapely.Geometry) -> list[Span]:
-    """Where along a piece, in fractions of it, its common part with some shape lies."""
-    (x0, y0), (x1, y1) = tracks.start[piece], tracks.end[piece]
-    dx, dy = x1 - x0, y1 - y0
-    square = dx * dx + dy * dy
-    spans: list[Span] = []
-    for line in getattr(overlap, "geoms", [overlap]):
-        if line.geom_type != "LineString" or line.is_empty:
-            continue
-        at = [((x - x0) * dx + (y - y0) * dy) / square for x, y in line.coords]
-        spans.append((max(min(at), 0.0), min(max(at), 1.0)))
-    return spans
+def spans_of(
+    tracks: Tracks, pieces: Ints, overlaps: NDArray[np.object_]
+) -> tuple[Ints, Floats, Floats]:
+    """Where along pieces, in fractions of them, their common parts with some shapes lie.
+
+    Parameters
+    ----------
+    tracks
+        Straight pieces of one layer.
+    pieces
+        Index of the piece that each overlap is part of, shape (n,).
+    overlaps
+        Geometries, shape (n,); points among them do not count.
+
+    Returns
+    -------
+    For each straight part the number of its overlap, and the fractions of the piece where it
+    starts and stops, shape (m,) each; in the order of the overlaps.
+    """
+    parts, owner = shapely.get_parts(overlaps, return_index=True)
+    lines = (shapely.get_type_id(parts) == _LINE_STRING) & ~shapely.is_empty(parts)
+    parts, owner = parts[lines], owner[lines]
+    corners, part = shapely.get_coordinates(parts, return_index=True)
+    if not len(parts):
+        return owner, np.empty(0), np.empty(0)
+    along = tracks.end[pieces] - tracks.start[pieces]
+    square = along[:, 0] * along[:, 0] + along[:, 1] * along[:, 1]
+    whose = owner[part]
+    off, ahead = corners - tracks.start[pieces[whose]], along[whose]
+    at = (off[:, 0] * ahead[:, 0] + off[:, 1] * ahead[:, 1]) / square[whose]
+    first = np.searchsorted(part, np.arange(len(parts)))
+    return (
+        owner,
+        np.maximum(np.minimum.reduceat(at, first), 0.0),
+        np.minimum(np.maximum.reduceat(at, first), 1.0),
+    )
 
 
 def merged(spans: Iterable[Span], slack: float = 0.0) -> list[Span]:

@@ -54,8 +54,8 @@ class Tracks:
 
     def at_node(self, node: int) -> list[int]:
         """Indexes of the pieces that end at a node."""
-        first, last = self.node_start[node], self.node_start[node + 1]
-        return sorted({int(position) // 2 for position in self.node_order[first:last]})
+        first, last = self.node_start[node : node + 2].tolist()
+        return sorted({position // 2 for position in self.node_order[first:last].tolist()})
 
 
 def lay(board: Board, layer: CopperLayer, first_part: int, nets: frozenset[int]) -> Tracks:

@@ -9,8 +9,11 @@ from typing import Any
 
 import numpy as np
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from splitcheck.copper import gerber
+from splitcheck.copper import gerber_language as language
 from splitcheck.copper.marks import Fill, Flash, Mark, Stroke
 
 HEAD = (
@@ -105,3 +108,70 @@ def test_same_marks(name: str, unit: str) -> None:
     for mine, theirs in zip(found, expected, strict=True):
         assert np.array(mine[1]) == pytest.approx(np.array(theirs[1]), abs=2e-6)
         assert mine[2:] == theirs[2:]
+
+
+_SIZES = st.decimals(0, 999, places=6).map(str)
+_SIGNED = st.decimals(-999, 999, places=6).map(str)
+
+
+@given(st.integers(10, 9999), st.lists(_SIZES, min_size=1, max_size=2))
+def test_plain_circles_are_what_pygerber_reads(code: int, sizes: list[str]) -> None:
+    """Code, diameter and hole."""
+    command = f"ADD{code}C,{'X'.join(sizes)}"
+    told, read = language.token(command), language.read_definition(command)
+    values = tuple(float(v) for v in (told.diameter, told.hole_diameter) if v is not None)
+    assert read == (code, "C", values)
+    assert told.aperture_id == f"D{code}"
+
+
+@given(st.sampled_from("RO"), st.lists(_SIZES, min_size=2, max_size=3))
+def test_plain_rectangles_and_obrounds_are_what_pygerber_reads(kind: str, sizes: list[str]) -> None:
+    """Sides and hole."""
+    command = f"ADD10{kind},{'X'.join(sizes)}"
+    told, read = language.token(command), language.read_definition(command)
+    values = (told.x_size, told.y_size, told.hole_diameter)
+    assert read == (10, kind, tuple(float(v) for v in values if v is not None))
+    assert type(told).__name__ == {"R": "DefineRectangle", "O": "DefineObround"}[kind]
+
+
+@given(st.from_regex(r"[A-Za-z_][A-Za-z0-9_]{1,12}", fullmatch=True), st.lists(_SIGNED, max_size=9))
+def test_plain_macros_are_what_pygerber_reads(name: str, values: list[str]) -> None:
+    """Name and signed values."""
+    command = f"ADD10{name}" + ("," + "X".join(values) if values else "")
+    told, read = language.token(command), language.read_definition(command)
+    assert (told.aperture_type, tuple(map(float, told.am_param))) == (name, read and read[2])
+
+
+@pytest.mark.parametrize("command", ["FSLAX46Y46", "FSLAX24Y25"])
+def test_a_plain_format_is_what_pygerber_reads(command: str) -> None:
+    """Decimals, digits, zeros and mode."""
+    told, read = language.token(command), language.read_format(command)
+    assert read is not None
+    assert read.decimals == (told.x_format.decimal, told.y_format.decimal)
+    assert read.digits[0] - read.decimals[0] == told.x_format.integer
+    assert (told.zeros_mode.value, told.coordinate_mode.value) == ("L", "A")
+
+
+@pytest.mark.parametrize(
+    ("command", "words"),
+    [
+        ("LPD", ("C", "D")),
+        ("LPC", ("C", "D")),
+        ("LMXY", ("N", "X", "Y", "XY")),
+        ("IPNEG", ("NEG",)),
+    ],
+)
+def test_a_plain_word_is_what_pygerber_reads(command: str, words: tuple[str, ...]) -> None:
+    """Polarity, mirroring and image polarity."""
+    told = language.token(command)
+    name = {"LP": "polarity", "LM": "mirroring", "IP": "image_polarity"}[command[:2]]
+    assert language.read_word(command, words) == getattr(told, name).value
+
+
+@given(st.sampled_from(["LR", "LS"]), st.decimals(0, 359, places=4).map(str))
+def test_a_plain_number_is_what_pygerber_reads(kind: str, number: str) -> None:
+    """Degrees and scale."""
+    told = language.token(kind + number)
+    assert language.read_number(kind + number) == float(
+        told.rotation if kind == "LR" else told.scaling
+    )
