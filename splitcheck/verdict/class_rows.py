@@ -45,9 +45,9 @@ def class_sentences(known: Known, judged: Collection[int]) -> tuple[str, ...]:
             if known_by[how]
         ]
         sentences.append(
-            f"{sum(named.values())} nets are judged by their class, known by {', '.join(by)}: "
-            f"{shown}{more}; rise times are the fast limits of the interfaces, and splitcheck.toml "
-            "can say otherwise."
+            f"{sum(named.values())} nets are judged, or exempt, by their class, known by "
+            f"{', '.join(by)}: {shown}{more}; rise times are the fast limits of the interfaces, "
+            "and splitcheck.toml can say otherwise."
         )
     return tuple(sentences)
 

@@ -162,10 +162,10 @@ def _layers(board: Board, planes: Sequence[Plane]) -> tuple[LayerRow, ...]:
 def _facts(board: Board) -> tuple[str, ...]:
     given = sum(1 for net in board.nets if net.given)
     marks = sum(layer.marks for layer in board.layers)
-    return (
-        f"{marks} marks on {len(board.layers)} copper layers",
-        f"{len(board.nets)} nets, {given} of them named by the files",
-    )
+    named = f"{len(board.nets)} nets, {given} of them named by the files"
+    if given < len(board.nets):
+        named += "; the others are called after a place on them, @L1(x,y): layer and mm"
+    return (f"{marks} marks on {len(board.layers)} copper layers", named)
 
 
 def _exempt(board: Board) -> tuple[Count, ...]:

@@ -6,12 +6,15 @@ from dataclasses import replace
 from pathlib import Path
 
 import pytest
+import shapely
 
 from fixtures.making.plan import BoardPlan, Trace
 from fixtures.making.write import write_board
 from splitcheck.road import Options, rank, read
 from splitcheck.verdict.findings import Report
+from splitcheck.verdict.summary import _facts
 from tests.making.boards import slotted_board, split_board
+from tests.making.hand import Line, Sheet, board
 
 
 def _report(plan: BoardPlan, folder: Path, *, job: bool = True) -> Report:
@@ -94,3 +97,17 @@ def test_boards_without_net_names_say_what_stands_for_them(tmp_path: Path) -> No
     )
     assert any(said.startswith("No file names the nets") for said in bare)
     assert not any(said.startswith("No file names the nets") for said in named)
+
+
+def test_names_made_from_places_are_explained_where_there_are_any() -> None:
+    """A reader who sees @L1(1.20,3.40) is told what it is; named boards are not bothered."""
+    sheets = [
+        Sheet((("GND", shapely.box(0, 0, 20, 20)),), (Line(name, ((2, 30), (18, 30))),))
+        for name in ("", "CLK")
+    ]
+    nameless, named = (_facts(board(sheet))[1] for sheet in sheets)
+    assert nameless == (
+        "2 nets, 1 of them named by the files; the others are called after a place on them,"
+        " @L1(x,y): layer and mm"
+    )
+    assert named == "2 nets, 2 of them named by the files"
