@@ -73,14 +73,17 @@ def courses(board: Board, tracks: Sequence[Tracks]) -> tuple[Course, ...]:
     places = _places(board, tracks)
     by_net: dict[int, _Graph] = defaultdict(lambda: defaultdict(list))
     for number, layer in enumerate(tracks):
-        ends, twice = places[number], set()
-        for piece, (one, other) in enumerate(ends.tolist()):
-            length = round(float(layer.length_mm[piece]), 6)
+        twice = set()
+        rows = zip(
+            places[number].tolist(), layer.length_mm.tolist(), layer.net.tolist(), strict=True
+        )
+        for piece, ((one, other), length_mm, net) in enumerate(rows):
+            length = round(length_mm, 6)
             key = (min(one, other), max(one, other), length)
             if one == other or key in twice:  # within a pad, or drawn twice
                 continue
             twice.add(key)
-            graph = by_net[int(layer.net[piece])]
+            graph = by_net[net]
             graph[one].append(_Edge(other, length, Step(number, piece, True)))
             graph[other].append(_Edge(one, length, Step(number, piece, False)))
     return tuple(course for net in sorted(by_net) for course in _of_net(net, by_net[net]))
@@ -129,7 +132,9 @@ def _in_pads(board: Board, at: Floats, net: Ints, layer: Ints) -> Iterator[tuple
         pads = np.array([pad.at for pad in copper.pads])
         for found in cKDTree(at[here]).query_ball_point(pads, reach):
             first: dict[int, int] = {}
-            for node in sorted(int(here[i]) for i in found):
+            if len(found) < 2:
+                continue
+            for node in sorted(here[found].tolist()):
                 other = first.setdefault(int(net[node]), node)
                 if other != node:
                     yield other, node

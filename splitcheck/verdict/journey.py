@@ -80,7 +80,7 @@ def journeys(
     place is that finding; others on the layer, for which it stands too, carry its id and add
     nothing more.
     """
-    ways = [carried(board, planes, layer) for layer in tracks]
+    tables = [_table(layer, carried(board, planes, layer)) for layer in tracks]
     by_net: dict[str, list[Finding]] = defaultdict(list)
     for finding in findings:
         by_net[finding.net].append(finding)
@@ -90,7 +90,7 @@ def journeys(
         grouped[board.nets[course.net].name].append(course)
     left_out = 0
     for name, own in sorted(grouped.items()):
-        lines = [_Line(course, tracks, ways) for course in own]
+        lines = [_Line(course, tables) for course in own]
         spots = _spots(board, lines, by_net[name])
         bare = tuple(finding for finding in by_net[name] if finding.kind == "no-plane")
         legs = [
@@ -113,25 +113,48 @@ def sum_nh(findings: Sequence[Finding]) -> float | None:
     return sum(known) if len(known) == len(added) else None
 
 
+class _Table(NamedTuple):
+    """Tracks and what carries their return, as lists: courses ask for single pieces."""
+
+    layer: int
+    ends: tuple[list[list[float]], list[list[float]]]
+    """Where each piece starts, and where it ends."""
+    length_mm: list[float]
+    first: list[int]
+    state: list[int]
+    carriers: tuple[tuple[Carrier, ...], ...]
+
+
+def _table(tracks: Tracks, way: Carried) -> _Table:
+    return _Table(
+        tracks.layer,
+        (tracks.start.tolist(), tracks.end.tolist()),
+        tracks.length_mm.tolist(),
+        way.first.tolist(),
+        way.state.tolist(),
+        way.carriers,
+    )
+
+
 class _Line:
     """A course with a measure along it."""
 
-    def __init__(self, course: Course, tracks: Sequence[Tracks], ways: Sequence[Carried]) -> None:
-        self.layers = np.array([tracks[step.tracks].layer for step in course.steps])
+    def __init__(self, course: Course, tables: Sequence[_Table]) -> None:
+        self.layers = np.array([tables[step.tracks].layer for step in course.steps])
         starts, ends, states, marks = [], [], [], [0.0]
         self.carriers: list[tuple[Carrier, ...]] = []
         known: dict[tuple[Carrier, ...], int] = {}
         layers = []
-        for step in course.steps:
-            layer, way = tracks[step.tracks], ways[step.tracks]
-            ends_of = (layer.start[step.piece], layer.end[step.piece])
-            starts.append(ends_of[0 if step.forward else 1])
-            ends.append(ends_of[1 if step.forward else 0])
-            looks = way.state[way.first[step.piece] : way.first[step.piece + 1]].tolist()
-            for state in looks if step.forward else looks[::-1]:
-                states.append(known.setdefault(way.carriers[state], len(known)))
-                layers.append(layer.layer)
-                marks.append(marks[-1] + float(layer.length_mm[step.piece]) / len(looks))
+        for number, piece, forward in course.steps:
+            table = tables[number]
+            starts.append(table.ends[0 if forward else 1][piece])
+            ends.append(table.ends[1 if forward else 0][piece])
+            looks = table.state[table.first[piece] : table.first[piece + 1]]
+            each_mm = table.length_mm[piece] / len(looks)
+            for state in looks if forward else looks[::-1]:
+                states.append(known.setdefault(table.carriers[state], len(known)))
+                layers.append(table.layer)
+                marks.append(marks[-1] + each_mm)
         self.carriers = list(known)
         self.start, self.end = np.array(starts), np.array(ends)
         lengths = np.hypot(*(self.end - self.start).T)
