@@ -15,6 +15,7 @@ from splitcheck.loops import solve as engine
 from splitcheck.loops.bridges import IslandGraph
 from splitcheck.loops.clusters import near_one_another
 from splitcheck.loops.estimate import Inductance
+from splitcheck.loops.foreseen import is_too_much
 from splitcheck.loops.openings import Openings
 from splitcheck.loops.spans import Spans
 from splitcheck.loops.stray import stray_db
@@ -187,7 +188,7 @@ class Fields:
         traces = [trace_over(task, plane) for task in tasks]
         lines = [trace.line for trace in traces]
         seen = self._openings.within(tasks, look.windows, lines, loose=look.loose)
-        if seen is None:
+        if seen is None or is_too_much(seen.gaps, lines, tasks[0].height_mm):
             return None
         cut = any(parts_islands(task) for task in tasks)
         window = look.windows.outer

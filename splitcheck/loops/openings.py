@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from shapely import LineString, MultiPolygon, Polygon
 
 from splitcheck.board.board import Board
+from splitcheck.loops.foreseen import FEW_CORNERS
 from splitcheck.loops.outlines import Ints
 from splitcheck.loops.tasks import Task, parts_islands
 from splitcheck.loops.windows import Windows, clipped, cut_ends, is_moderate
@@ -20,7 +21,9 @@ from splitcheck.units import Floats
 #: At most so many other gaps near the crossed one are looked at.
 MOST_NEIGHBOURS = 12
 #: Gaps with more corners than this in the window are not solved: the mesh would be too coarse.
-MOST_CORNERS = 5000
+MOST_CORNERS = 10000
+#: Gaps beside a crossed one that is ragged by itself may bring so many corners more.
+MORE_CORNERS = 1000
 #: Gaps smaller than the height do not matter unless this many heights near, or crossed.
 NEAR_HEIGHTS = 2.0
 #: Pieces of gaps smaller than this are rounding, mm^2.
@@ -109,16 +112,20 @@ class Openings:
         ends: list[shapely.Point] = []
         inner = None
         outside = outside_of(plane, windows.outer, cut=True) if apart else None
+        most = MOST_CORNERS
         for number in (crossed, *beside):
             gap = plane.gaps[number]
             far = number != crossed and not apart
-            cut = self._cut(plane, number, (windows.far, windows.outer)[not far :], gaps)
+            cut = self._cut(plane, number, (windows.far, windows.outer)[not far :], most)
             if cut is None and number == crossed:
                 return None
             if cut is None:
                 continue
             pieces, window = cut
             gaps.extend(pieces)
+            corners = corners_of(pieces)
+            ragged = number == crossed and corners > FEW_CORNERS
+            most = MORE_CORNERS if ragged else min(most, FEW_CORNERS) - corners
             if loose if number == crossed else gap.open:
                 ends.extend(cut_ends(pieces, window))
             if gap.open and not apart:
@@ -128,15 +135,15 @@ class Openings:
         return Seen(gaps, ends, inner, outside)
 
     def _cut(
-        self, plane: Plane, number: int, windows: Sequence[Polygon], beside: Sequence[Polygon]
+        self, plane: Plane, number: int, windows: Sequence[Polygon], most: int
     ) -> tuple[list[Polygon], Polygon] | None:
-        """What of a gap is in the first of some windows where it is not too ragged, and which."""
+        """What of a gap is in the first of some windows with no more corners, and in which."""
         gap = plane.gaps[number]
         if len(windows) > 1 and is_moderate(gap, self.hull_of(plane, number)):
             windows = [shapely.box(*gap.shape.bounds), *windows]
         for window in windows:
             pieces = polygons(self._free(plane, number, window))
-            if not too_ragged([*beside, *pieces]):
+            if corners_of(pieces) <= most:
                 return pieces, window
         return None
 
@@ -251,9 +258,9 @@ def outside_of(plane: Plane, window: Polygon, *, cut: bool) -> Polygon | None:
     return None if frame.contains_properly(window) else frame
 
 
-def too_ragged(gaps: Sequence[Polygon]) -> bool:
-    """Whether gaps have too many corners to be worth a solve."""
-    return int(shapely.get_num_coordinates(gaps).sum()) > MOST_CORNERS
+def corners_of(gaps: Sequence[Polygon]) -> int:
+    """How many corners gaps have."""
+    return int(shapely.get_num_coordinates(gaps).sum())
 
 
 def polygons(shape: shapely.Geometry) -> list[Polygon]:
