@@ -152,19 +152,31 @@ class _Search:
         if not first:
             return limit, None
         limits = [limit]
-        best: list[Patch] | None = None
-        while (patches := self.patches(first, clear_mm, min(limits[-1], widest))) is not None:
-            best = patches
-            if limits[-1] >= widest:
-                break
+        while limits[-1] < widest:
             limits.append(limits[-1] * WIDER)
-        if best is None:
+        last, patches = self._widest(limits, widest, clear_mm, first)
+        if patches is None:
             return limit, None
-        reach = min(limits[-1 if patches is not None else -2], widest)
-        found = _Graph(self, best, first).taut(reach)
+        found = _Graph(self, patches, first).taut(min(limits[last], widest))
         if found is None:
-            return (inf if patches is not None else limits[-1]), None
+            return (inf if limits[last] >= widest else limits[last + 1]), None
         return next(some for some in limits if some >= found[0] or some >= widest), found
+
+    def _widest(
+        self, limits: Sequence[float], widest: float, clear_mm: float, first: Sequence[int]
+    ) -> tuple[int, list[Patch] | None]:
+        """The last of some ellipses whose corners are not too many, and their patches."""
+        if all(self.terrain.is_plain(gap) for gap in first):  # most have few corners in all
+            patches = self.patches(first, clear_mm, widest)
+            if patches is not None:
+                return len(limits) - 1, patches
+        last, best = 0, None
+        for number, limit in enumerate(limits):
+            patches = self.patches(first, clear_mm, min(limit, widest))
+            if patches is None:
+                break
+            last, best = number, patches
+        return last, best
 
     def patches(self, gaps: Sequence[int], clear_mm: float, limit: float) -> list[Patch] | None:
         """Patches of gaps with corners in an ellipse; None if those are too many."""
