@@ -70,11 +70,12 @@ def _pads(drawing: Drawing) -> tuple[Pad, ...]:
             continue
         tag = mark.tag
         if isinstance(mark, Fill):
-            (x0, y0), (x1, y1) = np.min(mark.ring, axis=0), np.max(mark.ring, axis=0)
-            size = float(max(x1 - x0, y1 - y0))
+            xs, ys = zip(*mark.ring, strict=True)
+            x0, y0, x1, y1 = min(xs), min(ys), max(xs), max(ys)
+            size = max(x1 - x0, y1 - y0)
             if size > LARGEST_PAD_MM:
                 continue
-            at = (float(x0 + x1) / 2, float(y0 + y1) / 2)
+            at = ((x0 + x1) / 2, (y0 + y1) / 2)
             pads.append(Pad(at, tag.net, tag.component, tag.pin, tag.function, size, False))
             continue
         key = id(mark.shape)

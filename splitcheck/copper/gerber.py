@@ -151,7 +151,7 @@ class _Reader:
         found = self.numbers.points(digits)
         if found is None:
             return False
-        self.pen.lines_to([(x, y) for x, y in found.tolist()], newlines)
+        self.pen.lines_to(list(map(tuple, found.tolist())), newlines)
         self.operation = 1
         return True
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from itertools import pairwise
+from itertools import count, pairwise, repeat
 
 from splitcheck.copper import curves
 from splitcheck.copper.gerber_attributes import Attributes
@@ -46,6 +46,12 @@ class Pen:
         if self.region.corners is not None:
             self.region.draw(self.at, points)
             self.log.line += newlines
+        elif (width_mm := (self.tools.brush or self.tools.take()).diameter_mm) is not None:
+            tag = self.tools.tag or self.tools.make_tag()
+            ends = pairwise((self.at, *points))
+            rest = repeat(width_mm), repeat(None), repeat(self.dark), repeat(tag)
+            self.canvas.marks.extend(map(Stroke, ends, *rest, count(self.log.line)))
+            self.log.line += len(points) - 1
         else:
             for start, end in pairwise((self.at, *points)):
                 self._stroke((start, end))
