@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 
 import pytest
@@ -58,5 +59,11 @@ def test_best_proposal_does_what_it_says(walked: road.Walked, net: str, tmp_path
     assert measured is not None
     assert proposal.added_nh == pytest.approx(measured, rel=0.10, abs=0.003)
     assert finding.added_nh is None or measured < 0.95 * finding.added_nh
+    told = re.search(r"near it over this gap (\S+) nH left", proposal.words)
+    assert (told is not None) == (finding.kind == "split-crossing")  # the bus D0 to D7
+    if told is not None:
+        bus = [f.added_nh or 0.0 for f in after.report.findings if f.kind == "split-crossing"]
+        assert len(bus) == 8
+        assert float(told[1]) == pytest.approx(sum(bus), rel=0.10)
     before = {(f.net, f.kind) for f in walked.report.findings}
     assert {(f.net, f.kind) for f in after.report.findings} <= before

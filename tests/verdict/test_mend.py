@@ -235,14 +235,17 @@ def test_what_a_mend_leaves_for_all_nets_over_the_gap_is_said() -> None:
     before = sum(f.added_nh or 0.0 for f in judged.findings)
     assert float(told[2]) == pytest.approx(before, abs=0.006)
     holes = [via(*at) for at in best.at_mm]
-    after = judge(scene(made := _made(bus, slotted, whole, holes=holes)), *crossings(made))
+    made = _made(bus, slotted, whole, holes=holes)
+    after = judge(scene(made), *crossings(made))
     left = sum(f.added_nh or 0.0 for f in after.findings)
     assert float(told[1]) == pytest.approx(left, rel=1e-3, abs=0.006)
     assert left < 0.95 * before
     piece = next(p for p in _of(found, "copper") if "under all 4 nets" in p.words)
     assert "3 other nets" in piece.words
     closed = slotted.areas[0][1].union(Polygon(piece.at_mm))
-    after = judge(scene(made := _made(bus, Sheet((("GND", closed),)))), *crossings(made))
+    assert isinstance(closed, Polygon)
+    made = _made(bus, Sheet((("GND", closed),)))
+    after = judge(scene(made), *crossings(made))
     assert after.findings == ()
     assert piece.added_nh < 0.02
 
@@ -325,7 +328,8 @@ def test_a_plane_is_let_out_beneath_a_trace_along_its_edge() -> None:
     half = re.search(r"(\d+\.\d+) mm to either side", let_out.words)
     assert half is not None
     more = shapely.box(5, 10.1 - float(half[1]), 35, 10.1 + float(half[1]))
-    whole = shapely.union(plane.areas[0][1], more)
+    whole = plane.areas[0][1].union(more)
+    assert isinstance(whole, Polygon)
     drawn = _made(Sheet(lines=(_along_edge(10.1),)), Sheet((("GND", whole),)))
     runs = find_edge_runs(drawn, find_planes(drawn), lay_all(drawn, _nets(drawn), ()), 12.0)
     seen = replace(scene(drawn), min_nh=0.0)

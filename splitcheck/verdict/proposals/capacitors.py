@@ -138,10 +138,20 @@ def mounts_near(case: Case, start: Point, islands: tuple[Island, Island]) -> Ite
     lands = {
         ahead: _lands(case, islands, xs, ys, reach * np.array(ahead)) for ahead in ORIENTATIONS
     }
+    taken_by = {
+        (layer, ahead): _hopeless(case, islands, layer, xs, ys, np.array(ahead))
+        for layer in outer
+        for ahead in ORIENTATIONS
+    }
     for i, place in enumerate(zip(xs.tolist(), ys.tolist(), strict=True)):
         if any(hypot(place[0] - x, place[1] - y) < PLACES_APART_MM for x, y in taken):
             continue
-        ways = [(layer, ahead) for layer in outer for ahead in ORIENTATIONS if lands[ahead][i]]
+        ways = [
+            (layer, ahead)
+            for layer in outer
+            for ahead in ORIENTATIONS
+            if lands[ahead][i] and not taken_by[layer, ahead][i]
+        ]
         mounts = (_mount_at(case, place, layer, ahead, islands) for layer, ahead in ways)
         mount = next((mount for mount in mounts if mount is not None), None)
         if mount is not None:
@@ -163,6 +173,19 @@ def _lands(
         ids = np.array([each.id == island.id for each in plane.islands] + [False])
         on &= ids[found]
     return on
+
+
+def _hopeless(
+    case: Case, islands: tuple[Island, Island], layer: int, xs: Floats, ys: Floats, ahead: Floats
+) -> NDArray[np.bool_]:
+    """For each place whether other copper lies where a part's pads would: a quick look first."""
+    found = np.zeros(len(xs), dtype=np.bool_)
+    pad = PADS_APART_MM / 2 * ahead
+    half = min(PAD_SIDES_MM) / 2
+    for sign, island in zip((-1, 1), islands, strict=True):
+        places = xs + sign * pad[0], ys + sign * pad[1]
+        found |= case.room.hopeless(*places, layer, island.net_name, half)
+    return found
 
 
 def _mount_at(

@@ -52,7 +52,8 @@ def vias(case: Case) -> Iterator[Proposal]:
         pairs = [[one[0], other[0]] for one, other in [ends] if one and other]
     tried = [_valued(case, places) for places in pairs]
     helping = [each for each in tried if each[1] is not None]
-    if helping or not pairs:  # where two do not help, one of them does not
+    # where two do not help, one of them does not, and of two pairs that do one via leaves more
+    if len(helping) == 1 or not pairs:
         free = [(*one, *other) for one, other in zip(*sides, strict=True)]
         helping += [_valued(case, [spots[0]]) for spots in free if spots]
     best = best_of(shared for shared, _ in helping)
