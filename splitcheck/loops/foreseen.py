@@ -13,8 +13,8 @@ from shapely import LineString, Polygon
 _NEAR, _SLOPE, _FAR = 1.7, 0.9, 25.0
 #: Gaps with no more corners than this are always tried: they hardly ever are too many.
 FEW_CORNERS = 5000
-#: Of gaps with more corners on four boards, none that asked for less than this failed to be meshed,
-#: and 11 of 21 that asked for more did.
+#: Of gaps with up to 12000 corners on four boards, none that asked for less than 100 failed to be
+#: meshed, 11 that asked for more did, and took 0.2 to 0.5 s to fail.
 _MOST = 80.0
 
 
