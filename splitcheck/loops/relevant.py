@@ -144,7 +144,8 @@ def _joined(shapes: NDArray[np.object_]) -> NDArray[np.object_]:
     shapes = shapes[shapely.get_type_id(shapes) == shapely.GeometryType.POLYGON]
     # lines are close to their polygons, and need no answer of what lies inside
     tree = shapely.STRtree(shapes)
-    first, second = tree.query(shapely.buffer(shapely.envelope(shapes), 2 * _SNAP_MM))
+    reach = np.array([-2 * _SNAP_MM, -2 * _SNAP_MM, 2 * _SNAP_MM, 2 * _SNAP_MM])
+    first, second = tree.query(shapely.box(*(shapely.bounds(shapes) + reach).T))
     ahead = first < second
     first, second = first[ahead], second[ahead]
     shapely.prepare(shapes)
@@ -238,9 +239,9 @@ def _chosen(
     if not gaps or not lines:
         return [], [], 0.0
     shapes = np.array(gaps, dtype=object)
-    swaths = shapely.buffer(shapely.multilinestrings(list(lines)), 3 * height_mm, quad_segs=2)
-    shapely.prepare(swaths)
-    main = [int(k) for k in np.flatnonzero(shapely.intersects(swaths, shapes))]
+    bundle = shapely.multilinestrings(list(lines))
+    shapely.prepare(bundle)
+    main = [int(k) for k in np.flatnonzero(shapely.dwithin(bundle, shapes, 3 * height_mm))]
     if endless is not None and endless not in main:
         main.append(endless)
     others = np.setdiff1d(np.arange(len(gaps)), main)
@@ -264,7 +265,6 @@ def _chosen(
     # few panels are spent on them, so that a part of what they add is in doubt as well
     left = float(alone.sum() - 0.8 * weight[order].sum())
     chosen = [*main, *more]
-    bundle = shapely.multilinestrings(list(lines))
     apart = shapely.distance(shapes[chosen], bundle)
     size = np.hypot(*_extent(shapes[chosen]).T)
     whole = shapely.get_num_interior_rings(shapes[chosen]) == 0
