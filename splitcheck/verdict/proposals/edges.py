@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
+from itertools import pairwise
 from math import dist
 
 import numpy as np
@@ -49,6 +50,9 @@ HEIGHTS_BEYOND = (3.0, 5.0, 2.0, 1.0)
 LOOKED_AT_HEIGHTS = 12.0
 #: A move of less is not worth drawing, and none is longer, mm.
 SHIFTS_MM = (0.05, 10.0)
+#: If not the whole run, so many of its straight stretches are tried, none shorter than this, mm.
+MOST_STRETCHES = 3
+SHORTEST_MM = 2.0
 
 
 def find_edges(scene: Scene, tracks: Tracks) -> tuple[EdgeRun, ...]:
@@ -115,11 +119,20 @@ def inwards(case: Case) -> Iterator[Proposal]:
         return
     chain, ends = found
     height = case.scene.board.stack.height_mm(run.layer, run.plane)
-    for heights in HEIGHTS_WITHIN:
-        proposal = _moved(case, run, chain, ends, heights * height)
-        if proposal is not None:
-            yield proposal
-            return
+    for stretch in [ends, *_straight(chain, ends)]:
+        for heights in HEIGHTS_WITHIN:
+            proposal = _moved(case, run, chain, stretch, heights * height)
+            if proposal is not None:
+                yield proposal
+                return
+
+
+def _straight(chain: Chain, ends: tuple[float, float]) -> list[tuple[float, float]]:
+    """The longest straight stretches along the edge: there may be room for one, if not for all."""
+    along = [chain.line.project(shapely.Point(at)) for at in chain.line.coords]
+    inside = [min(max(s, ends[0]), ends[1]) for s in along]
+    pairs = sorted(pairwise(inside), key=lambda pair: pair[0] - pair[1])
+    return [pair for pair in pairs[:MOST_STRETCHES] if pair[1] - pair[0] > SHORTEST_MM]
 
 
 def _moved(
