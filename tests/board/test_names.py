@@ -34,8 +34,8 @@ def test_supplies(name: str) -> None:
 @pytest.mark.parametrize(
     "name",
     ["SDA", "CLK", "USB_D+", "GPIO12", "VSYNC", "VIDEO1", "LEGEND", "BACKGROUNDED", "D0", "V",
-     "5V_EN", "VCC_PG", "3V3_FB", "VBUS_DET", "PWR_LED", "PWR.RST", "Net-(R1-Pad1)", "Net-(U3-VIN+)",
-     "Net-(U3-VOUT)", "Net-(U3-VDD_EN)", "@L1(1.0,2.0)",
+     "5V_EN", "VCC_PG", "3V3_FB", "VBUS_DET", "PWR_LED", "PWR.RST", "Net-(R1-Pad1)",
+     "Net-(U3-VIN+)", "Net-(U3-VOUT)", "Net-(U3-VDD_EN)", "@L1(1.0,2.0)",
      ""],
 )  # fmt: skip
 def test_signals(name: str) -> None:

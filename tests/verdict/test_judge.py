@@ -368,12 +368,12 @@ def test_more_holes_to_the_other_plane_never_make_it_worse() -> None:
 
 def _strip(*holes: tuple[float, float]) -> Board:
     """A stripline over two splits 1 mm wide and the island of 1 mm between them, from 19 to 20."""
-    splits = shapely.union_all([shapely.box(x, -1, x + 1, 31) for x in (18.0, 20.0)])
+    splits = [shapely.box(x, -1, x + 1, 31) for x in (18.0, 20.0)]
     outer = [(x, y) for x in (17.0, 22.0) for y in (14.0, 16.0)]
     made = board(
         Sheet((("GND", WHOLE),)),
         Sheet(lines=(_across(),)),
-        _cut(splits),
+        _cut(*splits),
         holes=[via(x, y) for x, y in [*outer, *holes]],
         heights_mm=(0.6, 0.2),
         outline=WHOLE,
