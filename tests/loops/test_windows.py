@@ -18,7 +18,7 @@ from fixtures.making.plan import BoardPlan, Hole, Placing
 from fixtures.making.write import write_board
 from fixtures.tide_logger import tide_logger
 from splitcheck import road
-from splitcheck.loops import windows
+from splitcheck.loops import fields, windows
 from splitcheck.loops.windows import (
     BEYOND_MM,
     Windows,
@@ -214,3 +214,33 @@ def test_vias_that_the_solve_does_not_know_move_no_value(
     assert full.detour_mm < bare.detour_mm
     for other in (bare, full):
         assert other.added_nh == pytest.approx(demo["SDA"].added_nh, abs=demo["SDA"].error_nh)
+
+
+def test_a_closed_gap_cut_off_nearby_is_bracketed(monkeypatch: pytest.MonkeyPatch) -> None:
+    """A slot of 136 mm crossed near its end, by a window that holds a part of it only.
+
+    With flux that finds room without end beyond the window it reads 6 % high, with none 6 % low.
+    """
+    whole = box(0, 0, 120, 140)
+    slot = box(59.5, 2, 60.5, 138)
+    made = board(
+        Sheet(lines=(Line("CLK", ((2, 131), (118, 131))),)),
+        Sheet((("GND", whole.difference(slot)),)),
+        heights_mm=(0.2,),
+        outline=whole,
+    )
+    found, _ = crossings(made)
+    (wide,) = judge(scene(made), found, ()).findings
+    look_at = fields.Fields._look_at
+
+    def nearby(self: fields.Fields, *args: Any, narrow: bool) -> Any:
+        return look_at(self, *args, narrow=True) if narrow else None
+
+    monkeypatch.setattr(fields.Fields, "_look_at", nearby)
+    (near,) = judge(scene(made), found, ()).findings
+    assert (wide.method, near.method) == ("solved", "solved")
+    assert wide.added_nh is not None
+    assert near.added_nh is not None
+    assert near.error_nh is not None
+    assert near.added_nh == pytest.approx(wide.added_nh, rel=0.03)
+    assert 0.05 * wide.added_nh < near.error_nh < 0.3 * wide.added_nh
