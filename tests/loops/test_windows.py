@@ -225,7 +225,7 @@ def test_a_closed_gap_cut_off_nearby_is_bracketed(monkeypatch: pytest.MonkeyPatc
     slot = box(59.5, 2, 60.5, 138)
     made = board(
         Sheet(lines=(Line("CLK", ((2, 131), (118, 131))),)),
-        Sheet((("GND", whole.difference(slot)),)),
+        Sheet((("GND", Polygon(whole.exterior, [slot.exterior])),)),
         heights_mm=(0.2,),
         outline=whole,
     )
