@@ -21,12 +21,15 @@ from splitcheck.verdict.beside import estimate_beside, least_nh, straight_on, to
 from splitcheck.verdict.by_class import EXEMPT
 from splitcheck.verdict.edge_runs import COVERED
 from splitcheck.verdict.findings import Kind
+from splitcheck.verdict.lengthwise import opened
 from splitcheck.verdict.scene import Scene, Weighed
 
 #: From this ratio of length across the trace to length along it a closed gap is a slot.
 SLOT_RATIO = 2.5
 #: A trace this near the rim of a gap, as a share of its run, clips the gap rather than crosses it.
 EDGE_RATIO = 0.25
+#: Error of what a run adds along a rim, which is never straight, as a share.
+ALONG_ERROR = 0.4
 
 
 def weigh(scene: Scene, crossing: Crossing) -> Weighed | str:
@@ -102,16 +105,21 @@ def _round_gap(
     if not route.joined:
         return None
     height = scene.board.stack.height_mm
-    return estimate.added(
+    run = opened(scene, crossing)
+    value = estimate.added(
         (reach_mm(crossing, route, route.left), reach_mm(crossing, route, route.right)),
         (_bridge_nh(scene, crossing, route.left), _bridge_nh(scene, crossing, route.right)),
-        crossing.run_mm,
+        run.across_mm,
         height(crossing.layer, crossing.plane),
         crossing.width_mm,
         beyond_mm=None if beyond is None else height(crossing.plane, beyond),
         above_mm=None if other is None else height(crossing.plane, other),
         share=share,
     )
+    along = share**2 * run.along_nh
+    if value is None or not along:
+        return value
+    return Inductance(value.added_nh + along, value.error_nh + ALONG_ERROR * along)
 
 
 def _handed_over(
