@@ -201,6 +201,10 @@ def _finding(finding: Finding) -> Json:
         "fingerprint": finding.fingerprint,
         "reason": finding.reason,
         "proposals": [_proposal(proposal) for proposal in finding.proposals],
+        "misses": [
+            {"what": miss.what, "words": miss.words, "share": _to(4, miss.share)}
+            for miss in finding.misses
+        ],
     }
 
 

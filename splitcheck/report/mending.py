@@ -25,10 +25,11 @@ ISOLATION = (
     "the applicable product-safety standard, local code and a qualified engineer decide whether "
     "anything may."
 )
-NOTHING = (
-    "Nothing to propose: no via, capacitor, bridge of copper or move within reach has room and "
-    "takes away 5 % or more."
-)
+NOTHING = "Nothing to propose"
+NO_WAY = f"{NOTHING}: for a finding of this kind no way to mend is known here."
+TOO_LITTLE = " What takes away less than 5 % is not proposed."
+#: What a way to mend is called where it failed.
+WAYS = {"via": "vias", "capacitor": "capacitors", "copper": "copper", "move": "moving"}
 _NAME_CELLS = 40
 
 #: What makes two proposals the same: gap, kind and places.
@@ -90,7 +91,16 @@ def _finding(page: Page, finding: Finding, top: int, told: dict[_Key, str]) -> N
         _proposal(page, place, proposal, told.get(key))
         told.setdefault(key, f"the same as {finding.id}, {place}.")
     if not finding.proposals:
-        page.say(NOTHING)
+        page.say(_nothing(finding))
+
+
+def _nothing(finding: Finding) -> str:
+    """Why nothing is proposed: what was in the way of each way that was tried."""
+    if not finding.misses:
+        return NO_WAY
+    told = "; ".join(f"{WAYS[miss.what]}: {miss.words}" for miss in finding.misses)
+    valued = any(miss.share is not None for miss in finding.misses)
+    return f"{NOTHING}. {told[0].upper()}{told[1:]}.{TOO_LITTLE if valued else ''}"
 
 
 def _now(finding: Finding) -> str:

@@ -48,8 +48,8 @@ class Proposal:
 
     what: Literal["via", "capacitor", "copper", "move"]
     at_mm: tuple[Point, ...]
-    """Where: a via's place, both pads of a capacitor, the ends of a bridge of copper, or the ends
-    of the piece of trace to move."""
+    """Where: the places of vias, both pads of each capacitor, the ends of a bridge of copper or
+    the corners of a piece of copper, or the ends of the piece of trace to move."""
     words: str
     """One sentence for a person: what to put where, and how large."""
     added_nh: float
@@ -58,6 +58,18 @@ class Proposal:
     noise_mv: float
     isolation: bool
     """Whether the gap may be an isolation barrier: the two sides share no net and no bridge."""
+
+
+@dataclass(frozen=True, slots=True)
+class Miss:
+    """A way to mend a finding that was tried in vain, and why."""
+
+    what: Literal["via", "capacitor", "copper", "move"]
+    words: str
+    """What was in the way, or how little the best that was tried takes away."""
+    share: float | None = None
+    """The largest share of the added inductance that anything tried takes away, too small to be
+    proposed (below 0 it adds); None: nothing could be valued."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -116,6 +128,8 @@ class Finding:
     slot as a line."""
     proposals: tuple[Proposal, ...] = ()
     """What would mend it, best first; empty unless asked for."""
+    misses: tuple[Miss, ...] = ()
+    """If it was asked for and nothing would: each way that was tried, and why it fails."""
 
 
 @dataclass(frozen=True, slots=True)

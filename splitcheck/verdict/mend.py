@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import replace
-from math import dist
+from math import dist, floor
 
 import numpy as np
 
@@ -15,7 +15,7 @@ from splitcheck.planes.changes import find_changes
 from splitcheck.planes.crossings import Crossing, find_crossings
 from splitcheck.planes.tracks import Tracks, redrawn
 from splitcheck.verdict.around import LONG_RUN, exempt
-from splitcheck.verdict.findings import Finding, Proposal, Report
+from splitcheck.verdict.findings import Finding, Miss, Proposal, Report
 from splitcheck.verdict.plane_changes import Case as Change
 from splitcheck.verdict.plane_changes import change_findings, from_leaving, from_long_runs
 from splitcheck.verdict.proposals.capacitors import capacitors
@@ -53,7 +53,7 @@ def mend(
     Returns
     -------
     The report with proposals, those that leave least first; a finding that nothing here helps
-    keeps none.
+    keeps none, and says of each way why.
 
     Raises
     ------
@@ -67,9 +67,7 @@ def mend(
     wanted = _known(report, ids)
     room = Room(scene.board, scene.planes)
     findings = tuple(
-        replace(finding, proposals=proposals_for(finding, tracks, scene, judged, room))
-        if finding.id in wanted
-        else finding
+        mended(finding, tracks, scene, judged, room) if finding.id in wanted else finding
         for finding in report.findings
     )
     return replace(report, findings=findings)
@@ -86,20 +84,48 @@ def _known(report: Report, ids: Iterable[str]) -> frozenset[str]:
     return wanted
 
 
-def proposals_for(
+def mended(
     finding: Finding, tracks: Sequence[Tracks], scene: Scene, judged: Judged, room: Room
-) -> tuple[Proposal, ...]:
-    """What would mend one finding, best first; empty for kinds that nothing here helps."""
+) -> Finding:
+    """One finding with what would mend it, best first, or with why each way fails.
+
+    Both are empty for kinds that nothing here helps.
+    """
     case = _case(finding, tracks, scene, judged, room)
     if case is None:
-        return ()
+        return finding
     kept: list[Proposal] = []
+    misses: list[Miss] = []
     for way in _ways(case):
-        kept.extend(sorted(way(case), key=_best_first)[:MOST_OF_A_KIND])
-    return tuple(sorted(kept, key=_best_first))
+        found = tuple(way(case))
+        proposals = (each for each in found if isinstance(each, Proposal))
+        kept.extend(sorted(proposals, key=_best_first)[:MOST_OF_A_KIND])
+        misses.extend(each for each in found if isinstance(each, Miss))
+    if kept:
+        return replace(finding, proposals=tuple(sorted(kept, key=_best_first)))
+    kinds = dict.fromkeys(miss.what for miss in misses)
+    told = tuple(_told([miss for miss in misses if miss.what == kind]) for kind in kinds)
+    return replace(finding, misses=told)
 
 
-def _ways(case: Case) -> tuple[Callable[[Case], Iterator[Proposal]], ...]:
+def _told(misses: Sequence[Miss]) -> Miss:
+    """All misses of one kind in one: the best that was valued, else what was in the way."""
+    shares = [miss.share for miss in misses if miss.share is not None]
+    what, best = misses[0].what, max(shares, default=None)
+    if best is None:
+        return Miss(what, " and ".join(dict.fromkeys(miss.words for miss in misses)))
+    # rounded down: what is not proposed must not read as much as what is
+    percent = floor(best * 1000) / 10
+    if len(shares) == 1:
+        few = "the one tried takes away only"
+        none = "the one tried takes away less than 0.1 %"
+    else:
+        few = f"{len(shares)} tried, the best takes away only"
+        none = f"{len(shares)} tried, each takes away less than 0.1 %"
+    return Miss(what, f"{few} {percent:g} %" if percent > 0 else none, best)
+
+
+def _ways(case: Case) -> tuple[Callable[[Case], Iterator[Proposal | Miss]], ...]:
     if case.item is not None and case.item.crossing.aside_mm:
         return (copper,)
     if case.item is not None:

@@ -26,7 +26,7 @@ from splitcheck.planes.tracks import lay_all
 from splitcheck.verdict.edge_runs import edge_findings
 from splitcheck.verdict.findings import Finding, Proposal
 from splitcheck.verdict.judge import judge
-from splitcheck.verdict.mend import mend, proposals_for
+from splitcheck.verdict.mend import mend, mended
 from splitcheck.verdict.proposals.room import Room
 from splitcheck.verdict.scene import Judged, Scene
 from tests.making.hand import Line, Sheet, board, crossings, scene, via
@@ -61,12 +61,20 @@ def _made(*sheets: Sheet, holes: Sequence[Hole] = ()) -> Board:
 
 def _seen(made: Board, seen: Scene | None = None) -> tuple[Judged, tuple[Proposal, ...]]:
     """What is judged, and what would mend the worst of it."""
+    judged, worst = _looked_at(made, seen)
+    assert bool(worst.proposals) != bool(worst.misses)
+    assert all(miss.share is None or miss.share < 0.05 for miss in worst.misses)
+    return judged, worst.proposals
+
+
+def _looked_at(made: Board, seen: Scene | None = None, net: str = "") -> tuple[Judged, Finding]:
+    """What is judged, and the worst of it, or of a net, with what would mend it or why not."""
     seen = seen or scene(made)
     judged = judge(seen, *crossings(made), changes=changes(made), edges=_edges(made))
     tracks = lay_all(made, judged_nets(made, reference_nets(made)), ())
-    worst = judged.findings[0]
+    worst = next(finding for finding in judged.findings if net in {"", finding.net})
     room = Room(made, seen.planes)
-    return judged, proposals_for(worst, tracks, seen, judged, room)
+    return judged, mended(worst, tracks, seen, judged, room)
 
 
 def _edges(made: Board) -> tuple[EdgeRun, ...]:
@@ -452,6 +460,80 @@ def test_no_proposal_adds_and_the_best_comes_first(
     assert all(one.added_nh <= other.added_nh + 1e-4 for one, other in pairwise(found))
     kinds = [proposal.what for proposal in found]
     assert max((kinds.count(kind) for kind in kinds), default=0) <= 2
+
+
+#: 1 mm wide, 14 mm long: its ends are 6.5 and 7.5 mm from a trace at y 14.5.
+LONG = shapely.box(19.5, 8, 20.5, 22)
+#: Two traces past either end, so near that none fits beyond it nor between.
+STUBS = tuple(Line(f"N{y}", ((17, y), (23, y))) for y in (7.1, 7.7, 22.3, 22.9))
+LEAK = Line("LEAK", ((20, 8.2), (20, 21.8)))
+
+
+def _stuck(*beyond: Sheet, leak: bool = True, holes: Sequence[Hole] = ()) -> Finding:
+    """A trace over a slot that a foreign trace fills, with foreign traces past its ends."""
+    slotted = replace_lines(_plane(LONG), *([LEAK] if leak else []))
+    top = Sheet(lines=(_across(14.5), *STUBS))
+    heights = (0.2, 3.0)[: len(beyond) + 1]
+    made = board(top, slotted, *beyond, holes=holes, heights_mm=heights, outline=WHOLE)
+    return _looked_at(made, net="CLK")[1]
+
+
+def test_where_nothing_has_room_each_way_says_why() -> None:
+    """One plane, a trace in the slot, and traces past its ends.
+
+    By hand: past an end the trace lies 1 height (0.2 mm) and half its width (0.1 mm) beyond, 7.8 or
+    6.8 mm from where it is; a foreign trace's middle 0.4 mm off is as near as it may come (two half
+    widths, 0.2 mm clear), which leaves 7.4 or 6.4 mm: 7.25 or 6.25 in steps of 0.25.
+    """
+    told = {miss.what: miss.words for miss in _stuck().misses}
+    assert told["via"] == "no other plane of GND within 6 mm that the return could use"
+    assert told["capacitor"] == "both sides are one net, GND"
+    assert told["copper"] == "other nets' copper, holes or the outline leave no way across"
+    up, down = told["move"].split(" and ")
+    assert up == "needs 7.80 mm towards +y, free room 7.25 mm"
+    assert down == "needs 6.80 mm towards -y, free room 6.25 mm"
+    assert all(miss.share is None for miss in _stuck().misses)
+
+
+def test_where_something_helps_no_way_is_told_to_have_failed() -> None:
+    """The twin of the above: without the trace in the slot copper closes it."""
+    helped = _stuck(leak=False)
+    assert [proposal.what for proposal in helped.proposals] == ["copper"]
+    assert helped.misses == ()
+
+
+def test_where_nothing_helps_enough_the_best_says_how_little(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """A plane beyond, stitched beside the trace already: more vias take away hardly anything.
+
+    Without a threshold the same vias are proposed, and the share is that of what they leave.
+    """
+    holes = [via(x, y) for x in (19.2, 20.8) for y in (13.8, 15.2)]
+    stuck = _stuck(_plane(), holes=holes)
+    assert stuck.proposals == ()
+    (vias,) = (miss for miss in stuck.misses if miss.what == "via")
+    assert vias.share is not None
+    assert 0.0 < vias.share < 0.05
+    said = re.fullmatch(r"2 tried, the best takes away only (\d+\.\d) %", vias.words)
+    assert said is not None
+    assert 0.0 <= 100 * vias.share - float(said[1]) < 0.1
+    monkeypatch.setattr("splitcheck.verdict.proposals.case.LEAST_GAIN", 0.0)
+    best = _of(_stuck(_plane(), holes=holes).proposals, "via")[0]
+    assert stuck.added_nh is not None
+    assert vias.share == pytest.approx(1.0 - best.added_nh / stuck.added_nh)
+
+
+def test_sides_of_two_nets_are_told_of_copper() -> None:
+    """Both outer layers are full: no part has room, copper would be a short."""
+    _, full = _looked_at(_made(_full("N"), _split("GND", "VCC"), _full("M")))
+    told = {miss.what: miss.words for miss in full.misses}
+    assert told["copper"] in {
+        "the sides are of two nets, GND and VCC",
+        "the sides are of two nets, VCC and GND",
+    }
+    assert told["capacitor"].startswith("no room for its pads and vias within 10 mm")
+    assert told["move"].startswith("the gap parts its plane in two")
 
 
 def test_same_board_same_proposals() -> None:

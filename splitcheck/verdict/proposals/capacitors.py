@@ -17,7 +17,7 @@ from splitcheck.loops.mounted import STRIP_MM, mounted_nh
 from splitcheck.loops.ways import heading
 from splitcheck.planes.islands import Island
 from splitcheck.units import Floats
-from splitcheck.verdict.findings import Point, Proposal
+from splitcheck.verdict.findings import Miss, Point, Proposal
 from splitcheck.verdict.proposals.case import Case, Shared, best_of, worth_with_neighbours
 from splitcheck.verdict.proposals.room import HOLE_MM, PAD_MM
 from splitcheck.verdict.proposals.vias import circles
@@ -56,7 +56,7 @@ class Mount(NamedTuple):
     """Its inductance as mounted."""
 
 
-def capacitors(case: Case) -> Iterator[Proposal]:
+def capacitors(case: Case) -> Iterator[Proposal | Miss]:
     """Propose a capacitor beside the trace, nearest places first.
 
     Where one leaves more than a note, two are tried: one on either side of the trace, or of all
@@ -64,10 +64,14 @@ def capacitors(case: Case) -> Iterator[Proposal]:
     """
     one, other = case.islands
     if one.id == other.id or one.net_name == other.net_name:
+        yield Miss("capacitor", f"both sides are one net, {one.net_name}")
         return
     left, right = _mounts(case, 1), _mounts(case, -1)
     if not left and not right:
         left = list(mounts_near(case, case.crossing.at, case.islands))
+    if not left and not right:
+        within = f"within {FARTHEST_MM:g} mm along the gap"
+        yield Miss("capacitor", f"no room for its pads and vias {within}")
     singles = (left[:1] + _apart(left[:1], right))[:2] if left and right else left + right
     tried = [_valued(case, [mount]) for mount in singles]
     best = best_of(shared for shared, _ in tried)
@@ -75,7 +79,7 @@ def capacitors(case: Case) -> Iterator[Proposal]:
         shared, proposal = _valued(case, singles)
         if best is None or shared.gains_on(best):
             tried.append((shared, proposal))
-    yield from (proposal for _, proposal in tried if proposal is not None)
+    yield from (told for _, told in tried)
 
 
 def _apart(left: Sequence[Mount], right: Sequence[Mount]) -> list[Mount]:
@@ -92,7 +96,7 @@ def _apart(left: Sequence[Mount], right: Sequence[Mount]) -> list[Mount]:
     ]
 
 
-def _valued(case: Case, mounts: Sequence[Mount]) -> tuple[Shared, Proposal | None]:
+def _valued(case: Case, mounts: Sequence[Mount]) -> tuple[Shared, Proposal | Miss]:
     """Capacitors in some places: what they leave, and the proposal if they gain."""
     one, other = case.islands
     graph = with_mounts(case.scene.graph, one, other, mounts)

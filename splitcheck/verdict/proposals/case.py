@@ -21,7 +21,7 @@ from splitcheck.planes.islands import Island, Plane
 from splitcheck.planes.tracks import Tracks, redrawn
 from splitcheck.units import segments
 from splitcheck.verdict.bare import OWN_END_MM, bare_findings
-from splitcheck.verdict.findings import Finding, Point, Proposal
+from splitcheck.verdict.findings import Finding, Miss, Point, Proposal
 from splitcheck.verdict.judge import value_again, value_together
 from splitcheck.verdict.plane_changes import Case as Change
 from splitcheck.verdict.proposals.room import Room
@@ -121,13 +121,15 @@ class Case:
 
     def proposal(
         self, what: str, at_mm: Sequence[Point], words: str, worth: Worth | None
-    ) -> Proposal | None:
-        """The proposal if it gains enough, else None."""
+    ) -> Proposal | Miss:
+        """The proposal if it gains enough, else how little it gains."""
         if worth is None:
-            return None
+            lost = "what was tried leaves no way back"
+            return Miss(what, lost)  # type: ignore[arg-type]  # as below
         before = self.finding.added_nh
         if before is not None and worth.added_nh > (1.0 - LEAST_GAIN) * before:
-            return None
+            share = 1.0 - worth.added_nh / before if before else 0.0
+            return Miss(what, "takes away too little", share)  # type: ignore[arg-type]  # as below
         return Proposal(
             what=what,  # type: ignore[arg-type]  # a word of Proposal, from this package alone
             at_mm=tuple((round(x, 4), round(y, 4)) for x, y in at_mm),
@@ -150,6 +152,11 @@ class Case:
         parts = over_parts(self.scene.graph)
         both = nx.compose(nx.Graph(self.scene.graph.edges), nx.Graph(parts.edges))
         return not (one.id in both and other.id in both and nx.has_path(both, one.id, other.id))
+
+
+def telling(misses: Sequence[Miss]) -> Sequence[Miss]:
+    """Of what failed one after the other, each asking less: what was valued, else the last."""
+    return [miss for miss in misses if miss.share is not None] or misses[-1:]
 
 
 def with_plane(scene: Scene, plane: Plane) -> Scene:

@@ -11,8 +11,8 @@ from shapely import LineString, Polygon
 from splitcheck.planes.crossings import Crossing
 from splitcheck.planes.islands import Plane
 from splitcheck.planes.patched import patched
-from splitcheck.verdict.findings import Proposal
-from splitcheck.verdict.proposals.case import Case, with_all, with_plane, worth_after
+from splitcheck.verdict.findings import Miss, Proposal
+from splitcheck.verdict.proposals.case import Case, telling, with_all, with_plane, worth_after
 from splitcheck.verdict.proposals.moves import way_in_words
 from splitcheck.verdict.proposals.room import CLEAR_MM
 
@@ -28,24 +28,32 @@ ONTO_MM = 0.3
 REACH_MM = 2.0
 #: Copper for all nets over a gap is looked at for so many of them.
 MOST_NETS = 16
+IN_THE_WAY = "other nets' copper, holes or the outline leave no way across"
 
 
-def copper(case: Case) -> Iterator[Proposal]:
+def copper(case: Case) -> Iterator[Proposal | Miss]:
     """Propose the narrowest bridge that leaves hardly more than a wider one."""
     found = _over_bare(case) if case.item is None else _over_gap(case)
     best: Proposal | None = None
+    misses: list[Miss] = []
     for proposal in found:
+        if isinstance(proposal, Miss):
+            misses.append(proposal)
+            continue
         if best is None or proposal.added_nh < best.added_nh - WORTH_WIDENING_NH:
             best = proposal
         if best.added_nh <= WORTH_WIDENING_NH:
             break
     if best is not None:
         yield best
+    else:
+        yield from telling(misses)
 
 
-def _over_gap(case: Case) -> Iterator[Proposal]:
+def _over_gap(case: Case) -> Iterator[Proposal | Miss]:
     one, other = case.islands
     if one.net_name != other.net_name:
+        yield Miss("copper", f"the sides are of two nets, {one.net_name} and {other.net_name}")
         return
     crossing = case.crossing
     line = _over(crossing)
@@ -59,10 +67,9 @@ def _over_gap(case: Case) -> Iterator[Proposal]:
             ),
             line,
         )
-        if patch is None:
-            continue
-        plane = patched(case.plane, sorted(set(crossing.islands)), patch)
+        plane = None if patch is None else patched(case.plane, sorted({*crossing.islands}), patch)
         if plane is None:
+            yield Miss("copper", IN_THE_WAY)
             continue
         scene = with_plane(case.scene, plane)
         worth = worth_after(case, scene, case.tracks, line)
@@ -72,12 +79,10 @@ def _over_gap(case: Case) -> Iterator[Proposal]:
             f"under the trace from x {x0:.2f} y {y0:.2f} to x {x1:.2f} y {y1:.2f}, "
             f"{CLEAR_MM:g} mm clear of other nets"
         )
-        proposal = case.proposal("copper", ((x0, y0), (x1, y1)), words, worth)
-        if proposal is not None:
-            yield proposal
+        yield case.proposal("copper", ((x0, y0), (x1, y1)), words, worth)
 
 
-def copper_for_all(case: Case) -> Iterator[Proposal]:
+def copper_for_all(case: Case) -> Iterator[Proposal | Miss]:
     """Propose one piece of copper that closes the gap under all the traces over it nearby."""
     one, other = case.islands
     many = len(case.neighbours) + 1
@@ -108,9 +113,7 @@ def copper_for_all(case: Case) -> Iterator[Proposal]:
         f"copper of {one.net_name} on {case.layer_name(crossing.plane)} under all {many} nets that "
         f"cross here, within {way_in_words(places)}, {CLEAR_MM:g} mm clear of other nets"
     ) + with_all(case, [worth.added_nh, *(None if w is None else w.added_nh for w in left)])
-    proposal = case.proposal("copper", places, words, worth)
-    if proposal is not None:
-        yield proposal
+    yield case.proposal("copper", places, words, worth)
 
 
 def _over(crossing: Crossing) -> LineString:
@@ -152,35 +155,36 @@ def cleared(case: Case, patch: shapely.Geometry, layer: int, net: str) -> shapel
     return free.buffer(-half, join_style="mitre").buffer(half, join_style="mitre")
 
 
-def _over_bare(case: Case) -> Iterator[Proposal]:
+def _over_bare(case: Case) -> Iterator[Proposal | Miss]:
     """Plane of the nearest island's net along the bare trace, layer by layer, nearest first."""
     bare = case.bare_spans()
     if not bare:
+        yield Miss("copper", "no stretch of trace without a plane to draw one under")
         return
     lines = shapely.union_all([LineString(span) for span in bare])
     own = case.tracks.layer
     layers = sorted(case.scene.planes, key=lambda n: (abs(n - own), n))
+    if not set(layers) - {own}:
+        yield Miss("copper", "no other layer has a plane to let out under the trace")
     for layer in [n for n in layers if n != own][:2]:
         plane = case.scene.planes[layer]
         for width in WIDTHS_MM[1:]:
-            proposal = _poured(case, plane, lines, width)
-            if proposal is not None:
-                yield proposal
+            yield _poured(case, plane, lines, width)
 
 
-def _poured(case: Case, plane: Plane, lines: shapely.Geometry, width: float) -> Proposal | None:
+def _poured(case: Case, plane: Plane, lines: shapely.Geometry, width: float) -> Proposal | Miss:
     near = [
         (round(island.shape.distance(lines), 6), number)
         for number, island in enumerate(plane.islands)
     ]
     far, number = min(near)
     if far > REACH_MM:
-        return None
+        return Miss("copper", f"no plane begins within {REACH_MM:g} mm of the trace")
     island = plane.islands[number]
     grown = shapely.buffer(lines, width / 2 + far, quad_segs=4, join_style="mitre")
     plane_after = patched(plane, [number], cleared(case, grown, plane.layer, island.net_name))
     if plane_after is None:
-        return None
+        return Miss("copper", "other nets' copper, holes or the outline leave no room")
     worth = worth_after(case, with_plane(case.scene, plane_after), case.tracks, lines)
     x0, y0, x1, y1 = shapely.bounds(lines).tolist()
     wide = width + 2 * far

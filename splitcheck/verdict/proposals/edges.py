@@ -18,11 +18,12 @@ from splitcheck.planes.patched import patched
 from splitcheck.planes.tracks import Tracks
 from splitcheck.units import Floats
 from splitcheck.verdict.edge_runs import edge_findings
-from splitcheck.verdict.findings import Proposal
+from splitcheck.verdict.findings import Miss, Proposal
 from splitcheck.verdict.proposals.case import (
     NOTHING,
     Case,
     Worth,
+    telling,
     together,
     with_plane,
     worth_after,
@@ -53,6 +54,7 @@ SHIFTS_MM = (0.05, 10.0)
 #: If not the whole run, so many of its straight stretches are tried, none shorter than this, mm.
 MOST_STRETCHES = 3
 SHORTEST_MM = 2.0
+BRANCHES = "the trace branches all along the edge"
 
 
 def find_edges(scene: Scene, tracks: Tracks) -> tuple[EdgeRun, ...]:
@@ -111,20 +113,24 @@ def _chain(case: Case, run: EdgeRun) -> tuple[Chain, tuple[float, float]] | None
     return None
 
 
-def inwards(case: Case) -> Iterator[Proposal]:
+def inwards(case: Case) -> Iterator[Proposal | Miss]:
     """Propose the trace moved inwards, as far as there is room up to some heights."""
     run = _run(case)
     found = None if run is None else _chain(case, run)
     if run is None or found is None:
+        yield Miss("move", BRANCHES)
         return
     chain, ends = found
     height = case.scene.board.stack.height_mm(run.layer, run.plane)
+    misses: list[Miss] = []
     for stretch in [ends, *_straight(chain, ends)]:
         for heights in HEIGHTS_WITHIN:
             proposal = _moved(case, run, chain, stretch, heights * height)
-            if proposal is not None:
+            if isinstance(proposal, Proposal):
                 yield proposal
                 return
+            misses.append(proposal)
+    yield from telling(misses)
 
 
 def _straight(chain: Chain, ends: tuple[float, float]) -> list[tuple[float, float]]:
@@ -137,16 +143,17 @@ def _straight(chain: Chain, ends: tuple[float, float]) -> list[tuple[float, floa
 
 def _moved(
     case: Case, run: EdgeRun, chain: Chain, ends: tuple[float, float], within_mm: float
-) -> Proposal | None:
+) -> Proposal | Miss:
     shift_mm = on_grid(within_mm - float(run.inside_mm.min()))
     if not SHIFTS_MM[0] <= shift_mm <= SHIFTS_MM[1]:
-        return None
+        least, most = SHIFTS_MM
+        return Miss("move", f"no shift of {least:g} to {most:g} mm brings it farther within")
     there = carried(chain.line, ends, shift_mm * _inward(case, run))
     line = LineString(there)
     shape = line.buffer(run.width_mm / 2, quad_segs=4)
     opened = case.room.openings(shape, run.layer, case.finding.net)
     if opened is None or not line.is_simple:
-        return None
+        return Miss("move", f"no room {shift_mm:.2f} mm farther within")
     tracks = moved_tracks(case, chain, there)
     worth = _after(case, case.scene, tracks, LineString(there[1:-1]))
     words = (
@@ -168,23 +175,27 @@ def _inward(case: Case, run: EdgeRun) -> Floats:
     return across if far[0] >= far[1] else -across
 
 
-def widened(case: Case) -> Iterator[Proposal]:
+def widened(case: Case) -> Iterator[Proposal | Miss]:
     """Propose more plane beyond the trace, as far out as the outline and other nets let it."""
     run = _run(case)
     found = None if run is None else _chain(case, run)
     if run is None or found is None:
+        yield Miss("copper", BRANCHES)
         return
     chain, ends = found
     height = case.scene.board.stack.height_mm(run.layer, run.plane)
+    misses: list[Miss] = []
     line = LineString(substring(chain.line, *ends).coords)
     for heights in HEIGHTS_BEYOND:
         proposal = _poured(case, run, line, heights * height + run.width_mm / 2)
-        if proposal is not None:
+        if isinstance(proposal, Proposal):
             yield proposal
             return
+        misses.append(proposal)
+    yield from telling(misses)
 
 
-def _poured(case: Case, run: EdgeRun, line: LineString, half_mm: float) -> Proposal | None:
+def _poured(case: Case, run: EdgeRun, line: LineString, half_mm: float) -> Proposal | Miss:
     plane = case.scene.planes[run.plane]
     island = plane.islands[run.island]
     half_mm = on_grid(half_mm)
@@ -192,7 +203,7 @@ def _poured(case: Case, run: EdgeRun, line: LineString, half_mm: float) -> Propo
     new = cleared(case, grown, plane.layer, island.net_name)
     after = patched(plane, [run.island], new)
     if after is None:
-        return None
+        return Miss("copper", "other nets' copper, holes or the outline leave no room for plane")
     worth = _after(case, with_plane(case.scene, after), case.tracks, line)
     places = corners(line)
     words = (

@@ -16,8 +16,8 @@ from shapely.ops import substring
 from splitcheck.loops.ways import heading
 from splitcheck.planes.tracks import Tracks, redrawn
 from splitcheck.units import Floats, segments
-from splitcheck.verdict.findings import Point, Proposal
-from splitcheck.verdict.proposals.case import Case, worth_after
+from splitcheck.verdict.findings import Miss, Point, Proposal
+from splitcheck.verdict.proposals.case import Case, telling, worth_after
 
 #: A trace is not moved farther than this, mm.
 FARTHEST_MM = 10.0
@@ -26,23 +26,30 @@ FARTHEST_MM = 10.0
 HEIGHTS_BEYOND = (5.0, 2.0, 1.0)
 #: The piece that is moved begins and ends one of these far beyond the gap, mm.
 ROOMS_MM = (1.0, 1.5, 2.0, 3.0, 4.0)
+#: Room for a move is looked at in steps of this, mm.
+ROOM_STEP_MM = 0.25
+#: A direction is along one axis alone if less than this is along the other: sin 22.5 degrees.
+SIN_EIGHTH = 0.383
 #: A path lies along a piece of trace from this much in common on, mm.
 ALONG_MM = 5e-3
 #: Lengths are rounded up to this, mm.
 GRID_MM = 0.05
 
 
-def moves(case: Case) -> Iterator[Proposal]:
+def moves(case: Case) -> Iterator[Proposal | Miss]:
     """Propose the shortest move to either side that leaves the gap behind and has room."""
     if case.islands[0].id != case.islands[1].id:
+        yield Miss("move", "the gap parts its plane in two, there is no end to go round")
         return
     chain = chain_over(case.tracks, LineString(case.crossing.path))
     if chain is None:
+        yield Miss("move", "the trace branches or ends over the gap")
+        return
+    if _ends(case, chain.line, (ROOMS_MM[0], ROOMS_MM[0])) is None:
+        yield Miss("move", f"the trace ends or branches within {ROOMS_MM[0]:g} mm of the gap")
         return
     for side in (1, -1):
-        proposal = _moved(case, chain, side)
-        if proposal is not None:
-            yield proposal
+        yield from _moved(case, chain, side)
 
 
 class Chain(NamedTuple):
@@ -89,21 +96,54 @@ def _node_at(tracks: Tracks, piece: int, node: int) -> Point:
     return _place(ends[int(tracks.nodes[piece, 1] == node)][piece])
 
 
-def _moved(case: Case, chain: Chain, side: int) -> Proposal | None:
+def _moved(case: Case, chain: Chain, side: int) -> Sequence[Proposal | Miss]:
     crossing = case.crossing
     height = case.scene.board.stack.height_mm(crossing.layer, crossing.plane)
     ahead = _ahead(case, chain.line)
     aside = np.array([-ahead[1] * side, ahead[0] * side])
+    misses: list[Miss] = []
     for heights in HEIGHTS_BEYOND:
         beyond = heights * height + crossing.width_mm / 2
         shift = _shift_mm(case, ahead, aside, beyond)
         if shift > FARTHEST_MM:
+            where = f"more than {FARTHEST_MM:g} mm {towards(aside)}"
+            misses.append(Miss("move", f"the gap reaches {where}"))
             continue
         free = _free(case, chain, aside * shift)
-        found = None if free is None else _valued(case, chain, shift, *free)
-        if found is not None:
-            return found
-    return None
+        if free is None:
+            room = _room_mm(case, chain, aside, shift)
+            needed = f"needs {shift:.2f} mm {towards(aside)}"
+            free_room = f"free room {room:.2f} mm" if room else "no free room"
+            misses.append(Miss("move", f"{needed}, {free_room}"))
+            continue
+        found = _valued(case, chain, shift, *free)
+        if isinstance(found, Proposal):
+            return [found]
+        misses.append(found)
+    return telling(misses)
+
+
+def _room_mm(case: Case, chain: Chain, aside: Floats, most_mm: float) -> float:
+    """How far aside there is room, up to where there is none, in steps; mm."""
+    room = 0.0
+    for shift in np.arange(ROOM_STEP_MM, most_mm, ROOM_STEP_MM).tolist():
+        if _free(case, chain, aside * shift) is None:
+            break
+        room = shift
+    return room
+
+
+def towards(aside: Floats) -> str:
+    """A direction as the board's axes have it, to an eighth of a turn.
+
+    Examples
+    --------
+    >>> towards(np.array([0.0, -1.0])), towards(np.array([-0.7, 0.7]))
+    ('towards -y', 'towards -x +y')
+    """
+    named = zip("xy", aside.tolist(), strict=True)
+    axes = [f"{'+' if part > 0 else '-'}{axis}" for axis, part in named if abs(part) > SIN_EIGHTH]
+    return f"towards {' '.join(axes)}"
 
 
 def _ahead(case: Case, line: LineString) -> Floats:
@@ -195,7 +235,7 @@ def _ends(case: Case, line: LineString, rooms: tuple[float, float]) -> tuple[flo
 
 def _valued(
     case: Case, chain: Chain, shift_mm: float, there: tuple[Point, ...], opened: tuple[str, ...]
-) -> Proposal | None:
+) -> Proposal | Miss:
     """The trace moved, if it gains."""
     tracks = moved_tracks(case, chain, there)
     worth = worth_after(case, case.scene, tracks, LineString(there[1:-1]))

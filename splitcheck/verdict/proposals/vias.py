@@ -11,7 +11,7 @@ import numpy as np
 from splitcheck.loops.bridges import with_via
 from splitcheck.loops.ways import heading
 from splitcheck.units import Floats
-from splitcheck.verdict.findings import Point, Proposal
+from splitcheck.verdict.findings import Miss, Point, Proposal
 from splitcheck.verdict.proposals.case import Case, Shared, best_of, worth_with_neighbours
 from splitcheck.verdict.proposals.room import ANTIPAD_MM, HOLE_MM, PAD_MM
 from splitcheck.verdict.scene import Scene
@@ -40,7 +40,7 @@ class Spot:
         self.opened = opened
 
 
-def vias(case: Case) -> Iterator[Proposal]:
+def vias(case: Case) -> Iterator[Proposal | Miss]:
     """Propose a via at either end of a crossing, on one side of it or on both, or at one end.
 
     Four, on both sides at both ends, are tried where two leave more than a note.
@@ -51,20 +51,33 @@ def vias(case: Case) -> Iterator[Proposal]:
         ends = [(*one, *other) for one, other in zip(*sides, strict=True)]
         pairs = [[one[0], other[0]] for one, other in [ends] if one and other]
     tried = [_valued(case, places) for places in pairs]
-    helping = [each for each in tried if each[1] is not None]
+    helping = [each for each in tried if isinstance(each[1], Proposal)]
+    yield from (told for _, told in tried if isinstance(told, Miss))
     # where two do not help, one of them does not, and of two pairs that do one via leaves more
     if len(helping) == 1 or not pairs:
         free = [(*one, *other) for one, other in zip(*sides, strict=True)]
         helping += [_valued(case, [spots[0]]) for spots in free if spots]
+        if not any(free):
+            yield _no_place(case)
     best = best_of(shared for shared, _ in helping)
     if len(pairs) == 2 and best is not None and not case.is_enough(best.own):
         shared, proposal = _valued(case, [spot for pair in pairs for spot in pair])
         if shared.gains_on(best):
             helping.append((shared, proposal))
-    yield from (proposal for _, proposal in helping if proposal is not None)
+    yield from (told for _, told in helping)
 
 
-def _valued(case: Case, places: list[Spot]) -> tuple[Shared, Proposal | None]:
+def _no_place(case: Case) -> Miss:
+    """Why there is no place for a via at either end: nothing to join, or no room."""
+    nets = " or ".join(dict.fromkeys(island.net_name for island in case.islands))
+    within = f"within {CIRCLES_MM[-1]:g} mm"
+    for end, start in enumerate((case.crossing.before, case.crossing.after)):
+        if any(len(ids) > 1 for ids in _joined(case, end, *circles(start))):
+            return Miss("via", f"no room {within} where planes of {nets} lie over one another")
+    return Miss("via", f"no other plane of {nets} {within} that the return could use")
+
+
+def _valued(case: Case, places: list[Spot]) -> tuple[Shared, Proposal | Miss]:
     """Vias in some places: what they leave, and the proposal if they gain."""
     shared = worth_with_neighbours(case, stitched(case.scene, places))
     nets = " and ".join(dict.fromkeys(spot.net for spot in places))
