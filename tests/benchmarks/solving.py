@@ -9,6 +9,7 @@ PyPEEC if that is installed, and all references.
 
 from __future__ import annotations
 
+import gc
 import sys
 from collections.abc import Callable, Iterable, Sequence
 from functools import partial
@@ -246,6 +247,7 @@ def _timed(work: Callable[[], object]) -> float:
 def main(folder: Path) -> None:
     """Measure and print everything."""
     print(f"{machine()}\n")
+    gc.disable()  # as the road does
     boards(folder)
     bus()
     beside_pypeec()
