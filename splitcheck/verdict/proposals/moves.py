@@ -46,7 +46,8 @@ def moves(case: Case) -> Iterator[Proposal | Miss]:
         yield Miss("move", "the trace branches or ends over the gap")
         return
     if _ends(case, chain.line, (ROOMS_MM[0], ROOMS_MM[0])) is None:
-        yield Miss("move", f"the trace ends or branches within {ROOMS_MM[0]:g} mm of the gap")
+        near = f"within {ROOMS_MM[0]:g} mm of the gap"
+        yield Miss("move", f"the trace bends, branches or ends {near}")
         return
     for side in (1, -1):
         yield from _moved(case, chain, side)
@@ -107,7 +108,7 @@ def _moved(case: Case, chain: Chain, side: int) -> Sequence[Proposal | Miss]:
         shift = _shift_mm(case, ahead, aside, beyond)
         if shift > FARTHEST_MM:
             where = f"more than {FARTHEST_MM:g} mm {towards(aside)}"
-            misses.append(Miss("move", f"the gap reaches {where}"))
+            misses.append(Miss("move", f"needs {where}"))
             continue
         free = _free(case, chain, aside * shift)
         if free is None:
