@@ -115,7 +115,7 @@ def redrawn(
 
 def _laid(layer: int, table: Floats) -> Tracks:
     """Tracks from rows of start, end, width, net and line."""
-    table = _split_where_others_end(table)
+    table = _once(_split_where_others_end(table))
     start, end = table[:, 0:2], table[:, 2:4]
     nodes = _nodes(start, end, table[:, 5])
     order = np.argsort(nodes.ravel(), kind="stable")
@@ -173,6 +173,18 @@ def _split_where_others_end(table: Floats) -> Floats:
                     )
                 )
     return np.array(rows)
+
+
+def _once(table: Floats) -> Floats:
+    """Pieces drawn over one another, in whole or in part, once: the widest, and of those the first.
+
+    A trace followed along both of them would come back over itself and add nothing anywhere.
+    """
+    ends = np.sort(_nodes(table[:, 0:2], table[:, 2:4], table[:, 5]), axis=1)
+    order = np.lexsort((table[:, 6], -table[:, 4], ends[:, 1], ends[:, 0]))
+    same = (ends[order][1:] == ends[order][:-1]).all(axis=1)
+    again = order[1:][same]
+    return table if not len(again) else np.delete(table, again, axis=0)
 
 
 def _nodes(start: Floats, end: Floats, net: Floats) -> Ints:
