@@ -9,6 +9,7 @@ from shapely import LineString
 from splitcheck.loops.bridges import stitched_near
 from splitcheck.planes.crossings import Crossing
 from splitcheck.verdict.scene import Scene
+from splitcheck.verdict.sideways import STEP_MM, steps_along, to_the_left
 
 #: Copper as near to the centre line as this share of the height over the plane is no worse a way.
 NEAR_SHARE = 0.5
@@ -16,10 +17,6 @@ NEAR_SHARE = 0.5
 ON_HEIGHTS = 3.0
 #: ... or be joined to the plane by a plated hole this near to that end, mm.
 STITCH_MM = 3.0
-#: How far apart the places are where copper is looked for beside a trace, mm, ...
-STEP_MM = 0.25
-#: ... and how many there are at most.
-MOST_STEPS = 400
 
 
 def carries_past(scene: Scene, crossing: Crossing) -> bool:
@@ -93,14 +90,9 @@ def _goes_on(
     stop = min(stop, stretch.length)
     if stop - start < STEP_MM:
         return True
-    piece = _piece(stretch, start, stop)
+    places = stretch.interpolate(steps_along(start, stop))
+    piece = LineString(shapely.get_coordinates(places))
     return _goes_beside(copper, piece, (side if forward else -side) * NEAR_SHARE * height_mm)
-
-
-def _piece(line: LineString, start: float, stop: float) -> LineString:
-    count = min(int((stop - start) / STEP_MM) + 2, MOST_STEPS)
-    along = np.linspace(start, stop, count)
-    return LineString(shapely.get_coordinates(line.interpolate(along)))
 
 
 def _goes_beside(copper: shapely.Geometry, line: LineString, reach_mm: float) -> bool:
@@ -109,20 +101,13 @@ def _goes_beside(copper: shapely.Geometry, line: LineString, reach_mm: float) ->
     A reach below 0 looks on the right.
     """
     height = abs(reach_mm) / NEAR_SHARE
-    count = min(int(line.length / STEP_MM) + 2, MOST_STEPS)
-    along = np.linspace(0.0, line.length, count)
-    eye = min(STEP_MM / 2, line.length / 4)
-    places = shapely.get_coordinates(line.interpolate(along))
-    ahead = shapely.get_coordinates(line.interpolate(np.minimum(along + eye, line.length)))
-    behind = shapely.get_coordinates(line.interpolate(np.maximum(along - eye, 0.0)))
-    way = ahead - behind
-    length = np.hypot(way[:, 0], way[:, 1])
-    if not np.all(length > 0.0):
+    along = steps_along(0.0, line.length)
+    places, left = to_the_left(line, along)
+    if not left.any(axis=1).all():
         return False
-    left = np.stack([-way[:, 1], way[:, 0]], axis=1) / length[:, None] * reach_mm
-    looks = shapely.linestrings(np.stack([places, places + left], axis=1))
+    looks = shapely.linestrings(np.stack([places, places + reach_mm * left], axis=1))
     strip = line.buffer(2.0 * height * np.sign(reach_mm), single_sided=True)
-    step = line.length / (count - 1)
+    step = line.length / (len(along) - 1)
     for piece in shapely.get_parts(shapely.intersection(copper, strip)):
         seen = shapely.intersects(looks, piece)
         if seen[0] and seen[-1] and int(np.count_nonzero(~seen)) * step <= height:

@@ -12,10 +12,13 @@ from splitcheck.loops.estimate import beside_edge_nh_mm
 from splitcheck.planes.crossings import Crossing
 from splitcheck.units import Floats
 from splitcheck.verdict.scene import Scene
+from splitcheck.verdict.sideways import steps_along, to_the_left
 
-#: How far apart the places are where the slot is measured, mm, and how many there are at most.
-STEP_MM = 0.25
-MOST_STEPS = 400
+#: Runs no longer than so many heights are across: what they may be along is within the error.
+LEAST_HEIGHTS = 3.0
+#: At which shares of a run, and how much of the way out to half the height, is looked first.
+FIRST_PLACES = np.array([0.1, 0.3, 0.5, 0.7, 0.9])
+FIRST_LOOKS = np.array([0.25, 0.5, 0.75, 1.0])
 #: A run right on a rim lies across so much of the gap, mm.
 LEAST_MM = 0.05
 
@@ -41,8 +44,9 @@ def opened(scene: Scene, crossing: Crossing) -> Opened:
 
     Returns
     -------
-    All of the run lies across, unless copper of its islands is beside all of it, on one side or on
-    both, and the slot is nowhere wider than the trace is high. Then that width lies across.
+    All of the run lies across, unless it is longer than three heights, copper of its islands is
+    beside all of it, on one side or on both, and the slot is nowhere wider than the trace is high.
+    Then that width lies across.
 
     Notes
     -----
@@ -53,10 +57,17 @@ def opened(scene: Scene, crossing: Crossing) -> Opened:
     """
     height = scene.board.stack.height_mm(crossing.layer, crossing.plane)
     all_of_it = Opened(crossing.run_mm)
-    if crossing.run_mm <= height:
+    if crossing.run_mm <= LEAST_HEIGHTS * height:
         return all_of_it
     run = LineString([crossing.before, *crossing.path, crossing.after])
     plane = scene.planes[crossing.plane]
+    places, left = to_the_left(run, FIRST_PLACES * run.length)
+    # copper is at most half the height off, on one side at least: most runs end here
+    out = np.concatenate([FIRST_LOOKS, -FIRST_LOOKS])[:, None, None] * (height / 2) * left
+    looks = (places + out).reshape(-1, 2)
+    copper_at = np.isin(plane.island_at(*looks.T), crossing.islands).reshape(-1, len(places))
+    if not copper_at.any(axis=0).all():
+        return all_of_it
     shapes = [plane.islands[i].shape for i in sorted(set(crossing.islands))]
     room = run.buffer(2.0 * height).bounds
     copper = shapely.union_all([shapely.clip_by_rect(shape, *room) for shape in shapes])
@@ -77,17 +88,8 @@ def _to_rim_mm(run: LineString, copper: shapely.Geometry, reach_mm: float) -> Fl
 
     A reach below 0 looks on the right.
     """
-    count = min(int(run.length / STEP_MM) + 2, MOST_STEPS)
-    along = np.linspace(0.0, run.length, count)
-    eye = min(STEP_MM / 2, run.length / 4)
-    places = shapely.get_coordinates(run.interpolate(along))
-    ahead = shapely.get_coordinates(run.interpolate(np.minimum(along + eye, run.length)))
-    behind = shapely.get_coordinates(run.interpolate(np.maximum(along - eye, 0.0)))
-    way = ahead - behind
-    length = np.hypot(way[:, 0], way[:, 1])
-    length[length == 0.0] = 1.0
-    left = np.stack([-way[:, 1], way[:, 0]], axis=1) / length[:, None] * reach_mm
-    looks = shapely.linestrings(np.stack([places, places + left], axis=1))
+    places, left = to_the_left(run, steps_along(0.0, run.length))
+    looks = shapely.linestrings(np.stack([places, places + reach_mm * left], axis=1))
     met = shapely.intersection(looks, copper)
     far = np.asarray(shapely.distance(shapely.points(places), met))
     return np.where(shapely.is_empty(met), np.inf, far)

@@ -57,7 +57,7 @@ def test_holes_are_a_two_wire_line() -> None:
     """H. Johnson, EDN, "Parasitic inductance of bypass capacitors": mu0/pi h ln(2 s/d).
 
     What a deeper plane adds besides the strip is the pair of holes: s 2 mm, d 0.3 mm, h 0.8 mm
-    makes 0.83 nH (PHYSICS of a via pair, same source).
+    makes 0.83 nH (via pair, same source).
     """
     strip = 2.0 * strip_nh_mm(0.5, 0.8)
     pair = mounted_nh(2.0, (0.8, 0.8), body_nh=0.0) - strip

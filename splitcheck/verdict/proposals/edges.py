@@ -43,7 +43,7 @@ from splitcheck.verdict.proposals.room import CLEAR_MM
 from splitcheck.verdict.scene import Scene
 
 #: The trace is moved to so many heights within the edge, as far as there is room: the loop's share
-#: falls with the square of it (PHYSICS of a half plane: h / (2 pi s) squared), so 3 leave little.
+#: falls with the square of it (of a half plane: (h / (2 pi s))^2), so 3 leave little.
 HEIGHTS_WITHIN = (5.0, 3.0, 2.0, 1.0)
 #: ... or the plane reaches out so many heights beyond the trace.
 HEIGHTS_BEYOND = (3.0, 5.0, 2.0, 1.0)
